@@ -1,0 +1,14 @@
+//! Wellwright: subband levels, transitions and layer-width tuning for quantum-well wafers of III–V crystals.
+//!
+//! The modules stand in the order in which they may use one another: a module uses those listed above it, never those
+//! below. `tests/module_order.rs` holds this.
+
+pub mod numerics;
+
+pub mod constants;
+pub mod diagnostics;
+pub mod units;
+
+pub mod materials;
+
+pub mod structure;

@@ -1,0 +1,1 @@
+//! The material library: binaries, alloys, temperature and strain.

@@ -1,0 +1,1 @@
+//! Numbers only: elements, banded factorisation, eigenpairs. No physics word stands here.

@@ -1,0 +1,1 @@
+//! Structure files, the layer stack and its profile.
