@@ -8,7 +8,3 @@ pub mod numerics;
 pub mod constants;
 pub mod diagnostics;
 pub mod units;
-
-pub mod materials;
-
-pub mod structure;

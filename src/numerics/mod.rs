@@ -1,1 +1,9 @@
-//! Numbers only: elements, banded factorisation, eigenpairs. No physics word stands here.
+//! Numbers only: elements, banded factorisation with inertia, eigenpairs and their derivatives. No physics word stands
+//! here.
+
+pub mod banded;
+pub mod eigenpairs;
+pub mod mesh;
+pub mod pencil;
+pub mod quadrature;
+pub mod sensitivity;

@@ -1,0 +1,288 @@
+//! The eigenproblem −(A(λ, z) ψ′)′ + (C(z) − λ) ψ = 0 on a mesh, ψ = 0 at both ends, as a banded matrix T(λ).
+//!
+//! A may depend on λ through poles, A = A₀ + Σ_r s_r/(λ − e_r). Each pole is one more component φ_r = √s_r ψ′/(λ − e_r)
+//! of a larger problem that is linear in λ; T(λ) is the Schur complement of that problem on ψ, quadrature included. So
+//! the norm, the matrix elements and the orthogonality of the larger problem hold exactly on the mesh: they are the
+//! divided differences of −T, N(λ, μ) = −(T(λ) − T(μ))/(λ − μ).
+//!
+//! While every s_r is positive T(λ) falls as λ grows, so its negative eigenvalues count the levels below λ.
+
+use super::banded::Banded;
+use super::mesh::{Element, Mesh};
+use super::quadrature::MAX_ORDER;
+
+/// One pole s/(λ − e) of the coefficient A, with the range in which it is followed.
+///
+/// The distance λ − e is kept inside `nearest ..= farthest`; beyond, A stays what it is at that end.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Pole<T = f64> {
+    pub strength: T,
+    pub position: T,
+    pub nearest: T,
+    pub farthest: T,
+}
+
+/// The coefficients at one place: A = `stiffness` + poles, and C = `constant`.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Coefficient<T = f64> {
+    pub stiffness: T,
+    pub poles: [Option<Pole<T>>; 2],
+    pub constant: T,
+}
+
+impl Pole {
+    /// The distance λ − e within its range, and whether it is inside.
+    #[inline]
+    pub fn distance(&self, lambda: f64) -> (f64, bool) {
+        let distance = lambda - self.position;
+        if distance < self.nearest {
+            (self.nearest, false)
+        } else if distance > self.farthest {
+            (self.farthest, false)
+        } else {
+            (distance, true)
+        }
+    }
+}
+
+impl Coefficient {
+    /// A(λ).
+    #[inline]
+    pub fn a(&self, lambda: f64) -> f64 {
+        let mut a = self.stiffness;
+        for pole in self.poles.iter().flatten() {
+            a += pole.strength / pole.distance(lambda).0;
+        }
+        a
+    }
+
+    /// The divided difference −(A(λ) − A(μ))/(λ − μ); for λ = μ the slope −dA/dλ.
+    #[inline]
+    pub fn divided(&self, lambda: f64, mu: f64) -> f64 {
+        let mut sum = 0.0;
+        for pole in self.poles.iter().flatten() {
+            let (x, x_inside) = pole.distance(lambda);
+            let (y, y_inside) = pole.distance(mu);
+            sum += match (x_inside, y_inside) {
+                (true, true) => pole.strength / (x * y),
+                (false, false) => 0.0,
+                _ => pole.strength / (x * y) * (x - y) / (lambda - mu),
+            };
+        }
+        sum
+    }
+
+    /// Whether A depends on λ.
+    pub fn has_poles(&self) -> bool {
+        self.poles.iter().any(Option::is_some)
+    }
+}
+
+/// The discretised problem.
+#[derive(Clone, Debug)]
+pub struct Pencil {
+    pub mesh: Mesh,
+    /// Coefficients at the nodes of each element, element by element: (order + 1) per element.
+    pub coefficients: Vec<Coefficient>,
+    /// T(0) and the mass matrix of a problem without poles, where T(λ) = T(0) − λ M.
+    linear: Option<(Banded, Vec<f64>)>,
+    reach: Vec<usize>,
+}
+
+impl Pencil {
+    /// Evaluates the coefficients with `at(element, local node)` and prepares the matrices.
+    pub fn new(mesh: Mesh, mut at: impl FnMut(&Element, usize) -> Coefficient) -> Pencil {
+        let p = mesh.order();
+        let mut coefficients = Vec::with_capacity(mesh.elements.len() * (p + 1));
+        for element in &mesh.elements {
+            for q in 0..=p {
+                coefficients.push(at(element, q));
+            }
+        }
+        let size = mesh.node_count() - 2;
+        let reach = (1..=size)
+            .map(|g| if g % p == 0 { p } else { p - g % p })
+            .collect();
+        let with_poles = coefficients.iter().any(Coefficient::has_poles);
+        let mut pencil = Pencil {
+            mesh,
+            coefficients,
+            linear: None,
+            reach,
+        };
+        if !with_poles {
+            let mut base = pencil.storage();
+            pencil.assemble(0.0, &mut base);
+            let mass = pencil.mass();
+            pencil.linear = Some((base, mass[1..=size].to_vec()));
+        }
+        pencil
+    }
+
+    /// Number of unknowns: the inner nodes.
+    pub fn size(&self) -> usize {
+        self.mesh.node_count() - 2
+    }
+
+    /// A zero matrix of the right shape.
+    pub fn storage(&self) -> Banded {
+        Banded::zeros(self.reach.clone())
+    }
+
+    /// Coefficients at the nodes of element number `index`.
+    pub fn at(&self, index: usize) -> &[Coefficient] {
+        let count = self.mesh.order() + 1;
+        &self.coefficients[index * count..(index + 1) * count]
+    }
+
+    /// The diagonal mass matrix at all nodes: quadrature weights.
+    pub fn mass(&self) -> Vec<f64> {
+        let p = self.mesh.order();
+        let mut mass = vec![0.0; self.mesh.node_count()];
+        for (index, element) in self.mesh.elements.iter().enumerate() {
+            for (q, w) in self.mesh.reference.weights.iter().enumerate() {
+                mass[index * p + q] += 0.5 * element.length * w;
+            }
+        }
+        mass
+    }
+
+    /// Fills `matrix` with T(λ) on the inner nodes.
+    pub fn assemble(&self, lambda: f64, matrix: &mut Banded) {
+        if let Some((base, mass)) = &self.linear {
+            matrix.clone_from(base);
+            for (k, m) in mass.iter().enumerate() {
+                matrix.column_mut(k)[0] -= lambda * m;
+            }
+            return;
+        }
+        matrix.clear();
+        let reference = self.mesh.reference;
+        let p = reference.order;
+        let last = self.mesh.node_count() - 1;
+        let entries = (p + 1) * (p + 2) / 2;
+        let mut buffer = [0.0; (MAX_ORDER + 1) * (MAX_ORDER + 2) / 2];
+        let local = &mut buffer[..entries];
+        for (index, element) in self.mesh.elements.iter().enumerate() {
+            let nodes = self.at(index);
+            let scale = 2.0 / element.length;
+            let first = nodes[0];
+            if nodes
+                .iter()
+                .all(|c| c.stiffness == first.stiffness && !c.has_poles())
+            {
+                for (l, s) in local.iter_mut().zip(&reference.uniform_stiffness) {
+                    *l = scale * first.stiffness * s;
+                }
+            } else {
+                local.fill(0.0);
+                for (coefficient, term) in nodes.iter().zip(&reference.stiffness_terms) {
+                    let a = scale * coefficient.a(lambda);
+                    for (l, s) in local.iter_mut().zip(term) {
+                        *l += a * s;
+                    }
+                }
+            }
+            let mut start = 0;
+            for j in 0..=p {
+                let g = index * p + j;
+                if g != 0 && g != last {
+                    let column = matrix.column_mut(g - 1);
+                    for (target, value) in column.iter_mut().zip(&local[start..start + p + 1 - j]) {
+                        *target += value;
+                    }
+                    column[0] +=
+                        0.5 * element.length * reference.weights[j] * (nodes[j].constant - lambda);
+                }
+                start += p + 1 - j;
+            }
+        }
+    }
+
+    /// N(λ, μ) x for a nodal vector x that vanishes at both ends; the result is set to zero there as well.
+    pub fn weight(&self, lambda: f64, mu: f64, x: &[f64]) -> Vec<f64> {
+        let reference = self.mesh.reference;
+        let p = reference.order;
+        let mut out: Vec<f64> = match &self.linear {
+            Some((_, mass)) => {
+                let mut out = vec![0.0; x.len()];
+                for ((o, m), v) in out[1..].iter_mut().zip(mass).zip(&x[1..]) {
+                    *o = m * v;
+                }
+                return out;
+            }
+            None => self.mass().iter().zip(x).map(|(m, v)| m * v).collect(),
+        };
+        let mut slopes = [0.0; MAX_ORDER + 1];
+        for (index, element) in self.mesh.elements.iter().enumerate() {
+            reference.slopes(self.mesh.local(index, x), &mut slopes[..=p]);
+            for ((slope, coefficient), w) in slopes
+                .iter_mut()
+                .zip(self.at(index))
+                .zip(&reference.weights)
+            {
+                *slope *= 2.0 / element.length * w * coefficient.divided(lambda, mu);
+            }
+            reference.add_slopes_transposed(&slopes[..=p], &mut out[index * p..=(index + 1) * p]);
+        }
+        out[0] = 0.0;
+        out[x.len() - 1] = 0.0;
+        out
+    }
+
+    /// The bilinear form x · N(λ, μ) y.
+    pub fn inner(&self, lambda: f64, x: &[f64], mu: f64, y: &[f64]) -> f64 {
+        dot(x, &self.weight(lambda, mu, y))
+    }
+
+    /// A λ at which the semiclassical phase ∫ √((λ − C)/A) dz reaches π `count` (Weyl's law): a first guess above the
+    /// level of that number.
+    pub fn weyl_estimate(&self, count: f64) -> f64 {
+        let (mut low, mut span) = (self.floor(), 0.0);
+        for c in &self.coefficients {
+            span = f64::max(span, c.constant - low);
+        }
+        let mut high = low + span.max(1e-6);
+        let mut tries = 0;
+        while self.weyl_count(high) < count && tries < 200 {
+            high = low + 2.0 * (high - low);
+            tries += 1;
+        }
+        for _ in 0..40 {
+            let middle = 0.5 * (low + high);
+            if self.weyl_count(middle) < count {
+                low = middle;
+            } else {
+                high = middle;
+            }
+        }
+        high
+    }
+
+    fn weyl_count(&self, lambda: f64) -> f64 {
+        let mut phase = 0.0;
+        for (index, element) in self.mesh.elements.iter().enumerate() {
+            for (c, w) in self.at(index).iter().zip(&self.mesh.reference.weights) {
+                phase += 0.5
+                    * element.length
+                    * w
+                    * ((lambda - c.constant).max(0.0) / c.a(lambda)).sqrt();
+            }
+        }
+        phase / std::f64::consts::PI
+    }
+
+    /// The smallest C: no level lies below it while A is positive.
+    pub fn floor(&self) -> f64 {
+        self.coefficients
+            .iter()
+            .map(|c| c.constant)
+            .fold(f64::INFINITY, f64::min)
+    }
+}
+
+/// The scalar product of two vectors.
+#[inline]
+pub fn dot(x: &[f64], y: &[f64]) -> f64 {
+    x.iter().zip(y).map(|(a, b)| a * b).sum()
+}
