@@ -8,3 +8,19 @@ pub mod numerics;
 pub mod constants;
 pub mod diagnostics;
 pub mod units;
+
+pub mod materials;
+
+pub mod structure;
+
+pub mod models;
+
+pub mod subbands;
+
+pub mod optics;
+
+pub mod tune;
+
+pub mod report;
+
+pub mod cli;

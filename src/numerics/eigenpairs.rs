@@ -15,9 +15,12 @@ pub struct Eigenpair {
 
 /// Levels closer than this part of the searched range are taken as one cluster and separated together.
 const CLUSTER: f64 = 1e-9;
-/// A Rayleigh quotient that moves by less than this part of the searched range has converged: the next step, the cube
-/// of it, is below rounding.
-const CONVERGED: f64 = 1e-10;
+/// A vector has converged when the other levels' part in it has shrunk to this.
+const CONVERGED: f64 = 1e-12;
+/// A ratio of convergence above this calls for a new shift.
+const SLOW: f64 = 0.03;
+/// With poles the shift must come this near, as a part of the searched range.
+const NEAR: f64 = 1e-7;
 /// Vectors of levels closer than this part of the searched range are made orthogonal to each other explicitly.
 const NEIGHBOURS: f64 = 1e-3;
 
@@ -123,6 +126,9 @@ impl<'p> Search<'p> {
             let factored = self.factor(middle);
             if isolated && let Some(pair) = self.refine(middle, &factored, low, high) {
                 self.spare = Some(factored.into_storage());
+                // Nothing else lies in the bracket: the next level's begins here.
+                let at = self.known.partition_point(|(_, negative)| *negative < k);
+                self.known.insert(at, (pair.value.next_up(), k));
                 return vec![pair];
             }
             if narrow {
@@ -132,23 +138,35 @@ impl<'p> Search<'p> {
         }
     }
 
-    /// Rayleigh-quotient iteration that must stay inside the bracket.
-    fn refine(&self, start: f64, factored: &Factored, low: f64, high: f64) -> Option<Eigenpair> {
+    /// Inverse iteration with the Rayleigh quotient as shift; the level must be alone in its bracket, and stay there.
+    ///
+    /// Every other level lies outside the bracket, so a solve shrinks what is left of them in the vector at least by the
+    /// ratio of the level's distance from the shift to its distance from the bracket's ends. While that ratio is small
+    /// more solves with the same factors are cheaper than new factors.
+    fn refine(&mut self, start: f64, factored: &Factored, low: f64, high: f64) -> Option<Eigenpair> {
         let mut vector = start_vector(self.pencil, 0);
         step(self.pencil, factored, start, &mut vector);
         let mut value = step(self.pencil, factored, start, &mut vector);
-        let mut matrix = self.pencil.storage();
         for _ in 0..20 {
             if !(value > low && value < high) {
                 return None;
             }
-            self.pencil.assemble(value, &mut matrix);
-            let factored = matrix.factor();
-            let improved = step(self.pencil, &factored, value, &mut vector);
-            matrix = factored.into_storage();
-            let moved = (improved - value).abs();
-            value = improved;
-            if moved < CONVERGED * self.range {
+            let shift = value;
+            let factored = self.factor(shift);
+            let mut rest = 1.0;
+            while rest > CONVERGED {
+                value = step(self.pencil, &factored, shift, &mut vector);
+                let ratio = (value - shift).abs() / (value - low).min(high - value);
+                if !(0.0..SLOW).contains(&ratio) {
+                    rest = 1.0;
+                    break;
+                }
+                rest *= ratio.max(f64::EPSILON);
+            }
+            self.spare = Some(factored.into_storage());
+            // The quotient of a problem with poles is exact to second order in the shift's distance only.
+            let linear = self.pencil.is_linear() || (value - shift).abs() < NEAR * self.range;
+            if rest <= CONVERGED && linear {
                 return (value >= low && value <= high).then_some(Eigenpair { value, vector });
             }
         }
@@ -233,9 +251,8 @@ fn step(pencil: &Pencil, factored: &Factored, lambda: f64, x: &mut [f64]) -> f64
 /// A vector without symmetry, so that it has a part of every eigenvector.
 fn start_vector(pencil: &Pencil, seed: usize) -> Vec<f64> {
     let count = pencil.mesh.node_count();
-    let mut x: Vec<f64> = (0..count)
-        .map(|k| 1.0 + 0.7 * ((1.1 + 0.37 * seed as f64) * k as f64 + seed as f64).sin())
-        .collect();
+    // Multiples of the golden ratio, modulo one, are spread evenly and never repeat.
+    let mut x: Vec<f64> = (0..count).map(|k| 0.5 + ((k * (seed + 1)) as f64 * 0.618_033_988_749_895).fract()).collect();
     x[0] = 0.0;
     x[count - 1] = 0.0;
     x

@@ -124,6 +124,11 @@ impl Pencil {
         self.mesh.node_count() - 2
     }
 
+    /// Whether T is linear in λ: no coefficient has poles.
+    pub fn is_linear(&self) -> bool {
+        self.linear.is_some()
+    }
+
     /// A zero matrix of the right shape.
     pub fn storage(&self) -> Banded {
         Banded::zeros(self.reach.clone())
@@ -235,41 +240,36 @@ impl Pencil {
         dot(x, &self.weight(lambda, mu, y))
     }
 
-    /// A λ at which the semiclassical phase ∫ √((λ − C)/A) dz reaches π `count` (Weyl's law): a first guess above the
-    /// level of that number.
+    /// A λ at which the semiclassical phase ∫ √((λ − C)/A) dz reaches about π `count` (Weyl's law): a first guess above
+    /// the level of that number. A is taken at the lowest C.
     pub fn weyl_estimate(&self, count: f64) -> f64 {
-        let (mut low, mut span) = (self.floor(), 0.0);
-        for c in &self.coefficients {
-            span = f64::max(span, c.constant - low);
+        let low = self.floor();
+        let nodes = self.mesh.elements.iter().enumerate().flat_map(|(index, element)| {
+            let weights = self.mesh.reference.weights.iter();
+            weights.zip(self.at(index)).map(|(w, c)| {
+                let phase = 0.5 * element.length * w / (c.a(low).sqrt() * std::f64::consts::PI);
+                (phase, c.constant)
+            })
+        });
+        let nodes: Vec<(f64, f64)> = nodes.collect();
+        let phase = |lambda: f64| nodes.iter().map(|(w, c)| w * (lambda - c).max(0.0).sqrt()).sum::<f64>();
+        let span = nodes.iter().map(|(_, c)| c - low).fold(1e-6, f64::max);
+        let (mut low, mut high) = (low, low + span);
+        for _ in 0..200 {
+            if phase(high) >= count {
+                break;
+            }
+            (low, high) = (high, high + 2.0 * (high - low));
         }
-        let mut high = low + span.max(1e-6);
-        let mut tries = 0;
-        while self.weyl_count(high) < count && tries < 200 {
-            high = low + 2.0 * (high - low);
-            tries += 1;
-        }
-        for _ in 0..40 {
+        for _ in 0..10 {
             let middle = 0.5 * (low + high);
-            if self.weyl_count(middle) < count {
+            if phase(middle) < count {
                 low = middle;
             } else {
                 high = middle;
             }
         }
         high
-    }
-
-    fn weyl_count(&self, lambda: f64) -> f64 {
-        let mut phase = 0.0;
-        for (index, element) in self.mesh.elements.iter().enumerate() {
-            for (c, w) in self.at(index).iter().zip(&self.mesh.reference.weights) {
-                phase += 0.5
-                    * element.length
-                    * w
-                    * ((lambda - c.constant).max(0.0) / c.a(lambda)).sqrt();
-            }
-        }
-        phase / std::f64::consts::PI
     }
 
     /// The smallest C: no level lies below it while A is positive.

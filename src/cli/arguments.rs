@@ -1,0 +1,68 @@
+//! What the user types.
+
+use clap::{Args, Parser, Subcommand, ValueEnum};
+use std::path::PathBuf;
+
+/// Subbands, transitions and tuned layer widths of quantum-well stacks.
+#[derive(Debug, Parser)]
+#[command(name = "wellwright", version, max_term_width = 100)]
+pub struct Arguments {
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// Solve a stack: subband table and transition table
+    Levels {
+        /// Structure file
+        file: PathBuf,
+        #[command(flatten)]
+        output: Output,
+    },
+    /// Change widths, compositions and field until the aims of the file's `tune` block are met
+    Tune {
+        /// Structure file with a `tune` block
+        file: PathBuf,
+        /// Form of the report
+        #[arg(long, value_enum, default_value_t = Format::Table)]
+        format: Format,
+        /// Write to a file: a name ending in .yaml or .yml receives the tuned structure, any other name the report.
+        /// May be given once for each
+        #[arg(short, long, value_name = "FILE")]
+        output: Vec<PathBuf>,
+    },
+    /// Read and check a structure file without solving it
+    Check {
+        /// Structure file
+        file: PathBuf,
+    },
+    /// List the material library, or print one material's parameters
+    Materials {
+        /// Chemical formula, such as GaAs or Al0.3Ga0.7As
+        formula: Option<String>,
+        /// Temperature with its unit, such as "77 K"
+        #[arg(long, default_value = "300 K")]
+        temperature: String,
+        #[command(flatten)]
+        output: Output,
+    },
+}
+
+/// Where a result goes and in what form.
+#[derive(Debug, Args)]
+pub struct Output {
+    /// Form of the result
+    #[arg(long, value_enum, default_value_t = Format::Table)]
+    pub format: Format,
+    /// Write the result to a file instead of the terminal
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Format {
+    Table,
+    Csv,
+    Json,
+}

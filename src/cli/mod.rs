@@ -1,0 +1,13 @@
+//! The command line. Only this module touches files, the terminal and the environment.
+
+mod arguments;
+mod output;
+mod progress;
+mod run;
+
+pub use arguments::Arguments;
+
+/// Runs a command line and returns the exit code: 0 done, 1 the work could not be done, 2 the input is wrong.
+pub fn main(arguments: Arguments) -> u8 {
+    run::run(arguments).into()
+}

@@ -1,0 +1,85 @@
+//! An electron mass that depends on the energy above the local band edge, in two published forms.
+//!
+//! Kane's bands with remote-band parameter F (Kane, J. Phys. Chem. Solids 1, 249 (1957); in this form Vurgaftman,
+//! Meyer and Ram-Mohan, J. Appl. Phys. 89, 5815 (2001), eq. 2.15, with the gap replaced by the energy above the valence
+//! edge):
+//!
+//! m₀/m(E, z) = 1 + 2F + (Ep/3) [2/(E − Ev) + 1/(E − Ev + Δ)],  Ev(z) = Ec(z) − Eg.
+//!
+//! The two-band form m(E) = m* (1 + (E − Ec)/E′) of most published intersubband designs (Nelson, Miller and Kleinman,
+//! Phys. Rev. B 35, 7770 (1987)), when a material states E′.
+//!
+//! Both are poles of A in E: the light-hole and split-off components of the state, eliminated. Range: the mass is
+//! frozen where the energy comes nearer to the valence edge than a tenth of the gap (deep tails in a strong field), and
+//! where a negative 1 + 2F would drive it beyond ten times the edge mass.
+
+use super::Unsuitable;
+use crate::constants::HBAR2_OVER_2M0;
+use crate::materials::{Material, Number};
+use crate::numerics::pencil::{Coefficient, Pole};
+
+/// The energy is followed down to this part of the gap above the valence edge.
+const NEAREST_OF_GAP: f64 = 0.1;
+/// The mass is followed up to this multiple of the edge mass.
+const HEAVIEST_OF_EDGE: f64 = 10.0;
+
+/// A(E) = ħ²/2m(E) and C = the conduction edge.
+pub fn coefficient<T: Number>(material: &Material<T>) -> Result<Coefficient<T>, Unsuitable> {
+    let missing = |key| Unsuitable::Missing { key, model: "energy-dependent" };
+    let edge = material.conduction_edge_ev.ok_or(missing("conduction_edge"))?;
+    let free = T::constant(HBAR2_OVER_2M0);
+    if let Some(scale) = material.nonparabolicity_energy_ev {
+        let mass = material.electron_mass_m0.ok_or(missing("electron_mass"))?;
+        let pole = Pole {
+            strength: free / mass * scale,
+            position: edge - scale,
+            nearest: scale * T::constant(NEAREST_OF_GAP),
+            farthest: T::constant(f64::INFINITY),
+        };
+        return Ok(Coefficient { stiffness: T::constant(0.0), poles: [Some(pole), None], constant: edge });
+    }
+    let (Some(gap), Some(spin_orbit), Some(kane)) =
+        (material.gap_ev, material.spin_orbit_ev, material.kane_energy_ev)
+    else {
+        return Err(Unsuitable::NoLaw);
+    };
+    let third = kane / T::constant(3.0);
+    let coupled = |distance: T| third * T::constant(2.0) / distance + third / (distance + spin_orbit);
+    let remote = match material.remote_band_f {
+        Some(f) => T::constant(1.0) + f * T::constant(2.0),
+        // Without F the law is made to return the stated mass at the edge.
+        None => T::constant(1.0) / material.electron_mass_m0.ok_or(missing("electron_mass"))? - coupled(gap),
+    };
+    let inverse_mass = (remote + coupled(gap)).value();
+    if inverse_mass <= 0.0 || !inverse_mass.is_finite() {
+        return Err(Unsuitable::NegativeMass { inverse_mass });
+    }
+    let farthest = if remote.value() < inverse_mass / HEAVIEST_OF_EDGE {
+        heaviest_distance(remote.value(), third.value(), spin_orbit.value(), inverse_mass / HEAVIEST_OF_EDGE)
+    } else {
+        f64::INFINITY
+    };
+    let nearest = gap * T::constant(NEAREST_OF_GAP);
+    let light = Pole {
+        strength: free * third * T::constant(2.0),
+        position: edge - gap,
+        nearest,
+        farthest: T::constant(farthest),
+    };
+    let split_off = Pole {
+        strength: free * third,
+        position: edge - gap - spin_orbit,
+        nearest: nearest + spin_orbit,
+        farthest: spin_orbit + T::constant(farthest),
+    };
+    Ok(Coefficient { stiffness: free * remote, poles: [Some(light), Some(split_off)], constant: edge })
+}
+
+/// The distance x from the valence edge at which `remote` + third (2/x + 1/(x + Δ)) has fallen to `least`: the positive
+/// root of a quadratic.
+fn heaviest_distance(remote: f64, third: f64, spin_orbit: f64, least: f64) -> f64 {
+    let span = least - remote;
+    let b = span * spin_orbit - 3.0 * third;
+    let c = -2.0 * third * spin_orbit;
+    (-b + (b * b - 4.0 * span * c).sqrt()) / (2.0 * span)
+}

@@ -1,0 +1,54 @@
+//! Envelopes of solved states outside the solver's own mesh.
+
+use super::{Subbands, state};
+use crate::numerics::quadrature::Reference;
+use crate::structure::Stack;
+
+/// Points per layer at which envelopes of different stacks are compared.
+const POINTS_ORDER: usize = 10;
+
+/// Every state's envelope at the same fractions of every layer, weighted so that the scalar product of two lists is
+/// their overlap: lists of stacks that differ in widths only can be set against each other.
+pub fn layer_envelopes(subbands: &Subbands, stack: &Stack) -> Vec<Vec<f64>> {
+    let points = Reference::of_order(POINTS_ORDER);
+    let widths: Vec<f64> = stack.layers.iter().map(|layer| layer.width_nm).collect();
+    subbands
+        .pairs
+        .iter()
+        .map(|pair| {
+            let mut list = Vec::with_capacity(widths.len() * points.nodes.len());
+            for (layer, width) in widths.iter().enumerate() {
+                let values = layer_values(subbands, &pair.vector, layer, &points.nodes);
+                for (value, weight) in values.iter().zip(&points.weights) {
+                    list.push(value * (0.5 * weight * width).sqrt());
+                }
+            }
+            list
+        })
+        .collect()
+}
+
+/// Values of a nodal vector at the given places of one layer (−1 its bottom, 1 its top).
+fn layer_values(subbands: &Subbands, vector: &[f64], layer: usize, places: &[f64]) -> Vec<f64> {
+    let mesh = &subbands.pencil.mesh;
+    let own: Vec<usize> = (0..mesh.elements.len()).filter(|&e| mesh.elements[e].segment == layer).collect();
+    places
+        .iter()
+        .map(|place| {
+            let t = 0.5 * (1.0 + place);
+            let holding = own.iter().copied().rev().find(|&e| mesh.elements[e].start_fraction <= t + 1e-12);
+            let Some(e) = holding else { return 0.0 };
+            let element = &mesh.elements[e];
+            let x = 2.0 * (t - element.start_fraction) / element.length_fraction - 1.0;
+            let row = mesh.reference.interpolation(&[x.clamp(-1.0, 1.0)]);
+            row.iter().zip(mesh.local(e, vector)).map(|(m, v)| m * v).sum()
+        })
+        .collect()
+}
+
+/// ∫ √(ρ_i ρ_j) dz of the probability densities of two states.
+pub fn envelope_overlap(subbands: &Subbands, i: usize, j: usize) -> f64 {
+    let (a, b) = (state::density(subbands, i), state::density(subbands, j));
+    let count = subbands.pencil.mesh.order() + 1;
+    state::integrate(&subbands.pencil, |e, q| (a[e * count + q] * b[e * count + q]).sqrt())
+}

@@ -1,0 +1,108 @@
+//! Solved subbands of a stack: energies, envelopes, where they sit, and an audit of the solution.
+
+mod audit;
+mod change;
+mod envelope;
+mod resolution;
+mod state;
+
+pub use audit::Audit;
+pub use change::change;
+pub use envelope::{envelope_overlap, layer_envelopes};
+pub use state::{Hold, State};
+
+use crate::models::ConductionOperator;
+use crate::numerics::eigenpairs::{self, Eigenpair};
+use crate::numerics::mesh::Mesh;
+use crate::numerics::pencil::Pencil;
+
+/// What is asked of a solution.
+#[derive(Clone, Copy, Debug)]
+pub struct Accuracy {
+    /// Each energy's discretisation error is brought below this, in eV.
+    pub tolerance_ev: f64,
+}
+
+impl Default for Accuracy {
+    /// A hundredth of a µeV: a tenth of the last digit that is printed.
+    fn default() -> Self {
+        Self { tolerance_ev: 1e-8 }
+    }
+}
+
+/// Orders that are tried in turn before the elements are halved.
+const ORDERS: [usize; 2] = [8, 12];
+/// Halvings after which the error that is reached is reported as it is.
+const MAX_HALVINGS: usize = 4;
+/// The order is raised by this much for the error estimate.
+const ORDER_STEP: usize = 2;
+
+/// The lowest states of one band with the discretised problem they solve.
+#[derive(Clone, Debug)]
+pub struct Subbands {
+    pub pencil: Pencil,
+    pub pairs: Vec<Eigenpair>,
+    /// Estimated discretisation error of each energy, eV.
+    pub errors_ev: Vec<f64>,
+    /// The lowest band edge of the layers, the field left out, eV.
+    pub lowest_edge_ev: f64,
+}
+
+/// Solves for the `count` lowest states; fewer come back only when the stack is too small a box to hold them on the
+/// finest mesh.
+pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) -> Subbands {
+    let (lengths, mut pieces) = resolution::pieces(operator, count);
+    let mut halvings = 0;
+    loop {
+        for order in ORDERS {
+            let mesh = Mesh::new(&lengths, &pieces, order);
+            let subbands = on_mesh(operator, mesh, count);
+            let worst = subbands.errors_ev.iter().fold(0.0, |a: f64, b| a.max(*b));
+            let enough = subbands.pairs.len() == count && worst <= accuracy.tolerance_ev;
+            if enough || (halvings == MAX_HALVINGS && order == ORDERS[ORDERS.len() - 1]) {
+                return subbands;
+            }
+        }
+        pieces.iter_mut().for_each(|n| *n *= 2);
+        halvings += 1;
+    }
+}
+
+/// Solves on a given mesh, with the errors estimated by one step on a higher order.
+pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subbands {
+    let pencil = pencil_on(operator, mesh);
+    let pairs = eigenpairs::lowest(&pencil, count);
+    let finer = pencil_on(operator, pencil.mesh.with_order(pencil.mesh.order() + ORDER_STEP));
+    let errors_ev = pairs
+        .iter()
+        .map(|pair| {
+            let vector = pencil.mesh.transfer(&pair.vector, &finer.mesh);
+            (eigenpairs::improved_value(&finer, pair.value, &vector) - pair.value).abs()
+        })
+        .collect();
+    Subbands { pencil, pairs, errors_ev, lowest_edge_ev: operator.lowest_edge_ev() }
+}
+
+fn pencil_on(operator: &ConductionOperator, mesh: Mesh) -> Pencil {
+    let frame = mesh.clone();
+    Pencil::new(mesh, |element, q| {
+        operator.at(element.segment, frame.fraction(element, q), frame.position(element, q))
+    })
+}
+
+impl Subbands {
+    /// What is known of each state, in the order of energy.
+    pub fn states(&self) -> Vec<State> {
+        (0..self.pairs.len()).map(|index| state::describe(self, index)).collect()
+    }
+
+    /// Checks of the solution against the commutation rule.
+    pub fn audit(&self) -> Audit {
+        audit::audit(self)
+    }
+
+    /// Number of states below the lower of the two outer barrier edges.
+    pub fn bound_count(&self) -> usize {
+        eigenpairs::count_below(&self.pencil, state::lower_outer_edge_ev(&self.pencil))
+    }
+}

@@ -1,0 +1,36 @@
+//! How many elements each layer gets.
+
+use crate::models::ConductionOperator;
+use crate::numerics::mesh::Mesh;
+use crate::numerics::pencil::Pencil;
+
+/// Largest phase (or decay exponent) that one element of order 8 has to follow. Measured on wells, double wells and
+/// cascade modules: the energies are then within 1e-8 eV, so that the higher orders are seldom needed.
+const MAX_PHASE: f64 = 5.0;
+/// More elements than this in one layer are never needed: a longer decay has died out long before.
+const MAX_PIECES: usize = 4000;
+
+/// Layer widths in nm, and the number of elements in each.
+pub fn pieces(operator: &ConductionOperator, count: usize) -> (Vec<f64>, Vec<usize>) {
+    let lengths: Vec<f64> = operator.stack().layers.iter().map(|layer| layer.width_nm).collect();
+    let coarse = Mesh::new(&lengths, &vec![1; lengths.len()], 2);
+    let frame = coarse.clone();
+    let sample = Pencil::new(coarse, |element, q| {
+        operator.at(element.segment, frame.fraction(element, q), frame.position(element, q))
+    });
+    let floor_ev = sample.floor();
+    let top_ev = sample.weyl_estimate(count as f64 + 1.0);
+    let pieces = lengths
+        .iter()
+        .enumerate()
+        .map(|(layer, length)| {
+            let steepest = sample.at(layer).iter().fold(0.0_f64, |most, c| {
+                let above = (top_ev - c.constant).max(0.0) / c.a(top_ev);
+                let below = (c.constant - floor_ev).max(0.0) / c.a(floor_ev);
+                most.max(above).max(below)
+            });
+            ((steepest.sqrt() * length / MAX_PHASE).ceil() as usize).clamp(1, MAX_PIECES)
+        })
+        .collect();
+    (lengths, pieces)
+}

@@ -1,0 +1,157 @@
+//! What is known of one state.
+
+use super::Subbands;
+use crate::constants::HBAR2_OVER_2M0;
+use crate::numerics::pencil::Pencil;
+use crate::numerics::quadrature::MAX_ORDER;
+use crate::numerics::sensitivity::moment;
+
+/// What keeps a state in the stack.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Hold {
+    /// Both outer barriers: the energy lies below them everywhere.
+    Bound,
+    /// Both outer barriers, but the field lowers one of them below the energy further out: the state can tunnel.
+    Leaky,
+    /// Only the walls at the ends: the energy lies above the lower of the two outer barrier edges.
+    Walls,
+}
+
+/// One subband at zero in-plane momentum.
+#[derive(Clone, Debug)]
+pub struct State {
+    pub energy_ev: f64,
+    /// Height above the lowest band edge of the stack's layers, the field left out.
+    pub from_edge_ev: f64,
+    /// Estimated discretisation error of the energy.
+    pub error_ev: f64,
+    /// 1/m∥ is the mean of 1/m(E, z) in the state: the curvature of the subband at its bottom, in free-electron masses.
+    pub in_plane_mass_m0: f64,
+    /// Mean position above the bottom of the stack.
+    pub centre_nm: f64,
+    /// Standard deviation of the position.
+    pub extent_nm: f64,
+    /// The layer that holds most of the state, and how much of it.
+    pub layer: usize,
+    pub layer_share: f64,
+    pub hold: Hold,
+    /// How far the energy would fall if the walls stood at infinity: first order in the walls' pressure. Zero unless
+    /// the state is bound.
+    pub wall_shift_ev: f64,
+}
+
+/// The probability density at the nodes of each element, in 1/nm: all components of the state together.
+pub(super) fn density(subbands: &Subbands, index: usize) -> Vec<f64> {
+    let Subbands { pencil, pairs, .. } = subbands;
+    let reference = pencil.mesh.reference;
+    let p = reference.order;
+    let pair = &pairs[index];
+    let mut density = Vec::with_capacity(pencil.coefficients.len());
+    let mut slopes = [0.0; MAX_ORDER + 1];
+    for (e, element) in pencil.mesh.elements.iter().enumerate() {
+        let values = pencil.mesh.local(e, &pair.vector);
+        reference.slopes(values, &mut slopes[..=p]);
+        let scale = 2.0 / element.length;
+        for (q, at) in pencil.at(e).iter().enumerate() {
+            let slope = scale * slopes[q];
+            density.push(values[q] * values[q] + at.divided(pair.value, pair.value) * slope * slope);
+        }
+    }
+    density
+}
+
+/// Σ over the nodes of weight × f(element, local node).
+pub(super) fn integrate(pencil: &Pencil, mut f: impl FnMut(usize, usize) -> f64) -> f64 {
+    let mut sum = 0.0;
+    for (e, element) in pencil.mesh.elements.iter().enumerate() {
+        for (q, w) in pencil.mesh.reference.weights.iter().enumerate() {
+            sum += 0.5 * element.length * w * f(e, q);
+        }
+    }
+    sum
+}
+
+/// The lower of the two outer barrier edges, each taken at its highest point: below it a classical particle is turned
+/// back on both sides.
+pub(super) fn lower_outer_edge_ev(pencil: &Pencil) -> f64 {
+    let elements = &pencil.mesh.elements;
+    let highest = |segment: usize| {
+        let own = elements.iter().enumerate().filter(|(_, e)| e.segment == segment);
+        own.flat_map(|(index, _)| pencil.at(index)).map(|c| c.constant).fold(f64::NEG_INFINITY, f64::max)
+    };
+    let last = elements.last().map_or(0, |e| e.segment);
+    highest(0).min(highest(last))
+}
+
+pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
+    let pencil = &subbands.pencil;
+    let pair = &subbands.pairs[index];
+    let energy_ev = pair.value;
+    let p = pencil.mesh.order();
+    let density = density(subbands, index);
+    let at = |e: usize, q: usize| density[e * (p + 1) + q];
+    let centre_nm = moment(pencil, pair, pair);
+    let variance = integrate(pencil, |e, q| {
+        let distance = pencil.mesh.position(&pencil.mesh.elements[e], q) - centre_nm;
+        at(e, q) * distance * distance
+    });
+    let layers = pencil.mesh.elements.last().map_or(0, |e| e.segment + 1);
+    let mut shares = vec![0.0; layers];
+    integrate(pencil, |e, q| {
+        let element = &pencil.mesh.elements[e];
+        shares[element.segment] += 0.5 * element.length * pencil.mesh.reference.weights[q] * at(e, q);
+        0.0
+    });
+    let (layer, layer_share) =
+        shares.iter().copied().enumerate().max_by(|a, b| a.1.total_cmp(&b.1)).unwrap_or((0, 0.0));
+    let kinetic = integrate(pencil, |e, q| {
+        let value = pencil.mesh.local(e, &pair.vector)[q];
+        pencil.at(e)[q].a(energy_ev) * value * value
+    });
+    let (first, last) = (pencil.coefficients[0], pencil.coefficients[pencil.coefficients.len() - 1]);
+    let hold = if energy_ev > lower_outer_edge_ev(pencil) {
+        Hold::Walls
+    } else if energy_ev > first.constant.min(last.constant) {
+        Hold::Leaky
+    } else {
+        Hold::Bound
+    };
+    let wall_shift_ev = if hold == Hold::Bound {
+        let pressures = wall_pressures(subbands, index);
+        [first, last]
+            .iter()
+            .zip(pressures)
+            // The envelope falls by exp(−κ d): a wall moved out by d works against a pressure falling as exp(−2 κ d).
+            .map(|(c, pressure)| pressure / (2.0 * ((c.constant - energy_ev) / c.a(energy_ev)).sqrt()))
+            .sum()
+    } else {
+        0.0
+    };
+    State {
+        energy_ev,
+        from_edge_ev: energy_ev - subbands.lowest_edge_ev,
+        error_ev: subbands.errors_ev[index],
+        in_plane_mass_m0: HBAR2_OVER_2M0 / kinetic,
+        centre_nm,
+        extent_nm: variance.max(0.0).sqrt(),
+        layer,
+        layer_share,
+        hold,
+        wall_shift_ev,
+    }
+}
+
+/// −dE/dL at the lower and the upper wall: A ψ′² there, eV/nm.
+pub(super) fn wall_pressures(subbands: &Subbands, index: usize) -> [f64; 2] {
+    let pencil = &subbands.pencil;
+    let pair = &subbands.pairs[index];
+    let reference = pencil.mesh.reference;
+    let p = reference.order;
+    let mut slopes = [0.0; MAX_ORDER + 1];
+    let last = pencil.mesh.elements.len() - 1;
+    [(0, 0), (last, p)].map(|(e, q)| {
+        reference.slopes(pencil.mesh.local(e, &pair.vector), &mut slopes[..=p]);
+        let slope = 2.0 / pencil.mesh.elements[e].length * slopes[q];
+        pencil.at(e)[q].a(pair.value) * slope * slope
+    })
+}
