@@ -64,7 +64,7 @@ def closed_form(stack, parts, energy, num):
         if slope:
             # psi'' = alpha^3 (z - z0) psi; xi = alpha (z - z0)
             ratio = slope / a
-            alpha = lib.copysign(lib.cbrt(abs(ratio)), ratio) if num is float else mpmath.sign(ratio) * mpmath.cbrt(abs(ratio))
+            alpha = (1 if slope > 0 else -1) * lib.cbrt(abs(ratio))
             xi = (part.edge_ev - energy) / (a * alpha * alpha)
             left, right = (airy(value, num, known) for value in (xi, xi + alpha * h))
             scale = a * alpha
