@@ -56,8 +56,7 @@ pub fn count_below(pencil: &Pencil, lambda: f64) -> usize {
 pub fn improved_value(pencil: &Pencil, value: f64, vector: &[f64]) -> f64 {
     let mut matrix = pencil.storage();
     pencil.assemble(value, &mut matrix);
-    let mut vector = vector.to_vec();
-    step(pencil, &matrix.factor(), value, &mut vector)
+    Iterate::new(pencil, value, vector.to_vec()).step(&matrix.factor())
 }
 
 struct Search<'p> {
@@ -144,18 +143,19 @@ impl<'p> Search<'p> {
     /// ratio of the level's distance from the shift to its distance from the bracket's ends. While that ratio is small
     /// more solves with the same factors are cheaper than new factors.
     fn refine(&mut self, start: f64, factored: &Factored, low: f64, high: f64) -> Option<Eigenpair> {
-        let mut vector = start_vector(self.pencil, 0);
-        step(self.pencil, factored, start, &mut vector);
-        let mut value = step(self.pencil, factored, start, &mut vector);
+        let mut iterate = Iterate::new(self.pencil, start, start_vector(self.pencil, 0));
+        iterate.step(factored);
+        let mut value = iterate.step(factored);
         for _ in 0..20 {
             if !(value > low && value < high) {
                 return None;
             }
             let shift = value;
             let factored = self.factor(shift);
+            iterate.shift_to(shift);
             let mut rest = 1.0;
             while rest > CONVERGED {
-                value = step(self.pencil, &factored, shift, &mut vector);
+                value = iterate.step(&factored);
                 let ratio = (value - shift).abs() / (value - low).min(high - value);
                 if !(0.0..SLOW).contains(&ratio) {
                     rest = 1.0;
@@ -167,6 +167,7 @@ impl<'p> Search<'p> {
             // The quotient of a problem with poles is exact to second order in the shift's distance only.
             let linear = self.pencil.is_linear() || (value - shift).abs() < NEAR * self.range;
             if rest <= CONVERGED && linear {
+                let vector = iterate.vector;
                 return (value >= low && value <= high).then_some(Eigenpair { value, vector });
             }
         }
@@ -235,17 +236,40 @@ impl<'p> Search<'p> {
     }
 }
 
-/// x ← T⁻¹ N x, normalised; the return value is the Rayleigh quotient (for a problem with poles, Newton's step on it).
-fn step(pencil: &Pencil, factored: &Factored, lambda: f64, x: &mut [f64]) -> f64 {
-    let weighted = pencil.weight(lambda, lambda, x);
-    let inner = x.len() - 1;
-    x.copy_from_slice(&weighted);
-    factored.solve(&mut x[1..inner]);
-    let norm = pencil.inner(lambda, x, lambda, x);
-    let shift = dot(x, &weighted) / norm;
-    let scale = 1.0 / norm.sqrt();
-    x.iter_mut().for_each(|v| *v *= scale);
-    lambda + shift
+/// A vector under inverse iteration at one shift, with N x beside it.
+struct Iterate<'p> {
+    pencil: &'p Pencil,
+    shift: f64,
+    vector: Vec<f64>,
+    weighted: Vec<f64>,
+}
+
+impl<'p> Iterate<'p> {
+    fn new(pencil: &'p Pencil, shift: f64, vector: Vec<f64>) -> Self {
+        let weighted = pencil.weight(shift, shift, &vector);
+        Self { pencil, shift, vector, weighted }
+    }
+
+    fn shift_to(&mut self, shift: f64) {
+        self.shift = shift;
+        if !self.pencil.is_linear() {
+            self.weighted = self.pencil.weight(shift, shift, &self.vector);
+        }
+    }
+
+    /// x ← T⁻¹ N x, normalised; the return value is the Rayleigh quotient (for a problem with poles, Newton's step on
+    /// it).
+    fn step(&mut self, factored: &Factored) -> f64 {
+        let inner = self.vector.len() - 1;
+        self.vector.copy_from_slice(&self.weighted);
+        factored.solve(&mut self.vector[1..inner]);
+        let shifted = dot(&self.vector, &self.weighted);
+        self.weighted = self.pencil.weight(self.shift, self.shift, &self.vector);
+        let norm = dot(&self.vector, &self.weighted);
+        let scale = 1.0 / norm.sqrt();
+        self.vector.iter_mut().chain(&mut self.weighted).for_each(|v| *v *= scale);
+        self.shift + shifted / norm
+    }
 }
 
 /// A vector without symmetry, so that it has a part of every eigenvector.
