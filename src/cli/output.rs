@@ -30,11 +30,11 @@ pub fn write_whole(path: &Path, text: &str, inputs: &[&Path]) -> Result<(), Outp
 
 /// Refuses a path that names the same file as an input, also by another name.
 pub fn refuse_input(path: &Path, inputs: &[&Path]) -> Result<(), OutputError> {
-    let same = |input: &&Path| match (path.canonicalize(), input.canonicalize()) {
+    let same = |input: &Path| match (path.canonicalize(), input.canonicalize()) {
         (Ok(a), Ok(b)) => a == b,
-        _ => path == **input,
+        _ => path == input,
     };
-    if inputs.iter().any(same) { Err(OutputError::IsInput { path: path.to_owned() }) } else { Ok(()) }
+    if inputs.iter().any(|input| same(input)) { Err(OutputError::IsInput { path: path.to_owned() }) } else { Ok(()) }
 }
 
 /// A temporary file is private; what it becomes is a file like others.

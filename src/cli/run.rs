@@ -195,8 +195,8 @@ fn edits(outcome: &Outcome) -> Edits {
         let stack = &outcome.after.stack;
         match variable.knob {
             Knob::Width { entry } => {
-                let whole = outcome.continuous.as_ref().and(stack.monolayer_nm(entry));
-                let width_nm = stack.width_nm(entry).unwrap_or(variable.low);
+                let whole = outcome.continuous.as_ref().and(stack.entry_monolayer_nm(entry));
+                let width_nm = stack.entry_width_nm(entry).unwrap_or(variable.low);
                 edits.widths.push((
                     entry,
                     match whole {
@@ -230,12 +230,19 @@ fn materials(formula: Option<&str>, temperature: &str, output: &Output) -> Resul
         }
     };
     let Some(formula) = formula else {
-        return deliver(&MaterialList::new(), output.format, output.output.as_deref(), nowhere);
+        let list = MaterialList::new().map_err(|error| {
+            complain(&format!("error: {error}"));
+            Exit::NotPossible
+        })?;
+        return deliver(&list, output.format, output.output.as_deref(), nowhere);
     };
     match MaterialSheet::new(formula, temperature_k) {
         Ok(sheet) => deliver(&sheet, output.format, output.output.as_deref(), nowhere),
         Err(error) => {
             complain(&format!("error: {error}"));
+            if let Some(hint) = error.hint() {
+                complain(&format!("help: {hint}"));
+            }
             Err(Exit::WrongInput)
         }
     }

@@ -57,15 +57,6 @@ impl<'s> ConductionOperator<'s> {
         self.stack
     }
 
-    /// The lowest band edge of the layers, the field left out, eV.
-    pub fn lowest_edge_ev(&self) -> f64 {
-        let bottoms = self.bottoms.iter().map(|c| c.constant);
-        let tops = (0..self.bottoms.len())
-            .filter(|&layer| !self.stack.is_uniform(layer))
-            .filter_map(|layer| self.stack.material_at(layer, 1.0).conduction_edge_ev);
-        bottoms.chain(tops).fold(f64::INFINITY, f64::min)
-    }
-
     /// A and C at fraction `t` of a layer, `z_nm` above the bottom of the stack: eV nm² and eV.
     pub fn at(&self, layer: usize, t: f64, z_nm: f64) -> Coefficient {
         let own = if self.stack.is_uniform(layer) || t <= 0.0 {
@@ -80,8 +71,9 @@ impl<'s> ConductionOperator<'s> {
     /// The slopes of A and C with respect to the fraction of an element in the layer's material, the field left out.
     pub fn fraction_slope(&self, layer: usize, t: f64, element: Element) -> Coefficient {
         let slope = |d: Dual| d.slope;
-        match coefficient(self.model, &self.stack.material_slope_at(layer, t, element)) {
-            Ok(c) => Coefficient {
+        let material = self.stack.material_slope_at(layer, t, element).ok();
+        match material.and_then(|material| coefficient(self.model, &material).ok()) {
+            Some(c) => Coefficient {
                 stiffness: slope(c.stiffness),
                 poles: c.poles.map(|pole| {
                     pole.map(|p| Pole {
@@ -93,7 +85,8 @@ impl<'s> ConductionOperator<'s> {
                 }),
                 constant: slope(c.constant),
             },
-            Err(_) => unchanging(&self.bottoms[layer]),
+            // A layer without that element, which the structure file check refuses.
+            None => unchanging(&self.bottoms[layer]),
         }
     }
 }

@@ -134,6 +134,11 @@ impl Levels {
         }
     }
 
+    /// Number of states that are listed.
+    pub fn states(&self) -> usize {
+        self.subbands.len()
+    }
+
     /// The two tables and the audit, without the title.
     pub fn tables(&self) -> String {
         let subbands = table(

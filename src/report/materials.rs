@@ -106,7 +106,7 @@ impl MaterialSheet {
             notes,
             sources: keys
                 .into_iter()
-                .filter_map(|key| Some(SourceRow { citation: citation(&key).ok().flatten()?.to_owned(), key }))
+                .filter_map(|key| Some(SourceRow { citation: citation(&key)?.to_owned(), key }))
                 .collect(),
         })
     }

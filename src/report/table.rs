@@ -1,12 +1,12 @@
 //! Plain text tables.
 
-use comfy_table::{CellAlignment, ContentArrangement, Table};
+use comfy_table::{CellAlignment, ContentArrangement, LineStyle, Table, TableStyle};
 
 /// A table with aligned columns, a rule under the header and none elsewhere. Columns listed in `words` are aligned to
 /// the left, numbers to the right.
 pub fn table(header: &[&str], words: &[usize], rows: Vec<Vec<String>>) -> String {
     let mut table = Table::new();
-    table.load_preset("     --            ");
+    table.load_style(TableStyle::new().header_separator(LineStyle::none().fill('-').junction('-')));
     table.set_content_arrangement(ContentArrangement::Disabled);
     table.set_header(header.to_vec());
     table.add_rows(rows);

@@ -4,7 +4,7 @@ use super::levels::Levels;
 use super::table::{significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
-use crate::structure::{Knob, Structure};
+use crate::structure::{Knob, Structure, Target};
 use crate::tune::{Design, Goal, Limit, Outcome, Variable};
 use serde::Serialize;
 
@@ -58,11 +58,16 @@ fn shown(variable: &Variable, value: f64) -> (f64, &'static str) {
 }
 
 impl Tuning {
+    /// Number of states that are listed.
+    pub fn states(&self) -> usize {
+        self.result.states()
+    }
+
     /// Gathers the report; `text` is the tuned structure file.
     pub fn new(structure: &Structure, outcome: &Outcome, text: String) -> Tuning {
         let Outcome { task, before, after, continuous, .. } = outcome;
         let name = |index: usize| format!("conduction {}", index + 1);
-        let wavelength_aims: Vec<bool> = structure.tune.iter().flat_map(|t| &t.aims).map(|a| a.target.is_wavelength()).collect();
+        let wavelength_aims: Vec<bool> = structure.tune.iter().flat_map(|t| &t.aims).map(|a| matches!(a.target, Target::WavelengthUm(_))).collect();
         let aims = (0..task.aims.len())
             .map(|a| {
                 let aim = &task.aims[a];
@@ -102,7 +107,7 @@ impl Tuning {
                 let at = |design: &Design| v.knob.value(&design.stack);
                 let after_value = at(after).unwrap_or(v.low);
                 let monolayers = match v.knob {
-                    Knob::Width { entry } => after.stack.monolayer_nm(entry).map(|one| after_value / one),
+                    Knob::Width { entry } => after.stack.entry_monolayer_nm(entry).map(|one| after_value / one),
                     _ => None,
                 };
                 VariableRow {

@@ -44,8 +44,6 @@ pub struct Subbands {
     pub pairs: Vec<Eigenpair>,
     /// Estimated discretisation error of each energy, eV.
     pub errors_ev: Vec<f64>,
-    /// The lowest band edge of the layers, the field left out, eV.
-    pub lowest_edge_ev: f64,
 }
 
 /// Solves for the `count` lowest states; fewer come back only when the stack is too small a box to hold them on the
@@ -80,7 +78,7 @@ pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subba
             (eigenpairs::improved_value(&finer, pair.value, &vector) - pair.value).abs()
         })
         .collect();
-    Subbands { pencil, pairs, errors_ev, lowest_edge_ev: operator.lowest_edge_ev() }
+    Subbands { pencil, pairs, errors_ev }
 }
 
 fn pencil_on(operator: &ConductionOperator, mesh: Mesh) -> Pencil {

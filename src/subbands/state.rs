@@ -21,7 +21,7 @@ pub enum Hold {
 #[derive(Clone, Debug)]
 pub struct State {
     pub energy_ev: f64,
-    /// Height above the lowest band edge of the stack's layers, the field left out.
+    /// Height above the lowest point of the band edge in the stack, the field included.
     pub from_edge_ev: f64,
     /// Estimated discretisation error of the energy.
     pub error_ev: f64,
@@ -129,7 +129,7 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
     };
     State {
         energy_ev,
-        from_edge_ev: energy_ev - subbands.lowest_edge_ev,
+        from_edge_ev: energy_ev - pencil.floor(),
         error_ev: subbands.errors_ev[index],
         in_plane_mass_m0: HBAR2_OVER_2M0 / kinetic,
         centre_nm,

@@ -1,9 +1,9 @@
 //! A stack at given values of its variables, solved and set against the aims.
 
 use super::aim::{Aim, Goal};
-use crate::models::{ConductionModel, ConductionOperator, Unsuitable};
+use crate::models::{ConductionOperator, Unsuitable};
 use crate::numerics::sensitivity::{Change, PairSlope, moment, moment_slope, pair_slopes, value_slope};
-use crate::structure::{Knob, Stack};
+use crate::structure::{ConductionModel, Knob, Stack};
 use crate::subbands::{self, Accuracy, Subbands, change};
 use nalgebra::{DMatrix, DVector};
 

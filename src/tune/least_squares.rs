@@ -4,7 +4,7 @@
 //! Variables run from 0 to 1. The cost is half the sum of the squared residuals.
 
 use argmin::core::{
-    ArgminError, Error, IterState, Jacobian, KV, Operator, Problem, Solver, State, TerminationReason, TerminationStatus,
+    ArgminError, Error, IterState, Jacobian, KV, Operator, Problem, Solver, TerminationReason, TerminationStatus,
 };
 use nalgebra::{DMatrix, DVector};
 

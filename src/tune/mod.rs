@@ -93,6 +93,7 @@ pub fn tune(structure: &Structure, stack: &Stack, accuracy: Accuracy, watch: Wat
 }
 
 fn judged(mut outcome: Outcome) -> Outcome {
+    outcome.after = on_written_steps(&outcome.task, &outcome.after, false).unwrap_or(outcome.after);
     outcome.met =
         outcome.task.aims.iter().zip(&outcome.after.values).map(|(aim, &value)| aim.goal.is_met(value)).collect();
     outcome.limits = limits::limits(&outcome.task, &outcome.after);
@@ -112,7 +113,7 @@ fn snapped(
     let half_step: Vec<f64> = (0..outcome.task.aims.len())
         .map(|a| steps.iter().map(|(_, step)| 0.5 * step[a].abs()).fold(0.0, f64::max))
         .collect();
-    outcome.after = whole.design;
+    outcome.after = on_written_steps(&outcome.task, &whole.design, true).unwrap_or(whole.design);
     let continuous = found.design;
     outcome.limits = limits::limits(&outcome.task, &continuous);
     outcome.met = (0..outcome.task.aims.len())
@@ -178,7 +179,7 @@ const FIELD_STEP_V_PER_NM: f64 = 1e-8;
 /// The design with its variables on the steps in which they are written. `whole` keeps widths in whole monolayers.
 fn on_written_steps(task: &Task, design: &Design, whole: bool) -> Option<Design> {
     let mut stack = design.stack.clone();
-    let monolayers = |stack: &Stack, entry| Some(stack.width_nm(entry)? / stack.monolayer_nm(entry)?);
+    let monolayers = |stack: &Stack, entry| Some(stack.entry_width_nm(entry)? / stack.entry_monolayer_nm(entry)?);
     for variable in &task.variables {
         let step = match variable.knob {
             Knob::Width { .. } => WIDTH_STEP_NM,
@@ -195,17 +196,17 @@ fn on_written_steps(task: &Task, design: &Design, whole: bool) -> Option<Design>
         for variable in &task.variables {
             if let Knob::Width { entry } = variable.knob {
                 let count = monolayers(&design.stack, entry)?.round();
-                let width_nm = count * stack.monolayer_nm(entry)?;
+                let width_nm = count * stack.entry_monolayer_nm(entry)?;
                 stack.set_width(entry, width_nm);
             }
         }
     }
-    let characters = subbands::layer_envelopes(&design.subbands, &design.stack);
+    // The step changes no order: the states are the design's own, by their numbers there.
     let mut same_states = task.clone();
     for (aim, &(from, to)) in same_states.aims.iter_mut().zip(&design.states) {
-        (aim.from, aim.to, aim.by_character) = (from, to, aim.by_character);
+        (aim.from, aim.to) = (from, to);
     }
-    same_states.design(stack, Some(&characters)).ok()
+    same_states.design(stack, None).ok()
 }
 
 /// The knob of one wish, with its bounds in inner units.
@@ -214,7 +215,7 @@ fn variable(wish: &structure::Variable, structure: &Structure, stack: &Stack) ->
     Some(match &wish.quantity {
         Varied::Width { entry, bounds } => {
             let nm = |bound: &crate::units::Quantity| match bound.unit.dimension {
-                crate::units::Dimension::Monolayers => Some(bound.number * stack.monolayer_nm(*entry)?),
+                crate::units::Dimension::Monolayers => Some(bound.number * stack.entry_monolayer_nm(*entry)?),
                 _ => Some(bound.value()),
             };
             Variable {

@@ -67,7 +67,7 @@ impl Snap<'_> {
         let Variable { knob, name, .. } = &self.task.variables[variable];
         let missing = || SnapError::NoMonolayer { name: name.clone() };
         let Knob::Width { entry } = *knob else { return Err(missing()) };
-        stack.monolayer_nm(entry).ok_or_else(missing)
+        stack.entry_monolayer_nm(entry).ok_or_else(missing)
     }
 
     /// Whole numbers around the continuous design, best first by the linearised aims.
@@ -234,7 +234,7 @@ pub fn monolayer_steps(task: &Task, design: &Design) -> Vec<(usize, DVector<f64>
     let slopes = task.value_slopes(design);
     (0..task.variables.len())
         .filter_map(|k| match task.variables[k].knob {
-            Knob::Width { entry } => Some((k, slopes.column(k) * design.stack.monolayer_nm(entry)?)),
+            Knob::Width { entry } => Some((k, slopes.column(k) * design.stack.entry_monolayer_nm(entry)?)),
             _ => None,
         })
         .collect()
