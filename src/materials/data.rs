@@ -251,7 +251,7 @@ struct TernaryFile {
 #[serde(untagged)]
 enum RawEntry {
     Short(RawValue),
-    Full(FullEntry),
+    Full(Box<FullEntry>),
 }
 
 #[derive(Deserialize)]
@@ -301,7 +301,7 @@ struct RawLinear {
 impl From<RawEntry> for FullEntry {
     fn from(raw: RawEntry) -> FullEntry {
         match raw {
-            RawEntry::Full(entry) => entry,
+            RawEntry::Full(entry) => *entry,
             RawEntry::Short(value) => FullEntry {
                 value,
                 varshni: None,
