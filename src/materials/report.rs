@@ -17,8 +17,9 @@ pub struct ReportRow {
     /// The symbol of that unit; empty for a pure number.
     pub unit: &'static str,
     pub origin: Origin,
-    /// How the least sure of the values behind it is known.
-    pub known: Known,
+    /// How the least sure of the tabulated values behind it is known; `None` when it comes from a relation or from the
+    /// structure file.
+    pub known: Option<Known>,
     /// Remarks of the tables, each led by the entry that it stands in.
     pub notes: Vec<String>,
     pub alternatives: Vec<Alternative>,
@@ -98,7 +99,7 @@ impl Library {
                     numbers: numbers[..key.components].to_vec(),
                     unit: key.unit(),
                     origin: Origin::Derived(""),
-                    known: Known::Given,
+                    known: None,
                     notes: Vec::new(),
                     alternatives: Vec::new(),
                 };
@@ -260,7 +261,7 @@ fn relation(parameter: Parameter) -> &'static str {
 }
 
 fn add<V>(row: &mut ReportRow, table: &'static str, entry: &Entry<V>) {
-    row.known = row.known.max(entry.known);
+    row.known = row.known.max(Some(entry.known));
     if let Some(note) = &entry.note {
         row.notes.push(format!("{table}: {note}"));
     }
