@@ -27,6 +27,17 @@ pub enum Known {
     FromMemory,
 }
 
+impl std::fmt::Display for Known {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        f.write_str(match self {
+            Known::Given => "given",
+            Known::Seen => "seen",
+            Known::Computed => "computed",
+            Known::FromMemory => "from memory",
+        })
+    }
+}
+
 impl Known {
     /// The words of the files.
     pub fn words(self) -> &'static str {
@@ -251,7 +262,7 @@ struct TernaryFile {
 #[serde(untagged)]
 enum RawEntry {
     Short(RawValue),
-    Full(FullEntry),
+    Full(Box<FullEntry>),
 }
 
 #[derive(Deserialize)]
@@ -301,7 +312,7 @@ struct RawLinear {
 impl From<RawEntry> for FullEntry {
     fn from(raw: RawEntry) -> FullEntry {
         match raw {
-            RawEntry::Full(entry) => entry,
+            RawEntry::Full(entry) => *entry,
             RawEntry::Short(value) => FullEntry {
                 value,
                 varshni: None,

@@ -21,7 +21,7 @@ pub struct Setting {
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Definition {
     /// The material to start from: a formula with fractions, a binary or another definition's name.
-    pub like: Option<String>,
+    pub(super) like: Option<String>,
     pub(super) values: Vec<Setting>,
     pub(super) bowing: Vec<Setting>,
     pub(super) choices: Vec<(&'static Key, String)>,
@@ -38,6 +38,15 @@ pub struct DefinitionProblem {
 }
 
 impl Definition {
+    /// A definition that starts from another material; `Definition::default()` starts from nothing, or from the library
+    /// entry that it changes.
+    pub fn like(material: &str) -> Self {
+        Self {
+            like: Some(material.to_owned()),
+            ..Self::default()
+        }
+    }
+
     /// Gives a parameter a value, in the inner unit of its key (nm, eV, GPa, or a pure number).
     ///
     /// # Errors
@@ -62,7 +71,7 @@ impl Definition {
             return Err(MaterialError::NoBowing { key: key.name });
         }
         let widest = key.range.1 - key.range.0;
-        if !(bowing.abs() <= widest) {
+        if !(-widest..=widest).contains(&bowing) {
             return Err(MaterialError::OutOfRange {
                 key: key.name,
                 number: bowing,

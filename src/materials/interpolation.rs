@@ -9,7 +9,7 @@ use super::keys::Parameter;
 use super::library::Library;
 use super::values::{Values, luttinger_of};
 
-/// Below this sum of its weights a quaternary is taken to first order about the binary that it then is.
+/// Below this product of its fractions a pair of a quaternary is at one of its ends.
 const CORNER: f64 = 1e-12;
 
 /// All parameters of a composition at a temperature.
@@ -139,7 +139,7 @@ impl<T: Number> Alloy<'_, T> {
         };
         let (first, second) = (self.end(a)?, self.end(b)?);
         let rest = one - x;
-        let mut values = first.zip(second, |p, q| x * p + rest * q);
+        let mut values = mean(first, second, x);
         let mut fitted = false;
         for entry in &data.entries {
             match entry.value {
@@ -169,7 +169,9 @@ impl<T: Number> Alloy<'_, T> {
         Ok(values)
     }
 
-    /// A(x) B(1−x) C(y) D(1−y): Glisson and others, J. Electron. Mater. 7, 1 (1978), eq. 1.
+    /// A(x) B(1−x) C(y) D(1−y): the bilinear mean of the four binaries and on it the bowing of the four ternaries, each
+    /// in proportion to the fraction of the element that stays (Moon, Antypas and James, J. Electron. Mater. 3, 635
+    /// (1974)). Every ternary contains the bilinear mean once, so that one of the two is taken off.
     fn two_and_two(
         &self,
         [a, b]: [Element; 2],
@@ -177,61 +179,56 @@ impl<T: Number> Alloy<'_, T> {
         x: T,
         y: T,
     ) -> Result<Values<T>, MaterialError> {
-        let one = T::constant(1.0);
-        let across = |five: Element| self.ternary(binary_index(a, five), binary_index(b, five), x);
-        let along =
-            |three: Element| self.ternary(binary_index(three, c), binary_index(three, d), y);
-        let (wx, wy) = (x * (one - x), y * (one - y));
-        if (wx + wy).value() < CORNER {
-            let three = if x.value() > 0.5 { a } else { b };
-            let five = if y.value() > 0.5 { c } else { d };
-            let corner = self.end(binary_index(three, five))?;
-            let sum = across(five)?.zip(&along(three)?, |p, q| p + q);
-            return Ok(sum.zip(corner, |p, q| p - q));
-        }
-        Ok(weighted_mean([
-            (wx * y, across(c)?),
-            (wx * (one - y), across(d)?),
-            (wy * x, along(a)?),
-            (wy * (one - x), along(b)?),
-        ]))
+        let across = |five: Element| (binary_index(a, five), binary_index(b, five));
+        let along = |three: Element| (binary_index(three, c), binary_index(three, d));
+        let ternary = |(p, q): (usize, usize), share: T| self.ternary(p, q, share);
+        let straight = |(p, q): (usize, usize), share: T| self.straight(p, q, share);
+        let first = mean(&ternary(across(c), x)?, &ternary(across(d), x)?, y);
+        let second = mean(&ternary(along(a), y)?, &ternary(along(b), y)?, x);
+        let bilinear = mean(&straight(across(c), x)?, &straight(across(d), x)?, y);
+        let sum = first.zip(&second, |p, q| p + q);
+        Ok(sum.zip(&bilinear, |p, q| p - q))
     }
 
-    /// A(x) B(y) C(1−x−y) D, or the same with three elements of group V: Williams and others, J. Electron. Mater. 7,
-    /// 639 (1978). Each ternary is taken at the middle of its fractions, (1 + x − y)/2.
+    /// A(x) B(y) C(z) D with x + y + z = 1, or the same with three elements of group V: the linear mean of the three
+    /// binaries and on it x y C for each pair, C being the pair's bowing at the middle of its fractions, u = (1 + x − y)/2
+    /// (Donati, Kaspi and Malloy, J. Appl. Phys. 94, 5814 (2003)).
     fn three_and_one(
         &self,
         [a, b, c]: [usize; 3],
         [x, y, z]: [T; 3],
     ) -> Result<Values<T>, MaterialError> {
         let one = T::constant(1.0);
-        if (x * y + y * z + x * z).value() < CORNER {
-            let mut order = [(a, x), (b, y), (c, z)];
-            order.sort_by(|p, q| q.1.value().total_cmp(&p.1.value()));
-            let [(corner, _), (second, u), (third, v)] = order;
-            let sum = self
-                .ternary(corner, second, one - u)?
-                .zip(&self.ternary(corner, third, one - v)?, |p, q| p + q);
-            return Ok(sum.zip(self.end(corner)?, |p, q| p - q));
+        let [first, second, third] = [self.end(a)?, self.end(b)?, self.end(c)?];
+        let mut sum = first
+            .zip(second, |p, q| x * p + y * q)
+            .zip(third, |p, q| p + z * q);
+        for (a, b, x, y) in [(a, b, x, y), (b, c, y, z), (a, c, x, z)] {
+            let u = (one + x - y) / T::constant(2.0);
+            let whole = u * (one - u);
+            // At an end of the pair its bowing vanishes as the smaller fraction; there the pair is taken by itself.
+            let (u, weight) = if whole.value() > CORNER {
+                (u, x * y / whole)
+            } else if x.value() > y.value() {
+                (one - y, one)
+            } else {
+                (x, one)
+            };
+            let bow = self
+                .ternary(a, b, u)?
+                .zip(&self.straight(a, b, u)?, |p, q| weight * (p - q));
+            sum = sum.zip(&bow, |p, q| p + q);
         }
-        let middle = |p: T, q: T| (one + p - q) / T::constant(2.0);
-        Ok(weighted_mean([
-            (x * y, self.ternary(a, b, middle(x, y))?),
-            (y * z, self.ternary(b, c, middle(y, z))?),
-            (x * z, self.ternary(a, c, middle(x, z))?),
-        ]))
+        Ok(sum)
+    }
+
+    fn straight(&self, a: usize, b: usize, x: T) -> Result<Values<T>, MaterialError> {
+        Ok(mean(self.end(a)?, self.end(b)?, x))
     }
 }
 
-fn weighted_mean<T: Number, const N: usize>(parts: [(T, Values<T>); N]) -> Values<T> {
-    let mut total: Option<(T, Values<T>)> = None;
-    for (weight, values) in parts {
-        let scaled = values.map(|p| weight * p);
-        total = Some(match total {
-            None => (weight, scaled),
-            Some((sum, mean)) => (sum + weight, mean.zip(&scaled, |p, q| p + q)),
-        });
-    }
-    let (sum, values) = total.unwrap_or((T::constant(1.0), Values::empty()));
-    values.map(|p| p / sum)
+/// The linear mean with a fraction x of the first.
+fn mean<T: Number>(first: &Values<T>, second: &Values<T>, x: T) -> Values<T> {
+    let rest = T::constant(1.0) - x;
+    first.zip(second, |p, q| x * p + rest * q)
 }

@@ -375,11 +375,13 @@ impl Library {
             }
             share = (share + step).clamp(0.0, 1.0);
         }
-        if !((at(share)?.value - lattice_constant_nm).abs() < 1e-9) {
-            return Err(no_match());
+        let missed_nm = (at(share)?.value - lattice_constant_nm).abs();
+        if missed_nm < 1e-9 {
+            let matched = family.at(share)?;
+            Ok(Composition::new(matched.elements, matched.fractions))
+        } else {
+            Err(no_match())
         }
-        let matched = family.at(share)?;
-        Ok(Composition::new(matched.elements, matched.fractions))
     }
 }
 

@@ -17,8 +17,9 @@ pub struct ReportRow {
     /// The symbol of that unit; empty for a pure number.
     pub unit: &'static str,
     pub origin: Origin,
-    /// How the least sure of the values behind it is known.
-    pub known: Known,
+    /// How the least sure of the tabulated values behind it is known; `None` when it comes from a relation or from the
+    /// structure file.
+    pub known: Option<Known>,
     /// Remarks of the tables, each led by the entry that it stands in.
     pub notes: Vec<String>,
     pub alternatives: Vec<Alternative>,
@@ -52,6 +53,17 @@ impl fmt::Display for Origin {
             ),
             Origin::Derived(relation) => f.write_str(relation),
             Origin::Definition(name) => write!(f, "{STRUCTURE_FILE}: {name}"),
+        }
+    }
+}
+
+impl Origin {
+    /// Keys of the sources that the value comes from.
+    pub fn sources(&self) -> Vec<String> {
+        match self {
+            Origin::Tabulated(source) => vec![source.clone()],
+            Origin::Interpolated { sources, .. } => sources.clone(),
+            Origin::Derived(_) | Origin::Definition(_) => Vec::new(),
         }
     }
 }
@@ -98,7 +110,7 @@ impl Library {
                     numbers: numbers[..key.components].to_vec(),
                     unit: key.unit(),
                     origin: Origin::Derived(""),
-                    known: Known::Given,
+                    known: None,
                     notes: Vec::new(),
                     alternatives: Vec::new(),
                 };
@@ -260,7 +272,7 @@ fn relation(parameter: Parameter) -> &'static str {
 }
 
 fn add<V>(row: &mut ReportRow, table: &'static str, entry: &Entry<V>) {
-    row.known = row.known.max(entry.known);
+    row.known = row.known.max(Some(entry.known));
     if let Some(note) = &entry.note {
         row.notes.push(format!("{table}: {note}"));
     }
