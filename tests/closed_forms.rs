@@ -60,17 +60,19 @@ fn well_between_hard_walls_with_dipoles_and_sum_rule() {
     }
     let strength = find(0, 1).normalised_strength;
     assert!((strength / number("1.1", "f_12") - 1.0).abs() < 1e-6, "f12 = {strength}");
-    // Thomas–Reiche–Kuhn: the strengths from the ground state add up to 1; the tail falls as 1/n⁵.
+    // Thomas–Reiche–Kuhn: the strengths from the ground state, (64/π²) n²/(n² − 1)³ for even n, add up to 1.
     let many = solved(text, 40);
     let sum: f64 = transitions(&many).iter().filter(|t| t.from == 0).map(|t| t.normalised_strength).sum();
-    assert!((sum - 1.0).abs() < 1e-6, "sum {sum}");
+    let strength = |n: f64| 64.0 / std::f64::consts::PI.powi(2) * n * n / (n * n - 1.0).powi(3);
+    let beyond: f64 = (21..20_000).map(|k| strength(2.0 * f64::from(k))).sum();
+    assert!((sum + beyond - 1.0).abs() < 1e-9, "sum {sum} and {beyond} beyond");
 }
 
 #[test]
 fn finite_wells() {
     let wells = [
-        ("1.2a", "6.7e-2", "0.24 eV", "0.092", 100.0, 50.0, ""),
-        ("1.2b", "6.7e-2", "0.24 eV", "0.067", 100.0, 50.0, ""),
+        ("1.2a", "6.7e-2", "0.24 eV", "0.092", 100.0, 150.0, ""),
+        ("1.2b", "6.7e-2", "0.24 eV", "0.067", 100.0, 150.0, ""),
         ("1.3a", "0.067", "0.24 eV", "0.092", 65.0, 40.0, "1.519 eV/1.8 eV"),
         ("1.3b", "0.067", "0.24 eV", "0.092", 65.0, 40.0, ""),
         ("1.3c", "0.043", "0.52 eV", "0.075", 60.0, 30.0, "0.79 eV/1.45 eV"),

@@ -130,7 +130,7 @@ fn parameter_row(row: &ReportRow) -> ParameterRow {
         value: numbers.join(" / "),
         unit: row.unit,
         source: row.origin.to_string(),
-        known: row.known.to_string(),
+        known: row.known.map_or(String::new(), |known| known.to_string()),
     }
 }
 

@@ -2,7 +2,7 @@
 
 use super::document::Node;
 use super::rewrite::FreeLine;
-use crate::materials::{Composition, Definition, Family};
+use crate::materials::{Element, Library, Substance};
 use crate::units::Quantity;
 use std::ops::Range;
 
@@ -36,8 +36,8 @@ pub struct Structure {
     /// The field along the growth direction; `None` when the file has no such key.
     pub field: Option<Spanned<Quantity>>,
     pub conduction: ConductionBand,
-    /// Materials that the file defines or changes, by name.
-    pub definitions: Vec<(String, Definition)>,
+    /// The library with the materials that the file defines or changes.
+    pub library: Library,
     /// The file's layers in its order, each once, however often it is repeated.
     pub entries: Vec<LayerEntry>,
     /// How the entries follow one another, bottom first.
@@ -80,6 +80,7 @@ pub struct LayerEntry {
     pub name: Option<String>,
     /// The name, or else `layer 3`, counted over the file from 1.
     pub label: String,
+    /// A family stands for an alloy whose amounts follow from the substrate.
     pub material: Spanned<Substance>,
     /// A length or a number of monolayers.
     pub width: Spanned<Quantity>,
@@ -92,17 +93,6 @@ pub struct LayerEntry {
     pub acceptors_cm3: f64,
     /// The layer's bytes.
     pub span: Range<usize>,
-}
-
-/// What a layer consists of.
-#[derive(Clone, Debug, PartialEq)]
-pub enum Substance {
-    /// A formula with its amounts.
-    Alloy(Composition),
-    /// An alloy whose amounts follow from the substrate's lattice constant.
-    Matched(Family),
-    /// A material that the file defines.
-    Named(String),
 }
 
 /// How a graded layer goes from its lower to its upper material.
@@ -141,7 +131,7 @@ pub enum Varied {
     /// The fraction of an element in the layer's `material`; the host element of its sublattice compensates.
     Fraction {
         entry: usize,
-        element: String,
+        element: Element,
         bounds: [f64; 2],
     },
     /// The field.

@@ -1,8 +1,8 @@
 //! The whole of a structure file: text in, checked structure and messages out.
 
 use super::document::{self, Node, Value};
-use super::fields::{Checker, Limits, above};
-use super::file::{ConductionBand, ConductionModel, Spanned, Structure, Substance};
+use super::fields::{Checker, Limits};
+use super::file::{ConductionBand, ConductionModel, Structure};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
 use super::{read_materials, read_tune};
@@ -10,7 +10,17 @@ use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
 const KEYS: [&str; 11] = [
-    "title", "substrate", "temperature", "field", "ends", "bands", "materials", "layers", "tune", "growth", "tolerance",
+    "title",
+    "substrate",
+    "temperature",
+    "field",
+    "ends",
+    "bands",
+    "materials",
+    "layers",
+    "tune",
+    "growth",
+    "tolerance",
 ];
 /// Parts of the format that other commands will read one day.
 const UNREAD: [&str; 2] = ["growth", "tolerance"];
@@ -36,7 +46,11 @@ pub fn read(text: &str) -> (Option<Structure>, Vec<Diagnostic>) {
     };
     let structure = structure(&mut checker, &root);
     let mut problems = checker.problems;
-    let wrong = |problems: &[Diagnostic]| problems.iter().any(|problem| problem.severity == Severity::Error);
+    let wrong = |problems: &[Diagnostic]| {
+        problems
+            .iter()
+            .any(|problem| problem.severity == Severity::Error)
+    };
     let structure = structure.filter(|_| !wrong(&problems));
     if let Some(structure) = &structure {
         match structure.stack() {
@@ -64,6 +78,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     if root.value == Value::Null {
         checker.report(
             Diagnostic::error("the file is empty")
+                .at(0..0)
                 .expected("a structure with at least `layers:`"),
         );
         return None;
@@ -73,14 +88,18 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         .get("title")
         .and_then(|node| checker.scalar(node, "a title"))
         .map(str::to_owned);
-    let definitions = match fields.get("materials") {
+    let materials = match fields.get("materials") {
         Some(node) => read_materials::materials(checker, node),
-        None => Vec::new(),
+        None => read_materials::Materials::default(),
     };
-    let named: Vec<String> = definitions.iter().map(|(name, _)| name.clone()).collect();
+    let known = Known {
+        library: &materials.library,
+        mistaken: &materials.mistaken,
+        has_substrate: fields.has("substrate"),
+    };
     let substrate = fields
         .get("substrate")
-        .map(|node| read_layers::substance(checker, node, &named, false));
+        .map(|node| read_layers::substance(checker, node, &known, false));
     let temperature = fields
         .get("temperature")
         .map(|node| checker.quantity(node, &[Dimension::Temperature], TEMPERATURE_LIMITS));
@@ -94,11 +113,12 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         Some(node) => bands(checker, node),
         None => conduction_default(),
     };
-    checker.missing(&fields, "the file", "layers", "[{material: GaAs, width: 5.2 nm}]");
-    let known = Known {
-        named: &named,
-        has_substrate: fields.has("substrate"),
-    };
+    checker.missing(
+        &fields,
+        "the file",
+        "layers",
+        "[{material: GaAs, width: 5.2 nm}]",
+    );
     let layers = fields
         .get("layers")
         .and_then(|node| read_layers::layers(checker, node, &known));
@@ -117,13 +137,11 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     Some(Structure {
         title,
         substrate: settled(substrate)?,
-        temperature_k: settled(temperature)?.map_or(DEFAULT_TEMPERATURE_K, |found| found.value.value()),
+        temperature_k: settled(temperature)?
+            .map_or(DEFAULT_TEMPERATURE_K, |found| found.value.value()),
         field: settled(field)?,
         conduction,
-        definitions: definitions
-            .into_iter()
-            .map(|(name, definition)| Some((name, definition?)))
-            .collect::<Option<_>>()?,
+        library: materials.library,
         entries: layers
             .entries
             .into_iter()

@@ -2,23 +2,31 @@
 
 use super::document::{Node, line_of};
 use super::fields::{Checker, Limits, above, between};
-use super::file::{Item, LayerEntry, Profile, Spanned, Substance};
-use crate::diagnostics::{Diagnostic, probably_meant};
+use super::file::{Item, LayerEntry, Profile, Spanned};
+use crate::diagnostics::Diagnostic;
+use crate::materials::{Library, Substance};
 use crate::units::Dimension;
 use std::collections::HashMap;
 
 /// Bounds that keep sizes within what can be grown and solved; common practice.
-pub(super) const WIDTH_LIMITS: Limits =
-    above(0.0, 1e5, "a width above 0 nm, of at most 100 µm");
-pub(super) const FIELD_LIMITS: Limits =
-    between(-1.0, 1.0, "a field from -10 MV/cm to 10 MV/cm");
+pub(super) const WIDTH_LIMITS: Limits = above(0.0, 1e5, "a width above 0 nm, of at most 100 µm");
+pub(super) const FIELD_LIMITS: Limits = between(-1.0, 1.0, "a field from -10 MV/cm to 10 MV/cm");
 const DOPING_LIMITS: Limits = between(0.0, 1e22, "from 0 to 1e22 cm^-3");
 const MAX_REPEATS: u32 = 10_000;
 /// How many layers the stack may have with its repeats laid out.
 pub(super) const MAX_LAYERS: usize = 20_000;
 
 const LAYER_KEYS: [&str; 10] = [
-    "material", "width", "name", "donors", "acceptors", "to", "profile", "match", "repeat", "layers",
+    "material",
+    "width",
+    "name",
+    "donors",
+    "acceptors",
+    "to",
+    "profile",
+    "match",
+    "repeat",
+    "layers",
 ];
 
 /// The layers as far as they could be read.
@@ -30,8 +38,9 @@ pub(super) struct Layers {
 
 /// What the materials of layers are read against.
 pub(super) struct Known<'k> {
-    /// The names of the materials that the file defines, mistaken definitions included.
-    pub named: &'k [String],
+    pub library: &'k Library,
+    /// The names of the file's own materials whose definitions are mistaken; nothing more is said about their use.
+    pub mistaken: &'k [String],
     pub has_substrate: bool,
 }
 
@@ -44,9 +53,11 @@ pub(super) fn layers(checker: &mut Checker, node: &Node, known: &Known) -> Optio
     let (sequence, total) = reader.items(checker, node)?;
     if total > MAX_LAYERS {
         checker.report(
-            Diagnostic::error(format!("the stack has {total} layers once its repeats are laid out"))
-                .at(checker.head(&node.span))
-                .expected(format!("at most {MAX_LAYERS}")),
+            Diagnostic::error(format!(
+                "the stack has {total} layers once its repeats are laid out"
+            ))
+            .at(checker.head(&node.span))
+            .expected(format!("at most {MAX_LAYERS}")),
         );
     }
     Some(Layers {
@@ -97,8 +108,15 @@ impl LayerReader<'_> {
             );
         }
         checker.missing(&fields, "this repeat", "repeat", "30");
-        checker.missing(&fields, "this repeat", "layers", "[{material: GaAs, width: 5.2 nm}]");
-        let count = fields.get("repeat").and_then(|node| checker.count(node, MAX_REPEATS));
+        checker.missing(
+            &fields,
+            "this repeat",
+            "layers",
+            "[{material: GaAs, width: 5.2 nm}]",
+        );
+        let count = fields
+            .get("repeat")
+            .and_then(|node| checker.count(node, MAX_REPEATS));
         let (items, layers) = self.items(checker, fields.get("layers")?)?;
         let count = count?;
         Some((
@@ -108,10 +126,17 @@ impl LayerReader<'_> {
     }
 
     /// Reads a layer and returns its index.
-    fn layer(&mut self, checker: &mut Checker, node: &Node, fields: &super::fields::Fields) -> usize {
+    fn layer(
+        &mut self,
+        checker: &mut Checker,
+        node: &Node,
+        fields: &super::fields::Fields,
+    ) -> usize {
         let index = self.entries.len();
         let name = fields.get("name").and_then(|node| self.name(checker, node));
-        let label = name.clone().unwrap_or_else(|| format!("layer {}", index + 1));
+        let label = name
+            .clone()
+            .unwrap_or_else(|| format!("layer {}", index + 1));
         let entry = self.content(checker, node, fields, name.clone(), label);
         self.entries.push((name, entry));
         index
@@ -124,7 +149,9 @@ impl LayerReader<'_> {
             checker.report(
                 Diagnostic::error(format!("two layers are named `{name}`"))
                     .at(node.span.clone())
-                    .expected(format!("another name; the first `{name}` is on line {line}")),
+                    .expected(format!(
+                        "another name; the first `{name}` is on line {line}"
+                    )),
             );
         } else {
             self.names.insert(name.clone(), node.span.start);
@@ -146,7 +173,10 @@ impl LayerReader<'_> {
             Some(node) => checker.word(node, &["substrate"]).is_some(),
             None => fields.has("match"),
         };
-        if matched && !self.known.has_substrate && let Some(node) = fields.get("match") {
+        if matched
+            && !self.known.has_substrate
+            && let Some(node) = fields.get("match")
+        {
             checker.report(
                 Diagnostic::error("this layer is to match the substrate, but the file names none")
                     .at(node.span.clone())
@@ -155,13 +185,17 @@ impl LayerReader<'_> {
         }
         let material = fields
             .get("material")
-            .and_then(|node| substance(checker, node, self.known.named, matched));
+            .and_then(|node| substance(checker, node, self.known, matched));
         let to = match fields.get("to") {
-            Some(node) => substance(checker, node, self.known.named, matched).map(Some),
+            Some(node) => substance(checker, node, self.known, matched).map(Some),
             None => Some(None),
         };
         let width = fields.get("width").and_then(|node| {
-            checker.quantity(node, &[Dimension::Length, Dimension::Monolayers], WIDTH_LIMITS)
+            checker.quantity(
+                node,
+                &[Dimension::Length, Dimension::Monolayers],
+                WIDTH_LIMITS,
+            )
         });
         let profile = match fields.get("profile") {
             Some(node) => {
@@ -191,10 +225,58 @@ impl LayerReader<'_> {
             material: material?,
             width: width?,
             to: to?,
-            profile: if profile? == "parabolic" { Profile::Parabolic } else { Profile::Linear },
+            profile: if profile? == "parabolic" {
+                Profile::Parabolic
+            } else {
+                Profile::Linear
+            },
             donors_cm3: donors_cm3?,
             acceptors_cm3: acceptors_cm3?,
             span: node.span.clone(),
         })
     }
+}
+
+/// A material by formula or by name; an alloy with open fractions only where these are `matched` to the substrate.
+pub(super) fn substance(
+    checker: &mut Checker,
+    node: &Node,
+    known: &Known,
+    matched: bool,
+) -> Option<Spanned<Substance>> {
+    let expected = "a formula such as `Al0.26Ga0.74As`, or the name of a material of this file";
+    let text = checker.scalar(node, expected)?;
+    let found = known.library.find(text);
+    if known.mistaken.iter().any(|name| name == text) && !matches!(found, Ok(Substance::Alloy(_))) {
+        return None;
+    }
+    let error = match found {
+        Ok(family @ Substance::Family(_)) if !matched => {
+            // The library says which fractions it would need.
+            known.library.material(&family, 0.0).err()?
+        }
+        Ok(Substance::Alloy(composition)) if matched => {
+            checker.report(
+                Diagnostic::error(format!(
+                    "`{text}` leaves no fraction open to match the substrate"
+                ))
+                .at(node.span.clone())
+                .expected(format!(
+                    "an alloy without numbers, or no `match` beside `{}`",
+                    composition.formula()
+                )),
+            );
+            return None;
+        }
+        Ok(substance) => return Some(Spanned::new(substance, node)),
+        Err(error) => error,
+    };
+    let problem = Diagnostic::error(error.to_string())
+        .at(node.span.clone())
+        .expected(format!("expected {expected}"));
+    checker.report(match error.hint() {
+        Some(hint) => problem.hint(hint),
+        None => problem,
+    });
+    None
 }

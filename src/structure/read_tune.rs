@@ -1,12 +1,12 @@
 //! The `tune` part of a structure file.
 
 use super::document::{Node, Value, line_of};
-use super::fields::{Checker, Fields, Limits, above, between};
-use super::file::{Aim, Follow, LayerEntry, Level, Substance, Target, Tune, Variable, Varied, Within};
+use super::fields::{Checker, Fields, Limits, above, between, one_of};
+use super::file::{Aim, Follow, LayerEntry, Level, Target, Tune, Variable, Varied, Within};
 use super::read_layers::{FIELD_LIMITS, WIDTH_LIMITS};
 use crate::diagnostics::{Diagnostic, probably_meant};
+use crate::materials::{Element, MaterialError, Substance};
 use crate::units::{self, Dimension, Quantity};
-use std::ops::Range;
 
 /// The highest level that can be asked for; far more than any well holds.
 pub(super) const MAX_LEVELS: u32 = 200;
@@ -26,7 +26,12 @@ pub(super) fn tune(
     entries: &[(Option<String>, Option<LayerEntry>)],
 ) -> Option<Tune> {
     let fields = checker.fields(node, "`tune`", &["vary", "aims", "snap"])?;
-    checker.missing(&fields, "`tune`", "vary", "[{layer: well, width: [3 nm, 9 nm]}]");
+    checker.missing(
+        &fields,
+        "`tune`",
+        "vary",
+        "[{layer: well, width: [3 nm, 9 nm]}]",
+    );
     checker.missing(
         &fields,
         "`tune`",
@@ -34,11 +39,21 @@ pub(super) fn tune(
         "[{from: conduction 1, to: conduction 2, wavelength: 8.6 µm}]",
     );
     let vary = fields.get("vary").and_then(|node| {
-        let items = filled_list(checker, node, "nothing to vary", "layer widths, fractions or the field")?;
+        let items = filled_list(
+            checker,
+            node,
+            "nothing to vary",
+            "layer widths, fractions or the field",
+        )?;
         Some(variables(checker, items, entries))
     });
     let aims = fields.get("aims").and_then(|node| {
-        let items = filled_list(checker, node, "no aim", "energies, wavelengths or dipoles of transitions")?;
+        let items = filled_list(
+            checker,
+            node,
+            "no aim",
+            "energies, wavelengths or dipoles of transitions",
+        )?;
         Some(aims(checker, items))
     });
     let snap_to_monolayers = match fields.get("snap") {
@@ -82,7 +97,10 @@ fn variables(
             continue;
         };
         let span = checker.head(&item.span);
-        if let Some(first) = found.iter().find(|other| same_variable(&other.quantity, &quantity)) {
+        if let Some(first) = found
+            .iter()
+            .find(|other| same_variable(&other.quantity, &quantity))
+        {
             let line = line_of(checker.text, first.span.start);
             checker.report(
                 Diagnostic::error(format!("line {line} varies the same"))
@@ -100,8 +118,16 @@ fn same_variable(one: &Varied, other: &Varied) -> bool {
     match (one, other) {
         (Varied::Width { entry: a, .. }, Varied::Width { entry: b, .. }) => a == b,
         (
-            Varied::Fraction { entry: a, element: x, .. },
-            Varied::Fraction { entry: b, element: y, .. },
+            Varied::Fraction {
+                entry: a,
+                element: x,
+                ..
+            },
+            Varied::Fraction {
+                entry: b,
+                element: y,
+                ..
+            },
         ) => a == b && x == y,
         (Varied::Field { .. }, Varied::Field { .. }) => true,
         _ => false,
@@ -114,10 +140,17 @@ fn varied(
     entries: &[(Option<String>, Option<LayerEntry>)],
 ) -> Option<Varied> {
     let what = "an entry of `vary`";
-    let fields = checker.fields(item, what, &["layer", "width", "fraction", "between", "field"])?;
+    let fields = checker.fields(
+        item,
+        what,
+        &["layer", "width", "fraction", "between", "field"],
+    )?;
     let of_field = fields.get("field");
     if let Some(node) = of_field {
-        if ["layer", "width", "fraction", "between"].iter().any(|key| fields.has(key)) {
+        if ["layer", "width", "fraction", "between"]
+            .iter()
+            .any(|key| fields.has(key))
+        {
             checker.report(
                 Diagnostic::error("this entry varies the field and something of a layer")
                     .at(fields.head.clone())
@@ -125,8 +158,16 @@ fn varied(
             );
             return None;
         }
-        let [low, high] = quantities(checker, node, "[0 kV/cm, 60 kV/cm]", &[Dimension::Field], FIELD_LIMITS)?;
-        return Some(Varied::Field { bounds_v_per_nm: [low.value(), high.value()] });
+        let [low, high] = quantities(
+            checker,
+            node,
+            "[0 kV/cm, 60 kV/cm]",
+            &[Dimension::Field],
+            FIELD_LIMITS,
+        )?;
+        return Some(Varied::Field {
+            bounds_v_per_nm: [low.value(), high.value()],
+        });
     }
     if fields.has("field") {
         return None;
@@ -141,8 +182,13 @@ fn varied(
         );
         return None;
     }
-    let entry = fields.get("layer").and_then(|node| layer(checker, node, entries));
-    match (fields.has("width"), fields.has("fraction") || fields.has("between")) {
+    let entry = fields
+        .get("layer")
+        .and_then(|node| layer(checker, node, entries));
+    match (
+        fields.has("width"),
+        fields.has("fraction") || fields.has("between"),
+    ) {
         (true, false) => {
             let bounds = quantities(
                 checker,
@@ -151,14 +197,19 @@ fn varied(
                 &[Dimension::Length, Dimension::Monolayers],
                 WIDTH_LIMITS,
             );
-            Some(Varied::Width { entry: entry?, bounds: bounds? })
+            Some(Varied::Width {
+                entry: entry?,
+                bounds: bounds?,
+            })
         }
         (false, true) => fraction(checker, &fields, entry, entries),
         _ => {
             checker.report(
-                Diagnostic::error("an entry of `vary` holds either a width or a fraction of its layer")
-                    .at(fields.head.clone())
-                    .expected(format!("expected {example}")),
+                Diagnostic::error(
+                    "an entry of `vary` holds either a width or a fraction of its layer",
+                )
+                .at(fields.head.clone())
+                .expected(format!("expected {example}")),
             );
             None
         }
@@ -172,15 +223,21 @@ fn layer(
     entries: &[(Option<String>, Option<LayerEntry>)],
 ) -> Option<usize> {
     let name = checker.scalar(node, "the name of a layer")?;
-    let found = entries.iter().position(|(known, _)| known.as_deref() == Some(name));
+    let found = entries
+        .iter()
+        .position(|(known, _)| known.as_deref() == Some(name));
     if found.is_none() {
-        let names: Vec<&str> = entries.iter().filter_map(|(name, _)| name.as_deref()).collect();
-        let problem = Diagnostic::error(format!("no layer is named `{name}`")).at(node.span.clone());
+        let names: Vec<&str> = entries
+            .iter()
+            .filter_map(|(name, _)| name.as_deref())
+            .collect();
+        let problem =
+            Diagnostic::error(format!("no layer is named `{name}`")).at(node.span.clone());
         checker.report(match probably_meant(name, names.iter().copied()) {
             Some(meant) => problem.hint(format!("did you mean `{meant}`?")),
-            None if names.is_empty() => {
-                problem.hint(format!("give the layer that is meant a name: `name: {name}`"))
-            }
+            None if names.is_empty() => problem.hint(format!(
+                "give the layer that is meant a name: `name: {name}`"
+            )),
             None => problem.expected("the name that a layer has under `name:`"),
         });
     }
@@ -205,47 +262,103 @@ fn fraction(
             )
             .map(|bounds| (bounds, node.span.clone()))
     });
-    let element = fields
-        .get("fraction")
-        .and_then(|node| Some((checker.scalar(node, "the symbol of an element, such as `Al`")?, node)));
+    let element = fields.get("fraction").and_then(|node| {
+        let symbol = checker.scalar(node, "the symbol of an element, such as `Al`")?;
+        let element = Element::from_symbol(symbol);
+        if element.is_none() {
+            let symbols = Element::ALL.map(Element::symbol);
+            let problem = Diagnostic::error(format!("`{symbol}` is no element of the library"))
+                .at(node.span.clone())
+                .expected(format!("expected {}", one_of(&symbols)));
+            checker.report(match probably_meant(symbol, symbols) {
+                Some(meant) if meant.eq_ignore_ascii_case(symbol) => {
+                    problem.hint(format!("did you mean `{meant}`?"))
+                }
+                _ => problem,
+            });
+        }
+        Some((element?, node))
+    });
     let (element, node) = element?;
     let entry = entry?;
     let layer = entries.get(entry).and_then(|(_, layer)| layer.as_ref())?;
-    let refuse = |checker: &mut Checker, message: String, expected: &str| {
-        checker.report(Diagnostic::error(message).at(node.span.clone()).expected(expected.to_owned()));
-        None
+    let room = match room_of(layer, element) {
+        Ok(room) => room,
+        Err((message, expected)) => {
+            checker.report(
+                Diagnostic::error(message)
+                    .at(node.span.clone())
+                    .expected(expected),
+            );
+            return None;
+        }
     };
+    let (bounds, span) = bounds?;
+    // Formulas are written to 1e-5.
+    if bounds[1] > room.highest + 1e-5 {
+        checker.report(
+            Diagnostic::error(format!(
+                "the fraction of {} in layer `{}` cannot rise above {}",
+                element.symbol(),
+                layer.label,
+                room.highest
+            ))
+            .at(span)
+            .expected(format!(
+                "{} gives way to it, and the rest stays",
+                room.host.symbol()
+            )),
+        );
+        return None;
+    }
+    Some(Varied::Fraction {
+        entry,
+        element,
+        bounds,
+    })
+}
+
+/// How far the fraction of an element can go, and at whose cost.
+struct Room {
+    host: Element,
+    highest: f64,
+}
+
+/// The room of an element in the layer's composition, or why there is none and what was expected.
+fn room_of(layer: &LayerEntry, element: Element) -> Result<Room, (String, &'static str)> {
     let composition = match &layer.material.value {
         Substance::Alloy(composition) => composition,
-        Substance::Matched(family) => {
-            return refuse(
-                checker,
-                format!("the amounts of `{}` in layer `{}` are set by the substrate", family.formula(), layer.label),
-                "a layer whose formula says its amounts",
-            );
+        Substance::Family(family) => {
+            return Err((
+                format!(
+                    "the fractions of `{}` in layer `{}` follow from the substrate",
+                    family.formula(),
+                    layer.label
+                ),
+                "a layer whose formula gives its fractions",
+            ));
         }
         Substance::Named(name) => {
-            return refuse(
-                checker,
-                format!("`{name}` in layer `{}` is a material of this file without amounts", layer.label),
+            return Err((
+                format!(
+                    "`{name}` in layer `{}` is a material of this file, whose fractions are fixed",
+                    layer.label
+                ),
                 "a layer whose material is a formula such as `Al0.26Ga0.74As`",
-            );
+            ));
         }
     };
-    let partners = match composition.sublattice_of(element) {
-        None => {
-            let message = format!(
-                "layer `{}` is `{}`, which holds no `{element}`",
-                layer.label,
-                composition.formula()
-            );
-            return refuse(checker, message, "an element of the layer's formula");
-        }
-        Some(sublattice) => sublattice,
-    };
-    let _ = partners;
-    let (bounds, _span) = bounds?;
-    Some(Varied::Fraction { entry, element: element.to_owned(), bounds })
+    let host = composition.host(element).map_err(|error| {
+        let expected = match error {
+            MaterialError::NoSuchElement { .. } => "an element of the layer's formula",
+            _ => "an element that shares its group with another one",
+        };
+        (format!("layer `{}`: {error}", layer.label), expected)
+    })?;
+    Ok(Room {
+        host,
+        highest: composition.fraction(element) + composition.fraction(host),
+    })
 }
 
 fn quantities(
@@ -270,7 +383,11 @@ fn quantities(
     checker.pair(
         node,
         example,
-        |checker, node| checker.quantity(node, dimensions, limits).map(|found| found.value),
+        |checker, node| {
+            checker
+                .quantity(node, dimensions, limits)
+                .map(|found| found.value)
+        },
         Quantity::value,
     )
 }
@@ -284,9 +401,11 @@ fn aims(checker: &mut Checker, items: &[Node]) -> Vec<Aim> {
         if let Some(first) = found.iter().find(|other| contradict(other, &aim)) {
             let line = line_of(checker.text, first.span.start);
             checker.report(
-                Diagnostic::error(format!("the aim on line {line} is about the same property of the same transition"))
-                    .at(aim.span.clone())
-                    .expected("one value for each"),
+                Diagnostic::error(format!(
+                    "the aim on line {line} is about the same property of the same transition"
+                ))
+                .at(aim.span.clone())
+                .expected("one value for each"),
             );
             continue;
         }
@@ -297,16 +416,34 @@ fn aims(checker: &mut Checker, items: &[Node]) -> Vec<Aim> {
 
 /// Whether two aims want values of the same thing.
 fn contradict(one: &Aim, other: &Aim) -> bool {
-    let pair = |aim: &Aim| (aim.from.index.min(aim.to.index), aim.from.index.max(aim.to.index));
-    let about_energy = |aim: &Aim| matches!(aim.target, Target::EnergyEv(_) | Target::WavelengthUm(_));
-    pair(one) == pair(other) && one.follow == other.follow && about_energy(one) == about_energy(other)
+    let pair = |aim: &Aim| {
+        (
+            aim.from.index.min(aim.to.index),
+            aim.from.index.max(aim.to.index),
+        )
+    };
+    let about_energy =
+        |aim: &Aim| matches!(aim.target, Target::EnergyEv(_) | Target::WavelengthUm(_));
+    pair(one) == pair(other)
+        && one.follow == other.follow
+        && about_energy(one) == about_energy(other)
 }
 
 fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
     let fields = checker.fields(
         item,
         "an aim",
-        &["from", "to", "energy", "wavelength", "dipole", "maximize", "weight", "within", "follow"],
+        &[
+            "from",
+            "to",
+            "energy",
+            "wavelength",
+            "dipole",
+            "maximize",
+            "weight",
+            "within",
+            "follow",
+        ],
     )?;
     checker.missing(&fields, "this aim", "from", "conduction 1");
     checker.missing(&fields, "this aim", "to", "conduction 2");
@@ -339,7 +476,11 @@ fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
         target: target?,
         weight: weight?,
         within: within?,
-        follow: if follow? == "character" { Follow::Character } else { Follow::Order },
+        follow: if follow? == "character" {
+            Follow::Character
+        } else {
+            Follow::Order
+        },
         span: checker.head(&item.span),
     })
 }
@@ -363,17 +504,23 @@ fn level(checker: &mut Checker, node: &Node) -> Option<Level> {
     } else {
         match (index.map(str::parse::<u32>), rest) {
             (Some(Ok(index)), None) if (1..=MAX_LEVELS).contains(&index) => {
-                return Some(Level { index: index as usize });
+                return Some(Level {
+                    index: index as usize,
+                });
             }
             (Some(Ok(0)), None) => Diagnostic::error("levels are counted from 1"),
-            (Some(Ok(index)), None) => {
-                Diagnostic::error(format!("level {index} is beyond the {MAX_LEVELS} that can be solved"))
-            }
+            (Some(Ok(index)), None) => Diagnostic::error(format!(
+                "level {index} is beyond the {MAX_LEVELS} that can be solved"
+            )),
             (None, _) => Diagnostic::error("the number of the level is missing"),
             _ => Diagnostic::error(format!("`{text}` is no level")),
         }
     };
-    checker.report(problem.at(node.span.clone()).expected(format!("expected {expected}")));
+    checker.report(
+        problem
+            .at(node.span.clone())
+            .expected(format!("expected {expected}")),
+    );
     None
 }
 
@@ -391,15 +538,24 @@ fn target(checker: &mut Checker, fields: &Fields) -> Option<Target> {
         }
         [first, second, ..] => {
             checker.report(
-                Diagnostic::error(format!("this aim asks for `{first}` and `{second}` at once"))
-                    .at(fields.head.clone())
-                    .expected("one of them per aim"),
+                Diagnostic::error(format!(
+                    "this aim asks for `{first}` and `{second}` at once"
+                ))
+                .at(fields.head.clone())
+                .expected("one of them per aim"),
             );
             return None;
         }
     };
     let node = fields.get(key)?;
-    let mut length = |limits| Some(checker.quantity(node, &[Dimension::Length], limits)?.value.value());
+    let mut length = |limits| {
+        Some(
+            checker
+                .quantity(node, &[Dimension::Length], limits)?
+                .value
+                .value(),
+        )
+    };
     match key {
         "wavelength" => length(WAVELENGTH_LIMITS).map(|nm| Target::WavelengthUm(nm * 1e-3)),
         "dipole" => length(DIPOLE_LIMITS).map(Target::DipoleNm),
@@ -407,14 +563,18 @@ fn target(checker: &mut Checker, fields: &Fields) -> Option<Target> {
             let energy = checker.quantity(node, &[Dimension::Energy], ENERGY_LIMITS)?;
             Some(Target::EnergyEv(energy.value.value()))
         }
-        _ => checker.word(node, &["dipole"]).map(|_| Target::MaximizeDipole),
+        _ => checker
+            .word(node, &["dipole"])
+            .map(|_| Target::MaximizeDipole),
     }
 }
 
 fn within(checker: &mut Checker, node: &Node, target: Option<Target>) -> Option<Within> {
     let expected = match target? {
         Target::EnergyEv(_) => "an energy such as `1 meV`, or a part such as `1 %`",
-        Target::WavelengthUm(_) => "a length such as `20 nm`, an energy such as `1 meV`, or a part such as `1 %`",
+        Target::WavelengthUm(_) => {
+            "a length such as `20 nm`, an energy such as `1 meV`, or a part such as `1 %`"
+        }
         Target::DipoleNm(_) => "a length such as `0.1 nm`, or a part such as `1 %`",
         Target::MaximizeDipole => {
             checker.report(
@@ -446,9 +606,10 @@ fn within(checker: &mut Checker, node: &Node, target: Option<Target>) -> Option<
             Err(error) => error.to_string(),
         },
     };
-    checker.report(Diagnostic::error(problem).at(node.span.clone()).expected(format!("expected {expected}")));
+    checker.report(
+        Diagnostic::error(problem)
+            .at(node.span.clone())
+            .expected(format!("expected {expected}")),
+    );
     None
 }
-
-#[allow(dead_code)]
-fn unused(_: Range<usize>) {}

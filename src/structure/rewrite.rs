@@ -1,15 +1,16 @@
 //! Writing tuned values back into the text they came from, with every other byte kept.
 
-use super::file::{Spanned, Structure, Substance};
+use super::file::{Spanned, Structure};
 use crate::diagnostics::Diagnostic;
-use crate::materials::Composition;
+use crate::materials::{Composition, Element, Substance};
 use crate::units::{self, Dimension, Quantity, UNITS};
 use std::ops::Range;
 
 /// The smallest differences that are written: fine enough that levels move by a few µeV at most.
 const WIDTH_STEP_NM: f64 = 1e-4;
 const FIELD_STEP_V_PER_NM: f64 = 1e-8;
-const FRACTION_DECIMALS: usize = 5;
+/// Parts of which a written fraction is a whole number: 1e-5.
+const FRACTION_PARTS: f64 = 1e5;
 const MONOLAYER_DECIMALS: usize = 4;
 
 /// New values for a structure's text; what is not named stays.
@@ -52,7 +53,9 @@ pub fn rewrite(
         };
         let new = match *width {
             NewWidth::Monolayers(number) => format!("{} ML", decimal(number, MONOLAYER_DECIMALS)),
-            NewWidth::Length(nm) => in_unit_of(&layer.width.value, Dimension::Length, nm, WIDTH_STEP_NM),
+            NewWidth::Length(nm) => {
+                in_unit_of(&layer.width.value, Dimension::Length, nm, WIDTH_STEP_NM)
+            }
         };
         replace(text, &layer.width, new, &mut replacements, &mut problems);
     }
@@ -107,11 +110,17 @@ fn new_line(
 ) -> Result<(Range<usize>, String), Diagnostic> {
     let value = in_unit("kV/cm", field_v_per_nm, FIELD_STEP_V_PER_NM);
     let Some(line) = line else {
-        return Err(Diagnostic::error("the file has no line that a field can be written to")
-            .hint(format!("add `field: {value}` to it")));
+        return Err(
+            Diagnostic::error("the file has no line that a field can be written to")
+                .hint(format!("add `field: {value}` to it")),
+        );
     };
     let end = if text.contains("\r\n") { "\r\n" } else { "\n" };
-    let before = if line.at > 0 && !text[..line.at].ends_with('\n') { end } else { "" };
+    let before = if line.at > 0 && !text[..line.at].ends_with('\n') {
+        end
+    } else {
+        ""
+    };
     Ok((
         line.at..line.at,
         format!("{before}{}field: {value}{end}", line.indentation),
@@ -180,5 +189,56 @@ fn decimal(value: f64, decimals: usize) -> String {
         true => text.trim_end_matches('0').trim_end_matches('.'),
         false => &text,
     };
-    if text == "-0" { "0".to_owned() } else { text.to_owned() }
+    if text == "-0" {
+        "0".to_owned()
+    } else {
+        text.to_owned()
+    }
+}
+
+/// A composition in the order of elements of the old formula, an element that has vanished included, so that what the
+/// file says about it elsewhere stays true. The largest fraction of each group takes up what rounding leaves.
+fn formula_like(old: &str, new: &Composition) -> String {
+    let mut order: Vec<Element> = new.elements().to_vec();
+    order.sort_by_key(|element| old.find(element.symbol()));
+    let mut parts: Vec<(Element, i64)> = order
+        .into_iter()
+        .map(|element| {
+            let fraction = new.fraction(element);
+            (element, (fraction * FRACTION_PARTS).round() as i64)
+        })
+        .collect();
+    let groups: Vec<_> = parts
+        .iter()
+        .map(|(element, _)| element.sublattice())
+        .collect();
+    for group in &groups {
+        let of_group = |element: &Element| element.sublattice() == *group;
+        let sum: i64 = parts
+            .iter()
+            .filter(|(e, _)| of_group(e))
+            .map(|(_, n)| n)
+            .sum();
+        if let Some((_, largest)) = parts
+            .iter_mut()
+            .filter(|(e, _)| of_group(e))
+            .max_by_key(|(_, n)| *n)
+        {
+            *largest += FRACTION_PARTS as i64 - sum;
+        }
+    }
+    let alone = |element: &Element| {
+        groups
+            .iter()
+            .filter(|group| **group == element.sublattice())
+            .count()
+            == 1
+    };
+    parts
+        .iter()
+        .map(|(element, number)| match alone(element) {
+            true => element.symbol().to_owned(),
+            false => format!("{}{}", element.symbol(), *number as f64 / FRACTION_PARTS),
+        })
+        .collect()
 }

@@ -2,7 +2,7 @@
 //! not, so a fault of either shows.
 
 use super::Subbands;
-use super::state::integrate;
+use super::state::{edge_fluxes, integrate, wall_pressures};
 use crate::numerics::eigenpairs::count_below;
 use crate::numerics::pencil::Pencil;
 use crate::numerics::quadrature::MAX_ORDER;
@@ -142,7 +142,7 @@ fn force_deviation(subbands: &Subbands, envelope: &Envelope, index: usize) -> f6
     let reference = pencil.mesh.reference;
     let p = reference.order;
     let energy = pairs[index].value;
-    let flux = |k: usize, at: f64| at * envelope.slopes[k];
+    let edges = edge_fluxes(subbands, index);
     let (mut sum, mut size) = (0.0, 0.0);
     let mut add = |term: f64| {
         sum += term;
@@ -160,7 +160,7 @@ fn force_deviation(subbands: &Subbands, envelope: &Envelope, index: usize) -> f6
         reference.slopes(&constant[..=p], &mut constant_slope[..=p]);
         for q in 0..=p {
             let k = e * (p + 1) + q;
-            let flux = flux(k, nodes[q].a(energy));
+            let flux = nodes[q].a(energy) * envelope.slopes[k];
             // Half the length from the quadrature and its inverse from the slopes cancel.
             let inside = flux * flux * softness_slope[q] - envelope.values[k].powi(2) * constant_slope[q];
             add(reference.weights[q] * inside);
@@ -169,11 +169,11 @@ fn force_deviation(subbands: &Subbands, envelope: &Envelope, index: usize) -> f6
             let k = e * (p + 1) + p;
             let (below, above) = (&nodes[p], &pencil.at(e + 1)[0]);
             let (a_below, a_above) = (below.a(energy), above.a(energy));
-            let flux = 0.5 * (flux(k, a_below) + flux(k + 1, a_above));
+            let flux = 0.5 * (edges[e].1 + edges[e + 1].0);
             add(flux * flux * (1.0 / a_above - 1.0 / a_below) - (above.constant - below.constant) * envelope.values[k].powi(2));
         }
     }
-    let [lower, upper] = super::state::wall_pressures(subbands, index);
+    let [lower, upper] = wall_pressures(subbands, index);
     add(lower);
     add(-upper);
     // The last scale keeps a force-free stack (a wide tail at rest) from dividing rounding by nothing.

@@ -143,15 +143,34 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
 
 /// −dE/dL at the lower and the upper wall: A ψ′² there, eV/nm.
 pub(super) fn wall_pressures(subbands: &Subbands, index: usize) -> [f64; 2] {
+    let coefficients = &subbands.pencil.coefficients;
+    let energy_ev = subbands.pairs[index].value;
+    let fluxes = edge_fluxes(subbands, index);
+    let pressure = |flux: Option<f64>, at: usize| flux.map_or(0.0, |f| f * f / coefficients[at].a(energy_ev));
+    [pressure(fluxes.first().map(|f| f.0), 0), pressure(fluxes.last().map(|f| f.1), coefficients.len() - 1)]
+}
+
+/// A ψ′ at the bottom and the top of every element, from the equation tested with the edge's own polynomial: more exact
+/// than the slope of the interpolated envelope, and the same on both sides of an edge.
+pub(super) fn edge_fluxes(subbands: &Subbands, index: usize) -> Vec<(f64, f64)> {
     let pencil = &subbands.pencil;
     let pair = &subbands.pairs[index];
     let reference = pencil.mesh.reference;
     let p = reference.order;
     let mut slopes = [0.0; MAX_ORDER + 1];
-    let last = pencil.mesh.elements.len() - 1;
-    [(0, 0), (last, p)].map(|(e, q)| {
-        reference.slopes(pencil.mesh.local(e, &pair.vector), &mut slopes[..=p]);
-        let slope = 2.0 / pencil.mesh.elements[e].length * slopes[q];
-        pencil.at(e)[q].a(pair.value) * slope * slope
-    })
+    let mut tested = [0.0; MAX_ORDER + 1];
+    let elements = pencil.mesh.elements.iter().enumerate();
+    elements
+        .map(|(e, element)| {
+            let (values, nodes) = (pencil.mesh.local(e, &pair.vector), pencil.at(e));
+            reference.slopes(values, &mut slopes[..=p]);
+            for q in 0..=p {
+                let w = reference.weights[q];
+                slopes[q] *= 2.0 / element.length * w * nodes[q].a(pair.value);
+                tested[q] = 0.5 * element.length * w * (nodes[q].constant - pair.value) * values[q];
+            }
+            reference.add_slopes_transposed(&slopes[..=p], &mut tested[..=p]);
+            (-tested[0], tested[p])
+        })
+        .collect()
 }
