@@ -1,1 +1,3 @@
-//! Structure files, the layer stack and its profile.
+//! Structure files: reading, checking, and laying out as a stack of layers.
+
+pub mod document;
