@@ -71,6 +71,9 @@ pub(super) const fn between(lowest: f64, highest: f64, words: &'static str) -> L
     }
 }
 
+/// For values that are judged elsewhere.
+pub(super) const ANY: Limits = between(f64::MIN, f64::MAX, "any number");
+
 impl Checker<'_> {
     pub fn report(&mut self, problem: Diagnostic) {
         self.problems.push(problem);
@@ -137,10 +140,14 @@ impl Checker<'_> {
         );
     }
 
-    /// An absent value has no bytes, so the message points at the character before it, its key's colon.
+    /// An absent value has no bytes; the message then points at its key's colon.
     fn place_of_nothing(&self, span: &Range<usize>) -> Range<usize> {
-        if span.is_empty() && span.start > 0 {
-            span.start - 1..span.start
+        let colon = self
+            .text
+            .get(span.start..)
+            .is_some_and(|rest| rest.starts_with(':'));
+        if span.is_empty() && colon {
+            span.start..span.start + 1
         } else {
             span.clone()
         }
@@ -234,9 +241,9 @@ impl Checker<'_> {
         let problem = match units::split_number(text) {
             Some((number, "")) if limits.contain(number) => return Some(number),
             Some((_, "")) => Diagnostic::error(format!("`{text}` is out of range")),
-            Some((_, rest)) => Diagnostic::error(format!(
-                "`{rest}` follows a number that has no unit"
-            )),
+            Some((_, rest)) => {
+                Diagnostic::error(format!("`{rest}` follows a number that has no unit"))
+            }
             None => Diagnostic::error(format!("`{text}` is not a number")),
         };
         self.report(

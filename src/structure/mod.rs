@@ -1,3 +1,25 @@
-//! Structure files: reading, checking, and laying out as a stack of layers.
+//! Structure files: reading, checking, laying out as a stack of layers, and writing tuned values back.
+//!
+//! ```text
+//! text → document (nodes with places) → Structure (what the file says, checked) → Stack (flat layers, materials resolved)
+//! ```
 
 pub mod document;
+mod doubts;
+mod fields;
+mod file;
+mod grade;
+mod read;
+mod read_layers;
+mod read_materials;
+mod read_tune;
+mod rewrite;
+mod stack;
+
+pub use file::{
+    Aim, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile, Spanned,
+    Structure, Target, Tune, Variable, Varied, Within,
+};
+pub use read::read;
+pub use rewrite::{Edits, NewWidth, rewrite};
+pub use stack::{Layer, Stack};

@@ -1,0 +1,217 @@
+//! What only shows once materials are resolved: doubts about the physics, and bounds of tuning that do not fit.
+
+use super::file::{LayerEntry, Structure, Variable, Varied};
+use super::stack::{Stack, no_monolayer};
+use crate::diagnostics::Diagnostic;
+use crate::materials::{Material, Valley, strain};
+use crate::units::Dimension;
+use std::ops::Range;
+
+/// How far the tables may put a side valley from where it is: that of AlGaAs crosses at an Al fraction of 0.37 ± 0.015 in
+/// measurements and 0.417 in the usual tables, some 50 meV.
+const VALLEY_UNCERTAINTY_EV: f64 = 0.06;
+/// The strain beyond which coherent layers of useful width are not grown; common practice.
+const DOUBTFUL_STRAIN: f64 = 0.05;
+
+/// Messages, mostly warnings, about a structure and its stack.
+pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
+    let mut found = Vec::new();
+    let mut seen = vec![false; structure.entries.len()];
+    for (index, layer) in stack.layers.iter().enumerate() {
+        if let (Some(seen), Some(entry)) = (
+            seen.get_mut(layer.entry),
+            structure.entries.get(layer.entry),
+        ) && !*seen
+        {
+            *seen = true;
+            of_layer(entry, index, stack, &mut found);
+        }
+    }
+    if let Some(doped) = structure
+        .entries
+        .iter()
+        .find(|entry| entry.donors_cm3 > 0.0 || entry.acceptors_cm3 > 0.0)
+    {
+        found.push(
+            Diagnostic::warning(format!(
+                "{} is doped, but band bending by charge is not included",
+                doped.in_words()
+            ))
+            .at(first_line(doped)),
+        );
+    }
+    if let Some(tune) = &structure.tune {
+        for variable in &tune.vary {
+            of_variable(
+                structure,
+                stack,
+                variable,
+                tune.snap_to_monolayers,
+                &mut found,
+            );
+        }
+    }
+    found
+}
+
+/// Where a message about a layer points: its material, which stands on one line.
+fn first_line(entry: &LayerEntry) -> Range<usize> {
+    entry.material.span.clone()
+}
+
+fn of_layer(entry: &LayerEntry, layer: usize, stack: &Stack, found: &mut Vec<Diagnostic>) {
+    let faces: &[f64] = if stack.is_uniform(layer) {
+        &[0.0]
+    } else {
+        &[0.0, 1.0]
+    };
+    let name = entry.in_words();
+    let worst = faces
+        .iter()
+        .filter_map(|t| side_valley(&stack.material_at(layer, *t)))
+        .min_by(|(_, a), (_, b)| a.total_cmp(b));
+    if let Some((valley, above_ev)) = worst
+        && above_ev < VALLEY_UNCERTAINTY_EV
+    {
+        let valley = valley.symbol();
+        let mev = 1e3 * above_ev;
+        let message = if above_ev < 0.0 {
+            format!(
+                "{name} is indirect: its {valley} valley lies {:.0} meV below Γ",
+                -mev
+            )
+        } else {
+            format!("{name} is nearly indirect: its {valley} valley lies only {mev:.0} meV above Γ")
+        };
+        found.push(
+            Diagnostic::warning(message)
+                .at(first_line(entry))
+                .hint("levels are those of Γ; where the valleys cross is known to some 50 meV"),
+        );
+    }
+    if let Some(lattice) = stack.substrate_lattice_nm() {
+        let strains: Vec<Option<f64>> = faces
+            .iter()
+            .map(|t| Some(strain(&stack.material_at(layer, *t), lattice)?.in_plane))
+            .collect();
+        if strains.contains(&None) {
+            found.push(
+                Diagnostic::warning(format!(
+                    "{name} is taken as unstrained, because its material lacks `lattice_constant` or `elastic`"
+                ))
+                .at(first_line(entry)),
+            );
+        }
+        let most = strains.into_iter().flatten().fold(0.0_f64, |most, next| {
+            if next.abs() > most.abs() { next } else { most }
+        });
+        if most.abs() > DOUBTFUL_STRAIN {
+            found.push(
+                Diagnostic::warning(format!(
+                    "{name} is strained by {:.1} %, which hardly grows without dislocations",
+                    1e2 * most
+                ))
+                .at(first_line(entry)),
+            );
+        }
+    }
+    let width_nm = stack.layers.get(layer).map_or(0.0, |layer| layer.width_nm);
+    if let Some(monolayer) = stack.monolayer_nm(layer)
+        // A width of one monolayer may come out smaller by rounding.
+        && width_nm < monolayer * (1.0 - 1e-6)
+    {
+        found.push(
+            Diagnostic::warning(format!(
+                "{name} is thinner than one monolayer ({monolayer:.4} nm)"
+            ))
+            .at(entry.width.span.clone()),
+        );
+    }
+}
+
+/// The lower side valley and how far it lies above Γ, in eV.
+fn side_valley(material: &Material) -> Option<(Valley, f64)> {
+    let gap = material.gap_ev?;
+    [
+        (Valley::X, material.gap_x_ev),
+        (Valley::L, material.gap_l_ev),
+    ]
+    .into_iter()
+    .filter_map(|(valley, side)| Some((valley, side? - gap)))
+    .min_by(|(_, a), (_, b)| a.total_cmp(b))
+}
+
+fn of_variable(
+    structure: &Structure,
+    stack: &Stack,
+    variable: &Variable,
+    snap: bool,
+    found: &mut Vec<Diagnostic>,
+) {
+    let outside = |what: String, value: f64, bounds: [f64; 2]| {
+        let slack = 1e-9 * (bounds[1] - bounds[0]);
+        (value < bounds[0] - slack || value > bounds[1] + slack).then(|| {
+            Diagnostic::warning(format!("{what} lies outside its bounds"))
+                .at(variable.span.clone())
+                .hint("tuning starts at the nearer bound")
+        })
+    };
+    match &variable.quantity {
+        Varied::Width { entry, bounds } => {
+            let Some(layer) = structure.entries.get(*entry) else {
+                return;
+            };
+            let nm = |length| stack.length_nm(*entry, length);
+            let (Some(low), Some(high), Some(width)) =
+                (nm(&bounds[0]), nm(&bounds[1]), nm(&layer.width.value))
+            else {
+                found.push(no_monolayer(layer, &variable.span));
+                return;
+            };
+            let unknown = stack
+                .layers
+                .iter()
+                .position(|layer| layer.entry == *entry)
+                .is_some_and(|layer| stack.monolayer_nm(layer).is_none());
+            if snap && unknown && bounds[0].unit.dimension != Dimension::Monolayers {
+                found.push(
+                    no_monolayer(layer, &variable.span)
+                        .expected("a known monolayer, because of `snap: monolayer`"),
+                );
+            }
+            found.extend(outside(
+                format!("the width of {}, {}, ", layer.in_words(), layer.width.value)
+                    .trim_end_matches([',', ' '])
+                    .to_owned(),
+                width,
+                [low, high],
+            ));
+        }
+        Varied::Fraction {
+            entry,
+            element,
+            bounds,
+        } => {
+            if let (Some(layer), Some(composition)) =
+                (structure.entries.get(*entry), stack.composition(*entry))
+            {
+                found.extend(outside(
+                    format!(
+                        "the fraction of {} in {}",
+                        element.symbol(),
+                        layer.in_words()
+                    ),
+                    composition.fraction(*element),
+                    *bounds,
+                ));
+            }
+        }
+        Varied::Field { bounds_v_per_nm } => {
+            found.extend(outside(
+                "the field".to_owned(),
+                stack.field_v_per_nm,
+                *bounds_v_per_nm,
+            ));
+        }
+    }
+}

@@ -1,0 +1,190 @@
+//! What a structure file says, checked, with the places it was read from.
+
+use super::document::Node;
+use super::rewrite::FreeLine;
+use crate::materials::{Element, Library, Substance};
+use crate::units::Quantity;
+use std::ops::Range;
+
+/// A value with the bytes of the file it was read from.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Spanned<T> {
+    pub value: T,
+    /// In bytes, quotation marks included.
+    pub span: Range<usize>,
+    /// Whether an alias or a merge key makes these bytes stand for other places of the file too.
+    pub shared: bool,
+}
+
+impl<T> Spanned<T> {
+    pub(super) fn new(value: T, node: &Node) -> Self {
+        Self {
+            value,
+            span: node.span.clone(),
+            shared: node.shared,
+        }
+    }
+}
+
+/// A structure file that holds no mistake.
+#[derive(Clone, Debug)]
+pub struct Structure {
+    pub title: Option<String>,
+    /// The crystal that sets the in-plane lattice constant; without it nothing is strained.
+    pub substrate: Option<Spanned<Substance>>,
+    pub temperature_k: f64,
+    /// The field along the growth direction; `None` when the file has no such key.
+    pub field: Option<Spanned<Quantity>>,
+    pub conduction: ConductionBand,
+    /// The library with the materials that the file defines or changes.
+    pub library: Library,
+    /// The file's layers in its order, each once, however often it is repeated.
+    pub entries: Vec<LayerEntry>,
+    /// How the entries follow one another, bottom first.
+    pub sequence: Vec<Item>,
+    pub tune: Option<Tune>,
+    /// Where a top-level `field:` line can be added.
+    pub(super) field_line: Option<FreeLine>,
+}
+
+/// The conduction band that is to be solved.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct ConductionBand {
+    pub model: ConductionModel,
+    /// How many levels are asked for.
+    pub states: usize,
+}
+
+/// How the electron's mass depends on its energy.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum ConductionModel {
+    /// Not at all.
+    Parabolic,
+    /// As the material's energy-dependent mass says.
+    EnergyDependent,
+}
+
+/// One step of the layer sequence.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Item {
+    /// An index into [`Structure::entries`].
+    Layer(usize),
+    /// Steps that follow one another `count` times.
+    Repeat { count: u32, items: Vec<Item> },
+}
+
+/// A layer as the file has it.
+#[derive(Clone, Debug)]
+pub struct LayerEntry {
+    /// The name the user gave it; unique in the file.
+    pub name: Option<String>,
+    /// The name, or else `layer 3`, counted over the file from 1.
+    pub label: String,
+    /// A family stands for an alloy whose amounts follow from the substrate.
+    pub material: Spanned<Substance>,
+    /// A length or a number of monolayers.
+    pub width: Spanned<Quantity>,
+    /// The material at the upper face of a graded layer.
+    pub to: Option<Spanned<Substance>>,
+    pub profile: Profile,
+    /// Donors per volume, in cm⁻³.
+    pub donors_cm3: f64,
+    /// Acceptors per volume, in cm⁻³.
+    pub acceptors_cm3: f64,
+    /// The layer's bytes.
+    pub span: Range<usize>,
+}
+
+/// How a graded layer goes from its lower to its upper material.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Profile {
+    Linear,
+    /// With zero slope at the face whose conduction edge is lower.
+    Parabolic,
+}
+
+/// What tuning may change and what it aims at.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Tune {
+    pub vary: Vec<Variable>,
+    pub aims: Vec<Aim>,
+    /// Whether the varied widths are to end in whole monolayers.
+    pub snap_to_monolayers: bool,
+}
+
+/// Something that tuning may change, with its bounds, the lower first.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Variable {
+    pub quantity: Varied,
+    pub span: Range<usize>,
+}
+
+/// See [`Variable`].
+#[derive(Clone, Debug, PartialEq)]
+pub enum Varied {
+    /// The width of the layer entry, which all copies of a repeat share.
+    Width {
+        entry: usize,
+        /// Both lengths or both numbers of monolayers.
+        bounds: [Quantity; 2],
+    },
+    /// The fraction of an element in the layer's `material`; the host element of its sublattice compensates.
+    Fraction {
+        entry: usize,
+        element: Element,
+        bounds: [f64; 2],
+    },
+    /// The field.
+    Field { bounds_v_per_nm: [f64; 2] },
+}
+
+/// One aim of tuning: a property of the transition between two levels.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Aim {
+    pub from: Level,
+    pub to: Level,
+    pub target: Target,
+    /// More than 0.
+    pub weight: f64,
+    /// How near the result must come for the aim to count as reached, if the user says so.
+    pub within: Option<Within>,
+    pub follow: Follow,
+    pub span: Range<usize>,
+}
+
+/// A level of the conduction band, counted from 1 at the lowest.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Level {
+    pub index: usize,
+}
+
+/// What a transition shall have.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Target {
+    /// The distance of the levels.
+    EnergyEv(f64),
+    /// The vacuum wavelength of light of the levels' distance.
+    WavelengthUm(f64),
+    /// The dipole |⟨i|z|j⟩|.
+    DipoleNm(f64),
+    /// As large a dipole as can be.
+    MaximizeDipole,
+}
+
+/// A tolerance of an aim, in a unit that suits the target.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Within {
+    /// A part of the target's value.
+    Fraction(f64),
+    EnergyEv(f64),
+    LengthNm(f64),
+}
+
+/// Which level an aim means once levels cross.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Follow {
+    /// The one with this index.
+    Order,
+    /// The one with the shape that this index had in the file's structure.
+    Character,
+}

@@ -1,0 +1,261 @@
+//! The whole of a structure file: text in, checked structure and messages out.
+
+use super::document::{self, Node, Value};
+use super::fields::{Checker, Limits};
+use super::file::{ConductionBand, ConductionModel, Structure};
+use super::read_layers::{self, FIELD_LIMITS, Known};
+use super::rewrite::FreeLine;
+use super::{read_materials, read_tune};
+use crate::diagnostics::{Diagnostic, Severity};
+use crate::units::Dimension;
+
+const KEYS: [&str; 11] = [
+    "title",
+    "substrate",
+    "temperature",
+    "field",
+    "ends",
+    "bands",
+    "materials",
+    "layers",
+    "tune",
+    "growth",
+    "tolerance",
+];
+/// Parts of the format that other commands will read one day.
+const UNREAD: [&str; 2] = ["growth", "tolerance"];
+const TEMPERATURE_LIMITS: Limits =
+    super::fields::between(0.0, 1000.0, "a temperature from 0 K to 1000 K");
+const DEFAULT_TEMPERATURE_K: f64 = 300.0;
+const DEFAULT_STATES: u32 = 4;
+/// More messages than this help nobody.
+const MAX_MESSAGES: usize = 50;
+
+/// Reads and checks a structure file.
+///
+/// The structure is there when no message is an error. The messages, errors and warnings, come in the order of the file;
+/// all mistakes are reported, up to the fiftieth.
+pub fn read(text: &str) -> (Option<Structure>, Vec<Diagnostic>) {
+    let root = match document::parse(text) {
+        Ok(root) => root,
+        Err(problems) => return (None, problems),
+    };
+    let mut checker = Checker {
+        text,
+        problems: Vec::new(),
+    };
+    let structure = structure(&mut checker, &root);
+    let mut problems = checker.problems;
+    let wrong = |problems: &[Diagnostic]| {
+        problems
+            .iter()
+            .any(|problem| problem.severity == Severity::Error)
+    };
+    let structure = structure.filter(|_| !wrong(&problems));
+    if let Some(structure) = &structure {
+        match structure.stack() {
+            Ok(stack) => problems.extend(super::doubts::doubts(structure, &stack)),
+            Err(errors) => problems.extend(errors),
+        }
+    }
+    let structure = structure.filter(|_| !wrong(&problems));
+    problems.sort_by_key(|problem| problem.span.as_ref().map_or(0, |span| span.start));
+    if problems.len() > MAX_MESSAGES {
+        let more = problems.len() - MAX_MESSAGES;
+        // Errors must not be cut off by warnings that stand before them.
+        problems.sort_by_key(|problem| problem.severity == Severity::Warning);
+        problems.truncate(MAX_MESSAGES);
+        let rest = format!("{more} more messages are left out");
+        problems.push(match structure {
+            Some(_) => Diagnostic::warning(rest),
+            None => Diagnostic::error(rest),
+        });
+    }
+    (structure, problems)
+}
+
+fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
+    if root.value == Value::Null {
+        checker.report(
+            Diagnostic::error("the file is empty")
+                .at(0..0)
+                .expected("a structure with at least `layers:`"),
+        );
+        return None;
+    }
+    let fields = checker.fields(root, "a structure file", &KEYS)?;
+    let title = fields
+        .get("title")
+        .and_then(|node| checker.scalar(node, "a title"))
+        .map(str::to_owned);
+    let materials = match fields.get("materials") {
+        Some(node) => read_materials::materials(checker, node),
+        None => read_materials::Materials::default(),
+    };
+    let known = Known {
+        library: &materials.library,
+        mistaken: &materials.mistaken,
+        has_substrate: fields.has("substrate"),
+    };
+    let substrate = fields
+        .get("substrate")
+        .map(|node| read_layers::substance(checker, node, &known, false));
+    let temperature = fields
+        .get("temperature")
+        .map(|node| checker.quantity(node, &[Dimension::Temperature], TEMPERATURE_LIMITS));
+    let field = fields
+        .get("field")
+        .map(|node| checker.quantity(node, &[Dimension::Field], FIELD_LIMITS));
+    if let Some(node) = fields.get("ends") {
+        ends(checker, node);
+    }
+    let conduction = match fields.get("bands") {
+        Some(node) => bands(checker, node),
+        None => conduction_default(),
+    };
+    checker.missing(
+        &fields,
+        "the file",
+        "layers",
+        "[{material: GaAs, width: 5.2 nm}]",
+    );
+    let layers = fields
+        .get("layers")
+        .and_then(|node| read_layers::layers(checker, node, &known));
+    let entries = layers.as_ref().map_or(&[][..], |layers| &layers.entries);
+    let tune = fields
+        .get("tune")
+        .and_then(|node| read_tune::tune(checker, node, entries));
+    for key in UNREAD {
+        if let Some(place) = key_span(root, key) {
+            checker.report(
+                Diagnostic::warning(format!("`{key}` is not used by this version")).at(place),
+            );
+        }
+    }
+    let layers = layers?;
+    Some(Structure {
+        title,
+        substrate: settled(substrate)?,
+        temperature_k: settled(temperature)?
+            .map_or(DEFAULT_TEMPERATURE_K, |found| found.value.value()),
+        field: settled(field)?,
+        conduction,
+        library: materials.library,
+        entries: layers
+            .entries
+            .into_iter()
+            .map(|(_, entry)| entry)
+            .collect::<Option<_>>()?,
+        sequence: layers.sequence,
+        tune,
+        field_line: free_line(checker.text, root),
+    })
+}
+
+/// `None` when the key was there but mistaken.
+fn settled<T>(read: Option<Option<T>>) -> Option<Option<T>> {
+    match read {
+        Some(None) => None,
+        Some(found) => Some(found),
+        None => Some(None),
+    }
+}
+
+fn key_span(root: &Node, name: &str) -> Option<std::ops::Range<usize>> {
+    let Value::Map(entries) = &root.value else {
+        return None;
+    };
+    entries
+        .iter()
+        .find(|(key, _)| key.text() == Some(name))
+        .map(|(key, _)| key.span.clone())
+}
+
+fn ends(checker: &mut Checker, node: &Node) {
+    if let Some(word @ ("open" | "periodic")) = checker.word(node, &["walls", "open", "periodic"]) {
+        checker.report(
+            Diagnostic::error(format!("`ends: {word}` is not available yet"))
+                .at(node.span.clone())
+                .expected("`walls`"),
+        );
+    }
+}
+
+fn conduction_default() -> ConductionBand {
+    ConductionBand {
+        model: ConductionModel::Parabolic,
+        states: DEFAULT_STATES as usize,
+    }
+}
+
+/// `bands:`; what is mistaken in it has been reported and stays at its default.
+fn bands(checker: &mut Checker, node: &Node) -> ConductionBand {
+    let mut band = conduction_default();
+    let Some(fields) = checker.fields(node, "`bands`", &["conduction", "valence"]) else {
+        return band;
+    };
+    if fields.get("valence").is_some() {
+        let place = key_span(node, "valence").unwrap_or_else(|| fields.head.clone());
+        checker.report(
+            Diagnostic::error("valence bands are not available yet")
+                .at(place)
+                .expected("`conduction` only"),
+        );
+    }
+    let Some(node) = fields.get("conduction") else {
+        return band;
+    };
+    let Some(fields) = checker.fields(node, "`conduction`", &["model", "states"]) else {
+        return band;
+    };
+    if let Some(node) = fields.get("model") {
+        match checker.word(node, &["parabolic", "energy-dependent", "eight-band"]) {
+            Some("energy-dependent") => band.model = ConductionModel::EnergyDependent,
+            Some("eight-band") => checker.report(
+                Diagnostic::error("the model `eight-band` is not available yet")
+                    .at(node.span.clone())
+                    .expected("`parabolic` or `energy-dependent`"),
+            ),
+            _ => {}
+        }
+    }
+    if let Some(node) = fields.get("states")
+        && let Some(states) = checker.count(node, read_tune::MAX_LEVELS)
+    {
+        band.states = states as usize;
+    }
+    band
+}
+
+/// The line after the title, substrate and temperature, or else the file's first key.
+fn free_line(text: &str, root: &Node) -> Option<FreeLine> {
+    let Value::Map(entries) = &root.value else {
+        return None;
+    };
+    let (first, _) = entries.first()?;
+    if text.get(root.span.clone())?.starts_with('{') || root.shared {
+        return None;
+    }
+    let line_start = text[..first.span.start].rfind('\n').map_or(0, |at| at + 1);
+    let indentation = text.get(line_start..first.span.start)?;
+    if !indentation.trim_matches([' ', '\u{feff}']).is_empty() {
+        return None;
+    }
+    let last = entries
+        .iter()
+        .filter(|(key, value)| {
+            matches!(key.text(), Some("title" | "substrate" | "temperature")) && !value.shared
+        })
+        .map(|(key, value)| key.span.end.max(value.span.end))
+        .max();
+    let at = match last {
+        None => first.span.start - indentation.trim_start_matches('\u{feff}').len(),
+        Some(end) if text[..end].ends_with('\n') => end,
+        Some(end) => end + text[end..].find('\n').map_or(text.len() - end, |at| at + 1),
+    };
+    Some(FreeLine {
+        at,
+        indentation: indentation.trim_start_matches('\u{feff}').to_owned(),
+    })
+}

@@ -1,0 +1,282 @@
+//! The `layers` of a structure file, and the materials they name.
+
+use super::document::{Node, line_of};
+use super::fields::{Checker, Limits, above, between};
+use super::file::{Item, LayerEntry, Profile, Spanned};
+use crate::diagnostics::Diagnostic;
+use crate::materials::{Library, Substance};
+use crate::units::Dimension;
+use std::collections::HashMap;
+
+/// Bounds that keep sizes within what can be grown and solved; common practice.
+pub(super) const WIDTH_LIMITS: Limits = above(0.0, 1e5, "a width above 0 nm, of at most 100 µm");
+pub(super) const FIELD_LIMITS: Limits = between(-1.0, 1.0, "a field from -10 MV/cm to 10 MV/cm");
+const DOPING_LIMITS: Limits = between(0.0, 1e22, "from 0 to 1e22 cm^-3");
+const MAX_REPEATS: u32 = 10_000;
+/// How many layers the stack may have with its repeats laid out.
+pub(super) const MAX_LAYERS: usize = 20_000;
+
+const LAYER_KEYS: [&str; 10] = [
+    "material",
+    "width",
+    "name",
+    "donors",
+    "acceptors",
+    "to",
+    "profile",
+    "match",
+    "repeat",
+    "layers",
+];
+
+/// The layers as far as they could be read.
+pub(super) struct Layers {
+    /// Name and content of each entry; a mistaken layer keeps its name, so that `tune` can still refer to it.
+    pub entries: Vec<(Option<String>, Option<LayerEntry>)>,
+    pub sequence: Vec<Item>,
+}
+
+/// What the materials of layers are read against.
+pub(super) struct Known<'k> {
+    pub library: &'k Library,
+    /// The names of the file's own materials whose definitions are mistaken; nothing more is said about their use.
+    pub mistaken: &'k [String],
+    pub has_substrate: bool,
+}
+
+pub(super) fn layers(checker: &mut Checker, node: &Node, known: &Known) -> Option<Layers> {
+    let mut reader = LayerReader {
+        known,
+        entries: Vec::new(),
+        names: HashMap::new(),
+    };
+    let (sequence, total) = reader.items(checker, node)?;
+    if total > MAX_LAYERS {
+        checker.report(
+            Diagnostic::error(format!(
+                "the stack has {total} layers once its repeats are laid out"
+            ))
+            .at(checker.head(&node.span))
+            .expected(format!("at most {MAX_LAYERS}")),
+        );
+    }
+    Some(Layers {
+        entries: reader.entries,
+        sequence,
+    })
+}
+
+struct LayerReader<'k> {
+    known: &'k Known<'k>,
+    entries: Vec<(Option<String>, Option<LayerEntry>)>,
+    /// Where each name stands first.
+    names: HashMap<String, usize>,
+}
+
+impl LayerReader<'_> {
+    /// A list of layers and repeats, and how many layers it is when laid out.
+    fn items(&mut self, checker: &mut Checker, node: &Node) -> Option<(Vec<Item>, usize)> {
+        let nodes = checker.list(node, "a list of layers, the lowest first")?;
+        if nodes.is_empty() {
+            checker.report(
+                Diagnostic::error("there is no layer")
+                    .at(node.span.clone())
+                    .expected("a list such as `[{material: GaAs, width: 5.2 nm}]`"),
+            );
+        }
+        let mut items = Vec::new();
+        let mut total = 0_usize;
+        for node in nodes {
+            if let Some((item, layers)) = self.item(checker, node) {
+                items.push(item);
+                total = total.saturating_add(layers);
+            }
+        }
+        Some((items, total))
+    }
+
+    fn item(&mut self, checker: &mut Checker, node: &Node) -> Option<(Item, usize)> {
+        let fields = checker.fields(node, "a layer", &LAYER_KEYS)?;
+        if !fields.has("repeat") && !fields.has("layers") {
+            return Some((Item::Layer(self.layer(checker, node, &fields)), 1));
+        }
+        if let Some(key) = LAYER_KEYS[..8].iter().find(|key| fields.has(key)) {
+            checker.report(
+                Diagnostic::error(format!("`{key}` stands beside `repeat` and `layers`"))
+                    .at(fields.head.clone())
+                    .expected("a repeat holds layers; what a layer is stands in its own entry"),
+            );
+        }
+        checker.missing(&fields, "this repeat", "repeat", "30");
+        checker.missing(
+            &fields,
+            "this repeat",
+            "layers",
+            "[{material: GaAs, width: 5.2 nm}]",
+        );
+        let count = fields
+            .get("repeat")
+            .and_then(|node| checker.count(node, MAX_REPEATS));
+        let (items, layers) = self.items(checker, fields.get("layers")?)?;
+        let count = count?;
+        Some((
+            Item::Repeat { count, items },
+            layers.saturating_mul(count as usize),
+        ))
+    }
+
+    /// Reads a layer and returns its index.
+    fn layer(
+        &mut self,
+        checker: &mut Checker,
+        node: &Node,
+        fields: &super::fields::Fields,
+    ) -> usize {
+        let index = self.entries.len();
+        let name = fields.get("name").and_then(|node| self.name(checker, node));
+        let label = name
+            .clone()
+            .unwrap_or_else(|| format!("layer {}", index + 1));
+        let entry = self.content(checker, node, fields, name.clone(), label);
+        self.entries.push((name, entry));
+        index
+    }
+
+    fn name(&mut self, checker: &mut Checker, node: &Node) -> Option<String> {
+        let name = checker.scalar(node, "a name such as `well`")?.to_owned();
+        if let Some(first) = self.names.get(&name) {
+            let line = line_of(checker.text, *first);
+            checker.report(
+                Diagnostic::error(format!("two layers are named `{name}`"))
+                    .at(node.span.clone())
+                    .expected(format!(
+                        "another name; the first `{name}` is on line {line}"
+                    )),
+            );
+        } else {
+            self.names.insert(name.clone(), node.span.start);
+        }
+        Some(name)
+    }
+
+    fn content(
+        &self,
+        checker: &mut Checker,
+        node: &Node,
+        fields: &super::fields::Fields,
+        name: Option<String>,
+        label: String,
+    ) -> Option<LayerEntry> {
+        checker.missing(fields, "this layer", "material", "Al0.26Ga0.74As");
+        checker.missing(fields, "this layer", "width", "5.2 nm");
+        let matched = match fields.get("match") {
+            Some(node) => checker.word(node, &["substrate"]).is_some(),
+            None => fields.has("match"),
+        };
+        if matched
+            && !self.known.has_substrate
+            && let Some(node) = fields.get("match")
+        {
+            checker.report(
+                Diagnostic::error("this layer is to match the substrate, but the file names none")
+                    .at(node.span.clone())
+                    .expected("a line such as `substrate: InP` at the top of the file"),
+            );
+        }
+        let material = fields
+            .get("material")
+            .and_then(|node| substance(checker, node, self.known, matched));
+        let to = match fields.get("to") {
+            Some(node) => substance(checker, node, self.known, matched).map(Some),
+            None => Some(None),
+        };
+        let width = fields.get("width").and_then(|node| {
+            checker.quantity(
+                node,
+                &[Dimension::Length, Dimension::Monolayers],
+                WIDTH_LIMITS,
+            )
+        });
+        let profile = match fields.get("profile") {
+            Some(node) => {
+                let word = checker.word(node, &["linear", "parabolic"]);
+                if !fields.has("to") {
+                    checker.report(
+                        Diagnostic::error("a profile needs a second material to go to")
+                            .at(node.span.clone())
+                            .expected("`to: GaAs` in the same layer"),
+                    );
+                }
+                word
+            }
+            None => Some("linear"),
+        };
+        let doping = |checker: &mut Checker, key: &str| match fields.get(key) {
+            Some(node) => checker
+                .quantity(node, &[Dimension::VolumeDensity], DOPING_LIMITS)
+                .map(|found| found.value.value()),
+            None => Some(0.0),
+        };
+        let donors_cm3 = doping(checker, "donors");
+        let acceptors_cm3 = doping(checker, "acceptors");
+        Some(LayerEntry {
+            name,
+            label,
+            material: material?,
+            width: width?,
+            to: to?,
+            profile: if profile? == "parabolic" {
+                Profile::Parabolic
+            } else {
+                Profile::Linear
+            },
+            donors_cm3: donors_cm3?,
+            acceptors_cm3: acceptors_cm3?,
+            span: node.span.clone(),
+        })
+    }
+}
+
+/// A material by formula or by name; an alloy with open fractions only where these are `matched` to the substrate.
+pub(super) fn substance(
+    checker: &mut Checker,
+    node: &Node,
+    known: &Known,
+    matched: bool,
+) -> Option<Spanned<Substance>> {
+    let expected = "a formula such as `Al0.26Ga0.74As`, or the name of a material of this file";
+    let text = checker.scalar(node, expected)?;
+    let found = known.library.find(text);
+    if known.mistaken.iter().any(|name| name == text) && !matches!(found, Ok(Substance::Alloy(_))) {
+        return None;
+    }
+    let error = match found {
+        Ok(family @ Substance::Family(_)) if !matched => {
+            // The library says which fractions it would need.
+            known.library.material(&family, 0.0).err()?
+        }
+        Ok(Substance::Alloy(composition)) if matched => {
+            checker.report(
+                Diagnostic::error(format!(
+                    "`{text}` leaves no fraction open to match the substrate"
+                ))
+                .at(node.span.clone())
+                .expected(format!(
+                    "an alloy without numbers, or no `match` beside `{}`",
+                    composition.formula()
+                )),
+            );
+            return None;
+        }
+        Ok(substance) => return Some(Spanned::new(substance, node)),
+        Err(error) => error,
+    };
+    let problem = Diagnostic::error(error.to_string())
+        .at(node.span.clone())
+        .expected(format!("expected {expected}"));
+    checker.report(match error.hint() {
+        Some(hint) => problem.hint(hint),
+        None => problem,
+    });
+    None
+}

@@ -1,0 +1,615 @@
+//! The `tune` part of a structure file.
+
+use super::document::{Node, Value, line_of};
+use super::fields::{Checker, Fields, Limits, above, between, one_of};
+use super::file::{Aim, Follow, LayerEntry, Level, Target, Tune, Variable, Varied, Within};
+use super::read_layers::{FIELD_LIMITS, WIDTH_LIMITS};
+use crate::diagnostics::{Diagnostic, probably_meant};
+use crate::materials::{Element, MaterialError, Substance};
+use crate::units::{self, Dimension, Quantity};
+
+/// The highest level that can be asked for; far more than any well holds.
+pub(super) const MAX_LEVELS: u32 = 200;
+
+const ENERGY_LIMITS: Limits = above(0.0, 10.0, "more than 0 eV, at most 10 eV");
+const WAVELENGTH_LIMITS: Limits = above(0.0, 1e7, "more than 0 µm, at most 10 mm");
+const DIPOLE_LIMITS: Limits = above(0.0, 1e5, "more than 0 nm, at most 100 µm");
+const WEIGHT_LIMITS: Limits = above(0.0, 1e6, "more than 0, at most 1e6");
+const FRACTION_LIMITS: Limits = between(0.0, 1.0, "from 0 to 1");
+/// What an aim can be about.
+const TARGETS: [&str; 4] = ["energy", "wavelength", "dipole", "maximize"];
+
+/// Reads `tune`; `entries` holds `None` for a layer that is itself mistaken.
+pub(super) fn tune(
+    checker: &mut Checker,
+    node: &Node,
+    entries: &[(Option<String>, Option<LayerEntry>)],
+) -> Option<Tune> {
+    let fields = checker.fields(node, "`tune`", &["vary", "aims", "snap"])?;
+    checker.missing(
+        &fields,
+        "`tune`",
+        "vary",
+        "[{layer: well, width: [3 nm, 9 nm]}]",
+    );
+    checker.missing(
+        &fields,
+        "`tune`",
+        "aims",
+        "[{from: conduction 1, to: conduction 2, wavelength: 8.6 µm}]",
+    );
+    let vary = fields.get("vary").and_then(|node| {
+        let items = filled_list(
+            checker,
+            node,
+            "nothing to vary",
+            "layer widths, fractions or the field",
+        )?;
+        Some(variables(checker, items, entries))
+    });
+    let aims = fields.get("aims").and_then(|node| {
+        let items = filled_list(
+            checker,
+            node,
+            "no aim",
+            "energies, wavelengths or dipoles of transitions",
+        )?;
+        Some(aims(checker, items))
+    });
+    let snap_to_monolayers = match fields.get("snap") {
+        Some(node) => checker.word(node, &["monolayer"]).is_some(),
+        None => false,
+    };
+    Some(Tune {
+        vary: vary?,
+        aims: aims?,
+        snap_to_monolayers,
+    })
+}
+
+fn filled_list<'n>(
+    checker: &mut Checker,
+    node: &'n Node,
+    empty: &str,
+    expected: &str,
+) -> Option<&'n [Node]> {
+    let expected = format!("a list of {expected}");
+    let items = checker.list(node, &expected)?;
+    if items.is_empty() {
+        checker.report(
+            Diagnostic::error(format!("there is {empty}"))
+                .at(node.span.clone())
+                .expected(format!("expected {expected}")),
+        );
+        return None;
+    }
+    Some(items)
+}
+
+fn variables(
+    checker: &mut Checker,
+    items: &[Node],
+    entries: &[(Option<String>, Option<LayerEntry>)],
+) -> Vec<Variable> {
+    let mut found: Vec<Variable> = Vec::new();
+    for item in items {
+        let Some(quantity) = varied(checker, item, entries) else {
+            continue;
+        };
+        let span = checker.head(&item.span);
+        if let Some(first) = found
+            .iter()
+            .find(|other| same_variable(&other.quantity, &quantity))
+        {
+            let line = line_of(checker.text, first.span.start);
+            checker.report(
+                Diagnostic::error(format!("line {line} varies the same"))
+                    .at(span)
+                    .expected("each width, fraction or field once"),
+            );
+            continue;
+        }
+        found.push(Variable { quantity, span });
+    }
+    found
+}
+
+fn same_variable(one: &Varied, other: &Varied) -> bool {
+    match (one, other) {
+        (Varied::Width { entry: a, .. }, Varied::Width { entry: b, .. }) => a == b,
+        (
+            Varied::Fraction {
+                entry: a,
+                element: x,
+                ..
+            },
+            Varied::Fraction {
+                entry: b,
+                element: y,
+                ..
+            },
+        ) => a == b && x == y,
+        (Varied::Field { .. }, Varied::Field { .. }) => true,
+        _ => false,
+    }
+}
+
+fn varied(
+    checker: &mut Checker,
+    item: &Node,
+    entries: &[(Option<String>, Option<LayerEntry>)],
+) -> Option<Varied> {
+    let what = "an entry of `vary`";
+    let fields = checker.fields(
+        item,
+        what,
+        &["layer", "width", "fraction", "between", "field"],
+    )?;
+    let of_field = fields.get("field");
+    if let Some(node) = of_field {
+        if ["layer", "width", "fraction", "between"]
+            .iter()
+            .any(|key| fields.has(key))
+        {
+            checker.report(
+                Diagnostic::error("this entry varies the field and something of a layer")
+                    .at(fields.head.clone())
+                    .expected("one of them per entry"),
+            );
+            return None;
+        }
+        let [low, high] = quantities(
+            checker,
+            node,
+            "[0 kV/cm, 60 kV/cm]",
+            &[Dimension::Field],
+            FIELD_LIMITS,
+        )?;
+        return Some(Varied::Field {
+            bounds_v_per_nm: [low.value(), high.value()],
+        });
+    }
+    if fields.has("field") {
+        return None;
+    }
+    let example = "one of `{layer: well, width: [3 nm, 9 nm]}`, `{layer: cap, fraction: Al, between: [0.18, 0.35]}`, \
+                   `{field: [0 kV/cm, 60 kV/cm]}`";
+    if !fields.has("layer") {
+        checker.report(
+            Diagnostic::error("this entry does not say what to vary")
+                .at(fields.head.clone())
+                .expected(format!("expected {example}")),
+        );
+        return None;
+    }
+    let entry = fields
+        .get("layer")
+        .and_then(|node| layer(checker, node, entries));
+    match (
+        fields.has("width"),
+        fields.has("fraction") || fields.has("between"),
+    ) {
+        (true, false) => {
+            let bounds = quantities(
+                checker,
+                fields.get("width")?,
+                "[3 nm, 9 nm]",
+                &[Dimension::Length, Dimension::Monolayers],
+                WIDTH_LIMITS,
+            );
+            Some(Varied::Width {
+                entry: entry?,
+                bounds: bounds?,
+            })
+        }
+        (false, true) => fraction(checker, &fields, entry, entries),
+        _ => {
+            checker.report(
+                Diagnostic::error(
+                    "an entry of `vary` holds either a width or a fraction of its layer",
+                )
+                .at(fields.head.clone())
+                .expected(format!("expected {example}")),
+            );
+            None
+        }
+    }
+}
+
+/// The layer of that name.
+fn layer(
+    checker: &mut Checker,
+    node: &Node,
+    entries: &[(Option<String>, Option<LayerEntry>)],
+) -> Option<usize> {
+    let name = checker.scalar(node, "the name of a layer")?;
+    let found = entries
+        .iter()
+        .position(|(known, _)| known.as_deref() == Some(name));
+    if found.is_none() {
+        let names: Vec<&str> = entries
+            .iter()
+            .filter_map(|(name, _)| name.as_deref())
+            .collect();
+        let problem =
+            Diagnostic::error(format!("no layer is named `{name}`")).at(node.span.clone());
+        checker.report(match probably_meant(name, names.iter().copied()) {
+            Some(meant) => problem.hint(format!("did you mean `{meant}`?")),
+            None if names.is_empty() => problem.hint(format!(
+                "give the layer that is meant a name: `name: {name}`"
+            )),
+            None => problem.expected("the name that a layer has under `name:`"),
+        });
+    }
+    found
+}
+
+fn fraction(
+    checker: &mut Checker,
+    fields: &Fields,
+    entry: Option<usize>,
+    entries: &[(Option<String>, Option<LayerEntry>)],
+) -> Option<Varied> {
+    checker.missing(fields, "this entry of `vary`", "fraction", "Al");
+    checker.missing(fields, "this entry of `vary`", "between", "[0.18, 0.35]");
+    let bounds = fields.get("between").and_then(|node| {
+        checker
+            .pair(
+                node,
+                "[0.18, 0.35]",
+                |checker, node| checker.number(node, FRACTION_LIMITS),
+                |value| *value,
+            )
+            .map(|bounds| (bounds, node.span.clone()))
+    });
+    let element = fields.get("fraction").and_then(|node| {
+        let symbol = checker.scalar(node, "the symbol of an element, such as `Al`")?;
+        let element = Element::from_symbol(symbol);
+        if element.is_none() {
+            let symbols = Element::ALL.map(Element::symbol);
+            let problem = Diagnostic::error(format!("`{symbol}` is no element of the library"))
+                .at(node.span.clone())
+                .expected(format!("expected {}", one_of(&symbols)));
+            checker.report(match probably_meant(symbol, symbols) {
+                Some(meant) if meant.eq_ignore_ascii_case(symbol) => {
+                    problem.hint(format!("did you mean `{meant}`?"))
+                }
+                _ => problem,
+            });
+        }
+        Some((element?, node))
+    });
+    let (element, node) = element?;
+    let entry = entry?;
+    let layer = entries.get(entry).and_then(|(_, layer)| layer.as_ref())?;
+    let room = match room_of(layer, element) {
+        Ok(room) => room,
+        Err((message, expected)) => {
+            checker.report(
+                Diagnostic::error(message)
+                    .at(node.span.clone())
+                    .expected(expected),
+            );
+            return None;
+        }
+    };
+    let (bounds, span) = bounds?;
+    // Formulas are written to 1e-5.
+    if bounds[1] > room.highest + 1e-5 {
+        checker.report(
+            Diagnostic::error(format!(
+                "the fraction of {} in layer `{}` cannot rise above {}",
+                element.symbol(),
+                layer.label,
+                room.highest
+            ))
+            .at(span)
+            .expected(format!(
+                "{} gives way to it, and the rest stays",
+                room.host.symbol()
+            )),
+        );
+        return None;
+    }
+    Some(Varied::Fraction {
+        entry,
+        element,
+        bounds,
+    })
+}
+
+/// How far the fraction of an element can go, and at whose cost.
+struct Room {
+    host: Element,
+    highest: f64,
+}
+
+/// The room of an element in the layer's composition, or why there is none and what was expected.
+fn room_of(layer: &LayerEntry, element: Element) -> Result<Room, (String, &'static str)> {
+    let composition = match &layer.material.value {
+        Substance::Alloy(composition) => composition,
+        Substance::Family(family) => {
+            return Err((
+                format!(
+                    "the fractions of `{}` in layer `{}` follow from the substrate",
+                    family.formula(),
+                    layer.label
+                ),
+                "a layer whose formula gives its fractions",
+            ));
+        }
+        Substance::Named(name) => {
+            return Err((
+                format!(
+                    "`{name}` in layer `{}` is a material of this file, whose fractions are fixed",
+                    layer.label
+                ),
+                "a layer whose material is a formula such as `Al0.26Ga0.74As`",
+            ));
+        }
+    };
+    let host = composition.host(element).map_err(|error| {
+        let expected = match error {
+            MaterialError::NoSuchElement { .. } => "an element of the layer's formula",
+            _ => "an element that shares its group with another one",
+        };
+        (format!("layer `{}`: {error}", layer.label), expected)
+    })?;
+    Ok(Room {
+        host,
+        highest: composition.fraction(element) + composition.fraction(host),
+    })
+}
+
+fn quantities(
+    checker: &mut Checker,
+    node: &Node,
+    example: &str,
+    dimensions: &[Dimension],
+    limits: Limits,
+) -> Option<[Quantity; 2]> {
+    // Lengths and monolayers cannot be compared before the material is known, so both bounds take the first one's kind.
+    let kind = match &node.value {
+        Value::List(items) => items
+            .first()
+            .and_then(|item| units::parse(item.text()?, dimensions).ok())
+            .map(|quantity| quantity.unit.dimension),
+        _ => None,
+    };
+    let dimensions: &[Dimension] = match &kind {
+        Some(kind) => std::slice::from_ref(kind),
+        None => dimensions,
+    };
+    checker.pair(
+        node,
+        example,
+        |checker, node| {
+            checker
+                .quantity(node, dimensions, limits)
+                .map(|found| found.value)
+        },
+        Quantity::value,
+    )
+}
+
+fn aims(checker: &mut Checker, items: &[Node]) -> Vec<Aim> {
+    let mut found: Vec<Aim> = Vec::new();
+    for item in items {
+        let Some(aim) = aim(checker, item) else {
+            continue;
+        };
+        if let Some(first) = found.iter().find(|other| contradict(other, &aim)) {
+            let line = line_of(checker.text, first.span.start);
+            checker.report(
+                Diagnostic::error(format!(
+                    "the aim on line {line} is about the same property of the same transition"
+                ))
+                .at(aim.span.clone())
+                .expected("one value for each"),
+            );
+            continue;
+        }
+        found.push(aim);
+    }
+    found
+}
+
+/// Whether two aims want values of the same thing.
+fn contradict(one: &Aim, other: &Aim) -> bool {
+    let pair = |aim: &Aim| {
+        (
+            aim.from.index.min(aim.to.index),
+            aim.from.index.max(aim.to.index),
+        )
+    };
+    let about_energy =
+        |aim: &Aim| matches!(aim.target, Target::EnergyEv(_) | Target::WavelengthUm(_));
+    pair(one) == pair(other)
+        && one.follow == other.follow
+        && about_energy(one) == about_energy(other)
+}
+
+fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
+    let fields = checker.fields(
+        item,
+        "an aim",
+        &[
+            "from",
+            "to",
+            "energy",
+            "wavelength",
+            "dipole",
+            "maximize",
+            "weight",
+            "within",
+            "follow",
+        ],
+    )?;
+    checker.missing(&fields, "this aim", "from", "conduction 1");
+    checker.missing(&fields, "this aim", "to", "conduction 2");
+    let from = fields.get("from").and_then(|node| level(checker, node));
+    let to = fields.get("to").and_then(|node| level(checker, node));
+    let ends_differ = from.is_none() || from != to;
+    if !ends_differ && let Some(node) = fields.get("to") {
+        checker.report(
+            Diagnostic::error("this aim goes from a level to itself")
+                .at(node.span.clone())
+                .expected("another level than `from`"),
+        );
+    }
+    let target = target(checker, &fields);
+    let weight = match fields.get("weight") {
+        Some(node) => checker.number(node, WEIGHT_LIMITS),
+        None => Some(1.0),
+    };
+    let within = match fields.get("within") {
+        Some(node) => within(checker, node, target).map(Some),
+        None => Some(None),
+    };
+    let follow = match fields.get("follow") {
+        Some(node) => checker.word(node, &["order", "character"]),
+        None => Some("order"),
+    };
+    Some(Aim {
+        from: from?,
+        to: to.filter(|_| ends_differ)?,
+        target: target?,
+        weight: weight?,
+        within: within?,
+        follow: if follow? == "character" {
+            Follow::Character
+        } else {
+            Follow::Order
+        },
+        span: checker.head(&item.span),
+    })
+}
+
+/// `conduction 2`.
+fn level(checker: &mut Checker, node: &Node) -> Option<Level> {
+    let expected = "a level such as `conduction 2`";
+    let text = checker.scalar(node, expected)?;
+    let mut words = text.split_whitespace();
+    let (band, index, rest) = (words.next().unwrap_or_default(), words.next(), words.next());
+    let problem = if band != "conduction" {
+        let problem = if ["heavy-hole", "light-hole", "valence"].contains(&band) {
+            Diagnostic::error(format!("the band `{band}` is not solved"))
+        } else {
+            Diagnostic::error(format!("`{band}` is no band"))
+        };
+        match probably_meant(band, ["conduction"]) {
+            Some(meant) => problem.hint(format!("did you mean `{meant}`?")),
+            None => problem,
+        }
+    } else {
+        match (index.map(str::parse::<u32>), rest) {
+            (Some(Ok(index)), None) if (1..=MAX_LEVELS).contains(&index) => {
+                return Some(Level {
+                    index: index as usize,
+                });
+            }
+            (Some(Ok(0)), None) => Diagnostic::error("levels are counted from 1"),
+            (Some(Ok(index)), None) => Diagnostic::error(format!(
+                "level {index} is beyond the {MAX_LEVELS} that can be solved"
+            )),
+            (None, _) => Diagnostic::error("the number of the level is missing"),
+            _ => Diagnostic::error(format!("`{text}` is no level")),
+        }
+    };
+    checker.report(
+        problem
+            .at(node.span.clone())
+            .expected(format!("expected {expected}")),
+    );
+    None
+}
+
+fn target(checker: &mut Checker, fields: &Fields) -> Option<Target> {
+    let named: Vec<&str> = TARGETS.into_iter().filter(|key| fields.has(key)).collect();
+    let key = match named.as_slice() {
+        [key] => *key,
+        [] => {
+            checker.report(
+                Diagnostic::error("this aim does not say what the transition shall have")
+                    .at(fields.head.clone())
+                    .expected("one of `energy: 36 meV`, `wavelength: 8.6 µm`, `dipole: 2 nm`, `maximize: dipole`"),
+            );
+            return None;
+        }
+        [first, second, ..] => {
+            checker.report(
+                Diagnostic::error(format!(
+                    "this aim asks for `{first}` and `{second}` at once"
+                ))
+                .at(fields.head.clone())
+                .expected("one of them per aim"),
+            );
+            return None;
+        }
+    };
+    let node = fields.get(key)?;
+    let mut length = |limits| {
+        Some(
+            checker
+                .quantity(node, &[Dimension::Length], limits)?
+                .value
+                .value(),
+        )
+    };
+    match key {
+        "wavelength" => length(WAVELENGTH_LIMITS).map(|nm| Target::WavelengthUm(nm * 1e-3)),
+        "dipole" => length(DIPOLE_LIMITS).map(Target::DipoleNm),
+        "energy" => {
+            let energy = checker.quantity(node, &[Dimension::Energy], ENERGY_LIMITS)?;
+            Some(Target::EnergyEv(energy.value.value()))
+        }
+        _ => checker
+            .word(node, &["dipole"])
+            .map(|_| Target::MaximizeDipole),
+    }
+}
+
+fn within(checker: &mut Checker, node: &Node, target: Option<Target>) -> Option<Within> {
+    let expected = match target? {
+        Target::EnergyEv(_) => "an energy such as `1 meV`, or a part such as `1 %`",
+        Target::WavelengthUm(_) => {
+            "a length such as `20 nm`, an energy such as `1 meV`, or a part such as `1 %`"
+        }
+        Target::DipoleNm(_) => "a length such as `0.1 nm`, or a part such as `1 %`",
+        Target::MaximizeDipole => {
+            checker.report(
+                Diagnostic::error("an aim that maximizes has no value to come near to")
+                    .at(node.span.clone())
+                    .expected("no `within` here"),
+            );
+            return None;
+        }
+    };
+    let text = checker.scalar(node, expected)?;
+    let positive = |value: f64| value > 0.0 && value.is_finite();
+    let problem = match units::split_number(text) {
+        Some((number, "%")) if positive(number) && number < 100.0 => {
+            return Some(Within::Fraction(number * 1e-2));
+        }
+        Some((_, "%")) => format!("`{text}` is out of range"),
+        _ => match units::parse(text, &[Dimension::Energy, Dimension::Length]) {
+            Ok(quantity) if !positive(quantity.value()) => format!("`{text}` is out of range"),
+            Ok(quantity) => match (quantity.unit.dimension, target?) {
+                (Dimension::Energy, Target::EnergyEv(_) | Target::WavelengthUm(_)) => {
+                    return Some(Within::EnergyEv(quantity.value()));
+                }
+                (Dimension::Length, Target::WavelengthUm(_) | Target::DipoleNm(_)) => {
+                    return Some(Within::LengthNm(quantity.value()));
+                }
+                (dimension, _) => format!("{} does not suit this aim", dimension.noun()),
+            },
+            Err(error) => error.to_string(),
+        },
+    };
+    checker.report(
+        Diagnostic::error(problem)
+            .at(node.span.clone())
+            .expected(format!("expected {expected}")),
+    );
+    None
+}

@@ -1,0 +1,486 @@
+//! The stack: a flat list of layers from the substrate up, with materials resolved at the temperature and the strain.
+
+use super::file::{ConductionModel, Item, LayerEntry, Spanned, Structure};
+use super::grade::{self, Law};
+use crate::diagnostics::Diagnostic;
+use crate::materials::{
+    Composition, Dual, Element, Library, Material, MaterialError, Substance, monolayer_nm, strained,
+};
+use crate::units::{Dimension, Quantity};
+use std::ops::Range;
+
+/// The temperature at which compositions are matched to the substrate, in K: that of the library's own match.
+const MATCH_TEMPERATURE_K: f64 = 300.0;
+
+/// A stack of layers, lowest first, ready to be solved and cheap to change.
+#[derive(Clone, Debug)]
+pub struct Stack {
+    /// The layers with all repeats laid out.
+    pub layers: Vec<Layer>,
+    /// The field in V/nm; a positive one raises the electron's potential energy along the growth direction.
+    pub field_v_per_nm: f64,
+    temperature_k: f64,
+    /// The in-plane lattice constant that all layers take over, if there is a substrate.
+    substrate_nm: Option<f64>,
+    library: Library,
+    /// What each entry of the file consists of.
+    contents: Vec<Content>,
+}
+
+/// One layer of a stack.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Layer {
+    /// The user's name or `layer 3`; copies of a repeat add their number, as in `well [2]`.
+    pub label: String,
+    /// Index of the file's layer entry, which all copies of a repeat share.
+    pub entry: usize,
+    pub width_nm: f64,
+    /// Donors per volume, in cm⁻³.
+    pub donors_cm3: f64,
+    /// Acceptors per volume, in cm⁻³.
+    pub acceptors_cm3: f64,
+}
+
+/// What a layer entry consists of, resolved.
+#[derive(Clone, Debug)]
+struct Content {
+    lower: Face,
+    /// The upper face of a graded layer.
+    upper: Option<Face>,
+    law: Law,
+    profile: super::file::Profile,
+    monolayer_nm: Option<f64>,
+}
+
+/// The material at one face of a layer.
+#[derive(Clone, Debug)]
+struct Face {
+    /// An alloy with all its fractions, or a material of the file.
+    substance: Substance,
+    /// Without strain.
+    free: Material,
+    /// With the edges moved by the strain.
+    strained: Material,
+}
+
+impl Structure {
+    /// Lays the structure out as a stack.
+    ///
+    /// # Errors
+    /// A message for each layer whose material lacks a parameter that the strain, the model or a width in monolayers
+    /// needs, and for each alloy that cannot be matched to the substrate.
+    pub fn stack(&self) -> Result<Stack, Vec<Diagnostic>> {
+        let mut problems = Vec::new();
+        let substrate = self.substrate.as_ref().and_then(|substrate| {
+            self.substrate_lattice(substrate)
+                .map_err(|problem| problems.push(problem))
+                .ok()
+        });
+        if self.substrate.is_some() && substrate.is_none() {
+            return Err(problems);
+        }
+        let mut stack = Stack {
+            layers: Vec::new(),
+            field_v_per_nm: self.field.as_ref().map_or(0.0, |field| field.value.value()),
+            temperature_k: self.temperature_k,
+            substrate_nm: substrate.map(|lattice| lattice.at_temperature_nm),
+            library: self.library.clone(),
+            contents: Vec::new(),
+        };
+        let mut widths_nm = Vec::new();
+        for entry in &self.entries {
+            match self.content(&stack, entry, substrate) {
+                Ok(content) => stack.contents.push(content),
+                Err(found) => {
+                    problems.extend(found);
+                    continue;
+                }
+            }
+            let index = stack.contents.len() - 1;
+            match stack.length_nm(index, &entry.width.value) {
+                Some(width_nm) => widths_nm.push(width_nm),
+                None => problems.push(no_monolayer(entry, &entry.width.span)),
+            }
+        }
+        if !problems.is_empty() {
+            return Err(problems);
+        }
+        stack.lay_out(&self.sequence, &self.entries, &widths_nm);
+        Ok(stack)
+    }
+
+    fn substrate_lattice(
+        &self,
+        substrate: &Spanned<Substance>,
+    ) -> Result<SubstrateLattice, Diagnostic> {
+        let at = |temperature_k: f64| {
+            let material = self
+                .library
+                .material(&substrate.value, temperature_k)
+                .map_err(|error| refused(&error, &substrate.span))?;
+            material.lattice_constant_nm.ok_or_else(|| {
+                Diagnostic::error("the substrate has no `lattice_constant`")
+                    .at(substrate.span.clone())
+                    .expected("a material whose lattice constant is known")
+            })
+        };
+        Ok(SubstrateLattice {
+            at_temperature_nm: at(self.temperature_k)?,
+            at_match_nm: at(MATCH_TEMPERATURE_K)?,
+        })
+    }
+
+    fn content(
+        &self,
+        stack: &Stack,
+        entry: &LayerEntry,
+        substrate: Option<SubstrateLattice>,
+    ) -> Result<Content, Vec<Diagnostic>> {
+        let face = |material: &Spanned<Substance>| -> Result<Face, Diagnostic> {
+            let refuse = |error: MaterialError| refused(&error, &material.span);
+            let substance = match (&material.value, substrate) {
+                (Substance::Family(family), Some(substrate)) => Substance::Alloy(
+                    self.library
+                        .match_to(family, substrate.at_match_nm)
+                        .map_err(refuse)?,
+                ),
+                (other, _) => other.clone(),
+            };
+            let face = stack.face(substance).map_err(refuse)?;
+            match lacking(self.conduction.model, &face.free) {
+                None => Ok(face),
+                Some(key) => Err(Diagnostic::error(format!(
+                    "the material of {} has no `{key}`, which the chosen model needs",
+                    entry.in_words()
+                ))
+                .at(material.span.clone())
+                .expected(format!(
+                    "a material with `{key}`; give it under `materials:`"
+                ))),
+            }
+        };
+        let lower = face(&entry.material);
+        let upper = entry.to.as_ref().map(face).transpose();
+        let (lower, upper) = match (lower, upper) {
+            (Ok(lower), Ok(upper)) => (lower, upper),
+            (lower, upper) => {
+                return Err([lower.err(), upper.err()].into_iter().flatten().collect());
+            }
+        };
+        if let Some(Face {
+            substance: Substance::Alloy(to),
+            ..
+        }) = &upper
+            && let Substance::Alloy(from) = &lower.substance
+            && let Err(error) = from.towards(to, 0.5)
+        {
+            let place = entry.to.as_ref().map_or(&entry.span, |to| &to.span);
+            return Err(vec![refused(&error, place)]);
+        }
+        Ok(stack.content(lower, upper, entry.profile))
+    }
+}
+
+/// The substrate's lattice constant, in nm.
+#[derive(Clone, Copy)]
+struct SubstrateLattice {
+    at_temperature_nm: f64,
+    at_match_nm: f64,
+}
+
+impl LayerEntry {
+    /// The layer as it is called in a sentence.
+    pub(super) fn in_words(&self) -> String {
+        match &self.name {
+            Some(name) => format!("layer `{name}`"),
+            None => self.label.clone(),
+        }
+    }
+}
+
+pub(super) fn no_monolayer(entry: &LayerEntry, place: &Range<usize>) -> Diagnostic {
+    Diagnostic::error(format!(
+        "the monolayer of {} is unknown, because its material lacks `lattice_constant` or `elastic`",
+        entry.in_words()
+    ))
+    .at(place.clone())
+    .expected("a length such as `5.2 nm`")
+}
+
+fn refused(error: &MaterialError, place: &Range<usize>) -> Diagnostic {
+    let problem = Diagnostic::error(error.to_string()).at(place.clone());
+    match error.hint() {
+        Some(hint) => problem.hint(hint),
+        None => problem,
+    }
+}
+
+/// The first parameter that the model needs and the material lacks.
+fn lacking(model: ConductionModel, material: &Material) -> Option<&'static str> {
+    let mut needed = vec![
+        ("conduction_edge", material.conduction_edge_ev.is_none()),
+        ("electron_mass", material.electron_mass_m0.is_none()),
+    ];
+    if model == ConductionModel::EnergyDependent && material.nonparabolicity_energy_ev.is_none() {
+        needed.extend([
+            ("gap", material.gap_ev.is_none()),
+            ("spin_orbit", material.spin_orbit_ev.is_none()),
+            ("kane_energy", material.kane_energy_ev.is_none()),
+        ]);
+    }
+    needed
+        .into_iter()
+        .find(|(_, lacks)| *lacks)
+        .map(|(key, _)| key)
+}
+
+impl Stack {
+    pub fn temperature_k(&self) -> f64 {
+        self.temperature_k
+    }
+
+    /// The in-plane lattice constant that all layers take over, in nm, if there is a substrate.
+    pub fn substrate_lattice_nm(&self) -> Option<f64> {
+        self.substrate_nm
+    }
+
+    pub fn total_width_nm(&self) -> f64 {
+        self.layers.iter().map(|layer| layer.width_nm).sum()
+    }
+
+    /// The heights of all faces in nm, from 0 at the bottom: one more than there are layers.
+    pub fn faces_nm(&self) -> Vec<f64> {
+        let mut faces = Vec::with_capacity(self.layers.len() + 1);
+        let mut height = 0.0;
+        faces.push(height);
+        for layer in &self.layers {
+            height += layer.width_nm;
+            faces.push(height);
+        }
+        faces
+    }
+
+    /// Whether the layer has one material throughout.
+    pub fn is_uniform(&self, layer: usize) -> bool {
+        self.content_of(layer)
+            .is_none_or(|content| content.upper.is_none())
+    }
+
+    /// The material of a layer at a height in it (`t` from 0 at its lower to 1 at its upper face), with the edges moved
+    /// by the strain.
+    ///
+    /// # Panics
+    /// When there is no such layer.
+    pub fn material_at(&self, layer: usize, t: f64) -> Material {
+        let content = &self.contents[self.layers[layer].entry];
+        let lower = &content.lower;
+        let Some(upper) = &content.upper else {
+            return lower.strained.clone();
+        };
+        let share = content.law.share(t);
+        let free = match (&lower.substance, &upper.substance) {
+            // That these can be mixed and resolved was found out when the stack was laid out.
+            (Substance::Alloy(from), Substance::Alloy(to)) => from
+                .towards(to, share)
+                .and_then(|alloy| self.library.resolve(&alloy, self.temperature_k))
+                .unwrap_or_else(|_| grade::blend(&lower.free, &upper.free, share)),
+            _ => grade::blend(&lower.free, &upper.free, share),
+        };
+        self.strain(free)
+    }
+
+    /// As [`material_at`](Self::material_at), with the derivative of every parameter with respect to the fraction of an
+    /// element in the layer's lower material (`material` in the file), whose host compensates.
+    ///
+    /// # Errors
+    /// When that material is no alloy, or holds no such element or nothing beside it.
+    ///
+    /// # Panics
+    /// When there is no such layer.
+    pub fn material_slope_at(
+        &self,
+        layer: usize,
+        t: f64,
+        element: Element,
+    ) -> Result<Material<Dual>, MaterialError> {
+        let content = &self.contents[self.layers[layer].entry];
+        let from = self.composition_of(content)?;
+        let Some(upper) = &content.upper else {
+            return Ok(self.strain(
+                self.library
+                    .resolve(&from.along(element)?, self.temperature_k)?,
+            ));
+        };
+        let share = content.law.share(t);
+        let mixed = match &upper.substance {
+            Substance::Alloy(to) => {
+                let host = from.host(element)?;
+                let alloy = from.towards(to, share)?;
+                let whole = grade::along(&self.library, &alloy, self.temperature_k, element, host)?;
+                grade::combine(&whole, &whole, |a, _| Dual {
+                    value: a.value,
+                    slope: (1.0 - share) * a.slope,
+                })
+            }
+            _ => {
+                let below = self
+                    .library
+                    .resolve(&from.along(element)?, self.temperature_k)?;
+                grade::blend(&below, &grade::constant(&upper.free), share)
+            }
+        };
+        Ok(self.strain(mixed))
+    }
+
+    /// The monolayer of a layer in nm, strained when there is a substrate; the mean of both faces when it is graded.
+    /// `None` when the material's lattice constant or elastic constants are unknown.
+    pub fn monolayer_nm(&self, layer: usize) -> Option<f64> {
+        self.content_of(layer)?.monolayer_nm
+    }
+
+    /// A length in nm, monolayers counted in those of the layer entry.
+    pub fn length_nm(&self, entry: usize, length: &Quantity) -> Option<f64> {
+        match length.unit.dimension {
+            Dimension::Monolayers => Some(length.number * self.contents.get(entry)?.monolayer_nm?),
+            _ => Some(length.value()),
+        }
+    }
+
+    /// The composition of a layer entry's lower material; `None` when it is a material of the file.
+    pub fn composition(&self, entry: usize) -> Option<&Composition> {
+        match &self.contents.get(entry)?.lower.substance {
+            Substance::Alloy(composition) => Some(composition),
+            _ => None,
+        }
+    }
+
+    /// Sets the width of a layer entry and so of all its copies.
+    pub fn set_width(&mut self, entry: usize, width_nm: f64) {
+        for layer in &mut self.layers {
+            if layer.entry == entry {
+                layer.width_nm = width_nm;
+            }
+        }
+    }
+
+    /// Sets the fraction of an element in the lower material of a layer entry; its host compensates. Widths stay in nm.
+    ///
+    /// # Errors
+    /// When that material is no alloy, or the element has no partner, or the fraction does not fit.
+    pub fn set_fraction(
+        &mut self,
+        entry: usize,
+        element: Element,
+        fraction: f64,
+    ) -> Result<(), MaterialError> {
+        let Some(content) = self.contents.get(entry) else {
+            return Ok(());
+        };
+        let mut composition = self.composition_of(content)?.clone();
+        composition.set_fraction(element, fraction)?;
+        let lower = self.face(Substance::Alloy(composition))?;
+        let changed = self.content(lower, content.upper.clone(), content.profile);
+        self.contents[entry] = changed;
+        Ok(())
+    }
+
+    fn content_of(&self, layer: usize) -> Option<&Content> {
+        self.contents.get(self.layers.get(layer)?.entry)
+    }
+
+    fn composition_of<'c>(&self, content: &'c Content) -> Result<&'c Composition, MaterialError> {
+        match &content.lower.substance {
+            Substance::Alloy(composition) => Ok(composition),
+            Substance::Named(name) => Err(MaterialError::UnknownMaterial {
+                text: name.clone(),
+                meant: None,
+            }),
+            Substance::Family(family) => Err(MaterialError::UnknownMaterial {
+                text: family.formula(),
+                meant: None,
+            }),
+        }
+    }
+
+    fn strain<T: crate::materials::Number>(&self, free: Material<T>) -> Material<T> {
+        match self.substrate_nm {
+            Some(lattice) => strained(&free, lattice),
+            None => free,
+        }
+    }
+
+    fn face(&self, substance: Substance) -> Result<Face, MaterialError> {
+        let free = self.library.material(&substance, self.temperature_k)?;
+        let strained = self.strain(free.clone());
+        Ok(Face {
+            substance,
+            free,
+            strained,
+        })
+    }
+
+    fn content(&self, lower: Face, upper: Option<Face>, profile: super::file::Profile) -> Content {
+        let monolayer = |face: &Face| monolayer_nm(&face.free, self.substrate_nm);
+        let monolayer_nm = match &upper {
+            None => monolayer(&lower),
+            Some(upper) => monolayer(&lower)
+                .zip(monolayer(upper))
+                .map(|(a, b)| 0.5 * (a + b)),
+        };
+        let law = match &upper {
+            None => Law::Linear,
+            Some(upper) => Law::of(profile, &lower.strained, &upper.strained),
+        };
+        Content {
+            lower,
+            upper,
+            law,
+            profile,
+            monolayer_nm,
+        }
+    }
+
+    /// Appends the layers of a sequence, bottom first.
+    fn lay_out(&mut self, sequence: &[Item], entries: &[LayerEntry], widths_nm: &[f64]) {
+        let mut order = Vec::new();
+        unroll(sequence, &mut order);
+        let mut copies = vec![0_usize; entries.len()];
+        for index in &order {
+            copies[*index] += 1;
+        }
+        let mut seen = vec![0_usize; entries.len()];
+        for index in order {
+            let entry = &entries[index];
+            seen[index] += 1;
+            let label = match copies[index] {
+                1 => entry.label.clone(),
+                _ => format!("{} [{}]", entry.label, seen[index]),
+            };
+            self.layers.push(Layer {
+                label,
+                entry: index,
+                width_nm: widths_nm[index],
+                donors_cm3: entry.donors_cm3,
+                acceptors_cm3: entry.acceptors_cm3,
+            });
+        }
+    }
+}
+
+/// The indices of the entries in the order of growth. The nesting is bounded by that of the text, and the number of
+/// layers was checked.
+fn unroll(sequence: &[Item], order: &mut Vec<usize>) {
+    for item in sequence {
+        match item {
+            Item::Layer(entry) => order.push(*entry),
+            Item::Repeat { count, items } => {
+                let start = order.len();
+                unroll(items, order);
+                let end = order.len();
+                for _ in 1..*count {
+                    order.extend_from_within(start..end);
+                }
+            }
+        }
+    }
+}
