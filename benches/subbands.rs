@@ -24,7 +24,10 @@ fn double_well(states: usize) -> String {
          Well: {{conduction_edge: 0 eV, electron_mass: 0.067}}\n  Barrier: {{conduction_edge: 0.25 eV, electron_mass: 0.09}}\nlayers:\n"
     );
     for (k, width) in WIDTHS_NM.iter().enumerate() {
-        text += &format!("  - {{material: {}, width: {width} nm}}\n", if k % 2 == 0 { "Barrier" } else { "Well" });
+        text += &format!(
+            "  - {{material: {}, width: {width} nm}}\n",
+            if k % 2 == 0 { "Barrier" } else { "Well" }
+        );
     }
     text
 }
@@ -42,14 +45,23 @@ fn central_differences(per_nm: usize) -> (Vec<f64>, Vec<f64>) {
     }
     let n = links.len() - 1;
     let diagonal: Vec<f64> = (0..n)
-        .map(|k| links[k] + links[k + 1] + 0.5 * (edges[k] + edges[k + 1]) + FIELD_V_PER_NM * (k + 1) as f64 * step)
+        .map(|k| {
+            links[k]
+                + links[k + 1]
+                + 0.5 * (edges[k] + edges[k + 1])
+                + FIELD_V_PER_NM * (k + 1) as f64 * step
+        })
         .collect();
     let below: Vec<f64> = (0..n - 1).map(|k| -links[k + 1]).collect();
     let count = |energy: f64| {
         let mut negative = 0;
         let mut pivot = 1.0;
         for k in 0..n {
-            let coupling = if k == 0 { 0.0 } else { below[k - 1] * below[k - 1] / pivot };
+            let coupling = if k == 0 {
+                0.0
+            } else {
+                below[k - 1] * below[k - 1] / pivot
+            };
             pivot = diagonal[k] - energy - coupling;
             if pivot == 0.0 {
                 pivot = 1e-300;
@@ -64,7 +76,11 @@ fn central_differences(per_nm: usize) -> (Vec<f64>, Vec<f64>) {
         let (mut low, mut high) = (0.0, 0.6);
         while high - low > 0.01 * ACCURACY_EV {
             let middle = 0.5 * (low + high);
-            if count(middle) > level { high = middle } else { low = middle }
+            if count(middle) > level {
+                high = middle
+            } else {
+                low = middle
+            }
         }
         let energy = 0.5 * (low + high);
         let mut state = vec![1.0; n];
@@ -79,7 +95,12 @@ fn central_differences(per_nm: usize) -> (Vec<f64>, Vec<f64>) {
     let mut dipoles = Vec::new();
     for i in 0..STATES {
         for j in i + 1..STATES {
-            dipoles.push((0..n).map(|k| step * (k + 1) as f64 * step * states[i][k] * states[j][k]).sum::<f64>().abs());
+            dipoles.push(
+                (0..n)
+                    .map(|k| step * (k + 1) as f64 * step * states[i][k] * states[j][k])
+                    .sum::<f64>()
+                    .abs(),
+            );
         }
     }
     (energies, dipoles)
@@ -88,15 +109,31 @@ fn central_differences(per_nm: usize) -> (Vec<f64>, Vec<f64>) {
 /// Gaussian elimination with row exchanges for (T − energy) x = b.
 fn solve_tridiagonal(diagonal: &[f64], below: &[f64], energy: f64, x: &mut [f64]) {
     let n = diagonal.len();
-    let mut rows: Vec<[f64; 3]> = (0..n).map(|k| [diagonal[k] - energy, if k + 1 < n { below[k] } else { 0.0 }, 0.0]).collect();
+    let mut rows: Vec<[f64; 3]> = (0..n)
+        .map(|k| {
+            [
+                diagonal[k] - energy,
+                if k + 1 < n { below[k] } else { 0.0 },
+                0.0,
+            ]
+        })
+        .collect();
     for k in 0..n - 1 {
-        let mut next = [below[k], diagonal[k + 1] - energy, if k + 2 < n { below[k + 1] } else { 0.0 }];
+        let mut next = [
+            below[k],
+            diagonal[k + 1] - energy,
+            if k + 2 < n { below[k + 1] } else { 0.0 },
+        ];
         if next[0].abs() > rows[k][0].abs() {
             std::mem::swap(&mut rows[k], &mut next);
             x.swap(k, k + 1);
         }
         let factor = next[0] / rows[k][0];
-        rows[k + 1] = [next[1] - factor * rows[k][1], next[2] - factor * rows[k][2], 0.0];
+        rows[k + 1] = [
+            next[1] - factor * rows[k][1],
+            next[2] - factor * rows[k][2],
+            0.0,
+        ];
         x[k + 1] -= factor * x[k];
     }
     if rows[n - 1][0] == 0.0 {
@@ -118,20 +155,40 @@ fn bench(c: &mut Criterion) {
     let (file, _) = structure::read(&double_well(STATES));
     let file = file.expect("the file is right");
     let stack = file.stack().expect("the stack is right");
-    let accuracy = Accuracy { tolerance_ev: ACCURACY_EV };
+    let accuracy = Accuracy {
+        tolerance_ev: ACCURACY_EV,
+    };
     let ours = || {
-        let operator = ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
+        let operator =
+            ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
         let subbands = solve(&operator, STATES, accuracy);
         let list = transitions(&subbands);
         (subbands, list)
     };
     // The coarsest grid that is as accurate as asked for: its worst level within 1 µeV of the converged one.
     let exact = {
-        let operator = ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
-        solve(&operator, STATES, Accuracy { tolerance_ev: 1e-12 }).pairs
+        let operator =
+            ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
+        solve(
+            &operator,
+            STATES,
+            Accuracy {
+                tolerance_ev: 1e-12,
+            },
+        )
+        .pairs
     };
-    let worst = |energies: &[f64]| energies.iter().zip(&exact).map(|(e, x)| (e - x.value).abs()).fold(0.0, f64::max);
-    let per_nm = (10..).step_by(5).find(|&n| worst(&central_differences(n).0) <= ACCURACY_EV).expect("some grid is fine enough");
+    let worst = |energies: &[f64]| {
+        energies
+            .iter()
+            .zip(&exact)
+            .map(|(e, x)| (e - x.value).abs())
+            .fold(0.0, f64::max)
+    };
+    let per_nm = (10..)
+        .step_by(5)
+        .find(|&n| worst(&central_differences(n).0) <= ACCURACY_EV)
+        .expect("some grid is fine enough");
     let own: Vec<f64> = ours().0.pairs.iter().map(|p| p.value).collect();
     println!(
         "worst error: elements {:.1e} eV with {} unknowns, central differences {:.1e} eV with {} unknowns",
@@ -150,14 +207,20 @@ fn bench(c: &mut Criterion) {
     let mut group = c.benchmark_group("stacks of many layers, four states");
     group.sample_size(10);
     for repeats in [4, 40, 400] {
-        let text = double_well(STATES).replace("layers:\n", &format!("layers:\n  - repeat: {repeats}\n    layers:\n"));
-        let text = text.replace("\n  - {material", "\n      - {material").replace("field: 20 kV/cm\n", "");
+        let text = double_well(STATES).replace(
+            "layers:\n",
+            &format!("layers:\n  - repeat: {repeats}\n    layers:\n"),
+        );
+        let text = text
+            .replace("\n  - {material", "\n      - {material")
+            .replace("field: 20 kV/cm\n", "");
         let (file, problems) = structure::read(&text);
         let file = file.unwrap_or_else(|| panic!("{problems:?}"));
         let stack = file.stack().expect("the stack is right");
         group.bench_function(format!("{} layers", stack.layers.len()), |b| {
             b.iter(|| {
-                let operator = ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
+                let operator = ConductionOperator::new(&stack, file.conduction.model)
+                    .expect("the materials suit");
                 black_box(solve(&operator, STATES, accuracy))
             })
         });
@@ -166,10 +229,15 @@ fn bench(c: &mut Criterion) {
 
     let text = double_well(STATES)
         + "tune:\n  vary:\n    - {layer: layer 2, width: [4 nm, 8 nm]}\n  aims:\n    - {from: conduction 1, to: conduction 2, energy: 40 meV}\n";
-    let (file, _) = structure::read(&text.replace("{material: Well, width: 6 nm}", "{name: layer 2, material: Well, width: 6 nm}"));
+    let (file, _) = structure::read(&text.replace(
+        "{material: Well, width: 6 nm}",
+        "{name: layer 2, material: Well, width: 6 nm}",
+    ));
     let file = file.expect("the file is right");
     let stack = file.stack().expect("the stack is right");
-    c.bench_function("tune one width", |b| b.iter(|| black_box(tune::tune(&file, &stack, accuracy, &|_| {}).is_ok())));
+    c.bench_function("tune one width", |b| {
+        b.iter(|| black_box(tune::tune(&file, &stack, accuracy, &|_| {}).is_ok()))
+    });
 }
 
 criterion_group!(benches, bench);

@@ -156,7 +156,9 @@ mod tests {
     #[test]
     fn any_range_renders() {
         for (start, end) in [(0, 0), (3, 1), (2, 999), (1, 2)] {
-            Diagnostic::error("x").at(start..end).render("f", "µ\n", false);
+            Diagnostic::error("x")
+                .at(start..end)
+                .render("f", "µ\n", false);
         }
         Diagnostic::error("x").at(0..0).render("f", "", false);
     }

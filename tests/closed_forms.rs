@@ -16,15 +16,26 @@ const TOLERANCE_EV: f64 = 1e-6;
 fn check(id: &str) -> Value {
     let file: Value = serde_json::from_str(include_str!("reference/closed_forms.json")).unwrap();
     let checks = file["checks"].as_array().unwrap();
-    checks.iter().find(|c| c["id"] == id).unwrap_or_else(|| panic!("no check {id}"))["values"].clone()
+    checks
+        .iter()
+        .find(|c| c["id"] == id)
+        .unwrap_or_else(|| panic!("no check {id}"))["values"]
+        .clone()
 }
 
 fn levels(id: &str) -> Vec<f64> {
-    check(id)["levels_ev"].as_array().unwrap().iter().map(|v| v.as_f64().unwrap()).collect()
+    check(id)["levels_ev"]
+        .as_array()
+        .unwrap()
+        .iter()
+        .map(|v| v.as_f64().unwrap())
+        .collect()
 }
 
 fn number(id: &str, key: &str) -> f64 {
-    check(id)[key].as_f64().unwrap_or_else(|| panic!("no {key} in {id}"))
+    check(id)[key]
+        .as_f64()
+        .unwrap_or_else(|| panic!("no {key} in {id}"))
 }
 
 fn solved(text: &str, count: usize) -> Subbands {
@@ -39,7 +50,10 @@ fn solved(text: &str, count: usize) -> Subbands {
 fn assert_levels(id: &str, subbands: &Subbands, shift_ev: f64) {
     for (pair, expected) in subbands.pairs.iter().zip(levels(id)) {
         let own = pair.value - shift_ev;
-        assert!((own - expected).abs() < TOLERANCE_EV, "{id}: {own} for {expected}");
+        assert!(
+            (own - expected).abs() < TOLERANCE_EV,
+            "{id}: {own} for {expected}"
+        );
     }
 }
 
@@ -56,16 +70,30 @@ fn well_between_hard_walls_with_dipoles_and_sum_rule() {
     let find = |from, to| list.iter().find(|t| (t.from, t.to) == (from, to)).unwrap();
     for (t, key) in [(find(0, 1), "z_12_nm"), (find(1, 2), "z_23_nm")] {
         let expected = number("1.1", key);
-        assert!((t.dipole_nm / expected - 1.0).abs() < 1e-6, "{key}: {} for {expected}", t.dipole_nm);
+        assert!(
+            (t.dipole_nm / expected - 1.0).abs() < 1e-6,
+            "{key}: {} for {expected}",
+            t.dipole_nm
+        );
     }
     let strength = find(0, 1).normalised_strength;
-    assert!((strength / number("1.1", "f_12") - 1.0).abs() < 1e-6, "f12 = {strength}");
+    assert!(
+        (strength / number("1.1", "f_12") - 1.0).abs() < 1e-6,
+        "f12 = {strength}"
+    );
     // Thomas–Reiche–Kuhn: the strengths from the ground state, (64/π²) n²/(n² − 1)³ for even n, add up to 1.
     let many = solved(text, 40);
-    let sum: f64 = transitions(&many).iter().filter(|t| t.from == 0).map(|t| t.normalised_strength).sum();
+    let sum: f64 = transitions(&many)
+        .iter()
+        .filter(|t| t.from == 0)
+        .map(|t| t.normalised_strength)
+        .sum();
     let strength = |n: f64| 64.0 / std::f64::consts::PI.powi(2) * n * n / (n * n - 1.0).powi(3);
     let beyond: f64 = (21..20_000).map(|k| strength(2.0 * f64::from(k))).sum();
-    assert!((sum + beyond - 1.0).abs() < 1e-9, "sum {sum} and {beyond} beyond");
+    assert!(
+        (sum + beyond - 1.0).abs() < 1e-9,
+        "sum {sum} and {beyond} beyond"
+    );
 }
 
 #[test]
@@ -73,13 +101,30 @@ fn finite_wells() {
     let wells = [
         ("1.2a", "6.7e-2", "0.24 eV", "0.092", 100.0, 150.0, ""),
         ("1.2b", "6.7e-2", "0.24 eV", "0.067", 100.0, 150.0, ""),
-        ("1.3a", "0.067", "0.24 eV", "0.092", 65.0, 40.0, "1.519 eV/1.8 eV"),
+        (
+            "1.3a",
+            "0.067",
+            "0.24 eV",
+            "0.092",
+            65.0,
+            40.0,
+            "1.519 eV/1.8 eV",
+        ),
         ("1.3b", "0.067", "0.24 eV", "0.092", 65.0, 40.0, ""),
-        ("1.3c", "0.043", "0.52 eV", "0.075", 60.0, 30.0, "0.79 eV/1.45 eV"),
+        (
+            "1.3c",
+            "0.043",
+            "0.52 eV",
+            "0.075",
+            60.0,
+            30.0,
+            "0.79 eV/1.45 eV",
+        ),
         ("1.3d", "0.043", "0.52 eV", "0.075", 60.0, 30.0, ""),
     ];
     for (id, well_mass, barrier, barrier_mass, width, pad_nm, laws) in wells {
-        let (mut model, mut well_law, mut barrier_law) = ("parabolic", String::new(), String::new());
+        let (mut model, mut well_law, mut barrier_law) =
+            ("parabolic", String::new(), String::new());
         if let Some((w, b)) = laws.split_once('/') {
             model = "energy-dependent";
             well_law = format!(", nonparabolicity_energy: {w}");
@@ -101,8 +146,10 @@ fn asymmetric_and_double_wells() {
     let text = "materials:\n  L: {conduction_edge: 0.5 eV, electron_mass: 0.12}\n  W: {conduction_edge: 0 eV, electron_mass: 0.067}\n  \
                 R: {conduction_edge: 0.2 eV, electron_mass: 0.085}\nlayers:\n  - {material: L, width: 20 nm}\n  - {material: W, width: 10 nm}\n  - {material: R, width: 40 nm}\n";
     assert_levels("1.4", &solved(text, 2), 0.0);
-    let double = materials("electron_mass: 0.067", "conduction_edge: 0.25 eV, electron_mass: 0.09")
-        + "layers:\n  - {material: B, width: 40 nm}\n  - {material: W, width: 6 nm}\n  - {material: B, width: 2 nm}\n  \
+    let double = materials(
+        "electron_mass: 0.067",
+        "conduction_edge: 0.25 eV, electron_mass: 0.09",
+    ) + "layers:\n  - {material: B, width: 40 nm}\n  - {material: W, width: 6 nm}\n  - {material: B, width: 2 nm}\n  \
            - {material: W, width: 6 nm}\n  - {material: B, width: 40 nm}\n";
     assert_levels("1.9", &solved(&double, 3), 0.0);
 }
@@ -128,10 +175,18 @@ fn poeschl_teller_well() {
     let frame = mesh.clone();
     let pencil = Pencil::new(mesh, |element, q| {
         let z = frame.position(element, q) - 60.0;
-        Coefficient { stiffness: HBAR2_OVER_2M0 / mass, poles: [None; 2], constant: -depth / (z / a).cosh().powi(2) }
+        Coefficient {
+            stiffness: HBAR2_OVER_2M0 / mass,
+            poles: [None; 2],
+            constant: -depth / (z / a).cosh().powi(2),
+        }
     });
     for (pair, expected) in lowest(&pencil, 3).iter().zip(levels("1.7")) {
-        assert!((pair.value - expected).abs() < TOLERANCE_EV, "{} for {expected}", pair.value);
+        assert!(
+            (pair.value - expected).abs() < TOLERANCE_EV,
+            "{} for {expected}",
+            pair.value
+        );
     }
 }
 
@@ -147,5 +202,8 @@ fn parabolic_grade() {
     let subbands = solved(&text, 4);
     assert_levels("1.8", &subbands, 0.0);
     let dipole = transitions(&subbands)[0].dipole_nm;
-    assert!((dipole / number("1.8", "z_01_nm") - 1.0).abs() < 1e-6, "{dipole}");
+    assert!(
+        (dipole / number("1.8", "z_01_nm") - 1.0).abs() < 1e-6,
+        "{dipole}"
+    );
 }

@@ -21,7 +21,10 @@ fn used(text: &str) -> Vec<(usize, String)> {
     for (number, line) in text.lines().enumerate() {
         let code = line.split("//").next().unwrap_or("");
         for after in code.split("crate::").skip(1) {
-            let name: String = after.chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect();
+            let name: String = after
+                .chars()
+                .take_while(|c| c.is_alphanumeric() || *c == '_')
+                .collect();
             if !name.is_empty() {
                 uses.push((number + 1, name));
             }
@@ -36,21 +39,39 @@ fn no_module_reaches_back() {
     let library = fs::read_to_string(source.join("lib.rs")).unwrap();
     let order: BTreeMap<String, usize> = library
         .lines()
-        .filter_map(|line| line.strip_prefix("pub mod ")?.strip_suffix(';').map(str::to_owned))
+        .filter_map(|line| {
+            line.strip_prefix("pub mod ")?
+                .strip_suffix(';')
+                .map(str::to_owned)
+        })
         .enumerate()
         .map(|(place, name)| (name, place))
         .collect();
-    assert!(order.len() > 5, "the order is read from src/lib.rs: {order:?}");
+    assert!(
+        order.len() > 5,
+        "the order is read from src/lib.rs: {order:?}"
+    );
     let mut files = Vec::new();
     rust_files(&source, &mut files);
     let mut wrong = Vec::new();
     for file in files {
         let inside = file.strip_prefix(&source).unwrap();
-        let module = inside.components().next().unwrap().as_os_str().to_string_lossy().replace(".rs", "");
-        let Some(own) = order.get(&module) else { continue };
+        let module = inside
+            .components()
+            .next()
+            .unwrap()
+            .as_os_str()
+            .to_string_lossy()
+            .replace(".rs", "");
+        let Some(own) = order.get(&module) else {
+            continue;
+        };
         for (line, name) in used(&fs::read_to_string(&file).unwrap()) {
             if order.get(&name).is_some_and(|place| place > own) {
-                wrong.push(format!("{}:{line}: {module} uses {name}, which stands below it", inside.display()));
+                wrong.push(format!(
+                    "{}:{line}: {module} uses {name}, which stands below it",
+                    inside.display()
+                ));
             }
         }
     }
@@ -65,13 +86,24 @@ fn rooms_keep_to_their_business() {
     rust_files(&source, &mut files);
     let mut wrong = Vec::new();
     for file in files {
-        let inside = file.strip_prefix(&source).unwrap().to_string_lossy().into_owned();
+        let inside = file
+            .strip_prefix(&source)
+            .unwrap()
+            .to_string_lossy()
+            .into_owned();
         let text = fs::read_to_string(&file).unwrap();
         if inside.starts_with("numerics") && text.contains("crate::") {
             wrong.push(format!("{inside}: numerics use nothing else of the crate"));
         }
         if !inside.starts_with("cli") && inside != "main.rs" {
-            for outside in ["std::fs", "std::env", "std::time", "std::io", "println!", "eprintln!"] {
+            for outside in [
+                "std::fs",
+                "std::env",
+                "std::time",
+                "std::io",
+                "println!",
+                "eprintln!",
+            ] {
                 if text.contains(outside) {
                     wrong.push(format!("{inside}: {outside} belongs to cli"));
                 }

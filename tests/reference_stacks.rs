@@ -43,21 +43,37 @@ fn levels_and_dipoles_are_those_of_the_independent_reference() {
             }
         }
         for estimate in &subbands.errors_ev {
-            assert!(*estimate <= Accuracy::default().tolerance_ev, "{}: error estimate {estimate}", stack.name);
+            assert!(
+                *estimate <= Accuracy::default().tolerance_ev,
+                "{}: error estimate {estimate}",
+                stack.name
+            );
         }
         let list = transitions(&subbands);
         for &(from, to, expected) in &stack.dipoles_nm {
-            let own = list.iter().find(|t| t.from + 1 == from && t.to + 1 == to).unwrap();
+            let own = list
+                .iter()
+                .find(|t| t.from + 1 == from && t.to + 1 == to)
+                .unwrap();
             let off = (own.dipole_nm - expected).abs() / expected.max(DIPOLE_FLOOR_NM);
             if off > worst_dipole.0 {
                 worst_dipole = (off, &stack.name);
             }
         }
-        assert!(subbands.audit().faults().is_empty(), "{}: {:?}", stack.name, subbands.audit());
+        assert!(
+            subbands.audit().faults().is_empty(),
+            "{}: {:?}",
+            stack.name,
+            subbands.audit()
+        );
     }
     println!(
         "{} stacks: worst level {:.1e} eV ({}), worst dipole {:.1e} ({})",
-        reference.stacks.len(), worst_level.0, worst_level.1, worst_dipole.0, worst_dipole.1
+        reference.stacks.len(),
+        worst_level.0,
+        worst_level.1,
+        worst_dipole.0,
+        worst_dipole.1
     );
     assert!(worst_level.0 <= LEVEL_TOLERANCE_EV, "{worst_level:?}");
     assert!(worst_dipole.0 <= DIPOLE_TOLERANCE, "{worst_dipole:?}");

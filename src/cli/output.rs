@@ -9,18 +9,27 @@ pub enum OutputError {
     #[error("{path} is an input of this run and is not overwritten")]
     IsInput { path: PathBuf },
     #[error("{path} cannot be written: {source}")]
-    Write { path: PathBuf, source: std::io::Error },
+    Write {
+        path: PathBuf,
+        source: std::io::Error,
+    },
 }
 
 /// Writes `text` to a temporary neighbour and moves it into place.
 pub fn write_whole(path: &Path, text: &str, inputs: &[&Path]) -> Result<(), OutputError> {
     refuse_input(path, inputs)?;
-    let failed = |source| OutputError::Write { path: path.to_owned(), source };
+    let failed = |source| OutputError::Write {
+        path: path.to_owned(),
+        source,
+    };
     let folder = match path.parent() {
         Some(folder) if !folder.as_os_str().is_empty() => folder,
         _ => Path::new("."),
     };
-    let mut file = tempfile::Builder::new().prefix(".wellwright-").tempfile_in(folder).map_err(failed)?;
+    let mut file = tempfile::Builder::new()
+        .prefix(".wellwright-")
+        .tempfile_in(folder)
+        .map_err(failed)?;
     file.write_all(text.as_bytes()).map_err(failed)?;
     file.as_file().sync_all().map_err(failed)?;
     allow_reading(file.as_file()).map_err(failed)?;
@@ -34,7 +43,13 @@ pub fn refuse_input(path: &Path, inputs: &[&Path]) -> Result<(), OutputError> {
         (Ok(a), Ok(b)) => a == b,
         _ => path == input,
     };
-    if inputs.iter().any(|input| same(input)) { Err(OutputError::IsInput { path: path.to_owned() }) } else { Ok(()) }
+    if inputs.iter().any(|input| same(input)) {
+        Err(OutputError::IsInput {
+            path: path.to_owned(),
+        })
+    } else {
+        Ok(())
+    }
 }
 
 /// A temporary file is private; what it becomes is a file like others.

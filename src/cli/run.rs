@@ -37,9 +37,17 @@ impl From<Exit> for u8 {
 pub fn run(arguments: Arguments) -> Exit {
     let result = match arguments.command {
         Command::Levels { file, output } => levels(&file, &output),
-        Command::Tune { file, format, output } => tune(&file, format, &output),
+        Command::Tune {
+            file,
+            format,
+            output,
+        } => tune(&file, format, &output),
         Command::Check { file } => check(&file),
-        Command::Materials { formula, temperature, output } => materials(formula.as_deref(), &temperature, &output),
+        Command::Materials {
+            formula,
+            temperature,
+            output,
+        } => materials(formula.as_deref(), &temperature, &output),
     };
     result.unwrap_or_else(|exit| exit)
 }
@@ -58,7 +66,9 @@ impl Input {
         let mut bytes = Vec::new();
         // One byte more than is allowed tells a file that is too large; the rest of it is never read.
         let limit = structure::MAX_BYTES as u64 + 1;
-        if let Err(error) = File::open(path).and_then(|file| file.take(limit).read_to_end(&mut bytes)) {
+        if let Err(error) =
+            File::open(path).and_then(|file| file.take(limit).read_to_end(&mut bytes))
+        {
             complain(&format!("error: {name} cannot be read: {error}"));
             return Err(Exit::WrongInput);
         }
@@ -75,9 +85,16 @@ impl Input {
         }
         let structure = structure.ok_or(Exit::WrongInput)?;
         match structure.stack() {
-            Ok(stack) => Ok(Input { name, text, structure, stack }),
+            Ok(stack) => Ok(Input {
+                name,
+                text,
+                structure,
+                stack,
+            }),
             Err(problems) => {
-                problems.iter().for_each(|problem| show(problem, &name, &text));
+                problems
+                    .iter()
+                    .for_each(|problem| show(problem, &name, &text));
                 Err(Exit::WrongInput)
             }
         }
@@ -91,7 +108,8 @@ impl Input {
             problem = problem.at(entry.material.span.clone());
         }
         if *reason == Unsuitable::NoLaw {
-            problem = problem.hint("give the material a `nonparabolicity_energy`, or use the parabolic model");
+            problem = problem
+                .hint("give the material a `nonparabolicity_energy`, or use the parabolic model");
         }
         show(&problem, &self.name, &self.text);
         Exit::WrongInput
@@ -122,7 +140,11 @@ impl Input {
             show(&Diagnostic::warning(words), &self.name, &self.text);
         }
         for fault in subbands.audit().faults() {
-            show(&Diagnostic::warning(format!("audit: {fault}")), &self.name, &self.text);
+            show(
+                &Diagnostic::warning(format!("audit: {fault}")),
+                &self.name,
+                &self.text,
+            );
         }
     }
 }
@@ -135,7 +157,12 @@ fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let states = input.structure.conduction.states;
     let subbands = subbands::solve(&operator, states, Accuracy::default());
     input.doubt(&subbands, states);
-    deliver(&Levels::new(&input.structure, &input.stack, &subbands, states), output.format, output.output.as_deref(), file)
+    deliver(
+        &Levels::new(&input.structure, &input.stack, &subbands, states),
+        output.format,
+        output.output.as_deref(),
+        file,
+    )
 }
 
 fn check(file: &Path) -> Result<Exit, Exit> {
@@ -143,8 +170,15 @@ fn check(file: &Path) -> Result<Exit, Exit> {
     ConductionOperator::new(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let (layers, width) = (input.stack.layers.len(), input.stack.total_width_nm());
-    let tuning = if input.structure.tune.is_some() { ", with a tune block" } else { "" };
-    print(&format!("{}: {layers} layers, {width:.2} nm{tuning}; no mistakes\n", input.name))
+    let tuning = if input.structure.tune.is_some() {
+        ", with a tune block"
+    } else {
+        ""
+    };
+    print(&format!(
+        "{}: {layers} layers, {width:.2} nm{tuning}; no mistakes\n",
+        input.name
+    ))
 }
 
 fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Exit> {
@@ -152,14 +186,23 @@ fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Exit> 
     for output in outputs {
         check_output(Some(output), file)?;
     }
-    let is_structure = |path: &&PathBuf| path.extension().is_some_and(|e| e == "yaml" || e == "yml");
-    let (structures, reports): (Vec<&PathBuf>, Vec<&PathBuf>) = outputs.iter().partition(is_structure);
+    let is_structure =
+        |path: &&PathBuf| path.extension().is_some_and(|e| e == "yaml" || e == "yml");
+    let (structures, reports): (Vec<&PathBuf>, Vec<&PathBuf>) =
+        outputs.iter().partition(is_structure);
     if structures.len() > 1 || reports.len() > 1 {
-        complain("error: -o may be given once for the tuned structure (.yaml or .yml) and once for the report");
+        complain(
+            "error: -o may be given once for the tuned structure (.yaml or .yml) and once for the report",
+        );
         return Err(Exit::WrongInput);
     }
     let progress = SearchProgress::new();
-    let outcome = tune::tune(&input.structure, &input.stack, Accuracy::default(), &|stage| progress.show(stage));
+    let outcome = tune::tune(
+        &input.structure,
+        &input.stack,
+        Accuracy::default(),
+        &|stage| progress.show(stage),
+    );
     drop(progress);
     let outcome = outcome.map_err(|error| match &error {
         TuneError::Unsuitable { layer, reason } => input.unsuitable(*layer, reason),
@@ -170,22 +213,42 @@ fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Exit> 
             Exit::WrongInput
         }
         TuneError::Snap(_) | TuneError::Unsolved => {
-            show(&Diagnostic::error(error.to_string()), &input.name, &input.text);
+            show(
+                &Diagnostic::error(error.to_string()),
+                &input.name,
+                &input.text,
+            );
             Exit::NotPossible
         }
     })?;
-    let text = structure::rewrite(&input.text, &input.structure, &edits(&outcome)).map_err(|problems| {
-        problems.iter().for_each(|problem| show(problem, &input.name, &input.text));
-        Exit::WrongInput
-    })?;
-    let tuned = Input { stack: outcome.after.stack.clone(), ..input };
+    let text = structure::rewrite(&input.text, &input.structure, &edits(&outcome)).map_err(
+        |problems| {
+            problems
+                .iter()
+                .for_each(|problem| show(problem, &input.name, &input.text));
+            Exit::WrongInput
+        },
+    )?;
+    let tuned = Input {
+        stack: outcome.after.stack.clone(),
+        ..input
+    };
     let report = Tuning::new(&tuned.structure, &outcome, text.clone());
     tuned.doubt(&outcome.after.subbands, report.states());
     if let Some(path) = structures.first() {
         write(path, &text, file)?;
     }
-    deliver(&report, format, reports.first().map(|path| path.as_path()), file)?;
-    Ok(if outcome.met.iter().all(|met| *met) { Exit::Done } else { Exit::NotPossible })
+    deliver(
+        &report,
+        format,
+        reports.first().map(|path| path.as_path()),
+        file,
+    )?;
+    Ok(if outcome.met.iter().all(|met| *met) {
+        Exit::Done
+    } else {
+        Exit::NotPossible
+    })
 }
 
 /// The tuned numbers as edits of the file.
@@ -195,12 +258,17 @@ fn edits(outcome: &Outcome) -> Edits {
         let stack = &outcome.after.stack;
         match variable.knob {
             Knob::Width { entry } => {
-                let whole = outcome.continuous.as_ref().and(stack.entry_monolayer_nm(entry));
+                let whole = outcome
+                    .continuous
+                    .as_ref()
+                    .and(stack.entry_monolayer_nm(entry));
                 let width_nm = stack.entry_width_nm(entry).unwrap_or(variable.low);
                 edits.widths.push((
                     entry,
                     match whole {
-                        Some(monolayer_nm) => NewWidth::Monolayers((width_nm / monolayer_nm).round()),
+                        Some(monolayer_nm) => {
+                            NewWidth::Monolayers((width_nm / monolayer_nm).round())
+                        }
                         None => NewWidth::Length(width_nm),
                     },
                 ));
@@ -221,11 +289,16 @@ fn materials(formula: Option<&str>, temperature: &str, output: &Output) -> Resul
     let temperature_k = match units::parse(temperature, &[Dimension::Temperature]) {
         Ok(quantity) if (0.0..=1000.0).contains(&quantity.value()) => quantity.value(),
         Ok(_) => {
-            complain(&format!("error: --temperature {temperature}: expected a temperature from 0 K to 1000 K"));
+            complain(&format!(
+                "error: --temperature {temperature}: expected a temperature from 0 K to 1000 K"
+            ));
             return Err(Exit::WrongInput);
         }
         Err(error) => {
-            complain(&format!("error: --temperature: {error}; expected {}, such as \"77 K\"", Dimension::Temperature.noun()));
+            complain(&format!(
+                "error: --temperature: {error}; expected {}, such as \"77 K\"",
+                Dimension::Temperature.noun()
+            ));
             return Err(Exit::WrongInput);
         }
     };
@@ -249,14 +322,21 @@ fn materials(formula: Option<&str>, temperature: &str, output: &Output) -> Resul
 }
 
 /// Prints a result, or writes it to a file.
-fn deliver(report: &impl Report, format: Format, path: Option<&Path>, input: &Path) -> Result<Exit, Exit> {
+fn deliver(
+    report: &impl Report,
+    format: Format,
+    path: Option<&Path>,
+    input: &Path,
+) -> Result<Exit, Exit> {
     let text = match format {
         Format::Table => Ok(report.text()),
         Format::Csv => report.csv().map_err(|error| error.to_string()),
         Format::Json => report.json().map_err(|error| error.to_string()),
     };
     let text = text.map_err(|error| {
-        complain(&format!("error: the result cannot be put into this form: {error}"));
+        complain(&format!(
+            "error: the result cannot be put into this form: {error}"
+        ));
         Exit::NotPossible
     })?;
     match path {
@@ -266,10 +346,12 @@ fn deliver(report: &impl Report, format: Format, path: Option<&Path>, input: &Pa
 }
 
 fn write(path: &Path, text: &str, input: &Path) -> Result<Exit, Exit> {
-    write_whole(path, text, &[input]).map(|()| Exit::Done).map_err(|error| {
-        complain(&format!("error: {error}"));
-        Exit::NotPossible
-    })
+    write_whole(path, text, &[input])
+        .map(|()| Exit::Done)
+        .map_err(|error| {
+            complain(&format!("error: {error}"));
+            Exit::NotPossible
+        })
 }
 
 /// Refuses an output that is the input before any work is done.

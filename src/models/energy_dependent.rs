@@ -25,8 +25,13 @@ const HEAVIEST_OF_EDGE: f64 = 10.0;
 
 /// A(E) = ħ²/2m(E) and C = the conduction edge.
 pub fn coefficient<T: Number>(material: &Material<T>) -> Result<Coefficient<T>, Unsuitable> {
-    let missing = |key| Unsuitable::Missing { key, model: "energy-dependent" };
-    let edge = material.conduction_edge_ev.ok_or(missing("conduction_edge"))?;
+    let missing = |key| Unsuitable::Missing {
+        key,
+        model: "energy-dependent",
+    };
+    let edge = material
+        .conduction_edge_ev
+        .ok_or(missing("conduction_edge"))?;
     let free = T::constant(HBAR2_OVER_2M0);
     if let Some(scale) = material.nonparabolicity_energy_ev {
         let mass = material.electron_mass_m0.ok_or(missing("electron_mass"))?;
@@ -36,26 +41,41 @@ pub fn coefficient<T: Number>(material: &Material<T>) -> Result<Coefficient<T>, 
             nearest: scale * T::constant(NEAREST_OF_GAP),
             farthest: T::constant(f64::INFINITY),
         };
-        return Ok(Coefficient { stiffness: T::constant(0.0), poles: [Some(pole), None], constant: edge });
+        return Ok(Coefficient {
+            stiffness: T::constant(0.0),
+            poles: [Some(pole), None],
+            constant: edge,
+        });
     }
-    let (Some(gap), Some(spin_orbit), Some(kane)) =
-        (material.gap_ev, material.spin_orbit_ev, material.kane_energy_ev)
-    else {
+    let (Some(gap), Some(spin_orbit), Some(kane)) = (
+        material.gap_ev,
+        material.spin_orbit_ev,
+        material.kane_energy_ev,
+    ) else {
         return Err(Unsuitable::NoLaw);
     };
     let third = kane / T::constant(3.0);
-    let coupled = |distance: T| third * T::constant(2.0) / distance + third / (distance + spin_orbit);
+    let coupled =
+        |distance: T| third * T::constant(2.0) / distance + third / (distance + spin_orbit);
     let remote = match material.remote_band_f {
         Some(f) => T::constant(1.0) + f * T::constant(2.0),
         // Without F the law is made to return the stated mass at the edge.
-        None => T::constant(1.0) / material.electron_mass_m0.ok_or(missing("electron_mass"))? - coupled(gap),
+        None => {
+            T::constant(1.0) / material.electron_mass_m0.ok_or(missing("electron_mass"))?
+                - coupled(gap)
+        }
     };
     let inverse_mass = (remote + coupled(gap)).value();
     if inverse_mass <= 0.0 || !inverse_mass.is_finite() {
         return Err(Unsuitable::NegativeMass { inverse_mass });
     }
     let farthest = if remote.value() < inverse_mass / HEAVIEST_OF_EDGE {
-        heaviest_distance(remote.value(), third.value(), spin_orbit.value(), inverse_mass / HEAVIEST_OF_EDGE)
+        heaviest_distance(
+            remote.value(),
+            third.value(),
+            spin_orbit.value(),
+            inverse_mass / HEAVIEST_OF_EDGE,
+        )
     } else {
         f64::INFINITY
     };
@@ -72,7 +92,11 @@ pub fn coefficient<T: Number>(material: &Material<T>) -> Result<Coefficient<T>, 
         nearest: nearest + spin_orbit,
         farthest: spin_orbit + T::constant(farthest),
     };
-    Ok(Coefficient { stiffness: free * remote, poles: [Some(light), Some(split_off)], constant: edge })
+    Ok(Coefficient {
+        stiffness: free * remote,
+        poles: [Some(light), Some(split_off)],
+        constant: edge,
+    })
 }
 
 /// The distance x from the valence edge at which `remote` + third (2/x + 1/(x + Δ)) has fallen to `least`: the positive

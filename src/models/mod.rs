@@ -11,7 +11,10 @@ use crate::numerics::pencil::{Coefficient, Pole};
 use crate::structure::{ConductionModel, Stack};
 
 /// A and C of one material, with no field.
-fn coefficient<T: Number>(model: ConductionModel, material: &Material<T>) -> Result<Coefficient<T>, Unsuitable> {
+fn coefficient<T: Number>(
+    model: ConductionModel,
+    material: &Material<T>,
+) -> Result<Coefficient<T>, Unsuitable> {
     match model {
         ConductionModel::Parabolic => parabolic::coefficient(material),
         ConductionModel::EnergyDependent => energy_dependent::coefficient(material),
@@ -22,10 +25,17 @@ fn coefficient<T: Number>(model: ConductionModel, material: &Material<T>) -> Res
 #[derive(Clone, Debug, PartialEq, thiserror::Error)]
 pub enum Unsuitable {
     #[error("has no `{key}`, which the {model} model needs")]
-    Missing { key: &'static str, model: &'static str },
-    #[error("has no `gap` with `spin_orbit` and `kane_energy`, nor a `nonparabolicity_energy`, which the energy-dependent model needs")]
+    Missing {
+        key: &'static str,
+        model: &'static str,
+    },
+    #[error(
+        "has no `gap` with `spin_orbit` and `kane_energy`, nor a `nonparabolicity_energy`, which the energy-dependent model needs"
+    )]
     NoLaw,
-    #[error("has a mass at the band edge that is not positive: 1 + 2F + (Ep/3)(2/Eg + 1/(Eg + Δ)) = {inverse_mass:.3}")]
+    #[error(
+        "has a mass at the band edge that is not positive: 1 + 2F + (Ep/3)(2/Eg + 1/(Eg + Δ)) = {inverse_mass:.3}"
+    )]
     NegativeMass { inverse_mass: f64 },
 }
 
@@ -43,14 +53,22 @@ impl<'s> ConductionOperator<'s> {
     pub fn new(stack: &'s Stack, model: ConductionModel) -> Result<Self, (usize, Unsuitable)> {
         let mut bottoms = Vec::with_capacity(stack.layers.len());
         for layer in 0..stack.layers.len() {
-            bottoms.push(coefficient(model, &stack.material_at(layer, 0.0)).map_err(|reason| (layer, reason))?);
+            bottoms.push(
+                coefficient(model, &stack.material_at(layer, 0.0))
+                    .map_err(|reason| (layer, reason))?,
+            );
             if !stack.is_uniform(layer) {
                 for t in [0.25, 0.5, 0.75, 1.0] {
-                    coefficient(model, &stack.material_at(layer, t)).map_err(|reason| (layer, reason))?;
+                    coefficient(model, &stack.material_at(layer, t))
+                        .map_err(|reason| (layer, reason))?;
                 }
             }
         }
-        Ok(Self { stack, model, bottoms })
+        Ok(Self {
+            stack,
+            model,
+            bottoms,
+        })
     }
 
     pub fn stack(&self) -> &'s Stack {
@@ -63,7 +81,8 @@ impl<'s> ConductionOperator<'s> {
             self.bottoms[layer]
         } else {
             // A grade runs between materials that were checked; should a point in between fail, the face stands in.
-            coefficient(self.model, &self.stack.material_at(layer, t)).unwrap_or(self.bottoms[layer])
+            coefficient(self.model, &self.stack.material_at(layer, t))
+                .unwrap_or(self.bottoms[layer])
         };
         raised(own, self.stack.field_v_per_nm * z_nm)
     }
@@ -112,8 +131,17 @@ pub fn raising(at: &Coefficient, per_unit: f64) -> Coefficient {
 
 /// Slopes that are all zero, with poles where `at` has them.
 pub fn unchanging(at: &Coefficient) -> Coefficient {
-    let still = Pole { strength: 0.0, position: 0.0, nearest: 0.0, farthest: 0.0 };
-    Coefficient { stiffness: 0.0, poles: at.poles.map(|pole| pole.map(|_| still)), constant: 0.0 }
+    let still = Pole {
+        strength: 0.0,
+        position: 0.0,
+        nearest: 0.0,
+        farthest: 0.0,
+    };
+    Coefficient {
+        stiffness: 0.0,
+        poles: at.poles.map(|pole| pole.map(|_| still)),
+        constant: 0.0,
+    }
 }
 
 /// The model's name in files and reports.

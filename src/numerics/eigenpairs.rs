@@ -142,7 +142,13 @@ impl<'p> Search<'p> {
     /// Every other level lies outside the bracket, so a solve shrinks what is left of them in the vector at least by the
     /// ratio of the level's distance from the shift to its distance from the bracket's ends. While that ratio is small
     /// more solves with the same factors are cheaper than new factors.
-    fn refine(&mut self, start: f64, factored: &Factored, low: f64, high: f64) -> Option<Eigenpair> {
+    fn refine(
+        &mut self,
+        start: f64,
+        factored: &Factored,
+        low: f64,
+        high: f64,
+    ) -> Option<Eigenpair> {
         let mut iterate = Iterate::new(self.pencil, start, start_vector(self.pencil, 0));
         iterate.step(factored);
         let mut value = iterate.step(factored);
@@ -247,7 +253,12 @@ struct Iterate<'p> {
 impl<'p> Iterate<'p> {
     fn new(pencil: &'p Pencil, shift: f64, vector: Vec<f64>) -> Self {
         let weighted = pencil.weight(shift, shift, &vector);
-        Self { pencil, shift, vector, weighted }
+        Self {
+            pencil,
+            shift,
+            vector,
+            weighted,
+        }
     }
 
     fn shift_to(&mut self, shift: f64) {
@@ -267,7 +278,10 @@ impl<'p> Iterate<'p> {
         self.weighted = self.pencil.weight(self.shift, self.shift, &self.vector);
         let norm = dot(&self.vector, &self.weighted);
         let scale = 1.0 / norm.sqrt();
-        self.vector.iter_mut().chain(&mut self.weighted).for_each(|v| *v *= scale);
+        self.vector
+            .iter_mut()
+            .chain(&mut self.weighted)
+            .for_each(|v| *v *= scale);
         self.shift + shifted / norm
     }
 }
@@ -276,7 +290,9 @@ impl<'p> Iterate<'p> {
 fn start_vector(pencil: &Pencil, seed: usize) -> Vec<f64> {
     let count = pencil.mesh.node_count();
     // Multiples of the golden ratio, modulo one, are spread evenly and never repeat.
-    let mut x: Vec<f64> = (0..count).map(|k| 0.5 + ((k * (seed + 1)) as f64 * 0.618_033_988_749_895).fract()).collect();
+    let mut x: Vec<f64> = (0..count)
+        .map(|k| 0.5 + ((k * (seed + 1)) as f64 * 0.618_033_988_749_895).fract())
+        .collect();
     x[0] = 0.0;
     x[count - 1] = 0.0;
     x

@@ -244,15 +244,25 @@ impl Pencil {
     /// the level of that number. A is taken at the lowest C.
     pub fn weyl_estimate(&self, count: f64) -> f64 {
         let low = self.floor();
-        let nodes = self.mesh.elements.iter().enumerate().flat_map(|(index, element)| {
-            let weights = self.mesh.reference.weights.iter();
-            weights.zip(self.at(index)).map(|(w, c)| {
-                let phase = 0.5 * element.length * w / (c.a(low).sqrt() * std::f64::consts::PI);
-                (phase, c.constant)
-            })
-        });
+        let nodes = self
+            .mesh
+            .elements
+            .iter()
+            .enumerate()
+            .flat_map(|(index, element)| {
+                let weights = self.mesh.reference.weights.iter();
+                weights.zip(self.at(index)).map(|(w, c)| {
+                    let phase = 0.5 * element.length * w / (c.a(low).sqrt() * std::f64::consts::PI);
+                    (phase, c.constant)
+                })
+            });
         let nodes: Vec<(f64, f64)> = nodes.collect();
-        let phase = |lambda: f64| nodes.iter().map(|(w, c)| w * (lambda - c).max(0.0).sqrt()).sum::<f64>();
+        let phase = |lambda: f64| {
+            nodes
+                .iter()
+                .map(|(w, c)| w * (lambda - c).max(0.0).sqrt())
+                .sum::<f64>()
+        };
         let span = nodes.iter().map(|(_, c)| c - low).fold(1e-6, f64::max);
         let (mut low, mut high) = (low, low + span);
         for _ in 0..200 {

@@ -41,7 +41,8 @@ pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
     for from in 0..states.len() {
         for to in from + 1..states.len() {
             let energy_ev = states[to].energy_ev - states[from].energy_ev;
-            let dipole_nm = moment(&subbands.pencil, &subbands.pairs[from], &subbands.pairs[to]).abs();
+            let dipole_nm =
+                moment(&subbands.pencil, &subbands.pairs[from], &subbands.pairs[to]).abs();
             let oscillator_strength = energy_ev * dipole_nm * dipole_nm / HBAR2_OVER_2M0;
             list.push(Transition {
                 from,

@@ -11,7 +11,8 @@ use serde::Serialize;
 /// What the oscillator strengths mean; printed with them.
 const STRENGTH_DEFINITION: &str = "2 m0 E |z|²/ħ² with the free-electron mass; normalised: with the in-plane mass of the lower state";
 /// What the dipoles mean with an energy-dependent mass.
-const DIPOLE_DEFINITION: &str = "|<from|z|to>|, of all components of the states where the mass depends on energy";
+const DIPOLE_DEFINITION: &str =
+    "|<from|z|to>|, of all components of the states where the mass depends on energy";
 
 /// The solved levels of a stack.
 #[derive(Debug, Serialize)]
@@ -110,7 +111,14 @@ impl Levels {
             normalised_strength: t.normalised_strength,
             overlap: t.overlap,
         };
-        let Audit { orthonormality, velocity, force, sum_rule, returned, counted } = subbands.audit();
+        let Audit {
+            orthonormality,
+            velocity,
+            force,
+            sum_rule,
+            returned,
+            counted,
+        } = subbands.audit();
         Levels {
             title: structure.title.clone(),
             model: model_name(structure.conduction.model),
@@ -118,8 +126,18 @@ impl Levels {
             field_kv_cm: 1e4 * stack.field_v_per_nm,
             width_nm: stack.total_width_nm(),
             bound_states: subbands.bound_count(),
-            subbands: subbands.states().iter().take(shown).enumerate().map(row).collect(),
-            transitions: transitions(subbands).iter().filter(|t| t.to < shown).map(transition).collect(),
+            subbands: subbands
+                .states()
+                .iter()
+                .take(shown)
+                .enumerate()
+                .map(row)
+                .collect(),
+            transitions: transitions(subbands)
+                .iter()
+                .filter(|t| t.to < shown)
+                .map(transition)
+                .collect(),
             oscillator_strength_definition: STRENGTH_DEFINITION,
             dipole_definition: DIPOLE_DEFINITION,
             audit: AuditRow {
@@ -142,7 +160,17 @@ impl Levels {
     /// The two tables and the audit, without the title.
     pub fn tables(&self) -> String {
         let subbands = table(
-            &["conduction", "energy eV", "from edge meV", "error meV", "mass m0", "centre nm", "extent nm", "mostly in", "held by"],
+            &[
+                "conduction",
+                "energy eV",
+                "from edge meV",
+                "error meV",
+                "mass m0",
+                "centre nm",
+                "extent nm",
+                "mostly in",
+                "held by",
+            ],
             &[7, 8],
             self.subbands
                 .iter()
@@ -162,7 +190,17 @@ impl Levels {
                 .collect(),
         );
         let transitions = table(
-            &["from", "to", "energy meV", "wavelength µm", "THz", "dipole nm", "strength", "normalised", "overlap"],
+            &[
+                "from",
+                "to",
+                "energy meV",
+                "wavelength µm",
+                "THz",
+                "dipole nm",
+                "strength",
+                "normalised",
+                "overlap",
+            ],
             &[],
             self.transitions
                 .iter()
@@ -183,7 +221,11 @@ impl Levels {
                 .collect(),
         );
         let a = &self.audit;
-        let verdict = if a.faults.is_empty() { "passed".to_owned() } else { a.faults.join("; ") };
+        let verdict = if a.faults.is_empty() {
+            "passed".to_owned()
+        } else {
+            a.faults.join("; ")
+        };
         format!(
             "{subbands}\n{} below the lower outer barrier edge.\n\n{transitions}\nStrength: {STRENGTH_DEFINITION}.\nDipole: {DIPOLE_DEFINITION}.\n\
              Audit {verdict}: overlaps {:.0e}, velocity and position {:.0e}, mean force {:.0e}, sum rule {:.0e}; {} states found, {} counted.\n",
@@ -191,14 +233,23 @@ impl Levels {
                 1 => "One state lies".to_owned(),
                 n => format!("{n} states lie"),
             },
-            a.orthonormality, a.velocity_position, a.mean_force, a.sum_rule, a.states_returned, a.states_counted,
+            a.orthonormality,
+            a.velocity_position,
+            a.mean_force,
+            a.sum_rule,
+            a.states_returned,
+            a.states_counted,
         )
     }
 }
 
 impl Report for Levels {
     fn text(&self) -> String {
-        let title = self.title.as_ref().map(|t| format!("{t}\n")).unwrap_or_default();
+        let title = self
+            .title
+            .as_ref()
+            .map(|t| format!("{t}\n"))
+            .unwrap_or_default();
         format!(
             "{title}{} K, field {} kV/cm, {} mass, {:.2} nm between walls\n\n{}",
             significant(self.temperature_k, 4),
@@ -210,6 +261,10 @@ impl Report for Levels {
     }
 
     fn csv(&self) -> Result<String, csv::Error> {
-        Ok(format!("{}\n{}", csv_table(&self.subbands)?, csv_table(&self.transitions)?))
+        Ok(format!(
+            "{}\n{}",
+            csv_table(&self.subbands)?,
+            csv_table(&self.transitions)?
+        ))
     }
 }

@@ -63,16 +63,25 @@ impl MaterialList {
     /// Only when an embedded table cannot be read.
     pub fn new() -> Result<MaterialList, MaterialError> {
         let entries = Library::new().entries()?;
-        let alternatives = entries.iter().flat_map(|entry| &entry.alternatives).map(alternative_row).collect();
+        let alternatives = entries
+            .iter()
+            .flat_map(|entry| &entry.alternatives)
+            .map(alternative_row)
+            .collect();
         let materials = entries
             .iter()
             .map(|entry| ListRow {
                 material: entry.name,
-                between: entry.of.map_or(String::new(), |[a, b]| format!("{a} and {b}")),
+                between: entry
+                    .of
+                    .map_or(String::new(), |[a, b]| format!("{a} and {b}")),
                 parameters: entry.count,
             })
             .collect();
-        Ok(MaterialList { materials, alternatives })
+        Ok(MaterialList {
+            materials,
+            alternatives,
+        })
     }
 }
 
@@ -85,14 +94,21 @@ impl MaterialSheet {
         let library = Library::new();
         let substance = library.find(formula)?;
         let rows = library.report(&substance, temperature_k)?;
-        let mut notes: Vec<String> = rows.iter().flat_map(|row| row.notes.iter().cloned()).collect();
+        let mut notes: Vec<String> = rows
+            .iter()
+            .flat_map(|row| row.notes.iter().cloned())
+            .collect();
         notes.sort();
         notes.dedup();
         let mut keys: Vec<String> = rows.iter().flat_map(|row| row.origin.sources()).collect();
         keys.sort();
         keys.dedup();
         let mut alternatives: Vec<AlternativeRow> = Vec::new();
-        for alternative in rows.iter().flat_map(|row| &row.alternatives).map(alternative_row) {
+        for alternative in rows
+            .iter()
+            .flat_map(|row| &row.alternatives)
+            .map(alternative_row)
+        {
             let known = |a: &AlternativeRow| (a.material.clone(), a.key, a.choose.clone());
             if !alternatives.iter().any(|a| known(a) == known(&alternative)) {
                 alternatives.push(alternative);
@@ -106,7 +122,12 @@ impl MaterialSheet {
             notes,
             sources: keys
                 .into_iter()
-                .filter_map(|key| Some(SourceRow { citation: citation(&key)?.to_owned(), key }))
+                .filter_map(|key| {
+                    Some(SourceRow {
+                        citation: citation(&key)?.to_owned(),
+                        key,
+                    })
+                })
                 .collect(),
         })
     }
@@ -150,7 +171,13 @@ fn alternatives_table(rows: &[AlternativeRow]) -> String {
         &[0, 1, 2, 3, 4],
         rows.iter()
             .map(|a| {
-                vec![a.material.clone(), a.key.to_owned(), a.choose.clone(), a.source.clone(), a.known.clone()]
+                vec![
+                    a.material.clone(),
+                    a.key.to_owned(),
+                    a.choose.clone(),
+                    a.source.clone(),
+                    a.known.clone(),
+                ]
             })
             .collect(),
     )
@@ -163,7 +190,13 @@ impl Report for MaterialList {
             &[0, 1],
             self.materials
                 .iter()
-                .map(|row| vec![row.material.to_owned(), row.between.clone(), row.parameters.to_string()])
+                .map(|row| {
+                    vec![
+                        row.material.to_owned(),
+                        row.between.clone(),
+                        row.parameters.to_string(),
+                    ]
+                })
                 .collect(),
         );
         let mut text = format!(
@@ -172,13 +205,20 @@ impl Report for MaterialList {
             alternatives_table(&self.alternatives)
         );
         for row in self.alternatives.iter().filter(|row| !row.note.is_empty()) {
-            text.push_str(&format!("\n{} {} {}: {}", row.material, row.key, row.choose, row.note));
+            text.push_str(&format!(
+                "\n{} {} {}: {}",
+                row.material, row.key, row.choose, row.note
+            ));
         }
         text + "\n"
     }
 
     fn csv(&self) -> Result<String, csv::Error> {
-        Ok(format!("{}\n{}", csv_table(&self.materials)?, csv_table(&self.alternatives)?))
+        Ok(format!(
+            "{}\n{}",
+            csv_table(&self.materials)?,
+            csv_table(&self.alternatives)?
+        ))
     }
 }
 
@@ -200,7 +240,11 @@ impl Report for MaterialSheet {
                 })
                 .collect(),
         );
-        let mut text = format!("{} at {} K\n\n{parameters}", self.material, significant(self.temperature_k, 4));
+        let mut text = format!(
+            "{} at {} K\n\n{parameters}",
+            self.material,
+            significant(self.temperature_k, 4)
+        );
         if !self.alternatives.is_empty() {
             text.push_str("\nAlternatives\n\n");
             text.push_str(&alternatives_table(&self.alternatives));

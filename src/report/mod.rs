@@ -31,6 +31,8 @@ fn csv_table<R: Serialize>(rows: &[R]) -> Result<String, csv::Error> {
     for row in rows {
         writer.serialize(row)?;
     }
-    let bytes = writer.into_inner().map_err(|error| csv::Error::from(error.into_error()))?;
+    let bytes = writer
+        .into_inner()
+        .map_err(|error| csv::Error::from(error.into_error()))?;
     Ok(String::from_utf8_lossy(&bytes).into_owned())
 }

@@ -11,11 +11,19 @@ pub fn table(header: &[&str], words: &[usize], rows: Vec<Vec<String>>) -> String
     table.set_header(header.to_vec());
     table.add_rows(rows);
     for (index, column) in table.column_iter_mut().enumerate() {
-        let alignment = if words.contains(&index) { CellAlignment::Left } else { CellAlignment::Right };
+        let alignment = if words.contains(&index) {
+            CellAlignment::Left
+        } else {
+            CellAlignment::Right
+        };
         column.set_cell_alignment(alignment);
         column.set_padding((1, 1));
     }
-    table.to_string().lines().map(|line| line.trim_end().to_owned() + "\n").collect()
+    table
+        .to_string()
+        .lines()
+        .map(|line| line.trim_end().to_owned() + "\n")
+        .collect()
 }
 
 /// A number with `digits` significant digits, without an exponent where that reads well.
@@ -44,7 +52,11 @@ pub fn significant(value: f64, digits: usize) -> String {
 /// A numerical error in meV: its order of magnitude is all that matters.
 pub fn error_mev(value_ev: f64) -> String {
     let mev = value_ev * 1e3;
-    if mev < 1e-5 { "<0.00001".to_owned() } else { format!("{mev:.0e}") }
+    if mev < 1e-5 {
+        "<0.00001".to_owned()
+    } else {
+        format!("{mev:.0e}")
+    }
 }
 
 #[cfg(test)]

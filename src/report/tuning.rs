@@ -65,9 +65,20 @@ impl Tuning {
 
     /// Gathers the report; `text` is the tuned structure file.
     pub fn new(structure: &Structure, outcome: &Outcome, text: String) -> Tuning {
-        let Outcome { task, before, after, continuous, .. } = outcome;
+        let Outcome {
+            task,
+            before,
+            after,
+            continuous,
+            ..
+        } = outcome;
         let name = |index: usize| format!("conduction {}", index + 1);
-        let wavelength_aims: Vec<bool> = structure.tune.iter().flat_map(|t| &t.aims).map(|a| matches!(a.target, Target::WavelengthUm(_))).collect();
+        let wavelength_aims: Vec<bool> = structure
+            .tune
+            .iter()
+            .flat_map(|t| &t.aims)
+            .map(|a| matches!(a.target, Target::WavelengthUm(_)))
+            .collect();
         let aims = (0..task.aims.len())
             .map(|a| {
                 let aim = &task.aims[a];
@@ -78,12 +89,31 @@ impl Tuning {
                     _ => design.values[a],
                 };
                 let (kind, unit, target, within) = match aim.goal {
-                    Goal::Energy { target_ev, within_ev } if wavelength => {
+                    Goal::Energy {
+                        target_ev,
+                        within_ev,
+                    } if wavelength => {
                         let um = HC_EV_UM / target_ev;
-                        ("wavelength", "µm", Some(um), Some(um * within_ev / target_ev))
+                        (
+                            "wavelength",
+                            "µm",
+                            Some(um),
+                            Some(um * within_ev / target_ev),
+                        )
                     }
-                    Goal::Energy { target_ev, within_ev } => ("energy", "meV", Some(1e3 * target_ev), Some(1e3 * within_ev)),
-                    Goal::Dipole { target_nm, within_nm } => ("dipole", "nm", Some(target_nm), Some(within_nm)),
+                    Goal::Energy {
+                        target_ev,
+                        within_ev,
+                    } => (
+                        "energy",
+                        "meV",
+                        Some(1e3 * target_ev),
+                        Some(1e3 * within_ev),
+                    ),
+                    Goal::Dipole {
+                        target_nm,
+                        within_nm,
+                    } => ("dipole", "nm", Some(target_nm), Some(within_nm)),
                     Goal::LargestDipole => ("largest dipole", "nm", None, None),
                 };
                 AimRow {
@@ -107,7 +137,10 @@ impl Tuning {
                 let at = |design: &Design| v.knob.value(&design.stack);
                 let after_value = at(after).unwrap_or(v.low);
                 let monolayers = match v.knob {
-                    Knob::Width { entry } => after.stack.entry_monolayer_nm(entry).map(|one| after_value / one),
+                    Knob::Width { entry } => after
+                        .stack
+                        .entry_monolayer_nm(entry)
+                        .map(|one| after_value / one),
                     _ => None,
                 };
                 VariableRow {
@@ -127,7 +160,12 @@ impl Tuning {
             variables,
             limits: limit_sentences(outcome),
             notes: notes(outcome),
-            result: Levels::new(structure, &after.stack, &after.subbands, structure.conduction.states.max(highest_state(outcome))),
+            result: Levels::new(
+                structure,
+                &after.stack,
+                &after.subbands,
+                structure.conduction.states.max(highest_state(outcome)),
+            ),
             structure: text,
         }
     }
@@ -135,7 +173,13 @@ impl Tuning {
 
 /// The states that the aims speak of are listed, whatever number the file asks for.
 fn highest_state(outcome: &Outcome) -> usize {
-    outcome.after.states.iter().map(|(from, to)| from.max(to) + 1).max().unwrap_or(1)
+    outcome
+        .after
+        .states
+        .iter()
+        .map(|(from, to)| from.max(to) + 1)
+        .max()
+        .unwrap_or(1)
 }
 
 fn limit_sentences(outcome: &Outcome) -> Vec<String> {
@@ -166,7 +210,10 @@ fn limit_sentences(outcome: &Outcome) -> Vec<String> {
                     Goal::Energy { .. } => format!("{} meV", significant(2e3 * half_step[a], 2)),
                     _ => format!("{} nm", significant(2.0 * half_step[a], 2)),
                 };
-                sentences.push(format!("Whole monolayers: one monolayer moves the transition {} by up to {size}.", pair(a)));
+                sentences.push(format!(
+                    "Whole monolayers: one monolayer moves the transition {} by up to {size}.",
+                    pair(a)
+                ));
             }
         }
     }
@@ -177,7 +224,10 @@ fn notes(outcome: &Outcome) -> Vec<String> {
     let task = &outcome.task;
     let mut notes = Vec::new();
     for &k in &outcome.started_outside {
-        notes.push(format!("The {} of the file lies outside its bounds; the search began at the nearer bound.", task.variables[k].name));
+        notes.push(format!(
+            "The {} of the file lies outside its bounds; the search began at the nearer bound.",
+            task.variables[k].name
+        ));
     }
     if outcome.starts > 1 {
         notes.push(format!("The descent from the file's design did not reach the aims; {} designs were tried as starts.", outcome.starts - 1));
@@ -239,14 +289,28 @@ impl Report for Tuning {
                     if snapped {
                         row.push(a.continuous.map_or("-".to_owned(), digits));
                     }
-                    let met = if a.target.is_none() { "-" } else if a.met { "yes" } else { "no" };
+                    let met = if a.target.is_none() {
+                        "-"
+                    } else if a.met {
+                        "yes"
+                    } else {
+                        "no"
+                    };
                     row.extend([digits(a.after), a.unit.to_owned(), met.to_owned()]);
                     row
                 })
                 .collect(),
         );
         let variables = table(
-            &["variable", "lower bound", "upper bound", "before", "after", "unit", "monolayers"],
+            &[
+                "variable",
+                "lower bound",
+                "upper bound",
+                "before",
+                "after",
+                "unit",
+                "monolayers",
+            ],
             &[0, 5],
             self.variables
                 .iter()
@@ -255,7 +319,8 @@ impl Report for Tuning {
                         v.variable.clone(),
                         significant(v.lower_bound, 4),
                         significant(v.upper_bound, 4),
-                        v.before.map_or("-".to_owned(), |value| significant(value, 5)),
+                        v.before
+                            .map_or("-".to_owned(), |value| significant(value, 5)),
                         significant(v.after, 5),
                         v.unit.to_owned(),
                         v.monolayers.map_or("-".to_owned(), |n| format!("{n:.2}")),
@@ -264,7 +329,11 @@ impl Report for Tuning {
                 .collect(),
         );
         let mut text = String::new();
-        text.push_str(if self.reached { "All aims are met.\n\n" } else { "Not all aims can be met; this is the nearest design.\n\n" });
+        text.push_str(if self.reached {
+            "All aims are met.\n\n"
+        } else {
+            "Not all aims can be met; this is the nearest design.\n\n"
+        });
         text.push_str(&aims);
         text.push('\n');
         text.push_str(&variables);
@@ -279,6 +348,11 @@ impl Report for Tuning {
     }
 
     fn csv(&self) -> Result<String, csv::Error> {
-        Ok(format!("{}\n{}\n{}", csv_table(&self.aims)?, csv_table(&self.variables)?, self.result.csv()?))
+        Ok(format!(
+            "{}\n{}\n{}",
+            csv_table(&self.aims)?,
+            csv_table(&self.variables)?,
+            self.result.csv()?
+        ))
     }
 }

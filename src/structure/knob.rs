@@ -19,7 +19,9 @@ impl Knob {
     pub fn value(self, stack: &Stack) -> Option<f64> {
         match self {
             Knob::Width { entry } => stack.entry_width_nm(entry),
-            Knob::Fraction { entry, element } => stack.composition(entry).map(|c| c.fraction(element)),
+            Knob::Fraction { entry, element } => {
+                stack.composition(entry).map(|c| c.fraction(element))
+            }
             Knob::Field => Some(stack.field_v_per_nm),
         }
     }
@@ -40,7 +42,10 @@ impl Knob {
 impl Stack {
     /// Width of a layer entry in nm.
     pub fn entry_width_nm(&self, entry: usize) -> Option<f64> {
-        self.layers.iter().find(|layer| layer.entry == entry).map(|layer| layer.width_nm)
+        self.layers
+            .iter()
+            .find(|layer| layer.entry == entry)
+            .map(|layer| layer.width_nm)
     }
 
     /// Height of a monolayer of a layer entry in nm, on the substrate if there is one.

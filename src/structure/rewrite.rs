@@ -116,7 +116,7 @@ fn new_line(
         );
     };
     let end = if text.contains("\r\n") { "\r\n" } else { "\n" };
-    let before = if line.at > 0 && !text[..line.at].ends_with('\n') {
+    let before = if line.at > 0 && !text[..line.at].ends_with(['\n', '\u{feff}']) {
         end
     } else {
         ""

@@ -42,7 +42,10 @@ impl Audit {
             .map(|(what, deviation)| format!("{what} (relative {deviation:.1e})"))
             .collect();
         if self.returned != self.counted {
-            faults.push(format!("{} states were found where {} are counted", self.returned, self.counted));
+            faults.push(format!(
+                "{} states were found where {} are counted",
+                self.returned, self.counted
+            ));
         }
         faults
     }
@@ -56,7 +59,10 @@ struct Envelope {
 
 pub(super) fn audit(subbands: &Subbands) -> Audit {
     let Subbands { pencil, pairs, .. } = subbands;
-    let envelopes: Vec<Envelope> = pairs.iter().map(|pair| envelope(pencil, &pair.vector)).collect();
+    let envelopes: Vec<Envelope> = pairs
+        .iter()
+        .map(|pair| envelope(pencil, &pair.vector))
+        .collect();
     let mut audit = Audit {
         orthonormality: 0.0,
         velocity: 0.0,
@@ -68,13 +74,19 @@ pub(super) fn audit(subbands: &Subbands) -> Audit {
     for (i, pair) in pairs.iter().enumerate() {
         for (j, other) in pairs.iter().enumerate().skip(i) {
             let inner = pencil.inner(pair.value, &pair.vector, other.value, &other.vector);
-            audit.orthonormality = audit.orthonormality.max((inner - f64::from(u8::from(i == j))).abs());
+            audit.orthonormality = audit
+                .orthonormality
+                .max((inner - f64::from(u8::from(i == j))).abs());
             if i != j {
-                audit.velocity = audit.velocity.max(velocity_deviation(subbands, &envelopes, i, j));
+                audit.velocity = audit
+                    .velocity
+                    .max(velocity_deviation(subbands, &envelopes, i, j));
             }
         }
         audit.force = audit.force.max(force_deviation(subbands, &envelopes[i], i));
-        audit.sum_rule = audit.sum_rule.max(sum_rule_deviation(subbands, &envelopes[i], i));
+        audit.sum_rule = audit
+            .sum_rule
+            .max(sum_rule_deviation(subbands, &envelopes[i], i));
     }
     if let Some(last) = pairs.last() {
         let clear = 1e-9 * (last.value - pencil.floor()) + 1e-12;
@@ -130,7 +142,11 @@ fn sum_rule_deviation(subbands: &Subbands, envelope: &Envelope, index: usize) ->
         let z = pencil.mesh.position(element, q) - centre;
         let (value, a) = (envelope.values[k], at.a(energy));
         let raised = value + z * envelope.slopes[k];
-        size += 0.5 * element.length * pencil.mesh.reference.weights[q] * a * (raised * raised + value * value);
+        size += 0.5
+            * element.length
+            * pencil.mesh.reference.weights[q]
+            * a
+            * (raised * raised + value * value);
         a * raised * raised + (at.constant - energy) * (z * value).powi(2) - a * value * value
     });
     difference.abs() / size
@@ -162,7 +178,8 @@ fn force_deviation(subbands: &Subbands, envelope: &Envelope, index: usize) -> f6
             let k = e * (p + 1) + q;
             let flux = nodes[q].a(energy) * envelope.slopes[k];
             // Half the length from the quadrature and its inverse from the slopes cancel.
-            let inside = flux * flux * softness_slope[q] - envelope.values[k].powi(2) * constant_slope[q];
+            let inside =
+                flux * flux * softness_slope[q] - envelope.values[k].powi(2) * constant_slope[q];
             add(reference.weights[q] * inside);
         }
         if e + 1 < pencil.mesh.elements.len() {
@@ -170,7 +187,8 @@ fn force_deviation(subbands: &Subbands, envelope: &Envelope, index: usize) -> f6
             let (below, above) = (&nodes[p], &pencil.at(e + 1)[0]);
             let (a_below, a_above) = (below.a(energy), above.a(energy));
             let flux = 0.5 * (edges[e].1 + edges[e + 1].0);
-            add(flux * flux * (1.0 / a_above - 1.0 / a_below) - (above.constant - below.constant) * envelope.values[k].powi(2));
+            add(flux * flux * (1.0 / a_above - 1.0 / a_below)
+                - (above.constant - below.constant) * envelope.values[k].powi(2));
         }
     }
     let [lower, upper] = wall_pressures(subbands, index);

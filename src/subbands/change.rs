@@ -28,14 +28,20 @@ fn width(operator: &ConductionOperator, pencil: &Pencil, entry: usize) -> Change
             layer += 1;
         }
         let own = f64::from(u8::from(stack.layers[layer].entry == entry));
-        let (start, stretch) = (below + own * element.start_fraction, own * element.length_fraction);
+        let (start, stretch) = (
+            below + own * element.start_fraction,
+            own * element.length_fraction,
+        );
         elements.push((start, stretch));
         for (at, node) in pencil.at(index).iter().zip(&pencil.mesh.reference.nodes) {
             let moved = start + stretch * 0.5 * (1.0 + node);
             coefficients.push(models::raising(at, stack.field_v_per_nm * moved));
         }
     }
-    Change { elements, coefficients }
+    Change {
+        elements,
+        coefficients,
+    }
 }
 
 fn fraction(operator: &ConductionOperator, pencil: &Pencil, entry: usize, of: Element) -> Change {
@@ -50,7 +56,8 @@ fn fraction(operator: &ConductionOperator, pencil: &Pencil, entry: usize, of: El
                 _ if !own => models::unchanging(at),
                 Some((known, slope)) if known == layer => slope,
                 _ => {
-                    let slope = operator.fraction_slope(layer, pencil.mesh.fraction(element, q), of);
+                    let slope =
+                        operator.fraction_slope(layer, pencil.mesh.fraction(element, q), of);
                     if stack.is_uniform(layer) {
                         uniform = Some((layer, slope));
                     }
@@ -59,7 +66,10 @@ fn fraction(operator: &ConductionOperator, pencil: &Pencil, entry: usize, of: El
             });
         }
     }
-    Change { elements: vec![(0.0, 0.0); pencil.mesh.elements.len()], coefficients }
+    Change {
+        elements: vec![(0.0, 0.0); pencil.mesh.elements.len()],
+        coefficients,
+    }
 }
 
 fn field(pencil: &Pencil) -> Change {
@@ -69,5 +79,8 @@ fn field(pencil: &Pencil) -> Change {
             coefficients.push(models::raising(at, pencil.mesh.position(element, q)));
         }
     }
-    Change { elements: vec![(0.0, 0.0); pencil.mesh.elements.len()], coefficients }
+    Change {
+        elements: vec![(0.0, 0.0); pencil.mesh.elements.len()],
+        coefficients,
+    }
 }

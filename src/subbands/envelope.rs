@@ -31,17 +31,26 @@ pub fn layer_envelopes(subbands: &Subbands, stack: &Stack) -> Vec<Vec<f64>> {
 /// Values of a nodal vector at the given places of one layer (−1 its bottom, 1 its top).
 fn layer_values(subbands: &Subbands, vector: &[f64], layer: usize, places: &[f64]) -> Vec<f64> {
     let mesh = &subbands.pencil.mesh;
-    let own: Vec<usize> = (0..mesh.elements.len()).filter(|&e| mesh.elements[e].segment == layer).collect();
+    let own: Vec<usize> = (0..mesh.elements.len())
+        .filter(|&e| mesh.elements[e].segment == layer)
+        .collect();
     places
         .iter()
         .map(|place| {
             let t = 0.5 * (1.0 + place);
-            let holding = own.iter().copied().rev().find(|&e| mesh.elements[e].start_fraction <= t + 1e-12);
+            let holding = own
+                .iter()
+                .copied()
+                .rev()
+                .find(|&e| mesh.elements[e].start_fraction <= t + 1e-12);
             let Some(e) = holding else { return 0.0 };
             let element = &mesh.elements[e];
             let x = 2.0 * (t - element.start_fraction) / element.length_fraction - 1.0;
             let row = mesh.reference.interpolation(&[x.clamp(-1.0, 1.0)]);
-            row.iter().zip(mesh.local(e, vector)).map(|(m, v)| m * v).sum()
+            row.iter()
+                .zip(mesh.local(e, vector))
+                .map(|(m, v)| m * v)
+                .sum()
         })
         .collect()
 }
@@ -50,5 +59,7 @@ fn layer_values(subbands: &Subbands, vector: &[f64], layer: usize, places: &[f64
 pub fn envelope_overlap(subbands: &Subbands, i: usize, j: usize) -> f64 {
     let (a, b) = (state::density(subbands, i), state::density(subbands, j));
     let count = subbands.pencil.mesh.order() + 1;
-    state::integrate(&subbands.pencil, |e, q| (a[e * count + q] * b[e * count + q]).sqrt())
+    state::integrate(&subbands.pencil, |e, q| {
+        (a[e * count + q] * b[e * count + q]).sqrt()
+    })
 }

@@ -70,7 +70,10 @@ pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) ->
 pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subbands {
     let pencil = pencil_on(operator, mesh);
     let pairs = eigenpairs::lowest(&pencil, count);
-    let finer = pencil_on(operator, pencil.mesh.with_order(pencil.mesh.order() + ORDER_STEP));
+    let finer = pencil_on(
+        operator,
+        pencil.mesh.with_order(pencil.mesh.order() + ORDER_STEP),
+    );
     let errors_ev = pairs
         .iter()
         .map(|pair| {
@@ -78,20 +81,30 @@ pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subba
             (eigenpairs::improved_value(&finer, pair.value, &vector) - pair.value).abs()
         })
         .collect();
-    Subbands { pencil, pairs, errors_ev }
+    Subbands {
+        pencil,
+        pairs,
+        errors_ev,
+    }
 }
 
 fn pencil_on(operator: &ConductionOperator, mesh: Mesh) -> Pencil {
     let frame = mesh.clone();
     Pencil::new(mesh, |element, q| {
-        operator.at(element.segment, frame.fraction(element, q), frame.position(element, q))
+        operator.at(
+            element.segment,
+            frame.fraction(element, q),
+            frame.position(element, q),
+        )
     })
 }
 
 impl Subbands {
     /// What is known of each state, in the order of energy.
     pub fn states(&self) -> Vec<State> {
-        (0..self.pairs.len()).map(|index| state::describe(self, index)).collect()
+        (0..self.pairs.len())
+            .map(|index| state::describe(self, index))
+            .collect()
     }
 
     /// Checks of the solution against the commutation rule.

@@ -12,11 +12,20 @@ const MAX_PIECES: usize = 4000;
 
 /// Layer widths in nm, and the number of elements in each.
 pub fn pieces(operator: &ConductionOperator, count: usize) -> (Vec<f64>, Vec<usize>) {
-    let lengths: Vec<f64> = operator.stack().layers.iter().map(|layer| layer.width_nm).collect();
+    let lengths: Vec<f64> = operator
+        .stack()
+        .layers
+        .iter()
+        .map(|layer| layer.width_nm)
+        .collect();
     let coarse = Mesh::new(&lengths, &vec![1; lengths.len()], 2);
     let frame = coarse.clone();
     let sample = Pencil::new(coarse, |element, q| {
-        operator.at(element.segment, frame.fraction(element, q), frame.position(element, q))
+        operator.at(
+            element.segment,
+            frame.fraction(element, q),
+            frame.position(element, q),
+        )
     });
     let floor_ev = sample.floor();
     let top_ev = sample.weyl_estimate(count as f64 + 1.0);

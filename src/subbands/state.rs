@@ -54,7 +54,8 @@ pub(super) fn density(subbands: &Subbands, index: usize) -> Vec<f64> {
         let scale = 2.0 / element.length;
         for (q, at) in pencil.at(e).iter().enumerate() {
             let slope = scale * slopes[q];
-            density.push(values[q] * values[q] + at.divided(pair.value, pair.value) * slope * slope);
+            density
+                .push(values[q] * values[q] + at.divided(pair.value, pair.value) * slope * slope);
         }
     }
     density
@@ -76,8 +77,13 @@ pub(super) fn integrate(pencil: &Pencil, mut f: impl FnMut(usize, usize) -> f64)
 pub(super) fn lower_outer_edge_ev(pencil: &Pencil) -> f64 {
     let elements = &pencil.mesh.elements;
     let highest = |segment: usize| {
-        let own = elements.iter().enumerate().filter(|(_, e)| e.segment == segment);
-        own.flat_map(|(index, _)| pencil.at(index)).map(|c| c.constant).fold(f64::NEG_INFINITY, f64::max)
+        let own = elements
+            .iter()
+            .enumerate()
+            .filter(|(_, e)| e.segment == segment);
+        own.flat_map(|(index, _)| pencil.at(index))
+            .map(|c| c.constant)
+            .fold(f64::NEG_INFINITY, f64::max)
     };
     let last = elements.last().map_or(0, |e| e.segment);
     highest(0).min(highest(last))
@@ -99,16 +105,24 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
     let mut shares = vec![0.0; layers];
     integrate(pencil, |e, q| {
         let element = &pencil.mesh.elements[e];
-        shares[element.segment] += 0.5 * element.length * pencil.mesh.reference.weights[q] * at(e, q);
+        shares[element.segment] +=
+            0.5 * element.length * pencil.mesh.reference.weights[q] * at(e, q);
         0.0
     });
-    let (layer, layer_share) =
-        shares.iter().copied().enumerate().max_by(|a, b| a.1.total_cmp(&b.1)).unwrap_or((0, 0.0));
+    let (layer, layer_share) = shares
+        .iter()
+        .copied()
+        .enumerate()
+        .max_by(|a, b| a.1.total_cmp(&b.1))
+        .unwrap_or((0, 0.0));
     let kinetic = integrate(pencil, |e, q| {
         let value = pencil.mesh.local(e, &pair.vector)[q];
         pencil.at(e)[q].a(energy_ev) * value * value
     });
-    let (first, last) = (pencil.coefficients[0], pencil.coefficients[pencil.coefficients.len() - 1]);
+    let (first, last) = (
+        pencil.coefficients[0],
+        pencil.coefficients[pencil.coefficients.len() - 1],
+    );
     let hold = if energy_ev > lower_outer_edge_ev(pencil) {
         Hold::Walls
     } else if energy_ev > first.constant.min(last.constant) {
@@ -122,7 +136,9 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
             .iter()
             .zip(pressures)
             // The envelope falls by exp(−κ d): a wall moved out by d works against a pressure falling as exp(−2 κ d).
-            .map(|(c, pressure)| pressure / (2.0 * ((c.constant - energy_ev) / c.a(energy_ev)).sqrt()))
+            .map(|(c, pressure)| {
+                pressure / (2.0 * ((c.constant - energy_ev) / c.a(energy_ev)).sqrt())
+            })
             .sum()
     } else {
         0.0
@@ -146,8 +162,12 @@ pub(super) fn wall_pressures(subbands: &Subbands, index: usize) -> [f64; 2] {
     let coefficients = &subbands.pencil.coefficients;
     let energy_ev = subbands.pairs[index].value;
     let fluxes = edge_fluxes(subbands, index);
-    let pressure = |flux: Option<f64>, at: usize| flux.map_or(0.0, |f| f * f / coefficients[at].a(energy_ev));
-    [pressure(fluxes.first().map(|f| f.0), 0), pressure(fluxes.last().map(|f| f.1), coefficients.len() - 1)]
+    let pressure =
+        |flux: Option<f64>, at: usize| flux.map_or(0.0, |f| f * f / coefficients[at].a(energy_ev));
+    [
+        pressure(fluxes.first().map(|f| f.0), 0),
+        pressure(fluxes.last().map(|f| f.1), coefficients.len() - 1),
+    ]
 }
 
 /// A ψ′ at the bottom and the top of every element, from the equation tested with the edge's own polynomial: more exact

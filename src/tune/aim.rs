@@ -34,7 +34,12 @@ impl Goal {
     /// The residual at an energy (eV, signed) or a dipole (nm, not negative), and its slope.
     pub fn residual(&self, value: f64) -> (f64, f64) {
         match *self {
-            Goal::Energy { target_ev: target, .. } | Goal::Dipole { target_nm: target, .. } => {
+            Goal::Energy {
+                target_ev: target, ..
+            }
+            | Goal::Dipole {
+                target_nm: target, ..
+            } => {
                 let unit = UNIT_MISS * target.abs();
                 ((value - target) / unit, 1.0 / unit)
             }
@@ -47,14 +52,21 @@ impl Goal {
 
     /// Whether a value meets the goal; a largest dipole is never missed.
     pub fn is_met(&self, value: f64) -> bool {
-        self.miss(value).is_none_or(|(miss, within)| miss.abs() <= within)
+        self.miss(value)
+            .is_none_or(|(miss, within)| miss.abs() <= within)
     }
 
     /// Value minus target, and the tolerance on it.
     pub fn miss(&self, value: f64) -> Option<(f64, f64)> {
         match *self {
-            Goal::Energy { target_ev, within_ev } => Some((value - target_ev, within_ev)),
-            Goal::Dipole { target_nm, within_nm } => Some((value - target_nm, within_nm)),
+            Goal::Energy {
+                target_ev,
+                within_ev,
+            } => Some((value - target_ev, within_ev)),
+            Goal::Dipole {
+                target_nm,
+                within_nm,
+            } => Some((value - target_nm, within_nm)),
             Goal::LargestDipole => None,
         }
     }

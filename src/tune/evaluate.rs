@@ -2,7 +2,9 @@
 
 use super::aim::{Aim, Goal};
 use crate::models::{ConductionOperator, Unsuitable};
-use crate::numerics::sensitivity::{Change, PairSlope, moment, moment_slope, pair_slopes, value_slope};
+use crate::numerics::sensitivity::{
+    Change, PairSlope, moment, moment_slope, pair_slopes, value_slope,
+};
 use crate::structure::{ConductionModel, Knob, Stack};
 use crate::subbands::{self, Accuracy, Subbands, change};
 use nalgebra::{DMatrix, DVector};
@@ -21,7 +23,11 @@ impl Variable {
     /// From the unit interval of the search to the variable's own.
     pub fn from_unit(&self, u: f64) -> f64 {
         // The ends are given back exactly: bounds are honoured to the last bit.
-        if u >= 1.0 { self.high } else { self.low + u.max(0.0) * (self.high - self.low) }
+        if u >= 1.0 {
+            self.high
+        } else {
+            self.low + u.max(0.0) * (self.high - self.low)
+        }
     }
 
     pub fn to_unit(&self, value: f64) -> f64 {
@@ -69,15 +75,25 @@ const SPARE_STATES: usize = 3;
 impl Task {
     /// Number of states that the aims need.
     pub fn states_needed(aims: &[Aim]) -> usize {
-        let highest = aims.iter().map(|aim| aim.from.max(aim.to) + 1).max().unwrap_or(1);
-        if aims.iter().any(|aim| aim.by_character) { highest + SPARE_STATES } else { highest }
+        let highest = aims
+            .iter()
+            .map(|aim| aim.from.max(aim.to) + 1)
+            .max()
+            .unwrap_or(1);
+        if aims.iter().any(|aim| aim.by_character) {
+            highest + SPARE_STATES
+        } else {
+            highest
+        }
     }
 
     /// The variables as they stand in the file's stack, on the unit interval.
     pub fn start(&self) -> DVector<f64> {
         DVector::from_iterator(
             self.variables.len(),
-            self.variables.iter().map(|v| v.to_unit(v.knob.value(&self.stack).unwrap_or(v.low))),
+            self.variables
+                .iter()
+                .map(|v| v.to_unit(v.knob.value(&self.stack).unwrap_or(v.low))),
         )
     }
 
@@ -92,7 +108,11 @@ impl Task {
 
     /// Solves a stack. `characters` are the envelopes that aims by character look for; without them the states are
     /// taken by their order.
-    pub fn design(&self, stack: Stack, characters: Option<&Characters>) -> Result<Design, (usize, Unsuitable)> {
+    pub fn design(
+        &self,
+        stack: Stack,
+        characters: Option<&Characters>,
+    ) -> Result<Design, (usize, Unsuitable)> {
         let operator = ConductionOperator::new(&stack, self.model)?;
         let subbands = subbands::solve(&operator, self.count, self.accuracy);
         let own: Vec<Vec<f64>> = match characters {
@@ -105,7 +125,11 @@ impl Task {
             .iter()
             .map(|aim| match characters {
                 Some(wanted) if aim.by_character => {
-                    let alike = |k: usize| wanted.get(k).map_or(k.min(last), |envelope| most_alike(envelope, &own));
+                    let alike = |k: usize| {
+                        wanted
+                            .get(k)
+                            .map_or(k.min(last), |envelope| most_alike(envelope, &own))
+                    };
                     (alike(aim.from), alike(aim.to))
                 }
                 _ => (aim.from.min(last), aim.to.min(last)),
@@ -120,10 +144,20 @@ impl Task {
                 _ => moment(&subbands.pencil, &subbands.pairs[from], &subbands.pairs[to]).abs(),
             })
             .collect();
-        let residuals = self.aims.iter().zip(&values).map(|(aim, &value)| aim.weight * aim.goal.residual(value).0);
+        let residuals = self
+            .aims
+            .iter()
+            .zip(&values)
+            .map(|(aim, &value)| aim.weight * aim.goal.residual(value).0);
         let residuals = DVector::from_iterator(self.aims.len(), residuals);
         drop(operator);
-        Ok(Design { stack, subbands, states, values, residuals })
+        Ok(Design {
+            stack,
+            subbands,
+            states,
+            values,
+            residuals,
+        })
     }
 
     /// The slopes of the aims' values: one row per aim, one column per variable, per inner unit of the variable.
@@ -133,13 +167,17 @@ impl Task {
             return slopes;
         };
         let Subbands { pencil, pairs, .. } = &design.subbands;
-        let changes: Vec<Change> = self.variables.iter().map(|v| change(&operator, pencil, v.knob)).collect();
+        let changes: Vec<Change> = self
+            .variables
+            .iter()
+            .map(|v| change(&operator, pencil, v.knob))
+            .collect();
         let mut with_vectors: Vec<Option<Vec<PairSlope>>> = vec![None; pairs.len()];
         for (row, (aim, &(from, to))) in self.aims.iter().zip(&design.states).enumerate() {
             if aim.goal.is_energy() {
                 for (column, change) in changes.iter().enumerate() {
-                    slopes[(row, column)] =
-                        value_slope(pencil, change, &pairs[to]) - value_slope(pencil, change, &pairs[from]);
+                    slopes[(row, column)] = value_slope(pencil, change, &pairs[to])
+                        - value_slope(pencil, change, &pairs[from]);
                 }
                 continue;
             }
@@ -151,7 +189,10 @@ impl Task {
             if let (Some(from_slopes), Some(to_slopes)) = (&with_vectors[from], &with_vectors[to]) {
                 let sign = moment(pencil, &pairs[from], &pairs[to]).signum();
                 for (column, change) in changes.iter().enumerate() {
-                    let (i, j) = ((&pairs[from], &from_slopes[column]), (&pairs[to], &to_slopes[column]));
+                    let (i, j) = (
+                        (&pairs[from], &from_slopes[column]),
+                        (&pairs[to], &to_slopes[column]),
+                    );
                     slopes[(row, column)] = sign * moment_slope(pencil, change, i, j);
                 }
             }
@@ -167,19 +208,33 @@ impl Task {
             jacobian.row_mut(row).scale_mut(outer);
         }
         for (column, variable) in self.variables.iter().enumerate() {
-            jacobian.column_mut(column).scale_mut(variable.high - variable.low);
+            jacobian
+                .column_mut(column)
+                .scale_mut(variable.high - variable.low);
         }
         jacobian
     }
 
     /// Whether every aim is met.
     pub fn is_met(&self, design: &Design) -> bool {
-        self.aims.iter().zip(&design.values).all(|(aim, &value)| aim.goal.is_met(value))
+        self.aims
+            .iter()
+            .zip(&design.values)
+            .all(|(aim, &value)| aim.goal.is_met(value))
     }
 }
 
 /// The state whose envelope overlaps most with the wanted one.
 fn most_alike(wanted: &[f64], own: &[Vec<f64>]) -> usize {
-    let overlap = |envelope: &Vec<f64>| envelope.iter().zip(wanted).map(|(a, b)| a * b).sum::<f64>().abs();
-    (0..own.len()).max_by(|&a, &b| overlap(&own[a]).total_cmp(&overlap(&own[b]))).unwrap_or(0)
+    let overlap = |envelope: &Vec<f64>| {
+        envelope
+            .iter()
+            .zip(wanted)
+            .map(|(a, b)| a * b)
+            .sum::<f64>()
+            .abs()
+    };
+    (0..own.len())
+        .max_by(|&a, &b| overlap(&own[a]).total_cmp(&overlap(&own[b])))
+        .unwrap_or(0)
 }

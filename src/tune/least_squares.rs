@@ -4,7 +4,8 @@
 //! Variables run from 0 to 1. The cost is half the sum of the squared residuals.
 
 use argmin::core::{
-    ArgminError, Error, IterState, Jacobian, KV, Operator, Problem, Solver, TerminationReason, TerminationStatus,
+    ArgminError, Error, IterState, Jacobian, KV, Operator, Problem, Solver, TerminationReason,
+    TerminationStatus,
 };
 use nalgebra::{DMatrix, DVector};
 
@@ -24,7 +25,13 @@ pub struct BoundedLeastSquares {
 
 impl Default for BoundedLeastSquares {
     fn default() -> Self {
-        Self { damping: 1e-3, smallest_step: 1e-9, smallest_gradient: 1e-11, max_trials: 25, converged: false }
+        Self {
+            damping: 1e-3,
+            smallest_step: 1e-9,
+            smallest_gradient: 1e-11,
+            max_trials: 25,
+            converged: false,
+        }
     }
 }
 
@@ -33,21 +40,34 @@ pub type Progress = IterState<DVector<f64>, (), DMatrix<f64>, (), DVector<f64>, 
 
 impl<O> Solver<O, Progress> for BoundedLeastSquares
 where
-    O: Operator<Param = DVector<f64>, Output = DVector<f64>> + Jacobian<Param = DVector<f64>, Jacobian = DMatrix<f64>>,
+    O: Operator<Param = DVector<f64>, Output = DVector<f64>>
+        + Jacobian<Param = DVector<f64>, Jacobian = DMatrix<f64>>,
 {
     fn name(&self) -> &str {
         "bounded least squares"
     }
 
-    fn init(&mut self, problem: &mut Problem<O>, mut state: Progress) -> Result<(Progress, Option<KV>), Error> {
-        let start = state.take_param().ok_or(ArgminError::NotInitialized { text: "no start was given".into() })?;
+    fn init(
+        &mut self,
+        problem: &mut Problem<O>,
+        mut state: Progress,
+    ) -> Result<(Progress, Option<KV>), Error> {
+        let start = state.take_param().ok_or(ArgminError::NotInitialized {
+            text: "no start was given".into(),
+        })?;
         let residuals = problem.apply(&start)?;
         let cost = 0.5 * residuals.norm_squared();
         Ok((state.param(start).residuals(residuals).cost(cost), None))
     }
 
-    fn next_iter(&mut self, problem: &mut Problem<O>, mut state: Progress) -> Result<(Progress, Option<KV>), Error> {
-        let lost = || ArgminError::PotentialBug { text: "the state lost its point".into() };
+    fn next_iter(
+        &mut self,
+        problem: &mut Problem<O>,
+        mut state: Progress,
+    ) -> Result<(Progress, Option<KV>), Error> {
+        let lost = || ArgminError::PotentialBug {
+            text: "the state lost its point".into(),
+        };
         let point = state.take_param().ok_or_else(lost)?;
         let residuals = state.take_residuals().ok_or_else(lost)?;
         let cost = state.get_cost();
@@ -55,7 +75,9 @@ where
         let gradient = jacobian.tr_mul(&residuals);
         // A variable at a bound that the descent pushes outwards stays there.
         let free: Vec<usize> = (0..point.len())
-            .filter(|&k| !(point[k] <= 0.0 && gradient[k] > 0.0 || point[k] >= 1.0 && gradient[k] < 0.0))
+            .filter(|&k| {
+                !(point[k] <= 0.0 && gradient[k] > 0.0 || point[k] >= 1.0 && gradient[k] < 0.0)
+            })
             .collect();
         let steepest = free.iter().map(|&k| gradient[k].abs()).fold(0.0, f64::max);
         if steepest <= self.smallest_gradient {
@@ -85,7 +107,13 @@ where
             if trial_cost < cost {
                 self.damping = (self.damping / 5.0).max(1e-12);
                 self.converged = moved < self.smallest_step;
-                return Ok((state.param(trial).residuals(trial_residuals).cost(trial_cost), None));
+                return Ok((
+                    state
+                        .param(trial)
+                        .residuals(trial_residuals)
+                        .cost(trial_cost),
+                    None,
+                ));
             }
             if moved < self.smallest_step {
                 break;

@@ -22,8 +22,9 @@ pub enum Limit {
 
 /// The reasons, the most telling first; empty when all aims are met.
 pub fn limits(task: &Task, design: &Design) -> Vec<Limit> {
-    let missed: Vec<usize> =
-        (0..task.aims.len()).filter(|&a| !task.aims[a].goal.is_met(design.values[a])).collect();
+    let missed: Vec<usize> = (0..task.aims.len())
+        .filter(|&a| !task.aims[a].goal.is_met(design.values[a]))
+        .collect();
     if missed.is_empty() {
         return Vec::new();
     }
@@ -41,13 +42,21 @@ pub fn limits(task: &Task, design: &Design) -> Vec<Limit> {
         let u = variable.to_unit(variable.knob.value(&design.stack).unwrap_or(variable.low));
         let pushes = gradient[k].abs() > NEGLIGIBLE * steepest;
         if pushes && u <= AT_BOUND && gradient[k] > 0.0 {
-            found.push(Limit::Bound { variable: k, at_high: false });
+            found.push(Limit::Bound {
+                variable: k,
+                at_high: false,
+            });
         } else if pushes && u >= 1.0 - AT_BOUND && gradient[k] < 0.0 {
-            found.push(Limit::Bound { variable: k, at_high: true });
+            found.push(Limit::Bound {
+                variable: k,
+                at_high: true,
+            });
         }
     }
     if found.is_empty() && task.aims.len() > 1 {
-        let aims: Vec<usize> = (0..task.aims.len()).filter(|&a| jacobian.row(a).amax() > NEGLIGIBLE * largest).collect();
+        let aims: Vec<usize> = (0..task.aims.len())
+            .filter(|&a| jacobian.row(a).amax() > NEGLIGIBLE * largest)
+            .collect();
         if aims.len() > 1 {
             found.push(Limit::Conflict { aims });
         }

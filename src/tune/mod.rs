@@ -60,12 +60,28 @@ pub enum TuneError {
 }
 
 /// Tunes a structure. `watch` is told how far the search has come.
-pub fn tune(structure: &Structure, stack: &Stack, accuracy: Accuracy, watch: Watch) -> Result<Outcome, TuneError> {
+pub fn tune(
+    structure: &Structure,
+    stack: &Stack,
+    accuracy: Accuracy,
+    watch: Watch,
+) -> Result<Outcome, TuneError> {
     let wish = structure.tune.as_ref().ok_or(TuneError::NothingToTune)?;
     let aims: Vec<Aim> = wish.aims.iter().map(aim).collect();
-    let variables: Vec<Variable> = wish.vary.iter().filter_map(|v| variable(v, structure, stack)).collect();
+    let variables: Vec<Variable> = wish
+        .vary
+        .iter()
+        .filter_map(|v| variable(v, structure, stack))
+        .collect();
     let count = Task::states_needed(&aims).max(structure.conduction.states);
-    let task = Task { stack: stack.clone(), model: structure.conduction.model, variables, aims, accuracy, count };
+    let task = Task {
+        stack: stack.clone(),
+        model: structure.conduction.model,
+        variables,
+        aims,
+        accuracy,
+        count,
+    };
     let unsuitable = |(layer, reason)| TuneError::Unsuitable { layer, reason };
     let before = task.design(stack.clone(), None).map_err(unsuitable)?;
     let by_character = task.aims.iter().any(|aim| aim.by_character);
@@ -74,10 +90,15 @@ pub fn tune(structure: &Structure, stack: &Stack, accuracy: Accuracy, watch: Wat
         .variables
         .iter()
         .enumerate()
-        .filter(|(_, v)| v.knob.value(stack).is_some_and(|value| value < v.low || value > v.high))
+        .filter(|(_, v)| {
+            v.knob
+                .value(stack)
+                .is_some_and(|value| value < v.low || value > v.high)
+        })
         .map(|(k, _)| k)
         .collect();
-    let (found, starts) = search::search(&task, characters.as_ref(), watch).ok_or(TuneError::Unsolved)?;
+    let (found, starts) =
+        search::search(&task, characters.as_ref(), watch).ok_or(TuneError::Unsolved)?;
     let outcome = Outcome {
         met: Vec::new(),
         half_step: None,
@@ -89,13 +110,22 @@ pub fn tune(structure: &Structure, stack: &Stack, accuracy: Accuracy, watch: Wat
         starts,
         started_outside,
     };
-    if wish.snap_to_monolayers { snapped(outcome, found, wish, watch, by_character) } else { Ok(judged(outcome)) }
+    if wish.snap_to_monolayers {
+        snapped(outcome, found, wish, watch, by_character)
+    } else {
+        Ok(judged(outcome))
+    }
 }
 
 fn judged(mut outcome: Outcome) -> Outcome {
     outcome.after = on_written_steps(&outcome.task, &outcome.after, false).unwrap_or(outcome.after);
-    outcome.met =
-        outcome.task.aims.iter().zip(&outcome.after.values).map(|(aim, &value)| aim.goal.is_met(value)).collect();
+    outcome.met = outcome
+        .task
+        .aims
+        .iter()
+        .zip(&outcome.after.values)
+        .map(|(aim, &value)| aim.goal.is_met(value))
+        .collect();
     outcome.limits = limits::limits(&outcome.task, &outcome.after);
     outcome
 }
@@ -111,7 +141,12 @@ fn snapped(
     let whole = snap::snap(&outcome.task, &found, characters.as_ref(), watch)?;
     let steps = snap::monolayer_steps(&outcome.task, &whole.design);
     let half_step: Vec<f64> = (0..outcome.task.aims.len())
-        .map(|a| steps.iter().map(|(_, step)| 0.5 * step[a].abs()).fold(0.0, f64::max))
+        .map(|a| {
+            steps
+                .iter()
+                .map(|(_, step)| 0.5 * step[a].abs())
+                .fold(0.0, f64::max)
+        })
         .collect();
     outcome.after = on_written_steps(&outcome.task, &whole.design, true).unwrap_or(whole.design);
     let continuous = found.design;
@@ -122,7 +157,9 @@ fn snapped(
             let strictly = goal.is_met(outcome.after.values[a]);
             let nearest_grid = wish.aims[a].within.is_none()
                 && goal.is_met(continuous.values[a])
-                && goal.miss(outcome.after.values[a]).is_some_and(|(miss, _)| miss.abs() <= half_step[a]);
+                && goal
+                    .miss(outcome.after.values[a])
+                    .is_some_and(|(miss, _)| miss.abs() <= half_step[a]);
             strictly || nearest_grid
         })
         .collect();
@@ -179,7 +216,9 @@ const FIELD_STEP_V_PER_NM: f64 = 1e-8;
 /// The design with its variables on the steps in which they are written. `whole` keeps widths in whole monolayers.
 fn on_written_steps(task: &Task, design: &Design, whole: bool) -> Option<Design> {
     let mut stack = design.stack.clone();
-    let monolayers = |stack: &Stack, entry| Some(stack.entry_width_nm(entry)? / stack.entry_monolayer_nm(entry)?);
+    let monolayers = |stack: &Stack, entry| {
+        Some(stack.entry_width_nm(entry)? / stack.entry_monolayer_nm(entry)?)
+    };
     for variable in &task.variables {
         let step = match variable.knob {
             Knob::Width { .. } => WIDTH_STEP_NM,
@@ -190,7 +229,10 @@ fn on_written_steps(task: &Task, design: &Design, whole: bool) -> Option<Design>
             continue;
         }
         let value = variable.knob.value(&stack)?;
-        variable.knob.set(&mut stack, ((value / step).round() * step).clamp(variable.low, variable.high));
+        variable.knob.set(
+            &mut stack,
+            ((value / step).round() * step).clamp(variable.low, variable.high),
+        );
     }
     if whole {
         for variable in &task.variables {
@@ -211,11 +253,18 @@ fn on_written_steps(task: &Task, design: &Design, whole: bool) -> Option<Design>
 
 /// The knob of one wish, with its bounds in inner units.
 fn variable(wish: &structure::Variable, structure: &Structure, stack: &Stack) -> Option<Variable> {
-    let label = |entry: usize| structure.entries.get(entry).map_or("layer", |e| e.label.as_str());
+    let label = |entry: usize| {
+        structure
+            .entries
+            .get(entry)
+            .map_or("layer", |e| e.label.as_str())
+    };
     Some(match &wish.quantity {
         Varied::Width { entry, bounds } => {
             let nm = |bound: &crate::units::Quantity| match bound.unit.dimension {
-                crate::units::Dimension::Monolayers => Some(bound.number * stack.entry_monolayer_nm(*entry)?),
+                crate::units::Dimension::Monolayers => {
+                    Some(bound.number * stack.entry_monolayer_nm(*entry)?)
+                }
                 _ => Some(bound.value()),
             };
             Variable {
@@ -225,14 +274,24 @@ fn variable(wish: &structure::Variable, structure: &Structure, stack: &Stack) ->
                 name: format!("width of {}", label(*entry)),
             }
         }
-        Varied::Fraction { entry, element, bounds } => Variable {
-            knob: Knob::Fraction { entry: *entry, element: *element },
+        Varied::Fraction {
+            entry,
+            element,
+            bounds,
+        } => Variable {
+            knob: Knob::Fraction {
+                entry: *entry,
+                element: *element,
+            },
             low: bounds[0],
             high: bounds[1],
             name: format!("{} fraction of {}", element.symbol(), label(*entry)),
         },
-        Varied::Field { bounds_v_per_nm } => {
-            Variable { knob: Knob::Field, low: bounds_v_per_nm[0], high: bounds_v_per_nm[1], name: "field".to_owned() }
-        }
+        Varied::Field { bounds_v_per_nm } => Variable {
+            knob: Knob::Field,
+            low: bounds_v_per_nm[0],
+            high: bounds_v_per_nm[1],
+            name: "field".to_owned(),
+        },
     })
 }

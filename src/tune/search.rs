@@ -53,9 +53,13 @@ struct Descent<'t> {
 impl Descent<'_> {
     fn solve(&self, at: &DVector<f64>) -> Result<Design, Error> {
         *self.designs.borrow_mut() += 1;
-        (self.watch)(Stage::Descent { designs: *self.designs.borrow() });
+        (self.watch)(Stage::Descent {
+            designs: *self.designs.borrow(),
+        });
         let characters = self.characters.borrow();
-        let design = self.task.design(self.task.stack_at(at), characters.as_ref());
+        let design = self
+            .task
+            .design(self.task.stack_at(at), characters.as_ref());
         design.map_err(|(layer, reason)| Error::msg(format!("layer {}: {reason}", layer + 1)))
     }
 }
@@ -67,7 +71,10 @@ impl Operator for Descent<'_> {
     fn apply(&self, at: &DVector<f64>) -> Result<DVector<f64>, Error> {
         let design = self.solve(at)?;
         let residuals = design.residuals.clone();
-        *self.last.borrow_mut() = Some(Found { at: at.clone(), design });
+        *self.last.borrow_mut() = Some(Found {
+            at: at.clone(),
+            design,
+        });
         Ok(residuals)
     }
 }
@@ -102,7 +109,12 @@ pub fn follow(task: &Task, characters: &mut Characters, design: &Design) {
 }
 
 /// A local descent. `None` when the start cannot be solved.
-pub fn descend(task: &Task, start: DVector<f64>, characters: Option<Characters>, watch: Watch) -> Option<Found> {
+pub fn descend(
+    task: &Task,
+    start: DVector<f64>,
+    characters: Option<Characters>,
+    watch: Watch,
+) -> Option<Found> {
     let descent = Descent {
         task,
         watch,
@@ -121,16 +133,27 @@ pub fn descend(task: &Task, start: DVector<f64>, characters: Option<Characters>,
         .ok()?;
     let at = run.state.best_param.take()?;
     let descent = run.problem.take_problem()?;
-    let known = descent.last.borrow_mut().take().filter(|found| found.at == at);
+    let known = descent
+        .last
+        .borrow_mut()
+        .take()
+        .filter(|found| found.at == at);
     match known {
         Some(found) => Some(found),
-        None => Some(Found { design: descent.solve(&at).ok()?, at }),
+        None => Some(Found {
+            design: descent.solve(&at).ok()?,
+            at,
+        }),
     }
 }
 
 /// The best design that descents from the file's design and, if need be, from many starts lead to. The number of starts
 /// is returned with it.
-pub fn search(task: &Task, characters: Option<&Characters>, watch: Watch) -> Option<(Found, usize)> {
+pub fn search(
+    task: &Task,
+    characters: Option<&Characters>,
+    watch: Watch,
+) -> Option<(Found, usize)> {
     let first = descend(task, task.start(), characters.cloned(), watch);
     if let Some(found) = &first
         && (task.is_met(&found.design) || task.variables.is_empty())
@@ -143,14 +166,20 @@ pub fn search(task: &Task, characters: Option<&Characters>, watch: Watch) -> Opt
     let mut costs: Vec<(usize, f64)> = (0..planned)
         .into_par_iter()
         .filter_map(|index| {
-            let design = task.design(task.stack_at(&spread(index, dimensions)), characters).ok()?;
+            let design = task
+                .design(task.stack_at(&spread(index, dimensions)), characters)
+                .ok()?;
             let done = 1 + done.fetch_add(1, std::sync::atomic::Ordering::Relaxed);
             watch(Stage::Starts { done, planned });
             Some((index, design.cost()))
         })
         .collect();
     costs.sort_by(|a, b| a.1.total_cmp(&b.1).then(a.0.cmp(&b.0)));
-    let starts: Vec<usize> = costs.into_iter().take(DESCENTS).map(|(index, _)| index).collect();
+    let starts: Vec<usize> = costs
+        .into_iter()
+        .take(DESCENTS)
+        .map(|(index, _)| index)
+        .collect();
     let ends: Vec<Found> = starts
         .into_par_iter()
         .filter_map(|index| descend(task, spread(index, dimensions), characters.cloned(), watch))
@@ -166,7 +195,10 @@ pub fn search(task: &Task, characters: Option<&Characters>, watch: Watch) -> Opt
 /// Point `index` of a scrambled Sobol sequence (Burley, J. Comput. Graph. Tech. 9(4), 1 (2020)).
 fn spread(index: usize, dimensions: usize) -> DVector<f64> {
     DVector::from_fn(dimensions, |dimension, _| {
-        let (dimension, seed) = (dimension as u32 % sobol_burley::NUM_DIMENSIONS, SCRAMBLE + dimension as u32 / sobol_burley::NUM_DIMENSIONS);
+        let (dimension, seed) = (
+            dimension as u32 % sobol_burley::NUM_DIMENSIONS,
+            SCRAMBLE + dimension as u32 / sobol_burley::NUM_DIMENSIONS,
+        );
         f64::from(sobol_burley::sample(index as u32, dimension, seed))
     })
 }

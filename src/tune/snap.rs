@@ -22,27 +22,43 @@ const AGREEMENT_ROUNDS: usize = 4;
 pub enum SnapError {
     #[error("the bounds of the {name} hold no whole monolayer: one is {monolayer_nm:.4} nm")]
     NoWholeMonolayer { name: String, monolayer_nm: f64 },
-    #[error("the {name} cannot be counted in monolayers: the layer's lattice constant is not known")]
+    #[error(
+        "the {name} cannot be counted in monolayers: the layer's lattice constant is not known"
+    )]
     NoMonolayer { name: String },
     #[error("the design cannot be solved in whole monolayers")]
     Unsolved,
 }
 
 /// The best design in whole monolayers near a continuous one. Widths that are not varied stay as they are.
-pub fn snap(task: &Task, found: &Found, characters: Option<&Characters>, watch: Watch) -> Result<Found, SnapError> {
-    let widths: Vec<usize> =
-        (0..task.variables.len()).filter(|&k| matches!(task.variables[k].knob, Knob::Width { .. })).collect();
+pub fn snap(
+    task: &Task,
+    found: &Found,
+    characters: Option<&Characters>,
+    watch: Watch,
+) -> Result<Found, SnapError> {
+    let widths: Vec<usize> = (0..task.variables.len())
+        .filter(|&k| matches!(task.variables[k].knob, Knob::Width { .. }))
+        .collect();
     if widths.is_empty() {
         return Ok(found.clone());
     }
-    let mut search = Snap { task, characters, watch, widths, tried: BTreeMap::new() };
+    let mut search = Snap {
+        task,
+        characters,
+        watch,
+        widths,
+        tried: BTreeMap::new(),
+    };
     let ranked = search.ranked(found)?;
     let mut best: Option<(Vec<i64>, Found)> = None;
     for counts in ranked {
         search.keep_better(&mut best, counts, found);
     }
     for _ in 0..MAX_ROUNDS {
-        let Some((counts, from)) = best.clone() else { return Err(SnapError::Unsolved) };
+        let Some((counts, from)) = best.clone() else {
+            return Err(SnapError::Unsolved);
+        };
         for neighbour in neighbours(&counts) {
             search.keep_better(&mut best, neighbour, &from);
         }
@@ -66,7 +82,9 @@ impl Snap<'_> {
     fn monolayer_nm(&self, variable: usize, stack: &Stack) -> Result<f64, SnapError> {
         let Variable { knob, name, .. } = &self.task.variables[variable];
         let missing = || SnapError::NoMonolayer { name: name.clone() };
-        let Knob::Width { entry } = *knob else { return Err(missing()) };
+        let Knob::Width { entry } = *knob else {
+            return Err(missing());
+        };
         stack.entry_monolayer_nm(entry).ok_or_else(missing)
     }
 
@@ -80,19 +98,29 @@ impl Snap<'_> {
             let monolayer_nm = self.monolayer_nm(k, &found.design.stack)?;
             let (lowest, highest) = whole_range(variable, monolayer_nm);
             if lowest > highest {
-                return Err(SnapError::NoWholeMonolayer { name: variable.name.clone(), monolayer_nm });
+                return Err(SnapError::NoWholeMonolayer {
+                    name: variable.name.clone(),
+                    monolayer_nm,
+                });
             }
             let here = variable.from_unit(found.at[k]) / monolayer_nm;
             let floor = here.floor() as i64;
-            let mut options: Vec<i64> =
-                (floor - reach..=floor + 1 + reach).map(|n| n.clamp(lowest, highest)).collect();
-            options.sort_by(|a, b| (*a as f64 - here).abs().total_cmp(&(*b as f64 - here).abs()));
+            let mut options: Vec<i64> = (floor - reach..=floor + 1 + reach)
+                .map(|n| n.clamp(lowest, highest))
+                .collect();
+            options.sort_by(|a, b| {
+                (*a as f64 - here)
+                    .abs()
+                    .total_cmp(&(*b as f64 - here).abs())
+            });
             options.dedup();
             choices.push(options);
             ideal.push((here, monolayer_nm));
         }
         let jacobian = self.task.jacobian(&found.design);
-        let others: Vec<usize> = (0..self.task.variables.len()).filter(|k| !self.widths.contains(k)).collect();
+        let others: Vec<usize> = (0..self.task.variables.len())
+            .filter(|k| !self.widths.contains(k))
+            .collect();
         let spared = projector(&jacobian.select_columns(&others));
         let mut scored: Vec<(f64, Vec<i64>)> = combinations(&choices)
             .map(|counts| {
@@ -106,19 +134,34 @@ impl Snap<'_> {
             })
             .collect();
         scored.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1)));
-        Ok(scored.into_iter().take(SOLVED).map(|(_, counts)| counts).collect())
+        Ok(scored
+            .into_iter()
+            .take(SOLVED)
+            .map(|(_, counts)| counts)
+            .collect())
     }
 
-    fn keep_better(&mut self, best: &mut Option<(Vec<i64>, Found)>, counts: Vec<i64>, from: &Found) {
+    fn keep_better(
+        &mut self,
+        best: &mut Option<(Vec<i64>, Found)>,
+        counts: Vec<i64>,
+        from: &Found,
+    ) {
         if self.tried.contains_key(&counts) {
             return;
         }
-        (self.watch)(Stage::Monolayers { designs: self.tried.len() + 1 });
+        (self.watch)(Stage::Monolayers {
+            designs: self.tried.len() + 1,
+        });
         let solved = self.readjusted(&counts, from);
-        let cost = solved.as_ref().map_or(f64::INFINITY, |found| found.design.cost());
+        let cost = solved
+            .as_ref()
+            .map_or(f64::INFINITY, |found| found.design.cost());
         self.tried.insert(counts.clone(), cost);
         if let Some(found) = solved
-            && best.as_ref().is_none_or(|(_, known)| cost < known.design.cost() * (1.0 - 1e-9))
+            && best
+                .as_ref()
+                .is_none_or(|(_, known)| cost < known.design.cost() * (1.0 - 1e-9))
         {
             *best = Some((counts, found));
         }
@@ -126,7 +169,9 @@ impl Snap<'_> {
 
     /// The design with these whole numbers and the other variables tuned again; `None` when out of bounds.
     fn readjusted(&self, counts: &[i64], from: &Found) -> Option<Found> {
-        let others: Vec<usize> = (0..self.task.variables.len()).filter(|k| !self.widths.contains(k)).collect();
+        let others: Vec<usize> = (0..self.task.variables.len())
+            .filter(|k| !self.widths.contains(k))
+            .collect();
         let mut at = from.at.clone();
         let mut stack = from.design.stack.clone();
         let mut solved: Option<Found> = None;
@@ -142,13 +187,18 @@ impl Snap<'_> {
                 variable.knob.set(&mut stack, width_nm);
                 at[k] = variable.to_unit(width_nm);
             }
-            let settled = solved.as_ref().is_some_and(|found| same_widths(&found.design.stack, &stack));
+            let settled = solved
+                .as_ref()
+                .is_some_and(|found| same_widths(&found.design.stack, &stack));
             if settled {
                 break;
             }
             let task = Task {
                 stack: stack.clone(),
-                variables: others.iter().map(|&k| self.task.variables[k].clone()).collect(),
+                variables: others
+                    .iter()
+                    .map(|&k| self.task.variables[k].clone())
+                    .collect(),
                 ..self.task.clone()
             };
             let start = DVector::from_iterator(others.len(), others.iter().map(|&k| at[k]));
@@ -158,7 +208,10 @@ impl Snap<'_> {
             }
             stack = found.design.stack.clone();
             let done = others.is_empty();
-            solved = Some(Found { at: at.clone(), design: found.design });
+            solved = Some(Found {
+                at: at.clone(),
+                design: found.design,
+            });
             if done {
                 break;
             }
@@ -168,7 +221,10 @@ impl Snap<'_> {
 }
 
 fn same_widths(a: &Stack, b: &Stack) -> bool {
-    a.layers.iter().zip(&b.layers).all(|(a, b)| (a.width_nm - b.width_nm).abs() < 1e-9)
+    a.layers
+        .iter()
+        .zip(&b.layers)
+        .all(|(a, b)| (a.width_nm - b.width_nm).abs() < 1e-9)
 }
 
 /// The whole numbers of monolayers inside a variable's bounds.
@@ -202,7 +258,10 @@ fn neighbours(counts: &[i64]) -> Vec<Vec<i64>> {
 
 /// All combinations of one option per slot, at most [`MAX_RANKED`] of them; the first options come first.
 fn combinations(choices: &[Vec<i64>]) -> impl Iterator<Item = Vec<i64>> + '_ {
-    let total = choices.iter().try_fold(1usize, |product, c| product.checked_mul(c.len())).unwrap_or(usize::MAX);
+    let total = choices
+        .iter()
+        .try_fold(1usize, |product, c| product.checked_mul(c.len()))
+        .unwrap_or(usize::MAX);
     (0..total.min(MAX_RANKED)).map(move |mut index| {
         choices
             .iter()
@@ -223,7 +282,10 @@ fn projector(jacobian: &DMatrix<f64>) -> DMatrix<f64> {
         return identity;
     }
     let largest = jacobian.amax();
-    match jacobian.clone().pseudo_inverse(1e-9 * largest.max(f64::MIN_POSITIVE)) {
+    match jacobian
+        .clone()
+        .pseudo_inverse(1e-9 * largest.max(f64::MIN_POSITIVE))
+    {
         Ok(inverse) => identity - jacobian * inverse,
         Err(_) => identity,
     }
@@ -234,7 +296,10 @@ pub fn monolayer_steps(task: &Task, design: &Design) -> Vec<(usize, DVector<f64>
     let slopes = task.value_slopes(design);
     (0..task.variables.len())
         .filter_map(|k| match task.variables[k].knob {
-            Knob::Width { entry } => Some((k, slopes.column(k) * design.stack.entry_monolayer_nm(entry)?)),
+            Knob::Width { entry } => Some((
+                k,
+                slopes.column(k) * design.stack.entry_monolayer_nm(entry)?,
+            )),
             _ => None,
         })
         .collect()
