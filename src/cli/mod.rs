@@ -1,9 +1,15 @@
 //! The command line. Only this module touches files, the terminal and the environment.
 
 mod arguments;
+mod check;
+mod deliver;
+mod input;
+mod levels;
+mod materials;
 mod output;
 mod progress;
 mod run;
+mod tune;
 
 pub use arguments::Arguments;
 
