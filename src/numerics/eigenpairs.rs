@@ -405,7 +405,7 @@ mod tests {
         let pencil = Pencil::new(mesh.clone(), |e, _| coefficient(e.segment));
         let nodes = mesh.node_count() - 2;
         let size = nodes + elements * (p + 1);
-        let mass = pencil.mass();
+        let mass = pencil.weights();
         let mut matrix = DMatrix::zeros(size, size);
         for (index, element) in mesh.elements.iter().enumerate() {
             let c = coefficient(element.segment);

@@ -84,8 +84,10 @@ pub struct Pencil {
     pub mesh: Mesh,
     /// Coefficients at the nodes of each element, element by element: (order + 1) per element.
     pub coefficients: Vec<Coefficient>,
-    /// T(0) and the mass matrix of a problem without poles, where T(λ) = T(0) − λ M.
-    linear: Option<(Banded, Vec<f64>)>,
+    /// The diagonal mass matrix at all nodes: quadrature weights.
+    mass: Vec<f64>,
+    /// T(0) of a problem without poles, where T(λ) = T(0) − λ M.
+    linear: Option<Banded>,
     reach: Vec<usize>,
 }
 
@@ -105,6 +107,7 @@ impl Pencil {
             .collect();
         let with_poles = coefficients.iter().any(Coefficient::has_poles);
         let mut pencil = Pencil {
+            mass: quadrature_weights(&mesh),
             mesh,
             coefficients,
             linear: None,
@@ -113,8 +116,7 @@ impl Pencil {
         if !with_poles {
             let mut base = pencil.storage();
             pencil.assemble(0.0, &mut base);
-            let mass = pencil.mass();
-            pencil.linear = Some((base, mass[1..=size].to_vec()));
+            pencil.linear = Some(base);
         }
         pencil
     }
@@ -134,29 +136,22 @@ impl Pencil {
         Banded::zeros(self.reach.clone())
     }
 
+    /// The quadrature weights at all nodes: the diagonal mass matrix.
+    pub fn weights(&self) -> &[f64] {
+        &self.mass
+    }
+
     /// Coefficients at the nodes of element number `index`.
     pub fn at(&self, index: usize) -> &[Coefficient] {
         let count = self.mesh.order() + 1;
         &self.coefficients[index * count..(index + 1) * count]
     }
 
-    /// The diagonal mass matrix at all nodes: quadrature weights.
-    pub fn mass(&self) -> Vec<f64> {
-        let p = self.mesh.order();
-        let mut mass = vec![0.0; self.mesh.node_count()];
-        for (index, element) in self.mesh.elements.iter().enumerate() {
-            for (q, w) in self.mesh.reference.weights.iter().enumerate() {
-                mass[index * p + q] += 0.5 * element.length * w;
-            }
-        }
-        mass
-    }
-
     /// Fills `matrix` with T(λ) on the inner nodes.
     pub fn assemble(&self, lambda: f64, matrix: &mut Banded) {
-        if let Some((base, mass)) = &self.linear {
+        if let Some(base) = &self.linear {
             matrix.clone_from(base);
-            for (k, m) in mass.iter().enumerate() {
+            for (k, m) in self.mass[1..=self.size()].iter().enumerate() {
                 matrix.column_mut(k)[0] -= lambda * m;
             }
             return;
@@ -208,16 +203,11 @@ impl Pencil {
     pub fn weight(&self, lambda: f64, mu: f64, x: &[f64]) -> Vec<f64> {
         let reference = self.mesh.reference;
         let p = reference.order;
-        let mut out: Vec<f64> = match &self.linear {
-            Some((_, mass)) => {
-                let mut out = vec![0.0; x.len()];
-                for ((o, m), v) in out[1..].iter_mut().zip(mass).zip(&x[1..]) {
-                    *o = m * v;
-                }
-                return out;
-            }
-            None => self.mass().iter().zip(x).map(|(m, v)| m * v).collect(),
-        };
+        let mut out: Vec<f64> = self.mass.iter().zip(x).map(|(m, v)| m * v).collect();
+        if self.is_linear() {
+            // x vanishes at the ends, and so does the product.
+            return out;
+        }
         let mut slopes = [0.0; MAX_ORDER + 1];
         for (index, element) in self.mesh.elements.iter().enumerate() {
             reference.slopes(self.mesh.local(index, x), &mut slopes[..=p]);
@@ -289,6 +279,17 @@ impl Pencil {
             .map(|c| c.constant)
             .fold(f64::INFINITY, f64::min)
     }
+}
+
+fn quadrature_weights(mesh: &Mesh) -> Vec<f64> {
+    let p = mesh.order();
+    let mut weights = vec![0.0; mesh.node_count()];
+    for (index, element) in mesh.elements.iter().enumerate() {
+        for (q, w) in mesh.reference.weights.iter().enumerate() {
+            weights[index * p + q] += 0.5 * element.length * w;
+        }
+    }
+    weights
 }
 
 /// The scalar product of two vectors.

@@ -18,6 +18,9 @@ pub struct BoundedLeastSquares {
     pub smallest_step: f64,
     /// The search ends when the projected gradient falls below this.
     pub smallest_gradient: f64,
+    /// The search ends when the cost falls below this, or by less than this part of itself in a step.
+    pub smallest_cost: f64,
+    pub smallest_gain: f64,
     /// Trials with growing damping before a point is taken as the minimum.
     pub max_trials: usize,
     converged: bool,
@@ -29,6 +32,8 @@ impl Default for BoundedLeastSquares {
             damping: 1e-3,
             smallest_step: 1e-9,
             smallest_gradient: 1e-11,
+            smallest_cost: 1e-14,
+            smallest_gain: 1e-7,
             max_trials: 25,
             converged: false,
         }
@@ -106,7 +111,9 @@ where
             let trial_cost = 0.5 * trial_residuals.norm_squared();
             if trial_cost < cost {
                 self.damping = (self.damping / 5.0).max(1e-12);
-                self.converged = moved < self.smallest_step;
+                self.converged = moved < self.smallest_step
+                    || trial_cost < self.smallest_cost
+                    || cost - trial_cost < self.smallest_gain * cost;
                 return Ok((
                     state
                         .param(trial)

@@ -22,6 +22,8 @@ use search::Found;
 /// An energy counts as met within this part of it, a dipole within the other, unless the file says `within`.
 const ENERGY_WITHIN: f64 = 1e-3;
 const DIPOLE_WITHIN: f64 = 1e-2;
+/// Energies are this exact during the search, in eV: far less than any aim's tolerance. The result is solved anew.
+const SEARCH_TOLERANCE_EV: f64 = 1e-6;
 
 /// What came of a tuning.
 #[derive(Clone, Debug)]
@@ -73,14 +75,19 @@ pub fn tune(
         .iter()
         .filter_map(|v| variable(v, structure, stack))
         .collect();
-    let count = Task::states_needed(&aims).max(structure.conduction.states);
+    let needed = Task::states_needed(&aims);
     let task = Task {
         stack: stack.clone(),
         model: structure.conduction.model,
         variables,
         aims,
         accuracy,
-        count,
+        count: needed.max(structure.conduction.states),
+    };
+    let searching = Task {
+        accuracy: Accuracy { tolerance_ev: accuracy.tolerance_ev.max(SEARCH_TOLERANCE_EV) },
+        count: needed,
+        ..task.clone()
     };
     let unsuitable = |(layer, reason)| TuneError::Unsuitable { layer, reason };
     let before = task.design(stack.clone(), None).map_err(unsuitable)?;
@@ -98,7 +105,7 @@ pub fn tune(
         .map(|(k, _)| k)
         .collect();
     let (found, starts) =
-        search::search(&task, characters.as_ref(), watch).ok_or(TuneError::Unsolved)?;
+        search::search(&searching, characters.as_ref(), watch).ok_or(TuneError::Unsolved)?;
     let outcome = Outcome {
         met: Vec::new(),
         half_step: None,
@@ -111,7 +118,7 @@ pub fn tune(
         started_outside,
     };
     if wish.snap_to_monolayers {
-        snapped(outcome, found, wish, watch, by_character)
+        snapped(outcome, &searching, found, wish, watch)
     } else {
         Ok(judged(outcome))
     }
@@ -132,13 +139,14 @@ fn judged(mut outcome: Outcome) -> Outcome {
 
 fn snapped(
     mut outcome: Outcome,
+    searching: &Task,
     found: Found,
     wish: &structure::Tune,
     watch: Watch,
-    by_character: bool,
 ) -> Result<Outcome, TuneError> {
-    let characters = by_character.then(|| reference(&outcome.task, &outcome.before, &found.design));
-    let whole = snap::snap(&outcome.task, &found, characters.as_ref(), watch)?;
+    let by_character = searching.aims.iter().any(|aim| aim.by_character);
+    let characters = by_character.then(|| reference(searching, &outcome.before, &found.design));
+    let whole = snap::snap(searching, &found, characters.as_ref(), watch)?;
     let steps = snap::monolayer_steps(&outcome.task, &whole.design);
     let half_step: Vec<f64> = (0..outcome.task.aims.len())
         .map(|a| {
