@@ -180,9 +180,7 @@ fn of_variable(
                 );
             }
             found.extend(outside(
-                format!("the width of {}, {}, ", layer.in_words(), layer.width.value)
-                    .trim_end_matches([',', ' '])
-                    .to_owned(),
+                format!("the width {} of {}", layer.width.value, layer.in_words()),
                 width,
                 [low, high],
             ));

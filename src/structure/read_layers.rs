@@ -87,6 +87,9 @@ impl LayerReader<'_> {
         let mut items = Vec::new();
         let mut total = 0_usize;
         for node in nodes {
+            if checker.is_full() {
+                break;
+            }
             if let Some((item, layers)) = self.item(checker, node) {
                 items.push(item);
                 total = total.saturating_add(layers);

@@ -11,6 +11,9 @@ use crate::units::{self, Dimension, Quantity};
 /// The highest level that can be asked for; far more than any well holds.
 pub(super) const MAX_LEVELS: u32 = 200;
 
+/// More variables or aims are no design task.
+const MAX_ITEMS: usize = 100;
+
 const ENERGY_LIMITS: Limits = above(0.0, 10.0, "more than 0 eV, at most 10 eV");
 const WAVELENGTH_LIMITS: Limits = above(0.0, 1e7, "more than 0 µm, at most 10 mm");
 const DIPOLE_LIMITS: Limits = above(0.0, 1e5, "more than 0 nm, at most 100 µm");
@@ -80,6 +83,14 @@ fn filled_list<'n>(
             Diagnostic::error(format!("there is {empty}"))
                 .at(node.span.clone())
                 .expected(format!("expected {expected}")),
+        );
+        return None;
+    }
+    if items.len() > MAX_ITEMS {
+        checker.report(
+            Diagnostic::error(format!("there are {} entries", items.len()))
+                .at(checker.head(&node.span))
+                .expected(format!("at most {MAX_ITEMS}")),
         );
         return None;
     }
