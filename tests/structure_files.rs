@@ -429,6 +429,14 @@ fn materials_that_do_not_exist() {
         "layers: [{material: InGaAs, width: 5 nm, match: substrate}]\n",
         &[(1, 49, &["match the substrate", "substrate: InP"])],
     );
+    mistakes(
+        "substrate: InP\nlayers: [{material: In0.53Ga0.47As, width: 5 nm, match: substrate}]\n",
+        &[(2, 57, &["no fraction open", "`material: InGaAs`"])],
+    );
+    mistakes(
+        "substrate: InGaAs\nlayers: [{material: GaAs, width: 5 nm}]\n",
+        &[(1, 12, &["InGaAs", "fractions open"])],
+    );
 }
 
 #[test]
