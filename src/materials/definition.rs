@@ -21,7 +21,7 @@ pub struct Setting {
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Definition {
     /// The material to start from: a formula with fractions, a binary or another definition's name.
-    pub like: Option<String>,
+    pub(super) like: Option<String>,
     pub(super) values: Vec<Setting>,
     pub(super) bowing: Vec<Setting>,
     pub(super) choices: Vec<(&'static Key, String)>,

@@ -37,7 +37,7 @@ pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
                 "{} is doped, but band bending by charge is not included",
                 doped.in_words()
             ))
-            .at(first_line(doped)),
+            .at(place(doped)),
         );
     }
     if let Some(tune) = &structure.tune {
@@ -54,8 +54,8 @@ pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
     found
 }
 
-/// Where a message about a layer points: its material, which stands on one line.
-fn first_line(entry: &LayerEntry) -> Range<usize> {
+/// Where a message about a layer points.
+fn place(entry: &LayerEntry) -> Range<usize> {
     entry.material.span.clone()
 }
 
@@ -85,7 +85,7 @@ fn of_layer(entry: &LayerEntry, layer: usize, stack: &Stack, found: &mut Vec<Dia
         };
         found.push(
             Diagnostic::warning(message)
-                .at(first_line(entry))
+                .at(place(entry))
                 .hint("levels are those of Γ; where the valleys cross is known to some 50 meV"),
         );
     }
@@ -99,7 +99,7 @@ fn of_layer(entry: &LayerEntry, layer: usize, stack: &Stack, found: &mut Vec<Dia
                 Diagnostic::warning(format!(
                     "{name} is taken as unstrained, because its material lacks `lattice_constant` or `elastic`"
                 ))
-                .at(first_line(entry)),
+                .at(place(entry)),
             );
         }
         let most = strains.into_iter().flatten().fold(0.0_f64, |most, next| {
@@ -111,7 +111,7 @@ fn of_layer(entry: &LayerEntry, layer: usize, stack: &Stack, found: &mut Vec<Dia
                     "{name} is strained by {:.1} %, which hardly grows without dislocations",
                     1e2 * most
                 ))
-                .at(first_line(entry)),
+                .at(place(entry)),
             );
         }
     }
@@ -180,9 +180,7 @@ fn of_variable(
                 );
             }
             found.extend(outside(
-                format!("the width of {}, {}, ", layer.in_words(), layer.width.value)
-                    .trim_end_matches([',', ' '])
-                    .to_owned(),
+                format!("the width {} of {}", layer.width.value, layer.in_words()),
                 width,
                 [low, high],
             ));

@@ -74,7 +74,17 @@ pub(super) const fn between(lowest: f64, highest: f64, words: &'static str) -> L
 /// For values that are judged elsewhere.
 pub(super) const ANY: Limits = between(f64::MIN, f64::MAX, "any number");
 
+/// No name, formula or quantity is longer, in bytes; comparing longer texts with what was meant takes long.
+const MAX_TEXT: usize = 500;
+/// So many mistakes are enough to stop reading: more than are ever shown.
+const ENOUGH: usize = 200;
+
 impl Checker<'_> {
+    /// Whether enough mistakes were found, so that loops over the file's lists can end.
+    pub fn is_full(&self) -> bool {
+        self.problems.len() >= ENOUGH
+    }
+
     pub fn report(&mut self, problem: Diagnostic) {
         self.problems.push(problem);
     }
@@ -106,6 +116,9 @@ impl Checker<'_> {
             head: self.head(&node.span),
         };
         for (key, value) in entries {
+            if self.is_full() {
+                break;
+            }
             match key.text() {
                 Some(name) if keys.contains(&name) => fields.entries.push((name, value)),
                 Some(name) => {
@@ -167,6 +180,14 @@ impl Checker<'_> {
     /// A single value that is not empty.
     pub fn scalar<'n>(&mut self, node: &'n Node, expected: &str) -> Option<&'n str> {
         match &node.value {
+            Value::Scalar(text) if text.len() > MAX_TEXT => {
+                self.report(
+                    Diagnostic::error(format!("a text of {} bytes stands here", text.len()))
+                        .at(self.head(&node.span))
+                        .expected(format!("expected {expected}")),
+                );
+                None
+            }
             Value::Scalar(text) if !text.trim().is_empty() => Some(text.trim()),
             Value::Scalar(_) => {
                 self.report(

@@ -10,6 +10,7 @@ mod fields;
 mod file;
 mod grade;
 mod read;
+mod read_aims;
 mod read_layers;
 mod read_materials;
 mod read_tune;

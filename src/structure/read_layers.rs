@@ -1,7 +1,7 @@
 //! The `layers` of a structure file, and the materials they name.
 
 use super::document::{Node, line_of};
-use super::fields::{Checker, Limits, above, between};
+use super::fields::{Checker, Fields, Limits, above, between};
 use super::file::{Item, LayerEntry, Profile, Spanned};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Library, Substance};
@@ -87,6 +87,9 @@ impl LayerReader<'_> {
         let mut items = Vec::new();
         let mut total = 0_usize;
         for node in nodes {
+            if checker.is_full() {
+                break;
+            }
             if let Some((item, layers)) = self.item(checker, node) {
                 items.push(item);
                 total = total.saturating_add(layers);
@@ -126,12 +129,7 @@ impl LayerReader<'_> {
     }
 
     /// Reads a layer and returns its index.
-    fn layer(
-        &mut self,
-        checker: &mut Checker,
-        node: &Node,
-        fields: &super::fields::Fields,
-    ) -> usize {
+    fn layer(&mut self, checker: &mut Checker, node: &Node, fields: &Fields) -> usize {
         let index = self.entries.len();
         let name = fields.get("name").and_then(|node| self.name(checker, node));
         let label = name
@@ -163,7 +161,7 @@ impl LayerReader<'_> {
         &self,
         checker: &mut Checker,
         node: &Node,
-        fields: &super::fields::Fields,
+        fields: &Fields,
         name: Option<String>,
         label: String,
     ) -> Option<LayerEntry> {
@@ -190,6 +188,21 @@ impl LayerReader<'_> {
             Some(node) => substance(checker, node, self.known, matched).map(Some),
             None => Some(None),
         };
+        let is_open = |found: Option<&Spanned<Substance>>| {
+            found.is_some_and(|found| matches!(found.value, Substance::Family(_)))
+        };
+        if let (Some(node), Some(material), Some(to)) = (fields.get("match"), &material, &to)
+            && !is_open(Some(material))
+            && !is_open(to.as_ref())
+        {
+            checker.report(
+                Diagnostic::error("this layer leaves no fraction open to match the substrate")
+                    .at(node.span.clone())
+                    .expected(
+                        "an alloy without numbers, such as `material: InGaAs`, or no `match`",
+                    ),
+            );
+        }
         let width = fields.get("width").and_then(|node| {
             checker.quantity(
                 node,
@@ -254,19 +267,6 @@ pub(super) fn substance(
         Ok(family @ Substance::Family(_)) if !matched => {
             // The library says which fractions it would need.
             known.library.material(&family, 0.0).err()?
-        }
-        Ok(Substance::Alloy(composition)) if matched => {
-            checker.report(
-                Diagnostic::error(format!(
-                    "`{text}` leaves no fraction open to match the substrate"
-                ))
-                .at(node.span.clone())
-                .expected(format!(
-                    "an alloy without numbers, or no `match` beside `{}`",
-                    composition.formula()
-                )),
-            );
-            return None;
         }
         Ok(substance) => return Some(Spanned::new(substance, node)),
         Err(error) => error,

@@ -5,6 +5,9 @@ use super::fields::{Checker, Fields};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Definition, DefinitionProblem, KEYS, Key, Library, MaterialError};
 
+/// More are no design; the limit bounds the time that `like` takes to follow.
+const MAX_MATERIALS: usize = 100;
+
 /// What `materials` comes to.
 #[derive(Default)]
 pub(super) struct Materials {
@@ -21,6 +24,14 @@ pub(super) fn materials(checker: &mut Checker, node: &Node) -> Materials {
         );
         return Materials::default();
     };
+    if entries.len() > MAX_MATERIALS {
+        checker.report(
+            Diagnostic::error(format!("there are {} materials", entries.len()))
+                .at(checker.head(&node.span))
+                .expected(format!("at most {MAX_MATERIALS}")),
+        );
+        return Materials::default();
+    }
     let mut mistaken = Vec::new();
     let mut definitions = Vec::new();
     for (key, content) in entries {
@@ -33,11 +44,19 @@ pub(super) fn materials(checker: &mut Checker, node: &Node) -> Materials {
         }
     }
     // A definition made like a mistaken one is left out in silence, since its own words may be right.
-    while let Some(at) = definitions.iter().position(|(_, definition)| {
-        definition
-            .like
-            .as_ref()
-            .is_some_and(|like| mistaken.contains(like))
+    let like = |name: &str| {
+        let (_, content) = entries.iter().find(|(key, _)| is_named(key, name))?;
+        let Value::Map(entries) = &content.value else {
+            return None;
+        };
+        entries
+            .iter()
+            .find(|(key, _)| is_named(key, "like"))?
+            .1
+            .text()
+    };
+    while let Some(at) = definitions.iter().position(|(name, _)| {
+        like(name).is_some_and(|like| mistaken.iter().any(|name| name == like.trim()))
     }) {
         mistaken.push(definitions.remove(at).0);
     }
@@ -61,12 +80,10 @@ fn definition(checker: &mut Checker, node: &Node, name: &str) -> Option<Definiti
     let mut keys = vec!["like", "choose", "bowing"];
     keys.extend(KEYS.iter().map(|key| key.name));
     let fields = checker.fields(node, &format!("the material `{name}`"), &keys)?;
-    let mut definition = Definition::default();
-    if let Some(node) = fields.get("like") {
-        definition.like = checker
-            .scalar(node, "the material to start from")
-            .map(str::to_owned);
-    }
+    let mut definition = match fields.get("like") {
+        Some(node) => Definition::like(checker.scalar(node, "the material to start from")?),
+        None => Definition::default(),
+    };
     for key in &KEYS {
         if let Some(node) = fields.get(key.name)
             && let Some(numbers) = numbers(checker, node, key)
@@ -141,6 +158,10 @@ fn number(checker: &mut Checker, node: &Node, key: &Key) -> Option<f64> {
     }
 }
 
+fn is_named(key: &Node, name: &str) -> bool {
+    key.text().map(str::trim) == Some(name)
+}
+
 fn report(checker: &mut Checker, node: &Node, error: &MaterialError) {
     let problem = Diagnostic::error(error.to_string()).at(checker.head(&node.span));
     checker.report(match error.hint() {
@@ -151,10 +172,7 @@ fn report(checker: &mut Checker, node: &Node, error: &MaterialError) {
 
 /// Reports what the library says about a definition, at its place.
 fn refused(checker: &mut Checker, entries: &[(Node, Node)], problem: &DefinitionProblem) {
-    let Some((name, content)) = entries
-        .iter()
-        .find(|(key, _)| key.text().map(str::trim) == Some(problem.name.as_str()))
-    else {
+    let Some((name, content)) = entries.iter().find(|(key, _)| is_named(key, &problem.name)) else {
         return;
     };
     let mut place = name;
@@ -163,7 +181,7 @@ fn refused(checker: &mut Checker, entries: &[(Node, Node)], problem: &Definition
         let Value::Map(entries) = &node.value else {
             break;
         };
-        let Some((_, value)) = entries.iter().find(|(key, _)| key.text() == Some(step)) else {
+        let Some((_, value)) = entries.iter().find(|(key, _)| is_named(key, step)) else {
             break;
         };
         (place, node) = (value, value);

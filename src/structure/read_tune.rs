@@ -1,8 +1,9 @@
 //! The `tune` part of a structure file.
 
 use super::document::{Node, Value, line_of};
-use super::fields::{Checker, Fields, Limits, above, between, one_of};
-use super::file::{Aim, Follow, LayerEntry, Level, Target, Tune, Variable, Varied, Within};
+use super::fields::{Checker, Fields, Limits, between, one_of};
+use super::file::{LayerEntry, Tune, Variable, Varied};
+use super::read_aims;
 use super::read_layers::{FIELD_LIMITS, WIDTH_LIMITS};
 use crate::diagnostics::{Diagnostic, probably_meant};
 use crate::materials::{Element, MaterialError, Substance};
@@ -11,13 +12,10 @@ use crate::units::{self, Dimension, Quantity};
 /// The highest level that can be asked for; far more than any well holds.
 pub(super) const MAX_LEVELS: u32 = 200;
 
-const ENERGY_LIMITS: Limits = above(0.0, 10.0, "more than 0 eV, at most 10 eV");
-const WAVELENGTH_LIMITS: Limits = above(0.0, 1e7, "more than 0 µm, at most 10 mm");
-const DIPOLE_LIMITS: Limits = above(0.0, 1e5, "more than 0 nm, at most 100 µm");
-const WEIGHT_LIMITS: Limits = above(0.0, 1e6, "more than 0, at most 1e6");
+/// More variables or aims are no design task.
+const MAX_ITEMS: usize = 100;
+
 const FRACTION_LIMITS: Limits = between(0.0, 1.0, "from 0 to 1");
-/// What an aim can be about.
-const TARGETS: [&str; 4] = ["energy", "wavelength", "dipole", "maximize"];
 
 /// Reads `tune`; `entries` holds `None` for a layer that is itself mistaken.
 pub(super) fn tune(
@@ -54,7 +52,7 @@ pub(super) fn tune(
             "no aim",
             "energies, wavelengths or dipoles of transitions",
         )?;
-        Some(aims(checker, items))
+        Some(read_aims::aims(checker, items))
     });
     let snap_to_monolayers = match fields.get("snap") {
         Some(node) => checker.word(node, &["monolayer"]).is_some(),
@@ -80,6 +78,14 @@ fn filled_list<'n>(
             Diagnostic::error(format!("there is {empty}"))
                 .at(node.span.clone())
                 .expected(format!("expected {expected}")),
+        );
+        return None;
+    }
+    if items.len() > MAX_ITEMS {
+        checker.report(
+            Diagnostic::error(format!("there are {} entries", items.len()))
+                .at(checker.head(&node.span))
+                .expected(format!("at most {MAX_ITEMS}")),
         );
         return None;
     }
@@ -390,226 +396,4 @@ fn quantities(
         },
         Quantity::value,
     )
-}
-
-fn aims(checker: &mut Checker, items: &[Node]) -> Vec<Aim> {
-    let mut found: Vec<Aim> = Vec::new();
-    for item in items {
-        let Some(aim) = aim(checker, item) else {
-            continue;
-        };
-        if let Some(first) = found.iter().find(|other| contradict(other, &aim)) {
-            let line = line_of(checker.text, first.span.start);
-            checker.report(
-                Diagnostic::error(format!(
-                    "the aim on line {line} is about the same property of the same transition"
-                ))
-                .at(aim.span.clone())
-                .expected("one value for each"),
-            );
-            continue;
-        }
-        found.push(aim);
-    }
-    found
-}
-
-/// Whether two aims want values of the same thing.
-fn contradict(one: &Aim, other: &Aim) -> bool {
-    let pair = |aim: &Aim| {
-        (
-            aim.from.index.min(aim.to.index),
-            aim.from.index.max(aim.to.index),
-        )
-    };
-    let about_energy =
-        |aim: &Aim| matches!(aim.target, Target::EnergyEv(_) | Target::WavelengthUm(_));
-    pair(one) == pair(other)
-        && one.follow == other.follow
-        && about_energy(one) == about_energy(other)
-}
-
-fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
-    let fields = checker.fields(
-        item,
-        "an aim",
-        &[
-            "from",
-            "to",
-            "energy",
-            "wavelength",
-            "dipole",
-            "maximize",
-            "weight",
-            "within",
-            "follow",
-        ],
-    )?;
-    checker.missing(&fields, "this aim", "from", "conduction 1");
-    checker.missing(&fields, "this aim", "to", "conduction 2");
-    let from = fields.get("from").and_then(|node| level(checker, node));
-    let to = fields.get("to").and_then(|node| level(checker, node));
-    let ends_differ = from.is_none() || from != to;
-    if !ends_differ && let Some(node) = fields.get("to") {
-        checker.report(
-            Diagnostic::error("this aim goes from a level to itself")
-                .at(node.span.clone())
-                .expected("another level than `from`"),
-        );
-    }
-    let target = target(checker, &fields);
-    let weight = match fields.get("weight") {
-        Some(node) => checker.number(node, WEIGHT_LIMITS),
-        None => Some(1.0),
-    };
-    let within = match fields.get("within") {
-        Some(node) => within(checker, node, target).map(Some),
-        None => Some(None),
-    };
-    let follow = match fields.get("follow") {
-        Some(node) => checker.word(node, &["order", "character"]),
-        None => Some("order"),
-    };
-    Some(Aim {
-        from: from?,
-        to: to.filter(|_| ends_differ)?,
-        target: target?,
-        weight: weight?,
-        within: within?,
-        follow: if follow? == "character" {
-            Follow::Character
-        } else {
-            Follow::Order
-        },
-        span: checker.head(&item.span),
-    })
-}
-
-/// `conduction 2`.
-fn level(checker: &mut Checker, node: &Node) -> Option<Level> {
-    let expected = "a level such as `conduction 2`";
-    let text = checker.scalar(node, expected)?;
-    let mut words = text.split_whitespace();
-    let (band, index, rest) = (words.next().unwrap_or_default(), words.next(), words.next());
-    let problem = if band != "conduction" {
-        let problem = if ["heavy-hole", "light-hole", "valence"].contains(&band) {
-            Diagnostic::error(format!("the band `{band}` is not solved"))
-        } else {
-            Diagnostic::error(format!("`{band}` is no band"))
-        };
-        match probably_meant(band, ["conduction"]) {
-            Some(meant) => problem.hint(format!("did you mean `{meant}`?")),
-            None => problem,
-        }
-    } else {
-        match (index.map(str::parse::<u32>), rest) {
-            (Some(Ok(index)), None) if (1..=MAX_LEVELS).contains(&index) => {
-                return Some(Level {
-                    index: index as usize,
-                });
-            }
-            (Some(Ok(0)), None) => Diagnostic::error("levels are counted from 1"),
-            (Some(Ok(index)), None) => Diagnostic::error(format!(
-                "level {index} is beyond the {MAX_LEVELS} that can be solved"
-            )),
-            (None, _) => Diagnostic::error("the number of the level is missing"),
-            _ => Diagnostic::error(format!("`{text}` is no level")),
-        }
-    };
-    checker.report(
-        problem
-            .at(node.span.clone())
-            .expected(format!("expected {expected}")),
-    );
-    None
-}
-
-fn target(checker: &mut Checker, fields: &Fields) -> Option<Target> {
-    let named: Vec<&str> = TARGETS.into_iter().filter(|key| fields.has(key)).collect();
-    let key = match named.as_slice() {
-        [key] => *key,
-        [] => {
-            checker.report(
-                Diagnostic::error("this aim does not say what the transition shall have")
-                    .at(fields.head.clone())
-                    .expected("one of `energy: 36 meV`, `wavelength: 8.6 µm`, `dipole: 2 nm`, `maximize: dipole`"),
-            );
-            return None;
-        }
-        [first, second, ..] => {
-            checker.report(
-                Diagnostic::error(format!(
-                    "this aim asks for `{first}` and `{second}` at once"
-                ))
-                .at(fields.head.clone())
-                .expected("one of them per aim"),
-            );
-            return None;
-        }
-    };
-    let node = fields.get(key)?;
-    let mut length = |limits| {
-        Some(
-            checker
-                .quantity(node, &[Dimension::Length], limits)?
-                .value
-                .value(),
-        )
-    };
-    match key {
-        "wavelength" => length(WAVELENGTH_LIMITS).map(|nm| Target::WavelengthUm(nm * 1e-3)),
-        "dipole" => length(DIPOLE_LIMITS).map(Target::DipoleNm),
-        "energy" => {
-            let energy = checker.quantity(node, &[Dimension::Energy], ENERGY_LIMITS)?;
-            Some(Target::EnergyEv(energy.value.value()))
-        }
-        _ => checker
-            .word(node, &["dipole"])
-            .map(|_| Target::MaximizeDipole),
-    }
-}
-
-fn within(checker: &mut Checker, node: &Node, target: Option<Target>) -> Option<Within> {
-    let expected = match target? {
-        Target::EnergyEv(_) => "an energy such as `1 meV`, or a part such as `1 %`",
-        Target::WavelengthUm(_) => {
-            "a length such as `20 nm`, an energy such as `1 meV`, or a part such as `1 %`"
-        }
-        Target::DipoleNm(_) => "a length such as `0.1 nm`, or a part such as `1 %`",
-        Target::MaximizeDipole => {
-            checker.report(
-                Diagnostic::error("an aim that maximizes has no value to come near to")
-                    .at(node.span.clone())
-                    .expected("no `within` here"),
-            );
-            return None;
-        }
-    };
-    let text = checker.scalar(node, expected)?;
-    let positive = |value: f64| value > 0.0 && value.is_finite();
-    let problem = match units::split_number(text) {
-        Some((number, "%")) if positive(number) && number < 100.0 => {
-            return Some(Within::Fraction(number * 1e-2));
-        }
-        Some((_, "%")) => format!("`{text}` is out of range"),
-        _ => match units::parse(text, &[Dimension::Energy, Dimension::Length]) {
-            Ok(quantity) if !positive(quantity.value()) => format!("`{text}` is out of range"),
-            Ok(quantity) => match (quantity.unit.dimension, target?) {
-                (Dimension::Energy, Target::EnergyEv(_) | Target::WavelengthUm(_)) => {
-                    return Some(Within::EnergyEv(quantity.value()));
-                }
-                (Dimension::Length, Target::WavelengthUm(_) | Target::DipoleNm(_)) => {
-                    return Some(Within::LengthNm(quantity.value()));
-                }
-                (dimension, _) => format!("{} does not suit this aim", dimension.noun()),
-            },
-            Err(error) => error.to_string(),
-        },
-    };
-    checker.report(
-        Diagnostic::error(problem)
-            .at(node.span.clone())
-            .expected(format!("expected {expected}")),
-    );
-    None
 }

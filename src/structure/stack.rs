@@ -1,10 +1,11 @@
 //! The stack: a flat list of layers from the substrate up, with materials resolved at the temperature and the strain.
 
-use super::file::{ConductionModel, Item, LayerEntry, Spanned, Structure};
+use super::file::{ConductionModel, Item, LayerEntry, Profile, Spanned, Structure};
 use super::grade::{self, Law};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{
-    Composition, Dual, Element, Library, Material, MaterialError, Substance, monolayer_nm, strained,
+    Composition, Dual, Element, Library, Material, MaterialError, Number, Substance, monolayer_nm,
+    strained,
 };
 use crate::units::{Dimension, Quantity};
 use std::ops::Range;
@@ -48,7 +49,7 @@ struct Content {
     /// The upper face of a graded layer.
     upper: Option<Face>,
     law: Law,
-    profile: super::file::Profile,
+    profile: Profile,
     monolayer_nm: Option<f64>,
 }
 
@@ -402,7 +403,7 @@ impl Stack {
         }
     }
 
-    fn strain<T: crate::materials::Number>(&self, free: Material<T>) -> Material<T> {
+    fn strain<T: Number>(&self, free: Material<T>) -> Material<T> {
         match self.substrate_nm {
             Some(lattice) => strained(&free, lattice),
             None => free,
@@ -419,7 +420,7 @@ impl Stack {
         })
     }
 
-    fn content(&self, lower: Face, upper: Option<Face>, profile: super::file::Profile) -> Content {
+    fn content(&self, lower: Face, upper: Option<Face>, profile: Profile) -> Content {
         let monolayer = |face: &Face| monolayer_nm(&face.free, self.substrate_nm);
         let monolayer_nm = match &upper {
             None => monolayer(&lower),

@@ -85,7 +85,9 @@ pub fn tune(
         count: needed.max(structure.conduction.states),
     };
     let searching = Task {
-        accuracy: Accuracy { tolerance_ev: accuracy.tolerance_ev.max(SEARCH_TOLERANCE_EV) },
+        accuracy: Accuracy {
+            tolerance_ev: accuracy.tolerance_ev.max(SEARCH_TOLERANCE_EV),
+        },
         count: needed,
         ..task.clone()
     };
