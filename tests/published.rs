@@ -71,7 +71,7 @@ fn file(
         let width = if k == 0 { width.max(pad) } else { *width };
         text += &format!("  - {{material: {material}, width: {width} Å}}\n");
     }
-    if sequence.len() % 2 == 0 {
+    if sequence.len().is_multiple_of(2) {
         text += &format!("  - {{material: Barrier, width: {pad} Å}}\n");
     }
     text
