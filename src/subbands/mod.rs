@@ -8,7 +8,7 @@ mod state;
 
 pub use audit::Audit;
 pub use change::change;
-pub use envelope::{envelope_overlap, layer_envelopes};
+pub use envelope::{amplitudes, layer_envelopes};
 pub use state::{Hold, State};
 
 use crate::models::ConductionOperator;
@@ -71,7 +71,7 @@ pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) ->
     }
 }
 
-/// Solves on a given mesh, with the errors estimated by one step on a higher order.
+/// Solves on a given mesh, with the errors estimated on a higher order.
 pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subbands {
     let pencil = pencil_on(operator, mesh);
     let pairs = eigenpairs::lowest(&pencil, count);
@@ -79,17 +79,11 @@ pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subba
         operator,
         pencil.mesh.with_order(pencil.mesh.order() + ORDER_STEP),
     );
-    let errors_ev = pairs
-        .iter()
-        .map(|pair| {
-            let vector = pencil.mesh.transfer(&pair.vector, &finer.mesh);
-            (eigenpairs::improved_value(&finer, pair.value, &vector) - pair.value).abs()
-        })
-        .collect();
+    let errors_ev = eigenpairs::improvements(&pencil, &pairs, &finer);
     Subbands {
         pencil,
         pairs,
-        errors_ev,
+        errors_ev: errors_ev.into_iter().map(f64::abs).collect(),
     }
 }
 
