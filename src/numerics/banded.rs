@@ -140,12 +140,13 @@ impl Banded {
     pub fn factor(mut self) -> Factored {
         let stride = self.stride;
         let mut negative = 0;
+        let diagonal = self.values.iter().step_by(stride);
+        let smallest = 1e-30 + 1e-18 * diagonal.fold(0.0_f64, |m, v| m.max(v.abs()));
         for k in 0..self.size() {
             let (head, tail) = self.values.split_at_mut((k + 1) * stride);
             let (diagonal, below) = head[k * stride..].split_at_mut(1);
             let mut pivot = diagonal[0];
             let below = &mut below[..self.reach[k]];
-            let smallest = 1e-30 + 1e-18 * below.iter().fold(0.0_f64, |m, v| m.max(v.abs()));
             if pivot.abs() < smallest {
                 pivot = smallest;
                 diagonal[0] = pivot;

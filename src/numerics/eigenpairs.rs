@@ -169,7 +169,7 @@ impl<'p> Search<'p> {
     ) -> Option<Eigenpair> {
         let mut iterate = Iterate::new(self.pencil, start_vector(self.pencil, 0));
         iterate.step(factored);
-        let quotient = iterate.step(factored);
+        let (quotient, _) = iterate.step(factored);
         let mut value = start + iterate.change(start, quotient);
         for _ in 0..20 {
             if !(value > low && value < high) {
@@ -177,16 +177,18 @@ impl<'p> Search<'p> {
             }
             let shift = value;
             let factored = self.factor(shift);
-            let mut rest = 1.0;
+            let mut rest = 1.0_f64;
             let mut quotient = 0.0;
             while rest > CONVERGED {
-                quotient = iterate.step(&factored);
+                let moved;
+                (quotient, moved) = iterate.step(&factored);
                 let ratio = quotient.abs() / (shift - low).min(high - shift);
                 if !(0.0..SLOW).contains(&ratio) {
                     rest = 1.0;
                     break;
                 }
-                rest *= ratio.max(f64::EPSILON);
+                // What a step leaves is this part of what there was, and of what it took away.
+                rest = (rest * ratio).min(moved * ratio / (1.0 - ratio));
             }
             self.spare = Some(factored.into_storage());
             value = shift + iterate.change(shift, quotient);
@@ -282,8 +284,8 @@ impl<'p> Iterate<'p> {
         }
     }
 
-    /// x ← T⁻¹ M x, normalised under M; the return value is the Rayleigh quotient of T under M.
-    fn step(&mut self, factored: &Factored) -> f64 {
+    /// x ← T⁻¹ M x, normalised under M. Returns the Rayleigh quotient of T under M, and how far the vector has moved.
+    fn step(&mut self, factored: &Factored) -> (f64, f64) {
         let inner = 1..self.vector.len() - 1;
         self.vector.copy_from_slice(&self.weighted);
         let x = &mut self.vector[inner.clone()];
@@ -301,7 +303,9 @@ impl<'p> Iterate<'p> {
             *v *= scale;
             *w *= scale;
         }
-        shifted / norm
+        // |x − x₀|² = 2 − 2 x·x₀, which rounding keeps from telling small moves apart.
+        let apart = (1.0 - shifted.abs() * scale).max(f64::EPSILON);
+        (shifted / norm, (2.0 * apart).sqrt())
     }
 
     /// The change of the level that a quotient under M at this shift stands for: Newton's step, x · T x / x · N x.
