@@ -20,7 +20,7 @@ const UNSURE: f64 = 20.0 * RELATIVE;
 /// A slope that nearly vanishes is held to this part of the largest slope of its kind in the same direction.
 const SMALL: f64 = 1e-2;
 /// Rounding of a solved energy, in eV; over the step it hides the slopes of states that do not reach a layer.
-const ENERGY_ROUNDING: f64 = 5e-14;
+const ENERGY_ROUNDING: f64 = 3e-13;
 /// Rounding of a dipole times the distance to the nearest other level, in nm eV: rounding mixes near levels.
 const DIPOLE_ROUNDING: f64 = 1e-13;
 /// Solves are this exact, so that differences over small steps keep their digits.
@@ -204,7 +204,7 @@ layers:
             (3, Element::Ga),
             (4, Element::Al),
         ],
-        steps: (0.04, 0.001, 0.4),
+        steps: (0.04, 0.001, 0.2),
     });
 }
 
@@ -231,7 +231,7 @@ layers:
             (3, Element::Ga),
             (4, Element::Al),
         ],
-        steps: (0.04, 0.001, 0.4),
+        steps: (0.04, 0.001, 0.2),
     });
 }
 
