@@ -22,7 +22,7 @@ const SMALL: f64 = 1e-2;
 /// Rounding of a solved energy, in eV; over the step it hides the slopes of states that do not reach a layer.
 const ENERGY_ROUNDING: f64 = 3e-13;
 /// Rounding of a dipole times the distance to the nearest other level, in nm eV: rounding mixes near levels.
-const DIPOLE_ROUNDING: f64 = 1e-13;
+const DIPOLE_ROUNDING: f64 = 5e-13;
 /// Solves are this exact, so that differences over small steps keep their digits.
 const ACCURACY: Accuracy = Accuracy {
     tolerance_ev: 1e-11,

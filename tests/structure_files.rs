@@ -173,7 +173,10 @@ fn bytes_that_are_no_text_are_one_message() {
     for (bytes, words) in [
         (&b"\x7fELF\0\0"[..], "binary file"),
         (b"title: \xff\xfe\n", "line 1 belongs to no character"),
-        (&[b'#'; document::MAX_BYTES + 1], "4194305 bytes"),
+        (
+            &[b'#'; document::MAX_BYTES + 1],
+            "more than the 4194304 bytes",
+        ),
     ] {
         let problem = document::decode(bytes).unwrap_err();
         assert!(said(&problem).contains(words), "{}", said(&problem));
