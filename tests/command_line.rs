@@ -10,9 +10,9 @@ title: A well
 substrate: GaAs
 bands: {conduction: {model: parabolic, states: 2}}
 layers:
-  - {material: Al0.3Ga0.7As, width: 15 nm}
+  - {material: Al0.25Ga0.75As, width: 25 nm}
   - {name: well, material: GaAs, width: 6 nm}
-  - {material: Al0.3Ga0.7As, width: 15 nm}
+  - {material: Al0.25Ga0.75As, width: 25 nm}
 ";
 const TUNE: &str = "\
 tune:
@@ -48,7 +48,7 @@ fn results_go_to_stdout_and_messages_to_stderr() {
     let ran = bench.run(&["check", "well.yaml"]).code(0);
     assert_eq!(
         ran.stdout,
-        "well.yaml: 3 layers, 36.00 nm, with a tune block; no mistakes\n"
+        "well.yaml: 3 layers, 56.00 nm, with a tune block; no mistakes\n"
     );
     assert_eq!(ran.stderr, "");
     let ran = bench.run(&["tune", "well.yaml"]).code(0);
