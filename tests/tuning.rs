@@ -552,7 +552,7 @@ fn the_tuned_file_keeps_all_but_the_tuned_numbers_and_gives_the_reported_values(
                 frame(
                     (changed[2].1, changed[2].1),
                     "  - {name: narrow well, material: \"Al0.02Ga0.98As\", width: ",
-                    " ML}",
+                    " nm}",
                 ),
             )
         };
