@@ -755,7 +755,7 @@ fn bytes_that_are_no_text() {
             &["not UTF-8", "on line 2", "save the file as UTF-8"],
         ),
         (&utf16, &["the file is in UTF-16", "save the file as UTF-8"]),
-        (&vec![b'#'; 5_000_000], &["more than the 4194304 bytes"]),
+        (&vec![b'#'; 5_000_000], &["more than the 2097152 bytes"]),
     ] {
         let said = refused(bytes);
         assert_eq!(errors(&said), 1, "{said}");

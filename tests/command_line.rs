@@ -257,7 +257,11 @@ fn tables(text: &str) -> Vec<(Vec<String>, usize)> {
                 .map(str::to_owned)
                 .collect();
             // Rows of another length than the header are an error of the reader.
-            let rows = reader.records().map(|row| row.unwrap()).count();
+            let rows = reader
+                .records()
+                .collect::<Result<Vec<_>, _>>()
+                .unwrap()
+                .len();
             (header, rows)
         })
         .collect()

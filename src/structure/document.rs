@@ -10,11 +10,11 @@ use std::fmt;
 use std::ops::Range;
 
 /// The largest text that is read, in bytes. A stack of some ten thousand layers is far below it.
-pub const MAX_BYTES: usize = 4 << 20;
+pub const MAX_BYTES: usize = 2 << 20;
 /// The deepest nesting; the format itself needs about a dozen levels, nested repeats included.
 const MAX_DEPTH: usize = 64;
-/// How many values the text may hold; a layer has some ten.
-const MAX_NODES: usize = 200_000;
+/// How many values the text may hold, keys among them; a layer has some ten.
+const MAX_NODES: usize = 120_000;
 /// How many values may come through aliases.
 const MAX_REPEATED: usize = 50_000;
 
