@@ -168,16 +168,28 @@ fn of_variable(
                 found.push(no_monolayer(layer, &variable.span));
                 return;
             };
-            let unknown = stack
-                .layers
-                .iter()
-                .position(|layer| layer.entry == *entry)
-                .is_some_and(|layer| stack.monolayer_nm(layer).is_none());
-            if snap && unknown && bounds[0].unit.dimension != Dimension::Monolayers {
-                found.push(
+            match stack.entry_monolayer_nm(*entry) {
+                None if snap && bounds[0].unit.dimension != Dimension::Monolayers => found.push(
                     no_monolayer(layer, &variable.span)
                         .expected("a known monolayer, because of `snap: monolayer`"),
-                );
+                ),
+                Some(monolayer)
+                    if snap && !holds_whole_number(low / monolayer, high / monolayer) =>
+                {
+                    found.push(
+                        Diagnostic::error(format!(
+                            "the bounds on the width of {} hold no whole number of monolayers",
+                            layer.in_words()
+                        ))
+                        .at(variable.span.clone())
+                        .expected(format!(
+                            "room for one, because of `snap: monolayer`; they are {:.2} and {:.2} monolayers",
+                            low / monolayer,
+                            high / monolayer
+                        )),
+                    );
+                }
+                _ => {}
             }
             found.extend(outside(
                 format!("the width {} of {}", layer.width.value, layer.in_words()),
@@ -212,4 +224,10 @@ fn of_variable(
             ));
         }
     }
+}
+
+/// Whether a whole number from 1 lies between two numbers, of which whole ones may be off by rounding.
+fn holds_whole_number(low: f64, high: f64) -> bool {
+    const ROUNDING: f64 = 1e-9;
+    (low - ROUNDING).ceil().max(1.0) <= (high + ROUNDING).floor()
 }
