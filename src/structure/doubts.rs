@@ -9,7 +9,7 @@ use std::ops::Range;
 
 /// How far the tables may put a side valley from where it is: that of AlGaAs crosses at an Al fraction of 0.37 ± 0.015 in
 /// measurements and 0.417 in the usual tables, some 50 meV.
-const VALLEY_UNCERTAINTY_EV: f64 = 0.06;
+const VALLEY_UNCERTAINTY_EV: f64 = 0.05;
 /// The strain beyond which coherent layers of useful width are not grown; common practice.
 const DOUBTFUL_STRAIN: f64 = 0.05;
 
@@ -83,11 +83,13 @@ fn of_layer(entry: &LayerEntry, layer: usize, stack: &Stack, found: &mut Vec<Dia
         } else {
             format!("{name} is nearly indirect: its {valley} valley lies only {mev:.0} meV above Γ")
         };
-        found.push(
-            Diagnostic::warning(message)
-                .at(place(entry))
-                .hint("levels are those of Γ; where the valleys cross is known to some 50 meV"),
-        );
+        found.push(Diagnostic::warning(message).at(place(entry)).hint(
+            if above_ev.abs() < VALLEY_UNCERTAINTY_EV {
+                "levels are those of Γ; where the valleys cross is known to some 50 meV"
+            } else {
+                "levels are those of Γ; electrons can leave through the side valley"
+            },
+        ));
     }
     if let Some(lattice) = stack.substrate_lattice_nm() {
         let strains: Vec<Option<f64>> = faces

@@ -34,6 +34,8 @@ impl Default for Accuracy {
 const ORDERS: [usize; 3] = [6, 8, 12];
 /// A tolerance below this skips the lowest order, which seldom reaches it.
 const FINE_EV: f64 = 1e-7;
+/// No energy is held to less than this part of its height above the floor: a finer mesh would add rounding only.
+const ROUNDING: f64 = 1e-11;
 /// Halvings after which the error that is reached is reported as it is.
 const MAX_HALVINGS: usize = 4;
 /// The order is raised by this much for the error estimate.
@@ -60,8 +62,13 @@ pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) ->
             }
             let mesh = Mesh::new(&lengths, &pieces, order);
             let subbands = on_mesh(operator, mesh, count);
-            let worst = subbands.errors_ev.iter().fold(0.0, |a: f64, b| a.max(*b));
-            let enough = subbands.pairs.len() == count && worst <= accuracy.tolerance_ev;
+            let floor_ev = subbands.pencil.floor();
+            let mut levels = subbands.errors_ev.iter().zip(&subbands.pairs);
+            let exact = levels.all(|(error_ev, pair)| {
+                let rounding_ev = ROUNDING * (pair.value - floor_ev);
+                *error_ev <= accuracy.tolerance_ev.max(rounding_ev)
+            });
+            let enough = subbands.pairs.len() == count && exact;
             if enough || (halvings == MAX_HALVINGS && order == ORDERS[ORDERS.len() - 1]) {
                 return subbands;
             }
