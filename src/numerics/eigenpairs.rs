@@ -19,8 +19,9 @@ const CLUSTER: f64 = 1e-9;
 const CONVERGED: f64 = 1e-12;
 /// A ratio of convergence above this calls for a new shift.
 const SLOW: f64 = 0.03;
-/// With poles the shift must come this near, as a part of the searched range: the vector is as exact as that.
-const NEAR: f64 = 1e-9;
+/// With poles the shift must come this near, as a part of the searched range: the value is then exact to the square of
+/// it, and the vector after its last step.
+const NEAR: f64 = 1e-7;
 /// Vectors of levels closer than this part of the searched range are made orthogonal to each other explicitly.
 const NEIGHBOURS: f64 = 1e-3;
 
@@ -190,10 +191,14 @@ impl<'p> Search<'p> {
                 // What a step leaves is this part of what there was, and of what it took away.
                 rest = (rest * ratio).min(moved * ratio / (1.0 - ratio));
             }
-            self.spare = Some(factored.into_storage());
             value = shift + iterate.change(shift, quotient);
             let settled = self.pencil.is_linear() || (value - shift).abs() < NEAR * self.range;
-            if rest <= CONVERGED && settled {
+            let done = rest <= CONVERGED && settled;
+            if done && !self.pencil.is_linear() {
+                iterate.last_step(&factored, shift, value);
+            }
+            self.spare = Some(factored.into_storage());
+            if done {
                 let vector = iterate.vector;
                 return (value >= low && value <= high).then_some(Eigenpair { value, vector });
             }
@@ -306,6 +311,13 @@ impl<'p> Iterate<'p> {
         // |x − x₀|² = 2 − 2 x·x₀, which rounding keeps from telling small moves apart.
         let apart = (1.0 - shifted.abs() * scale).max(f64::EPSILON);
         (shifted / norm, (2.0 * apart).sqrt())
+    }
+
+    /// x ← T(σ)⁻¹ N(σ, λ) x, which leaves the eigenvector of λ as it is: T(λ) x = 0 means T(σ) x = (λ − σ) N x.
+    fn last_step(&mut self, factored: &Factored, shift: f64, value: f64) {
+        self.vector = self.pencil.weight(shift, value, &self.vector);
+        let inner = 1..self.vector.len() - 1;
+        factored.solve(&mut self.vector[inner]);
     }
 
     /// The change of the level that a quotient under M at this shift stands for: Newton's step, x · T x / x · N x.
