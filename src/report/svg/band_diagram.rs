@@ -1,0 +1,482 @@
+//! The band edge along the growth direction with the squared envelopes at their energies.
+
+use super::Width;
+use super::axes::{BOTTOM_ROOM, Scale, bottom_axis, left_axis, left_room};
+use super::key;
+use super::ladder::{Ladder, Rung};
+use super::layer_strip::{LayerStrip, StripLayer};
+use super::page::{ASCENT, Anchor, LABEL_PT, MARGIN_PT, Page, SMALL_PT, Style};
+use super::palette::{self, BODY, GUIDE, INK, Stroke};
+use super::spread::spread;
+use super::text::{Run, formula, minus, plain, short, shortened, width_pt};
+use crate::materials::Substance;
+use crate::models::model_name;
+use crate::optics::{Transition, transitions};
+use crate::report::table::significant;
+use crate::structure::{ConductionModel, Item, Stack, Structure};
+use crate::subbands::{Curves, Hold, Subbands};
+
+/// What the curves of a diagram are to be sampled with: a thousandth of the highest peak is less than the line's width.
+pub const EDGE_FINENESS: f64 = 1e-3;
+/// Transitions that are drawn when the file has no aims.
+const MOST_TRANSITIONS: usize = 4;
+/// Of those, none weaker than this part of the strongest.
+const WEAKEST: f64 = 0.05;
+/// A squared envelope is drawn where it is above this part of its peak.
+const TAIL: f64 = 0.004;
+/// A wider range of energy is given in eV.
+const EV_AXIS_FROM: f64 = 2.0;
+/// Names and materials in the key are cut to this.
+const LONGEST_NAME_PT: f64 = 110.0;
+/// Above this many lines the labels of the levels are thinned out.
+const TALLEST_PT: f64 = 560.0;
+
+/// All that a band diagram shows.
+#[derive(Clone, Debug)]
+pub struct BandDiagram {
+    title: String,
+    caption: String,
+    /// nm, eV above the zero.
+    edge: Vec<[f64; 2]>,
+    layers: Vec<StripLayer>,
+    /// What each number in the strip stands for.
+    meanings: Vec<Vec<Run>>,
+    states: Vec<DrawnState>,
+    transitions: Vec<Transition>,
+    width_nm: f64,
+}
+
+#[derive(Clone, Debug)]
+struct DrawnState {
+    /// Above the zero.
+    energy_ev: f64,
+    density: Vec<[f64; 2]>,
+    /// A sign that the caption explains.
+    mark: &'static str,
+}
+
+impl BandDiagram {
+    /// Gathers the diagram of the lowest `shown` states. The transitions are those that the file's aims name, else the
+    /// strongest.
+    pub fn new(
+        structure: &Structure,
+        stack: &Stack,
+        subbands: &Subbands,
+        curves: Curves,
+        shown: usize,
+    ) -> BandDiagram {
+        let zero_ev = subbands.pencil.floor();
+        let states: Vec<DrawnState> = subbands
+            .states()
+            .iter()
+            .zip(curves.densities)
+            .take(shown)
+            .map(|(state, density)| DrawnState {
+                energy_ev: state.from_edge_ev,
+                density,
+                mark: match state.hold {
+                    Hold::Bound => "",
+                    Hold::Leaky => "‡",
+                    Hold::Walls => "†",
+                },
+            })
+            .collect();
+        BandDiagram {
+            title: structure.title.clone().unwrap_or_default(),
+            caption: caption(structure, stack, zero_ev, &states),
+            edge: curves.edge.iter().map(|[z, v]| [*z, v - zero_ev]).collect(),
+            layers: strip_layers(structure, stack),
+            meanings: meanings(structure, stack),
+            transitions: chosen(structure, subbands, states.len()),
+            states,
+            width_nm: stack.total_width_nm(),
+        }
+    }
+
+    /// The picture.
+    pub fn svg(&self, width: Width) -> String {
+        let mut page = Page::new(width);
+        let label_step = LABEL_PT * 1.25;
+        let wanted_height = match width {
+            Width::Column => 165.0_f64,
+            Width::Page => 215.0,
+        };
+        let labels_height = label_step * self.states.len() as f64;
+        let height = wanted_height.max(labels_height.min(TALLEST_PT));
+        let every = (labels_height / height).ceil().max(1.0) as usize;
+
+        let unit = self.unit();
+        let peak_pt = self.peak_pt(height);
+        let (vertical, density_scale) = self.vertical(height, peak_pt);
+        let y_at = |energy_ev: f64| vertical.at(unit.factor * energy_ev);
+
+        let labels = self.state_labels(unit);
+        let labels_width = labels.iter().map(|l| width_pt(l, LABEL_PT)).fold(0.0, f64::max);
+        let rung = |t: &Transition| Rung {
+            upper_y: y_at(self.states[t.to].energy_ev),
+            lower_y: y_at(self.states[t.from].energy_ev),
+            lines: [
+                format!("{} µm", significant(t.wavelength_um(), 4)),
+                format!("{} meV", significant(1e3 * t.energy_ev, 4)),
+            ],
+        };
+        let columns = match width {
+            Width::Column => 2,
+            Width::Page => 3,
+        };
+        let rungs = self.transitions.iter().map(rung).collect();
+        let (ladder, left_out) = Ladder::new(rungs, columns, height);
+
+        let left = MARGIN_PT + left_room(vertical);
+        let labels_left = page.width - MARGIN_PT - labels_width;
+        let ladder_right = labels_left - 11.0;
+        let ladder_left = ladder_right - ladder.width();
+        let right = ladder_left - if ladder.width() > 0.0 { 7.0 } else { 0.0 };
+        let horizontal = Scale { domain: [0.0, self.width_nm], range: [left, right] };
+
+        let below_title = if self.title.is_empty() { 4.0 } else { page.title(&self.title) };
+        let strip = LayerStrip::new(&self.layers, horizontal);
+        strip.draw(&mut page, below_title);
+        let top = below_title + strip.height() + 1.0;
+        let vertical = Scale {
+            domain: vertical.domain,
+            range: vertical.range.map(|y| y + top),
+        };
+        let y_at = |energy_ev: f64| vertical.at(unit.factor * energy_ev);
+        let bottom = top + height;
+
+        let edge: Vec<[f64; 2]> = self
+            .edge
+            .iter()
+            .map(|[z, e]| [horizontal.at(*z), y_at(*e)])
+            .collect();
+        let mut body = edge.clone();
+        body.extend([[right, bottom], [left, bottom]]);
+        page.group("body", |page| page.area(&body, BODY));
+
+        let lines: Vec<Vec<[f64; 2]>> = self
+            .states
+            .iter()
+            .map(|state| {
+                let level = y_at(state.energy_ev);
+                standing_out(&state.density)
+                    .iter()
+                    .map(|[z, value]| [horizontal.at(*z), level - density_scale * value])
+                    .collect()
+            })
+            .collect();
+        page.group("guides", |page| {
+            for (state, line) in self.states.iter().zip(&lines) {
+                let y = y_at(state.energy_ev);
+                let from = line.last().map_or(left, |p| p[0]);
+                let stroke = Stroke { colour: GUIDE, width_pt: 0.4, dash: "0.8 1.6" };
+                page.line([from, y], [ladder_left, y], stroke);
+            }
+        });
+        page.group("edge", |page| page.polyline(&edge, Stroke::solid(INK, 1.1)));
+        page.group("densities", |page| {
+            for (index, line) in lines.iter().enumerate().rev() {
+                page.tinted(line, 0.16, palette::state(index, 0.9));
+            }
+        });
+        page.group("levels", |page| {
+            for (index, (state, line)) in self.states.iter().zip(&lines).enumerate() {
+                let y = y_at(state.energy_ev);
+                if let (Some(first), Some(last)) = (line.first(), line.last()) {
+                    page.line([first[0], y], [last[0], y], Stroke::solid(palette::state(index, 0.5).colour, 0.5));
+                }
+            }
+        });
+        page.group("rungs", |page| {
+            for (index, state) in self.states.iter().enumerate() {
+                let y = y_at(state.energy_ev);
+                page.line([ladder_left, y], [ladder_right, y], palette::state(index, 0.9));
+            }
+        });
+        ladder.draw(&mut page, ladder_left, top, bottom);
+        self.draw_labels(&mut page, &labels, every, [ladder_right, labels_left], [top, bottom], y_at);
+        left_axis(&mut page, vertical, left, &format!("Energy ({})", unit.name));
+        bottom_axis(&mut page, horizontal, bottom, "z (nm)");
+
+        let mut y = bottom + BOTTOM_ROOM;
+        let entries: Vec<key::Entry> = strip
+            .keyed
+            .iter()
+            .map(|number| key::Entry {
+                number: *number,
+                meaning: self.meanings[number - 1].clone(),
+            })
+            .collect();
+        y = key::draw(&mut page, &entries, y);
+        let mut caption = self.caption.clone();
+        if left_out > 0 {
+            caption += &format!(" {left_out} more transitions have no room here.");
+        }
+        y = page.caption(&caption, y + 1.0);
+        let title = if self.title.is_empty() { "Band diagram" } else { &self.title };
+        page.finish(y + 4.0, title, &self.description(unit))
+    }
+
+    fn unit(&self) -> Unit {
+        let [low, high] = self.energies(0.0);
+        if high - low > EV_AXIS_FROM {
+            Unit { name: "eV", factor: 1.0, decimals: 4 }
+        } else {
+            Unit { name: "meV", factor: 1e3, decimals: 1 }
+        }
+    }
+
+    /// The lowest and the highest energy of the picture, with `above_ev` of room above every level.
+    fn energies(&self, above_ev: f64) -> [f64; 2] {
+        let edge = self.edge.iter().map(|p| p[1]);
+        let levels = self.states.iter().map(|state| state.energy_ev + above_ev);
+        edge.chain(levels)
+            .fold([0.0, 1e-3], |[low, high], e| [f64::min(low, e), f64::max(high, e)])
+    }
+
+    /// The height of the highest peak: about the distance of neighbouring levels, within limits.
+    fn peak_pt(&self, height: f64) -> f64 {
+        let [low, high] = self.energies(0.0);
+        let mut gaps: Vec<f64> = self
+            .states
+            .windows(2)
+            .map(|pair| pair[1].energy_ev - pair[0].energy_ev)
+            .collect();
+        gaps.sort_by(f64::total_cmp);
+        let gap_ev = gaps.get(gaps.len() / 2).copied().unwrap_or(high - low);
+        (0.9 * gap_ev / (high - low)).clamp(0.11, 0.22) * height
+    }
+
+    /// The scale of energy from a panel's top at 0, and points per 1/nm of the squared envelopes.
+    fn vertical(&self, height: f64, peak_pt: f64) -> (Scale, f64) {
+        let [low, high] = self.energies(0.0);
+        // A peak on the uppermost level must fit below the top.
+        let above_ev = peak_pt / height * (high - low);
+        let [low, high] = self.energies(1.15 * above_ev);
+        let room = 0.04 * (high - low);
+        let factor = self.unit().factor;
+        let scale = Scale {
+            domain: [factor * (low - room), factor * (high + room)],
+            range: [height, 0.0],
+        };
+        let largest = self
+            .states
+            .iter()
+            .flat_map(|state| &state.density)
+            .fold(0.0, |a: f64, p| a.max(p[1]));
+        (scale, if largest > 0.0 { peak_pt / largest } else { 0.0 })
+    }
+
+    /// The labels at the right, with so many decimals that neighbours differ.
+    fn state_labels(&self, unit: Unit) -> Vec<String> {
+        let narrowest = self
+            .states
+            .windows(2)
+            .map(|pair| unit.factor * (pair[1].energy_ev - pair[0].energy_ev))
+            .fold(f64::INFINITY, f64::min);
+        let decimals = unit.decimals + usize::from(narrowest < 5.0 * 10f64.powi(-(unit.decimals as i32)));
+        self.states
+            .iter()
+            .enumerate()
+            .map(|(index, state)| {
+                format!(
+                    "{}   {:.decimals$} {}{}",
+                    index + 1,
+                    unit.factor * state.energy_ev,
+                    unit.name,
+                    state.mark
+                )
+            })
+            .collect()
+    }
+
+    fn draw_labels(
+        &self,
+        page: &mut Page,
+        labels: &[String],
+        every: usize,
+        [from, to]: [f64; 2],
+        [top, bottom]: [f64; 2],
+        y_at: impl Fn(f64) -> f64,
+    ) {
+        let chosen: Vec<usize> = (0..labels.len()).step_by(every).rev().collect();
+        let wanted: Vec<f64> = chosen.iter().map(|k| y_at(self.states[*k].energy_ev)).collect();
+        let sizes = vec![LABEL_PT * 1.25; chosen.len()];
+        let places = spread(&wanted, &sizes, top, bottom);
+        page.group("energies", |page| {
+            for ((index, y), place) in chosen.iter().zip(&wanted).zip(places) {
+                let leader = [[from, *y], [from + 2.0, *y], [to - 3.5, place], [to - 1.5, place]];
+                page.polyline(&leader, Stroke::solid(palette::state(*index, 0.5).colour, 0.5));
+                let style = Style::new(LABEL_PT, Anchor::Start);
+                page.text([to, place + 0.5 * ASCENT * LABEL_PT], style, &labels[*index]);
+            }
+        });
+    }
+
+    /// The picture in words.
+    fn description(&self, unit: Unit) -> String {
+        let states = self.states.iter().enumerate().map(|(index, state)| {
+            format!("conduction {} at {:.*} {}", index + 1, unit.decimals, unit.factor * state.energy_ev, unit.name)
+        });
+        let transitions = self.transitions.iter().map(|t| {
+            format!(
+                "{} to {}: {} meV, {} µm",
+                t.from + 1,
+                t.to + 1,
+                significant(1e3 * t.energy_ev, 4),
+                significant(t.wavelength_um(), 4)
+            )
+        });
+        let list: Vec<String> = states.chain(transitions).collect();
+        format!("Band edge and squared envelopes along the growth direction. {}.", list.join("; "))
+    }
+}
+
+/// A unit of energy on the axis.
+#[derive(Clone, Copy)]
+struct Unit {
+    name: &'static str,
+    /// Units per eV.
+    factor: f64,
+    decimals: usize,
+}
+
+/// The part of a curve between the places where it first and last rises above its tails.
+fn standing_out(density: &[[f64; 2]]) -> &[[f64; 2]] {
+    let peak = density.iter().fold(0.0, |a: f64, p| a.max(p[1]));
+    let above = |p: &[f64; 2]| p[1] > TAIL * peak;
+    match (density.iter().position(above), density.iter().rposition(above)) {
+        (Some(first), Some(last)) => {
+            &density[first.saturating_sub(1)..(last + 2).min(density.len())]
+        }
+        _ => density,
+    }
+}
+
+/// Pairs of states, the lower first, that the aims name; without aims the strongest transitions.
+fn chosen(structure: &Structure, subbands: &Subbands, shown: usize) -> Vec<Transition> {
+    let mut all = transitions(subbands);
+    all.retain(|t| t.to < shown);
+    if let Some(tune) = &structure.tune {
+        let named = |t: &Transition| {
+            tune.aims.iter().any(|aim| {
+                let pair = [aim.from.index, aim.to.index];
+                pair == [t.from + 1, t.to + 1] || pair == [t.to + 1, t.from + 1]
+            })
+        };
+        all.retain(named);
+        return all;
+    }
+    all.sort_by(|a, b| b.oscillator_strength.total_cmp(&a.oscillator_strength));
+    let strongest = all.first().map_or(0.0, |t| t.oscillator_strength);
+    all.retain(|t| t.oscillator_strength >= WEAKEST * strongest);
+    all.truncate(MOST_TRANSITIONS);
+    all
+}
+
+fn strip_layers(structure: &Structure, stack: &Stack) -> Vec<StripLayer> {
+    let faces = stack.faces_nm();
+    let mut seen = vec![false; structure.entries.len()];
+    stack
+        .layers
+        .iter()
+        .zip(faces.windows(2))
+        .map(|(layer, faces)| StripLayer {
+            bottom_nm: faces[0],
+            top_nm: faces[1],
+            number: layer.entry + 1,
+            name: match &structure.entries[layer.entry].name {
+                Some(name) => plain(name.as_str()),
+                None => material(structure, stack, layer.entry),
+            },
+            first: !std::mem::replace(&mut seen[layer.entry], true),
+        })
+        .collect()
+}
+
+/// What each layer of the file is: its name, material and width.
+fn meanings(structure: &Structure, stack: &Stack) -> Vec<Vec<Run>> {
+    let meaning = |(index, entry): (usize, &crate::structure::LayerEntry)| {
+        let mut runs = Vec::new();
+        if let Some(name) = &entry.name {
+            runs.extend(plain(shortened(name, SMALL_PT, LONGEST_NAME_PT) + ", "));
+        }
+        runs.extend(material(structure, stack, index));
+        if let Some(width_nm) = stack.entry_width_nm(index) {
+            runs.extend(plain(format!(", {} nm", short(width_nm, 4))));
+        }
+        runs
+    };
+    structure.entries.iter().enumerate().map(meaning).collect()
+}
+
+/// The material of a layer of the file; both ends of a grade.
+fn material(structure: &Structure, stack: &Stack, entry: usize) -> Vec<Run> {
+    let written = &structure.entries[entry];
+    let mut runs = match stack.composition(entry) {
+        Some(composition) => formula(&composition.formula()),
+        None => substance(&written.material.value),
+    };
+    if let Some(to) = &written.to {
+        runs.extend(plain(" to "));
+        runs.extend(substance(&to.value));
+    }
+    runs
+}
+
+fn substance(substance: &Substance) -> Vec<Run> {
+    match substance {
+        Substance::Alloy(composition) => formula(&composition.formula()),
+        Substance::Named(name) => plain(shortened(name, SMALL_PT, LONGEST_NAME_PT)),
+        Substance::Family(family) => formula(&family.formula()),
+    }
+}
+
+fn caption(structure: &Structure, stack: &Stack, zero_ev: f64, states: &[DrawnState]) -> String {
+    let mut text = format!(
+        "Conduction band edge (black) and squared envelopes, each on the line of its energy, with equal areas. {} K, field {} kV/cm, {} mass{}. \
+         Energies from the lowest band edge, which is at {} eV in the table of levels.",
+        short(structure.temperature_k, 4),
+        short(1e4 * stack.field_v_per_nm, 4),
+        model_name(structure.conduction.model),
+        match structure.conduction.model {
+            ConductionModel::Parabolic => "",
+            ConductionModel::EnergyDependent => " (sum over all components of a state)",
+        },
+        minus(&format!("{zero_ev:.4}")),
+    );
+    repeats(&structure.sequence, &mut text);
+    for (mark, meaning) in [("†", "held by the walls only, not bound"), ("‡", "can tunnel out at an end")] {
+        if states.iter().any(|state| state.mark == mark) {
+            text += &format!(" {mark} {meaning}.");
+        }
+    }
+    text
+}
+
+/// A sentence for every repeat.
+fn repeats(sequence: &[Item], text: &mut String) {
+    for item in sequence {
+        if let Item::Repeat { count, items } = item {
+            let mut inside = Vec::new();
+            entries(items, &mut inside);
+            if let (Some(first), Some(last)) = (inside.iter().min(), inside.iter().max()) {
+                if first == last {
+                    *text += &format!(" Layer {} stands {count} times.", first + 1);
+                } else {
+                    *text += &format!(" Layers {} to {} stand {count} times.", first + 1, last + 1);
+                }
+            }
+            repeats(items, text);
+        }
+    }
+}
+
+fn entries(items: &[Item], list: &mut Vec<usize>) {
+    for item in items {
+        match item {
+            Item::Layer(entry) => list.push(*entry),
+            Item::Repeat { items, .. } => entries(items, list),
+        }
+    }
+}
