@@ -3,7 +3,7 @@
 use super::deliver::{Exit, check_output, print, write};
 use super::input::Input;
 use crate::models::ConductionOperator;
-use crate::report::svg::{BandDiagram, EDGE_FINENESS, Width};
+use crate::report::svg::{BandDiagram, FINENESS, Width};
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
 
@@ -15,7 +15,7 @@ pub fn plot(file: &Path, width: Width, output: Option<&Path>) -> Result<Exit, Ex
     let states = input.structure.conduction.states;
     let subbands = subbands::solve(&operator, states, Accuracy::default());
     input.doubt(&subbands, states);
-    let curves = subbands::curves(&operator, &subbands, states, EDGE_FINENESS);
+    let curves = subbands::curves(&operator, &subbands, states, FINENESS);
     let diagram = BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
     let picture = diagram.svg(width);
     match output {

@@ -9,7 +9,7 @@ mod state;
 
 pub use audit::Audit;
 pub use change::change;
-pub use curves::{Curves, curves};
+pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{envelope_overlap, layer_envelopes};
 pub use state::{Hold, State};
 

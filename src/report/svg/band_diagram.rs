@@ -14,20 +14,24 @@ use crate::models::model_name;
 use crate::optics::{Transition, transitions};
 use crate::report::table::significant;
 use crate::structure::{ConductionModel, Item, Stack, Structure};
-use crate::subbands::{Curves, Hold, Subbands};
+use crate::subbands::{Curves, Hold, StateCurves, Subbands};
 
-/// What the curves of a diagram are to be sampled with: a thousandth of the highest peak is less than the line's width.
-pub const EDGE_FINENESS: f64 = 1e-3;
+/// How finely the curves of a diagram are to be sampled: well below a line's width.
+pub const FINENESS: f64 = 4e-4;
 /// Transitions that are drawn when the file has no aims.
 const MOST_TRANSITIONS: usize = 4;
 /// Of those, none weaker than this part of the strongest.
 const WEAKEST: f64 = 0.05;
 /// A squared envelope is drawn where it is above this part of its peak.
 const TAIL: f64 = 0.004;
+/// How opaque the area under a squared envelope is.
+const TINT: f64 = 0.18;
 /// A wider range of energy is given in eV.
 const EV_AXIS_FROM: f64 = 2.0;
 /// Names and materials in the key are cut to this.
 const LONGEST_NAME_PT: f64 = 110.0;
+/// Distance of the labels of levels.
+const LABEL_STEP_PT: f64 = 1.25 * LABEL_PT;
 /// Above this many lines the labels of the levels are thinned out.
 const TALLEST_PT: f64 = 560.0;
 
@@ -50,7 +54,7 @@ pub struct BandDiagram {
 struct DrawnState {
     /// Above the zero.
     energy_ev: f64,
-    density: Vec<[f64; 2]>,
+    curves: StateCurves,
     /// A sign that the caption explains.
     mark: &'static str,
 }
@@ -69,11 +73,11 @@ impl BandDiagram {
         let states: Vec<DrawnState> = subbands
             .states()
             .iter()
-            .zip(curves.densities)
+            .zip(curves.states)
             .take(shown)
-            .map(|(state, density)| DrawnState {
+            .map(|(state, curves)| DrawnState {
                 energy_ev: state.from_edge_ev,
-                density,
+                curves,
                 mark: match state.hold {
                     Hold::Bound => "",
                     Hold::Leaky => "‡",
@@ -96,12 +100,11 @@ impl BandDiagram {
     /// The picture.
     pub fn svg(&self, width: Width) -> String {
         let mut page = Page::new(width);
-        let label_step = LABEL_PT * 1.25;
         let wanted_height = match width {
             Width::Column => 165.0_f64,
             Width::Page => 215.0,
         };
-        let labels_height = label_step * self.states.len() as f64;
+        let labels_height = LABEL_STEP_PT * self.states.len() as f64;
         let height = wanted_height.max(labels_height.min(TALLEST_PT));
         let every = (labels_height / height).ceil().max(1.0) as usize;
 
@@ -111,7 +114,6 @@ impl BandDiagram {
         let y_at = |energy_ev: f64| vertical.at(unit.factor * energy_ev);
 
         let labels = self.state_labels(unit);
-        let labels_width = labels.iter().map(|l| width_pt(l, LABEL_PT)).fold(0.0, f64::max);
         let rung = |t: &Transition| Rung {
             upper_y: y_at(self.states[t.to].energy_ev),
             lower_y: y_at(self.states[t.from].energy_ev),
@@ -128,13 +130,20 @@ impl BandDiagram {
         let (ladder, left_out) = Ladder::new(rungs, columns, height);
 
         let left = MARGIN_PT + left_room(vertical);
-        let labels_left = page.width - MARGIN_PT - labels_width;
+        let labels_left = page.width - MARGIN_PT - labels.width();
         let ladder_right = labels_left - 11.0;
         let ladder_left = ladder_right - ladder.width();
         let right = ladder_left - if ladder.width() > 0.0 { 7.0 } else { 0.0 };
-        let horizontal = Scale { domain: [0.0, self.width_nm], range: [left, right] };
+        let horizontal = Scale {
+            domain: [0.0, self.width_nm],
+            range: [left, right],
+        };
 
-        let below_title = if self.title.is_empty() { 4.0 } else { page.title(&self.title) };
+        let below_title = if self.title.is_empty() {
+            4.0
+        } else {
+            page.title(&self.title)
+        };
         let strip = LayerStrip::new(&self.layers, horizontal);
         strip.draw(&mut page, below_title);
         let top = below_title + strip.height() + 1.0;
@@ -154,48 +163,81 @@ impl BandDiagram {
         body.extend([[right, bottom], [left, bottom]]);
         page.group("body", |page| page.area(&body, BODY));
 
+        let drawn = |energy_ev: f64, curve: &[[f64; 2]]| -> Vec<[f64; 2]> {
+            let level = y_at(energy_ev);
+            standing_out(curve)
+                .iter()
+                .map(|[z, value]| [horizontal.at(*z), level - density_scale * value])
+                .collect()
+        };
         let lines: Vec<Vec<[f64; 2]>> = self
             .states
             .iter()
-            .map(|state| {
-                let level = y_at(state.energy_ev);
-                standing_out(&state.density)
-                    .iter()
-                    .map(|[z, value]| [horizontal.at(*z), level - density_scale * value])
-                    .collect()
-            })
+            .map(|state| drawn(state.energy_ev, state.curves.whole()))
             .collect();
         page.group("guides", |page| {
             for (state, line) in self.states.iter().zip(&lines) {
                 let y = y_at(state.energy_ev);
                 let from = line.last().map_or(left, |p| p[0]);
-                let stroke = Stroke { colour: GUIDE, width_pt: 0.4, dash: "0.8 1.6" };
+                let stroke = Stroke {
+                    colour: GUIDE,
+                    width_pt: 0.4,
+                    dash: "0.8 1.6",
+                };
                 page.line([from, y], [ladder_left, y], stroke);
             }
         });
         page.group("edge", |page| page.polyline(&edge, Stroke::solid(INK, 1.1)));
         page.group("densities", |page| {
-            for (index, line) in lines.iter().enumerate().rev() {
-                page.tinted(line, 0.16, palette::state(index, 0.9));
+            for (index, (state, whole)) in self.states.iter().zip(&lines).enumerate().rev() {
+                let stroke = palette::state(index, 0.9);
+                match &state.curves.sum {
+                    Some(_) => {
+                        page.tinted(whole, TINT, Stroke::solid(stroke.colour, 0.25));
+                        page.polyline(&drawn(state.energy_ev, &state.curves.envelope), stroke);
+                    }
+                    None => page.tinted(whole, TINT, stroke),
+                }
             }
         });
         page.group("levels", |page| {
             for (index, (state, line)) in self.states.iter().zip(&lines).enumerate() {
                 let y = y_at(state.energy_ev);
                 if let (Some(first), Some(last)) = (line.first(), line.last()) {
-                    page.line([first[0], y], [last[0], y], Stroke::solid(palette::state(index, 0.5).colour, 0.5));
+                    page.line(
+                        [first[0], y],
+                        [last[0], y],
+                        Stroke::solid(palette::state(index, 0.5).colour, 0.5),
+                    );
                 }
             }
         });
         page.group("rungs", |page| {
             for (index, state) in self.states.iter().enumerate() {
                 let y = y_at(state.energy_ev);
-                page.line([ladder_left, y], [ladder_right, y], palette::state(index, 0.9));
+                page.line(
+                    [ladder_left, y],
+                    [ladder_right, y],
+                    palette::state(index, 0.9),
+                );
             }
         });
         ladder.draw(&mut page, ladder_left, top, bottom);
-        self.draw_labels(&mut page, &labels, every, [ladder_right, labels_left], [top, bottom], y_at);
-        left_axis(&mut page, vertical, left, &format!("Energy ({})", unit.name));
+        self.draw_labels(
+            &mut page,
+            &labels,
+            unit,
+            every,
+            [ladder_right, labels_left],
+            [top, bottom],
+            y_at,
+        );
+        left_axis(
+            &mut page,
+            vertical,
+            left,
+            &format!("Energy ({})", unit.name),
+        );
         bottom_axis(&mut page, horizontal, bottom, "z (nm)");
 
         let mut y = bottom + BOTTOM_ROOM;
@@ -213,16 +255,28 @@ impl BandDiagram {
             caption += &format!(" {left_out} more transitions have no room here.");
         }
         y = page.caption(&caption, y + 1.0);
-        let title = if self.title.is_empty() { "Band diagram" } else { &self.title };
+        let title = if self.title.is_empty() {
+            "Band diagram"
+        } else {
+            &self.title
+        };
         page.finish(y + 4.0, title, &self.description(unit))
     }
 
     fn unit(&self) -> Unit {
         let [low, high] = self.energies(0.0);
         if high - low > EV_AXIS_FROM {
-            Unit { name: "eV", factor: 1.0, decimals: 4 }
+            Unit {
+                name: "eV",
+                factor: 1.0,
+                decimals: 4,
+            }
         } else {
-            Unit { name: "meV", factor: 1e3, decimals: 1 }
+            Unit {
+                name: "meV",
+                factor: 1e3,
+                decimals: 1,
+            }
         }
     }
 
@@ -230,8 +284,9 @@ impl BandDiagram {
     fn energies(&self, above_ev: f64) -> [f64; 2] {
         let edge = self.edge.iter().map(|p| p[1]);
         let levels = self.states.iter().map(|state| state.energy_ev + above_ev);
-        edge.chain(levels)
-            .fold([0.0, 1e-3], |[low, high], e| [f64::min(low, e), f64::max(high, e)])
+        edge.chain(levels).fold([0.0, 1e-3], |[low, high], e| {
+            [f64::min(low, e), f64::max(high, e)]
+        })
     }
 
     /// The height of the highest peak: about the distance of neighbouring levels, within limits.
@@ -262,53 +317,80 @@ impl BandDiagram {
         let largest = self
             .states
             .iter()
-            .flat_map(|state| &state.density)
+            .flat_map(|state| state.curves.whole())
             .fold(0.0, |a: f64, p| a.max(p[1]));
-        (scale, if largest > 0.0 { peak_pt / largest } else { 0.0 })
+        (
+            scale,
+            if largest > 0.0 {
+                peak_pt / largest
+            } else {
+                0.0
+            },
+        )
     }
 
     /// The labels at the right, with so many decimals that neighbours differ.
-    fn state_labels(&self, unit: Unit) -> Vec<String> {
+    fn state_labels(&self, unit: Unit) -> StateLabels {
         let narrowest = self
             .states
             .windows(2)
             .map(|pair| unit.factor * (pair[1].energy_ev - pair[0].energy_ev))
             .fold(f64::INFINITY, f64::min);
-        let decimals = unit.decimals + usize::from(narrowest < 5.0 * 10f64.powi(-(unit.decimals as i32)));
-        self.states
-            .iter()
-            .enumerate()
-            .map(|(index, state)| {
-                format!(
-                    "{}   {:.decimals$} {}{}",
-                    index + 1,
-                    unit.factor * state.energy_ev,
-                    unit.name,
-                    state.mark
-                )
-            })
-            .collect()
+        let last_digit = 10f64.powi(-(unit.decimals as i32));
+        let decimals = unit.decimals + usize::from(narrowest < 5.0 * last_digit);
+        let energy = |state: &DrawnState| format!("{:.decimals$}", unit.factor * state.energy_ev);
+        StateLabels {
+            numbers: (1..=self.states.len()).map(|n| n.to_string()).collect(),
+            energies: self.states.iter().map(energy).collect(),
+            marks: self.states.iter().map(|state| state.mark).collect(),
+        }
     }
 
     fn draw_labels(
         &self,
         page: &mut Page,
-        labels: &[String],
+        labels: &StateLabels,
+        unit: Unit,
         every: usize,
         [from, to]: [f64; 2],
         [top, bottom]: [f64; 2],
         y_at: impl Fn(f64) -> f64,
     ) {
-        let chosen: Vec<usize> = (0..labels.len()).step_by(every).rev().collect();
-        let wanted: Vec<f64> = chosen.iter().map(|k| y_at(self.states[*k].energy_ev)).collect();
-        let sizes = vec![LABEL_PT * 1.25; chosen.len()];
+        let chosen: Vec<usize> = (0..self.states.len()).step_by(every).rev().collect();
+        let wanted: Vec<f64> = chosen
+            .iter()
+            .map(|k| y_at(self.states[*k].energy_ev))
+            .collect();
+        let sizes = vec![LABEL_STEP_PT; chosen.len()];
         let places = spread(&wanted, &sizes, top, bottom);
+        let numbers_right = to + StateLabels::widest(&labels.numbers);
+        let energies_right =
+            numbers_right + StateLabels::GAP_PT + StateLabels::widest(&labels.energies);
+        let number = Style {
+            bold: true,
+            ..Style::new(LABEL_PT, Anchor::End)
+        };
+        let energy = Style::new(LABEL_PT, Anchor::End);
+        let mark = Style::new(LABEL_PT, Anchor::Start);
         page.group("energies", |page| {
-            for ((index, y), place) in chosen.iter().zip(&wanted).zip(places) {
-                let leader = [[from, *y], [from + 2.0, *y], [to - 3.5, place], [to - 1.5, place]];
-                page.polyline(&leader, Stroke::solid(palette::state(*index, 0.5).colour, 0.5));
-                let style = Style::new(LABEL_PT, Anchor::Start);
-                page.text([to, place + 0.5 * ASCENT * LABEL_PT], style, &labels[*index]);
+            page.text([energies_right, top - 3.0], energy, unit.name);
+            for ((&index, y), place) in chosen.iter().zip(&wanted).zip(places) {
+                let leader = [
+                    [from, *y],
+                    [from + 2.0, *y],
+                    [to - 3.0, place],
+                    [to - 1.0, place],
+                ];
+                page.polyline(
+                    &leader,
+                    Stroke::solid(palette::state(index, 0.5).colour, 0.5),
+                );
+                let line = place + 0.5 * ASCENT * LABEL_PT;
+                page.text([numbers_right, line], number, &labels.numbers[index]);
+                page.text([energies_right, line], energy, &labels.energies[index]);
+                if !labels.marks[index].is_empty() {
+                    page.text([energies_right + 0.5, line], mark, labels.marks[index]);
+                }
             }
         });
     }
@@ -316,7 +398,13 @@ impl BandDiagram {
     /// The picture in words.
     fn description(&self, unit: Unit) -> String {
         let states = self.states.iter().enumerate().map(|(index, state)| {
-            format!("conduction {} at {:.*} {}", index + 1, unit.decimals, unit.factor * state.energy_ev, unit.name)
+            format!(
+                "conduction {} at {:.*} {}",
+                index + 1,
+                unit.decimals,
+                unit.factor * state.energy_ev,
+                unit.name
+            )
         });
         let transitions = self.transitions.iter().map(|t| {
             format!(
@@ -328,7 +416,36 @@ impl BandDiagram {
             )
         });
         let list: Vec<String> = states.chain(transitions).collect();
-        format!("Band edge and squared envelopes along the growth direction. {}.", list.join("; "))
+        format!(
+            "Band edge and squared envelopes along the growth direction. {}.",
+            list.join("; ")
+        )
+    }
+}
+
+/// The texts at the right of a diagram.
+struct StateLabels {
+    numbers: Vec<String>,
+    energies: Vec<String>,
+    marks: Vec<&'static str>,
+}
+
+impl StateLabels {
+    const GAP_PT: f64 = 5.0;
+
+    fn widest(texts: &[String]) -> f64 {
+        texts
+            .iter()
+            .map(|text| width_pt(text, LABEL_PT))
+            .fold(0.0, f64::max)
+    }
+
+    fn width(&self) -> f64 {
+        let marks = self.marks.iter().map(|mark| width_pt(mark, LABEL_PT));
+        Self::widest(&self.numbers)
+            + Self::GAP_PT
+            + Self::widest(&self.energies)
+            + marks.fold(0.0, f64::max)
     }
 }
 
@@ -345,7 +462,10 @@ struct Unit {
 fn standing_out(density: &[[f64; 2]]) -> &[[f64; 2]] {
     let peak = density.iter().fold(0.0, |a: f64, p| a.max(p[1]));
     let above = |p: &[f64; 2]| p[1] > TAIL * peak;
-    match (density.iter().position(above), density.iter().rposition(above)) {
+    match (
+        density.iter().position(above),
+        density.iter().rposition(above),
+    ) {
         (Some(first), Some(last)) => {
             &density[first.saturating_sub(1)..(last + 2).min(density.len())]
         }
@@ -434,19 +554,24 @@ fn substance(substance: &Substance) -> Vec<Run> {
 
 fn caption(structure: &Structure, stack: &Stack, zero_ev: f64, states: &[DrawnState]) -> String {
     let mut text = format!(
-        "Conduction band edge (black) and squared envelopes, each on the line of its energy, with equal areas. {} K, field {} kV/cm, {} mass{}. \
-         Energies from the lowest band edge, which is at {} eV in the table of levels.",
+        "Black: conduction band edge. Lines: squared envelopes, each standing on its energy{}. \
+         {} K, field {} kV/cm, {} mass. The zero is the lowest band edge, {} eV in the table of levels.",
+        match structure.conduction.model {
+            ConductionModel::Parabolic => ", all of the same area",
+            ConductionModel::EnergyDependent => {
+                "; shaded: the sum over all components of the state, of the same area for all"
+            }
+        },
         short(structure.temperature_k, 4),
         short(1e4 * stack.field_v_per_nm, 4),
         model_name(structure.conduction.model),
-        match structure.conduction.model {
-            ConductionModel::Parabolic => "",
-            ConductionModel::EnergyDependent => " (sum over all components of a state)",
-        },
         minus(&format!("{zero_ev:.4}")),
     );
     repeats(&structure.sequence, &mut text);
-    for (mark, meaning) in [("†", "held by the walls only, not bound"), ("‡", "can tunnel out at an end")] {
+    for (mark, meaning) in [
+        ("†", "held by the walls only, not bound"),
+        ("‡", "can tunnel out at an end"),
+    ] {
         if states.iter().any(|state| state.mark == mark) {
             text += &format!(" {mark} {meaning}.");
         }

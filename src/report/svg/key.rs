@@ -35,7 +35,11 @@ pub(super) fn draw(page: &mut Page, entries: &[Entry], top: f64) -> f64 {
         for (k, entry) in shown.iter().enumerate() {
             let x = MARGIN_PT + (k / rows) as f64 * (room + GAP_PT) / columns as f64;
             let y = top + line * (1 + k % rows) as f64;
-            let number = Style { anchor: Anchor::End, bold: true, ..style };
+            let number = Style {
+                anchor: Anchor::End,
+                bold: true,
+                ..style
+            };
             page.text([x + indent - 4.0, y], number, &entry.number.to_string());
             page.runs([x + indent, y], style, &entry.meaning);
         }
@@ -43,8 +47,11 @@ pub(super) fn draw(page: &mut Page, entries: &[Entry], top: f64) -> f64 {
     let mut bottom = top + line * rows as f64;
     if shown.len() < entries.len() {
         bottom += line;
-        let rest = format!("and {} more layers, as in the structure file", entries.len() - shown.len());
+        let rest = format!(
+            "and {} more layers, as in the structure file",
+            entries.len() - shown.len()
+        );
         page.runs([MARGIN_PT + indent, bottom], style, &plain(rest));
     }
-    bottom + 2.0
+    bottom + 4.0
 }

@@ -23,6 +23,16 @@ pub(super) struct Rung {
 }
 
 impl Rung {
+    /// Both lines where they fit between the levels, else the first.
+    fn lines(&self) -> &[String] {
+        let fits = self.lower_y - self.upper_y > LABEL_HEIGHT_PT;
+        &self.lines[..if fits { 2 } else { 1 }]
+    }
+
+    fn label_height(&self) -> f64 {
+        LINE_PT * self.lines().len() as f64 + 1.0
+    }
+
     fn middle(&self) -> f64 {
         0.5 * (self.upper_y + self.lower_y)
     }
@@ -36,9 +46,7 @@ pub(super) struct Ladder {
 impl Ladder {
     /// Sorts transitions into columns; gives back with the ladder how many had no room in `most` columns.
     pub fn new(mut rungs: Vec<Rung>, most: usize, height: f64) -> (Ladder, usize) {
-        rungs.sort_by(|a, b| {
-            a.middle().total_cmp(&b.middle())
-        });
+        rungs.sort_by(|a, b| a.middle().total_cmp(&b.middle()));
         let mut columns: Vec<Vec<Rung>> = Vec::new();
         let mut left_out = 0;
         for rung in rungs {
@@ -46,8 +54,7 @@ impl Ladder {
                 let apart = |other: &Rung| {
                     other.lower_y <= rung.upper_y + 0.01 || rung.lower_y <= other.upper_y + 0.01
                 };
-                column.iter().all(apart)
-                    && (column.len() + 1) as f64 * LABEL_HEIGHT_PT <= height
+                column.iter().all(apart) && (column.len() + 1) as f64 * LABEL_HEIGHT_PT <= height
             };
             match columns.iter().position(free) {
                 Some(place) => columns[place].push(rung),
@@ -59,34 +66,54 @@ impl Ladder {
     }
 
     fn column_width(column: &[Rung]) -> f64 {
-        let lines = column.iter().flat_map(|rung| &rung.lines);
-        let widest = lines.map(|line| text_width(line, SMALL_PT)).fold(0.0, f64::max);
+        let lines = column.iter().flat_map(Rung::lines);
+        let widest = lines
+            .map(|line| text_width(line, SMALL_PT))
+            .fold(0.0, f64::max);
         ARROW_PT + LABEL_PT + widest + GAP_PT
     }
 
     pub fn width(&self) -> f64 {
-        self.columns.iter().map(|column| Self::column_width(column)).sum()
+        self.columns
+            .iter()
+            .map(|column| Self::column_width(column))
+            .sum()
     }
 
-    /// Draws the arrows from `left` on, with the labels kept between `top` and `bottom`.
+    /// Draws the arrows from `left` on, with `top` at y = 0 of the rungs and the labels kept above `bottom`.
     pub fn draw(&self, page: &mut Page, left: f64, top: f64, bottom: f64) {
         let mut x = left;
         page.group("transitions", |page| {
             for column in &self.columns {
+                let lowered = |rung: &Rung| Rung {
+                    upper_y: rung.upper_y + top,
+                    lower_y: rung.lower_y + top,
+                    lines: rung.lines.clone(),
+                };
+                let rungs: Vec<Rung> = column.iter().map(lowered).collect();
                 let arrow = x + ARROW_PT;
-                let wanted: Vec<f64> = column.iter().map(Rung::middle).collect();
-                let places = spread(&wanted, &vec![LABEL_HEIGHT_PT; column.len()], top, bottom);
-                for (rung, place) in column.iter().zip(places) {
+                let wanted: Vec<f64> = rungs.iter().map(Rung::middle).collect();
+                let sizes: Vec<f64> = rungs.iter().map(Rung::label_height).collect();
+                let places = spread(&wanted, &sizes, top, bottom);
+                for (rung, place) in rungs.iter().zip(places) {
                     draw_arrow(page, arrow, rung);
                     let label = arrow + LABEL_PT;
-                    if (place - rung.middle()).abs() > 0.3 * LABEL_HEIGHT_PT {
+                    if (place - rung.middle()).abs() > 0.5 * LINE_PT {
                         let guide = Stroke::solid(GUIDE, 0.4);
                         page.line([arrow + 1.0, rung.middle()], [label - 0.5, place], guide);
                     }
-                    let style = Style { halo: true, ..Style::new(SMALL_PT, Anchor::Start) };
-                    let first = place - 0.5 * LINE_PT + 0.5 * ASCENT * SMALL_PT;
-                    page.text([label, first], Style { bold: true, ..style }, &rung.lines[0]);
-                    page.text([label, first + LINE_PT], style, &rung.lines[1]);
+                    let style = Style {
+                        halo: true,
+                        ..Style::new(SMALL_PT, Anchor::Start)
+                    };
+                    let lines = rung.lines();
+                    let mut line =
+                        place - 0.5 * LINE_PT * (lines.len() - 1) as f64 + 0.5 * ASCENT * SMALL_PT;
+                    for (k, text) in lines.iter().enumerate() {
+                        let bold = k == 0;
+                        page.text([label, line], Style { bold, ..style }, text);
+                        line += LINE_PT;
+                    }
                 }
                 x += Self::column_width(column);
             }

@@ -8,7 +8,7 @@ use super::text::{Run, runs_width_pt, width_pt};
 use std::collections::BTreeSet;
 
 const ROW_PT: f64 = 11.0;
-const LEADER_PT: f64 = 8.0;
+const LEADER_PT: f64 = 5.0;
 const NUMBER_ROW_PT: f64 = 9.0;
 /// Room beside a text in the strip.
 const SIDE_PT: f64 = 1.5;
@@ -44,7 +44,11 @@ impl LayerStrip {
     pub fn new(layers: &[StripLayer], scale: Scale) -> LayerStrip {
         let mut strip = LayerStrip {
             scale,
-            faces: layers.iter().skip(1).map(|l| scale.at(l.bottom_nm)).collect(),
+            faces: layers
+                .iter()
+                .skip(1)
+                .map(|l| scale.at(l.bottom_nm))
+                .collect(),
             in_place: Vec::new(),
             led: Vec::new(),
             numbers: Vec::new(),
@@ -113,7 +117,7 @@ impl LayerStrip {
                         [*place, text_top],
                         [*place, text_top + 1.5],
                         [*middle, row],
-                        [*middle, row + 3.0],
+                        [*middle, row + ROW_PT - 4.0],
                     ],
                     guide,
                 );
@@ -132,7 +136,14 @@ impl LayerStrip {
             }
             for (middle, runs) in &self.in_place {
                 let y = bottom - 0.5 * ROW_PT + 0.5 * ASCENT * SMALL_PT;
-                page.runs([*middle, y], Style { colour: INK, ..style }, runs);
+                page.runs(
+                    [*middle, y],
+                    Style {
+                        colour: INK,
+                        ..style
+                    },
+                    runs,
+                );
             }
         });
     }

@@ -15,7 +15,7 @@ pub mod palette;
 mod spread;
 mod text;
 
-pub use band_diagram::{BandDiagram, EDGE_FINENESS};
+pub use band_diagram::{BandDiagram, FINENESS};
 pub use bars::{SensitivityBar, SensitivityBars};
 pub use histogram::{Gaussian, Window, YieldHistogram};
 pub use text::width_pt as text_width_pt;

@@ -135,7 +135,7 @@ pub(super) fn plain(text: impl Into<String>) -> Vec<Run> {
     }]
 }
 
-/// A chemical formula with its amounts as indices.
+/// A chemical formula with its amounts as indices, to three decimals.
 pub(super) fn formula(formula: &str) -> Vec<Run> {
     let mut runs: Vec<Run> = Vec::new();
     for c in formula.chars() {
@@ -146,6 +146,11 @@ pub(super) fn formula(formula: &str) -> Vec<Run> {
                 text: c.to_string(),
                 index,
             }),
+        }
+    }
+    for run in &mut runs {
+        if let (true, Ok(amount)) = (run.index && run.text.len() > 5, run.text.parse::<f64>()) {
+            run.text = format!("{amount:.3}");
         }
     }
     runs
