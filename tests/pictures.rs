@@ -503,7 +503,8 @@ fn histogram() -> YieldHistogram {
         .collect();
     YieldHistogram {
         title: "Detector well for 8.6 µm: wafers to expect".to_owned(),
-        axis: "Wavelength (µm)".to_owned(),
+        quantity: "Wavelength".to_owned(),
+        unit: "µm".to_owned(),
         caption: "10 000 sampled wafers, seed 1.".to_owned(),
         borders,
         counts,
@@ -536,32 +537,14 @@ fn bars_reach_their_values() {
         assert_eq!(areas.len(), expected.len());
         let per_point = (value(1.0) - value(0.0)).abs();
         for (path, expected) in areas.iter().zip(expected) {
-            // M x y l dx 0 ...: from zero to the value.
-            let numbers: Vec<f64> = path
-                .trim_start_matches('M')
-                .replace('l', " ")
-                .replace('-', " -")
-                .split_whitespace()
-                .take(3)
-                .map(|v| v.parse().unwrap())
-                .collect();
-            let length = if path.contains(&format!("l{}", numbers[2]))
-                || path.contains(&format!("l-{}", -numbers[2]))
-                || numbers[2].abs() < 1.0
-            {
-                numbers[2]
-            } else {
-                panic!("{path}")
-            };
-            assert!(
-                (value(numbers[0])).abs() <= 0.02 * per_point,
-                "starts at zero"
-            );
-            let drawn = if (expected / per_point).abs() < 0.005 {
-                0.0
-            } else {
-                length * per_point
-            };
+            // M x y l dx dy ...: from zero to the value, then down; a bar of no width begins downwards.
+            let (start, steps) = path[1..].split_once('l').unwrap();
+            let start: f64 = start.split(' ').next().unwrap().parse().unwrap();
+            let steps = steps.replace('-', " -");
+            let mut step = steps.split_whitespace().map(|v| v.parse::<f64>().unwrap());
+            let (dx, dy) = (step.next().unwrap(), step.next().unwrap());
+            assert!(value(start).abs() <= 0.02 * per_point, "starts at zero");
+            let drawn = if dy == 0.0 { dx * per_point } else { 0.0 };
             assert!(
                 (drawn - expected).abs() <= 0.03 * per_point,
                 "{drawn} drawn for {expected}"
@@ -628,4 +611,49 @@ fn a_histogram_shows_what_it_was_given() {
         ..histogram()
     };
     assert_tidy("empty", &empty.svg(Width::Page));
+}
+#[test]
+fn zz_dump() {
+    for w in WIDTHS {
+        std::fs::write(format!("/tmp/plotview/y-bars-{w:?}.svg"), bars().svg(w)).unwrap();
+        std::fs::write(
+            format!("/tmp/plotview/y-hist-{w:?}.svg"),
+            histogram().svg(w),
+        )
+        .unwrap();
+    }
+}
+
+fn run(arguments: &[&std::ffi::OsStr]) -> std::process::Output {
+    let mut command = assert_cmd::Command::cargo_bin("wellwright").unwrap();
+    command.arg("plot").args(arguments).output().unwrap()
+}
+
+#[test]
+fn the_command_prints_or_writes_the_picture() {
+    let folder = tempfile::tempdir().unwrap();
+    let (input, output) = (folder.path().join("in.yaml"), folder.path().join("out.svg"));
+    std::fs::write(&input, SHIPPED[2]).unwrap();
+    let expected = diagram(&solved(SHIPPED[2]));
+    let printed = run(&[input.as_ref()]);
+    assert_eq!(printed.status.code(), Some(0));
+    assert_eq!(
+        String::from_utf8(printed.stdout).unwrap(),
+        expected.svg(Width::Page)
+    );
+    let written = run(&[
+        input.as_ref(),
+        "--width".as_ref(),
+        "column".as_ref(),
+        "-o".as_ref(),
+        output.as_ref(),
+    ]);
+    assert_eq!(written.status.code(), Some(0));
+    assert_eq!(
+        std::fs::read_to_string(&output).unwrap(),
+        expected.svg(Width::Column)
+    );
+    let refused = run(&[input.as_ref(), "-o".as_ref(), input.as_ref()]);
+    assert_eq!(refused.status.code(), Some(2));
+    assert_eq!(std::fs::read_to_string(&input).unwrap(), SHIPPED[2]);
 }

@@ -105,17 +105,7 @@ pub(super) const BOTTOM_ROOM: f64 = TICK_PT + 2.0 * LABEL_PT * 1.3 + 3.0;
 
 /// A horizontal axis below a panel.
 pub(super) fn bottom_axis(page: &mut Page, scale: Scale, y: f64, name: &str) {
-    let mut ticks = scale.ticks(34.0);
-    let widest = |ticks: &Ticks| {
-        let widths = ticks
-            .values
-            .iter()
-            .map(|v| width_pt(&ticks.label(*v), LABEL_PT));
-        widths.fold(0.0, f64::max)
-    };
-    if widest(&ticks) > 28.0 {
-        ticks = scale.ticks(1.3 * widest(&ticks) + 6.0);
-    }
+    let ticks = roomy_ticks(scale);
     page.group("axis-x", |page| {
         page.line([scale.range[0], y], [scale.range[1], y], AXIS);
         for &value in &ticks.values {
@@ -134,6 +124,24 @@ pub(super) fn bottom_axis(page: &mut Page, scale: Scale, y: f64, name: &str) {
             name,
         );
     });
+}
+
+/// Ticks whose numbers have room beside one another; on a short axis nearer ones, so that there are at least two.
+fn roomy_ticks(scale: Scale) -> Ticks {
+    let has_room = |ticks: &Ticks| {
+        let widest = ticks
+            .values
+            .iter()
+            .map(|v| width_pt(&ticks.label(*v), LABEL_PT))
+            .fold(0.0, f64::max);
+        ticks.values.len() >= 2
+            && scale.at(ticks.values[1]) - scale.at(ticks.values[0]) >= widest + 2.0
+    };
+    [34.0, 24.0, 17.0, 12.0, 48.0, 68.0]
+        .into_iter()
+        .map(|spacing| scale.ticks(spacing))
+        .find(has_room)
+        .unwrap_or_else(|| scale.ticks(100.0))
 }
 
 #[cfg(test)]

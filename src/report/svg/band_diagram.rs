@@ -11,6 +11,7 @@ use super::spread::spread;
 use super::text::{Run, formula, minus, plain, short, shortened, width_pt};
 use crate::materials::Substance;
 use crate::models::model_name;
+use crate::numerics::polyline::simplified;
 use crate::optics::{Transition, transitions};
 use crate::report::table::significant;
 use crate::structure::{ConductionModel, Item, Stack, Structure};
@@ -24,12 +25,24 @@ const MOST_TRANSITIONS: usize = 4;
 const WEAKEST: f64 = 0.05;
 /// A squared envelope is drawn where it is above this part of its peak.
 const TAIL: f64 = 0.004;
+/// A deviation of a line that is not seen.
+const INVISIBLE_PT: f64 = 0.03;
 /// How opaque the area under a squared envelope is.
 const TINT: f64 = 0.18;
 /// A wider range of energy is given in eV.
 const EV_AXIS_FROM: f64 = 2.0;
 /// Names and materials in the key are cut to this.
 const LONGEST_NAME_PT: f64 = 110.0;
+/// Decimals that may be added so that the energies of neighbours differ.
+const MORE_DECIMALS: usize = 3;
+/// From a level to where it ends at its label.
+const LEADER_PT: f64 = 11.0;
+/// From an envelope to the level's label.
+const DOTTED: Stroke = Stroke {
+    colour: GUIDE,
+    width_pt: 0.4,
+    dash: "0.8 1.6",
+};
 /// Distance of the labels of levels.
 const LABEL_STEP_PT: f64 = 1.25 * LABEL_PT;
 /// Above this many lines the labels of the levels are thinned out.
@@ -100,147 +113,53 @@ impl BandDiagram {
     /// The picture.
     pub fn svg(&self, width: Width) -> String {
         let mut page = Page::new(width);
-        let wanted_height = match width {
-            Width::Column => 165.0_f64,
-            Width::Page => 215.0,
+        let (least_height, columns) = match width {
+            Width::Column => (165.0_f64, 2),
+            Width::Page => (215.0, 3),
         };
         let labels_height = LABEL_STEP_PT * self.states.len() as f64;
-        let height = wanted_height.max(labels_height.min(TALLEST_PT));
-        let every = (labels_height / height).ceil().max(1.0) as usize;
-
+        let height = least_height.max(labels_height.min(TALLEST_PT));
         let unit = self.unit();
-        let peak_pt = self.peak_pt(height);
-        let (vertical, density_scale) = self.vertical(height, peak_pt);
-        let y_at = |energy_ev: f64| vertical.at(unit.factor * energy_ev);
-
+        let (vertical, pt_per_density) = self.vertical(height);
+        let mut panel = Panel {
+            horizontal: Scale {
+                domain: [0.0, self.width_nm],
+                range: [0.0, 1.0],
+            },
+            vertical,
+            unit,
+            pt_per_density,
+        };
         let labels = self.state_labels(unit);
-        let rung = |t: &Transition| Rung {
-            upper_y: y_at(self.states[t.to].energy_ev),
-            lower_y: y_at(self.states[t.from].energy_ev),
-            lines: [
-                format!("{} µm", significant(t.wavelength_um(), 4)),
-                format!("{} meV", significant(1e3 * t.energy_ev, 4)),
-            ],
-        };
-        let columns = match width {
-            Width::Column => 2,
-            Width::Page => 3,
-        };
-        let rungs = self.transitions.iter().map(rung).collect();
-        let (ladder, left_out) = Ladder::new(rungs, columns, height);
+        let rungs = self.transitions.iter().map(|t| self.rung(t, &panel));
+        let (ladder, left_out) = Ladder::new(rungs.collect(), columns, height);
 
         let left = MARGIN_PT + left_room(vertical);
         let labels_left = page.width - MARGIN_PT - labels.width();
-        let ladder_right = labels_left - 11.0;
+        let ladder_right = labels_left - LEADER_PT;
         let ladder_left = ladder_right - ladder.width();
         let right = ladder_left - if ladder.width() > 0.0 { 7.0 } else { 0.0 };
-        let horizontal = Scale {
-            domain: [0.0, self.width_nm],
-            range: [left, right],
-        };
+        panel.horizontal.range = [left, right];
 
         let below_title = if self.title.is_empty() {
             4.0
         } else {
             page.title(&self.title)
         };
-        let strip = LayerStrip::new(&self.layers, horizontal);
+        let strip = LayerStrip::new(&self.layers, panel.horizontal);
         strip.draw(&mut page, below_title);
         let top = below_title + strip.height() + 1.0;
-        let vertical = Scale {
-            domain: vertical.domain,
-            range: vertical.range.map(|y| y + top),
-        };
-        let y_at = |energy_ev: f64| vertical.at(unit.factor * energy_ev);
         let bottom = top + height;
+        panel.vertical.range = vertical.range.map(|y| y + top);
 
-        let edge: Vec<[f64; 2]> = self
-            .edge
-            .iter()
-            .map(|[z, e]| [horizontal.at(*z), y_at(*e)])
-            .collect();
-        let mut body = edge.clone();
-        body.extend([[right, bottom], [left, bottom]]);
-        page.group("body", |page| page.area(&body, BODY));
-
-        let drawn = |energy_ev: f64, curve: &[[f64; 2]]| -> Vec<[f64; 2]> {
-            let level = y_at(energy_ev);
-            standing_out(curve)
-                .iter()
-                .map(|[z, value]| [horizontal.at(*z), level - density_scale * value])
-                .collect()
-        };
-        let lines: Vec<Vec<[f64; 2]>> = self
-            .states
-            .iter()
-            .map(|state| drawn(state.energy_ev, state.curves.whole()))
-            .collect();
-        page.group("guides", |page| {
-            for (state, line) in self.states.iter().zip(&lines) {
-                let y = y_at(state.energy_ev);
-                let from = line.last().map_or(left, |p| p[0]);
-                let stroke = Stroke {
-                    colour: GUIDE,
-                    width_pt: 0.4,
-                    dash: "0.8 1.6",
-                };
-                page.line([from, y], [ladder_left, y], stroke);
-            }
-        });
-        page.group("edge", |page| page.polyline(&edge, Stroke::solid(INK, 1.1)));
-        page.group("densities", |page| {
-            for (index, (state, whole)) in self.states.iter().zip(&lines).enumerate().rev() {
-                let stroke = palette::state(index, 0.9);
-                match &state.curves.sum {
-                    Some(_) => {
-                        page.tinted(whole, TINT, Stroke::solid(stroke.colour, 0.25));
-                        page.polyline(&drawn(state.energy_ev, &state.curves.envelope), stroke);
-                    }
-                    None => page.tinted(whole, TINT, stroke),
-                }
-            }
-        });
-        page.group("levels", |page| {
-            for (index, (state, line)) in self.states.iter().zip(&lines).enumerate() {
-                let y = y_at(state.energy_ev);
-                if let (Some(first), Some(last)) = (line.first(), line.last()) {
-                    page.line(
-                        [first[0], y],
-                        [last[0], y],
-                        Stroke::solid(palette::state(index, 0.5).colour, 0.5),
-                    );
-                }
-            }
-        });
-        page.group("rungs", |page| {
-            for (index, state) in self.states.iter().enumerate() {
-                let y = y_at(state.energy_ev);
-                page.line(
-                    [ladder_left, y],
-                    [ladder_right, y],
-                    palette::state(index, 0.9),
-                );
-            }
-        });
+        self.draw_edge(&mut page, &panel);
+        self.draw_states(&mut page, &panel, [ladder_left, ladder_right]);
         ladder.draw(&mut page, ladder_left, top, bottom);
-        self.draw_labels(
-            &mut page,
-            &labels,
-            unit,
-            every,
-            [ladder_right, labels_left],
-            [top, bottom],
-            y_at,
-        );
-        left_axis(
-            &mut page,
-            vertical,
-            left,
-            &format!("Energy ({})", unit.name),
-        );
-        bottom_axis(&mut page, horizontal, bottom, "z (nm)");
+        self.draw_labels(&mut page, &panel, &labels, [ladder_right, labels_left]);
+        let name = format!("Energy ({})", unit.name);
+        left_axis(&mut page, panel.vertical, left, &name);
+        bottom_axis(&mut page, panel.horizontal, bottom, "z (nm)");
 
-        let mut y = bottom + BOTTOM_ROOM;
         let entries: Vec<key::Entry> = strip
             .keyed
             .iter()
@@ -249,7 +168,7 @@ impl BandDiagram {
                 meaning: self.meanings[number - 1].clone(),
             })
             .collect();
-        y = key::draw(&mut page, &entries, y);
+        let mut y = key::draw(&mut page, &entries, bottom + BOTTOM_ROOM);
         let mut caption = self.caption.clone();
         if left_out > 0 {
             caption += &format!(" {left_out} more transitions have no room here.");
@@ -261,6 +180,85 @@ impl BandDiagram {
             &self.title
         };
         page.finish(y + 4.0, title, &self.description(unit))
+    }
+
+    fn rung(&self, transition: &Transition, panel: &Panel) -> Rung {
+        Rung {
+            upper_y: panel.y(self.states[transition.to].energy_ev),
+            lower_y: panel.y(self.states[transition.from].energy_ev),
+            lines: [
+                wavelength(transition),
+                format!("{} meV", significant(1e3 * transition.energy_ev, 4)),
+            ],
+        }
+    }
+
+    fn draw_edge(&self, page: &mut Page, panel: &Panel) {
+        let [left, right] = panel.horizontal.range;
+        let [bottom, _] = panel.vertical.range;
+        let edge: Vec<[f64; 2]> = self
+            .edge
+            .iter()
+            .map(|[z, e]| [panel.horizontal.at(*z), panel.y(*e)])
+            .collect();
+        // Where the layers stand close, the line must leave room between its flanks.
+        let width_pt = (0.25 * (right - left) / self.layers.len() as f64).clamp(0.25, 1.1);
+        let mut body = edge.clone();
+        body.extend([[right, bottom], [left, bottom]]);
+        page.group("body", |page| page.area(&body, BODY));
+        page.group("edge", |page| {
+            page.polyline(&edge, Stroke::solid(INK, width_pt));
+        });
+    }
+
+    /// The squared envelopes, the highest state first, so that the lower ones stand in front; then the levels.
+    fn draw_states(&self, page: &mut Page, panel: &Panel, [ladder_left, ladder_right]: [f64; 2]) {
+        let wholes: Vec<Vec<[f64; 2]>> = self
+            .states
+            .iter()
+            .map(|state| panel.density(state.energy_ev, state.curves.whole()))
+            .collect();
+        let states = || self.states.iter().zip(&wholes).enumerate();
+        page.group("guides", |page| {
+            for (_, (state, whole)) in states() {
+                let y = panel.y(state.energy_ev);
+                let from = whole
+                    .last()
+                    .map_or(panel.horizontal.range[0], |point| point[0]);
+                page.line([from, y], [ladder_left, y], DOTTED);
+            }
+        });
+        page.group("densities", |page| {
+            for (index, (state, whole)) in states().rev() {
+                let stroke = palette::state(index, 0.9);
+                if state.curves.sum.is_some() {
+                    page.tinted(whole, TINT, Stroke::solid(stroke.colour, 0.25));
+                    let envelope = panel.density(state.energy_ev, &state.curves.envelope);
+                    page.polyline(&envelope, stroke);
+                } else {
+                    page.tinted(whole, TINT, stroke);
+                }
+            }
+        });
+        page.group("levels", |page| {
+            for (index, (state, whole)) in states() {
+                let y = panel.y(state.energy_ev);
+                if let (Some(first), Some(last)) = (whole.first(), whole.last()) {
+                    let stroke = Stroke::solid(palette::state(index, 0.5).colour, 0.5);
+                    page.line([first[0], y], [last[0], y], stroke);
+                }
+            }
+        });
+        page.group("rungs", |page| {
+            for (index, (state, _)) in states() {
+                let y = panel.y(state.energy_ev);
+                page.line(
+                    [ladder_left, y],
+                    [ladder_right, y],
+                    palette::state(index, 0.9),
+                );
+            }
+        });
     }
 
     fn unit(&self) -> Unit {
@@ -303,7 +301,8 @@ impl BandDiagram {
     }
 
     /// The scale of energy from a panel's top at 0, and points per 1/nm of the squared envelopes.
-    fn vertical(&self, height: f64, peak_pt: f64) -> (Scale, f64) {
+    fn vertical(&self, height: f64) -> (Scale, f64) {
+        let peak_pt = self.peak_pt(height);
         let [low, high] = self.energies(0.0);
         // A peak on the uppermost level must fit below the top.
         let above_ev = peak_pt / height * (high - low);
@@ -336,10 +335,13 @@ impl BandDiagram {
             .windows(2)
             .map(|pair| unit.factor * (pair[1].energy_ev - pair[0].energy_ev))
             .fold(f64::INFINITY, f64::min);
-        let last_digit = 10f64.powi(-(unit.decimals as i32));
-        let decimals = unit.decimals + usize::from(narrowest < 5.0 * last_digit);
+        let most = unit.decimals + MORE_DECIMALS;
+        let decimals = (unit.decimals..most)
+            .find(|d| narrowest >= 2.0 * 10f64.powi(-(*d as i32)))
+            .unwrap_or(most);
         let energy = |state: &DrawnState| format!("{:.decimals$}", unit.factor * state.energy_ev);
         StateLabels {
+            unit: unit.name,
             numbers: (1..=self.states.len()).map(|n| n.to_string()).collect(),
             energies: self.states.iter().map(energy).collect(),
             marks: self.states.iter().map(|state| state.mark).collect(),
@@ -349,17 +351,17 @@ impl BandDiagram {
     fn draw_labels(
         &self,
         page: &mut Page,
+        panel: &Panel,
         labels: &StateLabels,
-        unit: Unit,
-        every: usize,
         [from, to]: [f64; 2],
-        [top, bottom]: [f64; 2],
-        y_at: impl Fn(f64) -> f64,
     ) {
+        let [bottom, top] = panel.vertical.range;
+        let most = ((bottom - top) / LABEL_STEP_PT).floor().max(1.0) as usize;
+        let every = self.states.len().div_ceil(most).max(1);
         let chosen: Vec<usize> = (0..self.states.len()).step_by(every).rev().collect();
         let wanted: Vec<f64> = chosen
             .iter()
-            .map(|k| y_at(self.states[*k].energy_ev))
+            .map(|k| panel.y(self.states[*k].energy_ev))
             .collect();
         let sizes = vec![LABEL_STEP_PT; chosen.len()];
         let places = spread(&wanted, &sizes, top, bottom);
@@ -373,7 +375,7 @@ impl BandDiagram {
         let energy = Style::new(LABEL_PT, Anchor::End);
         let mark = Style::new(LABEL_PT, Anchor::Start);
         page.group("energies", |page| {
-            page.text([energies_right, top - 3.0], energy, unit.name);
+            page.text([energies_right, top - 3.0], energy, labels.unit);
             for ((&index, y), place) in chosen.iter().zip(&wanted).zip(places) {
                 let leader = [
                     [from, *y],
@@ -408,11 +410,11 @@ impl BandDiagram {
         });
         let transitions = self.transitions.iter().map(|t| {
             format!(
-                "{} to {}: {} meV, {} µm",
+                "{} to {}: {} meV, {}",
                 t.from + 1,
                 t.to + 1,
                 significant(1e3 * t.energy_ev, 4),
-                significant(t.wavelength_um(), 4)
+                wavelength(t)
             )
         });
         let list: Vec<String> = states.chain(transitions).collect();
@@ -423,8 +425,44 @@ impl BandDiagram {
     }
 }
 
+/// Where energies, positions and squared envelopes are drawn.
+struct Panel {
+    horizontal: Scale,
+    /// In the unit.
+    vertical: Scale,
+    unit: Unit,
+    pt_per_density: f64,
+}
+
+impl Panel {
+    fn y(&self, energy_ev: f64) -> f64 {
+        self.vertical.at(self.unit.factor * energy_ev)
+    }
+
+    /// The part of a squared envelope that stands out, on the line of its energy.
+    fn density(&self, energy_ev: f64, curve: &[[f64; 2]]) -> Vec<[f64; 2]> {
+        let level = self.y(energy_ev);
+        let points: Vec<[f64; 2]> = standing_out(curve)
+            .iter()
+            .map(|[z, value]| [self.horizontal.at(*z), level - self.pt_per_density * value])
+            .collect();
+        simplified(&points, INVISIBLE_PT)
+    }
+}
+
+/// The vacuum wavelength in µm, or in mm from 1 mm on.
+fn wavelength(transition: &Transition) -> String {
+    let wavelength_um = transition.wavelength_um();
+    if wavelength_um < 1e3 {
+        format!("{} µm", significant(wavelength_um, 4))
+    } else {
+        format!("{} mm", significant(1e-3 * wavelength_um, 4))
+    }
+}
+
 /// The texts at the right of a diagram.
 struct StateLabels {
+    unit: &'static str,
     numbers: Vec<String>,
     energies: Vec<String>,
     marks: Vec<&'static str>,

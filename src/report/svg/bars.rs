@@ -4,8 +4,7 @@ use super::Width;
 use super::axes::{BOTTOM_ROOM, Scale, bottom_axis};
 use super::page::{ASCENT, Anchor, LABEL_PT, MARGIN_PT, Page, SMALL_PT, Style};
 use super::palette::{BAR, BAR_LIGHT, INK, SOFT_INK, Stroke};
-use super::text::{minus, shortened, width_pt};
-use crate::report::table::significant;
+use super::text::{short, shortened, width_pt};
 
 /// One cause and its effect.
 #[derive(Clone, Debug, PartialEq)]
@@ -47,9 +46,9 @@ impl SensitivityBars {
         let left_out = bars.len().saturating_sub(MOST);
         bars.truncate(MOST);
 
-        let longest_name = match width {
-            Width::Column => 70.0,
-            Width::Page => 150.0,
+        let (longest_name, longest_unit) = match width {
+            Width::Column => (76.0, 30.0),
+            Width::Page => (150.0, 60.0),
         };
         let names: Vec<String> = bars
             .iter()
@@ -57,7 +56,7 @@ impl SensitivityBars {
             .collect();
         let units: Vec<String> = bars
             .iter()
-            .map(|bar| shortened(&bar.unit, SMALL_PT, 45.0))
+            .map(|bar| shortened(&bar.unit, SMALL_PT, longest_unit))
             .collect();
         let values: Vec<String> = bars.iter().map(|bar| signed(bar.change_mev)).collect();
         let widest = |texts: &[String], size| {
@@ -141,7 +140,7 @@ impl SensitivityBars {
 
 /// Three significant digits with a sign.
 fn signed(value: f64) -> String {
-    let text = minus(&significant(value, 3));
+    let text = short(value, 3);
     if value > 0.0 {
         format!("+{text}")
     } else {

@@ -18,7 +18,7 @@ pub struct Gaussian {
 /// The values that are wanted, and the share of the samples that lie there.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Window {
-    /// The lower and the upper limit, in the unit of the axis.
+    /// The lower and the upper limit, in the unit of the quantity.
     pub between: [f64; 2],
     /// From 0 to 1.
     pub share: f64,
@@ -30,13 +30,15 @@ pub struct Window {
 #[derive(Clone, Debug, PartialEq)]
 pub struct YieldHistogram {
     pub title: String,
-    /// Name and unit of the quantity, such as `Wavelength (µm)`.
-    pub axis: String,
+    /// What was sampled, such as `Wavelength`.
+    pub quantity: String,
+    /// Its unit, such as `µm`.
+    pub unit: String,
     pub caption: String,
     /// Borders of the bins, ascending: one more than there are counts.
     pub borders: Vec<f64>,
     pub counts: Vec<u64>,
-    /// The linear estimate, in the unit of the axis.
+    /// The linear estimate, in the unit of the quantity.
     pub linear: Option<Gaussian>,
     pub window: Option<Window>,
 }
@@ -126,7 +128,8 @@ impl YieldHistogram {
             page.group("linear", |page| page.polyline(&curve, LINEAR));
         }
         left_axis(&mut page, vertical, left, "Wafers");
-        bottom_axis(&mut page, horizontal, bottom, &self.axis);
+        let name = format!("{} ({})", self.quantity, self.unit);
+        bottom_axis(&mut page, horizontal, bottom, &name);
         let y = page.caption(&self.caption, bottom + BOTTOM_ROOM);
         page.finish(y + 4.0, &self.title, &self.words().join("; "))
     }
@@ -181,15 +184,17 @@ impl YieldHistogram {
         let mut words = vec![format!("{total} sampled wafers")];
         if let Some(normal) = self.linear {
             words.push(format!(
-                "linear estimate, standard deviation {}",
-                short(normal.standard_deviation, 3)
+                "linear estimate, standard deviation {} {}",
+                short(normal.standard_deviation, 3),
+                self.unit
             ));
         }
         if let Some(window) = &self.window {
             words.push(format!(
-                "wanted, {} to {}: {:.1} % inside ({:.1} to {:.1} %)",
+                "wanted, {} to {} {}: {:.1} % inside ({:.1} to {:.1} %)",
                 short(window.between[0], 5),
                 short(window.between[1], 5),
+                self.unit,
                 100.0 * window.share,
                 100.0 * window.share_interval[0],
                 100.0 * window.share_interval[1]

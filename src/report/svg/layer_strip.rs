@@ -10,6 +10,8 @@ use std::collections::BTreeSet;
 const ROW_PT: f64 = 11.0;
 const LEADER_PT: f64 = 5.0;
 const NUMBER_ROW_PT: f64 = 9.0;
+/// Interfaces closer than this are not marked in the strip.
+const CLOSEST_PT: f64 = 1.5;
 /// Room beside a text in the strip.
 const SIDE_PT: f64 = 1.5;
 
@@ -126,7 +128,8 @@ impl LayerStrip {
             let rule = Stroke::solid(SOFT_INK, 0.4);
             let bottom = row + ROW_PT - 1.0;
             page.line([left, bottom], [right, bottom], rule);
-            let inner = self.faces.iter().copied();
+            let apart = (right - left) / (self.faces.len() + 1) as f64 > CLOSEST_PT;
+            let inner = self.faces.iter().copied().filter(|_| apart);
             for x in [left, right].into_iter().chain(inner) {
                 page.line(
                     [x, bottom - 4.0],
