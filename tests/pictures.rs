@@ -612,15 +612,24 @@ fn a_histogram_shows_what_it_was_given() {
     };
     assert_tidy("empty", &empty.svg(Width::Page));
 }
+/// In a column there is room for one row of arrows; what crosses it is told in the caption.
 #[test]
-fn zz_dump() {
-    for w in WIDTHS {
-        std::fs::write(format!("/tmp/plotview/y-bars-{w:?}.svg"), bars().svg(w)).unwrap();
-        std::fs::write(
-            format!("/tmp/plotview/y-hist-{w:?}.svg"),
-            histogram().svg(w),
-        )
-        .unwrap();
+fn every_aim_is_told() {
+    let solved = solved(SHIPPED[4]);
+    let energy = |k: usize| solved.subbands.pairs[k].value;
+    for width in WIDTHS {
+        let svg = diagram(&solved).svg(width);
+        let document = Document::parse(&svg).unwrap();
+        let told: String = children(document.root_element(), "text")
+            .map(words)
+            .collect();
+        // hc = 1.239841984 eV µm (CODATA 2022). The aims are 5 to 4, 4 to 3 and 4 to 2.
+        for (upper, lower) in [(4, 3), (3, 2), (3, 1)] {
+            let wavelength_um = 1.239_841_984 / (energy(upper) - energy(lower));
+            let decimals = if wavelength_um < 100.0 { 2 } else { 1 };
+            let text = format!("{wavelength_um:.decimals$} µm");
+            assert!(told.contains(&text), "{text} in {width:?}");
+        }
     }
 }
 

@@ -114,7 +114,7 @@ impl BandDiagram {
     pub fn svg(&self, width: Width) -> String {
         let mut page = Page::new(width);
         let (least_height, columns) = match width {
-            Width::Column => (165.0_f64, 2),
+            Width::Column => (165.0_f64, 1),
             Width::Page => (215.0, 3),
         };
         let labels_height = LABEL_STEP_PT * self.states.len() as f64;
@@ -170,8 +170,9 @@ impl BandDiagram {
             .collect();
         let mut y = key::draw(&mut page, &entries, bottom + BOTTOM_ROOM);
         let mut caption = self.caption.clone();
-        if left_out > 0 {
-            caption += &format!(" {left_out} more transitions have no room here.");
+        for rung in left_out {
+            let [wavelength, energy] = rung.lines;
+            caption += &format!(" {}: {wavelength}, {energy}.", rung.states);
         }
         y = page.caption(&caption, y + 1.0);
         let title = if self.title.is_empty() {
@@ -190,6 +191,7 @@ impl BandDiagram {
                 wavelength(transition),
                 format!("{} meV", significant(1e3 * transition.energy_ev, 4)),
             ],
+            states: format!("{} to {}", transition.from + 1, transition.to + 1),
         }
     }
 
@@ -597,7 +599,7 @@ fn caption(structure: &Structure, stack: &Stack, zero_ev: f64, states: &[DrawnSt
         match structure.conduction.model {
             ConductionModel::Parabolic => ", all of the same area",
             ConductionModel::EnergyDependent => {
-                "; shaded: the sum over all components of the state, of the same area for all"
+                "; shaded: the sum over all components of each state, all of the same area"
             }
         },
         short(structure.temperature_k, 4),

@@ -20,6 +20,8 @@ pub(super) struct Rung {
     pub upper_y: f64,
     pub lower_y: f64,
     pub lines: [String; 2],
+    /// The two states, in words.
+    pub states: String,
 }
 
 impl Rung {
@@ -44,11 +46,11 @@ pub(super) struct Ladder {
 }
 
 impl Ladder {
-    /// Sorts transitions into columns; gives back with the ladder how many had no room in `most` columns.
-    pub fn new(mut rungs: Vec<Rung>, most: usize, height: f64) -> (Ladder, usize) {
+    /// Sorts transitions into columns; gives back with the ladder those that had no room in `most` columns.
+    pub fn new(mut rungs: Vec<Rung>, most: usize, height: f64) -> (Ladder, Vec<Rung>) {
         rungs.sort_by(|a, b| a.middle().total_cmp(&b.middle()));
         let mut columns: Vec<Vec<Rung>> = Vec::new();
-        let mut left_out = 0;
+        let mut left_out = Vec::new();
         for rung in rungs {
             let free = |column: &Vec<Rung>| {
                 let apart = |other: &Rung| {
@@ -59,7 +61,7 @@ impl Ladder {
             match columns.iter().position(free) {
                 Some(place) => columns[place].push(rung),
                 None if columns.len() < most => columns.push(vec![rung]),
-                None => left_out += 1,
+                None => left_out.push(rung),
             }
         }
         (Ladder { columns }, left_out)
@@ -88,7 +90,7 @@ impl Ladder {
                 let lowered = |rung: &Rung| Rung {
                     upper_y: rung.upper_y + top,
                     lower_y: rung.lower_y + top,
-                    lines: rung.lines.clone(),
+                    ..rung.clone()
                 };
                 let rungs: Vec<Rung> = column.iter().map(lowered).collect();
                 let arrow = x + ARROW_PT;
