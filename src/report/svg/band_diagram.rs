@@ -172,7 +172,7 @@ impl BandDiagram {
         let mut caption = self.caption.clone();
         for rung in left_out {
             let [wavelength, energy] = rung.lines;
-            caption += &format!(" {}: {wavelength}, {energy}.", rung.states);
+            caption += &format!(" Not drawn: {}, {wavelength}, {energy}.", rung.states);
         }
         y = page.caption(&caption, y + 1.0);
         let title = if self.title.is_empty() {
