@@ -296,6 +296,25 @@ fn many_levels_nearly_in_one_place() {
     check_all("twelve levels", &text);
 }
 
+/// What has no room is thinned out or cut, and said so.
+#[test]
+fn more_than_a_page_can_hold() {
+    let levels = MATERIALS.to_owned()
+        + "bands: {conduction: {model: parabolic, states: 80}}\nlayers: [{material: W, width: 100 nm}]\n";
+    let mut layers =
+        MATERIALS.to_owned() + "bands: {conduction: {model: parabolic, states: 2}}\nlayers:\n";
+    for k in 0..400 {
+        let material = if k % 2 == 0 { "B" } else { "W" };
+        layers += &format!("  - {{material: {material}, width: {} nm}}\n", 2 + k % 5);
+    }
+    for width in WIDTHS {
+        assert_tidy("80 levels", &diagram(&solved(&levels)).svg(width));
+    }
+    let svg = diagram(&solved(&layers)).svg(Width::Page);
+    assert_tidy("400 layers", &svg);
+    assert!(svg.contains("and 328 more layers"), "72 of 400 are listed");
+}
+
 #[test]
 fn text_of_the_file_is_only_text() {
     let title = "<svg onload=\"x\"> & 'well' 🔬 ".repeat(11);

@@ -45,7 +45,7 @@ const DOTTED: Stroke = Stroke {
 };
 /// Distance of the labels of levels.
 const LABEL_STEP_PT: f64 = 1.25 * LABEL_PT;
-/// Above this many lines the labels of the levels are thinned out.
+/// A panel grows to this height for the labels of its levels; beyond it they are thinned out.
 const TALLEST_PT: f64 = 560.0;
 
 /// All that a band diagram shows.
