@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, levels, materials, tune};
+use super::{check, levels, materials, plot, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -14,6 +14,11 @@ pub fn run(arguments: Arguments) -> Exit {
             output,
         } => tune::tune(&file, format, &output),
         Command::Check { file } => check::check(&file),
+        Command::Plot {
+            file,
+            width,
+            output,
+        } => plot::plot(&file, width.into(), output.as_deref()),
         Command::Materials {
             formula,
             temperature,

@@ -2,6 +2,7 @@
 
 mod levels;
 mod materials;
+pub mod svg;
 mod table;
 mod tuning;
 
