@@ -168,7 +168,7 @@ fn jitter(checker: &mut Checker, node: &Node) -> Option<Spanned<Quantity>> {
 /// `0.5 nm` or `{length: 0.5 nm, spread: 0.1 nm}`.
 fn grading(checker: &mut Checker, node: &Node) -> Option<Grading> {
     let limits = above(0.0, 100.0, "more than 0 nm, at most 100 nm");
-    let mut length = |checker: &mut Checker, node: &Node, limits| {
+    let length = |checker: &mut Checker, node: &Node, limits| {
         Some(
             checker
                 .quantity(node, &[Dimension::Length], limits)?

@@ -355,7 +355,7 @@ impl Design {
         let mut known: Vec<(&Substance, Face, f64)> = Vec::new();
         let mut rates = Vec::new();
         for (entry, designed) in self.file_contents().enumerate() {
-            let mut grown = |face: &'_ Face, is_lower: bool| -> Result<(Face, f64), NotGrown> {
+            let grown = |face: &Face, is_lower: bool| -> Result<(Face, f64), NotGrown> {
                 let found = known
                     .iter()
                     .find(|(substance, ..)| shared && **substance == face.substance);

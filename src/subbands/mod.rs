@@ -3,12 +3,14 @@
 mod audit;
 mod change;
 mod envelope;
+mod nearby;
 mod resolution;
 mod state;
 
 pub use audit::Audit;
 pub use change::change;
 pub use envelope::{envelope_overlap, layer_envelopes};
+pub use nearby::{Nearby, lower_outer_edge_ev};
 pub use state::{Hold, State};
 
 use crate::models::ConductionOperator;
