@@ -132,7 +132,10 @@ mod tests {
             for v in [-0.2, -0.05, -0.01, 0.0, 0.003, 0.02, 0.1, 0.4] {
                 let pencil = double_well(v, poles);
                 let exact = eigenpairs::lowest(&pencil, 4);
-                for guesses in [[0.0; 4].map(|_| 20.0), [0, 1, 2, 3].map(|k: usize| known[k].value)] {
+                for guesses in [
+                    [0.0; 4].map(|_| 20.0),
+                    [0, 1, 2, 3].map(|k: usize| known[k].value),
+                ] {
                     let near = lowest_near(&pencil, &known, &guesses, 1e-6);
                     for (value, pair) in near.iter().zip(&exact) {
                         assert!(

@@ -112,7 +112,10 @@ fn settled<T>(read: Option<Option<T>>) -> Option<Option<T>> {
 /// `{Ga: 0.5 %, Al: 1 %}`.
 fn flux(checker: &mut Checker, node: &Node) -> Option<Vec<Spanned<(Element, f64)>>> {
     let Value::Map(entries) = &node.value else {
-        checker.wrong_kind(node, "fluxes with their spreads, as in `{Ga: 0.5 %, Al: 1 %}`");
+        checker.wrong_kind(
+            node,
+            "fluxes with their spreads, as in `{Ga: 0.5 %, Al: 1 %}`",
+        );
         return None;
     };
     if entries.is_empty() {
@@ -152,7 +155,11 @@ fn flux(checker: &mut Checker, node: &Node) -> Option<Vec<Spanned<(Element, f64)
 
 /// `0.3 ML`, `0.1 nm` or `1 %`.
 fn jitter(checker: &mut Checker, node: &Node) -> Option<Spanned<Quantity>> {
-    let dimensions = [Dimension::Monolayers, Dimension::Length, Dimension::Percentage];
+    let dimensions = [
+        Dimension::Monolayers,
+        Dimension::Length,
+        Dimension::Percentage,
+    ];
     let quantity = checker.quantity(node, &dimensions, LENGTH_LIMITS)?;
     if quantity.value.unit.dimension == Dimension::Percentage && quantity.value.value() > 1.0 {
         checker.report(
@@ -302,23 +309,13 @@ fn window_bounds(checker: &mut Checker, fields: &Fields) -> Option<([f64; 2], bo
     let [low, high] = checker.pair(
         fields.get(key)?,
         example,
-        |checker, node| {
-            Some(
-                checker
-                    .quantity(node, &[dimension], limits)?
-                    .value
-                    .value(),
-            )
-        },
+        |checker, node| Some(checker.quantity(node, &[dimension], limits)?.value.value()),
         |value| *value,
     )?;
     Some(if key == "energy" {
         ([low, high], false)
     } else {
-        (
-            [1e3 * HC_EV_UM / high, 1e3 * HC_EV_UM / low],
-            true,
-        )
+        ([1e3 * HC_EV_UM / high, 1e3 * HC_EV_UM / low], true)
     })
 }
 
@@ -397,7 +394,8 @@ pub(super) fn unfitting(structure: &Structure, stack: &Stack, found: &mut Vec<Di
             .find(|(index, _)| stack.length_nm(*index, &jitter.value).is_none())
     {
         found.push(
-            no_monolayer(entry, &jitter.span).expected("a length such as `0.1 nm`, or a percentage"),
+            no_monolayer(entry, &jitter.span)
+                .expected("a length such as `0.1 nm`, or a percentage"),
         );
     }
     if let Some(grading) = &tolerance.grading

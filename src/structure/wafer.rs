@@ -130,13 +130,15 @@ impl Design {
             if causes.iter().any(known) {
                 continue;
             }
-            causes.extend(free_fractions(composition).into_iter().map(|(element, host)| {
-                Cause::Alloy {
-                    alloy: alloy.clone(),
-                    element,
-                    host,
-                }
-            }));
+            causes.extend(
+                free_fractions(composition)
+                    .into_iter()
+                    .map(|(element, host)| Cause::Alloy {
+                        alloy: alloy.clone(),
+                        element,
+                        host,
+                    }),
+            );
         }
         causes
     }
@@ -158,29 +160,27 @@ impl Design {
 
     /// The largest amount, up or down, by which a cause can surely be off.
     pub fn room(&self, cause: &Cause) -> f64 {
-        let least = |element: Element, host: Element, inside: &dyn Fn(usize, &Composition) -> bool| {
-            self.file_contents()
-                .enumerate()
-                .flat_map(|(entry, content)| {
-                    [Some(&content.lower), content.upper.as_ref()]
-                        .into_iter()
-                        .flatten()
-                        .filter_map(move |face| match &face.substance {
-                            Substance::Alloy(composition) => Some((entry, composition)),
-                            _ => None,
-                        })
-                })
-                .filter(|(entry, composition)| inside(*entry, composition))
-                .map(|(_, c)| c.fraction(element).min(c.fraction(host)))
-                .fold(1.0, f64::min)
-        };
+        let least =
+            |element: Element, host: Element, inside: &dyn Fn(usize, &Composition) -> bool| {
+                self.file_contents()
+                    .enumerate()
+                    .flat_map(|(entry, content)| {
+                        [Some(&content.lower), content.upper.as_ref()]
+                            .into_iter()
+                            .flatten()
+                            .filter_map(move |face| match &face.substance {
+                                Substance::Alloy(composition) => Some((entry, composition)),
+                                _ => None,
+                            })
+                    })
+                    .filter(|(entry, composition)| inside(*entry, composition))
+                    .map(|(_, c)| c.fraction(element).min(c.fraction(host)))
+                    .fold(1.0, f64::min)
+            };
         match cause {
             Cause::Rate | Cause::Flux(_) => 1.0,
             Cause::Layer(layer) => self.widths_nm[*layer],
-            Cause::Entry(entry) => self
-                .stack
-                .entry_width_nm(*entry)
-                .unwrap_or(f64::INFINITY),
+            Cause::Entry(entry) => self.stack.entry_width_nm(*entry).unwrap_or(f64::INFINITY),
             Cause::Fraction {
                 entry,
                 element,
@@ -427,7 +427,11 @@ impl Design {
 }
 
 fn positive(width_nm: f64) -> Result<f64, NotGrown> {
-    if width_nm > 0.0 { Ok(width_nm) } else { Err(NotGrown) }
+    if width_nm > 0.0 {
+        Ok(width_nm)
+    } else {
+        Err(NotGrown)
+    }
 }
 
 /// The elements of an alloy in the library's order, however its formula was written.
@@ -445,8 +449,11 @@ fn free_fractions(composition: &Composition) -> Vec<(Element, Element)> {
             let elements = composition.elements().iter().copied();
             elements.filter(move |e| e.sublattice() == sublattice)
         };
-        let host = here()
-            .max_by(|a, b| composition.fraction(*a).total_cmp(&composition.fraction(*b)));
+        let host = here().max_by(|a, b| {
+            composition
+                .fraction(*a)
+                .total_cmp(&composition.fraction(*b))
+        });
         if let Some(host) = host {
             free.extend(here().filter(|e| *e != host).map(|e| (e, host)));
         }

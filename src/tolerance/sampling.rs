@@ -251,7 +251,12 @@ fn wafer(
     design.grow(stack, causes, amounts)?;
     let operator = ConductionOperator::new(stack, model).map_err(|_| NotGrown)?;
     let pencil = nearby.pencil(&operator);
-    let mut guesses_ev: Vec<f64> = nearby.solved().pairs.iter().map(|pair| pair.value).collect();
+    let mut guesses_ev: Vec<f64> = nearby
+        .solved()
+        .pairs
+        .iter()
+        .map(|pair| pair.value)
+        .collect();
     for (source, amount) in sources.iter().zip(amounts) {
         for (guess, slope) in guesses_ev.iter_mut().zip(&source.level_slopes_ev) {
             *guess += amount * slope;
