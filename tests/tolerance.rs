@@ -5,8 +5,9 @@ use assert_cmd::Command;
 use wellwright::constants::HBAR2_OVER_2M0;
 use wellwright::diagnostics::Severity;
 use wellwright::models::ConductionOperator;
-use wellwright::structure::{self, Cause, Design, Stack, Structure, document};
-use wellwright::subbands::{Accuracy, Nearby, solve};
+use wellwright::numerics::sensitivity::value_slope;
+use wellwright::structure::{self, Cause, Design, Knob, Stack, Structure, document};
+use wellwright::subbands::{Accuracy, Nearby, change, solve};
 use wellwright::tolerance::{Outcome, Sensitivity, sensitivities, tolerance};
 
 const FINE: Accuracy = Accuracy {
@@ -271,8 +272,8 @@ fn shifts_with_three_fluxes_are_those_of_full_solves() {
 #[test]
 fn shifts_of_repeats_grades_and_interfaces_are_those_of_full_solves() {
     let text = "substrate: GaAs\ntemperature: 10 K\nfield: 8 kV/cm\nbands: {conduction: {model: energy-dependent, states: 3}}\nlayers:\n  \
-        - {material: Al0.3Ga0.7As, width: 8 nm}\n  - repeat: 2\n    layers:\n      - {name: well, material: GaAs, width: 5 nm}\n      \
-        - {name: slope, material: Al0.1Ga0.9As, to: Al0.3Ga0.7As, width: 3 nm}\n  - {material: Al0.3Ga0.7As, width: 8 nm}\n\
+        - {material: Al0.3Ga0.7As, width: 5 nm}\n  - repeat: 2\n    layers:\n      - {name: well, material: GaAs, width: 5 nm}\n      \
+        - {name: slope, material: Al0.1Ga0.9As, to: Al0.3Ga0.7As, width: 3 nm}\n  - {material: Al0.3Ga0.7As, width: 5 nm}\n\
         tolerance: {grading: {length: 0.6 nm, spread: 0.1 nm}}\n";
     let (structure, stack) = read(text);
     let design = Design::new(&stack, Some(0.6)).unwrap();
@@ -300,6 +301,31 @@ fn shifts_of_repeats_grades_and_interfaces_are_those_of_full_solves() {
                 "{}: {shift:e} for {exact:e} ({:.1e})",
                 found.name,
                 (shift / exact - 1.0).abs()
+            );
+        }
+    }
+}
+
+/// Widths, fractions and field have exact derivatives of their own, those that tuning goes by: the same numbers.
+#[test]
+fn shifts_are_the_derivatives_of_tuning() {
+    let (structure, stack) = read(&double_well("energy-dependent", Off::default()));
+    let operator = ConductionOperator::new(&stack, structure.conduction.model).unwrap();
+    let solved = solve(&operator, structure.conduction.states, FINE);
+    for found in sensitivities_of(&double_well("energy-dependent", Off::default())) {
+        let knob = match found.cause {
+            Cause::Entry(entry) => Knob::Width { entry },
+            Cause::Fraction { entry, element, .. } => Knob::Fraction { entry, element },
+            Cause::Field => Knob::Field,
+            _ => continue,
+        };
+        let change = change(&operator, &solved.pencil, knob);
+        for (shift, pair) in found.level_shifts_ev.iter().zip(&solved.pairs) {
+            let exact = found.amount * value_slope(&solved.pencil, &change, pair);
+            assert!(
+                (shift - exact).abs() < 1e-9 * exact.abs() + 1e-15,
+                "{}: {shift:e} for {exact:e}",
+                found.name
             );
         }
     }
@@ -341,7 +367,7 @@ fn graded_interfaces_are_graded_layers() {
     for (a, b) in graded(0.8).iter().zip(levels(&drawn)) {
         assert!((a - b).abs() < 1e-10, "{a} {b}");
     }
-    let (none, short, long) = (levels(&abrupt), graded(0.1), graded(0.2));
+    let (none, short, long) = (levels(&abrupt), graded(0.02), graded(0.04));
     for k in 0..2 {
         let ratio = (long[k] - none[k]) / (short[k] - none[k]);
         assert!((ratio - 4.0).abs() < 0.02, "level {}: {ratio}", k + 1);
@@ -523,10 +549,13 @@ fn published_growth_practice_holds_the_terahertz_line() {
         aluminium[1],
         shift("field")
     );
-    // The paper designs for 13.9 meV and measures 14.2 meV (3.437 THz).
-    assert!(drift < 0.3 && (spread / drift - 1.0).abs() < 0.1);
-    assert!(aluminium.iter().all(|d| d.abs() < 0.3));
-    assert!(edge.abs() < 1.0);
+    // The paper designs for 13.9 meV and measures 14.2 meV (3.437 THz): 0.3 meV apart. Nothing that was held as it says
+    // may move the line by more.
+    let apart = 14.2 - 13.9;
+    assert!(drift < apart && spread < apart);
+    assert!(aluminium.iter().all(|d| d.abs() < apart));
+    // Thinner barriers with less room between the levels: the edge of the wafer still lases within that distance.
+    assert!(edge.abs() < apart);
 }
 
 /// Line and column, counted from 1, with what is said.
@@ -612,7 +641,7 @@ fn mistakes_are_named_with_their_place() {
         ("tolerance: {jitter: 200 %}", 5, 21, &["out of range"]),
         ("tolerance: {composition: 0.5 %}", 5, 26, &["no unit"]),
         (
-            "tolerance: {grading: 6 nm}",
+            "tolerance: {grading: 12 nm}",
             5,
             22,
             &["leave nothing of `well`"],

@@ -38,7 +38,7 @@ pub enum Command {
         /// Structure file, with a `tolerance` block for the share of wafers
         file: PathBuf,
         /// Wafers to sample instead of the number in the file
-        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(2..=1_000_000))]
+        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(2..=100_000))]
         samples: Option<u32>,
         /// Threads to use; as many as there are cores when left out
         #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]

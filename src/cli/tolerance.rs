@@ -52,6 +52,14 @@ pub fn tolerance(
             show(&problem, &input.name, &input.text);
             Exit::WrongInput
         }
+        ToleranceError::NoLevel { .. } => {
+            show(
+                &Diagnostic::error(error.to_string()),
+                &input.name,
+                &input.text,
+            );
+            Exit::NotPossible
+        }
     })?;
     input.doubt(&outcome.abrupt, outcome.levels_ev.len());
     deliver(

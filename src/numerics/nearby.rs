@@ -9,6 +9,10 @@ use super::pencil::{Pencil, dot};
 const MAX_SHIFTS: usize = 6;
 /// Solves with the factors of one shift.
 const SOLVES: usize = 2;
+/// Corrections of a value at one shift; each gains the ratio of the shift's distance to that of the poles.
+const MAX_CORRECTIONS: usize = 4;
+/// A correction beyond this multiple of the tolerance calls for a new shift.
+const NEAR: f64 = 100.0;
 
 /// As many of the lowest eigenvalues as there are known pairs, ascending, within `tolerance`.
 ///
@@ -76,17 +80,29 @@ fn refine(
             value = shift + form / dot(&x, &weighted);
         }
         *storage = Some(factored.into_storage());
-        // x · T(λ) x = x · T(shift) x − (λ − shift) x · N(λ, shift) x has its zero at λ; the Rayleigh quotient takes
-        // N(shift, shift) and is less exact when there are poles.
-        let exact = if pencil.is_linear() {
-            value
+        // x · T(λ) x = x · T(shift) x − (λ − shift) x · N(λ, shift) x has its zero at λ. With poles the Rayleigh quotient,
+        // which takes N(shift, shift), is off by the square of the distance to the shift.
+        let mut exact = value;
+        let mut moved = f64::INFINITY;
+        for _ in 0..if pencil.is_linear() {
+            0
         } else {
-            shift + form / pencil.inner(value, &x, shift, &x)
-        };
+            MAX_CORRECTIONS
+        } {
+            let next = shift + form / pencil.inner(exact, &x, shift, &x);
+            moved = (next - exact).abs();
+            exact = next;
+            if moved <= 0.1 * tolerance {
+                break;
+            }
+        }
         if !exact.is_finite() {
             return None;
         }
-        if (value - before).abs() <= tolerance && (exact - value).abs() <= tolerance {
+        let settled = pencil.is_linear() || moved <= 0.1 * tolerance;
+        // What the vector lacks for the same reason enters the value squared.
+        let near = (exact - value).abs() <= NEAR * tolerance;
+        if (value - before).abs() <= tolerance && settled && near {
             return Some(exact);
         }
         shift = exact;

@@ -110,6 +110,7 @@ struct WindowRow {
     unit: &'static str,
     low: f64,
     high: f64,
+    design_inside: bool,
     inside: usize,
     of: usize,
     share: f64,
@@ -213,7 +214,10 @@ impl Tolerances {
                 sampled
                     .windows
                     .iter()
-                    .map(|w| window_row(&w.window, w.share))
+                    .map(|w| {
+                        let (from, to) = (w.window.from.index - 1, w.window.to.index - 1);
+                        window_row(&w.window, energy_ev(&outcome.levels_ev, from, to), w.share)
+                    })
                     .collect()
             }),
             all_windows: sampled.and_then(|s| s.all_windows).map(|share| ShareRow {
@@ -254,8 +258,8 @@ impl Tolerances {
                     vec![
                         s.quantity.clone(),
                         s.step.to_owned(),
-                        signed(s.energy_meV),
-                        signed(s.wavelength_um),
+                        signed(s.energy_meV, s.energy_meV),
+                        signed(s.wavelength_um, s.energy_meV),
                     ]
                 })
                 .collect();
@@ -351,11 +355,14 @@ impl Tolerances {
                 "{} to {} from {} to {} {}: {}.\n",
                 w.from,
                 number(&w.to),
-                significant(w.low, 5),
-                significant(w.high, 5),
+                bound(w.low),
+                bound(w.high),
                 w.unit,
                 share_in_words(w.share, w.share_low, w.share_high)
             );
+            if !w.design_inside {
+                text += "The design itself lies outside of this window: tune it first.\n";
+            }
         }
         if let Some(all) = &self.all_windows {
             text += &format!(
@@ -471,7 +478,7 @@ fn distribution_row(t: &Distributed, design_ev: f64, sampled: &Sampled) -> Distr
     }
 }
 
-fn window_row(window: &Window, share: Share) -> WindowRow {
+fn window_row(window: &Window, design_ev: f64, share: Share) -> WindowRow {
     let [low_ev, high_ev] = window.energies_ev;
     let (unit, low, high) = if window.as_wavelength {
         ("µm", HC_EV_UM / high_ev, HC_EV_UM / low_ev)
@@ -484,6 +491,7 @@ fn window_row(window: &Window, share: Share) -> WindowRow {
         unit,
         low,
         high,
+        design_inside: (low_ev..=high_ev).contains(&design_ev),
         inside: share.inside,
         of: share.of,
         share: share.share,
@@ -508,9 +516,10 @@ fn radial_row(ring: &Ring, (from, to): (usize, usize), windows: &[Window]) -> Ra
     }
 }
 
-fn signed(value: f64) -> String {
-    // Below a nanoelectronvolt or a hundredth of a picometre nothing is meant.
-    if value.abs() < 1e-6 {
+/// A shift; one of so small an energy that nobody can measure it is none.
+fn signed(value: f64, shift_mev: f64) -> String {
+    const LEAST_MEV: f64 = 1e-4;
+    if shift_mev.abs() < LEAST_MEV {
         return "0".to_owned();
     }
     let text = significant(value, 3);
@@ -518,6 +527,15 @@ fn signed(value: f64) -> String {
         format!("+{text}")
     } else {
         text
+    }
+}
+
+/// A bound that the user wrote: as short as it can be within six digits.
+fn bound(value: f64) -> String {
+    let text = significant(value, 6);
+    match text.contains(['.']) && !text.contains('e') {
+        true => text.trim_end_matches('0').trim_end_matches('.').to_owned(),
+        false => text,
     }
 }
 

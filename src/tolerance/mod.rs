@@ -44,13 +44,31 @@ pub enum ToleranceError {
     },
     #[error("graded interfaces leave nothing of a layer")]
     NoLayer,
+    #[error(
+        "a window names conduction {wanted}, but the stack is too small a box for more than {levels} levels"
+    )]
+    NoLevel { wanted: usize, levels: usize },
 }
+
+impl ToleranceError {
+    /// A layer of the design that does not suit, when all layers of the file do.
+    fn interface(design: &Design, layer: usize, reason: Unsuitable) -> Self {
+        ToleranceError::Interface {
+            interface: design.stack().layers[layer].label.clone(),
+            reason,
+        }
+    }
+}
+
+/// The mesh of sampled wafers is this exact, in eV: far less than any spread that can be grown.
+const SAMPLING_TOLERANCE_EV: f64 = 1e-6;
 
 /// Works out the tolerances of a structure. `samples` takes the place of the file's number of wafers. `watch` is told how
 /// many wafers are done.
 ///
 /// # Errors
-/// When a material, or the mixed crystal of two at an interface, does not suit the model.
+/// When a material, or the mixed crystal of two at an interface, does not suit the model; when a layer vanishes or a
+/// window's level does not exist.
 pub fn tolerance(
     structure: &Structure,
     stack: &Stack,
@@ -72,10 +90,7 @@ pub fn tolerance(
         .and_then(|tolerance| tolerance.grading.as_ref())
         .map(|grading| grading.length_nm);
     let design = Design::new(stack, grading_nm).map_err(|_| ToleranceError::NoLayer)?;
-    let unsuitable = |(layer, reason): (usize, Unsuitable)| ToleranceError::Interface {
-        interface: design.stack().layers[layer].label.clone(),
-        reason,
-    };
+    let unsuitable = |(layer, reason)| ToleranceError::interface(&design, layer, reason);
     let solved = match grading_nm {
         None => abrupt.clone(),
         Some(_) => {
@@ -83,27 +98,29 @@ pub fn tolerance(
             subbands::solve(&operator, levels, accuracy)
         }
     };
+    if let Some(wanted) = highest.filter(|wanted| *wanted > solved.pairs.len()) {
+        let levels = solved.pairs.len();
+        return Err(ToleranceError::NoLevel { wanted, levels });
+    }
     let nearby = Nearby::new(&solved);
     let sensitivities = sensitivities(structure, stack, &design, model, &nearby);
-    let sampled = stated.and_then(|tolerance| {
-        let sources = sources(structure, stack, tolerance, &design, &nearby);
-        let samples = samples.unwrap_or(tolerance.samples);
-        (!sources.is_empty()).then(|| {
-            sample(
-                model,
-                &design,
-                &nearby,
-                &sources,
-                windows,
-                (samples, tolerance.seed),
-                watch,
-            )
-        })
-    });
-    let rings = match stated.and_then(|tolerance| tolerance.radial) {
-        Some(radial) => {
-            radial::rings(&design, model, radial, levels, accuracy).map_err(unsuitable)?
+    let sampled = match stated {
+        None => None,
+        Some(tolerance) => {
+            let operator = ConductionOperator::new(design.stack(), model).map_err(unsuitable)?;
+            let coarse = Accuracy {
+                tolerance_ev: accuracy.tolerance_ev.max(SAMPLING_TOLERANCE_EV),
+            };
+            let solved = subbands::solve(&operator, levels, coarse);
+            let nearby = Nearby::new(&solved);
+            let sources = sources(structure, stack, tolerance, &design, &nearby);
+            let count = (samples.unwrap_or(tolerance.samples), tolerance.seed);
+            (!sources.is_empty())
+                .then(|| sample(model, &design, &nearby, &sources, windows, count, watch))
         }
+    };
+    let rings = match stated.and_then(|tolerance| tolerance.radial) {
+        Some(radial) => radial::rings(&design, model, radial, levels, accuracy)?,
         None => Vec::new(),
     };
     Ok(Outcome {

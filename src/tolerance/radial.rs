@@ -1,6 +1,7 @@
 //! The levels from the centre of a wafer to its edge.
 
-use crate::models::{ConductionOperator, Unsuitable};
+use super::ToleranceError;
+use crate::models::ConductionOperator;
 use crate::structure::{Cause, ConductionModel, Design, Radial};
 use crate::subbands::{self, Accuracy};
 
@@ -24,17 +25,17 @@ pub fn rings(
     radial: Radial,
     levels: usize,
     accuracy: Accuracy,
-) -> Result<Vec<Ring>, (usize, Unsuitable)> {
+) -> Result<Vec<Ring>, ToleranceError> {
     let mut rings = Vec::new();
     let mut wafer = design.stack().clone();
     for ring in 0..RINGS {
         let part = ring as f64 / (RINGS - 1) as f64;
         let drop = radial.drop * part * part;
-        // A thickness that falls by no more than half leaves something of every layer but graded interfaces' last bit.
-        if design.grow(&mut wafer, &[Cause::Rate], &[-drop]).is_err() {
-            break;
-        }
-        let operator = ConductionOperator::new(&wafer, model)?;
+        design
+            .grow(&mut wafer, &[Cause::Rate], &[-drop])
+            .map_err(|_| ToleranceError::NoLayer)?;
+        let operator = ConductionOperator::new(&wafer, model)
+            .map_err(|(layer, reason)| ToleranceError::interface(design, layer, reason))?;
         let solved = subbands::solve(&operator, levels, accuracy);
         rings.push(Ring {
             radius_mm: part * radial.radius_mm,

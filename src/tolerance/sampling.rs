@@ -18,7 +18,7 @@ use std::sync::atomic::{AtomicUsize, Ordering};
 /// Receives the number of wafers done.
 pub type Watch<'w> = &'w (dyn Fn(usize) + Sync);
 
-/// Each wafer's energies are this near to those of its mesh, in eV: far less than any spread that can be grown.
+/// Each wafer's energies are this near to those of its mesh, in eV.
 const TOLERANCE_EV: f64 = 1e-7;
 /// Wafers between two calls of the watch.
 const WATCHED: usize = 256;
