@@ -342,13 +342,18 @@ impl Tolerances {
                 number(&d.to),
                 named.join(", ")
             );
-            if d.unbound > 0 {
-                text += &format!(
-                    "In {} of the wafers {} lies above the lower outer barrier edge: only the walls hold it.\n",
-                    percent(d.unbound as f64 / samples as f64, 1),
-                    d.to
-                );
+        }
+        let mut told: Vec<&str> = Vec::new();
+        for d in shown().filter(|d| d.unbound > 0) {
+            if told.contains(&d.to.as_str()) {
+                continue;
             }
+            told.push(&d.to);
+            text += &format!(
+                "In {} of the wafers {} lies above the lower outer barrier edge: only the walls hold it.\n",
+                percent(d.unbound as f64 / samples as f64, 1),
+                d.to
+            );
         }
         for w in &self.windows {
             text += &format!(

@@ -55,7 +55,7 @@ pub fn level_slopes(
     cause: &Cause,
 ) -> Option<Vec<f64>> {
     let step = step(design, cause);
-    if !(step > 0.0) {
+    if step.is_nan() || step <= 0.0 {
         return None;
     }
     let cold = *cause == Cause::Temperature && design.stack().temperature_k() < 2.0 * step;

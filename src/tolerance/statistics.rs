@@ -74,7 +74,7 @@ pub struct Histogram {
 pub fn histogram(values: &[f64]) -> Option<Histogram> {
     let low = values.iter().copied().fold(f64::INFINITY, f64::min);
     let high = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-    if !(high > low) {
+    if high.is_nan() || high <= low {
         return None;
     }
     let width = (high - low) / BINS as f64;
