@@ -591,6 +591,18 @@ fn mistakes_are_named_with_their_place() {
             12,
             &["nothing by which wafers differ", "`rate`", "`radial`"],
         ),
+        (
+            "tolerance: {rate: 0 %}",
+            5,
+            19,
+            &["out of range", "above 0 %"],
+        ),
+        (
+            "tolerance: {grading: 0.5 nm, window: {from: conduction 1, to: conduction 2, energy: [1 meV, 2 meV]}}",
+            5,
+            12,
+            &["there is a window", "a spread"],
+        ),
         ("tolerance: [1]", 5, 12, &["`tolerance`, a mapping"]),
         (
             "tolerance: {rate: 120 %}",
@@ -602,7 +614,7 @@ fn mistakes_are_named_with_their_place() {
             "tolerance: {rate: -1 %}",
             5,
             19,
-            &["out of range", "from 0 %"],
+            &["out of range", "above 0 %"],
         ),
         ("tolerance: {rate: 0.7}", 5, 19, &["has no unit", "`0.7 %`"]),
         (

@@ -17,6 +17,8 @@ const DEFINITIONS: [&str; 4] = [
 ];
 /// Contributors that are named in the table.
 const NAMED: usize = 3;
+/// A smaller share of the variance is not named.
+const LEAST_SHARE: f64 = 0.005;
 
 /// The tolerances of a design.
 #[derive(Debug, Serialize)]
@@ -333,6 +335,7 @@ impl Tolerances {
             let named: Vec<String> = d
                 .contributors
                 .iter()
+                .filter(|c| c.variance_share >= LEAST_SHARE)
                 .take(NAMED)
                 .map(|c| format!("{} {}", c.quantity, percent(c.variance_share, 0)))
                 .collect();

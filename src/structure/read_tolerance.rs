@@ -28,11 +28,19 @@ const MAX_SAMPLES: u32 = 100_000;
 const DEFAULT_SEED: u64 = 1;
 const MAX_WINDOWS: usize = 100;
 
-const PART_LIMITS: Limits = between(0.0, 1.0, "a standard deviation from 0 % to 100 %");
-const LENGTH_LIMITS: Limits = between(0.0, 100.0, "a length from 0 nm to 100 nm");
-const FRACTION_LIMITS: Limits = between(0.0, 1.0, "a standard deviation from 0 to 1");
-const FIELD_LIMITS: Limits = between(0.0, 0.1, "a standard deviation from 0 kV/cm to 1000 kV/cm");
-const TEMPERATURE_LIMITS: Limits = between(0.0, 1000.0, "a standard deviation from 0 K to 1000 K");
+const PART_LIMITS: Limits = above(0.0, 1.0, "a standard deviation above 0 %, at most 100 %");
+const LENGTH_LIMITS: Limits = above(0.0, 100.0, "more than 0 nm, at most 100 nm");
+const FRACTION_LIMITS: Limits = above(0.0, 1.0, "a standard deviation above 0, at most 1");
+const FIELD_LIMITS: Limits = above(
+    0.0,
+    0.1,
+    "a standard deviation above 0 kV/cm, at most 1000 kV/cm",
+);
+const TEMPERATURE_LIMITS: Limits = above(
+    0.0,
+    1000.0,
+    "a standard deviation above 0 K, at most 1000 K",
+);
 const DROP_LIMITS: Limits = between(-0.5, 0.5, "from -50 % to 50 %");
 const RADIUS_LIMITS: Limits = above(0.0, 1e9, "more than 0 mm, at most 1 m");
 
@@ -85,7 +93,7 @@ pub(super) fn tolerance(checker: &mut Checker, node: &Node) -> Option<Tolerance>
     };
     let windows = fields.get("window").map(|node| windows(checker, node));
     let radial = fields.get("radial").map(|node| radial(checker, node));
-    Some(Tolerance {
+    let tolerance = Tolerance {
         rate: settled(rate)?,
         flux: settled(flux)?.unwrap_or_default(),
         jitter: settled(jitter)?,
@@ -97,7 +105,16 @@ pub(super) fn tolerance(checker: &mut Checker, node: &Node) -> Option<Tolerance>
         seed: seed?,
         windows: settled(windows)?.unwrap_or_default(),
         radial: settled(radial)?,
-    })
+    };
+    if !tolerance.windows.is_empty() && !tolerance.has_spreads() && tolerance.radial.is_none() {
+        checker.report(
+            Diagnostic::error("there is a window, but nothing by which wafers differ")
+                .at(fields.head)
+                .expected("a spread, such as `rate: 0.7 %`"),
+        );
+        return None;
+    }
+    Some(tolerance)
 }
 
 /// `None` when the key was there but mistaken.
@@ -174,30 +191,23 @@ fn jitter(checker: &mut Checker, node: &Node) -> Option<Spanned<Quantity>> {
 
 /// `0.5 nm` or `{length: 0.5 nm, spread: 0.1 nm}`.
 fn grading(checker: &mut Checker, node: &Node) -> Option<Grading> {
-    let limits = above(0.0, 100.0, "more than 0 nm, at most 100 nm");
-    let length = |checker: &mut Checker, node: &Node, limits| {
-        Some(
-            checker
-                .quantity(node, &[Dimension::Length], limits)?
-                .value
-                .value(),
-        )
+    let length = |checker: &mut Checker, node: &Node| {
+        let length = checker.quantity(node, &[Dimension::Length], LENGTH_LIMITS)?;
+        Some(length.value.value())
     };
     let span = checker.head(&node.span);
     if !matches!(node.value, Value::Map(_)) {
         return Some(Grading {
-            length_nm: length(checker, node, limits)?,
+            length_nm: length(checker, node)?,
             spread_nm: 0.0,
             span,
         });
     }
     let fields = checker.fields(node, "`grading`", &["length", "spread"])?;
     checker.missing(&fields, "`grading`", "length", "0.5 nm");
-    let length_nm = fields
-        .get("length")
-        .and_then(|node| length(checker, node, limits));
+    let length_nm = fields.get("length").and_then(|node| length(checker, node));
     let spread_nm = match fields.get("spread") {
-        Some(node) => length(checker, node, LENGTH_LIMITS),
+        Some(node) => length(checker, node),
         None => Some(0.0),
     };
     let (length_nm, spread_nm) = (length_nm?, spread_nm?);

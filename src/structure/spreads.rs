@@ -28,6 +28,19 @@ pub struct Tolerance {
     pub radial: Option<Radial>,
 }
 
+impl Tolerance {
+    /// Whether wafers differ from one another at all.
+    pub fn has_spreads(&self) -> bool {
+        self.rate.is_some()
+            || !self.flux.is_empty()
+            || self.jitter.is_some()
+            || self.composition.is_some()
+            || self.grading.as_ref().is_some_and(|g| g.spread_nm > 0.0)
+            || self.field_v_per_nm.is_some()
+            || self.temperature_k.is_some()
+    }
+}
+
 /// Interfaces over which the crystals on both sides have mixed.
 ///
 /// Each interface becomes a layer of this length, centred where the abrupt interface would be, in which every material

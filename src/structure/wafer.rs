@@ -330,12 +330,12 @@ impl Design {
             }
             return Ok(());
         };
-        let last = wafer.layers.len() - 1;
+        let count = wafer.layers.len();
         for (index, layer) in wafer.layers.iter_mut().enumerate() {
             layer.width_nm = if index % 2 == 1 {
                 grading_nm
             } else {
-                let sides = f64::from(u8::from(index > 0) + u8::from(index < last));
+                let sides = f64::from(u8::from(index > 0) + u8::from(index + 1 < count));
                 positive(width_nm(index / 2) - 0.5 * sides * grading_nm)?
             };
         }

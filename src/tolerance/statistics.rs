@@ -58,7 +58,11 @@ pub fn share(inside: usize, of: usize) -> Share {
         inside,
         of,
         share: p,
-        interval: [(centre - half).max(0.0), (centre + half).min(1.0)],
+        // Rounding must not take the ends away from where the formula has them.
+        interval: [
+            if inside == 0 { 0.0 } else { centre - half },
+            if inside == of { 1.0 } else { centre + half },
+        ],
     }
 }
 
