@@ -218,6 +218,34 @@ fn shifts_of_a_double_well_are_those_of_full_solves() {
     }
 }
 
+/// Next to absolute zero there is no room for a colder wafer, and the gap's slope vanishes.
+#[test]
+fn shifts_in_the_cold_are_those_of_full_solves() {
+    let at = |kelvin: f64| {
+        let off = Off {
+            temperature_k: kelvin - 77.0,
+            ..Off::default()
+        };
+        double_well("energy-dependent", off)
+    };
+    let list = sensitivities_of(&at(0.4));
+    let expected = slopes(|amount| levels(&at(0.4 + amount)), 0.1);
+    for (shift, exact) in named(&list, "temperature")
+        .level_shifts_ev
+        .iter()
+        .zip(expected)
+    {
+        // Some neV per K: an energy of 1 eV is rounded to 2e-16 eV, which a step of 0.1 K makes 1e-14 eV/K.
+        assert!(
+            (shift - exact).abs() < 1e-6 * exact.abs() + 3e-14,
+            "{shift:e} for {exact:e}"
+        );
+    }
+    let list = sensitivities_of(&at(0.0));
+    let still = named(&list, "temperature");
+    assert!(still.level_shifts_ev.iter().all(|ev| ev.abs() < 1e-8));
+}
+
 /// Three group-III elements on InP, strained, with one of four mixed on both sublattices: in a layer the fluxes share out
 /// as xᵢ (1 + δᵢ)/Σ.
 #[test]

@@ -5,6 +5,7 @@ use super::file::Profile;
 use super::grade::Law;
 use super::stack::{Content, Face, Layer, Stack};
 use crate::materials::{Composition, Element, Sublattice, Substance};
+use std::collections::HashMap;
 
 /// Something in which a wafer can be off; layers and entries are those of the file's stack.
 #[derive(Clone, Debug, PartialEq)]
@@ -279,14 +280,14 @@ impl Design {
     fn insert_interfaces(&mut self) {
         let count = self.stack.contents.len();
         let layers = std::mem::take(&mut self.stack.layers);
+        let mut kinds = HashMap::new();
         for (index, layer) in layers.iter().enumerate() {
             self.stack.layers.push(layer.clone());
             let Some(above) = layers.get(index + 1) else {
                 break;
             };
             let pair = (layer.entry, above.entry);
-            let kind = self.interfaces.iter().position(|known| *known == pair);
-            let kind = kind.unwrap_or_else(|| {
+            let kind = *kinds.entry(pair).or_insert_with(|| {
                 self.interfaces.push(pair);
                 self.interfaces.len() - 1
             });

@@ -32,7 +32,7 @@ const FORWARD: &[(f64, f64)] = &[
 const PART_STEP: f64 = 1e-3;
 const FRACTION_STEP: f64 = 1e-3;
 const FIELD_STEP_V_PER_NM: f64 = 1e-5;
-const TEMPERATURE_STEP_K: f64 = 1.0;
+const TEMPERATURE_STEP_K: f64 = 0.25;
 
 fn step(design: &Design, cause: &Cause) -> f64 {
     match cause {
