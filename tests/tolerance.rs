@@ -374,6 +374,24 @@ fn a_well_with_hard_walls_shifts_as_its_closed_form() {
     }
 }
 
+/// Towards the edge the same well thins out by drop (r/radius)², and its levels rise as 1/L².
+#[test]
+fn a_well_with_hard_walls_rises_towards_the_edge() {
+    let text = "bands: {conduction: {model: parabolic, states: 2}}\nmaterials: {W: {conduction_edge: 0 eV, electron_mass: 0.067}}\n\
+                layers: [{name: well, material: W, width: 10 nm}]\n\
+                tolerance: {radial: {drop: 4 %, radius: 35 mm}}\n";
+    let outcome = outcome(text);
+    assert!(outcome.sampled.is_none());
+    let radii: Vec<f64> = outcome.rings.iter().map(|ring| ring.radius_mm).collect();
+    assert_eq!((radii[0], radii[radii.len() - 1]), (0.0, 35.0));
+    for ring in &outcome.rings {
+        let left = 1.0 - 0.04 * (ring.radius_mm / 35.0).powi(2);
+        for (level, centre) in ring.levels_ev.iter().zip(&outcome.levels_ev) {
+            assert!((level * left * left / centre - 1.0).abs() < 1e-9);
+        }
+    }
+}
+
 /// An interface of graded length is what the file's own graded layers make of two materials given by numbers, and its
 /// effect grows with the square of the length: the mixed crystal takes as much from one side as it gives to the other.
 #[test]
@@ -775,6 +793,26 @@ fn mistakes_are_named_with_their_place() {
         found.len() == 1 && found[0].2.contains("no layer is an alloy"),
         "{found:?}"
     );
+}
+
+/// Without a `tolerance` block there are shifts, and the command says why there is no more.
+#[test]
+fn shifts_need_no_block() {
+    let mut file = tempfile::NamedTempFile::new().unwrap();
+    let text = double_well("parabolic", Off::default());
+    std::io::Write::write_all(&mut file, text.as_bytes()).unwrap();
+    let run = program()
+        .arg("tolerance")
+        .arg(file.path())
+        .output()
+        .unwrap();
+    assert!(run.status.success());
+    let (text, said) = (
+        String::from_utf8(run.stdout).unwrap(),
+        String::from_utf8(run.stderr).unwrap(),
+    );
+    assert!(text.contains("width of layer 2") && !text.contains("wafers\n"));
+    assert!(said.contains("no `tolerance` block"), "{said}");
 }
 
 /// Shipped structures sample without a hitch, and the command says what it must.
