@@ -218,7 +218,7 @@ fn shifts_of_a_double_well_are_those_of_full_solves() {
     }
 }
 
-/// Next to absolute zero there is no room for a colder wafer, and the gap's slope vanishes.
+/// Next to absolute zero there is no room for a colder wafer.
 #[test]
 fn shifts_in_the_cold_are_those_of_full_solves() {
     let at = |kelvin: f64| {
@@ -241,9 +241,6 @@ fn shifts_in_the_cold_are_those_of_full_solves() {
             "{shift:e} for {exact:e}"
         );
     }
-    let list = sensitivities_of(&at(0.0));
-    let still = named(&list, "temperature");
-    assert!(still.level_shifts_ev.iter().all(|ev| ev.abs() < 1e-8));
 }
 
 /// Three group-III elements on InP, strained, with one of four mixed on both sublattices: in a layer the fluxes share out
