@@ -671,7 +671,7 @@ fn mistakes_are_named_with_their_place() {
             "tolerance: {flux: {Xx: 1 %}}",
             5,
             20,
-            &["`Xx` is no element"],
+            &["`Xx` is no element", "expected `Al`, `Ga` or `In`"],
         ),
         (
             "tolerance: {flux: {ga: 1 %}}",

@@ -23,6 +23,8 @@ const SPREADS: [&str; 7] = [
     "field",
     "temperature",
 ];
+/// The elements whose fluxes set the growth rate.
+const FLUXES: [Element; 3] = [Element::Al, Element::Ga, Element::In];
 const DEFAULT_SAMPLES: u32 = 10_000;
 const MAX_SAMPLES: u32 = 100_000;
 const DEFAULT_SEED: u64 = 1;
@@ -148,7 +150,7 @@ fn flux(checker: &mut Checker, node: &Node) -> Option<Vec<Spanned<(Element, f64)
         if checker.is_full() {
             return None;
         }
-        let element = element(checker, key).filter(|element| {
+        let element = element(checker, key, &FLUXES).filter(|element| {
             let of_group_three = element.sublattice() == Sublattice::GroupThree;
             if !of_group_three {
                 checker.report(
