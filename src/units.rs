@@ -17,6 +17,8 @@ pub enum Dimension {
     VolumeDensity,
     SheetDensity,
     Stiffness,
+    /// A part of the quantity that is spoken of; 1 % is 0.01 inside.
+    Percentage,
 }
 
 impl Dimension {
@@ -31,6 +33,7 @@ impl Dimension {
             Dimension::VolumeDensity => "a density per volume",
             Dimension::SheetDensity => "a density per area",
             Dimension::Stiffness => "an elastic constant",
+            Dimension::Percentage => "a percentage",
         }
     }
 
@@ -45,6 +48,7 @@ impl Dimension {
             Dimension::VolumeDensity => "5e17 cm^-3",
             Dimension::SheetDensity => "5e11 cm^-2",
             Dimension::Stiffness => "122.1 GPa",
+            Dimension::Percentage => "0.7 %",
         }
     }
 }
@@ -109,6 +113,7 @@ pub static UNITS: &[Unit] = &[
     unit!("m^-2", SheetDensity, 1e-4, "m-2", "m⁻²", "1/m^2"),
     unit!("GPa", Stiffness, 1.0),
     unit!("kbar", Stiffness, 0.1),
+    unit!("%", Percentage, 1e-2),
 ];
 
 /// A number with its unit, as the user wrote it.

@@ -10,6 +10,7 @@ mod output;
 mod plot;
 mod progress;
 mod run;
+mod tolerance;
 mod tune;
 
 pub use arguments::Arguments;

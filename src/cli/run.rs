@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, levels, materials, plot, tune};
+use super::{check, levels, materials, plot, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -13,6 +13,12 @@ pub fn run(arguments: Arguments) -> Exit {
             format,
             output,
         } => tune::tune(&file, format, &output),
+        Command::Tolerance {
+            file,
+            samples,
+            threads,
+            output,
+        } => tolerance::tolerance(&file, samples, threads, &output),
         Command::Check { file } => check::check(&file),
         Command::Plot {
             file,

@@ -4,10 +4,12 @@ mod levels;
 mod materials;
 pub mod svg;
 mod table;
+mod tolerance;
 mod tuning;
 
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
+pub use tolerance::Tolerances;
 pub use tuning::Tuning;
 
 use serde::Serialize;

@@ -2,6 +2,7 @@
 
 use super::document::Node;
 use super::rewrite::FreeLine;
+use super::spreads::Tolerance;
 use crate::materials::{Element, Library, Substance};
 use crate::units::Quantity;
 use std::ops::Range;
@@ -43,6 +44,7 @@ pub struct Structure {
     /// How the entries follow one another, bottom first.
     pub sequence: Vec<Item>,
     pub tune: Option<Tune>,
+    pub tolerance: Option<Tolerance>,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
 }

@@ -5,7 +5,7 @@ use super::fields::{Checker, Limits};
 use super::file::{ConductionBand, ConductionModel, Structure};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
-use super::{read_materials, read_tune};
+use super::{read_materials, read_tolerance, read_tune};
 use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
@@ -23,7 +23,7 @@ const KEYS: [&str; 11] = [
     "tolerance",
 ];
 /// Parts of the format that other commands will read one day.
-const UNREAD: [&str; 2] = ["growth", "tolerance"];
+const UNREAD: [&str; 1] = ["growth"];
 const TEMPERATURE_LIMITS: Limits =
     super::fields::between(0.0, 1000.0, "a temperature from 0 K to 1000 K");
 const DEFAULT_TEMPERATURE_K: f64 = 300.0;
@@ -126,6 +126,9 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let tune = fields
         .get("tune")
         .and_then(|node| read_tune::tune(checker, node, entries));
+    let tolerance = fields
+        .get("tolerance")
+        .and_then(|node| read_tolerance::tolerance(checker, node));
     for key in UNREAD {
         if let Some(place) = key_span(root, key) {
             checker.report(
@@ -149,6 +152,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
             .collect::<Option<_>>()?,
         sequence: layers.sequence,
         tune,
+        tolerance,
         field_line: free_line(checker.text, root),
     })
 }
