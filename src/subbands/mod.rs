@@ -13,7 +13,7 @@ pub use change::change;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
 pub use nearby::{Nearby, lower_outer_edge_ev};
-pub use state::{Hold, State};
+pub use state::{Hold, State, in_plane_mass_m0};
 
 use crate::models::ConductionOperator;
 use crate::numerics::eigenpairs::{self, Eigenpair};
@@ -99,12 +99,11 @@ pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subba
 }
 
 fn pencil_on(operator: &ConductionOperator, mesh: Mesh) -> Pencil {
-    let frame = mesh.clone();
-    Pencil::new(mesh, |element, q| {
+    Pencil::new(mesh, |mesh, element, q| {
         operator.at(
             element.segment,
-            frame.fraction(element, q),
-            frame.position(element, q),
+            mesh.fraction(element, q),
+            mesh.position(element, q),
         )
     })
 }
