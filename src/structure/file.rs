@@ -1,6 +1,7 @@
 //! What a structure file says, checked, with the places it was read from.
 
 use super::document::Node;
+use super::growth::Growth;
 use super::rewrite::FreeLine;
 use crate::materials::{Element, Library, Substance};
 use crate::units::Quantity;
@@ -43,6 +44,7 @@ pub struct Structure {
     /// How the entries follow one another, bottom first.
     pub sequence: Vec<Item>,
     pub tune: Option<Tune>,
+    pub growth: Option<Growth>,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
 }

@@ -5,7 +5,7 @@ use super::fields::{Checker, Limits};
 use super::file::{ConductionBand, ConductionModel, Structure};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
-use super::{read_materials, read_tune};
+use super::{read_growth, read_materials, read_tune};
 use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
@@ -23,7 +23,7 @@ const KEYS: [&str; 11] = [
     "tolerance",
 ];
 /// Parts of the format that other commands will read one day.
-const UNREAD: [&str; 2] = ["growth", "tolerance"];
+const UNREAD: [&str; 1] = ["tolerance"];
 const TEMPERATURE_LIMITS: Limits =
     super::fields::between(0.0, 1000.0, "a temperature from 0 K to 1000 K");
 const DEFAULT_TEMPERATURE_K: f64 = 300.0;
@@ -54,7 +54,12 @@ pub fn read(text: &str) -> (Option<Structure>, Vec<Diagnostic>) {
     let structure = structure.filter(|_| !wrong(&problems));
     if let Some(structure) = &structure {
         match structure.stack() {
-            Ok(stack) => problems.extend(super::doubts::doubts(structure, &stack)),
+            Ok(stack) => {
+                problems.extend(super::doubts::doubts(structure, &stack));
+                if let Some(growth) = &structure.growth {
+                    problems.extend(read_growth::of_stack(growth, structure, &stack));
+                }
+            }
             Err(errors) => problems.extend(errors),
         }
     }
@@ -126,6 +131,22 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let tune = fields
         .get("tune")
         .and_then(|node| read_tune::tune(checker, node, entries));
+    let growth = fields.get("growth").map(|node| {
+        if !fields.has("substrate") {
+            checker.report(
+                Diagnostic::error("`growth` needs a substrate, on which monolayers are counted")
+                    .at(key_span(root, "growth").unwrap_or_default())
+                    .expected("a line such as `substrate: GaAs` at the top of the file"),
+            );
+            return None;
+        }
+        let chamber = read_growth::Chamber {
+            known: &known,
+            substrate: substrate.as_ref().and_then(Option::as_ref),
+            entries,
+        };
+        read_growth::growth(checker, node, &chamber)
+    });
     for key in UNREAD {
         if let Some(place) = key_span(root, key) {
             checker.report(
@@ -149,6 +170,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
             .collect::<Option<_>>()?,
         sequence: layers.sequence,
         tune,
+        growth: settled(growth)?,
         field_line: free_line(checker.text, root),
     })
 }
