@@ -32,6 +32,17 @@ pub enum Command {
         #[arg(short, long, value_name = "FILE")]
         output: Vec<PathBuf>,
     },
+    /// Print the growth sheet of a stack with a `growth` block
+    Sheet {
+        /// Structure file
+        file: PathBuf,
+        /// Form of the sheet; a table, or a page when the output's name ends in .html
+        #[arg(long, value_enum)]
+        format: Option<SheetFormat>,
+        /// Write the sheet to a file instead of the terminal
+        #[arg(short, long, value_name = "FILE")]
+        output: Option<PathBuf>,
+    },
     /// Read and check a structure file without solving it
     Check {
         /// Structure file
@@ -65,4 +76,13 @@ pub enum Format {
     Table,
     Csv,
     Json,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum SheetFormat {
+    Table,
+    Csv,
+    Json,
+    /// One page that holds everything and prints on A4
+    Html,
 }

@@ -9,6 +9,7 @@ mod materials;
 mod output;
 mod progress;
 mod run;
+mod sheet;
 mod tune;
 
 pub use arguments::Arguments;

@@ -2,11 +2,16 @@
 
 mod levels;
 mod materials;
+mod sheet;
+mod sheet_csv;
+mod sheet_html;
+mod sheet_text;
 mod table;
 mod tuning;
 
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
+pub use sheet::Sheet;
 pub use tuning::Tuning;
 
 use serde::Serialize;
