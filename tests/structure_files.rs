@@ -323,11 +323,8 @@ fn parts_that_are_not_available() {
         &[(1, 9, &["did you mean `conduction`?"])],
     );
     doubts(
-        &with("growth: {rates: {Ga: 0.7 ML/s}}\ntolerance: [1, 2]"),
-        &[
-            (1, &["`growth` is not used"]),
-            (2, &["`tolerance` is not used"]),
-        ],
+        &with("tolerance: [1, 2]"),
+        &[(1, &["`tolerance` is not used"])],
     );
 }
 

@@ -9,7 +9,11 @@ use crate::report::Sheet;
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
 
-pub fn sheet(file: &Path, format: Option<SheetFormat>, output: Option<&Path>) -> Result<Exit, Exit> {
+pub fn sheet(
+    file: &Path,
+    format: Option<SheetFormat>,
+    output: Option<&Path>,
+) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
     let plan = growth::plan(&input.structure, &input.stack);

@@ -71,7 +71,11 @@ mod tests {
         let arsenide = titles(&["Ga", "As", "Si"]);
         assert!(arsenide.iter().any(|t| t == "Arsine"));
         assert!(arsenide.iter().any(|t| t == "Gallium arsenide dust"));
-        assert!(!arsenide.iter().any(|t| t.contains("Beryllium") || t.contains("phosphine")));
+        assert!(
+            !arsenide
+                .iter()
+                .any(|t| t.contains("Beryllium") || t.contains("phosphine"))
+        );
         assert!(!titles(&["In", "P"]).iter().any(|t| t.contains("rsenic")));
     }
 }

@@ -90,13 +90,10 @@ pub fn plan(structure: &Structure, stack: &Stack) -> Result<Plan, Diagnostic> {
         .flat_map(|row| flags(structure, stack, &openings, row))
         .collect();
     Ok(Plan {
-        substrate: structure
-            .library
-            .composition(&substrate.value)
-            .map_or_else(
-                || name_of(&substrate.value),
-                |c| c.formula_to(FRACTION_DECIMALS),
-            ),
+        substrate: structure.library.composition(&substrate.value).map_or_else(
+            || name_of(&substrate.value),
+            |c| c.formula_to(FRACTION_DECIMALS),
+        ),
         total,
         shutters: shutters(growth, &rows, stack),
         materials: materials(growth, &rows, stack),
@@ -178,7 +175,12 @@ impl Planner<'_> {
             ))
             .at(source.material.span.clone())
         };
-        let layer = self.first.get(entry).copied().flatten().ok_or_else(unknown)?;
+        let layer = self
+            .first
+            .get(entry)
+            .copied()
+            .flatten()
+            .ok_or_else(unknown)?;
         let composition = stack.composition_at(layer, 0.0).ok_or_else(not_grown)?;
         let monolayer_nm = stack.monolayer_nm(layer).ok_or_else(not_grown)?;
         let Some(grown) = stack.layers.get(layer) else {
@@ -206,7 +208,9 @@ impl Planner<'_> {
             }
         };
         let to = source.to.as_ref().and_then(|to| {
-            let composition = stack.composition_at(layer, 1.0)?;
+            // A composition along the grade has its elements in the order of the lower material.
+            let own = structure.library.composition(&to.value);
+            let composition = own.or_else(|| stack.composition_at(layer, 1.0))?;
             Some(written(&to.value, &composition))
         });
         let fives = composition.elements().iter().filter(|element| {
@@ -238,12 +242,7 @@ impl Planner<'_> {
     }
 }
 
-fn flags(
-    structure: &Structure,
-    stack: &Stack,
-    openings: &[Opening],
-    row: &LayerRow,
-) -> Vec<Flag> {
+fn flags(structure: &Structure, stack: &Stack, openings: &[Opening], row: &LayerRow) -> Vec<Flag> {
     let mut found = Vec::new();
     if (row.monolayers - row.monolayers.round()).abs() > WHOLE {
         found.push(Flag::Remainder {

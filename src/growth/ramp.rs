@@ -41,15 +41,15 @@ pub fn ramp(growth: &Growth, openings: &[Opening], stack: &Stack, layer: usize) 
     let held = |e: usize| lower[e] > 0.0 || upper[e] > 0.0;
     // Along the height the fractions are at most quadratic, for which Simpson's rule is exact.
     let mean: [f64; 3] = std::array::from_fn(|e| (lower[e] + 4.0 * middle[e] + upper[e]) / 6.0);
+    // The fewest cells that bring all elements; of equals those that give one of the faces best without a ramp.
+    let near =
+        |opening: &Opening| miss(opening.fractions, lower).min(miss(opening.fractions, upper));
     let opening = openings
         .iter()
         .filter(|opening| (0..3).all(|e| held(e) == (opening.fractions[e] > 0.0)))
-        .reduce(|best, next| {
-            if miss(next.fractions, mean) < miss(best.fractions, mean) {
-                next
-            } else {
-                best
-            }
+        .min_by(|a, b| {
+            let fewer = a.cells.len().cmp(&b.cells.len());
+            fewer.then(near(a).total_cmp(&near(b)))
         })?;
     let host = (0..3).max_by(|a, b| {
         let least = |e: usize| lower[e].min(upper[e]);

@@ -69,7 +69,10 @@ impl Sums {
 pub enum Row {
     Layer(LayerRow),
     /// What follows, up to the end of the loop, is grown `count` times.
-    LoopBegins { count: u32, depth: usize },
+    LoopBegins {
+        count: u32,
+        depth: usize,
+    },
     LoopEnds {
         count: u32,
         depth: usize,

@@ -75,7 +75,9 @@ pub struct SheetRow {
     pub thickness_nm: Option<f64>,
     pub thickness_A: Option<f64>,
     pub monolayers: Option<f64>,
-    pub doping: String,
+    /// Species and density per cm³.
+    #[serde(serialize_with = "joined")]
+    pub doping: Vec<String>,
     pub open_cells: String,
     pub rate_ML_s: Option<f64>,
     pub time_s: Option<f64>,
@@ -308,8 +310,8 @@ impl Sheet {
                 "Designed for",
                 format!(
                     "{} K, field {} kV/cm",
-                    significant(self.temperature_k, 4),
-                    significant(self.field_kv_cm, 4)
+                    plain(self.temperature_k),
+                    plain(self.field_kv_cm)
                 ),
             ),
             ("Transitions", transitions.join("; ")),
@@ -329,6 +331,12 @@ impl Report for Sheet {
 
 fn hundredths(value: u64) -> f64 {
     value as f64 / 1e2
+}
+
+/// A number of the file with up to four decimals.
+fn plain(value: f64) -> String {
+    let text = format!("{value:.4}");
+    text.trim_end_matches('0').trim_end_matches('.').to_owned()
 }
 
 /// Hours, minutes and seconds.
@@ -356,7 +364,7 @@ fn sheet_row(row: &Row, growth: &Growth) -> SheetRow {
         thickness_nm: None,
         thickness_A: None,
         monolayers: None,
-        doping: String::new(),
+        doping: Vec::new(),
         open_cells: String::new(),
         rate_ML_s: None,
         time_s: None,
@@ -408,20 +416,24 @@ fn sheet_row(row: &Row, growth: &Growth) -> SheetRow {
     }
 }
 
-fn doping(layer: &LayerRow, growth: &Growth) -> String {
+/// A list as one text, which a CSV field can hold.
+fn joined<S: serde::Serializer>(list: &[String], serializer: S) -> Result<S::Ok, S::Error> {
+    serializer.serialize_str(&list.join(", "))
+}
+
+fn doping(layer: &LayerRow, growth: &Growth) -> Vec<String> {
     let parts = [
         (layer.donors_cm3, &growth.donors, "donors"),
         (layer.acceptors_cm3, &growth.acceptors, "acceptors"),
     ];
-    let written: Vec<String> = parts
+    parts
         .into_iter()
         .filter(|(density, _, _)| *density > 0.0)
         .map(|(density, species, word)| {
             let name = species.as_ref().map_or(word, |s| s.value.symbol);
             format!("{name} {density:e}")
         })
-        .collect();
-    written.join(", ")
+        .collect()
 }
 
 fn open_cells(filling: &Filling, growth: &Growth) -> String {
@@ -469,7 +481,7 @@ fn warning(flag: &Flag) -> Option<String> {
             let below = monolayers.floor();
             let (over, under) = (monolayers - below, below + 1.0 - monolayers);
             Some(format!(
-                "{label}: {monolayers:.2} monolayers are no whole number. {over:.2} ML ({:.4} nm) over {below}, {under:.2} ML ({:.4} nm) short of {}",
+                "{label}: {monolayers:.2} monolayers are no whole number, {over:.2} ML ({:.4} nm) over {below} and {under:.2} ML ({:.4} nm) short of {}",
                 over * monolayer_nm,
                 under * monolayer_nm,
                 below + 1.0
@@ -498,7 +510,7 @@ fn not_given(flag: &Flag, growth: &Growth) -> Option<NotGiven> {
     let digital_alloy = digital.as_ref().map(digital_alloy);
     Some(NotGiven {
         sentence: format!(
-            "{label}: no set of cells gives {wanted}. The nearest, {cells}, gives {given}, and the line above is timed for it"
+            "{label}: no set of cells gives {wanted}. The nearest, {cells}, gives {given}; its line is timed for that"
         ),
         layer: label.clone(),
         wanted,

@@ -71,9 +71,9 @@ impl Sheet {
                         .shutters
                         .iter()
                         .filter(|shutter| shutter.rate_ML_s.is_some())
-                        .map(|shutter| format!("{} ", escape(&shutter.cell)))
+                        .map(|shutter| escape(&shutter.cell))
                         .collect();
-                    ("rates", format!("{entry} of {}", cells.join(", ").trim()))
+                    ("rates", format!("{entry} of {}", cells.join(", ")))
                 }
                 "Remarks" => ("remarks", entry.to_owned()),
                 _ => ("", entry.to_owned()),
@@ -111,7 +111,7 @@ impl Sheet {
     fn layers(&self) -> String {
         let mut text = String::from(
             "<h2>Layers in growth order, the lowest first</h2>\n<table class=\"layers\"><thead><tr>\
-             <th>no</th><th class=\"w\">layer</th><th>nm</th><th>Å</th><th>ML</th>\
+             <th>no</th><th class=\"w n\">layer</th><th>nm</th><th>Å</th><th>ML</th>\
              <th class=\"w\">doping<br>cm⁻³</th><th class=\"w\">open cells</th><th>time s</th>\
              <th>height nm</th><th>clock h:m:s</th><th>done</th></tr></thead>\n<tbody>\n",
         );
@@ -232,6 +232,7 @@ fn layer_row(row: &SheetRow) -> String {
             row.cumulative_s.map_or(String::new(), clock)
         ),
         RowKind::Layer => {
+            let doping: Vec<String> = row.doping.iter().map(|d| escape(d)).collect();
             let to = row
                 .to
                 .as_ref()
@@ -239,7 +240,7 @@ fn layer_row(row: &SheetRow) -> String {
                 .unwrap_or_default();
             format!(
                 "<tr><td>{}</td><td class=\"w{inside}\">{}<span class=\"m\">{}{to}</span></td><td>{}</td><td>{}</td><td>{}</td>\
-                 <td class=\"w\">{}</td><td class=\"w\">{}</td><td>{}</td><td>{}</td><td>{}</td>\
+                 <td style=\"text-align:left\">{}</td><td class=\"w\">{}</td><td>{}</td><td>{}</td><td>{}</td>\
                  <td><span class=\"box\"></span></td></tr>\n",
                 row.number.map_or(String::new(), |n| n.to_string()),
                 escape(&row.name),
@@ -247,7 +248,7 @@ fn layer_row(row: &SheetRow) -> String {
                 number(row.thickness_nm, 3),
                 number(row.thickness_A, 2),
                 number(row.monolayers, 2),
-                escape(&row.doping),
+                doping.join("<br>"),
                 escape(&row.open_cells),
                 number(row.time_s, 2),
                 number(row.cumulative_nm, 3),

@@ -14,15 +14,31 @@ pub fn sheet_text(sheet: &Sheet) -> String {
     text.push_str("\nLayers in growth order, the lowest first\n");
     text.push_str(&table(
         &[
-            "no", "layer", "material", "nm", "Å", "ML", "doping cm^-3", "open cells", "s",
-            "sum nm", "sum h:m:s",
+            "no",
+            "layer",
+            "material",
+            "nm",
+            "Å",
+            "ML",
+            "doping cm^-3",
+            "open cells",
+            "s",
+            "sum nm",
+            "sum h:m:s",
         ],
         &[1, 2, 6, 7],
         sheet.rows.iter().map(cells).collect(),
     ));
     text.push_str("\nShutters\n");
     text.push_str(&table(
-        &["cell", "calibrated", "ML/s", "open s", "open h:m:s", "openings"],
+        &[
+            "cell",
+            "calibrated",
+            "ML/s",
+            "open s",
+            "open h:m:s",
+            "openings",
+        ],
         &[0, 1],
         sheet
             .shutters
@@ -31,7 +47,8 @@ pub fn sheet_text(sheet: &Sheet) -> String {
                 vec![
                     s.cell.clone(),
                     s.calibrated.clone(),
-                    s.rate_ML_s.map_or(String::new(), |rate| format!("{rate:.4}")),
+                    s.rate_ML_s
+                        .map_or(String::new(), |rate| format!("{rate:.4}")),
                     format!("{:.2}", s.open_s),
                     clock(s.open_s),
                     s.openings.to_string(),
@@ -115,7 +132,7 @@ fn cells(row: &SheetRow) -> Vec<String> {
         number(row.thickness_nm, 3),
         number(row.thickness_A, 2),
         number(row.monolayers, 2),
-        row.doping.clone(),
+        row.doping.join(", "),
         row.open_cells.clone(),
         number(row.time_s, 2),
         number(row.cumulative_nm, 3),

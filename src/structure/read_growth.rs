@@ -369,10 +369,7 @@ pub(super) fn of_stack(growth: &Growth, structure: &Structure, stack: &Stack) ->
             continue;
         };
         let name = entry.in_words();
-        for (t, material) in [
-            (0.0, Some(&entry.material)),
-            (1.0, entry.to.as_ref()),
-        ] {
+        for (t, material) in [(0.0, Some(&entry.material)), (1.0, entry.to.as_ref())] {
             let Some(material) = material else { continue };
             let Some(composition) = stack.composition_at(layer, t) else {
                 found.push(
