@@ -7,6 +7,8 @@ use wellwright::diagnostics::Severity;
 use wellwright::growth::{self, Filling, Flag, LayerRow, Plan, Row, Sums};
 use wellwright::materials::Element;
 use wellwright::structure::{self, Stack, Structure, document};
+use wellwright::subbands::Accuracy;
+use wellwright::tune;
 
 fn laid_out(text: &str) -> (Structure, Stack) {
     let (structure, problems) = structure::read(text);
@@ -45,7 +47,8 @@ fn near(value: f64, expected: f64, within: f64) {
     );
 }
 
-/// Half the lattice constants at 300 K of Vurgaftman, Meyer and Ram-Mohan, J. Appl. Phys. 89, 5815 (2001), tables I to VI.
+/// Half the lattice constants at 300 K of Vurgaftman, Meyer and Ram-Mohan, J. Appl. Phys. 89, 5815 (2001), tables I to VI;
+/// that of InP is the handbook value (Levinshtein, Rumyantsev and Shur, World Scientific, 1996).
 #[test]
 fn monolayers_are_half_the_published_lattice_constants() {
     for (binary, lattice_angstrom) in [
@@ -695,4 +698,77 @@ fn cautions_are_those_of_the_stack() {
     for word in ["phosphine", "stibine", "Indium"] {
         assert!(on_phosphide.contains(word), "{word}");
     }
+}
+
+/// Three compositions can be grown with these cells: 0.15/1.00, 0.15/(0.42 + 0.15) and 0.15/(0.85 + 0.42 + 0.15). Tuning
+/// among them must find what tuning with each of them fixed finds best.
+#[test]
+fn tuning_among_cells_takes_the_best_growable_composition() {
+    let text = |material: &str, fraction: &str, snap: &str| {
+        format!(
+            "substrate: GaAs\ntemperature: 77 K\nbands: {{conduction: {{model: energy-dependent, states: 2}}}}\nlayers:\n\
+             \x20 - {{name: below, material: Al0.15Ga0.85As, width: 30 nm}}\n\
+             \x20 - {{name: step, material: {material}, width: 3 nm}}\n\
+             \x20 - {{name: well, material: GaAs, width: 8 nm}}\n\
+             \x20 - {{name: above, material: Al0.15Ga0.85As, width: 30 nm}}\n\
+             tune:\n  vary:\n    - {{layer: well, width: [7 nm, 9 nm]}}\n{fraction}\
+             \x20 aims:\n    - {{from: conduction 1, to: conduction 2, energy: 76 meV}}\n\
+             \x20   - {{from: conduction 1, to: conduction 2, maximize: dipole, weight: 0.5}}\n{snap}\
+             growth:\n  cells:\n\
+             \x20   - {{name: Ga 1, element: Ga, rate: 0.85 ML/s}}\n\
+             \x20   - {{name: Ga 2, element: Ga, rate: 0.42 ML/s}}\n\
+             \x20   - {{name: Al, element: Al, rate: 0.15 ML/s}}\n"
+        )
+    };
+    let among = "    - {layer: step, fraction: Al, between: cells}\n";
+    let tuned = |text: &str| {
+        let (structure, stack) = laid_out(text);
+        let outcome = tune::tune(&structure, &stack, Accuracy::default(), &|_| {}).unwrap();
+        (structure, outcome)
+    };
+    for snap in ["", "  snap: monolayer\n"] {
+        let (structure, outcome) = tuned(&text("Al0.2Ga0.8As", among, snap));
+        let chosen = outcome
+            .after
+            .stack
+            .composition(1)
+            .unwrap()
+            .fraction(Element::Al);
+        let fixed: Vec<(f64, usize, f64)> = [0.15, 0.26316, 0.10563]
+            .into_iter()
+            .map(|al: f64| {
+                let ga = 1.0 - al;
+                let (_, outcome) = tuned(&text(&format!("Al{al}Ga{ga:.5}As"), "", snap));
+                let unmet = outcome.met.iter().filter(|met| !**met).count();
+                (al, unmet, outcome.after.cost())
+            })
+            .collect();
+        let best = fixed
+            .iter()
+            .min_by(|a, b| a.1.cmp(&b.1).then(a.2.total_cmp(&b.2)))
+            .unwrap();
+        near(chosen, best.0, 1e-9);
+        near(outcome.after.cost(), best.2, 1e-6 * best.2);
+        // What comes out can be grown as it is, but for widths between monolayers when these are allowed.
+        let plan = growth::plan(&structure, &outcome.after.stack).unwrap();
+        assert!(
+            plan.flags
+                .iter()
+                .all(|flag| matches!(flag, Flag::Remainder { label, .. } if label != "well" || snap.is_empty())),
+            "{:?}",
+            plan.flags
+        );
+    }
+    // Without cells there is nothing to choose from.
+    let bare = text("Al0.2Ga0.8As", among, "");
+    let (structure, problems) = structure::read(&bare[..bare.find("growth:").unwrap()]);
+    assert!(structure.is_none());
+    assert!(
+        problems[0]
+            .message
+            .contains("`between: cells` needs a `growth` block")
+    );
+    // A layer of one group-III element has no choice either.
+    let single = bare.replace("layer: step, fraction: Al", "layer: well, fraction: Ga");
+    assert!(structure::read(&single).0.is_none());
 }

@@ -16,7 +16,7 @@ mod totals;
 pub use cautions::{Caution, Limit, cautions};
 pub use digital::Digital;
 pub use identity::content_id;
-pub use openings::{Opening, nearest, openings};
+pub use openings::{Opening, growable_fractions, nearest, openings};
 pub use plan::{Flag, FluxTarget, Plan, plan};
 pub use ramp::{Ramp, RampedCell};
 pub use rows::{Filling, LayerRow, Row, Sums};

@@ -72,3 +72,26 @@ pub fn nearest(openings: &[Opening], wanted: [f64; 3]) -> Option<&Opening> {
         }
     })
 }
+
+/// The fractions of an element that the cells give to an alloy of two group-III elements, without 0 and 1, at which it is
+/// no alloy any more.
+pub fn growable_fractions(
+    growth: &Growth,
+    composition: &Composition,
+    element: Element,
+) -> Vec<f64> {
+    let Some(of_element) = GROUP_THREE.iter().position(|known| *known == element) else {
+        return Vec::new();
+    };
+    let fits = |opening: &Opening| {
+        let fractions = GROUP_THREE.iter().zip(opening.fractions);
+        fractions
+            .into_iter()
+            .all(|(element, fraction)| (fraction > 0.0) == composition.elements().contains(element))
+    };
+    let openings = openings(growth);
+    let fitting = openings.iter().filter(|opening| fits(opening));
+    fitting
+        .map(|opening| opening.fractions[of_element])
+        .collect()
+}

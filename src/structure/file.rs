@@ -136,6 +136,8 @@ pub enum Varied {
         element: Element,
         bounds: [f64; 2],
     },
+    /// As `Fraction`, with one of the values that the cells of `growth` give; the layer holds two group-III elements.
+    FractionOfCells { entry: usize, element: Element },
     /// The field.
     Field { bounds_v_per_nm: [f64; 2] },
 }

@@ -147,6 +147,11 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         };
         read_growth::growth(checker, node, &chamber)
     });
+    if let Some(tune) = &tune
+        && !fields.has("growth")
+    {
+        read_growth::needed_by(checker, tune);
+    }
     for key in UNREAD {
         if let Some(place) = key_span(root, key) {
             checker.report(

@@ -2,7 +2,7 @@
 
 use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Limits, between, one_of};
-use super::file::{LayerEntry, Spanned, Structure};
+use super::file::{LayerEntry, Spanned, Structure, Tune, Varied};
 use super::growth::{Cell, DOPANTS, Dopant, Growth};
 use super::read_layers::{self, Known};
 use super::stack::Stack;
@@ -358,6 +358,19 @@ fn dopant(checker: &mut Checker, node: &Node, donors: bool) -> Option<Spanned<Do
         None => problem,
     });
     None
+}
+
+/// Says which variables of tuning are chosen among the cells' compositions in a file that has no cells.
+pub(super) fn needed_by(checker: &mut Checker, tune: &Tune) {
+    for variable in &tune.vary {
+        if let Varied::FractionOfCells { .. } = variable.quantity {
+            checker.report(
+                Diagnostic::error("`between: cells` needs a `growth` block with the cells' rates")
+                    .at(variable.span.clone())
+                    .expected("`growth: {rates: {Ga: 0.70 ML/s, Al: 0.25 ML/s}}` in the file, or bounds such as `[0.18, 0.35]`"),
+            );
+        }
+    }
 }
 
 /// What the stack needs of the chamber: errors where the sheet could not be made, warnings where it would say less.
