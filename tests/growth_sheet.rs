@@ -340,21 +340,12 @@ fn a_digital_alloy_has_the_mean_that_the_cells_do_not_give() {
         let plan = plan(&format!(
             "{head}  - {{name: odd, material: Al0.25Ga0.75As, width: {monolayers} ML}}\n{cells}"
         ));
-        let [
-            Flag::Composition {
-                label,
-                given,
-                digital: Some(digital),
-                ..
-            },
-        ] = &plan.flags[..]
-        else {
+        let [Flag::Composition(off)] = &plan.flags[..] else {
             panic!("{:?}", plan.flags);
         };
-        assert_eq!(
-            (label.as_str(), given.formula().as_str()),
-            ("odd", "Al0.3Ga0.7As")
-        );
+        assert_eq!(off.label, "odd");
+        assert_eq!(off.given.formula(), "Al0.3Ga0.7As");
+        let digital = off.digital.as_ref().unwrap();
         assert_eq!(digital.total(), monolayers);
         assert_eq!(digital.monolayers, period);
         let snippet: String = digital
@@ -583,6 +574,21 @@ fn a_missing_species_is_a_warning() {
                 && p.hint.as_deref() == Some("add `dopants: {donors: Si}`")),
         "{problems:?}"
     );
+}
+
+/// Si is an acceptor in GaSb and AlSb, where Te is the donor; common practice.
+#[test]
+fn silicon_is_no_donor_in_gallium_antimonide() {
+    for (species, warned) in [("Si", true), ("Te", false)] {
+        let (structure, problems) = structure::read(&format!(
+            "substrate: GaSb\nlayers:\n  - {{name: well, material: GaSb, width: 5 nm, donors: 1e17 cm^-3}}\ngrowth: {{rates: {{Ga: 1 ML/s}}, dopants: {{donors: {species}}}}}\n"
+        ));
+        assert!(structure.is_some());
+        let found = problems
+            .iter()
+            .any(|p| p.message.contains("acts as an acceptor in GaSb"));
+        assert_eq!(found, warned, "{problems:?}");
+    }
 }
 
 fn structure_file(name: &str) -> String {

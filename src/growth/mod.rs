@@ -17,7 +17,7 @@ pub use cautions::{Caution, Limit, cautions};
 pub use digital::Digital;
 pub use identity::content_id;
 pub use openings::{Opening, growable_fractions, nearest, openings};
-pub use plan::{Flag, FluxTarget, Plan, plan};
+pub use plan::{Flag, FluxTarget, NotGiven, Plan, plan};
 pub use ramp::{Ramp, RampedCell};
 pub use rows::{Filling, LayerRow, Row, Sums};
 pub use totals::{MaterialTotal, ShutterUse};

@@ -40,17 +40,21 @@ pub enum Flag {
         monolayer_nm: f64,
     },
     /// The cells do not give the composition.
-    Composition {
-        label: String,
-        wanted: Composition,
-        /// What the nearest cells give.
-        given: Composition,
-        /// Their indices.
-        cells: Vec<usize>,
-        digital: Option<Digital>,
-    },
+    Composition(Box<NotGiven>),
     /// A graded layer, for which rates have to change during growth.
     Ramped { label: String },
+}
+
+/// A composition that the cells do not give.
+#[derive(Clone, Debug, PartialEq)]
+pub struct NotGiven {
+    pub label: String,
+    pub wanted: Composition,
+    /// What the nearest cells give.
+    pub given: Composition,
+    /// Their indices.
+    pub cells: Vec<usize>,
+    pub digital: Option<Digital>,
 }
 
 /// The group-V elements of a mixed layer; the ratio of their fluxes is to be calibrated, since group-III rates do not
@@ -273,13 +277,13 @@ fn flags(structure: &Structure, stack: &Stack, openings: &[Opening], row: &Layer
                         &wanted.with_group_three(fractions),
                     )
                 };
-                found.push(Flag::Composition {
+                found.push(Flag::Composition(Box::new(NotGiven {
                     label: row.label.clone(),
                     given: wanted.with_group_three(given.fractions),
                     cells: cells.clone(),
                     digital: digital(openings, &wanted, fractions, row.monolayers, strain_of),
                     wanted,
-                });
+                })));
             }
         }
     }

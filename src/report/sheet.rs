@@ -4,7 +4,7 @@ use super::Report;
 use super::sheet_csv::sheet_csv;
 use super::sheet_text::sheet_text;
 use super::table::significant;
-use crate::growth::{Caution, Digital, Filling, Flag, LayerRow, Plan, Row, Sums, cautions};
+use crate::growth::{self, Caution, Digital, Filling, Flag, LayerRow, Plan, Row, Sums, cautions};
 use crate::materials::Element;
 use crate::optics::transitions;
 use crate::structure::{Growth, Stack, Structure};
@@ -481,7 +481,7 @@ fn warning(flag: &Flag) -> Option<String> {
             let below = monolayers.floor();
             let (over, under) = (monolayers - below, below + 1.0 - monolayers);
             Some(format!(
-                "{label}: {monolayers:.2} monolayers are no whole number, {over:.2} ML ({:.4} nm) over {below} and {under:.2} ML ({:.4} nm) short of {}",
+                "{label}: {monolayers:.2} monolayers are no whole number: {over:.2} ({:.4} nm) over {below}, {under:.2} ({:.4} nm) short of {}",
                 over * monolayer_nm,
                 under * monolayer_nm,
                 below + 1.0
@@ -490,27 +490,32 @@ fn warning(flag: &Flag) -> Option<String> {
         Flag::Ramped { label } => Some(format!(
             "{label}: a graded layer. Cells of fixed rates do not give it; ramp the fluxes as the layer's line says, or grow digital steps"
         )),
-        Flag::Composition { .. } => None,
+        Flag::Composition(_) => None,
     }
 }
 
-fn not_given(flag: &Flag, growth: &Growth) -> Option<NotGiven> {
-    let Flag::Composition {
+fn not_given(flag: &Flag, chamber: &Growth) -> Option<NotGiven> {
+    let Flag::Composition(off) = flag else {
+        return None;
+    };
+    let growth::NotGiven {
         label,
         wanted,
         given,
         cells,
         digital,
-    } = flag
-    else {
-        return None;
-    };
+    } = &**off;
     let [wanted, given] = [wanted, given].map(|c| c.formula_to(FRACTION_DECIMALS));
-    let cells = names(cells, growth);
+    let cells = names(cells, chamber);
     let digital_alloy = digital.as_ref().map(digital_alloy);
+    let otherwise = if digital_alloy.is_some() {
+        ""
+    } else {
+        ". No digital alloy of whole monolayers comes nearer"
+    };
     Some(NotGiven {
         sentence: format!(
-            "{label}: no set of cells gives {wanted}. The nearest, {cells}, gives {given}; its line is timed for that"
+            "{label}: no set of cells gives {wanted}. The nearest, {cells}, gives {given}; its line is timed for that{otherwise}"
         ),
         layer: label.clone(),
         wanted,

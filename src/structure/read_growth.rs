@@ -415,6 +415,22 @@ pub(super) fn of_stack(growth: &Growth, structure: &Structure, stack: &Stack) ->
                 }
             }
         }
+        if let Some(species) = &growth.donors
+            && species.value.acceptor
+            && entry.donors_cm3 > 0.0
+            && stack
+                .composition_at(layer, 0.0)
+                .is_some_and(|c| is_antimonide(&c))
+        {
+            let symbol = species.value.symbol;
+            found.push(
+                Diagnostic::warning(format!(
+                    "{symbol} is to be the donor of {name}, but acts as an acceptor in GaSb and AlSb"
+                ))
+                .at(species.span.clone())
+                .hint("the usual donor there is Te"),
+            );
+        }
         if stack.monolayer_nm(layer).is_none() {
             found.push(
                 Diagnostic::error(format!(
@@ -451,6 +467,11 @@ pub(super) fn of_stack(growth: &Growth, structure: &Structure, stack: &Stack) ->
         }
     }
     found
+}
+
+/// Whether Si and Ge sit on the antimony sublattice; common practice for GaSb and AlSb, not for InAs and InSb.
+fn is_antimonide(composition: &Composition) -> bool {
+    composition.fraction(Element::Sb) > 0.5 && composition.fraction(Element::In) < 0.5
 }
 
 /// The first layer with doping of one kind.
