@@ -79,7 +79,7 @@ pub fn sheet_text(sheet: &Sheet) -> String {
         }
     }
     if !sheet.compositions.is_empty() {
-        text.push_str("\nCompositions that the cells do not give\n");
+        text.push_str("\nCompositions that the cells do not give; a digital alloy is written as it takes the layer's place in the file\n");
         for composition in &sheet.compositions {
             text.push_str(&format!("- {}.\n", composition.sentence));
             if let Some(digital) = &composition.digital_alloy {
