@@ -576,6 +576,23 @@ fn a_missing_species_is_a_warning() {
     );
 }
 
+/// InAs on GaAs is strained by 5.65325/6.0583 - 1 = -6.7 %: no such film has a thickness that could be measured.
+#[test]
+fn a_length_of_a_binary_that_cannot_grow_there_is_doubted() {
+    for (cell, warned) in [
+        ("{element: In, rate: 0.5 µm/h}", true),
+        ("{element: In, rate: 0.5 µm/h, on: InAs}", false),
+        ("{element: In, rate: 0.5 ML/s}", false),
+    ] {
+        let (structure, problems) = structure::read(&format!(
+            "substrate: GaAs\nlayers:\n  - {{material: In0.1Ga0.9As, width: 5 nm}}\ngrowth: {{cells: [{cell}, {{element: Ga, rate: 1 ML/s}}]}}\n"
+        ));
+        assert!(structure.is_some());
+        let found = problems.iter().any(|p| p.message.contains("-6.7 %"));
+        assert_eq!(found, warned, "{problems:?}");
+    }
+}
+
 /// Si is an acceptor in GaSb and AlSb, where Te is the donor; common practice.
 #[test]
 fn silicon_is_no_donor_in_gallium_antimonide() {

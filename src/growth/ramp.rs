@@ -9,6 +9,9 @@ use crate::structure::{Growth, Stack};
 /// An element this scarce at a face cannot be the one that keeps its rate.
 const LEAST_HOST: f64 = 0.05;
 
+/// A fraction below this is the rounding of another one.
+const NO_FRACTION: f64 = 1e-6;
+
 /// What the cells do in a graded layer.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Ramp {
@@ -38,7 +41,7 @@ impl RampedCell {
 pub fn ramp(growth: &Growth, openings: &[Opening], stack: &Stack, layer: usize) -> Option<Ramp> {
     let at = |t: f64| stack.composition_at(layer, t).map(|c| group_three(&c));
     let (lower, middle, upper) = (at(0.0)?, at(0.5)?, at(1.0)?);
-    let held = |e: usize| lower[e] > 0.0 || upper[e] > 0.0;
+    let held = |e: usize| lower[e].max(upper[e]) > NO_FRACTION;
     // Along the height the fractions are at most quadratic, for which Simpson's rule is exact.
     let mean: [f64; 3] = std::array::from_fn(|e| (lower[e] + 4.0 * middle[e] + upper[e]) / 6.0);
     // The fewest cells that bring all elements; of equals those that give one of the faces best without a ramp.

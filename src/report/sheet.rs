@@ -314,7 +314,14 @@ impl Sheet {
                     plain(self.field_kv_cm)
                 ),
             ),
-            ("Transitions", transitions.join("; ")),
+            (
+                "Transitions",
+                if transitions.is_empty() {
+                    "none solved".to_owned()
+                } else {
+                    transitions.join("; ")
+                },
+            ),
         ]
     }
 }

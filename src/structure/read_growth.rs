@@ -7,7 +7,9 @@ use super::growth::{Cell, DOPANTS, Dopant, Growth};
 use super::read_layers::{self, Known};
 use super::stack::Stack;
 use crate::diagnostics::{Diagnostic, probably_meant};
-use crate::materials::{Composition, Element, Library, Sublattice, Substance, monolayer_nm};
+use crate::materials::{
+    Composition, Element, Library, Sublattice, Substance, monolayer_nm, strain,
+};
 use crate::units::{Dimension, Quantity};
 use std::ops::Range;
 
@@ -21,6 +23,8 @@ const RATE_LIMITS: Limits = between(
 const MAX_CELLS: usize = 8;
 /// Rates are measured on the wafer once it has cooled down.
 const CALIBRATION_TEMPERATURE_K: f64 = 300.0;
+/// A film strained more than this relaxes before its thickness can be measured; common practice.
+const DOUBTFUL_STRAIN: f64 = 0.02;
 /// A fraction below this is the rounding of another one.
 const NO_FRACTION: f64 = 1e-6;
 const GROUP_THREE: [&str; 3] = ["Al", "Ga", "In"];
@@ -292,6 +296,25 @@ fn calibrated_cell(checker: &mut Checker, chamber: &Chamber, raw: RawCell) -> Op
         Dimension::MonolayerRate => per_s,
         _ => {
             let binary = library.resolve(&of, CALIBRATION_TEMPERATURE_K).ok()?;
+            if let Some(lattice_nm) = on_nm
+                && let Some(found) = strain(&binary, lattice_nm)
+                && found.in_plane.abs() > DOUBTFUL_STRAIN
+            {
+                checker.report(
+                    Diagnostic::warning(format!(
+                        "a rate of {} as a length means {} strained by {:+.1} % on its substrate",
+                        of.formula(),
+                        of.formula(),
+                        1e2 * found.in_plane
+                    ))
+                    .at(raw.span.clone())
+                    .hint(format!(
+                        "give the rate in ML/s, or under `cells` add `on: {}` if it was measured on relaxed {}",
+                        of.formula(),
+                        of.formula()
+                    )),
+                );
+            }
             per_s / monolayer_nm(&binary, on_nm)?
         }
     };
