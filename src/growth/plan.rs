@@ -8,7 +8,7 @@ use super::rows::{Filling, LayerRow, Row, Sums};
 use super::totals::{MaterialTotal, ShutterUse, by_entry, materials, shutters};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Composition, Element, Sublattice, Substance};
-use crate::structure::{Growth, Item, Stack, Structure};
+use crate::structure::{Growth, Item, Profile, Stack, Structure};
 
 /// Decimals of a fraction on the sheet; a cell is calibrated to no more.
 const FRACTION_DECIMALS: usize = 4;
@@ -42,7 +42,7 @@ pub enum Flag {
     /// The cells do not give the composition.
     Composition(Box<NotGiven>),
     /// A graded layer, for which rates have to change during growth.
-    Ramped { label: String },
+    Ramped { label: String, profile: Profile },
 }
 
 /// A composition that the cells do not give.
@@ -258,6 +258,10 @@ fn flags(structure: &Structure, stack: &Stack, openings: &[Opening], row: &Layer
     match &row.filling {
         Filling::Ramped(_) => found.push(Flag::Ramped {
             label: row.label.clone(),
+            profile: structure
+                .entries
+                .get(row.entry)
+                .map_or(Profile::Linear, |entry| entry.profile),
         }),
         Filling::Open { cells, .. } => {
             let layer = stack.layers.iter().position(|l| l.entry == row.entry);

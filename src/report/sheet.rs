@@ -7,7 +7,7 @@ use super::table::significant;
 use crate::growth::{self, Caution, Digital, Filling, Flag, LayerRow, Plan, Row, Sums, cautions};
 use crate::materials::Element;
 use crate::optics::transitions;
-use crate::structure::{Growth, Stack, Structure};
+use crate::structure::{Growth, Profile, Stack, Structure};
 use crate::subbands::Subbands;
 use serde::Serialize;
 
@@ -494,9 +494,15 @@ fn warning(flag: &Flag) -> Option<String> {
                 below + 1.0
             ))
         }
-        Flag::Ramped { label } => Some(format!(
-            "{label}: a graded layer. Cells of fixed rates do not give it; ramp the fluxes as the layer's line says, or grow digital steps"
-        )),
+        Flag::Ramped { label, profile } => {
+            let how = match profile {
+                Profile::Linear => "linearly",
+                Profile::Parabolic => "as a parabola",
+            };
+            Some(format!(
+                "{label}: fixed rates do not give a graded layer. Ramp the fluxes between the rates of its line, the composition changing {how} with height, or grow digital steps"
+            ))
+        }
         Flag::Composition(_) => None,
     }
 }
