@@ -73,12 +73,21 @@ impl Diagnostic {
         match &self.span {
             Some(span) => {
                 let span = within_text(span, source);
+                // The renderer is handed the marked lines only: it lays out every line that it is given.
+                let start = source[..span.start].rfind('\n').map_or(0, |at| at + 1);
+                let end = source[span.end..]
+                    .find('\n')
+                    .map_or(source.len(), |at| span.end + at);
+                let line = 1 + source[..start]
+                    .bytes()
+                    .filter(|byte| *byte == b'\n')
+                    .count();
                 let marked = AnnotationKind::Primary
-                    .span(span)
+                    .span(span.start - start..span.end - start)
                     .label(self.expected.as_deref());
-                let snippet = Snippet::source(source)
+                let snippet = Snippet::source(&source[start..end])
                     .path(name)
-                    .line_start(1)
+                    .line_start(line)
                     .annotation(marked);
                 groups.push(title.element(snippet));
             }

@@ -150,6 +150,8 @@ pub enum UnitError {
     NotANumber { text: String },
     #[error("`{text}` is not a finite number")]
     NotFinite { text: String },
+    #[error("`{text}` has a comma where a point belongs")]
+    DecimalComma { text: String },
     #[error("`{text}` has no unit")]
     MissingUnit { text: String },
     #[error("`{unit}` is no unit known here")]
@@ -209,6 +211,12 @@ pub fn parse(text: &str, expected: &[Dimension]) -> Result<Quantity, UnitError> 
     };
     if !number.is_finite() {
         return Err(UnitError::NotFinite {
+            text: text.trim().to_owned(),
+        });
+    }
+    let decimals = rest.strip_prefix(',').and_then(|rest| rest.chars().next());
+    if decimals.is_some_and(|c| c.is_ascii_digit()) {
+        return Err(UnitError::DecimalComma {
             text: text.trim().to_owned(),
         });
     }

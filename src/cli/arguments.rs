@@ -53,7 +53,7 @@ pub enum Command {
         /// Chemical formula, such as GaAs or Al0.3Ga0.7As
         formula: Option<String>,
         /// Temperature with its unit, such as "77 K"
-        #[arg(long, default_value = "300 K")]
+        #[arg(long, default_value = "300 K", allow_hyphen_values = true)]
         temperature: String,
         #[command(flatten)]
         output: Output,

@@ -1,7 +1,7 @@
 //! How results and messages leave the program.
 
 use super::arguments::Format;
-use super::output::{refuse_input, write_whole};
+use super::output::{refuse, write_whole};
 use crate::diagnostics::Diagnostic;
 use crate::report::Report;
 use std::io::Write;
@@ -60,9 +60,9 @@ pub fn write(path: &Path, text: &str, input: &Path) -> Result<Exit, Exit> {
         })
 }
 
-/// Refuses an output that is the input before any work is done.
+/// Refuses an output that is the input, or that cannot be written, before any work is done.
 pub fn check_output(path: Option<&Path>, input: &Path) -> Result<(), Exit> {
-    match path.map(|path| refuse_input(path, &[input])) {
+    match path.map(|path| refuse(path, &[input])) {
         Some(Err(error)) => {
             complain(&format!("error: {error}"));
             Err(Exit::WrongInput)

@@ -4,7 +4,8 @@ use super::deliver::{Exit, complain, show};
 use crate::diagnostics::Diagnostic;
 use crate::models::Unsuitable;
 use crate::structure::{self, Stack, Structure};
-use crate::subbands::{Hold, Subbands};
+use crate::subbands::{Hold, State, Subbands};
+use std::collections::BTreeSet;
 use std::fs::File;
 use std::io::Read;
 use std::path::Path;
@@ -73,25 +74,51 @@ impl Input {
         Exit::WrongInput
     }
 
-    /// Doubts about a solution, each naming its layer.
+    /// Doubts about a solution. States of one kind, one above the other in one layer, share a message.
     pub fn doubt(&self, subbands: &Subbands, shown: usize) {
         /// Level shifts by the walls below this do not change a printed digit.
         const WALL_SHIFT_EV: f64 = 1e-5;
-        for (index, state) in subbands.states().iter().take(shown).enumerate() {
-            let label = &self.stack.layers[state.layer].label;
-            let words = match state.hold {
+        let states = subbands.states();
+        let shown = shown.min(states.len());
+        // All unbound states share one message: there is no limit to them.
+        let alike = |a: &State, b: &State| {
+            a.hold == b.hold && (a.hold == Hold::Walls || a.layer == b.layer)
+        };
+        let mut first = 0;
+        for group in states[..shown].chunk_by(alike) {
+            let last = first + group.len();
+            let (which, many) = if group.len() == 1 {
+                (format!("conduction {last}"), false)
+            } else {
+                (format!("conduction {} to {last}", first + 1), true)
+            };
+            first = last;
+            let verb = |one: &str, several: &str| (if many { several } else { one }).to_owned();
+            let layers: BTreeSet<usize> = group.iter().map(|state| state.layer).collect();
+            let labels: Vec<&str> = layers
+                .iter()
+                .map(|layer| &*self.stack.layers[*layer].label)
+                .collect();
+            let place = match labels[..] {
+                [one] => format!("mostly in {one}"),
+                [one, other] => format!("mostly in {one} and {other}"),
+                _ => "spread over the stack".to_owned(),
+            };
+            let shift_ev = group.iter().map(|s| s.wall_shift_ev).fold(0.0, f64::max);
+            let words = match group[0].hold {
                 Hold::Walls => format!(
-                    "conduction {} (mostly in {label}) lies above the lower outer barrier edge: only the wall holds it, it is not bound",
-                    index + 1
+                    "{which} ({place}) {} above the lower outer barrier edge: only the wall holds {}, {} not bound",
+                    verb("lies", "lie"),
+                    verb("it", "them"),
+                    verb("it is", "they are"),
                 ),
                 Hold::Leaky => format!(
-                    "conduction {} (mostly in {label}) can tunnel out at an end that the field has lowered; its lifetime is not part of this result",
-                    index + 1
+                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result"
                 ),
-                Hold::Bound if state.wall_shift_ev > WALL_SHIFT_EV => format!(
-                    "the walls raise conduction {} (mostly in {label}) by about {:.2} meV: make the outer layers wider",
-                    index + 1,
-                    1e3 * state.wall_shift_ev
+                Hold::Bound if shift_ev > WALL_SHIFT_EV => format!(
+                    "the walls raise {which} ({place}) by {} {:.2} meV: make the outer layers wider",
+                    verb("about", "up to about"),
+                    1e3 * shift_ev
                 ),
                 Hold::Bound => continue,
             };

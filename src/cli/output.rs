@@ -8,6 +8,10 @@ use std::path::{Path, PathBuf};
 pub enum OutputError {
     #[error("{path} is an input of this run and is not overwritten")]
     IsInput { path: PathBuf },
+    #[error("{path} cannot be written: there is no folder {folder}")]
+    NoFolder { path: PathBuf, folder: PathBuf },
+    #[error("{path} cannot be written: it is a folder")]
+    IsFolder { path: PathBuf },
     #[error("{path} cannot be written: {source}")]
     Write {
         path: PathBuf,
@@ -17,15 +21,13 @@ pub enum OutputError {
 
 /// Writes `text` to a temporary neighbour and moves it into place.
 pub fn write_whole(path: &Path, text: &str, inputs: &[&Path]) -> Result<(), OutputError> {
-    refuse_input(path, inputs)?;
-    let failed = |source| OutputError::Write {
+    refuse(path, inputs)?;
+    // Only the kind of failure is told: the rest names the temporary file.
+    let failed = |source: std::io::Error| OutputError::Write {
         path: path.to_owned(),
-        source,
+        source: source.kind().into(),
     };
-    let folder = match path.parent() {
-        Some(folder) if !folder.as_os_str().is_empty() => folder,
-        _ => Path::new("."),
-    };
+    let folder = folder_of(path);
     let mut file = tempfile::Builder::new()
         .prefix(".wellwright-")
         .tempfile_in(folder)
@@ -37,8 +39,27 @@ pub fn write_whole(path: &Path, text: &str, inputs: &[&Path]) -> Result<(), Outp
     Ok(())
 }
 
-/// Refuses a path that names the same file as an input, also by another name.
-pub fn refuse_input(path: &Path, inputs: &[&Path]) -> Result<(), OutputError> {
+fn folder_of(path: &Path) -> &Path {
+    match path.parent() {
+        Some(folder) if !folder.as_os_str().is_empty() => folder,
+        _ => Path::new("."),
+    }
+}
+
+/// Refuses a path that cannot be written, or that names the same file as an input, also by another name.
+pub fn refuse(path: &Path, inputs: &[&Path]) -> Result<(), OutputError> {
+    let folder = folder_of(path);
+    if !folder.is_dir() {
+        return Err(OutputError::NoFolder {
+            path: path.to_owned(),
+            folder: folder.to_owned(),
+        });
+    }
+    if path.is_dir() {
+        return Err(OutputError::IsFolder {
+            path: path.to_owned(),
+        });
+    }
     let same = |input: &Path| match (path.canonicalize(), input.canonicalize()) {
         (Ok(a), Ok(b)) => a == b,
         _ => path == input,

@@ -69,7 +69,7 @@ pub enum MaterialError {
         expected: usize,
         found: usize,
     },
-    #[error("`{key}` of {number} {unit} is outside {} to {} {unit}", .range.0, .range.1)]
+    #[error("`{key}` of {} is outside {} to {}", with_unit(.number, .unit), .range.0, with_unit(&.range.1, .unit))]
     OutOfRange {
         key: &'static str,
         number: f64,
@@ -99,6 +99,11 @@ pub enum MaterialError {
     Data { file: String, message: String },
 }
 
+/// A number with its unit, if it has one.
+fn with_unit(number: &f64, unit: &str) -> String {
+    format!("{number} {unit}").trim_end().to_owned()
+}
+
 impl MaterialError {
     /// What was probably meant, or what to do.
     pub fn hint(&self) -> Option<String> {
@@ -112,6 +117,9 @@ impl MaterialError {
                 Some(meant) => did_you_mean(meant),
                 None => "the elements are Al, Ga, In and P, As, Sb".to_owned(),
             }),
+            Self::Malformed { found, .. } if found.starts_with(',') => {
+                Some("write decimals with a point, as in `Al0.3Ga0.7As`".to_owned())
+            }
             Self::Malformed { .. } => {
                 Some("write elements with fractions behind them, such as `Al0.3Ga0.7As`".to_owned())
             }

@@ -17,6 +17,65 @@ pub struct Factored {
     negative: usize,
 }
 
+/// Calls a kernel compiled for the reach of the column at hand: columns are short, and a loop of known length is unrolled
+/// where one of unknown length costs more than its work. Longer columns are worked off by the kernel for any length.
+macro_rules! by_reach {
+    ($reach:expr, $kernel:ident($($argument:expr),*)) => {
+        by_reach!(@match $reach, $kernel($($argument),*), 0 1 2 3 4 5 6 7 8 9 10 11 12 13 14)
+    };
+    (@match $reach:expr, $kernel:ident $arguments:tt, $($length:literal)*) => {
+        match $reach {
+            $($length => by_reach!(@call $kernel, $length, $arguments),)*
+            _ => by_reach!(@call $kernel, ANY, $arguments),
+        }
+    };
+    (@call $kernel:ident, $length:expr, ($($argument:expr),*)) => {
+        $kernel::<{ $length }>($($argument),*)
+    };
+}
+
+/// The length of a kernel that takes it from its slice.
+const ANY: usize = usize::MAX;
+
+/// One column's step of the factorisation: the columns in `tail` lose its outer product, and it becomes a column of L.
+#[inline]
+fn eliminate<const REACH: usize>(below: &mut [f64], inverse: f64, tail: &mut [f64], stride: usize) {
+    let reach = if REACH == ANY { below.len() } else { REACH };
+    let below = &mut below[..reach];
+    for r in 0..reach {
+        let factor = below[r] * inverse;
+        let target = &mut tail[r * stride..][..reach - r];
+        for d in 0..reach - r {
+            target[d] -= factor * below[r + d];
+        }
+    }
+    for value in below {
+        *value *= inverse;
+    }
+}
+
+/// x ← x − factor · column, as far as the column reaches.
+#[inline]
+fn subtract<const REACH: usize>(below: &[f64], factor: f64, x: &mut [f64]) {
+    let reach = if REACH == ANY { below.len() } else { REACH };
+    let (below, x) = (&below[..reach], &mut x[..reach]);
+    for d in 0..reach {
+        x[d] -= factor * below[d];
+    }
+}
+
+/// column · x, as far as the column reaches.
+#[inline]
+fn product<const REACH: usize>(below: &[f64], x: &[f64]) -> f64 {
+    let reach = if REACH == ANY { below.len() } else { REACH };
+    let (below, x) = (&below[..reach], &x[..reach]);
+    let mut sum = 0.0;
+    for d in 0..reach {
+        sum += below[d] * x[d];
+    }
+    sum
+}
+
 impl Banded {
     /// A zero matrix with these reaches. A reach beyond the last row is cut.
     pub fn zeros(mut reach: Vec<usize>) -> Banded {
@@ -81,28 +140,19 @@ impl Banded {
     pub fn factor(mut self) -> Factored {
         let stride = self.stride;
         let mut negative = 0;
+        let diagonal = self.values.iter().step_by(stride);
+        let smallest = 1e-30 + 1e-18 * diagonal.fold(0.0_f64, |m, v| m.max(v.abs()));
         for k in 0..self.size() {
-            let reach = self.reach[k];
             let (head, tail) = self.values.split_at_mut((k + 1) * stride);
-            let column = &mut head[k * stride..=k * stride + reach];
-            let mut pivot = column[0];
-            let smallest = 1e-30 + 1e-18 * column.iter().fold(0.0_f64, |m, v| m.max(v.abs()));
+            let (diagonal, below) = head[k * stride..].split_at_mut(1);
+            let mut pivot = diagonal[0];
+            let below = &mut below[..self.reach[k]];
             if pivot.abs() < smallest {
                 pivot = smallest;
-                column[0] = pivot;
+                diagonal[0] = pivot;
             }
             negative += usize::from(pivot < 0.0);
-            let inverse = 1.0 / pivot;
-            for r in 1..=reach {
-                let factor = column[r] * inverse;
-                let target = &mut tail[(r - 1) * stride..(r - 1) * stride + reach - r + 1];
-                for (t, c) in target.iter_mut().zip(&column[r..]) {
-                    *t -= factor * c;
-                }
-            }
-            for value in &mut column[1..] {
-                *value *= inverse;
-            }
+            by_reach!(below.len(), eliminate(below, 1.0 / pivot, tail, stride));
         }
         Factored {
             matrix: self,
@@ -126,15 +176,13 @@ impl Factored {
         } = &self.matrix;
         let size = reach.len();
         for k in 0..size {
-            let x_k = x[k];
-            let column = &values[k * stride + 1..=k * stride + reach[k]];
-            for (target, l) in x[k + 1..].iter_mut().zip(column) {
-                *target -= l * x_k;
-            }
+            let (head, tail) = x.split_at_mut(k + 1);
+            let below = &values[k * stride + 1..=k * stride + reach[k]];
+            by_reach!(below.len(), subtract(below, head[k], tail));
         }
         for k in (0..size).rev() {
-            let column = &values[k * stride + 1..=k * stride + reach[k]];
-            let sum: f64 = column.iter().zip(&x[k + 1..]).map(|(l, v)| l * v).sum();
+            let below = &values[k * stride + 1..=k * stride + reach[k]];
+            let sum = by_reach!(below.len(), product(below, &x[k + 1..]));
             x[k] = x[k] / values[k * stride] - sum;
         }
     }

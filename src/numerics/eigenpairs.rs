@@ -19,7 +19,8 @@ const CLUSTER: f64 = 1e-9;
 const CONVERGED: f64 = 1e-12;
 /// A ratio of convergence above this calls for a new shift.
 const SLOW: f64 = 0.03;
-/// With poles the shift must come this near, as a part of the searched range.
+/// With poles the shift must come this near, as a part of the searched range: the value is then exact to the square of
+/// it, and the vector after its last step.
 const NEAR: f64 = 1e-7;
 /// Vectors of levels closer than this part of the searched range are made orthogonal to each other explicitly.
 const NEIGHBOURS: f64 = 1e-3;
@@ -51,12 +52,30 @@ pub fn count_below(pencil: &Pencil, lambda: f64) -> usize {
     matrix.factor().negative()
 }
 
-/// One step of inverse iteration from a known pair: the improved value. On a finer mesh, to which `vector` was
-/// transferred, the change estimates the discretisation error.
-pub fn improved_value(pencil: &Pencil, value: f64, vector: &[f64]) -> f64 {
-    let mut matrix = pencil.storage();
-    pencil.assemble(value, &mut matrix);
-    Iterate::new(pencil, value, vector.to_vec()).step(&matrix.factor())
+/// How much each eigenvalue changes on a finer mesh: the Rayleigh quotient of the transferred vector, minimised along
+/// one step of inverse iteration. The step's matrix is the finer T at the floor of C. What a finer mesh adds to a vector
+/// varies fast, so its energies lie far above the levels and one matrix serves for all of them.
+pub fn improvements(pencil: &Pencil, pairs: &[Eigenpair], finer: &Pencil) -> Vec<f64> {
+    let floor = finer.floor();
+    let mut stiff = finer.storage();
+    finer.assemble(floor, &mut stiff);
+    let stiff = stiff.factor();
+    let vectors: Vec<&[f64]> = pairs.iter().map(|pair| &pair.vector[..]).collect();
+    let vectors = pencil.mesh.transfer(&vectors, &finer.mesh);
+    let improved = pairs.iter().zip(vectors).map(|(pair, vector)| {
+        let residual = finer.times(pair.value, &vector);
+        let mut step = residual.clone();
+        let inner = 1..vector.len() - 1;
+        stiff.solve(&mut step[inner]);
+        // x − c s has the form r·x − 2c r·s + c² s·T s; and T s = r − (λ − floor) s, but for what A changes in between.
+        let gain = dot(&step, &residual);
+        let masses = step.iter().zip(finer.weights());
+        let weighted: f64 = masses.map(|(s, m)| m * s * s).sum();
+        let curvature = (gain - (pair.value - floor) * weighted).max(0.1 * gain);
+        let norm = finer.inner(pair.value, &vector, pair.value, &vector);
+        (dot(&vector, &residual) - gain * gain / curvature) / norm
+    });
+    improved.collect()
 }
 
 struct Search<'p> {
@@ -140,7 +159,7 @@ impl<'p> Search<'p> {
     /// Inverse iteration with the Rayleigh quotient as shift; the level must be alone in its bracket, and stay there.
     ///
     /// Every other level lies outside the bracket, so a solve shrinks what is left of them in the vector at least by the
-    /// ratio of the level's distance from the shift to its distance from the bracket's ends. While that ratio is small
+    /// ratio of the quotient to the distance of the bracket's ends (N is never less than M). While that ratio is small
     /// more solves with the same factors are cheaper than new factors.
     fn refine(
         &mut self,
@@ -149,30 +168,37 @@ impl<'p> Search<'p> {
         low: f64,
         high: f64,
     ) -> Option<Eigenpair> {
-        let mut iterate = Iterate::new(self.pencil, start, start_vector(self.pencil, 0));
+        let mut iterate = Iterate::new(self.pencil, start_vector(self.pencil, 0));
         iterate.step(factored);
-        let mut value = iterate.step(factored);
+        let (quotient, _) = iterate.step(factored);
+        let mut value = start + iterate.change(start, quotient);
         for _ in 0..20 {
             if !(value > low && value < high) {
                 return None;
             }
             let shift = value;
             let factored = self.factor(shift);
-            iterate.shift_to(shift);
-            let mut rest = 1.0;
+            let mut rest = 1.0_f64;
+            let mut quotient = 0.0;
             while rest > CONVERGED {
-                value = iterate.step(&factored);
-                let ratio = (value - shift).abs() / (value - low).min(high - value);
+                let moved;
+                (quotient, moved) = iterate.step(&factored);
+                let ratio = quotient.abs() / (shift - low).min(high - shift);
                 if !(0.0..SLOW).contains(&ratio) {
                     rest = 1.0;
                     break;
                 }
-                rest *= ratio.max(f64::EPSILON);
+                // What a step leaves is this part of what there was, and of what it took away.
+                rest = (rest * ratio).min(moved * ratio / (1.0 - ratio));
+            }
+            value = shift + iterate.change(shift, quotient);
+            let settled = self.pencil.is_linear() || (value - shift).abs() < NEAR * self.range;
+            let done = rest <= CONVERGED && settled;
+            if done && !self.pencil.is_linear() {
+                iterate.last_step(&factored, shift, value);
             }
             self.spare = Some(factored.into_storage());
-            // The quotient of a problem with poles is exact to second order in the shift's distance only.
-            let linear = self.pencil.is_linear() || (value - shift).abs() < NEAR * self.range;
-            if rest <= CONVERGED && linear {
+            if done {
                 let vector = iterate.vector;
                 return (value >= low && value <= high).then_some(Eigenpair { value, vector });
             }
@@ -242,47 +268,65 @@ impl<'p> Search<'p> {
     }
 }
 
-/// A vector under inverse iteration at one shift, with N x beside it.
+/// A vector under inverse iteration with the mass matrix M, at a shift that is the caller's.
+///
+/// With poles the levels near a shift σ are those of T(σ) x = μ N x to first order in μ. Iterating with M, which is
+/// diagonal, leads to the same vector as the shift closes in on the level; only the value needs N.
 struct Iterate<'p> {
     pencil: &'p Pencil,
-    shift: f64,
     vector: Vec<f64>,
+    /// M x.
     weighted: Vec<f64>,
 }
 
 impl<'p> Iterate<'p> {
-    fn new(pencil: &'p Pencil, shift: f64, vector: Vec<f64>) -> Self {
-        let weighted = pencil.weight(shift, shift, &vector);
+    fn new(pencil: &'p Pencil, vector: Vec<f64>) -> Self {
+        let weighted = pencil.weights().iter().zip(&vector).map(|(m, v)| m * v);
         Self {
             pencil,
-            shift,
+            weighted: weighted.collect(),
             vector,
-            weighted,
         }
     }
 
-    fn shift_to(&mut self, shift: f64) {
-        self.shift = shift;
-        if !self.pencil.is_linear() {
-            self.weighted = self.pencil.weight(shift, shift, &self.vector);
-        }
-    }
-
-    /// x ← T⁻¹ N x, normalised; the return value is the Rayleigh quotient (for a problem with poles, Newton's step on
-    /// it).
-    fn step(&mut self, factored: &Factored) -> f64 {
-        let inner = self.vector.len() - 1;
+    /// x ← T⁻¹ M x, normalised under M. Returns the Rayleigh quotient of T under M, and how far the vector has moved.
+    fn step(&mut self, factored: &Factored) -> (f64, f64) {
+        let inner = 1..self.vector.len() - 1;
         self.vector.copy_from_slice(&self.weighted);
-        factored.solve(&mut self.vector[1..inner]);
-        let shifted = dot(&self.vector, &self.weighted);
-        self.weighted = self.pencil.weight(self.shift, self.shift, &self.vector);
-        let norm = dot(&self.vector, &self.weighted);
+        let x = &mut self.vector[inner.clone()];
+        factored.solve(x);
+        let masses = &self.pencil.weights()[inner.clone()];
+        let weighted = &mut self.weighted[inner];
+        let (mut shifted, mut norm) = (0.0, 0.0);
+        for ((v, w), m) in x.iter().zip(weighted.iter_mut()).zip(masses) {
+            shifted += v * *w;
+            *w = m * v;
+            norm += *w * v;
+        }
         let scale = 1.0 / norm.sqrt();
-        self.vector
-            .iter_mut()
-            .chain(&mut self.weighted)
-            .for_each(|v| *v *= scale);
-        self.shift + shifted / norm
+        for (v, w) in x.iter_mut().zip(weighted) {
+            *v *= scale;
+            *w *= scale;
+        }
+        // |x − x₀|² = 2 − 2 x·x₀, which rounding keeps from telling small moves apart.
+        let apart = (1.0 - shifted.abs() * scale).max(f64::EPSILON);
+        (shifted / norm, (2.0 * apart).sqrt())
+    }
+
+    /// x ← T(σ)⁻¹ N(σ, λ) x, which leaves the eigenvector of λ as it is: T(λ) x = 0 means T(σ) x = (λ − σ) N x.
+    fn last_step(&mut self, factored: &Factored, shift: f64, value: f64) {
+        self.vector = self.pencil.weight(shift, value, &self.vector);
+        let inner = 1..self.vector.len() - 1;
+        factored.solve(&mut self.vector[inner]);
+    }
+
+    /// The change of the level that a quotient under M at this shift stands for: Newton's step, x · T x / x · N x.
+    fn change(&self, shift: f64, quotient: f64) -> f64 {
+        if self.pencil.is_linear() {
+            quotient
+        } else {
+            quotient / self.pencil.inner(shift, &self.vector, shift, &self.vector)
+        }
     }
 }
 

@@ -85,17 +85,20 @@ impl Mesh {
         &values[index * p..=(index + 1) * p]
     }
 
-    /// Nodal values on `finer` (same elements, another order) of the function with these nodal values here.
-    pub fn transfer(&self, values: &[f64], finer: &Mesh) -> Vec<f64> {
+    /// Nodal values on `finer` (same elements, another order) of the functions with these nodal values here.
+    pub fn transfer(&self, functions: &[&[f64]], finer: &Mesh) -> Vec<Vec<f64>> {
         let matrix = self.reference.interpolation(&finer.reference.nodes);
         let (from, to) = (self.order() + 1, finer.order());
-        let mut out = vec![0.0; finer.node_count()];
-        for index in 0..self.elements.len() {
-            let local = self.local(index, values);
-            for (q, row) in matrix.chunks_exact(from).enumerate() {
-                out[index * to + q] = row.iter().zip(local).map(|(m, v)| m * v).sum();
+        let transferred = functions.iter().map(|values| {
+            let mut out = vec![0.0; finer.node_count()];
+            for index in 0..self.elements.len() {
+                let local = self.local(index, values);
+                for (q, row) in matrix.chunks_exact(from).enumerate() {
+                    out[index * to + q] = row.iter().zip(local).map(|(m, v)| m * v).sum();
+                }
             }
-        }
-        out
+            out
+        });
+        transferred.collect()
     }
 }

@@ -163,6 +163,7 @@ impl Pencil {
         let entries = (p + 1) * (p + 2) / 2;
         let mut buffer = [0.0; (MAX_ORDER + 1) * (MAX_ORDER + 2) / 2];
         let local = &mut buffer[..entries];
+        let mut softness = [0.0; MAX_ORDER + 1];
         for (index, element) in self.mesh.elements.iter().enumerate() {
             let nodes = self.at(index);
             let scale = 2.0 / element.length;
@@ -175,12 +176,17 @@ impl Pencil {
                     *l = scale * first.stiffness * s;
                 }
             } else {
-                local.fill(0.0);
-                for (coefficient, term) in nodes.iter().zip(&reference.stiffness_terms) {
-                    let a = scale * coefficient.a(lambda);
-                    for (l, s) in local.iter_mut().zip(term) {
-                        *l += a * s;
-                    }
+                for (a, node) in softness.iter_mut().zip(nodes) {
+                    *a = scale * node.a(lambda);
+                }
+                let (softness, terms) = (&softness[..=p], &reference.stiffness_terms);
+                // The orders that solves use have loops of known length.
+                match p {
+                    6 => combine::<28>(softness, terms, local),
+                    8 => combine::<45>(softness, terms, local),
+                    10 => combine::<66>(softness, terms, local),
+                    12 => combine::<91>(softness, terms, local),
+                    _ => combine_any(softness, terms, local),
                 }
             }
             let mut start = 0;
@@ -188,7 +194,8 @@ impl Pencil {
                 let g = index * p + j;
                 if g != 0 && g != last {
                     let column = matrix.column_mut(g - 1);
-                    for (target, value) in column.iter_mut().zip(&local[start..start + p + 1 - j]) {
+                    let own = &local[start..start + column.len().min(p + 1 - j)];
+                    for (target, value) in column.iter_mut().zip(own) {
                         *target += value;
                     }
                     column[0] +=
@@ -197,6 +204,28 @@ impl Pencil {
                 start += p + 1 - j;
             }
         }
+    }
+
+    /// T(λ) x for a nodal vector x that vanishes at both ends; the result is set to zero there as well.
+    pub fn times(&self, lambda: f64, x: &[f64]) -> Vec<f64> {
+        let reference = self.mesh.reference;
+        let p = reference.order;
+        let mut out = vec![0.0; x.len()];
+        let mut slopes = [0.0; MAX_ORDER + 1];
+        for (index, element) in self.mesh.elements.iter().enumerate() {
+            let (local, nodes) = (self.mesh.local(index, x), self.at(index));
+            reference.slopes(local, &mut slopes[..=p]);
+            let target = &mut out[index * p..=(index + 1) * p];
+            for q in 0..=p {
+                let w = reference.weights[q];
+                slopes[q] *= 2.0 / element.length * w * nodes[q].a(lambda);
+                target[q] += 0.5 * element.length * w * (nodes[q].constant - lambda) * local[q];
+            }
+            reference.add_slopes_transposed(&slopes[..=p], target);
+        }
+        out[0] = 0.0;
+        out[x.len() - 1] = 0.0;
+        out
     }
 
     /// N(λ, μ) x for a nodal vector x that vanishes at both ends; the result is set to zero there as well.
@@ -227,7 +256,24 @@ impl Pencil {
 
     /// The bilinear form x · N(λ, μ) y.
     pub fn inner(&self, lambda: f64, x: &[f64], mu: f64, y: &[f64]) -> f64 {
-        dot(x, &self.weight(lambda, mu, y))
+        let products = self.mass.iter().zip(x).zip(y);
+        let mut sum = products.map(|((m, x), y)| m * x * y).sum();
+        if self.is_linear() {
+            return sum;
+        }
+        let reference = self.mesh.reference;
+        let p = reference.order;
+        let (mut left, mut right) = ([0.0; MAX_ORDER + 1], [0.0; MAX_ORDER + 1]);
+        for (index, element) in self.mesh.elements.iter().enumerate() {
+            reference.slopes(self.mesh.local(index, x), &mut left[..=p]);
+            reference.slopes(self.mesh.local(index, y), &mut right[..=p]);
+            let scale = 2.0 / element.length;
+            for (q, node) in self.at(index).iter().enumerate() {
+                let along = left[q] * right[q] * node.divided(lambda, mu);
+                sum += scale * reference.weights[q] * along;
+            }
+        }
+        sum
     }
 
     /// A λ at which the semiclassical phase ∫ √((λ − C)/A) dz reaches about π `count` (Weyl's law): a first guess above
@@ -278,6 +324,26 @@ impl Pencil {
             .iter()
             .map(|c| c.constant)
             .fold(f64::INFINITY, f64::min)
+    }
+}
+
+/// The sum of the stiffness terms of all nodes, each with its A.
+fn combine<const ENTRIES: usize>(softness: &[f64], terms: &[Vec<f64>], local: &mut [f64]) {
+    let mut sum = [0.0; ENTRIES];
+    for (a, term) in softness.iter().zip(terms) {
+        for (l, s) in sum.iter_mut().zip(&term[..ENTRIES]) {
+            *l += a * s;
+        }
+    }
+    local.copy_from_slice(&sum);
+}
+
+fn combine_any(softness: &[f64], terms: &[Vec<f64>], local: &mut [f64]) {
+    local.fill(0.0);
+    for (a, term) in softness.iter().zip(terms) {
+        for (l, s) in local.iter_mut().zip(term) {
+            *l += a * s;
+        }
     }
 }
 

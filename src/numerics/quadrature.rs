@@ -5,7 +5,7 @@
 use std::sync::OnceLock;
 
 /// Highest polynomial order that is offered.
-pub const MAX_ORDER: usize = 24;
+pub const MAX_ORDER: usize = 14;
 
 /// Everything about polynomials of one order that does not depend on the element.
 #[derive(Debug)]
@@ -106,19 +106,34 @@ impl Reference {
     /// Slopes with respect to the reference coordinate at all nodes, of the polynomial with these nodal values.
     #[inline]
     pub fn slopes(&self, values: &[f64], slopes: &mut [f64]) {
-        let count = self.order + 1;
-        for (slope, row) in slopes.iter_mut().zip(self.derivative.chunks_exact(count)) {
-            *slope = row.iter().zip(values).map(|(d, v)| d * v).sum();
+        // The orders that solves use have loops of known length.
+        match self.order {
+            6 => slopes_of::<7>(&self.derivative, values, slopes),
+            8 => slopes_of::<9>(&self.derivative, values, slopes),
+            12 => slopes_of::<13>(&self.derivative, values, slopes),
+            _ => {
+                let rows = self.derivative.chunks_exact(self.order + 1);
+                for (slope, row) in slopes.iter_mut().zip(rows) {
+                    *slope = row.iter().zip(values).map(|(d, v)| d * v).sum();
+                }
+            }
         }
     }
 
     /// Adds the transpose of the slope map: `out_i += Σ_q D_qi g_q`.
     #[inline]
     pub fn add_slopes_transposed(&self, g: &[f64], out: &mut [f64]) {
-        let count = self.order + 1;
-        for (&g_q, row) in g.iter().zip(self.derivative.chunks_exact(count)) {
-            for (sum, d) in out.iter_mut().zip(row) {
-                *sum += d * g_q;
+        match self.order {
+            6 => add_transposed::<7>(&self.derivative, g, out),
+            8 => add_transposed::<9>(&self.derivative, g, out),
+            12 => add_transposed::<13>(&self.derivative, g, out),
+            _ => {
+                let rows = self.derivative.chunks_exact(self.order + 1);
+                for (&g_q, row) in g.iter().zip(rows) {
+                    for (sum, d) in out.iter_mut().zip(row) {
+                        *sum += d * g_q;
+                    }
+                }
             }
         }
     }
@@ -139,6 +154,22 @@ impl Reference {
             }
         }
         matrix
+    }
+}
+
+fn slopes_of<const COUNT: usize>(derivative: &[f64], values: &[f64], slopes: &mut [f64]) {
+    let (values, slopes) = (&values[..COUNT], &mut slopes[..COUNT]);
+    for (slope, row) in slopes.iter_mut().zip(derivative.chunks_exact(COUNT)) {
+        *slope = (0..COUNT).map(|k| row[k] * values[k]).sum();
+    }
+}
+
+fn add_transposed<const COUNT: usize>(derivative: &[f64], g: &[f64], out: &mut [f64]) {
+    let (g, out) = (&g[..COUNT], &mut out[..COUNT]);
+    for (g_q, row) in g.iter().zip(derivative.chunks_exact(COUNT)) {
+        for k in 0..COUNT {
+            out[k] += row[k] * g_q;
+        }
     }
 }
 

@@ -199,6 +199,18 @@ pub fn moment_slope(
 /// ∫ z (x y + B x′ y′) with B the divided difference of −A.
 fn form(pencil: &Pencil, (lambda, x): (f64, &[f64]), (mu, y): (f64, &[f64])) -> f64 {
     let mut sum = 0.0;
+    if pencil.is_linear() {
+        // B vanishes.
+        let p = pencil.mesh.order();
+        for (index, element) in pencil.mesh.elements.iter().enumerate() {
+            let (x, y) = (pencil.mesh.local(index, x), pencil.mesh.local(index, y));
+            for q in 0..=p {
+                let weight = 0.5 * element.length * pencil.mesh.reference.weights[q];
+                sum += weight * pencil.mesh.position(element, q) * x[q] * y[q];
+            }
+        }
+        return sum;
+    }
     for_each_node(pencil, x, y, |index, element, q, node| {
         let at = &pencil.at(index)[q];
         let z = pencil.mesh.position(element, q);

@@ -1,8 +1,9 @@
 //! Transitions between subbands of one band: energies, dipoles and strengths for light polarised along growth.
 
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0, HC_EV_UM};
+use crate::numerics::pencil::dot;
 use crate::numerics::sensitivity::moment;
-use crate::subbands::{Subbands, envelope_overlap};
+use crate::subbands::{Subbands, amplitudes};
 
 /// A pair of subbands, `from` below `to`, numbered from 0.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -37,6 +38,7 @@ impl Transition {
 /// All pairs of the solved subbands, ordered by lower state, then by upper state.
 pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
     let states = subbands.states();
+    let amplitudes = amplitudes(subbands);
     let mut list = Vec::new();
     for from in 0..states.len() {
         for to in from + 1..states.len() {
@@ -51,7 +53,7 @@ pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
                 dipole_nm,
                 oscillator_strength,
                 normalised_strength: oscillator_strength * states[from].in_plane_mass_m0,
-                overlap: envelope_overlap(subbands, from, to),
+                overlap: dot(&amplitudes[from], &amplitudes[to]),
             });
         }
     }

@@ -1,6 +1,6 @@
 //! Subband and transition tables of one stack.
 
-use super::table::{error_mev, significant, table};
+use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::models::model_name;
 use crate::optics::{Transition, transitions};
@@ -252,8 +252,8 @@ impl Report for Levels {
             .unwrap_or_default();
         format!(
             "{title}{} K, field {} kV/cm, {} mass, {:.2} nm between walls\n\n{}",
-            significant(self.temperature_k, 4),
-            significant(self.field_kv_cm, 4),
+            given(self.temperature_k, 4),
+            given(self.field_kv_cm, 4),
             self.model,
             self.width_nm,
             self.tables()

@@ -49,6 +49,16 @@ pub fn significant(value: f64, digits: usize) -> String {
     }
 }
 
+/// A given quantity as it was given: up to `digits` significant digits, none that say nothing.
+pub fn given(value: f64, digits: usize) -> String {
+    let text = significant(value, digits);
+    if text.contains('.') && !text.contains('e') {
+        text.trim_end_matches('0').trim_end_matches('.').to_owned()
+    } else {
+        text
+    }
+}
+
 /// A numerical error in meV: its order of magnitude is all that matters.
 pub fn error_mev(value_ev: f64) -> String {
     let mev = value_ev * 1e3;
@@ -70,5 +80,8 @@ mod tests {
         assert_eq!(significant(9.9996, 4), "10.00");
         assert_eq!(significant(123456.0, 3), "123456");
         assert_eq!(significant(5e17, 3), "5.00e17");
+        assert_eq!(given(77.0, 4), "77");
+        assert_eq!(given(300.0, 4), "300");
+        assert_eq!(given(4.2, 4), "4.2");
     }
 }

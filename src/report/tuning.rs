@@ -252,7 +252,7 @@ fn notes(outcome: &Outcome) -> Vec<String> {
         }
     }
     notes.dedup();
-    if let Some(continuous) = &outcome.continuous {
+    if outcome.continuous.is_some() {
         for (a, aim) in task.aims.iter().enumerate() {
             if let Some((miss, within)) = aim.goal.miss(outcome.after.values[a])
                 && outcome.met[a]
@@ -266,7 +266,6 @@ fn notes(outcome: &Outcome) -> Vec<String> {
                 ));
             }
         }
-        let _ = continuous;
     }
     notes
 }

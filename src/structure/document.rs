@@ -10,11 +10,11 @@ use std::fmt;
 use std::ops::Range;
 
 /// The largest text that is read, in bytes. A stack of some ten thousand layers is far below it.
-pub const MAX_BYTES: usize = 4 << 20;
+pub const MAX_BYTES: usize = 2 << 20;
 /// The deepest nesting; the format itself needs about a dozen levels, nested repeats included.
 const MAX_DEPTH: usize = 64;
-/// How many values the text may hold; a layer has some ten.
-const MAX_NODES: usize = 200_000;
+/// How many values the text may hold, keys among them; a layer has some ten.
+const MAX_NODES: usize = 120_000;
 /// How many values may come through aliases.
 const MAX_REPEATED: usize = 50_000;
 
@@ -65,7 +65,12 @@ impl Node {
 /// One message when the bytes are too many, hold control characters that no text file has or are not UTF-8.
 pub fn decode(bytes: &[u8]) -> Result<&str, Diagnostic> {
     if bytes.len() > MAX_BYTES {
-        return Err(too_large(bytes.len()));
+        return Err(too_large());
+    }
+    if bytes.starts_with(b"\xff\xfe") || bytes.starts_with(b"\xfe\xff") {
+        return Err(Diagnostic::error("the file is in UTF-16")
+            .expected("a YAML text in UTF-8")
+            .hint("save the file as UTF-8 in the editor"));
     }
     if bytes.iter().any(|byte| *byte < b'\t') {
         return Err(
@@ -88,9 +93,9 @@ pub fn decode(bytes: &[u8]) -> Result<&str, Diagnostic> {
     }
 }
 
-fn too_large(bytes: usize) -> Diagnostic {
+fn too_large() -> Diagnostic {
     Diagnostic::error(format!(
-        "the file has {bytes} bytes, more than the {MAX_BYTES} that a structure file may have"
+        "the file has more than the {MAX_BYTES} bytes that a structure file may have"
     ))
 }
 
@@ -101,7 +106,7 @@ fn too_large(bytes: usize) -> Diagnostic {
 /// one document; a message for each key that a mapping has twice.
 pub fn parse(text: &str) -> Result<Node, Vec<Diagnostic>> {
     if text.len() > MAX_BYTES {
-        return Err(vec![too_large(text.len())]);
+        return Err(vec![too_large()]);
     }
     let options = serde_yaml::options! {
         budget: serde_yaml::budget! {

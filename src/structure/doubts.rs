@@ -9,7 +9,7 @@ use std::ops::Range;
 
 /// How far the tables may put a side valley from where it is: that of AlGaAs crosses at an Al fraction of 0.37 ± 0.015 in
 /// measurements and 0.417 in the usual tables, some 50 meV.
-const VALLEY_UNCERTAINTY_EV: f64 = 0.06;
+const VALLEY_UNCERTAINTY_EV: f64 = 0.05;
 /// The strain beyond which coherent layers of useful width are not grown; common practice.
 const DOUBTFUL_STRAIN: f64 = 0.05;
 
@@ -83,11 +83,13 @@ fn of_layer(entry: &LayerEntry, layer: usize, stack: &Stack, found: &mut Vec<Dia
         } else {
             format!("{name} is nearly indirect: its {valley} valley lies only {mev:.0} meV above Γ")
         };
-        found.push(
-            Diagnostic::warning(message)
-                .at(place(entry))
-                .hint("levels are those of Γ; where the valleys cross is known to some 50 meV"),
-        );
+        found.push(Diagnostic::warning(message).at(place(entry)).hint(
+            if above_ev.abs() < VALLEY_UNCERTAINTY_EV {
+                "levels are those of Γ; where the valleys cross is known to some 50 meV"
+            } else {
+                "levels are those of Γ; electrons can leave through the side valley"
+            },
+        ));
     }
     if let Some(lattice) = stack.substrate_lattice_nm() {
         let strains: Vec<Option<f64>> = faces
@@ -168,16 +170,28 @@ fn of_variable(
                 found.push(no_monolayer(layer, &variable.span));
                 return;
             };
-            let unknown = stack
-                .layers
-                .iter()
-                .position(|layer| layer.entry == *entry)
-                .is_some_and(|layer| stack.monolayer_nm(layer).is_none());
-            if snap && unknown && bounds[0].unit.dimension != Dimension::Monolayers {
-                found.push(
+            match stack.entry_monolayer_nm(*entry) {
+                None if snap && bounds[0].unit.dimension != Dimension::Monolayers => found.push(
                     no_monolayer(layer, &variable.span)
                         .expected("a known monolayer, because of `snap: monolayer`"),
-                );
+                ),
+                Some(monolayer)
+                    if snap && !holds_whole_number(low / monolayer, high / monolayer) =>
+                {
+                    found.push(
+                        Diagnostic::error(format!(
+                            "the bounds on the width of {} hold no whole number of monolayers",
+                            layer.in_words()
+                        ))
+                        .at(variable.span.clone())
+                        .expected(format!(
+                            "room for one, because of `snap: monolayer`; they are {:.2} and {:.2} monolayers",
+                            low / monolayer,
+                            high / monolayer
+                        )),
+                    );
+                }
+                _ => {}
             }
             found.extend(outside(
                 format!("the width {} of {}", layer.width.value, layer.in_words()),
@@ -213,4 +227,10 @@ fn of_variable(
             ));
         }
     }
+}
+
+/// Whether a whole number from 1 lies between two numbers, of which whole ones may be off by rounding.
+fn holds_whole_number(low: f64, high: f64) -> bool {
+    const ROUNDING: f64 = 1e-9;
+    (low - ROUNDING).ceil().max(1.0) <= (high + ROUNDING).floor()
 }

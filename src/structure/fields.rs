@@ -128,6 +128,9 @@ impl Checker<'_> {
                         .expected(one_of(keys));
                     self.report(match meant {
                         Some(meant) => problem.hint(format!("did you mean `{meant}`?")),
+                        None if name.starts_with(|c: char| c.is_ascii_digit()) => {
+                            problem.hint("a comma begins the next key; write decimals with a point, as in `5.2 nm`")
+                        }
                         None => problem,
                     });
                     fields
@@ -312,6 +315,9 @@ impl Checker<'_> {
                         suggestion: Some(unit),
                         ..
                     } => Some(format!("did you mean `{unit}`?")),
+                    UnitError::DecimalComma { text } => {
+                        Some(format!("did you mean `{}`?", text.replacen(',', ".", 1)))
+                    }
                     UnitError::MissingUnit { text } => dimensions.first().and_then(|dimension| {
                         let (_, unit) = units::split_number(dimension.example())?;
                         Some(format!("write the unit, as in `{text} {unit}`"))

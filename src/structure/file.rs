@@ -145,6 +145,7 @@ pub enum Varied {
 /// One aim of tuning: a property of the transition between two levels.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Aim {
+    /// The lower of the two levels where levels are counted by energy.
     pub from: Level,
     pub to: Level,
     pub target: Target,

@@ -93,17 +93,23 @@ fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
         Some(node) => checker.word(node, &["order", "character"]),
         None => Some("order"),
     };
+    let follow = match follow? {
+        "character" => Follow::Character,
+        _ => Follow::Order,
+    };
+    let (mut from, mut to) = (from?, to.filter(|_| ends_differ)?);
+    // Emission is written from the upper level to the lower; counted by energy, it is the same transition. By character,
+    // the two may have changed places, and then the order says which of them is to be the upper one.
+    if follow == Follow::Order && from.index > to.index {
+        std::mem::swap(&mut from, &mut to);
+    }
     Some(Aim {
-        from: from?,
-        to: to.filter(|_| ends_differ)?,
+        from,
+        to,
         target: target?,
         weight: weight?,
         within: within?,
-        follow: if follow? == "character" {
-            Follow::Character
-        } else {
-            Follow::Order
-        },
+        follow,
         span: checker.head(&item.span),
     })
 }

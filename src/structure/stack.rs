@@ -13,6 +13,9 @@ use std::ops::Range;
 /// The temperature at which compositions are matched to the substrate, in K: that of the library's own match.
 const MATCH_TEMPERATURE_K: f64 = 300.0;
 
+/// The most that all layers may have together, in nm: more than any epitaxial stack, and as much as one layer may have.
+const MAX_TOTAL_NM: f64 = 1e5;
+
 /// A stack of layers, lowest first, ready to be solved and cheap to change.
 #[derive(Clone, Debug)]
 pub struct Stack {
@@ -107,7 +110,39 @@ impl Structure {
             return Err(problems);
         }
         stack.lay_out(&self.sequence, &self.entries, &widths_nm);
-        Ok(stack)
+        match self.too_thick(&stack) {
+            Some(problem) => Err(vec![problem]),
+            None => Ok(stack),
+        }
+    }
+
+    /// A message at the layer that makes up most of a stack that is too thick.
+    fn too_thick(&self, stack: &Stack) -> Option<Diagnostic> {
+        let total_nm = stack.total_width_nm();
+        if total_nm <= MAX_TOTAL_NM * (1.0 + 1e-9) {
+            return None;
+        }
+        let mut share_nm = vec![0.0; self.entries.len()];
+        for layer in &stack.layers {
+            share_nm[layer.entry] += layer.width_nm;
+        }
+        let (entry, share_nm) = self
+            .entries
+            .iter()
+            .zip(&share_nm)
+            .max_by(|a, b| a.1.total_cmp(b.1))?;
+        Some(
+            Diagnostic::error(format!(
+                "the layers are {:.0} µm thick together",
+                1e-3 * total_nm
+            ))
+            .at(entry.width.span.clone())
+            .expected(format!(
+                "at most {:.0} µm in all; this layer and its copies make up {:.0} µm",
+                1e-3 * MAX_TOTAL_NM,
+                1e-3 * share_nm
+            )),
+        )
     }
 
     fn substrate_lattice(

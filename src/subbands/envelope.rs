@@ -55,11 +55,19 @@ fn layer_values(subbands: &Subbands, vector: &[f64], layer: usize, places: &[f64
         .collect()
 }
 
-/// ∫ √(ρ_i ρ_j) dz of the probability densities of two states.
-pub fn envelope_overlap(subbands: &Subbands, i: usize, j: usize) -> f64 {
-    let (a, b) = (state::density(subbands, i), state::density(subbands, j));
-    let count = subbands.pencil.mesh.order() + 1;
-    state::integrate(&subbands.pencil, |e, q| {
-        (a[e * count + q] * b[e * count + q]).sqrt()
-    })
+/// Every state's √(w ρ) at the nodes of each element, with ρ its probability density and w the quadrature weights: the
+/// scalar product of two lists is the overlap ∫ √(ρ_i ρ_j) dz.
+pub fn amplitudes(subbands: &Subbands) -> Vec<Vec<f64>> {
+    let mesh = &subbands.pencil.mesh;
+    let amplitudes = (0..subbands.pairs.len()).map(|index| {
+        let mut list = state::density(subbands, index);
+        let nodes = list.chunks_exact_mut(mesh.order() + 1);
+        for (values, element) in nodes.zip(&mesh.elements) {
+            for (value, w) in values.iter_mut().zip(&mesh.reference.weights) {
+                *value = (0.5 * element.length * w * *value).sqrt();
+            }
+        }
+        list
+    });
+    amplitudes.collect()
 }

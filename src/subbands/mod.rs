@@ -8,7 +8,7 @@ mod state;
 
 pub use audit::Audit;
 pub use change::change;
-pub use envelope::{envelope_overlap, layer_envelopes};
+pub use envelope::{amplitudes, layer_envelopes};
 pub use state::{Hold, State};
 
 use crate::models::ConductionOperator;
@@ -34,6 +34,8 @@ impl Default for Accuracy {
 const ORDERS: [usize; 3] = [6, 8, 12];
 /// A tolerance below this skips the lowest order, which seldom reaches it.
 const FINE_EV: f64 = 1e-7;
+/// No energy is held to less than this part of its height above the floor: a finer mesh would add rounding only.
+const ROUNDING: f64 = 1e-11;
 /// Halvings after which the error that is reached is reported as it is.
 const MAX_HALVINGS: usize = 4;
 /// The order is raised by this much for the error estimate.
@@ -60,8 +62,13 @@ pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) ->
             }
             let mesh = Mesh::new(&lengths, &pieces, order);
             let subbands = on_mesh(operator, mesh, count);
-            let worst = subbands.errors_ev.iter().fold(0.0, |a: f64, b| a.max(*b));
-            let enough = subbands.pairs.len() == count && worst <= accuracy.tolerance_ev;
+            let floor_ev = subbands.pencil.floor();
+            let mut levels = subbands.errors_ev.iter().zip(&subbands.pairs);
+            let exact = levels.all(|(error_ev, pair)| {
+                let rounding_ev = ROUNDING * (pair.value - floor_ev);
+                *error_ev <= accuracy.tolerance_ev.max(rounding_ev)
+            });
+            let enough = subbands.pairs.len() == count && exact;
             if enough || (halvings == MAX_HALVINGS && order == ORDERS[ORDERS.len() - 1]) {
                 return subbands;
             }
@@ -71,7 +78,7 @@ pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) ->
     }
 }
 
-/// Solves on a given mesh, with the errors estimated by one step on a higher order.
+/// Solves on a given mesh, with the errors estimated on a higher order.
 pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subbands {
     let pencil = pencil_on(operator, mesh);
     let pairs = eigenpairs::lowest(&pencil, count);
@@ -79,17 +86,11 @@ pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subba
         operator,
         pencil.mesh.with_order(pencil.mesh.order() + ORDER_STEP),
     );
-    let errors_ev = pairs
-        .iter()
-        .map(|pair| {
-            let vector = pencil.mesh.transfer(&pair.vector, &finer.mesh);
-            (eigenpairs::improved_value(&finer, pair.value, &vector) - pair.value).abs()
-        })
-        .collect();
+    let errors_ev = eigenpairs::improvements(&pencil, &pairs, &finer);
     Subbands {
         pencil,
         pairs,
-        errors_ev,
+        errors_ev: errors_ev.into_iter().map(f64::abs).collect(),
     }
 }
 

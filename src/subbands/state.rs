@@ -4,7 +4,6 @@ use super::Subbands;
 use crate::constants::HBAR2_OVER_2M0;
 use crate::numerics::pencil::Pencil;
 use crate::numerics::quadrature::MAX_ORDER;
-use crate::numerics::sensitivity::moment;
 
 /// What keeps a state in the stack.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -47,6 +46,12 @@ pub(super) fn density(subbands: &Subbands, index: usize) -> Vec<f64> {
     let p = reference.order;
     let pair = &pairs[index];
     let mut density = Vec::with_capacity(pencil.coefficients.len());
+    if pencil.is_linear() {
+        for e in 0..pencil.mesh.elements.len() {
+            density.extend(pencil.mesh.local(e, &pair.vector).iter().map(|v| v * v));
+        }
+        return density;
+    }
     let mut slopes = [0.0; MAX_ORDER + 1];
     for (e, element) in pencil.mesh.elements.iter().enumerate() {
         let values = pencil.mesh.local(e, &pair.vector);
@@ -96,7 +101,9 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
     let p = pencil.mesh.order();
     let density = density(subbands, index);
     let at = |e: usize, q: usize| density[e * (p + 1) + q];
-    let centre_nm = moment(pencil, pair, pair);
+    let centre_nm = integrate(pencil, |e, q| {
+        at(e, q) * pencil.mesh.position(&pencil.mesh.elements[e], q)
+    });
     let variance = integrate(pencil, |e, q| {
         let distance = pencil.mesh.position(&pencil.mesh.elements[e], q) - centre_nm;
         at(e, q) * distance * distance

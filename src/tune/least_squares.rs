@@ -33,9 +33,21 @@ impl Default for BoundedLeastSquares {
             smallest_step: 1e-9,
             smallest_gradient: 1e-11,
             smallest_cost: 1e-14,
-            smallest_gain: 1e-7,
+            smallest_gain: 1e-5,
             max_trials: 25,
             converged: false,
+        }
+    }
+}
+
+impl BoundedLeastSquares {
+    /// Good enough to rank designs by their cost.
+    pub fn rough() -> Self {
+        Self {
+            smallest_step: 1e-6,
+            smallest_gain: 1e-2,
+            max_trials: 4,
+            ..Self::default()
         }
     }
 }

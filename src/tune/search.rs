@@ -113,6 +113,7 @@ pub fn descend(
     task: &Task,
     start: DVector<f64>,
     characters: Option<Characters>,
+    solver: BoundedLeastSquares,
     watch: Watch,
 ) -> Option<Found> {
     let descent = Descent {
@@ -126,7 +127,7 @@ pub fn descend(
         let design = descent.solve(&start).ok()?;
         return Some(Found { at: start, design });
     }
-    let mut run = Executor::new(descent, BoundedLeastSquares::default())
+    let mut run = Executor::new(descent, solver)
         .configure(|state| state.param(start).max_iters(MAX_ITERATIONS))
         .timer(false)
         .run()
@@ -154,7 +155,11 @@ pub fn search(
     characters: Option<&Characters>,
     watch: Watch,
 ) -> Option<(Found, usize)> {
-    let first = descend(task, task.start(), characters.cloned(), watch);
+    let descend = |start| {
+        let solver = BoundedLeastSquares::default();
+        descend(task, start, characters.cloned(), solver, watch)
+    };
+    let first = descend(task.start());
     if let Some(found) = &first
         && (task.is_met(&found.design) || task.variables.is_empty())
     {
@@ -182,7 +187,7 @@ pub fn search(
         .collect();
     let ends: Vec<Found> = starts
         .into_par_iter()
-        .filter_map(|index| descend(task, spread(index, dimensions), characters.cloned(), watch))
+        .filter_map(|index| descend(spread(index, dimensions)))
         .collect();
     // The first of equals wins, so that the result does not depend on the order in which threads finish.
     let best = first.into_iter().chain(ends).reduce(|best, next| {
