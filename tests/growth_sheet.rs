@@ -662,7 +662,7 @@ fn an_output_is_whole_or_absent() {
     assert_eq!(fs::read(input).unwrap(), before);
     let nowhere = folder.path().join("no/such/folder/sheet.html");
     let lost = run(&["sheet", input, "-o", nowhere.to_str().unwrap()]);
-    assert_eq!(lost.status.code(), Some(1));
+    assert_eq!(lost.status.code(), Some(2));
     assert!(!nowhere.exists());
     // A file without a growth block leaves nothing behind.
     let bare = folder.path().join("bare.yaml");
