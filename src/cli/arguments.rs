@@ -1,5 +1,6 @@
 //! What the user types.
 
+use crate::report::svg::Width;
 use clap::{Args, Parser, Subcommand, ValueEnum};
 use std::path::PathBuf;
 
@@ -48,6 +49,17 @@ pub enum Command {
         /// Structure file
         file: PathBuf,
     },
+    /// Draw the band diagram with the squared envelopes as SVG
+    Plot {
+        /// Structure file
+        file: PathBuf,
+        /// Printed width: a page (170 mm) or a column of a journal (86 mm)
+        #[arg(long, value_enum, default_value_t = PlotWidth::Page)]
+        width: PlotWidth,
+        /// Write the picture to a file instead of the terminal
+        #[arg(short, long, value_name = "FILE")]
+        output: Option<PathBuf>,
+    },
     /// List the material library, or print one material's parameters
     Materials {
         /// Chemical formula, such as GaAs or Al0.3Ga0.7As
@@ -85,4 +97,19 @@ pub enum SheetFormat {
     Json,
     /// One page that holds everything and prints on A4
     Html,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum PlotWidth {
+    Page,
+    Column,
+}
+
+impl From<PlotWidth> for Width {
+    fn from(width: PlotWidth) -> Width {
+        match width {
+            PlotWidth::Page => Width::Page,
+            PlotWidth::Column => Width::Column,
+        }
+    }
 }

@@ -7,6 +7,7 @@ mod input;
 mod levels;
 mod materials;
 mod output;
+mod plot;
 mod progress;
 mod run;
 mod sheet;

@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, levels, materials, sheet, tune};
+use super::{check, levels, materials, plot, sheet, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -19,6 +19,11 @@ pub fn run(arguments: Arguments) -> Exit {
             output,
         } => sheet::sheet(&file, format, output.as_deref()),
         Command::Check { file } => check::check(&file),
+        Command::Plot {
+            file,
+            width,
+            output,
+        } => plot::plot(&file, width.into(), output.as_deref()),
         Command::Materials {
             formula,
             temperature,

@@ -6,6 +6,7 @@ use super::input::Input;
 use crate::growth;
 use crate::models::ConductionOperator;
 use crate::report::Sheet;
+use crate::report::svg::{BandDiagram, FINENESS, Width};
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
 
@@ -50,7 +51,13 @@ pub fn sheet(
     } else {
         SheetFormat::Table
     }) {
-        SheetFormat::Html => sheet.html(&[]),
+        SheetFormat::Html => {
+            let curves = subbands::curves(&operator, &subbands, states, FINENESS);
+            let diagram =
+                BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
+            let caption = "Band edge and squared envelopes at their energies";
+            sheet.html(&[(caption.to_owned(), diagram.svg(Width::Page))])
+        }
         SheetFormat::Table => return deliver(&sheet, Format::Table, output, file),
         SheetFormat::Csv => return deliver(&sheet, Format::Csv, output, file),
         SheetFormat::Json => return deliver(&sheet, Format::Json, output, file),

@@ -5,5 +5,6 @@ pub mod banded;
 pub mod eigenpairs;
 pub mod mesh;
 pub mod pencil;
+pub mod polyline;
 pub mod quadrature;
 pub mod sensitivity;

@@ -6,6 +6,7 @@ mod sheet;
 mod sheet_csv;
 mod sheet_html;
 mod sheet_text;
+pub mod svg;
 mod table;
 mod tuning;
 

@@ -2,12 +2,14 @@
 
 mod audit;
 mod change;
+mod curves;
 mod envelope;
 mod resolution;
 mod state;
 
 pub use audit::Audit;
 pub use change::change;
+pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
 pub use state::{Hold, State};
 
