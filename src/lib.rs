@@ -23,6 +23,8 @@ pub mod optics;
 
 pub mod tune;
 
+pub mod tolerance;
+
 pub mod report;
 
 pub mod cli;

@@ -21,6 +21,8 @@ pub enum Dimension {
     MonolayerRate,
     /// Growth as a length per time; the inner unit is nm/s.
     LengthRate,
+    /// A part of the quantity that is spoken of; 1 % is 0.01 inside.
+    Percentage,
 }
 
 impl Dimension {
@@ -37,6 +39,7 @@ impl Dimension {
             Dimension::Stiffness => "an elastic constant",
             Dimension::MonolayerRate => "a growth rate in monolayers",
             Dimension::LengthRate => "a growth rate",
+            Dimension::Percentage => "a percentage",
         }
     }
 
@@ -53,6 +56,7 @@ impl Dimension {
             Dimension::Stiffness => "122.1 GPa",
             Dimension::MonolayerRate => "0.70 ML/s",
             Dimension::LengthRate => "1.0 µm/h",
+            Dimension::Percentage => "0.7 %",
         }
     }
 }
@@ -121,6 +125,7 @@ pub static UNITS: &[Unit] = &[
     unit!("nm/s", LengthRate, 1.0),
     unit!("Å/s", LengthRate, 0.1, "A/s", "Å/s"),
     unit!("µm/h", LengthRate, 1.0 / 3.6, "μm/h", "um/h"),
+    unit!("%", Percentage, 1e-2),
 ];
 
 /// A number with its unit, as the user wrote it.

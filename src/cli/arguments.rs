@@ -44,6 +44,20 @@ pub enum Command {
         #[arg(short, long, value_name = "FILE")]
         output: Option<PathBuf>,
     },
+    /// How far the transitions move with everything that cannot be held exactly, and the share of wafers inside the
+    /// windows of the file's `tolerance` block
+    Tolerance {
+        /// Structure file, with a `tolerance` block for the share of wafers
+        file: PathBuf,
+        /// Wafers to sample instead of the number in the file
+        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(2..=100_000))]
+        samples: Option<u32>,
+        /// Threads to use; as many as there are cores when left out
+        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
+        threads: Option<u16>,
+        #[command(flatten)]
+        output: Output,
+    },
     /// Read and check a structure file without solving it
     Check {
         /// Structure file

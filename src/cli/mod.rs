@@ -11,6 +11,7 @@ mod plot;
 mod progress;
 mod run;
 mod sheet;
+mod tolerance;
 mod tune;
 
 pub use arguments::Arguments;

@@ -26,6 +26,10 @@ impl SearchProgress {
             Stage::Starts { done, planned } => format!("looking for a start: {done} of {planned}"),
             Stage::Monolayers { designs } => format!("whole monolayers: {designs} designs"),
         };
+        self.say(message);
+    }
+
+    pub fn say(&self, message: String) {
         self.line.set_message(message);
     }
 }

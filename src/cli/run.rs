@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, levels, materials, plot, sheet, tune};
+use super::{check, levels, materials, plot, sheet, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -18,6 +18,12 @@ pub fn run(arguments: Arguments) -> Exit {
             format,
             output,
         } => sheet::sheet(&file, format, output.as_deref()),
+        Command::Tolerance {
+            file,
+            samples,
+            threads,
+            output,
+        } => tolerance::tolerance(&file, samples, threads, &output),
         Command::Check { file } => check::check(&file),
         Command::Plot {
             file,

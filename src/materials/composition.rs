@@ -144,6 +144,47 @@ impl Composition {
         })
     }
 
+    /// What the same group-III sources grow when the flux of each element is multiplied by `factor`, and the factor by
+    /// which the growth rate changes: the rates of the binaries add up, and so the fractions are those of the fluxes.
+    /// Group V is left as it is.
+    ///
+    /// The factors must be positive.
+    pub fn with_fluxes(&self, factor: impl Fn(Element) -> f64) -> (Composition, f64) {
+        let sum: f64 = self
+            .on(Sublattice::GroupThree)
+            .map(|e| self.fraction(e) * factor(e))
+            .sum();
+        let mut changed = self.clone();
+        for element in self.on(Sublattice::GroupThree) {
+            changed.fractions[element.index()] = self.fraction(element) * factor(element) / sum;
+        }
+        (changed, sum)
+    }
+
+    /// The composition with `by` more of `element` and less of `host`, both on the same sublattice.
+    ///
+    /// # Errors
+    /// When one of the two would become negative.
+    pub fn shifted(
+        &self,
+        element: Element,
+        host: Element,
+        by: f64,
+    ) -> Result<Composition, MaterialError> {
+        let mut changed = self.clone();
+        for (element, by) in [(element, by), (host, -by)] {
+            let fraction = self.fraction(element) + by;
+            if fraction.is_nan() || fraction < 0.0 {
+                return Err(MaterialError::FractionRange {
+                    symbol: element.symbol(),
+                    fraction,
+                });
+            }
+            changed.fractions[element.index()] = fraction;
+        }
+        Ok(changed)
+    }
+
     /// The composition a share of the way from this one to another, fraction by fraction (0 here, 1 there).
     ///
     /// # Errors

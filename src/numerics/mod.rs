@@ -4,6 +4,7 @@
 pub mod banded;
 pub mod eigenpairs;
 pub mod mesh;
+pub mod nearby;
 pub mod pencil;
 pub mod polyline;
 pub mod quadrature;

@@ -8,11 +8,13 @@ mod sheet_html;
 mod sheet_text;
 pub mod svg;
 mod table;
+mod tolerance;
 mod tuning;
 
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
 pub use sheet::Sheet;
+pub use tolerance::Tolerances;
 pub use tuning::Tuning;
 
 use serde::Serialize;

@@ -1,6 +1,7 @@
 //! What only shows once materials are resolved: doubts about the physics, and bounds of tuning that do not fit.
 
 use super::file::{LayerEntry, Structure, Variable, Varied};
+use super::read_tolerance;
 use super::stack::{Stack, no_monolayer};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Material, Valley, strain};
@@ -51,6 +52,7 @@ pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
             );
         }
     }
+    read_tolerance::unfitting(structure, stack, &mut found);
     found
 }
 

@@ -3,6 +3,7 @@
 use super::document::Node;
 use super::growth::Growth;
 use super::rewrite::FreeLine;
+use super::spreads::Tolerance;
 use crate::materials::{Element, Library, Substance};
 use crate::units::Quantity;
 use std::ops::Range;
@@ -45,6 +46,7 @@ pub struct Structure {
     pub sequence: Vec<Item>,
     pub tune: Option<Tune>,
     pub growth: Option<Growth>,
+    pub tolerance: Option<Tolerance>,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
 }

@@ -33,6 +33,15 @@ impl Law {
             Law::VertexAbove => t * (2.0 - t),
         }
     }
+
+    /// The mean of [`share`](Self::share) over the layer.
+    pub fn mean_share(self) -> f64 {
+        match self {
+            Law::Linear => 1.0 / 2.0,
+            Law::VertexBelow => 1.0 / 3.0,
+            Law::VertexAbove => 2.0 / 3.0,
+        }
+    }
 }
 
 /// Every parameter that share of the way from one material to another.

@@ -15,9 +15,12 @@ mod read_aims;
 mod read_growth;
 mod read_layers;
 mod read_materials;
+mod read_tolerance;
 mod read_tune;
 mod rewrite;
+mod spreads;
 mod stack;
+mod wafer;
 
 pub use file::{
     Aim, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile, Spanned,
@@ -26,7 +29,9 @@ pub use file::{
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};
+pub use spreads::{Grading, Radial, Tolerance, Window};
 pub use stack::{Layer, Stack};
+pub use wafer::{Cause, Design, NotGrown};
 
 mod knob;
 pub use document::{MAX_BYTES, decode};

@@ -5,7 +5,7 @@ use super::fields::{Checker, Limits};
 use super::file::{ConductionBand, ConductionModel, Structure};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
-use super::{read_growth, read_materials, read_tune};
+use super::{read_growth, read_materials, read_tolerance, read_tune};
 use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
@@ -22,8 +22,6 @@ const KEYS: [&str; 11] = [
     "growth",
     "tolerance",
 ];
-/// Parts of the format that other commands will read one day.
-const UNREAD: [&str; 1] = ["tolerance"];
 const TEMPERATURE_LIMITS: Limits =
     super::fields::between(0.0, 1000.0, "a temperature from 0 K to 1000 K");
 const DEFAULT_TEMPERATURE_K: f64 = 300.0;
@@ -152,13 +150,9 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     {
         read_growth::needed_by(checker, tune);
     }
-    for key in UNREAD {
-        if let Some(place) = key_span(root, key) {
-            checker.report(
-                Diagnostic::warning(format!("`{key}` is not used by this version")).at(place),
-            );
-        }
-    }
+    let tolerance = fields
+        .get("tolerance")
+        .and_then(|node| read_tolerance::tolerance(checker, node));
     let layers = layers?;
     Some(Structure {
         title,
@@ -176,6 +170,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         sequence: layers.sequence,
         tune,
         growth: settled(growth)?,
+        tolerance,
         field_line: free_line(checker.text, root),
     })
 }

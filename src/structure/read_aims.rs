@@ -7,8 +7,8 @@ use super::read_tune::MAX_LEVELS;
 use crate::diagnostics::{Diagnostic, probably_meant};
 use crate::units::{self, Dimension};
 
-const ENERGY_LIMITS: Limits = above(0.0, 10.0, "more than 0 eV, at most 10 eV");
-const WAVELENGTH_LIMITS: Limits = above(0.0, 1e7, "more than 0 µm, at most 10 mm");
+pub(super) const ENERGY_LIMITS: Limits = above(0.0, 10.0, "more than 0 eV, at most 10 eV");
+pub(super) const WAVELENGTH_LIMITS: Limits = above(0.0, 1e7, "more than 0 µm, at most 10 mm");
 const DIPOLE_LIMITS: Limits = above(0.0, 1e5, "more than 0 nm, at most 100 µm");
 const WEIGHT_LIMITS: Limits = above(0.0, 1e6, "more than 0, at most 1e6");
 /// What an aim can be about.
@@ -115,7 +115,7 @@ fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
 }
 
 /// `conduction 2`.
-fn level(checker: &mut Checker, node: &Node) -> Option<Level> {
+pub(super) fn level(checker: &mut Checker, node: &Node) -> Option<Level> {
     let expected = "a level such as `conduction 2`";
     let text = checker.scalar(node, expected)?;
     let mut words = text.split_whitespace();

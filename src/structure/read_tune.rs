@@ -282,23 +282,9 @@ fn fraction(
                 )
                 .map(|bounds| (bounds, node.span.clone()))
         });
-    let element = fields.get("fraction").and_then(|node| {
-        let symbol = checker.scalar(node, "the symbol of an element, such as `Al`")?;
-        let element = Element::from_symbol(symbol);
-        if element.is_none() {
-            let symbols = Element::ALL.map(Element::symbol);
-            let problem = Diagnostic::error(format!("`{symbol}` is no element of the library"))
-                .at(node.span.clone())
-                .expected(format!("expected {}", one_of(&symbols)));
-            checker.report(match probably_meant(symbol, symbols) {
-                Some(meant) if meant.eq_ignore_ascii_case(symbol) => {
-                    problem.hint(format!("did you mean `{meant}`?"))
-                }
-                _ => problem,
-            });
-        }
-        Some((element?, node))
-    });
+    let element = fields
+        .get("fraction")
+        .and_then(|node| Some((element(checker, node, &Element::ALL)?, node)));
     let (element, node) = element?;
     let entry = entry?;
     let layer = entries.get(entry).and_then(|(_, layer)| layer.as_ref())?;
@@ -360,6 +346,25 @@ fn is_pair_of_group_three(layer: &LayerEntry, element: Element) -> bool {
     let three = |element: &Element| element.sublattice() == Sublattice::GroupThree;
     let count = composition.elements().iter().filter(|e| three(e)).count();
     three(&element) && count == 2 && layer.to.is_none()
+}
+
+/// An element by its symbol; `expected` are those that a message names.
+pub(super) fn element(checker: &mut Checker, node: &Node, expected: &[Element]) -> Option<Element> {
+    let symbol = checker.scalar(node, "the symbol of an element, such as `Al`")?;
+    let element = Element::from_symbol(symbol);
+    if element.is_none() {
+        let symbols: Vec<&str> = expected.iter().map(|element| element.symbol()).collect();
+        let problem = Diagnostic::error(format!("`{symbol}` is no element of the library"))
+            .at(node.span.clone())
+            .expected(format!("expected {}", one_of(&symbols)));
+        checker.report(match probably_meant(symbol, symbols.iter().copied()) {
+            Some(meant) if meant.eq_ignore_ascii_case(symbol) => {
+                problem.hint(format!("did you mean `{meant}`?"))
+            }
+            _ => problem,
+        });
+    }
+    element
 }
 
 /// How far the fraction of an element can go, and at whose cost.

@@ -23,12 +23,13 @@ pub struct Stack {
     pub layers: Vec<Layer>,
     /// The field in V/nm; a positive one raises the electron's potential energy along the growth direction.
     pub field_v_per_nm: f64,
-    temperature_k: f64,
+    pub(super) temperature_k: f64,
+    pub(super) substrate: Option<Substance>,
     /// The in-plane lattice constant that all layers take over, if there is a substrate.
-    substrate_nm: Option<f64>,
-    library: Library,
+    pub(super) substrate_nm: Option<f64>,
+    pub(super) library: Library,
     /// What each entry of the file consists of.
-    contents: Vec<Content>,
+    pub(super) contents: Vec<Content>,
 }
 
 /// One layer of a stack.
@@ -47,24 +48,26 @@ pub struct Layer {
 
 /// What a layer entry consists of, resolved.
 #[derive(Clone, Debug)]
-struct Content {
-    lower: Face,
+pub(super) struct Content {
+    pub lower: Face,
     /// The upper face of a graded layer.
-    upper: Option<Face>,
-    law: Law,
-    profile: Profile,
-    monolayer_nm: Option<f64>,
+    pub upper: Option<Face>,
+    pub law: Law,
+    pub profile: Profile,
+    pub monolayer_nm: Option<f64>,
+    /// Whether this is the mixed crystal of an interface, whose parameters themselves go straight from face to face.
+    pub interface: bool,
 }
 
 /// The material at one face of a layer.
 #[derive(Clone, Debug)]
-struct Face {
+pub(super) struct Face {
     /// An alloy with all its fractions, or a material of the file.
-    substance: Substance,
+    pub substance: Substance,
     /// Without strain.
-    free: Material,
+    pub free: Material,
     /// With the edges moved by the strain.
-    strained: Material,
+    pub strained: Material,
 }
 
 impl Structure {
@@ -87,6 +90,7 @@ impl Structure {
             layers: Vec::new(),
             field_v_per_nm: self.field.as_ref().map_or(0.0, |field| field.value.value()),
             temperature_k: self.temperature_k,
+            substrate: self.substrate.as_ref().map(|s| s.value.clone()),
             substrate_nm: substrate.map(|lattice| lattice.at_temperature_nm),
             library: self.library.clone(),
             contents: Vec::new(),
@@ -314,6 +318,9 @@ impl Stack {
             return lower.strained.clone();
         };
         let share = content.law.share(t);
+        if content.interface {
+            return grade::blend(&lower.strained, &upper.strained, share);
+        }
         let free = match (&lower.substance, &upper.substance) {
             // That these can be mixed and resolved was found out when the stack was laid out.
             (Substance::Alloy(from), Substance::Alloy(to)) => from
@@ -459,7 +466,7 @@ impl Stack {
         }
     }
 
-    fn face(&self, substance: Substance) -> Result<Face, MaterialError> {
+    pub(super) fn face(&self, substance: Substance) -> Result<Face, MaterialError> {
         let free = self.library.material(&substance, self.temperature_k)?;
         let strained = self.strain(free.clone());
         Ok(Face {
@@ -469,7 +476,7 @@ impl Stack {
         })
     }
 
-    fn content(&self, lower: Face, upper: Option<Face>, profile: Profile) -> Content {
+    pub(super) fn content(&self, lower: Face, upper: Option<Face>, profile: Profile) -> Content {
         let monolayer = |face: &Face| monolayer_nm(&face.free, self.substrate_nm);
         let monolayer_nm = match &upper {
             None => monolayer(&lower),
@@ -487,6 +494,7 @@ impl Stack {
             law,
             profile,
             monolayer_nm,
+            interface: false,
         }
     }
 

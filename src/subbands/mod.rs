@@ -4,6 +4,7 @@ mod audit;
 mod change;
 mod curves;
 mod envelope;
+mod nearby;
 mod resolution;
 mod state;
 
@@ -11,6 +12,7 @@ pub use audit::Audit;
 pub use change::change;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
+pub use nearby::{Nearby, lower_outer_edge_ev};
 pub use state::{Hold, State};
 
 use crate::models::ConductionOperator;

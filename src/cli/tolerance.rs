@@ -1,0 +1,71 @@
+//! `tolerance`: how far transitions move, and what share of wafers will do.
+
+use super::arguments::Output;
+use super::deliver::{Exit, check_output, complain, deliver, show};
+use super::input::Input;
+use super::progress::SearchProgress;
+use crate::diagnostics::Diagnostic;
+use crate::report::Tolerances;
+use crate::subbands::Accuracy;
+use crate::tolerance::{self, ToleranceError};
+use std::path::Path;
+
+pub fn tolerance(
+    file: &Path,
+    samples: Option<u32>,
+    threads: Option<u16>,
+    output: &Output,
+) -> Result<Exit, Exit> {
+    let input = Input::read(file)?;
+    check_output(output.output.as_deref(), file)?;
+    if input.structure.tolerance.is_none() {
+        let doubt = Diagnostic::warning("there is no `tolerance` block, so nothing is sampled")
+            .expected("`tolerance` with spreads such as `rate: 0.7 %`");
+        show(&doubt, &input.name, &input.text);
+    }
+    let pool = rayon::ThreadPoolBuilder::new()
+        .num_threads(threads.map_or(0, usize::from))
+        .build()
+        .map_err(|error| {
+            complain(&format!("error: no threads can be started: {error}"));
+            Exit::NotPossible
+        })?;
+    let progress = SearchProgress::new();
+    let outcome = pool.install(|| {
+        tolerance::tolerance(
+            &input.structure,
+            &input.stack,
+            samples.map(|samples| samples as usize),
+            Accuracy::default(),
+            &|done| progress.say(format!("{done} wafers")),
+        )
+    });
+    drop(progress);
+    let outcome = outcome.map_err(|error| match &error {
+        ToleranceError::Unsuitable { layer, reason } => input.unsuitable(*layer, reason),
+        ToleranceError::Interface { .. } | ToleranceError::NoLayer => {
+            let mut problem = Diagnostic::error(error.to_string());
+            let grading = input.structure.tolerance.as_ref();
+            if let Some(grading) = grading.and_then(|tolerance| tolerance.grading.as_ref()) {
+                problem = problem.at(grading.span.clone());
+            }
+            show(&problem, &input.name, &input.text);
+            Exit::WrongInput
+        }
+        ToleranceError::NoLevel { .. } => {
+            show(
+                &Diagnostic::error(error.to_string()),
+                &input.name,
+                &input.text,
+            );
+            Exit::NotPossible
+        }
+    })?;
+    input.doubt(&outcome.abrupt, outcome.levels_ev.len());
+    deliver(
+        &Tolerances::new(&input.structure, &input.stack, &outcome),
+        output.format,
+        output.output.as_deref(),
+        file,
+    )
+}
