@@ -33,6 +33,17 @@ pub enum Command {
         #[arg(short, long, value_name = "FILE")]
         output: Vec<PathBuf>,
     },
+    /// Print the growth sheet of a stack with a `growth` block
+    Sheet {
+        /// Structure file
+        file: PathBuf,
+        /// Form of the sheet; a table, or a page when the output's name ends in .html
+        #[arg(long, value_enum)]
+        format: Option<SheetFormat>,
+        /// Write the sheet to a file instead of the terminal
+        #[arg(short, long, value_name = "FILE")]
+        output: Option<PathBuf>,
+    },
     /// How far the transitions move with everything that cannot be held exactly, and the share of wafers inside the
     /// windows of the file's `tolerance` block
     Tolerance {
@@ -91,6 +102,15 @@ pub enum Format {
     Table,
     Csv,
     Json,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum SheetFormat {
+    Table,
+    Csv,
+    Json,
+    /// One page that holds everything and prints on A4
+    Html,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]

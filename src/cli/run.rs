@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, levels, materials, plot, tolerance, tune};
+use super::{check, levels, materials, plot, sheet, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -13,6 +13,11 @@ pub fn run(arguments: Arguments) -> Exit {
             format,
             output,
         } => tune::tune(&file, format, &output),
+        Command::Sheet {
+            file,
+            format,
+            output,
+        } => sheet::sheet(&file, format, output.as_deref()),
         Command::Tolerance {
             file,
             samples,

@@ -42,7 +42,10 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
             show(&problem, &input.name, &input.text);
             Exit::WrongInput
         }
-        TuneError::Snap(_) | TuneError::Unsolved => {
+        TuneError::Snap(_)
+        | TuneError::Unsolved
+        | TuneError::NotGrowable { .. }
+        | TuneError::TooManyChoices { .. } => {
             show(
                 &Diagnostic::error(error.to_string()),
                 &input.name,

@@ -2,6 +2,10 @@
 
 mod levels;
 mod materials;
+mod sheet;
+mod sheet_csv;
+mod sheet_html;
+mod sheet_text;
 pub mod svg;
 mod table;
 mod tolerance;
@@ -9,6 +13,7 @@ mod tuning;
 
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
+pub use sheet::Sheet;
 pub use tolerance::Tolerances;
 pub use tuning::Tuning;
 

@@ -223,6 +223,14 @@ fn limit_sentences(outcome: &Outcome) -> Vec<String> {
 fn notes(outcome: &Outcome) -> Vec<String> {
     let task = &outcome.task;
     let mut notes = Vec::new();
+    for choice in &outcome.choices {
+        let values: Vec<String> = choice.values.iter().map(|v| significant(*v, 4)).collect();
+        notes.push(format!(
+            "The {} is one of those that the cells give: {}.",
+            choice.name,
+            values.join(", ")
+        ));
+    }
     for &k in &outcome.started_outside {
         notes.push(format!(
             "The {} of the file lies outside its bounds; the search began at the nearer bound.",

@@ -1,6 +1,7 @@
 //! What a structure file says, checked, with the places it was read from.
 
 use super::document::Node;
+use super::growth::Growth;
 use super::rewrite::FreeLine;
 use super::spreads::Tolerance;
 use crate::materials::{Element, Library, Substance};
@@ -44,6 +45,7 @@ pub struct Structure {
     /// How the entries follow one another, bottom first.
     pub sequence: Vec<Item>,
     pub tune: Option<Tune>,
+    pub growth: Option<Growth>,
     pub tolerance: Option<Tolerance>,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
@@ -136,6 +138,8 @@ pub enum Varied {
         element: Element,
         bounds: [f64; 2],
     },
+    /// As `Fraction`, with one of the values that the cells of `growth` give; the layer holds two group-III elements.
+    FractionOfCells { entry: usize, element: Element },
     /// The field.
     Field { bounds_v_per_nm: [f64; 2] },
 }

@@ -9,8 +9,10 @@ mod doubts;
 mod fields;
 mod file;
 mod grade;
+mod growth;
 mod read;
 mod read_aims;
+mod read_growth;
 mod read_layers;
 mod read_materials;
 mod read_tolerance;
@@ -24,6 +26,7 @@ pub use file::{
     Aim, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile, Spanned,
     Structure, Target, Tune, Variable, Varied, Within,
 };
+pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};
 pub use spreads::{Grading, Radial, Tolerance, Window};

@@ -332,6 +332,20 @@ impl Stack {
         self.strain(free)
     }
 
+    /// The composition of a layer at a height in it (`t` from 0 to 1), that which a material of the file is `like`
+    /// included; `None` when a face has none or there is no such layer.
+    pub fn composition_at(&self, layer: usize, t: f64) -> Option<Composition> {
+        let content = self.content_of(layer)?;
+        let lower = self.library.composition(&content.lower.substance)?;
+        match &content.upper {
+            None => Some(lower),
+            Some(upper) => {
+                let upper = self.library.composition(&upper.substance)?;
+                lower.towards(&upper, content.law.share(t)).ok()
+            }
+        }
+    }
+
     /// As [`material_at`](Self::material_at), with the derivative of every parameter with respect to the fraction of an
     /// element in the layer's lower material (`material` in the file), whose host compensates.
     ///

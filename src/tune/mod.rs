@@ -1,6 +1,7 @@
 //! Tuning: layer widths, compositions and field changed, inside their bounds, until the transitions are the wanted ones.
 
 mod aim;
+mod choice;
 mod evaluate;
 mod least_squares;
 mod limits;
@@ -8,6 +9,7 @@ mod search;
 mod snap;
 
 pub use aim::{Aim, Goal};
+pub use choice::Choice;
 pub use evaluate::{Design, Task, Variable};
 pub use limits::Limit;
 pub use search::{Stage, Watch};
@@ -46,6 +48,8 @@ pub struct Outcome {
     pub starts: usize,
     /// Variables whose value in the file lay outside their bounds.
     pub started_outside: Vec<usize>,
+    /// Variables that take one of a few values; they stand last among the task's.
+    pub choices: Vec<Choice>,
 }
 
 /// Why a tuning could not be done at all.
@@ -59,10 +63,32 @@ pub enum TuneError {
     Snap(#[from] SnapError),
     #[error("no design inside the bounds can be solved")]
     Unsolved,
+    #[error("the cells of `growth` give no alloy for the {name}")]
+    NotGrowable { name: String },
+    #[error(
+        "the compositions that the cells give make {combinations} combinations, more than {most}"
+    )]
+    TooManyChoices { combinations: usize, most: usize },
 }
 
 /// Tunes a structure. `watch` is told how far the search has come.
 pub fn tune(
+    structure: &Structure,
+    stack: &Stack,
+    accuracy: Accuracy,
+    watch: Watch,
+) -> Result<Outcome, TuneError> {
+    let choices = choice::choices(structure, stack)?;
+    if choices.is_empty() {
+        return within_bounds(structure, stack, accuracy, watch);
+    }
+    choice::best(choices, stack, |stack| {
+        within_bounds(structure, stack, accuracy, watch)
+    })
+}
+
+/// Tunes the variables that have bounds.
+fn within_bounds(
     structure: &Structure,
     stack: &Stack,
     accuracy: Accuracy,
@@ -118,6 +144,7 @@ pub fn tune(
         task,
         starts,
         started_outside,
+        choices: Vec::new(),
     };
     if wish.snap_to_monolayers {
         snapped(outcome, &searching, found, wish, watch)
@@ -297,6 +324,8 @@ fn variable(wish: &structure::Variable, structure: &Structure, stack: &Stack) ->
             high: bounds[1],
             name: format!("{} fraction of {}", element.symbol(), label(*entry)),
         },
+        // Chosen, see `choice`.
+        Varied::FractionOfCells { .. } => return None,
         Varied::Field { bounds_v_per_nm } => Variable {
             knob: Knob::Field,
             low: bounds_v_per_nm[0],

@@ -1,0 +1,69 @@
+//! `sheet`: the growth sheet of a stack.
+
+use super::arguments::{Format, SheetFormat};
+use super::deliver::{Exit, check_output, deliver, print, show, write};
+use super::input::Input;
+use crate::growth;
+use crate::models::ConductionOperator;
+use crate::report::Sheet;
+use crate::report::svg::{BandDiagram, FINENESS, Width};
+use crate::subbands::{self, Accuracy};
+use std::path::Path;
+
+pub fn sheet(
+    file: &Path,
+    format: Option<SheetFormat>,
+    output: Option<&Path>,
+) -> Result<Exit, Exit> {
+    let input = Input::read(file)?;
+    check_output(output, file)?;
+    let plan = growth::plan(&input.structure, &input.stack);
+    let (plan, growth) = match (plan, &input.structure.growth) {
+        (Ok(plan), Some(growth)) => (plan, growth),
+        (Err(problem), _) => {
+            show(&problem, &input.name, &input.text);
+            return Err(Exit::WrongInput);
+        }
+        // A plan is made of a `growth` block.
+        (Ok(_), None) => return Err(Exit::WrongInput),
+    };
+    let operator = ConductionOperator::new(&input.stack, input.structure.conduction.model)
+        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
+    let highest = aims.map(|aim| aim.from.index.max(aim.to.index)).max();
+    let states = input.structure.conduction.states.max(highest.unwrap_or(0));
+    let subbands = subbands::solve(&operator, states, Accuracy::default());
+    input.doubt(&subbands, states);
+    let sheet = Sheet::new(
+        &input.structure,
+        growth,
+        &input.stack,
+        &plan,
+        &subbands,
+        states,
+    );
+    let page = output.is_some_and(|path| {
+        path.extension()
+            .is_some_and(|e| e.eq_ignore_ascii_case("html"))
+    });
+    let text = match format.unwrap_or(if page {
+        SheetFormat::Html
+    } else {
+        SheetFormat::Table
+    }) {
+        SheetFormat::Html => {
+            let curves = subbands::curves(&operator, &subbands, states, FINENESS);
+            let diagram =
+                BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
+            let caption = "Band edge and squared envelopes at their energies";
+            sheet.html(&[(caption.to_owned(), diagram.svg(Width::Page))])
+        }
+        SheetFormat::Table => return deliver(&sheet, Format::Table, output, file),
+        SheetFormat::Csv => return deliver(&sheet, Format::Csv, output, file),
+        SheetFormat::Json => return deliver(&sheet, Format::Json, output, file),
+    };
+    match output {
+        Some(path) => write(path, &text, file),
+        None => print(&text),
+    }
+}
