@@ -67,6 +67,9 @@ pub enum Command {
     Plot {
         /// Structure file
         file: PathBuf,
+        /// What to draw of the transition that windows or aims name
+        #[arg(long, value_enum, default_value_t = Picture::Bands)]
+        what: Picture,
         /// Printed width: a page (170 mm) or a column of a journal (86 mm)
         #[arg(long, value_enum, default_value_t = PlotWidth::Page)]
         width: PlotWidth,
@@ -111,6 +114,16 @@ pub enum SheetFormat {
     Json,
     /// One page that holds everything and prints on A4
     Html,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Picture {
+    /// Band edge with squared envelopes, levels and transitions
+    Bands,
+    /// How far a transition moves with each cause
+    Sensitivities,
+    /// The sampled distribution of a transition with its window
+    Yield,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]

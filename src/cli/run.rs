@@ -27,9 +27,10 @@ pub fn run(arguments: Arguments) -> Exit {
         Command::Check { file } => check::check(&file),
         Command::Plot {
             file,
+            what,
             width,
             output,
-        } => plot::plot(&file, width.into(), output.as_deref()),
+        } => plot::plot(&file, what, width.into(), output.as_deref()),
         Command::Materials {
             formula,
             temperature,

@@ -3,10 +3,11 @@
 use super::arguments::{Format, SheetFormat};
 use super::deliver::{Exit, check_output, deliver, print, show, write};
 use super::input::Input;
+use super::tolerance::worked_out;
 use crate::growth;
 use crate::models::ConductionOperator;
 use crate::report::Sheet;
-use crate::report::svg::{BandDiagram, FINENESS, Width};
+use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
 
@@ -55,8 +56,26 @@ pub fn sheet(
             let curves = subbands::curves(&operator, &subbands, states, FINENESS);
             let diagram =
                 BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
-            let caption = "Band edge and squared envelopes at their energies";
-            sheet.html(&[(caption.to_owned(), diagram.svg(Width::Page))])
+            let mut pictures = vec![(
+                "Band edge and squared envelopes at their energies".to_owned(),
+                diagram.svg(Width::Page),
+            )];
+            if input.structure.tolerance.is_some() {
+                let outcome = worked_out(&input, None, None)?;
+                if let Some(bars) = sensitivity_bars(&input.structure, &outcome) {
+                    pictures.push((
+                        "How far the transition moves".to_owned(),
+                        bars.svg(Width::Page),
+                    ));
+                }
+                if let Some(histogram) = yield_histogram(&input.structure, &outcome) {
+                    pictures.push((
+                        "What a run of wafers will do".to_owned(),
+                        histogram.svg(Width::Page),
+                    ));
+                }
+            }
+            sheet.html(&pictures)
         }
         SheetFormat::Table => return deliver(&sheet, Format::Table, output, file),
         SheetFormat::Csv => return deliver(&sheet, Format::Csv, output, file),

@@ -46,8 +46,7 @@ pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
     for from in 0..pairs.len() {
         for to in from + 1..pairs.len() {
             let energy_ev = pairs[to].value - pairs[from].value;
-            let dipole_nm =
-                moment(&subbands.pencil, &pairs[from], &pairs[to]).abs();
+            let dipole_nm = moment(&subbands.pencil, &pairs[from], &pairs[to]).abs();
             let oscillator_strength = energy_ev * dipole_nm * dipole_nm / HBAR2_OVER_2M0;
             list.push(Transition {
                 from,
