@@ -4,12 +4,16 @@ use super::arguments::{Format, SheetFormat};
 use super::deliver::{Exit, check_output, deliver, print, show, write};
 use super::input::Input;
 use super::tolerance::worked_out;
+use crate::diagnostics::Diagnostic;
 use crate::growth;
 use crate::models::ConductionOperator;
 use crate::report::Sheet;
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
+
+/// The page samples wafers of stacks up to this size: larger ones would keep the reader waiting.
+const MOST_SAMPLED_LAYERS: usize = 60;
 
 pub fn sheet(
     file: &Path,
@@ -60,7 +64,13 @@ pub fn sheet(
                 "Band edge and squared envelopes at their energies".to_owned(),
                 diagram.svg(Width::Page),
             )];
-            if input.structure.tolerance.is_some() {
+            let layers = input.stack.layers.len();
+            if input.structure.tolerance.is_some() && layers > MOST_SAMPLED_LAYERS {
+                let left_out = format!(
+                    "the yield of {layers} layers is not sampled for the page: `plot --what yield` draws it in its own time"
+                );
+                show(&Diagnostic::warning(left_out), &input.name, &input.text);
+            } else if input.structure.tolerance.is_some() {
                 let outcome = worked_out(&input, None, None)?;
                 if let Some(bars) = sensitivity_bars(&input.structure, &outcome) {
                     pictures.push((
