@@ -18,6 +18,7 @@ mod read_tune;
 mod rewrite;
 mod spreads;
 mod stack;
+mod temperature;
 mod wafer;
 
 pub use file::{
