@@ -65,6 +65,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
     };
     let report = Tuning::new(&tuned.structure, &outcome, text.clone());
     tuned.doubt(&outcome.after.subbands, report.states());
+    tuned.doubt_growth();
     if let Some(path) = structures.first() {
         write(path, &text, file)?;
     }

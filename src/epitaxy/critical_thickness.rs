@@ -36,8 +36,8 @@ impl Glide {
     }
 }
 
-/// Below this misfit a layer counts as matched.
-const NO_MISFIT: f64 = 1e-7;
+/// In Burgers vectors; a critical thickness of a metre is none.
+const UNLIMITED: f64 = 1e9;
 
 /// The critical thickness in nm by the balance of forces on a dislocation:
 ///
@@ -81,7 +81,7 @@ fn larger_root<T: Number>(scale: T, burgers: T, constant: f64) -> T {
     let alpha = scale / burgers;
     let ratio = alpha.value();
     // Also catches a misfit of zero, which leaves no number.
-    if !(ratio * NO_MISFIT < 1.0) {
+    if ratio.is_nan() || ratio > UNLIMITED {
         return T::constant(f64::INFINITY);
     }
     // In u = h/b: F(u) = u − α (ln u + c) is convex with its minimum at u = α. From a start right of the larger root

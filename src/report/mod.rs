@@ -1,5 +1,7 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod check;
+mod layer_edges;
 mod levels;
 mod materials;
 pub mod svg;
@@ -7,6 +9,7 @@ mod table;
 mod tolerance;
 mod tuning;
 
+pub use check::Check;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
 pub use tolerance::Tolerances;
