@@ -75,7 +75,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
         reports.first().map(|path| path.as_path()),
         file,
     )?;
-    Ok(if outcome.met.iter().all(|met| *met) {
+    Ok(if outcome.is_reached() {
         Exit::Done
     } else {
         Exit::NotPossible

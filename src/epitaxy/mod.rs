@@ -6,6 +6,7 @@ mod doubts;
 mod layers;
 mod mean;
 mod periods;
+mod sensitivity;
 mod strain_balance;
 mod strain_budget;
 mod x_ray;
@@ -15,8 +16,9 @@ pub use doubts::doubts;
 pub use layers::{LayerStrain, Part, layer_strains};
 pub use mean::{LayerMean, layer_mean};
 pub use periods::{Period, periods};
+pub use sensitivity::{net_strain_slope, thickness_ratio};
 pub use strain_balance::{Balance, balance};
-pub use strain_budget::{LayerThickness, StrainBudget, WholeThickness, strain_budget};
+pub use strain_budget::{LayerThickness, StrainBudget, WholeThickness, glides, strain_budget};
 pub use x_ray::{
     CU_K_ALPHA_1_NM, LayerPeak, PeriodPeaks, XRay, bragg_004_rad, expected_x_ray,
     satellite_spacing_rad,

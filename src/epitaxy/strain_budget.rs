@@ -119,7 +119,7 @@ fn whole(stack: &Stack, means: &[Option<LayerMean>]) -> Option<WholeThickness> {
 
 /// How dislocations can form in each entry of the file: the topmost layer is free, one of a repeat that holds compressed and
 /// stretched layers belongs to a superlattice, and all others are buried.
-pub(super) fn glides(structure: &Structure, stack: &Stack) -> Vec<Glide> {
+pub fn glides(structure: &Structure, stack: &Stack) -> Vec<Glide> {
     let mut glides = vec![Glide::Buried; structure.entries.len()];
     let mut misfits = vec![0.0; structure.entries.len()];
     for (layer, entry, _) in first_copies(stack) {

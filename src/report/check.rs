@@ -2,7 +2,7 @@
 //! diffraction will show them.
 
 use super::layer_edges::{LayerEdges, layer_name};
-use super::table::{significant, table};
+use super::table::{significant, signed, table};
 use super::{Report, csv_table};
 use crate::epitaxy::{
     Balance, Glide, LayerPeak, LayerThickness, Part, Period, PeriodPeaks, WholeThickness, balance,
@@ -67,6 +67,9 @@ struct PeakRow {
 const X_RAY_CONDITION: &str = "(004), Cu Kα1 (1.540593 Å), coherent, at 300 K; peaks of thin layers are broad and shifted by interference";
 /// Less misfit than this is matched: no row for the layer.
 const MATCHED: f64 = 1e-5;
+
+/// Thicker than any stack that is grown.
+const BEYOND_USE_NM: f64 = 1e5;
 
 impl Check {
     pub fn new(file: &str, structure: &Structure, stack: &Stack) -> Check {
@@ -206,13 +209,17 @@ impl Report for Check {
             self.edges.text(),
             self.edges.offset_lines(),
         );
-        let nm = |value: Option<f64>| value.map_or("-".to_owned(), |v| significant(v, 3));
+        let nm = |value: Option<f64>| match value {
+            None => "-".to_owned(),
+            Some(nm) if nm > BEYOND_USE_NM => format!("> {BEYOND_USE_NM}"),
+            Some(nm) => significant(nm, 3),
+        };
         if !self.thickness.is_empty() {
             let rows = self.thickness.iter().map(|row| {
                 vec![
                     row.layer.clone(),
                     format!("{:.2}", row.width_nm),
-                    format!("{:+.3}", 1e2 * row.misfit),
+                    signed(1e2 * row.misfit, 3),
                     format!("{}, k = {}", row.glide, row.k),
                     nm(row.matthews_blakeslee_nm),
                     nm(row.people_bean_nm),
@@ -238,7 +245,7 @@ impl Report for Check {
         }
         if !self.repeats.is_empty() {
             let rows = self.repeats.iter().map(|row| {
-                let strain = row.net_strain.map_or("-".to_owned(), |v| format!("{:+.4}", 1e2 * v));
+                let strain = row.net_strain.map_or("-".to_owned(), |v| signed(1e2 * v, 4));
                 let lattice = row.zero_stress_lattice_nm.map_or("-".to_owned(), |v| format!("{v:.5}"));
                 let arcsec = |v: Option<f64>| v.map_or("-".to_owned(), |v| format!("{v:.0}"));
                 vec![
@@ -273,7 +280,7 @@ impl Report for Check {
                 vec![
                     row.layer.clone(),
                     format!("{:.4}", row.bragg_deg),
-                    format!("{:+.0}", row.from_substrate_arcsec),
+                    signed(row.from_substrate_arcsec, 0),
                 ]
             });
             text.push_str(&format!(

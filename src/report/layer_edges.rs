@@ -1,6 +1,6 @@
 //! Strain and band edges of each layer, and which published band offsets they rest on.
 
-use super::table::table;
+use super::table::{signed, table};
 use crate::epitaxy::{LayerStrain, Part, layer_strains};
 use crate::materials::{Selection, citation};
 use crate::structure::{Stack, Structure};
@@ -58,7 +58,7 @@ impl LayerEdges {
             copies: row.copies,
             mismatch: row.mismatch,
             in_plane_strain: row.in_plane,
-            growth_strain: row.growth,
+            growth_strain: row.growth.map(|strain| strain + 0.0), // No minus before zero.
             conduction_eV: row.edges.conduction_ev,
             heavy_hole_eV: row.edges.heavy_hole_ev,
             light_hole_eV: row.edges.light_hole_ev,
@@ -85,7 +85,7 @@ impl LayerEdges {
             header.extend(["mismatch %", "ε∥ %", "ε_zz %"]);
         }
         header.extend(["Ec eV", "heavy holes eV", "light holes eV", "gap eV"]);
-        let percent = |part: Option<f64>| part.map_or("-".to_owned(), |v| format!("{:+.3}", 1e2 * v));
+        let percent = |part: Option<f64>| part.map_or("-".to_owned(), |v| signed(1e2 * v, 3));
         let edge = |ev: Option<f64>| ev.map_or("-".to_owned(), |v| format!("{v:.3}"));
         let rows = self.layers.iter().map(|row| {
             let mut cells = vec![
@@ -116,8 +116,8 @@ impl LayerEdges {
             .iter()
             .map(|row| {
                 format!(
-                    "Band offsets of {}: {} of {} ({}); instead: {}.\n",
-                    row.alloy, row.parameter, row.chosen, row.source, row.alternatives
+                    "Band offsets of {}: the {} of {} ({}). Published values disagree; under `{}` in `materials`, {} takes another.\n",
+                    row.alloy, row.parameter, row.chosen, row.source, row.alloy, row.alternatives
                 )
             })
             .collect()
@@ -171,7 +171,7 @@ fn offset_row(selection: Selection) -> OffsetRow {
             .filter(|name| selection.chosen.as_ref() != Some(*name))
             .map(|name| format!("`choose: {{{}: {name}}}`", selection.key))
             .collect::<Vec<_>>()
-            .join(", "),
+            .join(" or "),
         source: selection.source,
     }
 }

@@ -49,6 +49,16 @@ pub fn significant(value: f64, digits: usize) -> String {
     }
 }
 
+/// A number with its sign and so many decimals; what rounds to zero has none.
+pub fn signed(value: f64, decimals: usize) -> String {
+    let text = format!("{value:+.decimals$}");
+    if text.chars().any(|c| c.is_ascii_digit() && c != '0') {
+        text
+    } else {
+        "0".to_owned()
+    }
+}
+
 /// A given quantity as it was given: up to `digits` significant digits, none that say nothing.
 pub fn given(value: f64, digits: usize) -> String {
     let text = significant(value, digits);

@@ -11,6 +11,7 @@ mod file;
 mod grade;
 mod read;
 mod read_aims;
+mod read_keep;
 mod read_layers;
 mod read_materials;
 mod read_tolerance;
@@ -22,8 +23,8 @@ mod temperature;
 mod wafer;
 
 pub use file::{
-    Aim, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile, Spanned,
-    Structure, Target, Tune, Variable, Varied, Within,
+    Aim, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile, Spanned,
+    StrainBound, Structure, Target, Tune, Variable, Varied, Within,
 };
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};
