@@ -64,9 +64,13 @@ pub fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
 
 fn remark(k: f64, glide: &str, people_bean_nm: f64, width_nm: f64) -> String {
     let other = if width_nm <= people_bean_nm {
-        format!("the energy balance of People and Bean allows {people_bean_nm:.0} nm: it may grow, but metastable")
+        format!(
+            "the energy balance of People and Bean allows {people_bean_nm:.0} nm: it may grow, but metastable"
+        )
     } else {
-        format!("the energy balance of People and Bean allows {people_bean_nm:.0} nm, which is exceeded too")
+        format!(
+            "the energy balance of People and Bean allows {people_bean_nm:.0} nm, which is exceeded too"
+        )
     };
     format!("by Matthews and Blakeslee for a {glide} (k = {k}); {other}")
 }

@@ -24,7 +24,10 @@ pub fn net_strain_slope(stack: &Stack, entries: &[usize], knob: Knob) -> f64 {
         let (tension, stiffness) = match knob {
             Knob::Fraction { element, .. } => {
                 let mean = layer_mean_slope(stack, layer, element)?;
-                (width_nm * mean.tension.slope, width_nm * mean.stiffness.slope)
+                (
+                    width_nm * mean.tension.slope,
+                    width_nm * mean.stiffness.slope,
+                )
             }
             _ => {
                 let mean = layer_mean(stack, layer)?;

@@ -40,8 +40,7 @@ pub fn band_edges<T: Number>(
     substrate_lattice_nm: Option<f64>,
 ) -> BandEdges<T> {
     let Some(strain) = substrate_lattice_nm.and_then(|lattice| strain(free, lattice)) else {
-        let split_off =
-            |(valence, delta): (T, T)| -> T { valence - delta };
+        let split_off = |(valence, delta): (T, T)| -> T { valence - delta };
         return BandEdges {
             conduction_ev: free.conduction_edge_ev,
             heavy_hole_ev: free.valence_edge_ev,
@@ -53,7 +52,9 @@ pub fn band_edges<T: Number>(
     let conduction = free.conduction_edge_ev.zip(free.hydrostatic_conduction_ev);
     let mean = free.valence_edge_ev.zip(free.hydrostatic_valence_ev);
     let mean = mean.map(|(edge, a_v)| edge - a_v * trace);
-    let shear = free.shear_b_ev.map(|b| -b * (strain.in_plane - strain.growth));
+    let shear = free
+        .shear_b_ev
+        .map(|b| -b * (strain.in_plane - strain.growth));
     let mixed = mean.zip(shear).zip(free.spin_orbit_ev);
     let mixed = mixed.map(|((mean, q), delta)| {
         let [two, nine] = [2.0, 9.0].map(T::constant);

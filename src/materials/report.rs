@@ -266,7 +266,8 @@ impl Library {
                 };
                 let table = self.ternary_at(index)?;
                 let entry = table.entries.iter().find(|entry| {
-                    entry.parameter == Parameter::ValenceEdge && !entry.alternatives.is_empty()
+                    entry.parameter == Parameter::ValenceEdge
+                        && (!entry.alternatives.is_empty() || entry.source == STRUCTURE_FILE)
                 });
                 if let Some(entry) = entry {
                     let chosen = entry.alternatives.iter().find(|(_, other)| {

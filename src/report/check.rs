@@ -2,7 +2,7 @@
 //! diffraction will show them.
 
 use super::layer_edges::{LayerEdges, layer_name};
-use super::table::{significant, signed, table};
+use super::table::{signed, significant, table};
 use super::{Report, csv_table};
 use crate::epitaxy::{
     Balance, Glide, LayerPeak, LayerThickness, Part, Period, PeriodPeaks, WholeThickness, balance,
@@ -245,8 +245,12 @@ impl Report for Check {
         }
         if !self.repeats.is_empty() {
             let rows = self.repeats.iter().map(|row| {
-                let strain = row.net_strain.map_or("-".to_owned(), |v| signed(1e2 * v, 4));
-                let lattice = row.zero_stress_lattice_nm.map_or("-".to_owned(), |v| format!("{v:.5}"));
+                let strain = row
+                    .net_strain
+                    .map_or("-".to_owned(), |v| signed(1e2 * v, 4));
+                let lattice = row
+                    .zero_stress_lattice_nm
+                    .map_or("-".to_owned(), |v| format!("{v:.5}"));
                 let arcsec = |v: Option<f64>| v.map_or("-".to_owned(), |v| format!("{v:.0}"));
                 vec![
                     row.repeat.clone(),
@@ -285,7 +289,11 @@ impl Report for Check {
             });
             text.push_str(&format!(
                 "\nX-ray peaks: {X_RAY_CONDITION}\n{}",
-                table(&["layer", "θ °", "from substrate arcsec"], &[0], rows.collect())
+                table(
+                    &["layer", "θ °", "from substrate arcsec"],
+                    &[0],
+                    rows.collect()
+                )
             ));
         }
         text

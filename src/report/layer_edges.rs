@@ -115,9 +115,16 @@ impl LayerEdges {
         self.band_offsets
             .iter()
             .map(|row| {
+                let others = match row.alternatives.as_str() {
+                    "" => String::new(),
+                    names => format!(
+                        " Published values disagree; under `{}` in `materials`, {names} takes another.",
+                        row.alloy
+                    ),
+                };
                 format!(
-                    "Band offsets of {}: the {} of {} ({}). Published values disagree; under `{}` in `materials`, {} takes another.\n",
-                    row.alloy, row.parameter, row.chosen, row.source, row.alloy, row.alternatives
+                    "Band offsets of {}: the {} of {} ({}).{others}\n",
+                    row.alloy, row.parameter, row.chosen, row.source
                 )
             })
             .collect()
@@ -126,7 +133,10 @@ impl LayerEdges {
 
 /// A layer of the file as tables call it.
 pub fn layer_name(structure: &Structure, entry: usize, part: Part) -> String {
-    let label = structure.entries.get(entry).map_or("", |e| e.label.as_str());
+    let label = structure
+        .entries
+        .get(entry)
+        .map_or("", |e| e.label.as_str());
     match part {
         Part::Whole => label.to_owned(),
         Part::Bottom => format!("{label}, bottom"),

@@ -117,7 +117,11 @@ fn balanced_entries(
         let first = all.iter().position(|entry| *entry == from).unwrap_or(0);
         let rest = all.get(first..).unwrap_or_default();
         let length = rest.iter().position(|entry| *entry == to);
-        return rest.iter().take(length.map_or(0, |l| l + 1)).copied().collect();
+        return rest
+            .iter()
+            .take(length.map_or(0, |l| l + 1))
+            .copied()
+            .collect();
     }
     match &periods(structure)[..] {
         [only] => only.entries.clone(),
