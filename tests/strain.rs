@@ -319,18 +319,21 @@ substrate: GaAs
             "-1.413",
             "+1.343",
             "Band offsets of GaInAs",
-            "of the library",
+            "valence_edge from the library's own value",
             "constant",
         ] {
             assert!(plain.contains(part), "{command}: {part}\n{plain}");
         }
         let chosen = bench.run(&[command, "chosen.yaml"]).code(0).stdout;
-        assert!(chosen.contains("of `linear` (CommonPractice)"), "{chosen}");
+        assert!(
+            chosen.contains("from `linear` (CommonPractice)"),
+            "{chosen}"
+        );
         let json = bench
             .run(&[command, "chosen.yaml", "--format", "json"])
             .code(0)
             .json();
-        assert_eq!(list(&json, "band_offsets")[0]["chosen"], "`linear`");
+        assert_eq!(list(&json, "band_offsets")[0]["chosen"], "linear");
         let well = &list(&json, "layers")[1];
         assert_eq!(well["layer"], "well");
         assert_abs_diff_eq!(number(well, "in_plane_strain"), -0.014127, epsilon = 1e-6);
@@ -344,7 +347,7 @@ substrate: GaAs
         );
     }
     let own = bench.run(&["check", "own.yaml"]).code(0).stdout;
-    assert!(own.contains("of this file"), "{own}");
+    assert!(own.contains("from the structure file's value"), "{own}");
     bench
         .run(&["check", "plain.yaml", "-o", "edges.txt"])
         .code(0);

@@ -45,8 +45,8 @@ pub struct OffsetRow {
     /// The name of an alternative, `library` or `structure file`.
     chosen: String,
     source: String,
-    /// What `choose` takes instead.
-    alternatives: String,
+    /// What `choose` takes.
+    alternatives: Vec<String>,
 }
 
 impl LayerEdges {
@@ -115,16 +115,27 @@ impl LayerEdges {
         self.band_offsets
             .iter()
             .map(|row| {
-                let others = match row.alternatives.as_str() {
-                    "" => String::new(),
-                    names => format!(
-                        " Published values disagree; under `{}` in `materials`, {names} takes another.",
+                let others: Vec<String> = row
+                    .alternatives
+                    .iter()
+                    .filter(|name| **name != row.chosen)
+                    .map(|name| format!("`choose: {{{}: {name}}}`", row.parameter))
+                    .collect();
+                let others = match others.join(" or ") {
+                    none if none.is_empty() => none,
+                    some => format!(
+                        " Published values disagree; under `{}` in `materials`, {some} takes another.",
                         row.alloy
                     ),
                 };
+                let chosen = match row.chosen.as_str() {
+                    "library" => "the library's own value".to_owned(),
+                    "structure file" => "the structure file's value".to_owned(),
+                    name => format!("`{name}`"),
+                };
                 format!(
-                    "Band offsets of {}: the {} of {} ({}).{others}\n",
-                    row.alloy, row.parameter, row.chosen, row.source
+                    "Band offsets of {}: {} from {chosen} ({}).{others}\n",
+                    row.alloy, row.parameter, row.source
                 )
             })
             .collect()
@@ -166,22 +177,17 @@ fn offsets(stack: &Stack) -> Vec<OffsetRow> {
 
 fn offset_row(selection: Selection) -> OffsetRow {
     // A source without a citation is the structure file itself.
-    let cited = citation(&selection.source);
+    let cited = citation(&selection.source).is_some();
+    let chosen = match (selection.chosen, cited) {
+        (Some(name), _) => name,
+        (None, true) => "library".to_owned(),
+        (None, false) => "structure file".to_owned(),
+    };
     OffsetRow {
         alloy: selection.entry,
         parameter: selection.key,
-        chosen: match (&selection.chosen, cited.is_some()) {
-            (Some(name), _) => format!("`{name}`"),
-            (None, true) => "the library".to_owned(),
-            (None, false) => "this file".to_owned(),
-        },
-        alternatives: selection
-            .names
-            .iter()
-            .filter(|name| selection.chosen.as_ref() != Some(*name))
-            .map(|name| format!("`choose: {{{}: {name}}}`", selection.key))
-            .collect::<Vec<_>>()
-            .join(" or "),
+        alternatives: selection.names,
+        chosen,
         source: selection.source,
     }
 }
