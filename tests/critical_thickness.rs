@@ -405,7 +405,8 @@ tune:
     );
     let ran = bench.run(&["tune", "never.yaml"]).code(1);
     assert!(
-        ran.stdout.contains("Not all aims can be met"),
+        ran.stdout
+            .contains("not within the bounds that were to be kept"),
         "{}",
         ran.stdout
     );

@@ -93,8 +93,9 @@ fn the_librarys_own_gap_of_that_layer_is_6_mev_wider() {
     assert_abs_diff_eq!(edges.gap_ev().unwrap(), 1.2015, epsilon = 1e-4);
 }
 
-/// Tensile Ga0.6In0.4As on InP: the light holes lie 71 meV above the heavy ones without split-off coupling (2 |Q|), a
-/// 6 × 6 matrix is diagonalised here for the coupled value: Q = −b (ε∥ − ε_zz) > 0.
+/// Tensile Ga0.6In0.4As on InP: Q = −b (ε∥ − ε_zz) > 0 puts the light holes 2Q = 71 meV above the heavy ones before the
+/// split-off coupling (four-band value with the constants named above); with it, the block of light holes and split-off
+/// band is diagonalised here by a general eigenvalue routine.
 #[test]
 fn tension_puts_light_holes_on_top() {
     let text = "\

@@ -380,6 +380,8 @@ impl Report for Tuning {
         let mut text = String::new();
         text.push_str(if self.reached {
             "All aims are met.\n\n"
+        } else if self.aims.iter().all(|aim| aim.met) {
+            "All aims are met, but not within the bounds that were to be kept; this is the nearest design.\n\n"
         } else {
             "Not all aims can be met; this is the nearest design.\n\n"
         });
