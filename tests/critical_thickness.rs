@@ -242,6 +242,19 @@ fn a_warning_names_the_layer() {
     bench.write("thin.yaml", well("14.2 nm"));
     bench.write("thick.yaml", well("14.4 nm"));
     bench.write("hopeless.yaml", well("50 nm"));
+    // InAs on GaAs, 7.2 %: no solution for the topmost layer.
+    bench.write(
+        "islands.yaml",
+        "substrate: GaAs\nlayers: [{material: GaAs, width: 5 nm}, {name: dots, material: InAs, width: 0.5 nm}]\n",
+    );
+    let ran = bench.run(&["check", "islands.yaml"]).code(0);
+    assert!(
+        ran.stderr.contains(
+            "layer `dots` has a misfit of +7.16 %, with which no thickness of it is stable"
+        ),
+        "{}",
+        ran.stderr
+    );
     for command in ["check", "levels"] {
         let thin = bench.run(&[command, "thin.yaml"]).code(0);
         assert!(!thin.stderr.contains("critical"), "{}", thin.stderr);

@@ -24,12 +24,15 @@ pub fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
             Some(name) => format!("layer `{name}`"),
             None => entry.label.clone(),
         };
-        let warning = Diagnostic::warning(format!(
-            "{name} ({:.1} nm, misfit {:+.2} %) is thicker than its critical thickness of {:.1} nm",
-            row.width_nm,
-            1e2 * row.misfit,
-            row.matthews_blakeslee_nm
-        ));
+        let misfit = format!("{:+.2} %", 1e2 * row.misfit);
+        let warning = Diagnostic::warning(if row.matthews_blakeslee_nm == 0.0 {
+            format!("{name} has a misfit of {misfit}, with which no thickness of it is stable")
+        } else {
+            format!(
+                "{name} ({:.1} nm, misfit {misfit}) is thicker than its critical thickness of {:.1} nm",
+                row.width_nm, row.matthews_blakeslee_nm
+            )
+        });
         found.push(warning.at(entry.material.span.clone()).hint(remark(
             row.glide.k(),
             row.glide.in_words(),
@@ -63,13 +66,15 @@ pub fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
 }
 
 fn remark(k: f64, glide: &str, people_bean_nm: f64, width_nm: f64) -> String {
-    let other = if width_nm <= people_bean_nm {
+    let other = if people_bean_nm == 0.0 {
+        "the energy balance of People and Bean has no solution either".to_owned()
+    } else if width_nm <= people_bean_nm {
         format!(
             "the energy balance of People and Bean allows {people_bean_nm:.0} nm: it may grow, but metastable"
         )
     } else {
         format!(
-            "the energy balance of People and Bean allows {people_bean_nm:.0} nm, which is exceeded too"
+            "the energy balance of People and Bean allows {people_bean_nm:.1} nm, which is exceeded too"
         )
     };
     format!("by Matthews and Blakeslee for a {glide} (k = {k}); {other}")
