@@ -58,10 +58,13 @@ pub enum Command {
         #[command(flatten)]
         output: Output,
     },
-    /// Read and check a structure file without solving it
+    /// Read and check a structure file without solving it: strain and band edges of its layers, critical thicknesses,
+    /// expected x-ray peaks
     Check {
         /// Structure file
         file: PathBuf,
+        #[command(flatten)]
+        output: Output,
     },
     /// Draw the band diagram with the squared envelopes as SVG
     Plot {

@@ -2,6 +2,7 @@
 
 use super::deliver::{Exit, complain, show};
 use crate::diagnostics::Diagnostic;
+use crate::epitaxy;
 use crate::models::Unsuitable;
 use crate::structure::{self, Stack, Structure};
 use crate::subbands::{Hold, State, Subbands};
@@ -72,6 +73,13 @@ impl Input {
         }
         show(&problem, &self.name, &self.text);
         Exit::WrongInput
+    }
+
+    /// Doubts about whether the layers stay coherent.
+    pub fn doubt_growth(&self) {
+        for problem in epitaxy::doubts(&self.structure, &self.stack) {
+            show(&problem, &self.name, &self.text);
+        }
     }
 
     /// Doubts about a solution. States of one kind, one above the other in one layer, share a message.

@@ -16,6 +16,7 @@ pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let states = input.structure.conduction.states;
     let subbands = subbands::solve(&operator, states, Accuracy::default());
     input.doubt(&subbands, states);
+    input.doubt_growth();
     deliver(
         &Levels::new(&input.structure, &input.stack, &subbands, states),
         output.format,

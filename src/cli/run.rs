@@ -24,7 +24,7 @@ pub fn run(arguments: Arguments) -> Exit {
             threads,
             output,
         } => tolerance::tolerance(&file, samples, threads, &output),
-        Command::Check { file } => check::check(&file),
+        Command::Check { file, output } => check::check(&file, &output),
         Command::Plot {
             file,
             what,

@@ -68,6 +68,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
     };
     let report = Tuning::new(&tuned.structure, &outcome, text.clone());
     tuned.doubt(&outcome.after.subbands, report.states());
+    tuned.doubt_growth();
     if let Some(path) = structures.first() {
         write(path, &text, file)?;
     }
@@ -77,7 +78,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
         reports.first().map(|path| path.as_path()),
         file,
     )?;
-    Ok(if outcome.met.iter().all(|met| *met) {
+    Ok(if outcome.is_reached() {
         Exit::Done
     } else {
         Exit::NotPossible

@@ -15,6 +15,8 @@ pub trait Number:
     fn constant(value: f64) -> Self;
     /// The number without its derivative.
     fn value(self) -> f64;
+    /// The square root; of a negative number it is no number.
+    fn sqrt(self) -> Self;
 }
 
 impl Number for f64 {
@@ -23,6 +25,9 @@ impl Number for f64 {
     }
     fn value(self) -> f64 {
         self
+    }
+    fn sqrt(self) -> Self {
+        f64::sqrt(self)
     }
 }
 
@@ -42,6 +47,13 @@ impl Number for Dual {
     }
     fn value(self) -> f64 {
         self.value
+    }
+    fn sqrt(self) -> Self {
+        let value = self.value.sqrt();
+        Dual {
+            value,
+            slope: self.slope / (2.0 * value),
+        }
     }
 }
 

@@ -1,5 +1,6 @@
 //! Subband and transition tables of one stack.
 
+use super::layer_edges::LayerEdges;
 use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::models::model_name;
@@ -30,6 +31,8 @@ pub struct Levels {
     oscillator_strength_definition: &'static str,
     dipole_definition: &'static str,
     audit: AuditRow,
+    #[serde(flatten)]
+    edges: LayerEdges,
 }
 
 #[derive(Debug, Serialize)]
@@ -149,12 +152,22 @@ impl Levels {
                 states_counted: counted,
                 faults: subbands.audit().faults(),
             },
+            edges: LayerEdges::new(structure, stack),
         }
     }
 
     /// Number of states that are listed.
     pub fn states(&self) -> usize {
         self.subbands.len()
+    }
+
+    /// The edges of strained layers, and what the band offsets rest on.
+    fn edges_text(&self) -> String {
+        let mut text = self.edges.offset_lines();
+        if self.edges.are_strained() {
+            text = format!("\nStrain and band edges\n{}{text}", self.edges.text());
+        }
+        text
     }
 
     /// The two tables and the audit, without the title.
@@ -251,20 +264,26 @@ impl Report for Levels {
             .map(|t| format!("{t}\n"))
             .unwrap_or_default();
         format!(
-            "{title}{} K, field {} kV/cm, {} mass, {:.2} nm between walls\n\n{}",
+            "{title}{} K, field {} kV/cm, {} mass, {:.2} nm between walls\n\n{}{}",
             given(self.temperature_k, 4),
             given(self.field_kv_cm, 4),
             self.model,
             self.width_nm,
-            self.tables()
+            self.tables(),
+            self.edges_text()
         )
     }
 
     fn csv(&self) -> Result<String, csv::Error> {
-        Ok(format!(
+        let mut text = format!(
             "{}\n{}",
             csv_table(&self.subbands)?,
             csv_table(&self.transitions)?
-        ))
+        );
+        if self.edges.are_strained() {
+            text.push('\n');
+            text.push_str(&csv_table(&self.edges.layers)?);
+        }
+        Ok(text)
     }
 }

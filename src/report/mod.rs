@@ -1,16 +1,20 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod check;
+mod layer_edges;
 mod levels;
 mod materials;
 mod sheet;
 mod sheet_csv;
 mod sheet_html;
 mod sheet_text;
+mod strain;
 pub mod svg;
 mod table;
 mod tolerance;
 mod tuning;
 
+pub use check::Check;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
 pub use sheet::Sheet;

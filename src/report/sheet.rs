@@ -3,6 +3,7 @@
 use super::Report;
 use super::sheet_csv::sheet_csv;
 use super::sheet_text::sheet_text;
+use super::strain::StrainReport;
 use super::table::significant;
 use crate::growth::{self, Caution, Digital, Filling, Flag, LayerRow, Plan, Row, Sums, cautions};
 use crate::materials::Element;
@@ -32,6 +33,8 @@ pub struct Sheet {
     /// What the cells do not give, with what comes nearest.
     pub compositions: Vec<NotGiven>,
     pub warnings: Vec<String>,
+    /// Critical thickness, strain balance and x-ray peaks.
+    pub strain: StrainReport,
     pub cautions: Vec<CautionEntry>,
     pub program: &'static str,
 }
@@ -263,6 +266,7 @@ impl Sheet {
                 .filter_map(|flag| not_given(flag, growth))
                 .collect(),
             warnings: plan.flags.iter().filter_map(warning).collect(),
+            strain: StrainReport::new(structure, stack),
             cautions: cautions(&[symbols, substrate].concat())
                 .into_iter()
                 .map(caution_entry)

@@ -1,7 +1,7 @@
 //! The growth sheet as one HTML page that holds everything, in black on white, and prints on A4.
 
 use super::sheet::{GROWER_ENTRIES, RowKind, Sheet, SheetRow, clock};
-use super::table::significant;
+use super::table::{TitledTable, significant};
 
 static STYLE: &str = include_str!("sheet.css");
 
@@ -19,6 +19,38 @@ pub fn escape(text: &str) -> String {
         }
     }
     safe
+}
+
+/// A table with its title and its note.
+fn titled(table: &TitledTable) -> String {
+    let class = |column: usize| {
+        if table.left.contains(&column) {
+            " class=\"w\""
+        } else {
+            ""
+        }
+    };
+    let cells = |tag: &str, cells: &mut dyn Iterator<Item = &str>| -> String {
+        cells
+            .enumerate()
+            .map(|(column, text)| format!("<{tag}{}>{}</{tag}>", class(column), escape(text)))
+            .collect()
+    };
+    let head = cells("th", &mut table.header.iter().copied());
+    let rows: String = table
+        .rows
+        .iter()
+        .map(|row| format!("<tr>{}</tr>", cells("td", &mut row.iter().map(|c| &**c))))
+        .collect();
+    let note = if table.note.is_empty() {
+        String::new()
+    } else {
+        format!("<p>{}</p>", escape(table.note))
+    };
+    format!(
+        "<h2>{}</h2>\n<table><thead><tr>{head}</tr></thead><tbody>{rows}</tbody></table>{note}\n",
+        escape(&table.title)
+    )
 }
 
 impl Sheet {
@@ -47,6 +79,9 @@ impl Sheet {
         page.push_str(&self.heed());
         page.push_str(&self.layers());
         page.push_str(&self.uses());
+        for table in self.strain.tables() {
+            page.push_str(&titled(&table));
+        }
         for (caption, svg) in pictures {
             page.push_str(&format!(
                 "<figure><figcaption>{}</figcaption>{svg}</figure>\n",

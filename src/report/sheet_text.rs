@@ -78,6 +78,10 @@ pub fn sheet_text(sheet: &Sheet) -> String {
             text.push_str(&format!("  {}  in {}\n", target.ratio, target.layers));
         }
     }
+    for table in sheet.strain.tables() {
+        text.push('\n');
+        text.push_str(&table.text());
+    }
     if !sheet.compositions.is_empty() {
         text.push_str("\nCompositions that the cells do not give; a digital alloy is written as it takes the layer's place in the file\n");
         for composition in &sheet.compositions {

@@ -112,6 +112,8 @@ pub enum Profile {
 pub struct Tune {
     pub vary: Vec<Variable>,
     pub aims: Vec<Aim>,
+    /// What the layers must keep to meanwhile.
+    pub keep: Vec<Keep>,
     /// Whether the varied widths are to end in whole monolayers.
     pub snap_to_monolayers: bool,
 }
@@ -142,6 +144,26 @@ pub enum Varied {
     FractionOfCells { entry: usize, element: Element },
     /// The field.
     Field { bounds_v_per_nm: [f64; 2] },
+}
+
+/// A bound on strain that tuning keeps to.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Keep {
+    pub bound: StrainBound,
+    pub span: Range<usize>,
+}
+
+/// See [`Keep`].
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum StrainBound {
+    /// Layers together pull neither way at the substrate: their net strain stays within a number.
+    Balanced {
+        /// The entries from one to another, the lower first; without, the period of the only repeat, or all layers.
+        range: Option<(usize, usize)>,
+        within: f64,
+    },
+    /// A layer, or each one, is no thicker than its critical thickness.
+    BelowCritical { entry: Option<usize> },
 }
 
 /// One aim of tuning: a property of the transition between two levels.

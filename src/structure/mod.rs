@@ -13,6 +13,7 @@ mod growth;
 mod read;
 mod read_aims;
 mod read_growth;
+mod read_keep;
 mod read_layers;
 mod read_materials;
 mod read_tolerance;
@@ -20,11 +21,12 @@ mod read_tune;
 mod rewrite;
 mod spreads;
 mod stack;
+mod temperature;
 mod wafer;
 
 pub use file::{
-    Aim, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile, Spanned,
-    Structure, Target, Tune, Variable, Varied, Within,
+    Aim, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile, Spanned,
+    StrainBound, Structure, Target, Tune, Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;

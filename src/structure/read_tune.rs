@@ -4,6 +4,7 @@ use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Fields, Limits, between, one_of};
 use super::file::{LayerEntry, Tune, Variable, Varied};
 use super::read_aims;
+use super::read_keep;
 use super::read_layers::{FIELD_LIMITS, WIDTH_LIMITS};
 use crate::diagnostics::{Diagnostic, probably_meant};
 use crate::materials::{Element, MaterialError, Sublattice, Substance};
@@ -23,7 +24,7 @@ pub(super) fn tune(
     node: &Node,
     entries: &[(Option<String>, Option<LayerEntry>)],
 ) -> Option<Tune> {
-    let fields = checker.fields(node, "`tune`", &["vary", "aims", "snap"])?;
+    let fields = checker.fields(node, "`tune`", &["vary", "aims", "keep", "snap"])?;
     checker.missing(
         &fields,
         "`tune`",
@@ -54,6 +55,18 @@ pub(super) fn tune(
         )?;
         Some(read_aims::aims(checker, items))
     });
+    let keep = match fields.get("keep") {
+        Some(node) => {
+            let items = filled_list(
+                checker,
+                node,
+                "nothing to keep to",
+                "bounds such as `strain: balanced`",
+            )?;
+            read_keep::keep(checker, items, entries)
+        }
+        None => Vec::new(),
+    };
     let snap_to_monolayers = match fields.get("snap") {
         Some(node) => checker.word(node, &["monolayer"]).is_some(),
         None => false,
@@ -61,6 +74,7 @@ pub(super) fn tune(
     Some(Tune {
         vary: vary?,
         aims: aims?,
+        keep,
         snap_to_monolayers,
     })
 }
@@ -231,7 +245,7 @@ fn varied(
 }
 
 /// The layer of that name.
-fn layer(
+pub(super) fn layer(
     checker: &mut Checker,
     node: &Node,
     entries: &[(Option<String>, Option<LayerEntry>)],

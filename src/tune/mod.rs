@@ -3,6 +3,7 @@
 mod aim;
 mod choice;
 mod evaluate;
+mod keep;
 mod least_squares;
 mod limits;
 mod search;
@@ -11,6 +12,7 @@ mod snap;
 pub use aim::{Aim, Goal};
 pub use choice::Choice;
 pub use evaluate::{Design, Task, Variable};
+pub use keep::{Keep, Rule};
 pub use limits::Limit;
 pub use search::{Stage, Watch};
 pub use snap::SnapError;
@@ -40,6 +42,8 @@ pub struct Outcome {
     /// Whether each aim is met. In whole monolayers an aim without `within` counts as met when the continuous design
     /// meets it and the rest is no more than half of what one monolayer moves.
     pub met: Vec<bool>,
+    /// Whether the result keeps to each bound on strain.
+    pub kept: Vec<bool>,
     /// Half of the largest change that one monolayer of a varied width makes, per aim; only in whole monolayers.
     pub half_step: Option<Vec<f64>>,
     /// What keeps unmet aims away.
@@ -107,6 +111,7 @@ fn within_bounds(
         model: structure.conduction.model,
         variables,
         aims,
+        keeps: keep::keeps(structure, stack),
         accuracy,
         count: needed.max(structure.conduction.states),
     };
@@ -136,6 +141,7 @@ fn within_bounds(
         search::search(&searching, characters.as_ref(), watch).ok_or(TuneError::Unsolved)?;
     let outcome = Outcome {
         met: Vec::new(),
+        kept: Vec::new(),
         half_step: None,
         limits: Vec::new(),
         continuous: None,
@@ -162,8 +168,21 @@ fn judged(mut outcome: Outcome) -> Outcome {
         .zip(&outcome.after.values)
         .map(|(aim, &value)| aim.goal.is_met(value))
         .collect();
+    outcome.kept = kept(&outcome);
     outcome.limits = limits::limits(&outcome.task, &outcome.after);
     outcome
+}
+
+fn kept(outcome: &Outcome) -> Vec<bool> {
+    let values = outcome.task.keeps.iter().zip(&outcome.after.kept);
+    values.map(|(keep, &value)| keep.is_met(value)).collect()
+}
+
+impl Outcome {
+    /// Whether every aim is met and every bound kept.
+    pub fn is_reached(&self) -> bool {
+        self.met.iter().chain(&self.kept).all(|met| *met)
+    }
 }
 
 fn snapped(
@@ -200,6 +219,7 @@ fn snapped(
             strictly || nearest_grid
         })
         .collect();
+    outcome.kept = kept(&outcome);
     outcome.half_step = Some(half_step);
     outcome.continuous = Some(continuous);
     Ok(outcome)
