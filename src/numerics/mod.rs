@@ -3,8 +3,10 @@
 
 pub mod banded;
 pub mod eigenpairs;
+pub mod matrix_pencil;
 pub mod mesh;
 pub mod nearby;
+pub mod nearest;
 pub mod pencil;
 pub mod polyline;
 pub mod quadrature;
