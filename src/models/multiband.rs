@@ -136,7 +136,9 @@ impl BlockCoefficient {
                 both.c.view_mut((0, 0), (n, n)).copy_from(&c);
                 both.c.view_mut((n, n), (n, n)).copy_from(&c);
                 let cross = k * k * &self.cross;
-                both.c.view_mut((n, 0), (n, n)).copy_from(&cross.transpose());
+                both.c
+                    .view_mut((n, 0), (n, n))
+                    .copy_from(&cross.transpose());
                 both.c.view_mut((0, n), (n, n)).copy_from(&cross);
                 both
             }
@@ -213,7 +215,11 @@ impl BlockCoefficient {
     /// From X, Y, Z, the last three functions, to heavy, light and split-off holes.
     pub(super) fn into_holes(self) -> BlockCoefficient {
         let n = self.a.nrows();
-        let (r2, r3, r6) = (0.5_f64.sqrt(), (1.0_f64 / 3.0).sqrt(), (1.0_f64 / 6.0).sqrt());
+        let (r2, r3, r6) = (
+            0.5_f64.sqrt(),
+            (1.0_f64 / 3.0).sqrt(),
+            (1.0_f64 / 6.0).sqrt(),
+        );
         let holes = Matrix3::new(r2, r6, r3, -r2, r6, r3, 0.0, 2.0 * r6, -r3);
         let mut turn = DMatrix::identity(n, n);
         turn.view_mut((n - 3, n - 3), (3, 3)).copy_from(&holes);
@@ -316,10 +322,14 @@ impl<'s> MultibandOperator<'s> {
         };
         for layer in 0..stack.layers.len() {
             let bottom = operator.resolve(layer, 0.0);
-            operator.bottoms.push(bottom.map_err(|reason| (layer, reason))?);
+            operator
+                .bottoms
+                .push(bottom.map_err(|reason| (layer, reason))?);
             if !stack.is_uniform(layer) {
                 for t in [0.25, 0.5, 0.75, 1.0] {
-                    operator.resolve(layer, t).map_err(|reason| (layer, reason))?;
+                    operator
+                        .resolve(layer, t)
+                        .map_err(|reason| (layer, reason))?;
                 }
             }
         }

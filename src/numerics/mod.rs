@@ -2,6 +2,7 @@
 //! here.
 
 pub mod banded;
+pub mod curvature;
 pub mod eigenpairs;
 pub mod matrix_pencil;
 pub mod mesh;

@@ -46,7 +46,10 @@ pub fn numbered(
     let below = factored.negative();
     let mut found: Vec<NearPair> = Vec::new();
     let mut seed = 0;
-    let mut sides = [below - wanted.start.min(below), wanted.end - below.min(wanted.end)];
+    let mut sides = [
+        below - wanted.start.min(below),
+        wanted.end - below.min(wanted.end),
+    ];
     loop {
         let before = found.len();
         found.extend(iterate(&factored, shift, &found, sides, seed));
@@ -70,11 +73,7 @@ pub fn numbered(
 
 /// How far each level moves on a finer mesh: the vectors are transferred, improved by one inverse iteration, and
 /// separated in the space they span.
-pub fn improvements(
-    pencil: &MatrixPencil,
-    pairs: &[NearPair],
-    finer: &MatrixPencil,
-) -> Vec<f64> {
+pub fn improvements(pencil: &MatrixPencil, pairs: &[NearPair], finer: &MatrixPencil) -> Vec<f64> {
     let (Some(first), Some(last)) = (pairs.first(), pairs.last()) else {
         return Vec::new();
     };
@@ -92,9 +91,16 @@ pub fn improvements(
     let form = DMatrix::from_fn(count, count, |i, j| {
         0.5 * (dot(&basis[i], &images[j]) + dot(&basis[j], &images[i]))
     });
-    let mut values: Vec<f64> = SymmetricEigen::new(form).eigenvalues.iter().copied().collect();
+    let mut values: Vec<f64> = SymmetricEigen::new(form)
+        .eigenvalues
+        .iter()
+        .copied()
+        .collect();
     values.sort_by(f64::total_cmp);
-    let moves = values.iter().zip(pairs).map(|(finer, pair)| finer - pair.value);
+    let moves = values
+        .iter()
+        .zip(pairs)
+        .map(|(finer, pair)| finer - pair.value);
     moves.collect()
 }
 
@@ -284,8 +290,15 @@ fn ritz(
         residual * eigen.eigenvectors[(steps - 1, k)].abs() <= RESIDUAL * eigen.eigenvalues[k].abs()
     };
     // The inverse is most negative just below the shift, and most positive just above.
-    let under = order.iter().copied().take_while(|&k| eigen.eigenvalues[k] < 0.0);
-    let over = order.iter().rev().copied().take_while(|&k| eigen.eigenvalues[k] > 0.0);
+    let under = order
+        .iter()
+        .copied()
+        .take_while(|&k| eigen.eigenvalues[k] < 0.0);
+    let over = order
+        .iter()
+        .rev()
+        .copied()
+        .take_while(|&k| eigen.eigenvalues[k] > 0.0);
     let chosen: Vec<usize> = under
         .take_while(converged)
         .take(sides[0].max(1))

@@ -6,6 +6,7 @@
 
 use crate::constants::HBAR2_OVER_2M0;
 use crate::models::multiband::{MultibandModel, MultibandOperator, Part};
+use crate::numerics::curvature::curvature;
 use crate::numerics::matrix_pencil::{MatrixCoefficient, MatrixPencil};
 use crate::numerics::mesh::Mesh;
 use crate::numerics::nearest::{self, NearPair};
@@ -98,8 +99,6 @@ const SPARE: usize = 2;
 /// A step along k∥ is halved where a state looks like its follower by less than this.
 const ALIKE: f64 = 0.6;
 const MAX_DEPTH: usize = 5;
-/// Energies closer than this count as equal, in eV.
-const EQUAL_EV: f64 = 1e-9;
 
 /// Solves at one k∥ on a mesh that is refined until the estimated errors are below the tolerance, or as fine as is
 /// sensible; the errors that were reached are reported.
@@ -114,8 +113,12 @@ pub fn solve_multiband(
     let mut halvings = 0;
     loop {
         for order in ORDERS {
-            let subbands =
-                multiband_on_mesh(operator, Mesh::new(&lengths, &pieces, order), k_per_nm, wanted);
+            let subbands = multiband_on_mesh(
+                operator,
+                Mesh::new(&lengths, &pieces, order),
+                k_per_nm,
+                wanted,
+            );
             let exact = subbands.states.iter().all(|s| s.error_ev <= tolerance_ev);
             if exact || (halvings == MAX_HALVINGS && order == ORDERS[ORDERS.len() - 1]) {
                 return subbands;
@@ -170,11 +173,7 @@ pub fn multiband_on_mesh(
 }
 
 /// The two members of a pair with their problems.
-fn members(
-    parts: &[PartSolution],
-    band: Band,
-    index: usize,
-) -> [(&MatrixPencil, &NearPair); 2] {
+fn members(parts: &[PartSolution], band: Band, index: usize) -> [(&MatrixPencil, &NearPair); 2] {
     let of = |part: &'_ PartSolution| match band {
         Band::Conduction => part.conduction.len(),
         Band::Valence => part.valence.len(),
@@ -299,7 +298,9 @@ fn pieces(operator: &MultibandOperator) -> Vec<usize> {
             rate = rate.max(depth_ev * 0.05 / HBAR2_OVER_2M0);
         }
         let heavy = n - 3;
-        let depth_ev = (top_ev - block.c[0][(heavy, heavy)]).abs().max(LEAST_DEPTH_EV);
+        let depth_ev = (top_ev - block.c[0][(heavy, heavy)])
+            .abs()
+            .max(LEAST_DEPTH_EV);
         rate = rate.max(depth_ev / block.a[(heavy, heavy)].abs());
         let count = (rate.sqrt() * own.width_nm / MAX_PHASE).ceil() as usize;
         pieces.push(count.clamp(1, MAX_PIECES));
@@ -344,7 +345,12 @@ pub fn zone_centre_masses(
         &centre.parts[0]
     } else {
         let count = |band| centre.states.iter().filter(|s| s.band == band).count();
-        solved = half(operator, mesh, count(Band::Conduction), count(Band::Valence));
+        solved = half(
+            operator,
+            mesh,
+            count(Band::Conduction),
+            count(Band::Valence),
+        );
         &solved
     };
     let [first, second] = [0, 1].map(|order| {
@@ -356,7 +362,11 @@ pub fn zone_centre_masses(
     let all: Vec<&NearPair> = part.conduction.iter().chain(&part.valence).collect();
     let mut masses = Vec::with_capacity(all.len());
     for (index, pair) in all.iter().enumerate() {
-        let sign = if index < part.conduction.len() { 1.0 } else { -1.0 };
+        let sign = if index < part.conduction.len() {
+            1.0
+        } else {
+            -1.0
+        };
         let curvature = curvature(&part.pencil, &first, &second, &all, pair);
         masses.push(curvature.map(|c| sign * HBAR2_OVER_2M0 / c));
     }
@@ -382,52 +392,6 @@ fn half(
         conduction,
         valence,
     }
-}
-
-/// Half the second derivative of a level with respect to k∥.
-fn curvature(
-    pencil: &MatrixPencil,
-    first: &MatrixPencil,
-    second: &MatrixPencil,
-    known: &[&NearPair],
-    pair: &NearPair,
-) -> Option<f64> {
-    let dot = |x: &[f64], y: &[f64]| x.iter().zip(y).map(|(a, b)| a * b).sum::<f64>();
-    let mut sum = dot(&pair.vector, &second.matrix().times(&pair.vector));
-    let mut image = first.matrix().times(&pair.vector);
-    let scale = dot(&image, &image).sqrt();
-    for other in known {
-        let part = dot(&other.vector, &image);
-        for (v, o) in image.iter_mut().zip(&other.vector) {
-            *v -= part * o;
-        }
-        if std::ptr::eq(*other, pair) {
-            continue;
-        }
-        let apart = pair.value - other.value;
-        if apart.abs() > EQUAL_EV {
-            sum += part * part / apart;
-        } else if part.abs() > EQUAL_EV * scale {
-            return None;
-        }
-    }
-    // The rest of the spectrum: (E − H)⁻¹ on what is orthogonal to the known states, with a shift beside E.
-    let aside = 1e-7 * (1.0 + pair.value.abs());
-    let factored = pencil.factor(pair.value + aside, None);
-    let mut x = vec![0.0; image.len()];
-    for _ in 0..3 {
-        for (v, b) in x.iter_mut().zip(&image) {
-            *v = b - aside * *v;
-        }
-        factored.solve(&mut x);
-        for other in known {
-            let part = dot(&other.vector, &x);
-            for (v, o) in x.iter_mut().zip(&other.vector) {
-                *v -= part * o;
-            }
-        }
-    }
-    Some(sum - dot(&image, &x))
 }
 
 /// Energies along a list of k∥ in 1/nm, in the direction of the operator, ascending from the first. The states are
