@@ -22,6 +22,8 @@ const RESIDUAL: f64 = 1e-11;
 const EXHAUSTED: f64 = 1e-13;
 /// Bisections that look for a shift amid the wanted levels; more are made only while the shift is outside of them.
 const BISECTIONS: usize = 60;
+/// Starts after which one that shows nothing new ends the search.
+const MAX_FRUITLESS: usize = 8;
 /// Steps of a run of iterations, and between two looks at what has converged.
 const MAX_STEPS: usize = 160;
 const LOOK_EVERY: usize = 6;
@@ -52,7 +54,13 @@ pub fn numbered(
     ];
     loop {
         let before = found.len();
-        found.extend(iterate(&factored, shift, &found, sides, seed));
+        found.extend(iterate(
+            &factored,
+            shift,
+            &found,
+            Sought::Sides(sides),
+            seed,
+        ));
         found.sort_by(|a, b| a.value.total_cmp(&b.value));
         seed += 1;
         match search.missing(&found, shift, below, &wanted) {
@@ -62,13 +70,51 @@ pub fn numbered(
                 return found;
             }
             // No new vector means that the space is exhausted, which the count cannot contradict but for rounding.
-            Err(_) if found.len() == before && seed > 8 => {
+            Err(_) if found.len() == before && seed > MAX_FRUITLESS => {
                 found.truncate(wanted.len());
                 return found;
             }
             Err(missing) => sides = missing,
         }
     }
+}
+
+/// The `count` levels nearest to a shift, on both sides of it, in ascending order; fewer only when the matrix is smaller.
+pub fn around(pencil: &MatrixPencil, shift: f64, count: usize) -> Vec<NearPair> {
+    let count = count.min(pencil.size());
+    let mut search = Search {
+        pencil,
+        spare: None,
+    };
+    let factored = search.factor(shift);
+    let mut found: Vec<NearPair> = Vec::new();
+    let mut lacking = count;
+    for seed in 0.. {
+        let before = found.len();
+        found.extend(iterate(
+            &factored,
+            shift,
+            &found,
+            Sought::Nearest(lacking),
+            seed,
+        ));
+        found.sort_by(|a, b| (a.value - shift).abs().total_cmp(&(b.value - shift).abs()));
+        lacking = count.saturating_sub(found.len());
+        if lacking == 0 && count > 0 {
+            // As many levels as lie within the distance of the outermost must have been found within it.
+            let reach = (found[count - 1].value - shift).abs();
+            let reach = reach + margin(shift + reach, shift);
+            let within = found.partition_point(|pair| (pair.value - shift).abs() < reach);
+            let all = search.count(shift + reach) - search.count(shift - reach);
+            lacking = all.saturating_sub(within);
+        }
+        if lacking == 0 || (found.len() == before && seed > MAX_FRUITLESS) {
+            break;
+        }
+    }
+    found.truncate(count);
+    found.sort_by(|a, b| a.value.total_cmp(&b.value));
+    found
 }
 
 /// How far each level moves on a finer mesh: the vectors are transferred, improved by one inverse iteration, and
@@ -102,6 +148,15 @@ pub fn improvements(pencil: &MatrixPencil, pairs: &[NearPair], finer: &MatrixPen
         .zip(pairs)
         .map(|(finer, pair)| finer - pair.value);
     moves.collect()
+}
+
+/// What a run of iterations is to find.
+#[derive(Clone, Copy)]
+enum Sought {
+    /// So many levels below and above the shift.
+    Sides([usize; 2]),
+    /// So many levels on either side.
+    Nearest(usize),
 }
 
 struct Search<'p> {
@@ -176,7 +231,6 @@ impl Search<'_> {
         ];
         // Levels on the far side of the shift from all that is wanted do not matter.
         let mut lacking = [0; 2];
-        let mut complete = true;
         if needed[0] > under {
             lacking[0] = needed[0] - under;
         } else if needed[0] > 0 {
@@ -201,8 +255,7 @@ impl Search<'_> {
                 lacking[1] = up_to - below - inside.count();
             }
         }
-        complete &= lacking == [0, 0];
-        if complete {
+        if lacking == [0, 0] {
             Ok(if needed[0] > 0 {
                 under - needed[0]
             } else {
@@ -219,13 +272,13 @@ fn margin(value: f64, shift: f64) -> f64 {
     1e-10 * (value - shift).abs() + 1e-11
 }
 
-/// Lanczos iteration from a start orthogonal to `known` until `sides` levels below and above the shift have converged
-/// (at least one in all).
+/// Lanczos iteration from a start orthogonal to `known` until what is sought has converged, at least one level on each
+/// side that is there.
 fn iterate(
     factored: &Factored,
     shift: f64,
     known: &[NearPair],
-    sides: [usize; 2],
+    sought: Sought,
     seed: usize,
 ) -> Vec<NearPair> {
     let size = factored.size();
@@ -239,6 +292,10 @@ fn iterate(
     if orthogonalise(&mut start, &[&known]) == 0.0 {
         return Vec::new();
     }
+    let first_look = 2 * match sought {
+        Sought::Sides([under, over]) => under + over,
+        Sought::Nearest(count) => count,
+    };
     basis.push(start);
     loop {
         let last = basis.len() - 1;
@@ -248,18 +305,16 @@ fn iterate(
         let length = norm(&next);
         let left = orthogonalise(&mut next, &[&known, &basis]);
         let steps = diagonal.len();
-        let exhausted = left <= EXHAUSTED * length || steps >= room;
-        let enough = steps > 2 * (sides[0] + sides[1]) && steps % LOOK_EVERY == 0;
-        if exhausted || steps >= MAX_STEPS || enough {
-            let residual = if exhausted { 0.0 } else { left };
-            let converged = ritz(&basis, &diagonal, &below, residual, shift, sides);
-            let done = |side: usize| {
-                let pairs = converged.iter();
-                let count = pairs.filter(|p| (p.value > shift) == (side == 1)).count();
-                count >= sides[side]
+        let ended = left <= EXHAUSTED * length || steps >= room || steps >= MAX_STEPS;
+        if ended || (steps > first_look && (steps - first_look) % LOOK_EVERY == 1) {
+            let residual = if left <= EXHAUSTED * length || steps >= room {
+                0.0
+            } else {
+                left
             };
-            if exhausted || steps >= MAX_STEPS || (done(0) && done(1)) {
-                return converged;
+            let (pairs, complete) = ritz(&basis, &diagonal, &below, residual, shift, sought);
+            if ended || complete {
+                return pairs;
             }
         }
         below.push(left);
@@ -267,16 +322,16 @@ fn iterate(
     }
 }
 
-/// The converged pairs of the projected matrix, the outermost of the wanted number on both sides, as long as none
-/// between has not converged.
+/// The converged pairs of the projected matrix among those that are sought, none between left out, and whether these are
+/// all.
 fn ritz(
     basis: &[Vec<f64>],
     diagonal: &[f64],
     below: &[f64],
     residual: f64,
     shift: f64,
-    sides: [usize; 2],
-) -> Vec<NearPair> {
+    sought: Sought,
+) -> (Vec<NearPair>, bool) {
     let steps = diagonal.len();
     let projected = DMatrix::from_fn(steps, steps, |i, j| match i.abs_diff(j) {
         0 => diagonal[i],
@@ -284,26 +339,30 @@ fn ritz(
         _ => 0.0,
     });
     let eigen = SymmetricEigen::new(projected);
+    let inverse = &eigen.eigenvalues;
+    // The nearer a level is to the shift, the larger is its eigenvalue of the inverse.
     let mut order: Vec<usize> = (0..steps).collect();
-    order.sort_by(|&a, &b| eigen.eigenvalues[a].total_cmp(&eigen.eigenvalues[b]));
+    order.sort_by(|&a, &b| inverse[b].abs().total_cmp(&inverse[a].abs()));
     let converged = |&k: &usize| {
-        residual * eigen.eigenvectors[(steps - 1, k)].abs() <= RESIDUAL * eigen.eigenvalues[k].abs()
+        residual * eigen.eigenvectors[(steps - 1, k)].abs() <= RESIDUAL * inverse[k].abs()
     };
-    // The inverse is most negative just below the shift, and most positive just above.
-    let under = order
-        .iter()
-        .copied()
-        .take_while(|&k| eigen.eigenvalues[k] < 0.0);
-    let over = order
-        .iter()
-        .rev()
-        .copied()
-        .take_while(|&k| eigen.eigenvalues[k] > 0.0);
-    let chosen: Vec<usize> = under
-        .take_while(converged)
-        .take(sides[0].max(1))
-        .chain(over.take_while(converged).take(sides[1].max(1)))
-        .collect();
+    let first = |side: Option<bool>, count: usize| -> Vec<usize> {
+        let on_side = order.iter().copied();
+        let on_side = on_side.filter(|&k| side.is_none_or(|over| (inverse[k] > 0.0) == over));
+        on_side.take_while(converged).take(count).collect()
+    };
+    let (chosen, complete) = match sought {
+        Sought::Nearest(count) => {
+            let chosen = first(None, count.max(1));
+            let complete = chosen.len() >= count.max(1);
+            (chosen, complete)
+        }
+        Sought::Sides([under, over]) => {
+            let (below, above) = (first(Some(false), under), first(Some(true), over));
+            let complete = below.len() >= under && above.len() >= over;
+            ([below, above].concat(), complete)
+        }
+    };
     let pairs = chosen.into_iter().map(|k| {
         let mut vector = vec![0.0; basis[0].len()];
         for (member, direction) in basis.iter().take(steps).enumerate() {
@@ -315,11 +374,11 @@ fn ritz(
         let length = norm(&vector);
         vector.iter_mut().for_each(|v| *v /= length);
         NearPair {
-            value: shift + 1.0 / eigen.eigenvalues[k],
+            value: shift + 1.0 / inverse[k],
             vector,
         }
     });
-    pairs.collect()
+    (pairs.collect(), complete)
 }
 
 /// Takes the parts along the orthonormal `sets` out of x, twice for full precision, and normalises it. Returns the length
@@ -369,4 +428,111 @@ fn start_vector(size: usize, seed: usize) -> Vec<f64> {
         (state >> 11) as f64 / (1u64 << 53) as f64 - 0.5
     });
     numbers.collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use without_physics::pencil;
+
+    /// A pencil without physics: three functions, indefinite A, a coupling by G, and C that makes symmetric double wells.
+    mod without_physics {
+        use super::super::super::matrix_pencil::{MatrixCoefficient, MatrixPencil};
+        use super::super::super::mesh::Mesh;
+        use std::borrow::Cow;
+
+        pub fn pencil(copies: usize) -> MatrixPencil {
+            let mesh = Mesh::new(&[1.0, 2.0, 1.5, 2.0, 1.0], &[1, 2, 1, 2, 1], 6);
+            MatrixPencil::new(mesh, 2 * copies, |element, _| {
+                let mut at = MatrixCoefficient::zeros(2 * copies);
+                let wall = if element.segment % 2 == 0 { 6.0 } else { 0.0 };
+                for copy in 0..copies {
+                    let [s, p] = [2 * copy, 2 * copy + 1];
+                    at.a[(s, s)] = 1.0;
+                    at.a[(p, p)] = -0.4;
+                    at.g[(s, p)] = 0.8;
+                    at.g[(p, s)] = -0.8;
+                    at.c[(s, s)] = 1.0 + wall;
+                    at.c[(p, p)] = -1.0 - 0.5 * wall;
+                }
+                Cow::Owned(at)
+            })
+        }
+    }
+
+    fn dense(pencil: &MatrixPencil) -> Vec<f64> {
+        let n = pencil.size();
+        let mut matrix = DMatrix::zeros(n, n);
+        for k in 0..n {
+            let mut unit = vec![0.0; n];
+            unit[k] = 1.0;
+            matrix.set_column(
+                k,
+                &nalgebra::DVector::from_vec(pencil.matrix().times(&unit)),
+            );
+        }
+        let mut values: Vec<f64> = SymmetricEigen::new(matrix)
+            .eigenvalues
+            .iter()
+            .copied()
+            .collect();
+        values.sort_by(f64::total_cmp);
+        values
+    }
+
+    fn check(pencil: &MatrixPencil, pairs: &[NearPair], expected: &[f64]) {
+        assert_eq!(pairs.len(), expected.len());
+        for (pair, expected) in pairs.iter().zip(expected) {
+            assert!(
+                (pair.value - expected).abs() < 1e-9,
+                "{} for {expected}",
+                pair.value
+            );
+            let image = pencil.matrix().times(&pair.vector);
+            let left = image
+                .iter()
+                .zip(&pair.vector)
+                .map(|(t, x)| (t - pair.value * x).powi(2));
+            assert!(left.sum::<f64>().sqrt() < 1e-8, "residual at {expected}");
+        }
+        for (i, a) in pairs.iter().enumerate() {
+            for (j, b) in pairs.iter().enumerate() {
+                let inner = dot(&a.vector, &b.vector);
+                assert!(
+                    (inner - f64::from(i == j)).abs() < 1e-10,
+                    "{i} {j}: {inner}"
+                );
+            }
+        }
+    }
+
+    /// Against nalgebra's dense eigenvalues, also where every level is threefold (three equal copies).
+    #[test]
+    fn numbered_and_nearest_levels_are_those_of_the_dense_matrix() {
+        for copies in [1, 3] {
+            let pencil = pencil(copies);
+            let all = dense(&pencil);
+            let gap = all.iter().filter(|e| **e < 0.0).count();
+            for range in [
+                gap..gap + 7,
+                gap - 7..gap,
+                gap - 2..gap + 5,
+                0..3,
+                gap + 3..gap + 4,
+            ] {
+                for guess in [0.0, 3.0, -40.0] {
+                    let pairs = numbered(&pencil, range.clone(), guess, 0.5);
+                    check(&pencil, &pairs, &all[range.clone()]);
+                }
+            }
+            for shift in [0.1, 1.7, -2.0] {
+                // A number of levels at which no multiple one is cut.
+                let mut order = all.clone();
+                order.sort_by(|a, b| (a - shift).abs().total_cmp(&(b - shift).abs()));
+                let mut expected = order[..6].to_vec();
+                expected.sort_by(f64::total_cmp);
+                check(&pencil, &around(&pencil, shift, 6), &expected);
+            }
+        }
+    }
 }
