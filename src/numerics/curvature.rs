@@ -4,7 +4,7 @@
 //! taken term by term over those at hand and by a solve over all the rest.
 
 use super::matrix_pencil::MatrixPencil;
-use super::nearest::{NearPair, dot};
+use super::nearest::{NearPair, dot, take_out};
 
 /// Levels closer than this are taken as equal.
 const EQUAL: f64 = 1e-9;
@@ -51,13 +51,4 @@ pub fn curvature(
         }
     }
     Some(sum - dot(&image, &x))
-}
-
-/// x without its part along a unit vector; returns that part.
-fn take_out(x: &mut [f64], unit: &[f64]) -> f64 {
-    let part = dot(unit, x);
-    for (v, u) in x.iter_mut().zip(unit) {
-        *v -= part * u;
-    }
-    part
 }

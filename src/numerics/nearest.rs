@@ -303,7 +303,11 @@ fn iterate(
         factored.solve(&mut next);
         diagonal.push(dot(&next, &basis[last]));
         let length = norm(&next);
-        let left = orthogonalise(&mut next, &[&known, &basis]);
+        // What is left of the last two directions in exact arithmetic goes first, then what rounding leaves of all.
+        for direction in &basis[last.saturating_sub(1)..] {
+            take_out(&mut next, direction);
+        }
+        let left = clean(&mut next, &[&known, &basis]);
         let steps = diagonal.len();
         let ended = left <= EXHAUSTED * length || steps >= room || steps >= MAX_STEPS;
         if ended || (steps > first_look && (steps - first_look) % LOOK_EVERY == 1) {
@@ -383,20 +387,30 @@ fn ritz(
 
 /// Takes the parts along the orthonormal `sets` out of x, twice for full precision, and normalises it. Returns the length
 /// that was left.
-pub(super) fn orthogonalise(x: &mut [f64], sets: &[&[Vec<f64>]]) -> f64 {
-    for _ in 0..2 {
-        for direction in sets.iter().flat_map(|set| set.iter()) {
-            let part = dot(direction, x);
-            for (v, d) in x.iter_mut().zip(direction) {
-                *v -= part * d;
-            }
-        }
+fn orthogonalise(x: &mut [f64], sets: &[&[Vec<f64>]]) -> f64 {
+    let first = clean(x, sets);
+    first * clean(x, sets)
+}
+
+/// The same once.
+fn clean(x: &mut [f64], sets: &[&[Vec<f64>]]) -> f64 {
+    for direction in sets.iter().flat_map(|set| set.iter()) {
+        take_out(x, direction);
     }
     let length = norm(x);
     if length > 0.0 {
         x.iter_mut().for_each(|v| *v /= length);
     }
     length
+}
+
+/// x without its part along a unit vector; returns that part.
+pub(super) fn take_out(x: &mut [f64], unit: &[f64]) -> f64 {
+    let part = dot(unit, x);
+    for (v, u) in x.iter_mut().zip(unit) {
+        *v -= part * u;
+    }
+    part
 }
 
 /// The inner product, in four sums that run side by side.

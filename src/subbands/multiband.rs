@@ -235,35 +235,57 @@ fn solve_parts(
     k_per_nm: f64,
     wanted: Wanted,
 ) -> Vec<PartSolution> {
+    let parts = kinds(operator).iter();
+    parts
+        .map(|&part| solve_part(operator, mesh, k_per_nm, wanted, part, None))
+        .collect()
+}
+
+/// Solves one part of H. The levels are looked for first amid those of `nearby`, a solution at a k∥ not far off, or next
+/// to the edges of the stack.
+fn solve_part(
+    operator: &MultibandOperator,
+    mesh: &Mesh,
+    k_per_nm: f64,
+    wanted: Wanted,
+    part: Part,
+    nearby: Option<&PartSolution>,
+) -> PartSolution {
+    let pencil = pencil(operator, mesh.clone(), k_per_nm, part);
+    let copies = if part == Part::Both { 2 } else { 1 };
+    let gap = 3 * copies * (mesh.node_count() - 2);
     let [floor_ev, top_ev] = band_edges(operator);
-    let nodes = mesh.node_count() - 2;
-    let solve = |&part: &Part| {
-        let pencil = pencil(operator, mesh.clone(), k_per_nm, part);
-        let copies = if part == Part::Both { 2 } else { 1 };
-        let gap = 3 * copies * nodes;
-        let conduction = match operator.model() {
-            MultibandModel::SixBand => Vec::new(),
-            MultibandModel::EightBand => nearest::numbered(
-                &pencil,
-                gap..gap + copies * wanted.conduction,
-                floor_ev + FIRST_STEP_EV,
-                FIRST_STEP_EV,
-            ),
-        };
-        let mut valence = nearest::numbered(
-            &pencil,
-            gap.saturating_sub(copies * wanted.valence)..gap,
-            top_ev - FIRST_STEP_EV,
-            FIRST_STEP_EV,
-        );
-        valence.reverse();
-        PartSolution {
-            pencil,
-            conduction,
-            valence,
-        }
+    let guess = |levels: Option<&[NearPair]>, otherwise: f64| match levels {
+        Some([.., _, _]) => levels.map_or(otherwise, amid),
+        _ => otherwise,
     };
-    kinds(operator).iter().map(solve).collect()
+    let conduction = match operator.model() {
+        MultibandModel::SixBand => Vec::new(),
+        MultibandModel::EightBand => nearest::numbered(
+            &pencil,
+            gap..gap + copies * wanted.conduction,
+            guess(nearby.map(|n| &n.conduction[..]), floor_ev + FIRST_STEP_EV),
+            FIRST_STEP_EV,
+        ),
+    };
+    let mut valence = nearest::numbered(
+        &pencil,
+        gap.saturating_sub(copies * wanted.valence)..gap,
+        guess(nearby.map(|n| &n.valence[..]), top_ev - FIRST_STEP_EV),
+        FIRST_STEP_EV,
+    );
+    valence.reverse();
+    PartSolution {
+        pencil,
+        conduction,
+        valence,
+    }
+}
+
+/// Halfway between the two middle ones of at least two levels.
+fn amid(levels: &[NearPair]) -> f64 {
+    let upper = levels.len() / 2;
+    0.5 * (levels[upper - 1].value + levels[upper].value)
 }
 
 /// The lowest conduction edge (NaN without) and the highest valence edge of the stack, the field included, at the faces.
@@ -345,12 +367,11 @@ pub fn zone_centre_masses(
         &centre.parts[0]
     } else {
         let count = |band| centre.states.iter().filter(|s| s.band == band).count();
-        solved = half(
-            operator,
-            mesh,
-            count(Band::Conduction),
-            count(Band::Valence),
-        );
+        let wanted = Wanted {
+            conduction: count(Band::Conduction),
+            valence: count(Band::Valence),
+        };
+        solved = solve_part(operator, mesh, 0.0, wanted, kind, None);
         &solved
     };
     let [first, second] = [0, 1].map(|order| {
@@ -371,27 +392,6 @@ pub fn zone_centre_masses(
         masses.push(curvature.map(|c| sign * HBAR2_OVER_2M0 / c));
     }
     masses
-}
-
-/// One part at k∥ = 0, for directions in which the parts mix elsewhere.
-fn half(
-    operator: &MultibandOperator,
-    mesh: &Mesh,
-    conduction: usize,
-    valence: usize,
-) -> PartSolution {
-    let [floor_ev, top_ev] = band_edges(operator);
-    let pencil = pencil(operator, mesh.clone(), 0.0, Part::Plus);
-    let gap = 3 * (mesh.node_count() - 2);
-    let step = FIRST_STEP_EV;
-    let conduction = nearest::numbered(&pencil, gap..gap + conduction, floor_ev + step, step);
-    let mut valence = nearest::numbered(&pencil, gap - valence..gap, top_ev - step, step);
-    valence.reverse();
-    PartSolution {
-        pencil,
-        conduction,
-        valence,
-    }
 }
 
 /// Energies along a list of k∥ in 1/nm, in the direction of the operator, ascending from the first. The states are
@@ -431,7 +431,24 @@ pub fn follow_on_mesh(
         valence: more(wanted.valence),
     };
     let solve = |k: f64| solve_parts(operator, mesh, k, roomy);
-    let solved: Vec<Vec<PartSolution>> = list_per_nm.par_iter().map(|&k| solve(k)).collect();
+    // One part after the other on its way through k∥, both at the same time.
+    let ways: Vec<Vec<PartSolution>> = kinds(operator)
+        .par_iter()
+        .map(|&part| {
+            let mut way: Vec<PartSolution> = Vec::with_capacity(list_per_nm.len());
+            for &k in list_per_nm {
+                let next = solve_part(operator, mesh, k, roomy, part, way.last());
+                way.push(next);
+            }
+            way
+        })
+        .collect();
+    let mut solved: Vec<Vec<PartSolution>> = list_per_nm.iter().map(|_| Vec::new()).collect();
+    for way in ways {
+        for (parts, part) in solved.iter_mut().zip(way) {
+            parts.push(part);
+        }
+    }
     let Some(start) = solved.first() else {
         return Vec::new();
     };
