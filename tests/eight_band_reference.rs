@@ -48,6 +48,9 @@ fn levels_of_eight_bands_are_those_of_the_independent_reference() {
                 valence: solved.valence_ev.len() / 2,
             };
             let subbands = solve_multiband(&operator, f64::hypot(kx, ky), wanted, 1e-7);
+            for state in &subbands.states {
+                assert!(state.error_ev <= 1e-7, "{}: {state:?}", stack.name);
+            }
             for (band, expected) in [
                 (Band::Conduction, &solved.conduction_ev),
                 (Band::Valence, &solved.valence_ev),

@@ -43,7 +43,7 @@ pub struct PairState {
     /// From 1 at the gap.
     pub number: usize,
     /// Electron energies of the two members on the absolute scale; equal at k∥ = 0, and in a stack that is its own mirror
-    /// image.
+    /// image. Where k∥ lies in no mirror plane, two neighbours in energy are taken for a pair.
     pub energies_ev: [f64; 2],
     /// Estimated discretisation error.
     pub error_ev: f64,
@@ -152,10 +152,9 @@ pub fn multiband_on_mesh(
         (Band::Conduction, conduction_moves),
         (Band::Valence, valence_moves),
     ] {
-        let members = |index: usize| members(&parts, band, index);
         let per_pair = 2 / parts.len();
-        for index in 0..moves.len() / per_pair {
-            let [first, second] = members(index);
+        for index in 0..fewest(&parts, band) / per_pair {
+            let [first, second] = members(&parts, band, index);
             states.push(PairState {
                 band,
                 number: index + 1,
@@ -174,24 +173,18 @@ pub fn multiband_on_mesh(
 
 /// The two members of a pair with their problems.
 fn members(parts: &[PartSolution], band: Band, index: usize) -> [(&MatrixPencil, &NearPair); 2] {
-    let of = |part: &'_ PartSolution| match band {
-        Band::Conduction => part.conduction.len(),
-        Band::Valence => part.valence.len(),
-    };
-    debug_assert!(of(&parts[0]) > index);
-    let at = |part: usize, index: usize| {
-        let part = &parts[part];
-        let list = match band {
-            Band::Conduction => &part.conduction,
-            Band::Valence => &part.valence,
-        };
-        (&part.pencil, &list[index])
-    };
+    let at = |part: usize, place: usize| (&parts[part].pencil, &list(&parts[part], band)[place]);
     if parts.len() == 2 {
         [at(0, index), at(1, index)]
     } else {
         [at(0, 2 * index), at(0, 2 * index + 1)]
     }
+}
+
+/// How many states of a band every part has.
+fn fewest(parts: &[PartSolution], band: Band) -> usize {
+    let counts = parts.iter().map(|part| list(part, band).len());
+    counts.min().unwrap_or(0)
 }
 
 fn kinds(operator: &MultibandOperator) -> &'static [Part] {
@@ -336,7 +329,7 @@ fn shares(pencil: &MatrixPencil, pair: &NearPair) -> Shares {
     for (index, x) in pair.vector.iter().enumerate() {
         squares[index % n] += x * x;
     }
-    let of_block = if n % 4 == 0 { 4 } else { 3 };
+    let of_block = if n.is_multiple_of(4) { 4 } else { 3 };
     let sum = |from_end: usize| -> f64 {
         let own = squares.iter().enumerate();
         own.filter(|(k, _)| k % of_block + from_end == of_block)
@@ -461,7 +454,11 @@ pub fn follow_on_mesh(
         let copies = 2 / start.len();
         let mut places: Vec<Vec<usize>> =
             vec![(0..list(&start[0], band).len()).collect(); start.len()];
-        let count = count.min(places[0].len() / copies);
+        let fewest = solved.iter().map(|parts| fewest(parts, band)).min();
+        let count = count.min(fewest.unwrap_or(0) / copies);
+        if count == 0 {
+            continue;
+        }
         let mut followed: Vec<FollowedBand> = (0..count)
             .map(|index| FollowedBand {
                 band,
@@ -544,12 +541,15 @@ fn alike(from: &[NearPair], to: &[NearPair]) -> (Vec<usize>, f64) {
         }
     }
     overlaps.sort_by(|a, b| b.0.total_cmp(&a.0));
-    let mut places = vec![usize::MAX; from.len()];
+    // A state that finds no follower, because fewer are at hand, stays with the last one.
+    let mut places = vec![to.len().saturating_sub(1); from.len()];
+    let mut placed = vec![false; from.len()];
     let mut taken = vec![false; to.len()];
     let mut least = 1.0_f64;
     for (overlap, i, j) in overlaps {
-        if places[i] == usize::MAX && !taken[j] {
+        if !placed[i] && !taken[j] {
             places[i] = j;
+            placed[i] = true;
             taken[j] = true;
             if i + SPARE < from.len() {
                 least = least.min(overlap);
