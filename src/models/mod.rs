@@ -3,8 +3,11 @@
 //!
 //! A model supplies the coefficients of one layer and knows nothing of meshes.
 
+pub mod eight_band;
 mod energy_dependent;
+pub mod multiband;
 mod parabolic;
+pub mod six_band;
 
 use crate::materials::{Dual, Element, Material, Number};
 use crate::numerics::pencil::{Coefficient, Pole};

@@ -4,6 +4,7 @@ mod audit;
 mod change;
 mod curves;
 mod envelope;
+pub mod multiband;
 mod nearby;
 mod resolution;
 mod state;
