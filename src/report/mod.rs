@@ -1,6 +1,7 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
 mod check;
+mod dispersion;
 mod layer_edges;
 mod levels;
 mod materials;
@@ -15,6 +16,7 @@ mod tolerance;
 mod tuning;
 
 pub use check::Check;
+pub use dispersion::Dispersion;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
 pub use sheet::Sheet;
