@@ -16,6 +16,7 @@ use wellwright::structure;
 use wellwright::subbands::multiband::{
     Band, MultibandSubbands, Wanted, follow_multiband, solve_multiband, zone_centre_masses,
 };
+use wellwright::subbands::strengths::interband_strengths;
 use wellwright::subbands::{Accuracy, solve};
 
 const TOLERANCE_EV: f64 = 1e-8;
@@ -636,6 +637,49 @@ fn bands_are_followed_without_swaps() {
             assert!(bend.abs() < 1e-3, "{:?} {}: {bend}", fine.band, fine.number);
         }
     }
+}
+
+/// The polarisation rules of bulk hold for the lowest states of a wide well: E_P/2 for the heavy hole with the field in the
+/// plane and nothing along z; E_P/6 and 2E_P/3 for the light hole (Kane, J. Phys. Chem. Solids 1, 249 (1957)). What the
+/// confinement mixes in is of the order of the confinement energy over the gap.
+#[test]
+fn light_couples_the_states_of_a_wide_well_as_those_of_bulk() {
+    let stack = stack_of(
+        "bands: {conduction: {model: parabolic, states: 1}}\nlayers:\n  - {material: GaAs, width: 60 nm}\n",
+    );
+    let model = MultibandModel::EightBand;
+    let operator = MultibandOperator::new(&stack, model, Direction::ALONG_100).unwrap();
+    let subbands = solve_multiband(&operator, 0.0, wanted(model, 1, 8), 1e-7);
+    let kane = eight_band::reduction(&gaas()).unwrap().kane_energy_ev;
+    let holes: Vec<_> = subbands
+        .states
+        .iter()
+        .filter(|s| s.band == Band::Valence)
+        .collect();
+    let mut light = 0;
+    for strength in interband_strengths(&operator, &subbands) {
+        let heavy = holes[strength.valence - 1].shares.heavy > 0.5;
+        let [te, tm] = [strength.te_ev / kane, strength.tm_ev / kane];
+        println!(
+            "hole {} heavy {heavy}: TE {te:.5} TM {tm:.5}",
+            strength.valence
+        );
+        if strength.valence == 1 {
+            assert!(heavy && (te - 0.5).abs() < 0.01 && tm < 1e-12, "{te} {tm}");
+        } else if heavy {
+            assert!(
+                te < 0.01 && tm < 1e-12,
+                "another number of nodes: {te} {tm}"
+            );
+        } else if light == 0 {
+            light += 1;
+            assert!(
+                (te - 1.0 / 6.0).abs() < 0.01 && (tm - 2.0 / 3.0).abs() < 0.02,
+                "{te} {tm}"
+            );
+        }
+    }
+    assert_eq!(light, 1);
 }
 
 #[test]

@@ -8,6 +8,7 @@ pub mod multiband;
 mod nearby;
 mod resolution;
 mod state;
+pub mod strengths;
 
 pub use audit::Audit;
 pub use change::change;

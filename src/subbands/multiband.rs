@@ -204,6 +204,20 @@ pub fn pencil(operator: &MultibandOperator, mesh: Mesh, k_per_nm: f64, part: Par
     })
 }
 
+/// The derivative of the problem of one part with respect to k∥.
+pub(super) fn derivative(
+    operator: &MultibandOperator,
+    mesh: &Mesh,
+    k_per_nm: f64,
+    part: Part,
+) -> MatrixPencil {
+    on(operator, mesh.clone(), part, |layer, t, _| {
+        let [mut slope, second] = operator.block(layer, t).orders(part);
+        slope.c += 2.0 * k_per_nm * second.c;
+        slope
+    })
+}
+
 /// A problem with one set of coefficients per layer or place.
 fn on(
     operator: &MultibandOperator,
