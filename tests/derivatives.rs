@@ -7,7 +7,7 @@
 //! a step that does not suit the stack shows as such and not as a wrong derivative.
 
 use wellwright::materials::Element;
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::numerics::sensitivity::value_slope;
 use wellwright::structure::{self, ConductionModel, Knob, Stack};
 use wellwright::subbands::{Accuracy, change};
@@ -114,7 +114,7 @@ fn difference(task: &Task, knob: Knob, step: f64) -> Vec<f64> {
 fn assert_exact(case: &Case) {
     let task = task(case);
     let design = task.design(task.stack.clone(), None).unwrap();
-    let operator = ConductionOperator::new(&task.stack, task.model).unwrap();
+    let operator = BandOperator::conduction(&task.stack, task.model).unwrap();
     let pencil = &design.subbands.pencil;
     let dipole_slopes = task.value_slopes(&design);
     let n = case.states;

@@ -2,12 +2,12 @@
 
 use super::deliver::{Exit, print};
 use super::input::Input;
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use std::path::Path;
 
 pub fn check(file: &Path) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
-    ConductionOperator::new(&input.stack, input.structure.conduction.model)
+    BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let (layers, width) = (input.stack.layers.len(), input.stack.total_width_nm());
     let tuning = if input.structure.tune.is_some() {

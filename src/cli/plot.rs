@@ -2,7 +2,7 @@
 
 use super::deliver::{Exit, check_output, print, write};
 use super::input::Input;
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::report::svg::{BandDiagram, FINENESS, Width};
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
@@ -10,7 +10,7 @@ use std::path::Path;
 pub fn plot(file: &Path, width: Width, output: Option<&Path>) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
-    let operator = ConductionOperator::new(&input.stack, input.structure.conduction.model)
+    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let states = input.structure.conduction.states;
     let subbands = subbands::solve(&operator, states, Accuracy::default());

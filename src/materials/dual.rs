@@ -15,6 +15,7 @@ pub trait Number:
     fn constant(value: f64) -> Self;
     /// The number without its derivative.
     fn value(self) -> f64;
+    fn sqrt(self) -> Self;
 }
 
 impl Number for f64 {
@@ -23,6 +24,9 @@ impl Number for f64 {
     }
     fn value(self) -> f64 {
         self
+    }
+    fn sqrt(self) -> Self {
+        self.sqrt()
     }
 }
 
@@ -42,6 +46,16 @@ impl Number for Dual {
     }
     fn value(self) -> f64 {
         self.value
+    }
+    fn sqrt(self) -> Self {
+        let root = self.value.sqrt();
+        // Where the root is zero it has no slope; a number that is always zero has none either.
+        let slope = if root > 0.0 {
+            0.5 * self.slope / root
+        } else {
+            0.0
+        };
+        Dual { value: root, slope }
     }
 }
 

@@ -21,8 +21,8 @@ mod stack;
 mod wafer;
 
 pub use file::{
-    Aim, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile, Spanned,
-    Structure, Target, Tune, Variable, Varied, Within,
+    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile,
+    Spanned, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
 };
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};

@@ -1,7 +1,7 @@
 //! A stack at given values of its variables, solved and set against the aims.
 
 use super::aim::{Aim, Goal};
-use crate::models::{ConductionOperator, Unsuitable};
+use crate::models::{BandOperator, Unsuitable};
 use crate::numerics::sensitivity::{
     Change, PairSlope, moment, moment_slope, pair_slopes, value_slope,
 };
@@ -113,7 +113,7 @@ impl Task {
         stack: Stack,
         characters: Option<&Characters>,
     ) -> Result<Design, (usize, Unsuitable)> {
-        let operator = ConductionOperator::new(&stack, self.model)?;
+        let operator = BandOperator::conduction(&stack, self.model)?;
         let subbands = subbands::solve(&operator, self.count, self.accuracy);
         let own: Vec<Vec<f64>> = match characters {
             Some(_) => subbands::layer_envelopes(&subbands, &stack),
@@ -163,7 +163,7 @@ impl Task {
     /// The slopes of the aims' values: one row per aim, one column per variable, per inner unit of the variable.
     pub fn value_slopes(&self, design: &Design) -> DMatrix<f64> {
         let mut slopes = DMatrix::zeros(self.aims.len(), self.variables.len());
-        let Ok(operator) = ConductionOperator::new(&design.stack, self.model) else {
+        let Ok(operator) = BandOperator::conduction(&design.stack, self.model) else {
             return slopes;
         };
         let Subbands { pencil, pairs, .. } = &design.subbands;
