@@ -2,13 +2,15 @@
 
 use super::deliver::{Exit, print};
 use super::input::Input;
-use crate::models::BandOperator;
+use crate::models::{Band, BandOperator};
 use std::path::Path;
 
 pub fn check(file: &Path) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
-    BandOperator::conduction(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    for (band, _) in Band::of(&input.structure) {
+        BandOperator::new(&input.stack, band)
+            .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    }
     let (layers, width) = (input.stack.layers.len(), input.stack.total_width_nm());
     let tuning = if input.structure.tune.is_some() {
         ", with a tune block"

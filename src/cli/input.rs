@@ -4,7 +4,7 @@ use super::deliver::{Exit, complain, show};
 use crate::diagnostics::Diagnostic;
 use crate::models::Unsuitable;
 use crate::structure::{self, Stack, Structure};
-use crate::subbands::{Hold, State, Subbands};
+use crate::subbands::{Bands, Hold, State, Subbands};
 use std::collections::BTreeSet;
 use std::fs::File;
 use std::io::Read;
@@ -74,6 +74,13 @@ impl Input {
         Exit::WrongInput
     }
 
+    /// Doubts about the solutions of all bands, of each about the states that are listed.
+    pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
+        for (band, shown) in bands.all().iter().zip(shown) {
+            self.doubt(band, *shown);
+        }
+    }
+
     /// Doubts about a solution. States of one kind, one above the other in one layer, share a message.
     pub fn doubt(&self, subbands: &Subbands, shown: usize) {
         /// Level shifts by the walls below this do not change a printed digit.
@@ -84,13 +91,20 @@ impl Input {
         let alike = |a: &State, b: &State| {
             a.hold == b.hold && (a.hold == Hold::Walls || a.layer == b.layer)
         };
+        let band = subbands.band.name().word();
+        // Holes are the other way up.
+        let (outside, raise) = if subbands.band.sign() > 0.0 {
+            ("above the lower", "raise")
+        } else {
+            ("below the higher", "lower")
+        };
         let mut first = 0;
         for group in states[..shown].chunk_by(alike) {
             let last = first + group.len();
             let (which, many) = if group.len() == 1 {
-                (format!("conduction {last}"), false)
+                (format!("{band} {last}"), false)
             } else {
-                (format!("conduction {} to {last}", first + 1), true)
+                (format!("{band} {} to {last}", first + 1), true)
             };
             first = last;
             let verb = |one: &str, several: &str| (if many { several } else { one }).to_owned();
@@ -107,7 +121,7 @@ impl Input {
             let shift_ev = group.iter().map(|s| s.wall_shift_ev).fold(0.0, f64::max);
             let words = match group[0].hold {
                 Hold::Walls => format!(
-                    "{which} ({place}) {} above the lower outer barrier edge: only the wall holds {}, {} not bound",
+                    "{which} ({place}) {} {outside} outer barrier edge: only the wall holds {}, {} not bound",
                     verb("lies", "lie"),
                     verb("it", "them"),
                     verb("it is", "they are"),
@@ -116,7 +130,7 @@ impl Input {
                     "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result"
                 ),
                 Hold::Bound if shift_ev > WALL_SHIFT_EV => format!(
-                    "the walls raise {which} ({place}) by {} {:.2} meV: make the outer layers wider",
+                    "the walls {raise} {which} ({place}) by {} {:.2} meV: make the outer layers wider",
                     verb("about", "up to about"),
                     1e3 * shift_ev
                 ),

@@ -9,3 +9,4 @@ pub mod pencil;
 pub mod polyline;
 pub mod quadrature;
 pub mod sensitivity;
+pub mod shared_points;

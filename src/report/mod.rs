@@ -1,5 +1,6 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod interband;
 mod levels;
 mod materials;
 pub mod svg;

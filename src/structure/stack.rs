@@ -308,6 +308,16 @@ impl Stack {
         faces
     }
 
+    /// The layer at a height above the bottom, in nm, with the fraction of its width that lies below. An interface belongs
+    /// to the layer above it. `None` outside of the stack.
+    pub fn layer_at(&self, z_nm: f64) -> Option<(usize, f64)> {
+        let faces = self.faces_nm();
+        let above = faces.partition_point(|face| *face <= z_nm);
+        let layer = above.checked_sub(1)?.min(self.layers.len().checked_sub(1)?);
+        let t = (z_nm - faces[layer]) / self.layers[layer].width_nm;
+        (t <= 1.0 + 1e-9).then_some((layer, t.clamp(0.0, 1.0)))
+    }
+
     /// Whether the layer has one material throughout.
     pub fn is_uniform(&self, layer: usize) -> bool {
         self.content_of(layer)

@@ -1,6 +1,7 @@
 //! Solved subbands of a stack: energies, envelopes, where they sit, and an audit of the solution.
 
 mod audit;
+mod bands;
 mod change;
 mod curves;
 mod envelope;
@@ -9,6 +10,7 @@ mod resolution;
 mod state;
 
 pub use audit::Audit;
+pub use bands::{Bands, Place};
 pub use change::change;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
