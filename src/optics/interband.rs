@@ -58,7 +58,7 @@ pub enum Alignment {
 }
 
 /// An overlap whose square is below this is suppressed, below that forbidden.
-const SUPPRESSED: f64 = 1e-2;
+const SUPPRESSED: f64 = 0.1;
 const FORBIDDEN: f64 = 1e-8;
 /// Points of the exciton's form factor are in stretches no longer than this, or than this part of the stack: the kink of
 /// exp(−q|z − z′|) at z = z′ then costs less than a µeV.
