@@ -262,8 +262,8 @@ impl Levels {
             .unwrap_or_default();
         let holes = self.bound_hole_states.as_ref().map(|holes| {
             format!(
-                " Heavy-hole states above the higher outer barrier edge: {}; light-hole states above theirs: {}. \
-                 Hole masses in the plane: diagonal approximation.",
+                " Of heavy holes {} and of light holes {} lie above the higher one of their own; holes are counted downwards. \
+                 Hole masses in the plane: diagonal approximation, 1/(γ1 + γ2) and 1/(γ1 − γ2).",
                 holes.heavy, holes.light
             )
         });

@@ -267,6 +267,11 @@ fn notes(outcome: &Outcome) -> Vec<String> {
 impl Report for Tuning {
     fn text(&self) -> String {
         let digits = |value: f64| significant(value, 5);
+        let electrons_only = self.aims.iter().all(|a| {
+            [&a.from, &a.to]
+                .iter()
+                .all(|name| name.starts_with("conduction "))
+        });
         let snapped = self.aims.iter().any(|a| a.continuous.is_some());
         let mut header = vec!["from", "to", "aim", "target", "before"];
         if snapped {
@@ -279,7 +284,10 @@ impl Report for Tuning {
             self.aims
                 .iter()
                 .map(|a| {
-                    let number = |name: &str| name.trim_start_matches("conduction ").to_owned();
+                    let number = |name: &str| match electrons_only {
+                        true => name.trim_start_matches("conduction ").to_owned(),
+                        false => name.to_owned(),
+                    };
                     let mut row = vec![
                         number(&a.from),
                         number(&a.to),
