@@ -455,6 +455,29 @@ fn a_staggered_pair_is_named() {
     assert!(number(exciton, "binding_meV") < 2.5 * rydberg_mev);
 }
 
+#[test]
+fn a_broken_gap_is_named() {
+    // The valence edge of GaSb lies 0.143 eV above the conduction edge of InAs (2001 review).
+    let bench = Bench::new();
+    bench.write(
+        "broken.yaml",
+        "substrate: GaSb\nbands: {conduction: {states: 2}, valence: {states: 3}}\nlayers:\n  \
+         - {material: AlSb, width: 10 nm}\n  - {material: InAs, width: 12 nm}\n  - {material: GaSb, width: 10 nm}\n  \
+         - {material: AlSb, width: 10 nm}\n",
+    );
+    let json = bench
+        .run(&["levels", "broken.yaml", "--format", "json"])
+        .code(0)
+        .json();
+    let first = &list(&json, "interband")[0];
+    assert_eq!(first["alignment"], "type II");
+    assert!((-143.0..0.0).contains(&number(first, "energy_meV")));
+    assert!(first["wavelength_um"].is_null());
+    assert!(json["exciton"].is_null());
+    let text = bench.run(&["levels", "broken.yaml"]).code(0).stdout;
+    assert!(text.contains("a broken gap"), "{text}");
+}
+
 const MODULATOR: &str = "substrate: GaAs
 temperature: 300 K
 field: 20 kV/cm

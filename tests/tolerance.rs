@@ -812,11 +812,15 @@ fn shifts_need_no_block() {
     assert!(said.contains("no `tolerance` block"), "{said}");
 }
 
-/// Shipped structures sample without a hitch, and the command says what it must.
+/// Shipped structures sample without a hitch, and the command says what it must. Those about light between the bands have
+/// no `tolerance` block.
 #[test]
 fn shipped_structures_have_tolerances() {
     for entry in std::fs::read_dir("structures").unwrap() {
         let path = entry.unwrap().path();
+        if std::fs::read_to_string(&path).unwrap().contains("valence:") {
+            continue;
+        }
         let run = program()
             .args(["tolerance", "--samples", "200"])
             .arg(&path)

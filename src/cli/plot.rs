@@ -10,6 +10,7 @@ use std::path::Path;
 pub fn plot(file: &Path, width: Width, output: Option<&Path>) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
+    input.without_holes("the picture shows");
     let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let states = input.structure.conduction.states;

@@ -68,9 +68,9 @@ const LONGEST_PART: f64 = 1e-3;
 const NEGLIGIBLE: f64 = 1e-12;
 
 impl Interband {
-    /// Vacuum wavelength in µm.
-    pub fn wavelength_um(&self) -> f64 {
-        HC_EV_UM / self.energy_ev
+    /// Vacuum wavelength in µm; `None` where the hole lies above the electron, in a broken gap.
+    pub fn wavelength_um(&self) -> Option<f64> {
+        (self.energy_ev > 0.0).then(|| HC_EV_UM / self.energy_ev)
     }
 }
 

@@ -26,7 +26,8 @@ struct PairRow {
     from: String,
     to: String,
     energy_meV: f64,
-    wavelength_um: f64,
+    /// `None` where the hole lies above the electron: a broken gap gives no light.
+    wavelength_um: Option<f64>,
     overlap: f64,
     te_Ep: f64,
     tm_Ep: f64,
@@ -44,7 +45,7 @@ struct ExcitonRow {
     reduced_mass: f64,
     permittivity: f64,
     photoluminescence_meV: f64,
-    photoluminescence_um: f64,
+    photoluminescence_um: Option<f64>,
 }
 
 fn selection(selection: Selection) -> &'static str {
@@ -83,9 +84,13 @@ impl Interbands {
                 selection: selection(pair.selection),
                 alignment: alignment(pair.alignment),
             });
-        let exciton = lowest_exciton(stack, bands).map(|(hole, exciton)| {
-            let electron = Place { band: 0, state: 0 };
+        let electron = Place { band: 0, state: 0 };
+        let exciton = lowest_exciton(stack, bands).and_then(|(hole, exciton)| {
             let transition_ev = bands.energy_ev(electron) - bands.energy_ev(hole);
+            // In a broken gap the two mix instead of binding.
+            (transition_ev > 0.0).then_some((hole, exciton, transition_ev))
+        });
+        let exciton = exciton.map(|(hole, exciton, transition_ev)| {
             let light_ev = transition_ev - exciton.binding_ev;
             ExcitonRow {
                 from: name(hole),
@@ -95,7 +100,7 @@ impl Interbands {
                 reduced_mass: exciton.reduced_mass_m0,
                 permittivity: exciton.permittivity,
                 photoluminescence_meV: 1e3 * light_ev,
-                photoluminescence_um: HC_EV_UM / light_ev,
+                photoluminescence_um: (light_ev > 0.0).then(|| HC_EV_UM / light_ev),
             }
         });
         Interbands {
@@ -127,7 +132,8 @@ impl Interbands {
                         pair.from.clone(),
                         pair.to.clone(),
                         format!("{:.2}", pair.energy_meV),
-                        significant(pair.wavelength_um, 5),
+                        pair.wavelength_um
+                            .map_or("-".to_owned(), |um| significant(um, 5)),
                         format!("{:.3}", pair.overlap),
                         format!("{:.3}", pair.te_Ep),
                         format!("{:.3}", pair.tm_Ep),
@@ -140,7 +146,7 @@ impl Interbands {
         let exciton = match &self.exciton {
             Some(e) => format!(
                 "Exciton of {} and {}: binding {:.1} meV, Bohr radius {:.1} nm (reduced mass {}, permittivity {}).\n\
-                 Photoluminescence estimate, transition less binding: {:.1} meV, {} µm.\n\
+                 Photoluminescence estimate, transition less binding: {:.1} meV, {}.\n\
                  Exciton: {EXCITON_DEFINITION}.\n",
                 e.from,
                 e.to,
@@ -149,7 +155,8 @@ impl Interbands {
                 significant(e.reduced_mass, 3),
                 significant(e.permittivity, 3),
                 e.photoluminescence_meV,
-                significant(e.photoluminescence_um, 4),
+                e.photoluminescence_um
+                    .map_or("no light".to_owned(), |um| significant(um, 4) + " µm"),
             ),
             None => {
                 "No exciton: the pair does not bind, or a material has no `permittivity_static`.\n"
