@@ -159,11 +159,18 @@ impl Interbands {
                     .map_or("no light".to_owned(), |um| significant(um, 4) + " µm"),
             ),
             None => {
-                "No exciton: the pair does not bind, or a material has no `permittivity_static`.\n"
+                "No exciton: the pair does not bind, the gap is broken, or a material has no `permittivity_static`.\n"
                     .to_owned()
             }
         };
-        format!("{pairs}\nTE, TM: {MOMENTUM_DEFINITION}.\n{exciton}")
+        let dark = |pair: &PairRow| pair.wavelength_um.is_none();
+        let broken = if self.interband.iter().any(dark) {
+            "Where the energy is negative, the hole lies above the electron: a broken gap, in which the two mix. Bands \
+             that are solved apart do not show that.\n"
+        } else {
+            ""
+        };
+        format!("{pairs}\nTE, TM: {MOMENTUM_DEFINITION}.\n{broken}{exciton}")
     }
 
     pub fn csv(&self) -> Result<String, csv::Error> {
