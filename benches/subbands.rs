@@ -1,6 +1,7 @@
 //! Speed of a solve beside a plain reference in the same run: central differences on a grid aligned with every
 //! interface, bisection with Sturm counts, inverse iteration. Both solve a five-layer double well in a field, four states
-//! with all dipoles, at 1 µeV. `cargo bench`.
+//! with all dipoles, at 1 µeV; the reference once on the coarsest grid that is within 1 µeV, and once on the coarsest that
+//! is as exact as the elements turn out to be. `cargo bench --bench subbands`.
 
 use criterion::{Criterion, criterion_group, criterion_main};
 use std::hint::black_box;
@@ -185,22 +186,30 @@ fn bench(c: &mut Criterion) {
             .map(|(e, x)| (e - x.value).abs())
             .fold(0.0, f64::max)
     };
-    let per_nm = (10..)
-        .step_by(5)
-        .find(|&n| worst(&central_differences(n).0) <= ACCURACY_EV)
-        .expect("some grid is fine enough");
+    let coarsest = |error_ev: f64| {
+        (10..)
+            .step_by(5)
+            .find(|&n| worst(&central_differences(n).0) <= error_ev)
+            .expect("some grid is fine enough")
+    };
     let own: Vec<f64> = ours().0.pairs.iter().map(|p| p.value).collect();
+    let (per_nm, as_exact_per_nm) = (coarsest(ACCURACY_EV), coarsest(worst(&own)));
     println!(
-        "worst error: elements {:.1e} eV with {} unknowns, central differences {:.1e} eV with {} unknowns",
+        "worst error: elements {:.1e} eV with {} unknowns; central differences {:.1e} eV with {}, {:.1e} eV with {}",
         worst(&own),
         ours().0.pencil.size(),
         worst(&central_differences(per_nm).0),
-        33 * per_nm - 1
+        33 * per_nm - 1,
+        worst(&central_differences(as_exact_per_nm).0),
+        33 * as_exact_per_nm - 1,
     );
     let mut group = c.benchmark_group("double well in a field, 1 µeV");
     group.bench_function("elements", |b| b.iter(|| black_box(ours())));
-    group.bench_function("central differences, bisection, inverse iteration", |b| {
+    group.bench_function("central differences within 1 µeV", |b| {
         b.iter(|| black_box(central_differences(black_box(per_nm))))
+    });
+    group.bench_function("central differences as exact as the elements", |b| {
+        b.iter(|| black_box(central_differences(black_box(as_exact_per_nm))))
     });
     group.finish();
 
@@ -227,18 +236,37 @@ fn bench(c: &mut Criterion) {
     }
     group.finish();
 
-    let text = double_well(STATES)
-        + "tune:\n  vary:\n    - {layer: layer 2, width: [4 nm, 8 nm]}\n  aims:\n    - {from: conduction 1, to: conduction 2, energy: 40 meV}\n";
-    let (file, _) = structure::read(&text.replace(
-        "{material: Well, width: 6 nm}",
-        "{name: layer 2, material: Well, width: 6 nm}",
-    ));
-    let file = file.expect("the file is right");
+    let (file, problems) = structure::read(COUPLED_WELLS);
+    let file = file.unwrap_or_else(|| panic!("{problems:?}"));
     let stack = file.stack().expect("the stack is right");
-    c.bench_function("tune one width", |b| {
-        b.iter(|| black_box(tune::tune(&file, &stack, accuracy, &|_| {}).is_ok()))
-    });
+    c.bench_function(
+        "tune three widths and a composition to two transitions",
+        |b| b.iter(|| black_box(tune::tune(&file, &stack, Accuracy::default(), &|_| {}).is_ok())),
+    );
 }
+
+const COUPLED_WELLS: &str = "
+substrate: GaAs
+temperature: 77 K
+field: 35 kV/cm
+bands: {conduction: {model: energy-dependent, states: 3}}
+layers:
+  - {material: Al0.33Ga0.67As, width: 20 nm}
+  - {name: wide well, material: GaAs, width: 7.2 nm}
+  - {name: tunnel barrier, material: Al0.33Ga0.67As, width: 1.4 nm}
+  - {name: narrow well, material: GaAs, width: 5.0 nm}
+  - {material: Al0.33Ga0.67As, width: 20 nm}
+tune:
+  vary:
+    - {layer: wide well, width: [5 nm, 9 nm]}
+    - {layer: tunnel barrier, width: [0.8 nm, 2.5 nm]}
+    - {layer: narrow well, width: [3 nm, 7 nm]}
+    - {layer: tunnel barrier, fraction: Al, between: [0.2, 0.45]}
+  aims:
+    - {from: conduction 2, to: conduction 3, wavelength: 10.3 µm}
+    - {from: conduction 1, to: conduction 2, energy: 36 meV}
+  snap: monolayer
+";
 
 criterion_group!(benches, bench);
 criterion_main!(benches);

@@ -13,6 +13,10 @@ pub mod materials;
 
 pub mod structure;
 
+pub mod epitaxy;
+
+pub mod growth;
+
 pub mod models;
 
 pub mod subbands;

@@ -17,6 +17,10 @@ pub enum Dimension {
     VolumeDensity,
     SheetDensity,
     Stiffness,
+    /// Growth counted in monolayers per time; the inner unit is the monolayer per second.
+    MonolayerRate,
+    /// Growth as a length per time; the inner unit is nm/s.
+    LengthRate,
     /// A part of the quantity that is spoken of; 1 % is 0.01 inside.
     Percentage,
 }
@@ -33,6 +37,8 @@ impl Dimension {
             Dimension::VolumeDensity => "a density per volume",
             Dimension::SheetDensity => "a density per area",
             Dimension::Stiffness => "an elastic constant",
+            Dimension::MonolayerRate => "a growth rate in monolayers",
+            Dimension::LengthRate => "a growth rate",
             Dimension::Percentage => "a percentage",
         }
     }
@@ -48,6 +54,8 @@ impl Dimension {
             Dimension::VolumeDensity => "5e17 cm^-3",
             Dimension::SheetDensity => "5e11 cm^-2",
             Dimension::Stiffness => "122.1 GPa",
+            Dimension::MonolayerRate => "0.70 ML/s",
+            Dimension::LengthRate => "1.0 µm/h",
             Dimension::Percentage => "0.7 %",
         }
     }
@@ -113,6 +121,10 @@ pub static UNITS: &[Unit] = &[
     unit!("m^-2", SheetDensity, 1e-4, "m-2", "m⁻²", "1/m^2"),
     unit!("GPa", Stiffness, 1.0),
     unit!("kbar", Stiffness, 0.1),
+    unit!("ML/s", MonolayerRate, 1.0),
+    unit!("nm/s", LengthRate, 1.0),
+    unit!("Å/s", LengthRate, 0.1, "A/s", "Å/s"),
+    unit!("µm/h", LengthRate, 1.0 / 3.6, "μm/h", "um/h"),
     unit!("%", Percentage, 1e-2),
 ];
 

@@ -173,7 +173,7 @@ fn poeschl_teller_well() {
     let (depth, a, mass) = (0.3, 4.0, 0.067);
     let mesh = Mesh::new(&[120.0], &[40], 12);
     let frame = mesh.clone();
-    let pencil = Pencil::new(mesh, |element, q| {
+    let pencil = Pencil::new(mesh, |_, element, q| {
         let z = frame.position(element, q) - 60.0;
         Coefficient {
             stiffness: HBAR2_OVER_2M0 / mass,

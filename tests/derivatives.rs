@@ -78,6 +78,7 @@ fn task(case: &Case) -> Task {
                 by_character: false,
             })
             .collect(),
+        keeps: Vec::new(),
         accuracy: ACCURACY,
         stack,
     }

@@ -610,6 +610,7 @@ fn slopes_between_bands_are_exact() {
             aim(level(HeavyHole, 2), level(HeavyHole, 1), energy),
             aim(level(HeavyHole, 1), level(HeavyHole, 2), dipole),
         ],
+        keeps: Vec::new(),
         accuracy: Accuracy {
             tolerance_ev: 1e-10,
         },

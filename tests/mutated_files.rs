@@ -32,6 +32,12 @@ tune:
     - {from: conduction 1, to: conduction 2, wavelength: 8.6 um, within: 20 nm}
     - {from: conduction 2, to: conduction 3, maximize: dipole, weight: 0.1}
   snap: monolayer
+growth:
+  cells:
+    - {name: In 1, element: In, rate: 0.53 ML/s, of: InAs, on: InP}
+    - {element: Ga, rate: 0.3 um/h}
+    - {element: Al, rate: 0.5 Å/s}
+  dopants: {donors: Si, acceptors: Be}
 ";
 
 /// Reads whatever bytes there are, as the program does.
@@ -60,6 +66,10 @@ fn read(bytes: &[u8]) -> Result<(), TestCaseError> {
     if let Some(structure) = structure {
         let stack = structure.stack();
         prop_assert!(stack.is_ok());
+        if let (Ok(stack), Some(_)) = (stack, &structure.growth) {
+            // What a growth needs was found out when the file was read.
+            prop_assert!(wellwright::growth::plan(&structure, &stack).is_ok());
+        }
     }
     Ok(())
 }

@@ -590,7 +590,7 @@ fn wells(table: &mut Table) {
         .device(
             "coupled wells, 170/17/120 Å (m)",
             "library, parabolic",
-            "et al., Phys. Rev. Lett. 66, 201 (1991)",
+            "Leo et al., Phys. Rev. Lett. 66, 201 (1991)",
         )
         .row("oscillation at resonance", 1.3, period_ps, 0.13, "ps");
 }

@@ -321,10 +321,6 @@ fn parts_that_are_not_available() {
         &with("bands: {conducton: {states: 4}}"),
         &[(1, 9, &["did you mean `conduction`?"])],
     );
-    doubts(
-        &with("growth: {rates: {Ga: 0.7 ML/s}}"),
-        &[(1, &["`growth` is not used"])],
-    );
 }
 
 #[test]
@@ -663,4 +659,18 @@ fn bombs_are_refused() {
             problem.render("bomb.yaml", &text, false);
         }
     }
+}
+
+#[test]
+fn doping_without_a_species() {
+    doubts(
+        "substrate: GaAs\nlayers:\n  - {name: well, material: GaAs, width: 5 nm, donors: 1e17 cm^-3}\ngrowth: {rates: {Ga: 1 ML/s}}\n",
+        &[
+            (3, &["layer `well` is doped", "band bending"]),
+            (
+                4,
+                &["`growth` names no species", "add `dopants: {donors: Si}`"],
+            ),
+        ],
+    );
 }

@@ -33,6 +33,17 @@ pub enum Command {
         #[arg(short, long, value_name = "FILE")]
         output: Vec<PathBuf>,
     },
+    /// Print the growth sheet of a stack with a `growth` block
+    Sheet {
+        /// Structure file
+        file: PathBuf,
+        /// Form of the sheet; a table, or a page when the output's name ends in .html
+        #[arg(long, value_enum)]
+        format: Option<SheetFormat>,
+        /// Write the sheet to a file instead of the terminal
+        #[arg(short, long, value_name = "FILE")]
+        output: Option<PathBuf>,
+    },
     /// How far the transitions move with everything that cannot be held exactly, and the share of wafers inside the
     /// windows of the file's `tolerance` block
     Tolerance {
@@ -47,15 +58,21 @@ pub enum Command {
         #[command(flatten)]
         output: Output,
     },
-    /// Read and check a structure file without solving it
+    /// Read and check a structure file without solving it: strain and band edges of its layers, critical thicknesses,
+    /// expected x-ray peaks
     Check {
         /// Structure file
         file: PathBuf,
+        #[command(flatten)]
+        output: Output,
     },
     /// Draw the band diagram with the squared envelopes as SVG
     Plot {
         /// Structure file
         file: PathBuf,
+        /// What to draw of the transition that windows or aims name
+        #[arg(long, value_enum, default_value_t = Picture::Bands)]
+        what: Picture,
         /// Printed width: a page (170 mm) or a column of a journal (86 mm)
         #[arg(long, value_enum, default_value_t = PlotWidth::Page)]
         width: PlotWidth,
@@ -91,6 +108,25 @@ pub enum Format {
     Table,
     Csv,
     Json,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum SheetFormat {
+    Table,
+    Csv,
+    Json,
+    /// One page that holds everything and prints on A4
+    Html,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Picture {
+    /// Band edge with squared envelopes, levels and transitions
+    Bands,
+    /// How far a transition moves with each cause
+    Sensitivities,
+    /// The sampled distribution of a transition with its window
+    Yield,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]

@@ -1,24 +1,24 @@
 //! `check`: read a file without solving it.
 
-use super::deliver::{Exit, print};
+use super::arguments::Output;
+use super::deliver::{Exit, check_output, deliver};
 use super::input::Input;
 use crate::models::{Band, BandOperator};
+use crate::report::Check;
 use std::path::Path;
 
-pub fn check(file: &Path) -> Result<Exit, Exit> {
+pub fn check(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
+    check_output(output.output.as_deref(), file)?;
     for (band, _) in Band::of(&input.structure) {
         BandOperator::new(&input.stack, band)
             .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     }
-    let (layers, width) = (input.stack.layers.len(), input.stack.total_width_nm());
-    let tuning = if input.structure.tune.is_some() {
-        ", with a tune block"
-    } else {
-        ""
-    };
-    print(&format!(
-        "{}: {layers} layers, {width:.2} nm{tuning}; no mistakes\n",
-        input.name
-    ))
+    input.doubt_growth();
+    deliver(
+        &Check::new(&input.name, &input.structure, &input.stack),
+        output.format,
+        output.output.as_deref(),
+        file,
+    )
 }

@@ -2,6 +2,7 @@
 
 use super::deliver::{Exit, complain, show};
 use crate::diagnostics::Diagnostic;
+use crate::epitaxy;
 use crate::models::Unsuitable;
 use crate::structure::{self, Stack, Structure};
 use crate::subbands::{Bands, Hold, State, Subbands};
@@ -87,6 +88,13 @@ impl Input {
     pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
         for (band, shown) in bands.all().iter().zip(shown) {
             self.doubt(band, *shown);
+        }
+    }
+
+    /// Doubts about whether the layers stay coherent.
+    pub fn doubt_growth(&self) {
+        for problem in epitaxy::doubts(&self.structure, &self.stack) {
+            show(&problem, &self.name, &self.text);
         }
     }
 

@@ -19,6 +19,7 @@ pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let shown = bands.asked_for(&input.structure);
     input.doubt_all(&bands, &shown);
+    input.doubt_growth();
     deliver(
         &Levels::new(&input.structure, &input.stack, &bands, &shown),
         output.format,

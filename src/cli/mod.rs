@@ -10,6 +10,7 @@ mod output;
 mod plot;
 mod progress;
 mod run;
+mod sheet;
 mod tolerance;
 mod tune;
 

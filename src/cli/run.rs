@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, levels, materials, plot, tolerance, tune};
+use super::{check, levels, materials, plot, sheet, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -13,18 +13,24 @@ pub fn run(arguments: Arguments) -> Exit {
             format,
             output,
         } => tune::tune(&file, format, &output),
+        Command::Sheet {
+            file,
+            format,
+            output,
+        } => sheet::sheet(&file, format, output.as_deref()),
         Command::Tolerance {
             file,
             samples,
             threads,
             output,
         } => tolerance::tolerance(&file, samples, threads, &output),
-        Command::Check { file } => check::check(&file),
+        Command::Check { file, output } => check::check(&file, &output),
         Command::Plot {
             file,
+            what,
             width,
             output,
-        } => plot::plot(&file, width.into(), output.as_deref()),
+        } => plot::plot(&file, what, width.into(), output.as_deref()),
         Command::Materials {
             formula,
             temperature,

@@ -7,7 +7,7 @@ use super::progress::SearchProgress;
 use crate::diagnostics::Diagnostic;
 use crate::report::Tolerances;
 use crate::subbands::Accuracy;
-use crate::tolerance::{self, ToleranceError};
+use crate::tolerance::{self, Outcome, ToleranceError};
 use std::path::Path;
 
 pub fn tolerance(
@@ -24,6 +24,22 @@ pub fn tolerance(
             .expected("`tolerance` with spreads such as `rate: 0.7 %`");
         show(&doubt, &input.name, &input.text);
     }
+    let outcome = worked_out(&input, samples, threads)?;
+    input.doubt(&outcome.abrupt, outcome.levels_ev.len());
+    deliver(
+        &Tolerances::new(&input.structure, &input.stack, &outcome),
+        output.format,
+        output.output.as_deref(),
+        file,
+    )
+}
+
+/// The tolerances of a file, with progress shown and mistakes told.
+pub fn worked_out(
+    input: &Input,
+    samples: Option<u32>,
+    threads: Option<u16>,
+) -> Result<Outcome, Exit> {
     let pool = rayon::ThreadPoolBuilder::new()
         .num_threads(threads.map_or(0, usize::from))
         .build()
@@ -42,7 +58,7 @@ pub fn tolerance(
         )
     });
     drop(progress);
-    let outcome = outcome.map_err(|error| match &error {
+    outcome.map_err(|error| match &error {
         ToleranceError::Unsuitable { layer, reason } => input.unsuitable(*layer, reason),
         ToleranceError::Interface { .. } | ToleranceError::NoLayer => {
             let mut problem = Diagnostic::error(error.to_string());
@@ -61,12 +77,5 @@ pub fn tolerance(
             );
             Exit::NotPossible
         }
-    })?;
-    input.doubt(&outcome.abrupt, outcome.levels_ev.len());
-    deliver(
-        &Tolerances::new(&input.structure, &input.stack, &outcome),
-        output.format,
-        output.output.as_deref(),
-        file,
-    )
+    })
 }

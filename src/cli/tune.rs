@@ -42,7 +42,10 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
             show(&problem, &input.name, &input.text);
             Exit::WrongInput
         }
-        TuneError::Snap(_) | TuneError::Unsolved => {
+        TuneError::Snap(_)
+        | TuneError::Unsolved
+        | TuneError::NotGrowable { .. }
+        | TuneError::TooManyChoices { .. } => {
             show(
                 &Diagnostic::error(error.to_string()),
                 &input.name,
@@ -66,6 +69,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
     let report = Tuning::new(&tuned.structure, &outcome, text.clone());
     let listed = Tuning::listed(&tuned.structure, &outcome);
     tuned.doubt_all(&outcome.after.bands, &listed);
+    tuned.doubt_growth();
     if let Some(path) = structures.first() {
         write(path, &text, file)?;
     }
@@ -75,7 +79,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
         reports.first().map(|path| path.as_path()),
         file,
     )?;
-    Ok(if outcome.met.iter().all(|met| *met) {
+    Ok(if outcome.is_reached() {
         Exit::Done
     } else {
         Exit::NotPossible

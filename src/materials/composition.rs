@@ -15,7 +15,7 @@ pub struct Composition<T = f64> {
 }
 
 /// Decimals of a printed fraction: 10⁻⁵ of the group-III flux is far below what a growth chamber holds.
-const PRINTED_PARTS: i64 = 100_000;
+const PRINTED_DECIMALS: usize = 5;
 
 impl Composition {
     /// Takes fractions that add up to 1 but for rounding, and lets the largest of each sublattice absorb the rounding.
@@ -55,21 +55,28 @@ impl Composition {
     /// The formula with up to five decimals, its printed fractions adding up to exactly 1; elements whose fraction
     /// prints as zero are left out.
     pub fn formula(&self) -> String {
+        self.formula_to(PRINTED_DECIMALS)
+    }
+
+    /// As [`formula`](Self::formula), with up to `decimals` (at most 9) decimals.
+    pub fn formula_to(&self, decimals: usize) -> String {
+        let decimals = decimals.min(9);
+        let printed_parts = 10_i64.pow(decimals as u32);
         let mut text = String::new();
         for sublattice in [Sublattice::GroupThree, Sublattice::GroupFive] {
             let mut parts: Vec<(Element, i64)> = self
                 .on(sublattice)
-                .map(|e| (e, (self.fraction(e) * PRINTED_PARTS as f64).round() as i64))
+                .map(|e| (e, (self.fraction(e) * printed_parts as f64).round() as i64))
                 .collect();
-            let excess = parts.iter().map(|(_, n)| n).sum::<i64>() - PRINTED_PARTS;
+            let excess = parts.iter().map(|(_, n)| n).sum::<i64>() - printed_parts;
             if let Some((_, largest)) = parts.iter_mut().max_by_key(|(_, n)| *n) {
                 *largest -= excess;
             }
             for (element, parts) in parts.into_iter().filter(|(_, n)| *n > 0) {
                 text.push_str(element.symbol());
-                if parts != PRINTED_PARTS {
-                    let decimals = format!("0.{parts:05}");
-                    text.push_str(decimals.trim_end_matches('0'));
+                if parts != printed_parts {
+                    let fraction = format!("0.{parts:0decimals$}");
+                    text.push_str(fraction.trim_end_matches('0'));
                 }
             }
         }
@@ -109,6 +116,19 @@ impl Composition {
         self.fractions[element.index()] = fraction;
         self.fractions[host.index()] = (1.0 - self.sum_without(host)).max(0.0);
         Ok(())
+    }
+
+    /// The crystal with other fractions of Al, Ga and In, which add up to 1; group V stays.
+    pub fn with_group_three(&self, fractions: [f64; 3]) -> Composition {
+        let three = [Element::Al, Element::Ga, Element::In];
+        let held = three.iter().zip(fractions).filter(|(_, f)| *f > 0.0);
+        let mut elements: Vec<Element> = held.map(|(element, _)| *element).collect();
+        elements.extend(self.on(Sublattice::GroupFive));
+        let mut all = self.fractions;
+        for (element, fraction) in three.iter().zip(fractions) {
+            all[element.index()] = fraction;
+        }
+        Composition::new(elements, all)
     }
 
     /// The same composition as a function of one element's fraction, its [`host`](Self::host) compensating: what is

@@ -15,6 +15,7 @@ pub trait Number:
     fn constant(value: f64) -> Self;
     /// The number without its derivative.
     fn value(self) -> f64;
+    /// The square root; of a negative number it is no number.
     fn sqrt(self) -> Self;
 }
 
@@ -26,7 +27,7 @@ impl Number for f64 {
         self
     }
     fn sqrt(self) -> Self {
-        self.sqrt()
+        f64::sqrt(self)
     }
 }
 

@@ -48,6 +48,16 @@ enum Target {
     Named,
 }
 
+impl std::fmt::Display for Substance {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Substance::Named(name) => f.write_str(name),
+            Substance::Alloy(composition) => f.write_str(&composition.formula()),
+            Substance::Family(family) => f.write_str(&family.formula()),
+        }
+    }
+}
+
 impl Library {
     /// The library as published.
     pub fn new() -> Self {

@@ -18,6 +18,7 @@
 //!    61 meV, this form by 23 and 16 meV.
 //! 4. conduction edge = valence edge + gap, on the scale whose zero is the unstrained valence edge of InSb.
 
+mod band_edges;
 mod composition;
 mod data;
 mod definition;
@@ -34,6 +35,7 @@ mod report;
 mod strain;
 mod values;
 
+pub use band_edges::{BandEdges, band_edges};
 pub use composition::Composition;
 pub use data::{Known, citation, source_keys};
 pub use definition::{Definition, DefinitionProblem, Setting};
@@ -45,5 +47,5 @@ pub use hole_edges::{HoleEdges, hole_edges};
 pub use keys::{KEYS, Key, Parameter};
 pub use library::{Library, Substance};
 pub use material::{Material, Valley};
-pub use report::{Alternative, LibraryEntry, Origin, ReportRow};
+pub use report::{Alternative, LibraryEntry, Origin, ReportRow, Selection};
 pub use strain::{Strain, monolayer_nm, strain, strained};

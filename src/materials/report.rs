@@ -1,5 +1,6 @@
 //! What the library knows, as plain rows: of one material, and of all its entries.
 
+use super::composition::Composition;
 use super::data::{self, BINARIES, Entry, Known, TERNARIES, binary_index};
 use super::element::{Element, Sublattice};
 use super::error::MaterialError;
@@ -78,6 +79,21 @@ pub struct Alternative {
     pub source: String,
     pub known: Known,
     pub note: Option<String>,
+}
+
+/// What stands at a place of the library for which published values disagree.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Selection {
+    /// The binary or ternary.
+    pub entry: &'static str,
+    pub key: &'static str,
+    /// The name of the chosen alternative; `None` for the library's own value and for one of the structure file.
+    pub chosen: Option<String>,
+    /// The key of the source.
+    pub source: String,
+    pub note: Option<String>,
+    /// The names that can be chosen.
+    pub names: Vec<String>,
 }
 
 /// A binary or ternary of the library.
@@ -225,6 +241,50 @@ impl Library {
         }
         row.origin = Origin::Interpolated { from, sources };
         Ok(())
+    }
+
+    /// What this library takes for the valence edge wherever published values disagree, of the alloys between the
+    /// binaries of a composition.
+    ///
+    /// # Errors
+    /// Only when an embedded table cannot be read.
+    pub fn offset_selections(
+        &self,
+        composition: &Composition,
+    ) -> Result<Vec<Selection>, MaterialError> {
+        let threes: Vec<Element> = composition.on(Sublattice::GroupThree).collect();
+        let fives: Vec<Element> = composition.on(Sublattice::GroupFive).collect();
+        let mut binaries = Vec::new();
+        for &three in &threes {
+            binaries.extend(fives.iter().map(|&five| binary_index(three, five)));
+        }
+        let mut found = Vec::new();
+        for (at, &a) in binaries.iter().enumerate() {
+            for &b in &binaries[at + 1..] {
+                let Ok(index) = data::ternary_between(a, b) else {
+                    continue;
+                };
+                let table = self.ternary_at(index)?;
+                let entry = table.entries.iter().find(|entry| {
+                    entry.parameter == Parameter::ValenceEdge
+                        && (!entry.alternatives.is_empty() || entry.source == STRUCTURE_FILE)
+                });
+                if let Some(entry) = entry {
+                    let chosen = entry.alternatives.iter().find(|(_, other)| {
+                        other.value == entry.value && other.source == entry.source
+                    });
+                    found.push(Selection {
+                        entry: table.name,
+                        key: entry.parameter.key().name,
+                        chosen: chosen.map(|(name, _)| name.clone()),
+                        source: entry.source.clone(),
+                        note: entry.note.clone(),
+                        names: entry.alternatives.iter().map(|(n, _)| n.clone()).collect(),
+                    });
+                }
+            }
+        }
+        Ok(found)
     }
 
     /// Every binary and ternary of the library, binaries first.

@@ -70,7 +70,8 @@ fn product<const REACH: usize>(below: &[f64], x: &[f64]) -> f64 {
     let reach = if REACH == ANY { below.len() } else { REACH };
     let (below, x) = (&below[..reach], &x[..reach]);
     let mut sum = 0.0;
-    for d in 0..reach {
+    // The nearest is the last to be known in a back substitution: it is waited for last.
+    for d in (0..reach).rev() {
         sum += below[d] * x[d];
     }
     sum

@@ -391,7 +391,7 @@ mod tests {
 
     #[test]
     fn a_string_with_fixed_ends_has_the_squares() {
-        let pencil = Pencil::new(Mesh::new(&[1.0], &[4], 10), |_, _| uniform(1.0, 0.0));
+        let pencil = Pencil::new(Mesh::new(&[1.0], &[4], 10), |_, _, _| uniform(1.0, 0.0));
         for (k, pair) in lowest(&pencil, 6).iter().enumerate() {
             let exact = (std::f64::consts::PI * (k + 1) as f64).powi(2);
             assert!(
@@ -406,7 +406,7 @@ mod tests {
     #[test]
     fn pairs_within_rounding_are_both_found_and_orthonormal() {
         let lengths = [3.0, 1.0, 12.0, 1.0, 3.0];
-        let pencil = Pencil::new(Mesh::new(&lengths, &[3, 1, 9, 1, 3], 10), |e, _| {
+        let pencil = Pencil::new(Mesh::new(&lengths, &[3, 1, 9, 1, 3], 10), |_, e, _| {
             uniform(1.0, if e.segment % 2 == 0 { 80.0 } else { 0.0 })
         });
         let pairs = lowest(&pencil, 4);
@@ -446,7 +446,7 @@ mod tests {
             ],
             constant: [1.0, 0.0, 2.0][segment],
         };
-        let pencil = Pencil::new(mesh.clone(), |e, _| coefficient(e.segment));
+        let pencil = Pencil::new(mesh.clone(), |_, e, _| coefficient(e.segment));
         let nodes = mesh.node_count() - 2;
         let size = nodes + elements * (p + 1);
         let mass = pencil.weights();

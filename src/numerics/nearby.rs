@@ -120,7 +120,7 @@ mod tests {
 
     fn double_well(v: f64, poles: bool) -> Pencil {
         let lengths = [3.0, 1.0 + v, 0.5 - 0.3 * v, 1.1 - 0.5 * v, 3.0 + v];
-        Pencil::new(Mesh::new(&lengths, &[2, 1, 1, 1, 2], 8), |e, _| {
+        Pencil::new(Mesh::new(&lengths, &[2, 1, 1, 1, 2], 8), |_, e, _| {
             let barrier = e.segment % 2 == 0;
             let constant = if barrier { 60.0 } else { 0.0 };
             Coefficient {

@@ -92,13 +92,13 @@ pub struct Pencil {
 }
 
 impl Pencil {
-    /// Evaluates the coefficients with `at(element, local node)` and prepares the matrices.
-    pub fn new(mesh: Mesh, mut at: impl FnMut(&Element, usize) -> Coefficient) -> Pencil {
+    /// Evaluates the coefficients with `at(mesh, element, local node)` and prepares the matrices.
+    pub fn new(mesh: Mesh, mut at: impl FnMut(&Mesh, &Element, usize) -> Coefficient) -> Pencil {
         let p = mesh.order();
         let mut coefficients = Vec::with_capacity(mesh.elements.len() * (p + 1));
         for element in &mesh.elements {
             for q in 0..=p {
-                coefficients.push(at(element, q));
+                coefficients.push(at(&mesh, element, q));
             }
         }
         let size = mesh.node_count() - 2;

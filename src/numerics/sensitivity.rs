@@ -290,7 +290,7 @@ mod tests {
     /// Three segments whose middle length and whose coefficients depend on v.
     fn problem(v: f64) -> Pencil {
         let lengths = [1.0, 0.8 + v, 1.1];
-        Pencil::new(Mesh::new(&lengths, &[1, 2, 1], 10), |e, _| {
+        Pencil::new(Mesh::new(&lengths, &[1, 2, 1], 10), |_, e, _| {
             let s = e.segment as f64;
             Coefficient {
                 stiffness: 0.3 + 0.05 * s + 0.2 * v,

@@ -10,7 +10,7 @@ pub use interband::{Alignment, Interband, Selection, interband, lowest_exciton};
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0, HC_EV_UM};
 use crate::numerics::pencil::dot;
 use crate::numerics::sensitivity::moment;
-use crate::subbands::{Subbands, amplitudes};
+use crate::subbands::{Subbands, amplitudes, in_plane_mass_m0};
 
 /// A pair of subbands, `from` below `to`, numbered from 0.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -44,14 +44,16 @@ impl Transition {
 
 /// All pairs of the solved subbands, ordered by lower state, then by upper state.
 pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
-    let states = subbands.states();
+    let pairs = &subbands.pairs;
+    let masses_m0: Vec<f64> = (0..pairs.len())
+        .map(|index| in_plane_mass_m0(subbands, index))
+        .collect();
     let amplitudes = amplitudes(subbands);
     let mut list = Vec::new();
-    for from in 0..states.len() {
-        for to in from + 1..states.len() {
-            let energy_ev = states[to].energy_ev - states[from].energy_ev;
-            let dipole_nm =
-                moment(&subbands.pencil, &subbands.pairs[from], &subbands.pairs[to]).abs();
+    for from in 0..pairs.len() {
+        for to in from + 1..pairs.len() {
+            let energy_ev = pairs[to].value - pairs[from].value;
+            let dipole_nm = moment(&subbands.pencil, &pairs[from], &pairs[to]).abs();
             let oscillator_strength = energy_ev * dipole_nm * dipole_nm / HBAR2_OVER_2M0;
             list.push(Transition {
                 from,
@@ -59,7 +61,7 @@ pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
                 energy_ev,
                 dipole_nm,
                 oscillator_strength,
-                normalised_strength: oscillator_strength * states[from].in_plane_mass_m0,
+                normalised_strength: oscillator_strength * masses_m0[from],
                 overlap: dot(&amplitudes[from], &amplitudes[to]),
             });
         }

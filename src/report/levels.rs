@@ -1,6 +1,7 @@
 //! Subband and transition tables of one stack.
 
 use super::interband::Interbands;
+use super::layer_edges::LayerEdges;
 use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::models::model_name;
@@ -37,6 +38,8 @@ pub struct Levels {
     oscillator_strength_definition: &'static str,
     dipole_definition: &'static str,
     audit: AuditRow,
+    #[serde(flatten)]
+    edges: LayerEdges,
 }
 
 #[derive(Debug, Serialize)]
@@ -176,7 +179,17 @@ impl Levels {
                 states_counted: counted,
                 faults: audit.faults(),
             },
+            edges: LayerEdges::new(structure, stack),
         }
+    }
+
+    /// The edges of strained layers, and what the band offsets rest on.
+    fn edges_text(&self) -> String {
+        let mut text = self.edges.offset_lines();
+        if self.edges.are_strained() {
+            text = format!("\nStrain and band edges\n{}{text}", self.edges.text());
+        }
+        text
     }
 
     /// The two tables and the audit, without the title.
@@ -293,7 +306,7 @@ impl Report for Levels {
             .map(|t| format!("{t}\n"))
             .unwrap_or_default();
         format!(
-            "{title}{} K, field {} kV/cm, {} mass{}, {:.2} nm between walls\n\n{}",
+            "{title}{} K, field {} kV/cm, {} mass{}, {:.2} nm between walls\n\n{}{}",
             given(self.temperature_k, 4),
             given(self.field_kv_cm, 4),
             self.model,
@@ -302,7 +315,8 @@ impl Report for Levels {
                 None => String::new(),
             },
             self.width_nm,
-            self.tables()
+            self.tables(),
+            self.edges_text()
         )
     }
 
@@ -315,6 +329,10 @@ impl Report for Levels {
         if let Some(interband) = &self.interband {
             text.push('\n');
             text.push_str(&interband.csv()?);
+        }
+        if self.edges.are_strained() {
+            text.push('\n');
+            text.push_str(&csv_table(&self.edges.layers)?);
         }
         Ok(text)
     }

@@ -1,15 +1,24 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod check;
 mod interband;
+mod layer_edges;
 mod levels;
 mod materials;
+mod sheet;
+mod sheet_csv;
+mod sheet_html;
+mod sheet_text;
+mod strain;
 pub mod svg;
 mod table;
 mod tolerance;
 mod tuning;
 
+pub use check::Check;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
+pub use sheet::Sheet;
 pub use tolerance::Tolerances;
 pub use tuning::Tuning;
 
@@ -23,9 +32,28 @@ pub trait Report: Serialize {
     /// The tables as CSV, one after the other with an empty line between.
     fn csv(&self) -> Result<String, csv::Error>;
 
-    /// One JSON object.
+    /// One JSON object, its numbers to [`JSON_DIGITS`] significant digits.
     fn json(&self) -> Result<String, serde_json::Error> {
-        serde_json::to_string_pretty(self).map(|text| text + "\n")
+        let mut object = serde_json::to_value(self)?;
+        round(&mut object);
+        serde_json::to_string_pretty(&object).map(|text| text + "\n")
+    }
+}
+
+/// Enough for any use, and free of the last bits of arithmetic: 12, never 12.000000000000002.
+const JSON_DIGITS: usize = 12;
+
+fn round(value: &mut serde_json::Value) {
+    match value {
+        serde_json::Value::Array(list) => list.iter_mut().for_each(round),
+        serde_json::Value::Object(object) => object.values_mut().for_each(round),
+        serde_json::Value::Number(number) if number.is_f64() => {
+            let text = format!("{:.*e}", JSON_DIGITS - 1, number.as_f64().unwrap_or(0.0));
+            if let Some(rounded) = text.parse().ok().and_then(serde_json::Number::from_f64) {
+                *number = rounded;
+            }
+        }
+        _ => {}
     }
 }
 

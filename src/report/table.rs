@@ -26,6 +26,26 @@ pub fn table(header: &[&str], words: &[usize], rows: Vec<Vec<String>>) -> String
         .collect()
 }
 
+/// A table that stands in text as well as on a page.
+#[derive(Debug)]
+pub struct TitledTable {
+    pub title: String,
+    pub header: Vec<&'static str>,
+    /// Columns of words; the others hold numbers.
+    pub left: Vec<usize>,
+    pub rows: Vec<Vec<String>>,
+    /// A line below; empty when there is nothing to say.
+    pub note: &'static str,
+}
+
+impl TitledTable {
+    pub fn text(&self) -> String {
+        let rows = table(&self.header, &self.left, self.rows.clone());
+        let note = if self.note.is_empty() { "" } else { "\n" };
+        format!("{}\n{rows}{}{note}", self.title, self.note)
+    }
+}
+
 /// A number with `digits` significant digits, without an exponent where that reads well.
 pub fn significant(value: f64, digits: usize) -> String {
     if value == 0.0 {
@@ -46,6 +66,16 @@ pub fn significant(value: f64, digits: usize) -> String {
         text
     } else {
         format!("{value:.*e}", digits - 1)
+    }
+}
+
+/// A number with its sign and so many decimals; what rounds to zero has none.
+pub fn signed(value: f64, decimals: usize) -> String {
+    let text = format!("{value:+.decimals$}");
+    if text.chars().any(|c| c.is_ascii_digit() && c != '0') {
+        text
+    } else {
+        "0".to_owned()
     }
 }
 

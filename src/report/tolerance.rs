@@ -1,6 +1,6 @@
 //! How far transitions move, and the sampled yield.
 
-use super::table::{significant, table};
+use super::table::{given, significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
 use crate::models::model_name;
@@ -578,8 +578,8 @@ impl Report for Tolerances {
         };
         format!(
             "{title}{} K, field {} kV/cm, {} mass{interfaces}\n\n{}{}{}{}\n",
-            significant(self.temperature_k, 4),
-            significant(self.field_kv_cm, 4),
+            given(self.temperature_k, 4),
+            given(self.field_kv_cm, 4),
             self.model,
             self.shifts(),
             self.wafers(),

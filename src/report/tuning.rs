@@ -13,6 +13,7 @@ use serde::Serialize;
 pub struct Tuning {
     reached: bool,
     aims: Vec<AimRow>,
+    kept: Vec<KeptRow>,
     variables: Vec<VariableRow>,
     limits: Vec<String>,
     notes: Vec<String>,
@@ -34,6 +35,16 @@ struct AimRow {
     continuous: Option<f64>,
     after: f64,
     within: Option<f64>,
+    met: bool,
+}
+
+/// A bound on strain: a net strain, or a width in critical thicknesses.
+#[derive(Debug, Serialize)]
+struct KeptRow {
+    bound: String,
+    limit: f64,
+    before: f64,
+    after: f64,
     met: bool,
 }
 
@@ -160,8 +171,9 @@ impl Tuning {
             })
             .collect();
         Tuning {
-            reached: outcome.met.iter().all(|met| *met),
+            reached: outcome.is_reached(),
             aims,
+            kept: kept(outcome),
             variables,
             limits: limit_sentences(outcome),
             notes: notes(outcome),
@@ -184,6 +196,18 @@ fn pair(aim: &Aim) -> String {
         }
         _ => format!("{} - {}", aim.from, aim.to),
     }
+}
+
+fn kept(outcome: &Outcome) -> Vec<KeptRow> {
+    let rows = outcome.task.keeps.iter().enumerate();
+    rows.map(|(k, keep)| KeptRow {
+        bound: keep.name.clone(),
+        limit: keep.limit(),
+        before: outcome.before.kept[k],
+        after: outcome.after.kept[k],
+        met: outcome.kept[k],
+    })
+    .collect()
 }
 
 fn limit_sentences(outcome: &Outcome) -> Vec<String> {
@@ -227,6 +251,14 @@ fn limit_sentences(outcome: &Outcome) -> Vec<String> {
 fn notes(outcome: &Outcome) -> Vec<String> {
     let task = &outcome.task;
     let mut notes = Vec::new();
+    for choice in &outcome.choices {
+        let values: Vec<String> = choice.values.iter().map(|v| significant(*v, 4)).collect();
+        notes.push(format!(
+            "The {} is one of those that the cells give: {}.",
+            choice.name,
+            values.join(", ")
+        ));
+    }
     for &k in &outcome.started_outside {
         notes.push(format!(
             "The {} of the file lies outside its bounds; the search began at the nearer bound.",
@@ -262,6 +294,32 @@ fn notes(outcome: &Outcome) -> Vec<String> {
         }
     }
     notes
+}
+
+impl Tuning {
+    fn kept_text(&self) -> String {
+        let value = |v: f64| {
+            if v == 0.0 {
+                "0".to_owned()
+            } else {
+                significant(v, 3)
+            }
+        };
+        let rows = self.kept.iter().map(|row| {
+            vec![
+                row.bound.clone(),
+                value(row.limit),
+                value(row.before),
+                value(row.after),
+                if row.met { "yes" } else { "no" }.to_owned(),
+            ]
+        });
+        table(
+            &["kept", "limit", "before", "after", "met"],
+            &[0, 4],
+            rows.collect(),
+        )
+    }
 }
 
 impl Report for Tuning {
@@ -340,12 +398,18 @@ impl Report for Tuning {
         let mut text = String::new();
         text.push_str(if self.reached {
             "All aims are met.\n\n"
+        } else if self.aims.iter().all(|aim| aim.met) {
+            "All aims are met, but not within the bounds that were to be kept; this is the nearest design.\n\n"
         } else {
             "Not all aims can be met; this is the nearest design.\n\n"
         });
         text.push_str(&aims);
         text.push('\n');
         text.push_str(&variables);
+        if !self.kept.is_empty() {
+            text.push('\n');
+            text.push_str(&self.kept_text());
+        }
         for sentence in self.limits.iter().chain(&self.notes) {
             text.push('\n');
             text.push_str(sentence);
@@ -357,11 +421,11 @@ impl Report for Tuning {
     }
 
     fn csv(&self) -> Result<String, csv::Error> {
-        Ok(format!(
-            "{}\n{}\n{}",
-            csv_table(&self.aims)?,
-            csv_table(&self.variables)?,
-            self.result.csv()?
-        ))
+        let mut tables = vec![csv_table(&self.aims)?];
+        if !self.kept.is_empty() {
+            tables.push(csv_table(&self.kept)?);
+        }
+        tables.extend([csv_table(&self.variables)?, self.result.csv()?]);
+        Ok(tables.join("\n"))
     }
 }

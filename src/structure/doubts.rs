@@ -220,6 +220,7 @@ fn of_variable(
                 ));
             }
         }
+        Varied::FractionOfCells { .. } => {}
         Varied::Field { bounds_v_per_nm } => {
             found.extend(outside(
                 "the field".to_owned(),

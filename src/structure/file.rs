@@ -1,6 +1,7 @@
 //! What a structure file says, checked, with the places it was read from.
 
 use super::document::Node;
+use super::growth::Growth;
 use super::rewrite::FreeLine;
 use super::spreads::Tolerance;
 use crate::materials::{Element, Library, Substance};
@@ -47,6 +48,7 @@ pub struct Structure {
     /// How the entries follow one another, bottom first.
     pub sequence: Vec<Item>,
     pub tune: Option<Tune>,
+    pub growth: Option<Growth>,
     pub tolerance: Option<Tolerance>,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
@@ -120,6 +122,8 @@ pub enum Profile {
 pub struct Tune {
     pub vary: Vec<Variable>,
     pub aims: Vec<Aim>,
+    /// What the layers must keep to meanwhile.
+    pub keep: Vec<Keep>,
     /// Whether the varied widths are to end in whole monolayers.
     pub snap_to_monolayers: bool,
 }
@@ -146,8 +150,30 @@ pub enum Varied {
         element: Element,
         bounds: [f64; 2],
     },
+    /// As `Fraction`, with one of the values that the cells of `growth` give; the layer holds two group-III elements.
+    FractionOfCells { entry: usize, element: Element },
     /// The field.
     Field { bounds_v_per_nm: [f64; 2] },
+}
+
+/// A bound on strain that tuning keeps to.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Keep {
+    pub bound: StrainBound,
+    pub span: Range<usize>,
+}
+
+/// See [`Keep`].
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum StrainBound {
+    /// Layers together pull neither way at the substrate: their net strain stays within a number.
+    Balanced {
+        /// The entries from one to another, the lower first; without, the period of the only repeat, or all layers.
+        range: Option<(usize, usize)>,
+        within: f64,
+    },
+    /// A layer, or each one, is no thicker than its critical thickness.
+    BelowCritical { entry: Option<usize> },
 }
 
 /// One aim of tuning: a property of the transition between two levels.

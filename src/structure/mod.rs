@@ -9,8 +9,11 @@ mod doubts;
 mod fields;
 mod file;
 mod grade;
+mod growth;
 mod read;
 mod read_aims;
+mod read_growth;
+mod read_keep;
 mod read_layers;
 mod read_materials;
 mod read_tolerance;
@@ -18,12 +21,14 @@ mod read_tune;
 mod rewrite;
 mod spreads;
 mod stack;
+mod temperature;
 mod wafer;
 
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, LayerEntry, Level, Profile,
-    Spanned, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
+    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile,
+    Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
 };
+pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};
 pub use spreads::{Grading, Radial, Tolerance, Window};

@@ -5,7 +5,7 @@ use super::fields::{Checker, Fields, Limits};
 use super::file::{BandName, ConductionBand, ConductionModel, Structure, ValenceBand};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
-use super::{read_materials, read_tolerance, read_tune};
+use super::{read_growth, read_materials, read_tolerance, read_tune};
 use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
@@ -22,8 +22,6 @@ const KEYS: [&str; 11] = [
     "growth",
     "tolerance",
 ];
-/// Parts of the format that other commands will read one day.
-const UNREAD: [&str; 1] = ["growth"];
 const TEMPERATURE_LIMITS: Limits =
     super::fields::between(0.0, 1000.0, "a temperature from 0 K to 1000 K");
 const DEFAULT_TEMPERATURE_K: f64 = 300.0;
@@ -54,7 +52,12 @@ pub fn read(text: &str) -> (Option<Structure>, Vec<Diagnostic>) {
     let structure = structure.filter(|_| !wrong(&problems));
     if let Some(structure) = &structure {
         match structure.stack() {
-            Ok(stack) => problems.extend(super::doubts::doubts(structure, &stack)),
+            Ok(stack) => {
+                problems.extend(super::doubts::doubts(structure, &stack));
+                if let Some(growth) = &structure.growth {
+                    problems.extend(read_growth::of_stack(growth, structure, &stack));
+                }
+            }
             Err(errors) => problems.extend(errors),
         }
     }
@@ -130,16 +133,30 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let tune = fields
         .get("tune")
         .and_then(|node| read_tune::tune(checker, node, entries, solved));
+    let growth = fields.get("growth").map(|node| {
+        if !fields.has("substrate") {
+            checker.report(
+                Diagnostic::error("`growth` needs a substrate, on which monolayers are counted")
+                    .at(key_span(root, "growth").unwrap_or_default())
+                    .expected("a line such as `substrate: GaAs` at the top of the file"),
+            );
+            return None;
+        }
+        let chamber = read_growth::Chamber {
+            known: &known,
+            substrate: substrate.as_ref().and_then(Option::as_ref),
+            entries,
+        };
+        read_growth::growth(checker, node, &chamber)
+    });
+    if let Some(tune) = &tune
+        && !fields.has("growth")
+    {
+        read_growth::needed_by(checker, tune);
+    }
     let tolerance = fields
         .get("tolerance")
         .and_then(|node| read_tolerance::tolerance(checker, node));
-    for key in UNREAD {
-        if let Some(place) = key_span(root, key) {
-            checker.report(
-                Diagnostic::warning(format!("`{key}` is not used by this version")).at(place),
-            );
-        }
-    }
     let layers = layers?;
     Some(Structure {
         title,
@@ -157,6 +174,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
             .collect::<Option<_>>()?,
         sequence: layers.sequence,
         tune,
+        growth: settled(growth)?,
         tolerance,
         field_line: free_line(checker.text, root),
     })

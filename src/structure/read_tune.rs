@@ -4,9 +4,10 @@ use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Fields, Limits, between, one_of};
 use super::file::{BandName, LayerEntry, Tune, Variable, Varied};
 use super::read_aims;
+use super::read_keep;
 use super::read_layers::{FIELD_LIMITS, WIDTH_LIMITS};
 use crate::diagnostics::{Diagnostic, probably_meant};
-use crate::materials::{Element, MaterialError, Substance};
+use crate::materials::{Element, MaterialError, Sublattice, Substance};
 use crate::units::{self, Dimension, Quantity};
 
 /// The highest level that can be asked for; far more than any well holds.
@@ -24,7 +25,7 @@ pub(super) fn tune(
     entries: &[(Option<String>, Option<LayerEntry>)],
     solved: &[BandName],
 ) -> Option<Tune> {
-    let fields = checker.fields(node, "`tune`", &["vary", "aims", "snap"])?;
+    let fields = checker.fields(node, "`tune`", &["vary", "aims", "keep", "snap"])?;
     checker.missing(
         &fields,
         "`tune`",
@@ -55,6 +56,18 @@ pub(super) fn tune(
         )?;
         Some(read_aims::aims(checker, items, solved))
     });
+    let keep = match fields.get("keep") {
+        Some(node) => {
+            let items = filled_list(
+                checker,
+                node,
+                "nothing to keep to",
+                "bounds such as `strain: balanced`",
+            )?;
+            read_keep::keep(checker, items, entries)
+        }
+        None => Vec::new(),
+    };
     let snap_to_monolayers = match fields.get("snap") {
         Some(node) => checker.word(node, &["monolayer"]).is_some(),
         None => false,
@@ -62,6 +75,7 @@ pub(super) fn tune(
     Some(Tune {
         vary: vary?,
         aims: aims?,
+        keep,
         snap_to_monolayers,
     })
 }
@@ -129,11 +143,19 @@ fn same_variable(one: &Varied, other: &Varied) -> bool {
                 entry: a,
                 element: x,
                 ..
+            }
+            | Varied::FractionOfCells {
+                entry: a,
+                element: x,
             },
             Varied::Fraction {
                 entry: b,
                 element: y,
                 ..
+            }
+            | Varied::FractionOfCells {
+                entry: b,
+                element: y,
             },
         ) => a == b && x == y,
         (Varied::Field { .. }, Varied::Field { .. }) => true,
@@ -224,7 +246,7 @@ fn varied(
 }
 
 /// The layer of that name.
-fn layer(
+pub(super) fn layer(
     checker: &mut Checker,
     node: &Node,
     entries: &[(Option<String>, Option<LayerEntry>)],
@@ -259,16 +281,22 @@ fn fraction(
 ) -> Option<Varied> {
     checker.missing(fields, "this entry of `vary`", "fraction", "Al");
     checker.missing(fields, "this entry of `vary`", "between", "[0.18, 0.35]");
-    let bounds = fields.get("between").and_then(|node| {
-        checker
-            .pair(
-                node,
-                "[0.18, 0.35]",
-                |checker, node| checker.number(node, FRACTION_LIMITS),
-                |value| *value,
-            )
-            .map(|bounds| (bounds, node.span.clone()))
-    });
+    let of_cells = fields
+        .get("between")
+        .is_some_and(|node| node.text() == Some("cells"));
+    let bounds = fields
+        .get("between")
+        .filter(|_| !of_cells)
+        .and_then(|node| {
+            checker
+                .pair(
+                    node,
+                    "[0.18, 0.35]",
+                    |checker, node| checker.number(node, FRACTION_LIMITS),
+                    |value| *value,
+                )
+                .map(|bounds| (bounds, node.span.clone()))
+        });
     let element = fields
         .get("fraction")
         .and_then(|node| Some((element(checker, node, &Element::ALL)?, node)));
@@ -286,6 +314,20 @@ fn fraction(
             return None;
         }
     };
+    if of_cells {
+        if !is_pair_of_group_three(layer, element) {
+            checker.report(
+                Diagnostic::error(format!(
+                    "layer `{}` is no alloy of two group-III elements, whose cells could be chosen",
+                    layer.label
+                ))
+                .at(node.span.clone())
+                .expected("the fraction of Al, Ga or In in a layer that holds two of them"),
+            );
+            return None;
+        }
+        return Some(Varied::FractionOfCells { entry, element });
+    }
     let (bounds, span) = bounds?;
     // Formulas are written to 1e-5.
     if bounds[1] > room.highest + 1e-5 {
@@ -309,6 +351,16 @@ fn fraction(
         element,
         bounds,
     })
+}
+
+/// Whether the element is one of exactly two on the group-III sublattice of the layer.
+fn is_pair_of_group_three(layer: &LayerEntry, element: Element) -> bool {
+    let Substance::Alloy(composition) = &layer.material.value else {
+        return false;
+    };
+    let three = |element: &Element| element.sublattice() == Sublattice::GroupThree;
+    let count = composition.elements().iter().filter(|e| three(e)).count();
+    three(&element) && count == 2 && layer.to.is_none()
 }
 
 /// An element by its symbol; `expected` are those that a message names.

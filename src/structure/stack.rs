@@ -339,15 +339,42 @@ impl Stack {
         if content.interface {
             return grade::blend(&lower.strained, &upper.strained, share);
         }
-        let free = match (&lower.substance, &upper.substance) {
+        self.strain(self.free_material_at(layer, t))
+    }
+
+    /// As [`material_at`](Self::material_at), as it would be without strain.
+    ///
+    /// # Panics
+    /// When there is no such layer.
+    pub fn free_material_at(&self, layer: usize, t: f64) -> Material {
+        let content = &self.contents[self.layers[layer].entry];
+        let lower = &content.lower;
+        let Some(upper) = &content.upper else {
+            return lower.free.clone();
+        };
+        let share = content.law.share(t);
+        match (&lower.substance, &upper.substance) {
             // That these can be mixed and resolved was found out when the stack was laid out.
-            (Substance::Alloy(from), Substance::Alloy(to)) => from
+            (Substance::Alloy(from), Substance::Alloy(to)) if !content.interface => from
                 .towards(to, share)
                 .and_then(|alloy| self.library.resolve(&alloy, self.temperature_k))
                 .unwrap_or_else(|_| grade::blend(&lower.free, &upper.free, share)),
             _ => grade::blend(&lower.free, &upper.free, share),
-        };
-        self.strain(free)
+        }
+    }
+
+    /// The composition of a layer at a height in it (`t` from 0 to 1), that which a material of the file is `like`
+    /// included; `None` when a face has none or there is no such layer.
+    pub fn composition_at(&self, layer: usize, t: f64) -> Option<Composition> {
+        let content = self.content_of(layer)?;
+        let lower = self.library.composition(&content.lower.substance)?;
+        match &content.upper {
+            None => Some(lower),
+            Some(upper) => {
+                let upper = self.library.composition(&upper.substance)?;
+                lower.towards(&upper, content.law.share(t)).ok()
+            }
+        }
     }
 
     /// As [`material_at`](Self::material_at), with the derivative of every parameter with respect to the fraction of an
@@ -364,13 +391,28 @@ impl Stack {
         t: f64,
         element: Element,
     ) -> Result<Material<Dual>, MaterialError> {
+        Ok(self.strain(self.free_material_slope_at(layer, t, element)?))
+    }
+
+    /// As [`material_slope_at`](Self::material_slope_at), as it would be without strain.
+    ///
+    /// # Errors
+    /// As [`material_slope_at`](Self::material_slope_at).
+    ///
+    /// # Panics
+    /// When there is no such layer.
+    pub fn free_material_slope_at(
+        &self,
+        layer: usize,
+        t: f64,
+        element: Element,
+    ) -> Result<Material<Dual>, MaterialError> {
         let content = &self.contents[self.layers[layer].entry];
         let from = self.composition_of(content)?;
         let Some(upper) = &content.upper else {
-            return Ok(self.strain(
-                self.library
-                    .resolve(&from.along(element)?, self.temperature_k)?,
-            ));
+            return self
+                .library
+                .resolve(&from.along(element)?, self.temperature_k);
         };
         let share = content.law.share(t);
         let mixed = match &upper.substance {
@@ -390,7 +432,7 @@ impl Stack {
                 grade::blend(&below, &grade::constant(&upper.free), share)
             }
         };
-        Ok(self.strain(mixed))
+        Ok(mixed)
     }
 
     /// The monolayer of a layer in nm, strained when there is a substrate; the mean of both faces when it is graded.
@@ -405,6 +447,23 @@ impl Stack {
             Dimension::Monolayers => Some(length.number * self.contents.get(entry)?.monolayer_nm?),
             _ => Some(length.value()),
         }
+    }
+
+    /// What a layer entry consists of at its lower and, where it is graded, at its upper face.
+    pub fn substances(&self, entry: usize) -> Option<(&Substance, Option<&Substance>)> {
+        let content = self.contents.get(entry)?;
+        let upper = content.upper.as_ref().map(|face| &face.substance);
+        Some((&content.lower.substance, upper))
+    }
+
+    /// The substrate, if there is one.
+    pub fn substrate(&self) -> Option<&Substance> {
+        self.substrate.as_ref()
+    }
+
+    /// The library with the materials of the structure.
+    pub fn library(&self) -> &Library {
+        &self.library
     }
 
     /// The composition of a layer entry's lower material; `None` when it is a material of the file.

@@ -15,7 +15,7 @@ pub use change::change;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
 pub use nearby::{Nearby, lower_outer_edge_ev};
-pub use state::{Hold, State};
+pub use state::{Hold, State, in_plane_mass_m0};
 
 use crate::models::{Band, BandOperator};
 use crate::numerics::eigenpairs::{self, Eigenpair};
@@ -127,12 +127,11 @@ fn in_plane_stiffness(operator: &BandOperator, mesh: &Mesh) -> Option<Vec<f64>> 
 }
 
 fn pencil_on(operator: &BandOperator, mesh: Mesh) -> Pencil {
-    let frame = mesh.clone();
-    Pencil::new(mesh, |element, q| {
+    Pencil::new(mesh, |mesh, element, q| {
         operator.at(
             element.segment,
-            frame.fraction(element, q),
-            frame.position(element, q),
+            mesh.fraction(element, q),
+            mesh.position(element, q),
         )
     })
 }

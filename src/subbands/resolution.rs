@@ -2,7 +2,6 @@
 
 use crate::models::BandOperator;
 use crate::numerics::mesh::Mesh;
-use crate::numerics::pencil::Pencil;
 
 /// Largest phase (or decay exponent) that one element of order 8 has to follow. Measured on wells, double wells and
 /// cascade modules: the energies are then within 1e-8 eV, so that the higher orders are seldom needed.
@@ -19,14 +18,7 @@ pub fn pieces(operator: &BandOperator, count: usize) -> (Vec<f64>, Vec<usize>) {
         .map(|layer| layer.width_nm)
         .collect();
     let coarse = Mesh::new(&lengths, &vec![1; lengths.len()], 2);
-    let frame = coarse.clone();
-    let sample = Pencil::new(coarse, |element, q| {
-        operator.at(
-            element.segment,
-            frame.fraction(element, q),
-            frame.position(element, q),
-        )
-    });
+    let sample = super::pencil_on(operator, coarse);
     let floor_ev = sample.floor();
     let top_ev = sample.weyl_estimate(count as f64 + 1.0);
     let pieces = lengths

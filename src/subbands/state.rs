@@ -96,6 +96,21 @@ pub(super) fn lower_outer_edge_ev(pencil: &Pencil) -> f64 {
     highest(0).min(highest(last))
 }
 
+/// 1/m∥ as the mean of 1/m(E, z) in the state.
+pub fn in_plane_mass_m0(subbands: &Subbands, index: usize) -> f64 {
+    let Subbands { pencil, pairs, .. } = subbands;
+    let pair = &pairs[index];
+    let kinetic = integrate(pencil, |e, q| {
+        let value = pencil.mesh.local(e, &pair.vector)[q];
+        let along = match &subbands.in_plane_stiffness {
+            Some(in_plane) => in_plane[e * (pencil.mesh.order() + 1) + q],
+            None => pencil.at(e)[q].a(pair.value),
+        };
+        along * value * value
+    });
+    HBAR2_OVER_2M0 / kinetic
+}
+
 pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
     let pencil = &subbands.pencil;
     let pair = &subbands.pairs[index];
@@ -125,14 +140,6 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
         .enumerate()
         .max_by(|a, b| a.1.total_cmp(&b.1))
         .unwrap_or((0, 0.0));
-    let kinetic = integrate(pencil, |e, q| {
-        let value = pencil.mesh.local(e, &pair.vector)[q];
-        let along = match &subbands.in_plane_stiffness {
-            Some(in_plane) => in_plane[e * (p + 1) + q],
-            None => pencil.at(e)[q].a(level_ev),
-        };
-        along * value * value
-    });
     let (first, last) = (
         pencil.coefficients[0],
         pencil.coefficients[pencil.coefficients.len() - 1],
@@ -161,7 +168,7 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
         energy_ev: subbands.energy_ev(index),
         from_edge_ev: level_ev - pencil.floor(),
         error_ev: subbands.errors_ev[index],
-        in_plane_mass_m0: HBAR2_OVER_2M0 / kinetic,
+        in_plane_mass_m0: in_plane_mass_m0(subbands, index),
         centre_nm,
         extent_nm: variance.max(0.0).sqrt(),
         layer,

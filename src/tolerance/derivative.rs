@@ -6,8 +6,8 @@
 //! differences leave no more than rounding. In this way fluxes, compositions, interfaces and temperature follow the very code that
 //! grows a sampled wafer.
 
-use crate::models::BandOperator;
-use crate::numerics::pencil::{Coefficient, Pole};
+use crate::models::{BandOperator, unchanging};
+use crate::numerics::pencil::Coefficient;
 use crate::numerics::sensitivity::{Change, value_slope};
 use crate::structure::{Cause, ConductionModel, Design};
 use crate::subbands::Nearby;
@@ -63,7 +63,7 @@ pub fn level_slopes(
     let solved = nearby.solved();
     let mut change = Change {
         elements: vec![(0.0, 0.0); solved.pencil.mesh.elements.len()],
-        coefficients: solved.pencil.coefficients.iter().map(still).collect(),
+        coefficients: solved.pencil.coefficients.iter().map(unchanging).collect(),
     };
     let mut wafer = design.stack().clone();
     for (offset, weight) in stencil {
@@ -88,21 +88,6 @@ pub fn level_slopes(
             .map(|pair| value_slope(&solved.pencil, &change, pair))
             .collect(),
     )
-}
-
-/// Zeros where the coefficient has numbers.
-fn still(at: &Coefficient) -> Coefficient {
-    let zero = Pole {
-        strength: 0.0,
-        position: 0.0,
-        nearest: 0.0,
-        farthest: 0.0,
-    };
-    Coefficient {
-        stiffness: 0.0,
-        poles: at.poles.map(|pole| pole.map(|_| zero)),
-        constant: 0.0,
-    }
 }
 
 fn add(sum: &mut Coefficient, weight: f64, at: &Coefficient) {

@@ -1,6 +1,7 @@
 //! A stack at given values of its variables, solved and set against the aims.
 
 use super::aim::{Aim, Goal};
+use super::keep::Keep;
 use crate::models::{Band, BandOperator, Unsuitable};
 use crate::numerics::sensitivity::{
     Change, PairSlope, moment, moment_slope, pair_slopes, value_slope,
@@ -44,6 +45,7 @@ pub struct Task {
     pub bands: Vec<(Band, usize)>,
     pub variables: Vec<Variable>,
     pub aims: Vec<Aim>,
+    pub keeps: Vec<Keep>,
     pub accuracy: Accuracy,
 }
 
@@ -56,6 +58,9 @@ pub struct Design {
     pub states: Vec<(Place, Place)>,
     /// Energy in eV or dipole in nm of each aim.
     pub values: Vec<f64>,
+    /// The value of each bound on strain.
+    pub kept: Vec<f64>,
+    /// Of the aims and then of the bounds.
     pub residuals: DVector<f64>,
 }
 
@@ -164,12 +169,17 @@ impl Task {
             .iter()
             .zip(&values)
             .map(|(aim, &value)| aim.weight * aim.goal.residual(value).0);
-        let residuals = DVector::from_iterator(self.aims.len(), residuals);
+        let kept: Vec<f64> = self.keeps.iter().map(|keep| keep.value(&stack)).collect();
+        let excesses = self.keeps.iter().zip(&kept);
+        let excesses = excesses.map(|(keep, &value)| keep.residual(value).0);
+        let count = self.aims.len() + self.keeps.len();
+        let residuals = DVector::from_iterator(count, residuals.chain(excesses));
         Ok(Design {
             stack,
             bands,
             states,
             values,
+            kept,
             residuals,
         })
     }
@@ -225,10 +235,22 @@ impl Task {
 
     /// The slopes of the residuals on the unit intervals of the variables.
     pub fn jacobian(&self, design: &Design) -> DMatrix<f64> {
-        let mut jacobian = self.value_slopes(design);
+        let aims = self.aims.len();
+        let mut jacobian = self
+            .value_slopes(design)
+            .resize_vertically(aims + self.keeps.len(), 0.0);
         for (row, (aim, &value)) in self.aims.iter().zip(&design.values).enumerate() {
             let outer = aim.weight * aim.goal.residual(value).1;
             jacobian.row_mut(row).scale_mut(outer);
+        }
+        for (row, (keep, &value)) in self.keeps.iter().zip(&design.kept).enumerate() {
+            let outer = keep.residual(value).1;
+            if outer != 0.0 {
+                for (column, variable) in self.variables.iter().enumerate() {
+                    let slope = keep.slope(&design.stack, variable.knob);
+                    jacobian[(aims + row, column)] = outer * slope;
+                }
+            }
         }
         for (column, variable) in self.variables.iter().enumerate() {
             jacobian
@@ -238,12 +260,17 @@ impl Task {
         jacobian
     }
 
-    /// Whether every aim is met.
+    /// Whether every aim is met and every bound kept.
     pub fn is_met(&self, design: &Design) -> bool {
         self.aims
             .iter()
             .zip(&design.values)
             .all(|(aim, &value)| aim.goal.is_met(value))
+            && self
+                .keeps
+                .iter()
+                .zip(&design.kept)
+                .all(|(keep, &value)| keep.is_met(value))
     }
 }
 

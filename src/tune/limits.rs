@@ -25,7 +25,8 @@ pub fn limits(task: &Task, design: &Design) -> Vec<Limit> {
     let missed: Vec<usize> = (0..task.aims.len())
         .filter(|&a| !task.aims[a].goal.is_met(design.values[a]))
         .collect();
-    if missed.is_empty() {
+    let mut bounds = task.keeps.iter().zip(&design.kept);
+    if missed.is_empty() && bounds.all(|(keep, &value)| keep.is_met(value)) {
         return Vec::new();
     }
     let jacobian = task.jacobian(design);

@@ -1,14 +1,18 @@
 //! Tuning: layer widths, compositions and field changed, inside their bounds, until the transitions are the wanted ones.
 
 mod aim;
+mod choice;
 mod evaluate;
+mod keep;
 mod least_squares;
 mod limits;
 mod search;
 mod snap;
 
 pub use aim::{Aim, Goal};
+pub use choice::Choice;
 pub use evaluate::{Design, Task, Variable};
+pub use keep::{Keep, Rule};
 pub use limits::Limit;
 pub use search::{Stage, Watch};
 pub use snap::SnapError;
@@ -40,6 +44,8 @@ pub struct Outcome {
     /// Whether each aim is met. In whole monolayers an aim without `within` counts as met when the continuous design
     /// meets it and the rest is no more than half of what one monolayer moves.
     pub met: Vec<bool>,
+    /// Whether the result keeps to each bound on strain.
+    pub kept: Vec<bool>,
     /// Half of the largest change that one monolayer of a varied width makes, per aim; only in whole monolayers.
     pub half_step: Option<Vec<f64>>,
     /// What keeps unmet aims away.
@@ -48,6 +54,8 @@ pub struct Outcome {
     pub starts: usize,
     /// Variables whose value in the file lay outside their bounds.
     pub started_outside: Vec<usize>,
+    /// Variables that take one of a few values; they stand last among the task's.
+    pub choices: Vec<Choice>,
 }
 
 /// Why a tuning could not be done at all.
@@ -61,10 +69,32 @@ pub enum TuneError {
     Snap(#[from] SnapError),
     #[error("no design inside the bounds can be solved")]
     Unsolved,
+    #[error("the cells of `growth` give no alloy for the {name}")]
+    NotGrowable { name: String },
+    #[error(
+        "the compositions that the cells give make {combinations} combinations, more than {most}"
+    )]
+    TooManyChoices { combinations: usize, most: usize },
 }
 
 /// Tunes a structure. `watch` is told how far the search has come.
 pub fn tune(
+    structure: &Structure,
+    stack: &Stack,
+    accuracy: Accuracy,
+    watch: Watch,
+) -> Result<Outcome, TuneError> {
+    let choices = choice::choices(structure, stack)?;
+    if choices.is_empty() {
+        return within_bounds(structure, stack, accuracy, watch);
+    }
+    choice::best(choices, stack, |stack| {
+        within_bounds(structure, stack, accuracy, watch)
+    })
+}
+
+/// Tunes the variables that have bounds.
+fn within_bounds(
     structure: &Structure,
     stack: &Stack,
     accuracy: Accuracy,
@@ -96,6 +126,7 @@ pub fn tune(
         bands: counts(true),
         variables,
         aims,
+        keeps: keep::keeps(structure, stack),
         accuracy,
     };
     let searching = Task {
@@ -124,6 +155,7 @@ pub fn tune(
         search::search(&searching, characters.as_ref(), watch).ok_or(TuneError::Unsolved)?;
     let outcome = Outcome {
         met: Vec::new(),
+        kept: Vec::new(),
         half_step: None,
         limits: Vec::new(),
         continuous: None,
@@ -132,6 +164,7 @@ pub fn tune(
         task,
         starts,
         started_outside,
+        choices: Vec::new(),
     };
     if wish.snap_to_monolayers {
         snapped(outcome, &searching, found, wish, watch)
@@ -149,8 +182,21 @@ fn judged(mut outcome: Outcome) -> Outcome {
         .zip(&outcome.after.values)
         .map(|(aim, &value)| aim.goal.is_met(value))
         .collect();
+    outcome.kept = kept(&outcome);
     outcome.limits = limits::limits(&outcome.task, &outcome.after);
     outcome
+}
+
+fn kept(outcome: &Outcome) -> Vec<bool> {
+    let values = outcome.task.keeps.iter().zip(&outcome.after.kept);
+    values.map(|(keep, &value)| keep.is_met(value)).collect()
+}
+
+impl Outcome {
+    /// Whether every aim is met and every bound kept.
+    pub fn is_reached(&self) -> bool {
+        self.met.iter().chain(&self.kept).all(|met| *met)
+    }
 }
 
 fn snapped(
@@ -187,6 +233,7 @@ fn snapped(
             strictly || nearest_grid
         })
         .collect();
+    outcome.kept = kept(&outcome);
     outcome.half_step = Some(half_step);
     outcome.continuous = Some(continuous);
     Ok(outcome)
@@ -315,6 +362,8 @@ fn variable(wish: &structure::Variable, structure: &Structure, stack: &Stack) ->
             high: bounds[1],
             name: format!("{} fraction of {}", element.symbol(), label(*entry)),
         },
+        // Chosen, see `choice`.
+        Varied::FractionOfCells { .. } => return None,
         Varied::Field { bounds_v_per_nm } => Variable {
             knob: Knob::Field,
             low: bounds_v_per_nm[0],

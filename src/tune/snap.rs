@@ -147,6 +147,9 @@ impl Linear {
     }
 }
 
+/// The step from the continuous design in nm, and the whole numbers it leads to.
+type Ranked = (DVector<f64>, Vec<i64>);
+
 struct Snap<'t> {
     task: &'t Task,
     characters: Option<&'t Characters>,
@@ -167,11 +170,7 @@ impl Snap<'_> {
     }
 
     /// Whole numbers around the continuous design, best first by the linearised aims.
-    fn ranked(
-        &self,
-        found: &Found,
-        near: &Linear,
-    ) -> Result<Vec<(DVector<f64>, Vec<i64>)>, SnapError> {
+    fn ranked(&self, found: &Found, near: &Linear) -> Result<Vec<Ranked>, SnapError> {
         let mut choices = Vec::with_capacity(self.widths.len());
         let reach = if self.widths.len() <= 5 { 1 } else { 0 };
         let mut ideal = Vec::with_capacity(self.widths.len());

@@ -14,11 +14,13 @@ mod page;
 pub mod palette;
 mod spread;
 mod text;
+mod tolerances;
 
 pub use band_diagram::{BandDiagram, FINENESS};
 pub use bars::{SensitivityBar, SensitivityBars};
 pub use histogram::{Gaussian, Window, YieldHistogram};
 pub use text::width_pt as text_width_pt;
+pub use tolerances::{sensitivity_bars, yield_histogram};
 
 /// How wide a picture is printed.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
