@@ -4,7 +4,7 @@
 use criterion::{Criterion, criterion_group, criterion_main};
 use std::hint::black_box;
 use wellwright::growth;
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::report::Sheet;
 use wellwright::structure;
 use wellwright::subbands::{Accuracy, Subbands, solve};
@@ -35,7 +35,7 @@ fn solved(text: &str) -> (structure::Structure, structure::Stack, Subbands) {
     let (file, _) = structure::read(text);
     let file = file.expect("the file is right");
     let stack = file.stack().expect("the stack is right");
-    let operator = ConductionOperator::new(&stack, file.conduction.model).expect("it suits");
+    let operator = BandOperator::conduction(&stack, file.conduction.model).expect("it suits");
     let subbands = solve(&operator, STATES, Accuracy::default());
     drop(operator);
     (file, stack, subbands)

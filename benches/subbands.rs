@@ -6,7 +6,7 @@
 use criterion::{Criterion, criterion_group, criterion_main};
 use std::hint::black_box;
 use wellwright::constants::HBAR2_OVER_2M0;
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::optics::transitions;
 use wellwright::structure;
 use wellwright::subbands::{Accuracy, solve};
@@ -161,7 +161,7 @@ fn bench(c: &mut Criterion) {
     };
     let ours = || {
         let operator =
-            ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
+            BandOperator::conduction(&stack, file.conduction.model).expect("the materials suit");
         let subbands = solve(&operator, STATES, accuracy);
         let list = transitions(&subbands);
         (subbands, list)
@@ -169,7 +169,7 @@ fn bench(c: &mut Criterion) {
     // The coarsest grid that is as accurate as asked for: its worst level within 1 µeV of the converged one.
     let exact = {
         let operator =
-            ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
+            BandOperator::conduction(&stack, file.conduction.model).expect("the materials suit");
         solve(
             &operator,
             STATES,
@@ -228,7 +228,7 @@ fn bench(c: &mut Criterion) {
         let stack = file.stack().expect("the stack is right");
         group.bench_function(format!("{} layers", stack.layers.len()), |b| {
             b.iter(|| {
-                let operator = ConductionOperator::new(&stack, file.conduction.model)
+                let operator = BandOperator::conduction(&stack, file.conduction.model)
                     .expect("the materials suit");
                 black_box(solve(&operator, STATES, accuracy))
             })

@@ -6,7 +6,7 @@
 use criterion::{Criterion, criterion_group, criterion_main};
 use std::hint::black_box;
 use wellwright::constants::HBAR2_OVER_2M0;
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::structure::{self, Cause, Design, Stack};
 use wellwright::subbands::{Accuracy, Nearby, solve};
 use wellwright::tolerance::{sample, sources};
@@ -93,7 +93,7 @@ fn bench(c: &mut Criterion) {
         let grading_nm = stated.grading.as_ref().map(|g| g.length_nm);
         let design = Design::new(&stack, grading_nm).expect("a design");
         let model = file.conduction.model;
-        let operator = ConductionOperator::new(design.stack(), model).expect("the materials suit");
+        let operator = BandOperator::conduction(design.stack(), model).expect("the materials suit");
         let solved = solve(&operator, STATES, ACCURACY);
         let nearby = Nearby::new(&solved);
         let sources = sources(&file, &stack, stated, &design, &nearby);
@@ -130,7 +130,7 @@ fn bench(c: &mut Criterion) {
     // The coarsest grid that is as accurate as asked for.
     let exact = {
         let operator =
-            ConductionOperator::new(&stack, file.conduction.model).expect("the materials suit");
+            BandOperator::conduction(&stack, file.conduction.model).expect("the materials suit");
         let fine = Accuracy {
             tolerance_ev: 1e-12,
         };
@@ -157,7 +157,7 @@ fn bench(c: &mut Criterion) {
     group.bench_function("solved from scratch", |b| {
         b.iter(|| {
             for wafer in &wafers {
-                let operator = ConductionOperator::new(wafer, file.conduction.model)
+                let operator = BandOperator::conduction(wafer, file.conduction.model)
                     .expect("the materials suit");
                 black_box(solve(&operator, STATES, ACCURACY));
             }

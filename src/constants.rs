@@ -10,3 +10,6 @@ pub const HC_EV_UM: f64 = 1.239_841_984_332_002_5;
 
 /// h in eV per THz (h = 4.135 667 696…e-15 eV s): the frequency of a photon of energy E eV is `E / H_EV_PER_THZ` THz.
 pub const H_EV_PER_THZ: f64 = 4.135_667_696_923_859e-3;
+
+/// e²/4πε₀ in eV nm: α ħc with α = 7.297 352 564 3e-3 and ħc = 197.326 980 459 3 eV nm.
+pub const COULOMB_EV_NM: f64 = 1.439_964_546_9;

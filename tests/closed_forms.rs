@@ -3,7 +3,7 @@
 
 use serde_json::Value;
 use wellwright::constants::HBAR2_OVER_2M0;
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::numerics::eigenpairs::lowest;
 use wellwright::numerics::mesh::Mesh;
 use wellwright::numerics::pencil::{Coefficient, Pencil};
@@ -42,7 +42,7 @@ fn solved(text: &str, count: usize) -> Subbands {
     let (file, problems) = structure::read(text);
     let file = file.unwrap_or_else(|| panic!("{problems:?}\n{text}"));
     let stack = file.stack().unwrap();
-    let operator = ConductionOperator::new(&stack, file.conduction.model).unwrap();
+    let operator = BandOperator::conduction(&stack, file.conduction.model).unwrap();
     solve(&operator, count, Accuracy::default())
 }
 

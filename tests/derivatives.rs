@@ -7,9 +7,9 @@
 //! a step that does not suit the stack shows as such and not as a wrong derivative.
 
 use wellwright::materials::Element;
-use wellwright::models::ConductionOperator;
+use wellwright::models::{Band, BandOperator};
 use wellwright::numerics::sensitivity::value_slope;
-use wellwright::structure::{self, ConductionModel, Knob, Stack};
+use wellwright::structure::{self, BandName, ConductionModel, Knob, Level, Stack};
 use wellwright::subbands::{Accuracy, change};
 use wellwright::tune::{Aim, Design, Goal, Task, Variable};
 
@@ -67,12 +67,12 @@ fn task(case: &Case) -> Task {
         within_nm: 0.1,
     };
     Task {
-        model,
+        bands: vec![(Band::Conduction(model), case.states)],
         variables: variables.collect(),
         aims: pairs
             .map(|(from, to)| Aim {
-                from,
-                to,
+                from: conduction(from),
+                to: conduction(to),
                 goal: dipole,
                 weight: 1.0,
                 by_character: false,
@@ -80,14 +80,25 @@ fn task(case: &Case) -> Task {
             .collect(),
         keeps: Vec::new(),
         accuracy: ACCURACY,
-        count: case.states,
         stack,
+    }
+}
+
+fn conduction(state: usize) -> Level {
+    Level {
+        band: BandName::Conduction,
+        index: state + 1,
     }
 }
 
 /// Energies in eV, then dipoles in nm.
 fn values(design: &Design) -> Vec<f64> {
-    let energies = design.subbands.pairs.iter().map(|pair| pair.value);
+    let energies = design
+        .bands
+        .conduction()
+        .pairs
+        .iter()
+        .map(|pair| pair.value);
     energies.chain(design.values.iter().copied()).collect()
 }
 
@@ -115,13 +126,13 @@ fn difference(task: &Task, knob: Knob, step: f64) -> Vec<f64> {
 fn assert_exact(case: &Case) {
     let task = task(case);
     let design = task.design(task.stack.clone(), None).unwrap();
-    let operator = ConductionOperator::new(&task.stack, task.model).unwrap();
-    let pencil = &design.subbands.pencil;
+    let operator = BandOperator::new(&task.stack, task.bands[0].0).unwrap();
+    let subbands = design.bands.conduction();
+    let pencil = &subbands.pencil;
     let dipole_slopes = task.value_slopes(&design);
     let n = case.states;
-    assert_eq!(design.subbands.pairs.len(), n);
-    let nearest_ev = design
-        .subbands
+    assert_eq!(subbands.pairs.len(), n);
+    let nearest_ev = subbands
         .pairs
         .windows(2)
         .map(|two| two[1].value - two[0].value)
@@ -137,8 +148,7 @@ fn assert_exact(case: &Case) {
             difference(&task, variable.knob, 0.5 * step),
         );
         let own = change(&operator, pencil, variable.knob);
-        let energy_slopes = design
-            .subbands
+        let energy_slopes = subbands
             .pairs
             .iter()
             .map(|pair| value_slope(pencil, &own, pair));
@@ -155,7 +165,7 @@ fn assert_exact(case: &Case) {
                 .max(SMALL * if v < n { energies } else { dipoles });
             let what = match v.checked_sub(n) {
                 None => format!("energy {}", v + 1),
-                Some(a) => format!("dipole {}-{}", task.aims[a].from + 1, task.aims[a].to + 1),
+                Some(a) => format!("dipole of {} and {}", task.aims[a].from, task.aims[a].to),
             };
             let rounding = if v < n {
                 ENERGY_ROUNDING

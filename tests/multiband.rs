@@ -7,7 +7,7 @@ use wellwright::materials::{Library, Material, Strain};
 use wellwright::models::multiband::{
     Direction, MultibandModel, MultibandOperator, MultibandUnsuitable, Part,
 };
-use wellwright::models::{ConductionOperator, eight_band};
+use wellwright::models::{Band as OneBand, BandOperator, eight_band};
 use wellwright::numerics::curvature::curvature;
 use wellwright::numerics::matrix_pencil::{MatrixCoefficient, MatrixPencil};
 use wellwright::numerics::mesh::Mesh;
@@ -545,8 +545,11 @@ fn heavy_holes_at_the_centre_are_those_of_one_band() {
     };
     for field in [0.0, 30.0] {
         let mirror = stack_of(&text(-field, &one));
-        let operator =
-            ConductionOperator::new(&mirror, structure::ConductionModel::Parabolic).unwrap();
+        let operator = BandOperator::new(
+            &mirror,
+            OneBand::Conduction(structure::ConductionModel::Parabolic),
+        )
+        .unwrap();
         let expected = solve(&operator, 3, Accuracy::default());
         for model in MODELS {
             let subbands = solved(

@@ -1,7 +1,7 @@
 //! Pictures are read back from their SVG: what is drawn where.
 
 use roxmltree::{Document, Node};
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::report::svg::{
     BandDiagram, FINENESS, Gaussian, SensitivityBar, SensitivityBars, Width, Window,
     YieldHistogram, palette, text_width_pt,
@@ -35,7 +35,7 @@ fn solved(text: &str) -> Solved {
         .stack()
         .unwrap_or_else(|problems| panic!("{problems:?}\n{text}"));
     let states = structure.conduction.states;
-    let operator = ConductionOperator::new(&stack, structure.conduction.model).unwrap();
+    let operator = BandOperator::conduction(&stack, structure.conduction.model).unwrap();
     let subbands = solve(&operator, states, Accuracy::default());
     let curves = curves(&operator, &subbands, states, FINENESS);
     Solved {

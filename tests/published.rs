@@ -7,7 +7,7 @@
 //! solved between thick barriers; doping is neglected.
 //! Rows marked (m) have their published value, or the sequence, from memory of the paper; the others were read in it.
 
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::optics::{Transition, transitions};
 use wellwright::structure;
 use wellwright::subbands::{Accuracy, Subbands, solve};
@@ -81,7 +81,7 @@ fn solved(text: &str) -> Subbands {
     let (structure, problems) = structure::read(text);
     let structure = structure.unwrap_or_else(|| panic!("{problems:?}\n{text}"));
     let stack = structure.stack().unwrap();
-    let operator = ConductionOperator::new(&stack, structure.conduction.model).unwrap();
+    let operator = BandOperator::conduction(&stack, structure.conduction.model).unwrap();
     solve(&operator, structure.conduction.states, Accuracy::default())
 }
 
@@ -260,7 +260,7 @@ fn terahertz(table: &mut Table) {
     )
     .unwrap();
     assert!(outcome.met[0]);
-    let list = transitions(&outcome.after.subbands);
+    let list = transitions(outcome.after.bands.conduction());
     let lasing = list.iter().find(|t| (t.from, t.to) == (2, 3)).unwrap();
     let mut device = table.device(
         "3.9 THz, GaAs/Al0.15Ga0.85As",

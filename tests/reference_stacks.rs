@@ -2,7 +2,7 @@
 //! (`tests/reference/README.md`): up to nine layers, with and without field, parabolic and both energy-dependent masses.
 
 use serde::Deserialize;
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::optics::transitions;
 use wellwright::structure;
 use wellwright::subbands::{Accuracy, solve};
@@ -34,7 +34,7 @@ fn levels_and_dipoles_are_those_of_the_independent_reference() {
         let (file, problems) = structure::read(&stack.structure);
         let file = file.unwrap_or_else(|| panic!("{}: {problems:?}", stack.name));
         let layers = file.stack().unwrap();
-        let operator = ConductionOperator::new(&layers, file.conduction.model).unwrap();
+        let operator = BandOperator::conduction(&layers, file.conduction.model).unwrap();
         let subbands = solve(&operator, stack.levels_ev.len(), Accuracy::default());
         for (pair, expected) in subbands.pairs.iter().zip(&stack.levels_ev) {
             let off = (pair.value - expected).abs();

@@ -10,9 +10,19 @@ use serde_json::Value;
 fn assert_levels(levels: &Value) {
     let subbands = list(levels, "subbands");
     assert!(!subbands.is_empty());
-    for (k, row) in subbands.iter().enumerate() {
-        assert_eq!(row["band"], "conduction");
-        assert_eq!(row["index"], k + 1);
+    let band = |name: &str| -> Vec<&Value> {
+        let own = subbands.iter().filter(|row| row["band"] == name);
+        own.collect()
+    };
+    let (electrons, heavy, light) = (band("conduction"), band("heavy-hole"), band("light-hole"));
+    let known = electrons.len() + heavy.len() + light.len();
+    assert_eq!(known, subbands.len());
+    for rows in [&electrons, &heavy, &light] {
+        for (k, row) in rows.iter().enumerate() {
+            assert_eq!(row["index"], k + 1);
+        }
+    }
+    for row in subbands {
         assert!(row["layer"].is_string());
         assert!(row["bound"].is_boolean());
         assert!(number(row, "energy_eV").is_finite());
@@ -22,13 +32,25 @@ fn assert_levels(levels: &Value) {
         assert!(number(row, "in_plane_mass") > 0.0);
         assert!((0.0..=number(levels, "width_nm")).contains(&number(row, "centre_nm")));
     }
-    let energies: Vec<f64> = subbands
-        .iter()
-        .map(|row| number(row, "energy_eV"))
-        .collect();
+    let energies_of = |rows: &[&Value]| -> Vec<f64> {
+        let energies = rows.iter().map(|row| number(row, "energy_eV"));
+        energies.collect()
+    };
+    let energies = energies_of(&electrons);
     assert!(energies.is_sorted());
+    for holes in [&heavy, &light] {
+        assert!(energies_of(holes).iter().rev().is_sorted());
+    }
+    if levels.get("interband").is_some() {
+        let pairs = list(levels, "interband");
+        assert_eq!(pairs.len(), electrons.len() * (heavy.len() + light.len()));
+        assert!(number(&levels["exciton"], "binding_meV") > 0.0);
+    }
     let transitions = list(levels, "transitions");
-    assert_eq!(transitions.len(), subbands.len() * (subbands.len() - 1) / 2);
+    assert_eq!(
+        transitions.len(),
+        electrons.len() * (electrons.len() - 1) / 2
+    );
     for row in transitions {
         let index = |key: &str| -> usize {
             let text = row[key].as_str().unwrap();
@@ -50,8 +72,8 @@ fn assert_levels(levels: &Value) {
 }
 
 #[test]
-fn there_are_six_at_least() {
-    assert!(shipped_structures().len() >= 6);
+fn there_are_eight_at_least() {
+    assert!(shipped_structures().len() >= 8);
 }
 
 #[test]

@@ -289,11 +289,7 @@ fn parts_that_are_not_available() {
     );
     mistakes(
         &with("bands: {valence: {model: six-band}}"),
-        &[(
-            1,
-            9,
-            &["valence bands are not available yet", "`conduction` only"],
-        )],
+        &[(1, 26, &["`six-band` is not available yet", "`decoupled`"])],
     );
     mistakes(
         &with("bands: {conduction: {model: eight-band, states: 0}}"),

@@ -4,7 +4,7 @@
 use assert_cmd::Command;
 use wellwright::constants::HBAR2_OVER_2M0;
 use wellwright::diagnostics::Severity;
-use wellwright::models::ConductionOperator;
+use wellwright::models::BandOperator;
 use wellwright::numerics::sensitivity::value_slope;
 use wellwright::structure::{self, Cause, Design, Knob, Stack, Structure, document};
 use wellwright::subbands::{Accuracy, Nearby, change, solve};
@@ -28,7 +28,7 @@ fn levels(text: &str) -> Vec<f64> {
 }
 
 fn levels_of(stack: &Stack, structure: &Structure) -> Vec<f64> {
-    let operator = ConductionOperator::new(stack, structure.conduction.model).unwrap();
+    let operator = BandOperator::conduction(stack, structure.conduction.model).unwrap();
     let solved = solve(&operator, structure.conduction.states, FINE);
     solved.pairs.iter().map(|pair| pair.value).collect()
 }
@@ -37,7 +37,7 @@ fn sensitivities_of(text: &str) -> Vec<Sensitivity> {
     let (structure, stack) = read(text);
     let grading = structure.tolerance.as_ref().and_then(|t| t.grading.clone());
     let design = Design::new(&stack, grading.map(|g| g.length_nm)).unwrap();
-    let operator = ConductionOperator::new(design.stack(), structure.conduction.model).unwrap();
+    let operator = BandOperator::conduction(design.stack(), structure.conduction.model).unwrap();
     let solved = solve(&operator, structure.conduction.states, FINE);
     sensitivities(
         &structure,
@@ -335,7 +335,7 @@ fn shifts_of_repeats_grades_and_interfaces_are_those_of_full_solves() {
 #[test]
 fn shifts_are_the_derivatives_of_tuning() {
     let (structure, stack) = read(&double_well("energy-dependent", Off::default()));
-    let operator = ConductionOperator::new(&stack, structure.conduction.model).unwrap();
+    let operator = BandOperator::conduction(&stack, structure.conduction.model).unwrap();
     let solved = solve(&operator, structure.conduction.states, FINE);
     for found in sensitivities_of(&double_well("energy-dependent", Off::default())) {
         let knob = match found.cause {
@@ -812,11 +812,15 @@ fn shifts_need_no_block() {
     assert!(said.contains("no `tolerance` block"), "{said}");
 }
 
-/// Shipped structures sample without a hitch, and the command says what it must.
+/// Shipped structures sample without a hitch, and the command says what it must. Those about light between the bands have
+/// no `tolerance` block.
 #[test]
 fn shipped_structures_have_tolerances() {
     for entry in std::fs::read_dir("structures").unwrap() {
         let path = entry.unwrap().path();
+        if std::fs::read_to_string(&path).unwrap().contains("valence:") {
+            continue;
+        }
         let run = program()
             .args(["tolerance", "--samples", "200"])
             .arg(&path)

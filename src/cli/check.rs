@@ -3,15 +3,17 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver};
 use super::input::Input;
-use crate::models::ConductionOperator;
+use crate::models::{Band, BandOperator};
 use crate::report::Check;
 use std::path::Path;
 
 pub fn check(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
-    ConductionOperator::new(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    for (band, _) in Band::of(&input.structure) {
+        BandOperator::new(&input.stack, band)
+            .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    }
     input.doubt_growth();
     deliver(
         &Check::new(&input.name, &input.structure, &input.stack),

@@ -5,7 +5,7 @@ use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::Unsuitable;
 use crate::structure::{self, Stack, Structure};
-use crate::subbands::{Hold, State, Subbands};
+use crate::subbands::{Bands, Hold, State, Subbands};
 use std::collections::BTreeSet;
 use std::fs::File;
 use std::io::Read;
@@ -75,6 +75,22 @@ impl Input {
         Exit::WrongInput
     }
 
+    /// Says that a command leaves the holes of the file out.
+    pub fn without_holes(&self, what: &str) {
+        if self.structure.valence.is_some() {
+            let words =
+                format!("{what} the conduction band only; `levels` and `tune` solve the holes too");
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
+    }
+
+    /// Doubts about the solutions of all bands, of each about the states that are listed.
+    pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
+        for (band, shown) in bands.all().iter().zip(shown) {
+            self.doubt(band, *shown);
+        }
+    }
+
     /// Doubts about whether the layers stay coherent.
     pub fn doubt_growth(&self) {
         for problem in epitaxy::doubts(&self.structure, &self.stack) {
@@ -92,13 +108,20 @@ impl Input {
         let alike = |a: &State, b: &State| {
             a.hold == b.hold && (a.hold == Hold::Walls || a.layer == b.layer)
         };
+        let band = subbands.band.name().word();
+        // Holes are the other way up.
+        let (outside, raise) = if subbands.band.sign() > 0.0 {
+            ("above the lower", "raise")
+        } else {
+            ("below the higher", "lower")
+        };
         let mut first = 0;
         for group in states[..shown].chunk_by(alike) {
             let last = first + group.len();
             let (which, many) = if group.len() == 1 {
-                (format!("conduction {last}"), false)
+                (format!("{band} {last}"), false)
             } else {
-                (format!("conduction {} to {last}", first + 1), true)
+                (format!("{band} {} to {last}", first + 1), true)
             };
             first = last;
             let verb = |one: &str, several: &str| (if many { several } else { one }).to_owned();
@@ -115,7 +138,7 @@ impl Input {
             let shift_ev = group.iter().map(|s| s.wall_shift_ev).fold(0.0, f64::max);
             let words = match group[0].hold {
                 Hold::Walls => format!(
-                    "{which} ({place}) {} above the lower outer barrier edge: only the wall holds {}, {} not bound",
+                    "{which} ({place}) {} {outside} outer barrier edge: only the wall holds {}, {} not bound",
                     verb("lies", "lie"),
                     verb("it", "them"),
                     verb("it is", "they are"),
@@ -124,7 +147,7 @@ impl Input {
                     "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result"
                 ),
                 Hold::Bound if shift_ev > WALL_SHIFT_EV => format!(
-                    "the walls raise {which} ({place}) by {} {:.2} meV: make the outer layers wider",
+                    "the walls {raise} {which} ({place}) by {} {:.2} meV: make the outer layers wider",
                     verb("about", "up to about"),
                     1e3 * shift_ev
                 ),

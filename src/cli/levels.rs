@@ -3,22 +3,25 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver};
 use super::input::Input;
-use crate::models::ConductionOperator;
+use crate::models::Band;
 use crate::report::Levels;
-use crate::subbands::{self, Accuracy};
+use crate::subbands::{Accuracy, Bands};
 use std::path::Path;
 
 pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
-    let operator = ConductionOperator::new(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
-    let states = input.structure.conduction.states;
-    let subbands = subbands::solve(&operator, states, Accuracy::default());
-    input.doubt(&subbands, states);
+    let bands = Bands::solve(
+        &input.stack,
+        &Band::of(&input.structure),
+        Accuracy::default(),
+    )
+    .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    let shown = bands.asked_for(&input.structure);
+    input.doubt_all(&bands, &shown);
     input.doubt_growth();
     deliver(
-        &Levels::new(&input.structure, &input.stack, &subbands, states),
+        &Levels::new(&input.structure, &input.stack, &bands, &shown),
         output.format,
         output.output.as_deref(),
         file,

@@ -5,7 +5,7 @@ use super::deliver::{Exit, check_output, print, show, write};
 use super::input::Input;
 use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
@@ -16,6 +16,7 @@ const LEAST_SAMPLES: u32 = 2;
 pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
+    input.without_holes("the picture shows");
     let picture = match what {
         Picture::Bands => Some(bands(&input, width)?),
         Picture::Sensitivities => {
@@ -42,7 +43,7 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
 }
 
 fn bands(input: &Input, width: Width) -> Result<String, Exit> {
-    let operator = ConductionOperator::new(&input.stack, input.structure.conduction.model)
+    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let states = input.structure.conduction.states;
     let subbands = subbands::solve(&operator, states, Accuracy::default());

@@ -6,7 +6,7 @@ use super::input::Input;
 use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
 use crate::growth;
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::report::Sheet;
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
 use crate::subbands::{self, Accuracy};
@@ -32,7 +32,7 @@ pub fn sheet(
         // A plan is made of a `growth` block.
         (Ok(_), None) => return Err(Exit::WrongInput),
     };
-    let operator = ConductionOperator::new(&input.stack, input.structure.conduction.model)
+    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
     let highest = aims.map(|aim| aim.from.index.max(aim.to.index)).max();

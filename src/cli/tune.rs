@@ -67,7 +67,8 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
         ..input
     };
     let report = Tuning::new(&tuned.structure, &outcome, text.clone());
-    tuned.doubt(&outcome.after.subbands, report.states());
+    let listed = Tuning::listed(&tuned.structure, &outcome);
+    tuned.doubt_all(&outcome.after.bands, &listed);
     tuned.doubt_growth();
     if let Some(path) = structures.first() {
         write(path, &text, file)?;

@@ -49,11 +49,14 @@ impl Number for Dual {
         self.value
     }
     fn sqrt(self) -> Self {
-        let value = self.value.sqrt();
-        Dual {
-            value,
-            slope: self.slope / (2.0 * value),
-        }
+        let root = self.value.sqrt();
+        // Where the root is zero it has no slope; a number that is always zero has none either.
+        let slope = if root > 0.0 {
+            0.5 * self.slope / root
+        } else {
+            0.0
+        };
+        Dual { value: root, slope }
     }
 }
 

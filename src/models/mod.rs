@@ -5,22 +5,66 @@
 
 pub mod eight_band;
 mod energy_dependent;
+mod hole;
 pub mod multiband;
 mod parabolic;
 pub mod six_band;
 
+pub use hole::Hole;
+
 use crate::materials::{Dual, Element, Material, Number};
 use crate::numerics::pencil::{Coefficient, Pole};
-use crate::structure::{ConductionModel, Stack};
+use crate::structure::{BandName, ConductionModel, Stack, Structure};
+
+/// A band that is solved on its own.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Band {
+    Conduction(ConductionModel),
+    Hole(Hole),
+}
+
+impl Band {
+    /// The bands that a structure asks for, the conduction band first, each with the number of levels to solve.
+    ///
+    /// The valence levels asked for are those of both hole bands together, so each is solved for as many.
+    pub fn of(structure: &Structure) -> Vec<(Band, usize)> {
+        let conduction = structure.conduction;
+        let mut bands = vec![(Band::Conduction(conduction.model), conduction.states)];
+        if let Some(valence) = structure.valence {
+            bands.extend([Hole::Heavy, Hole::Light].map(|hole| (Band::Hole(hole), valence.states)));
+        }
+        bands
+    }
+
+    /// What the solver's eigenvalues are multiplied with to give the electron's energy: −1 for holes.
+    pub fn sign(self) -> f64 {
+        match self {
+            Band::Conduction(_) => 1.0,
+            Band::Hole(_) => -1.0,
+        }
+    }
+
+    pub fn name(self) -> BandName {
+        match self {
+            Band::Conduction(_) => BandName::Conduction,
+            Band::Hole(Hole::Heavy) => BandName::HeavyHole,
+            Band::Hole(Hole::Light) => BandName::LightHole,
+        }
+    }
+}
 
 /// A and C of one material, with no field.
 fn coefficient<T: Number>(
-    model: ConductionModel,
+    band: Band,
     material: &Material<T>,
+    substrate_lattice_nm: Option<f64>,
 ) -> Result<Coefficient<T>, Unsuitable> {
-    match model {
-        ConductionModel::Parabolic => parabolic::coefficient(material),
-        ConductionModel::EnergyDependent => energy_dependent::coefficient(material),
+    match band {
+        Band::Conduction(ConductionModel::Parabolic) => parabolic::coefficient(material),
+        Band::Conduction(ConductionModel::EnergyDependent) => {
+            energy_dependent::coefficient(material)
+        }
+        Band::Hole(hole) => hole::coefficient(hole, material, substrate_lattice_nm),
     }
 }
 
@@ -42,36 +86,49 @@ pub enum Unsuitable {
     NegativeMass { inverse_mass: f64 },
 }
 
-/// The operator of the conduction band on one stack.
+/// The operator of one band on one stack.
 #[derive(Clone, Debug)]
-pub struct ConductionOperator<'s> {
+pub struct BandOperator<'s> {
     stack: &'s Stack,
-    model: ConductionModel,
+    band: Band,
     /// The coefficients of the layers at their bottom face, without field.
     bottoms: Vec<Coefficient>,
 }
 
-impl<'s> ConductionOperator<'s> {
+impl<'s> BandOperator<'s> {
     /// Checks that every layer has what the model needs. The error carries the number of the first layer that has not.
-    pub fn new(stack: &'s Stack, model: ConductionModel) -> Result<Self, (usize, Unsuitable)> {
+    pub fn new(stack: &'s Stack, band: Band) -> Result<Self, (usize, Unsuitable)> {
         let mut bottoms = Vec::with_capacity(stack.layers.len());
+        let of = |layer, t| {
+            let material = stack.material_at(layer, t);
+            coefficient(band, &material, stack.substrate_lattice_nm())
+                .map_err(|reason| (layer, reason))
+        };
         for layer in 0..stack.layers.len() {
-            bottoms.push(
-                coefficient(model, &stack.material_at(layer, 0.0))
-                    .map_err(|reason| (layer, reason))?,
-            );
+            bottoms.push(of(layer, 0.0)?);
             if !stack.is_uniform(layer) {
                 for t in [0.25, 0.5, 0.75, 1.0] {
-                    coefficient(model, &stack.material_at(layer, t))
-                        .map_err(|reason| (layer, reason))?;
+                    of(layer, t)?;
                 }
             }
         }
         Ok(Self {
             stack,
-            model,
+            band,
             bottoms,
         })
+    }
+
+    /// The operator of the conduction band.
+    pub fn conduction(
+        stack: &'s Stack,
+        model: ConductionModel,
+    ) -> Result<Self, (usize, Unsuitable)> {
+        Self::new(stack, Band::Conduction(model))
+    }
+
+    pub fn band(&self) -> Band {
+        self.band
     }
 
     pub fn stack(&self) -> &'s Stack {
@@ -84,17 +141,34 @@ impl<'s> ConductionOperator<'s> {
             self.bottoms[layer]
         } else {
             // A grade runs between materials that were checked; should a point in between fail, the face stands in.
-            coefficient(self.model, &self.stack.material_at(layer, t))
+            let material = self.stack.material_at(layer, t);
+            coefficient(self.band, &material, self.stack.substrate_lattice_nm())
                 .unwrap_or(self.bottoms[layer])
         };
-        raised(own, self.stack.field_v_per_nm * z_nm)
+        raised(own, self.band.sign() * self.stack.field_v_per_nm * z_nm)
+    }
+
+    /// The band's edge at the bottom face of a layer without the field, in eV.
+    pub fn edge_ev(&self, layer: usize) -> f64 {
+        self.band.sign() * self.bottoms[layer].constant
+    }
+
+    /// ħ²/2m∥ of a hole band at fraction `t` of a layer, in eV nm². `None` for the conduction band, whose mass is the
+    /// same in all directions; a hole without a mass in the plane has the one along growth.
+    pub fn in_plane_stiffness(&self, layer: usize, t: f64) -> Option<f64> {
+        let Band::Hole(hole) = self.band else {
+            return None;
+        };
+        let material = self.stack.material_at(layer, t);
+        hole::in_plane_stiffness(hole, &material).or(Some(self.at(layer, t, 0.0).stiffness))
     }
 
     /// The slopes of A and C with respect to the fraction of an element in the layer's material, the field left out.
     pub fn fraction_slope(&self, layer: usize, t: f64, element: Element) -> Coefficient {
         let slope = |d: Dual| d.slope;
         let material = self.stack.material_slope_at(layer, t, element).ok();
-        match material.and_then(|material| coefficient(self.model, &material).ok()) {
+        let substrate_lattice_nm = self.stack.substrate_lattice_nm();
+        match material.and_then(|m| coefficient(self.band, &m, substrate_lattice_nm).ok()) {
             Some(c) => Coefficient {
                 stiffness: slope(c.stiffness),
                 poles: c.poles.map(|pole| {
@@ -113,7 +187,7 @@ impl<'s> ConductionOperator<'s> {
     }
 }
 
-/// The coefficients with the electron's potential energy raised by `energy_ev`; the gap moves along.
+/// The coefficients with the edge raised by `energy_ev`; the gap moves along.
 fn raised(mut own: Coefficient, energy_ev: f64) -> Coefficient {
     own.constant += energy_ev;
     for pole in own.poles.iter_mut().flatten() {

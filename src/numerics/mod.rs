@@ -12,3 +12,4 @@ pub mod pencil;
 pub mod polyline;
 pub mod quadrature;
 pub mod sensitivity;
+pub mod shared_points;

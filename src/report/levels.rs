@@ -1,12 +1,13 @@
 //! Subband and transition tables of one stack.
 
+use super::interband::Interbands;
 use super::layer_edges::LayerEdges;
 use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::models::model_name;
 use crate::optics::{Transition, transitions};
-use crate::structure::{Stack, Structure};
-use crate::subbands::{Audit, Hold, State, Subbands};
+use crate::structure::{BandName, Stack, Structure};
+use crate::subbands::{Audit, Bands, Hold, Place};
 use serde::Serialize;
 
 /// What the oscillator strengths mean; printed with them.
@@ -20,19 +21,31 @@ const DIPOLE_DEFINITION: &str =
 pub struct Levels {
     title: Option<String>,
     model: &'static str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    valence_model: Option<&'static str>,
     #[serde(rename = "temperature_K")]
     temperature_k: f64,
     #[serde(rename = "field_kV_cm")]
     field_kv_cm: f64,
     width_nm: f64,
     bound_states: usize,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    bound_hole_states: Option<BoundHoles>,
     subbands: Vec<SubbandRow>,
     transitions: Vec<TransitionRow>,
+    #[serde(flatten)]
+    interband: Option<Interbands>,
     oscillator_strength_definition: &'static str,
     dipole_definition: &'static str,
     audit: AuditRow,
     #[serde(flatten)]
     edges: LayerEdges,
+}
+
+#[derive(Debug, Serialize)]
+struct BoundHoles {
+    heavy: usize,
+    light: usize,
 }
 
 #[derive(Debug, Serialize)]
@@ -86,23 +99,29 @@ fn held_by(hold: Hold) -> &'static str {
 }
 
 impl Levels {
-    /// Gathers the tables. `shown` limits the states that are listed: more may have been solved.
-    pub fn new(structure: &Structure, stack: &Stack, subbands: &Subbands, shown: usize) -> Levels {
-        let name = |index: usize| format!("conduction {}", index + 1);
-        let row = |(index, state): (usize, &State)| SubbandRow {
-            band: "conduction",
-            index: index + 1,
-            energy_eV: state.energy_ev,
-            from_edge_meV: 1e3 * state.from_edge_ev,
-            error_meV: 1e3 * state.error_ev,
-            in_plane_mass: state.in_plane_mass_m0,
-            centre_nm: state.centre_nm,
-            extent_nm: state.extent_nm,
-            layer: stack.layers[state.layer].label.clone(),
-            layer_share: state.layer_share,
-            bound: state.hold != Hold::Walls,
-            held_by: held_by(state.hold),
-        };
+    /// Gathers the tables. `shown` limits the states of each band that are listed: more may have been solved.
+    pub fn new(structure: &Structure, stack: &Stack, bands: &Bands, shown: &[usize]) -> Levels {
+        let mut subbands = Vec::new();
+        for (band, solved) in bands.all().iter().enumerate() {
+            let states = solved.states();
+            for (index, state) in states.iter().enumerate().take(shown[band]) {
+                subbands.push(SubbandRow {
+                    band: solved.band.name().word(),
+                    index: index + 1,
+                    energy_eV: state.energy_ev,
+                    from_edge_meV: 1e3 * state.from_edge_ev,
+                    error_meV: 1e3 * state.error_ev,
+                    in_plane_mass: state.in_plane_mass_m0,
+                    centre_nm: state.centre_nm,
+                    extent_nm: state.extent_nm,
+                    layer: stack.layers[state.layer].label.clone(),
+                    layer_share: state.layer_share,
+                    bound: state.hold != Hold::Walls,
+                    held_by: held_by(state.hold),
+                });
+            }
+        }
+        let name = |state: usize| bands.level(Place { band: 0, state }).to_string();
         let transition = |t: &Transition| TransitionRow {
             from: name(t.from),
             to: name(t.to),
@@ -114,6 +133,8 @@ impl Levels {
             normalised_strength: t.normalised_strength,
             overlap: t.overlap,
         };
+        let audits = bands.all().iter().map(|band| band.audit());
+        let audit = audits.reduce(Audit::with).unwrap_or(Audit::CLEAN);
         let Audit {
             orthonormality,
             velocity,
@@ -121,26 +142,32 @@ impl Levels {
             sum_rule,
             returned,
             counted,
-        } = subbands.audit();
+        } = audit;
+        let bound = |band: BandName| -> usize {
+            let own = bands.all().iter().filter(|b| b.band.name() == band);
+            own.map(|b| b.bound_count()).sum()
+        };
         Levels {
             title: structure.title.clone(),
             model: model_name(structure.conduction.model),
+            valence_model: structure.valence.map(|_| "decoupled"),
             temperature_k: structure.temperature_k,
             field_kv_cm: 1e4 * stack.field_v_per_nm,
             width_nm: stack.total_width_nm(),
-            bound_states: subbands.bound_count(),
-            subbands: subbands
-                .states()
+            bound_states: bound(BandName::Conduction),
+            bound_hole_states: structure.valence.map(|_| BoundHoles {
+                heavy: bound(BandName::HeavyHole),
+                light: bound(BandName::LightHole),
+            }),
+            subbands,
+            transitions: transitions(bands.conduction())
                 .iter()
-                .take(shown)
-                .enumerate()
-                .map(row)
-                .collect(),
-            transitions: transitions(subbands)
-                .iter()
-                .filter(|t| t.to < shown)
+                .filter(|t| t.to < shown[0])
                 .map(transition)
                 .collect(),
+            interband: structure
+                .valence
+                .map(|_| Interbands::new(stack, bands, shown)),
             oscillator_strength_definition: STRENGTH_DEFINITION,
             dipole_definition: DIPOLE_DEFINITION,
             audit: AuditRow {
@@ -150,15 +177,10 @@ impl Levels {
                 sum_rule,
                 states_returned: returned,
                 states_counted: counted,
-                faults: subbands.audit().faults(),
+                faults: audit.faults(),
             },
             edges: LayerEdges::new(structure, stack),
         }
-    }
-
-    /// Number of states that are listed.
-    pub fn states(&self) -> usize {
-        self.subbands.len()
     }
 
     /// The edges of strained layers, and what the band offsets rest on.
@@ -174,7 +196,11 @@ impl Levels {
     pub fn tables(&self) -> String {
         let subbands = table(
             &[
-                "conduction",
+                if self.valence_model.is_some() {
+                    "level"
+                } else {
+                    "conduction"
+                },
                 "energy eV",
                 "from edge meV",
                 "error meV",
@@ -189,7 +215,10 @@ impl Levels {
                 .iter()
                 .map(|s| {
                     vec![
-                        s.index.to_string(),
+                        match self.valence_model {
+                            Some(_) => format!("{} {}", s.band, s.index),
+                            None => s.index.to_string(),
+                        },
                         format!("{:.5}", s.energy_eV),
                         format!("{:.2}", s.from_edge_meV),
                         error_mev(1e-3 * s.error_meV),
@@ -239,13 +268,26 @@ impl Levels {
         } else {
             a.faults.join("; ")
         };
+        let interband = self
+            .interband
+            .as_ref()
+            .map(|interband| format!("\n{}", interband.text()))
+            .unwrap_or_default();
+        let holes = self.bound_hole_states.as_ref().map(|holes| {
+            format!(
+                " Of heavy holes {} and of light holes {} lie above the higher one of their own; holes are counted downwards. \
+                 Hole masses in the plane: diagonal approximation, 1/(γ1 + γ2) and 1/(γ1 − γ2).",
+                holes.heavy, holes.light
+            )
+        });
         format!(
-            "{subbands}\n{} below the lower outer barrier edge.\n\n{transitions}\nStrength: {STRENGTH_DEFINITION}.\nDipole: {DIPOLE_DEFINITION}.\n\
+            "{subbands}\n{} below the lower outer barrier edge.{}\n\n{transitions}\nStrength: {STRENGTH_DEFINITION}.\nDipole: {DIPOLE_DEFINITION}.\n{interband}\
              Audit {verdict}: overlaps {:.0e}, velocity and position {:.0e}, mean force {:.0e}, sum rule {:.0e}; {} states found, {} counted.\n",
             match self.bound_states {
                 1 => "One state lies".to_owned(),
                 n => format!("{n} states lie"),
             },
+            holes.unwrap_or_default(),
             a.orthonormality,
             a.velocity_position,
             a.mean_force,
@@ -264,10 +306,14 @@ impl Report for Levels {
             .map(|t| format!("{t}\n"))
             .unwrap_or_default();
         format!(
-            "{title}{} K, field {} kV/cm, {} mass, {:.2} nm between walls\n\n{}{}",
+            "{title}{} K, field {} kV/cm, {} mass{}, {:.2} nm between walls\n\n{}{}",
             given(self.temperature_k, 4),
             given(self.field_kv_cm, 4),
             self.model,
+            match self.valence_model {
+                Some(model) => format!(", {model} holes"),
+                None => String::new(),
+            },
             self.width_nm,
             self.tables(),
             self.edges_text()
@@ -280,6 +326,10 @@ impl Report for Levels {
             csv_table(&self.subbands)?,
             csv_table(&self.transitions)?
         );
+        if let Some(interband) = &self.interband {
+            text.push('\n');
+            text.push_str(&interband.csv()?);
+        }
         if self.edges.are_strained() {
             text.push('\n');
             text.push_str(&csv_table(&self.edges.layers)?);

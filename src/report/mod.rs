@@ -2,6 +2,7 @@
 
 mod check;
 mod dispersion;
+mod interband;
 mod layer_edges;
 mod levels;
 mod materials;

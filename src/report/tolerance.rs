@@ -4,7 +4,7 @@ use super::table::{given, significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
 use crate::models::model_name;
-use crate::structure::{Stack, Structure, Target, Window};
+use crate::structure::{BandName, Stack, Structure, Target, Window};
 use crate::tolerance::{Distributed, Outcome, Ring, Sampled, Share};
 use serde::Serialize;
 
@@ -439,6 +439,11 @@ fn shown(
         let aims = structure.tune.iter().flat_map(|tune| &tune.aims);
         named = aims
             .filter(|aim| matches!(aim.target, Target::EnergyEv(_) | Target::WavelengthUm(_)))
+            .filter(|aim| {
+                [aim.from, aim.to]
+                    .iter()
+                    .all(|l| l.band == BandName::Conduction)
+            })
             .map(|aim| {
                 let (a, b) = (aim.from.index - 1, aim.to.index - 1);
                 (a.min(b), a.max(b))

@@ -4,8 +4,8 @@ use super::levels::Levels;
 use super::table::{significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
-use crate::structure::{Knob, Structure, Target};
-use crate::tune::{Design, Goal, Limit, Outcome, Variable};
+use crate::structure::{BandName, Knob, Structure, Target};
+use crate::tune::{Aim, Design, Goal, Limit, Outcome, Variable};
 use serde::Serialize;
 
 /// A tuning's report.
@@ -69,9 +69,15 @@ fn shown(variable: &Variable, value: f64) -> (f64, &'static str) {
 }
 
 impl Tuning {
-    /// Number of states that are listed.
-    pub fn states(&self) -> usize {
-        self.result.states()
+    /// The states of each band that are listed: those that the file asks for and those that the aims speak of.
+    pub fn listed(structure: &Structure, outcome: &Outcome) -> Vec<usize> {
+        let mut listed = outcome.after.bands.asked_for(structure);
+        for &(from, to) in &outcome.after.states {
+            for place in [from, to] {
+                listed[place.band] = listed[place.band].max(place.state + 1);
+            }
+        }
+        listed
     }
 
     /// Gathers the report; `text` is the tuned structure file.
@@ -83,7 +89,6 @@ impl Tuning {
             continuous,
             ..
         } = outcome;
-        let name = |index: usize| format!("conduction {}", index + 1);
         let wavelength_aims: Vec<bool> = structure
             .tune
             .iter()
@@ -128,8 +133,8 @@ impl Tuning {
                     Goal::LargestDipole => ("largest dipole", "nm", None, None),
                 };
                 AimRow {
-                    from: name(aim.from),
-                    to: name(aim.to),
+                    from: aim.from.to_string(),
+                    to: aim.to.to_string(),
                     aim: kind,
                     unit,
                     target,
@@ -175,11 +180,21 @@ impl Tuning {
             result: Levels::new(
                 structure,
                 &after.stack,
-                &after.subbands,
-                structure.conduction.states.max(highest_state(outcome)),
+                &after.bands,
+                &Tuning::listed(structure, outcome),
             ),
             structure: text,
         }
+    }
+}
+
+/// A transition in a sentence: `1-2`, or `heavy-hole 1 - conduction 1`.
+fn pair(aim: &Aim) -> String {
+    match (aim.from.band, aim.to.band) {
+        (BandName::Conduction, BandName::Conduction) => {
+            format!("{}-{}", aim.from.index, aim.to.index)
+        }
+        _ => format!("{} - {}", aim.from, aim.to),
     }
 }
 
@@ -195,20 +210,9 @@ fn kept(outcome: &Outcome) -> Vec<KeptRow> {
     .collect()
 }
 
-/// The states that the aims speak of are listed, whatever number the file asks for.
-fn highest_state(outcome: &Outcome) -> usize {
-    outcome
-        .after
-        .states
-        .iter()
-        .map(|(from, to)| from.max(to) + 1)
-        .max()
-        .unwrap_or(1)
-}
-
 fn limit_sentences(outcome: &Outcome) -> Vec<String> {
     let task = &outcome.task;
-    let pair = |a: usize| format!("{}-{}", task.aims[a].from + 1, task.aims[a].to + 1);
+    let pair = |a: usize| pair(&task.aims[a]);
     let mut sentences: Vec<String> = outcome
         .limits
         .iter()
@@ -266,11 +270,10 @@ fn notes(outcome: &Outcome) -> Vec<String> {
     }
     for (aim, &(from, to)) in task.aims.iter().zip(&outcome.after.states) {
         for (wanted, now) in [(aim.from, from), (aim.to, to)] {
+            let now = outcome.after.bands.level(now);
             if aim.by_character && wanted != now {
                 notes.push(format!(
-                    "The state with the character of the file's conduction {} is now conduction {}.",
-                    wanted + 1,
-                    now + 1
+                    "The state with the character of the file's {wanted} is now {now}."
                 ));
             }
         }
@@ -284,9 +287,8 @@ fn notes(outcome: &Outcome) -> Vec<String> {
             {
                 let part = 100.0 * miss / (outcome.after.values[a] - miss);
                 notes.push(format!(
-                    "Transition {}-{}: the continuous design meets the aim; whole monolayers leave {part:+.2} %, less than half a monolayer's step.",
-                    aim.from + 1,
-                    aim.to + 1
+                    "Transition {}: the continuous design meets the aim; whole monolayers leave {part:+.2} %, less than half a monolayer's step.",
+                    pair(aim)
                 ));
             }
         }
@@ -323,6 +325,11 @@ impl Tuning {
 impl Report for Tuning {
     fn text(&self) -> String {
         let digits = |value: f64| significant(value, 5);
+        let electrons_only = self.aims.iter().all(|a| {
+            [&a.from, &a.to]
+                .iter()
+                .all(|name| name.starts_with("conduction "))
+        });
         let snapped = self.aims.iter().any(|a| a.continuous.is_some());
         let mut header = vec!["from", "to", "aim", "target", "before"];
         if snapped {
@@ -335,7 +342,10 @@ impl Report for Tuning {
             self.aims
                 .iter()
                 .map(|a| {
-                    let number = |name: &str| name.trim_start_matches("conduction ").to_owned();
+                    let number = |name: &str| match electrons_only {
+                        true => name.trim_start_matches("conduction ").to_owned(),
+                        false => name.to_owned(),
+                    };
                     let mut row = vec![
                         number(&a.from),
                         number(&a.to),

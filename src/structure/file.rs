@@ -6,6 +6,7 @@ use super::rewrite::FreeLine;
 use super::spreads::Tolerance;
 use crate::materials::{Element, Library, Substance};
 use crate::units::Quantity;
+use std::fmt;
 use std::ops::Range;
 
 /// A value with the bytes of the file it was read from.
@@ -38,6 +39,8 @@ pub struct Structure {
     /// The field along the growth direction; `None` when the file has no such key.
     pub field: Option<Spanned<Quantity>>,
     pub conduction: ConductionBand,
+    /// The valence bands, if they are to be solved.
+    pub valence: Option<ValenceBand>,
     /// The library with the materials that the file defines or changes.
     pub library: Library,
     /// The file's layers in its order, each once, however often it is repeated.
@@ -56,6 +59,13 @@ pub struct Structure {
 pub struct ConductionBand {
     pub model: ConductionModel,
     /// How many levels are asked for.
+    pub states: usize,
+}
+
+/// The valence bands that are to be solved: heavy and light holes, each on its own.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct ValenceBand {
+    /// How many levels of both together are asked for, the highest ones.
     pub states: usize,
 }
 
@@ -181,10 +191,45 @@ pub struct Aim {
     pub span: Range<usize>,
 }
 
-/// A level of the conduction band, counted from 1 at the lowest.
+/// A level of a band, counted from 1 at the band's edge: upwards in the conduction band, downwards in the others.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Level {
+    pub band: BandName,
     pub index: usize,
+}
+
+/// A band as files and reports call it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum BandName {
+    Conduction,
+    HeavyHole,
+    LightHole,
+    /// Heavy and light holes together, in the order of their energies.
+    Valence,
+}
+
+impl BandName {
+    pub const ALL: [BandName; 4] = [
+        BandName::Conduction,
+        BandName::HeavyHole,
+        BandName::LightHole,
+        BandName::Valence,
+    ];
+
+    pub fn word(self) -> &'static str {
+        match self {
+            BandName::Conduction => "conduction",
+            BandName::HeavyHole => "heavy-hole",
+            BandName::LightHole => "light-hole",
+            BandName::Valence => "valence",
+        }
+    }
+}
+
+impl fmt::Display for Level {
+    fn fmt(&self, f: &mut fmt::Formatter) -> fmt::Result {
+        write!(f, "{} {}", self.band.word(), self.index)
+    }
 }
 
 /// What a transition shall have.

@@ -25,8 +25,8 @@ mod temperature;
 mod wafer;
 
 pub use file::{
-    Aim, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile, Spanned,
-    StrainBound, Structure, Target, Tune, Variable, Varied, Within,
+    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile,
+    Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;

@@ -1,8 +1,8 @@
 //! The whole of a structure file: text in, checked structure and messages out.
 
 use super::document::{self, Node, Value};
-use super::fields::{Checker, Limits};
-use super::file::{ConductionBand, ConductionModel, Structure};
+use super::fields::{Checker, Fields, Limits};
+use super::file::{BandName, ConductionBand, ConductionModel, Structure, ValenceBand};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
 use super::{read_growth, read_materials, read_tolerance, read_tune};
@@ -112,9 +112,13 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     if let Some(node) = fields.get("ends") {
         ends(checker, node);
     }
-    let conduction = match fields.get("bands") {
+    let (conduction, valence) = match fields.get("bands") {
         Some(node) => bands(checker, node),
-        None => conduction_default(),
+        None => (conduction_default(), None),
+    };
+    let solved = match valence {
+        Some(_) => &BandName::ALL[..],
+        None => &[BandName::Conduction],
     };
     checker.missing(
         &fields,
@@ -128,7 +132,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let entries = layers.as_ref().map_or(&[][..], |layers| &layers.entries);
     let tune = fields
         .get("tune")
-        .and_then(|node| read_tune::tune(checker, node, entries));
+        .and_then(|node| read_tune::tune(checker, node, entries, solved));
     let growth = fields.get("growth").map(|node| {
         if !fields.has("substrate") {
             checker.report(
@@ -161,6 +165,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
             .map_or(DEFAULT_TEMPERATURE_K, |found| found.value.value()),
         field: settled(field)?,
         conduction,
+        valence,
         library: materials.library,
         entries: layers
             .entries
@@ -212,42 +217,66 @@ fn conduction_default() -> ConductionBand {
 }
 
 /// `bands:`; what is mistaken in it has been reported and stays at its default.
-fn bands(checker: &mut Checker, node: &Node) -> ConductionBand {
-    let mut band = conduction_default();
+fn bands(checker: &mut Checker, node: &Node) -> (ConductionBand, Option<ValenceBand>) {
     let Some(fields) = checker.fields(node, "`bands`", &["conduction", "valence"]) else {
-        return band;
+        return (conduction_default(), None);
     };
-    if fields.get("valence").is_some() {
-        let place = key_span(node, "valence").unwrap_or_else(|| fields.head.clone());
-        checker.report(
-            Diagnostic::error("valence bands are not available yet")
-                .at(place)
-                .expected("`conduction` only"),
-        );
-    }
-    let Some(node) = fields.get("conduction") else {
-        return band;
-    };
+    let conduction = fields
+        .get("conduction")
+        .map_or(conduction_default(), |node| conduction(checker, node));
+    let valence = fields.get("valence").map(|node| valence(checker, node));
+    (conduction, valence)
+}
+
+fn conduction(checker: &mut Checker, node: &Node) -> ConductionBand {
+    let mut band = conduction_default();
     let Some(fields) = checker.fields(node, "`conduction`", &["model", "states"]) else {
         return band;
     };
     if let Some(node) = fields.get("model") {
         match checker.word(node, &["parabolic", "energy-dependent", "eight-band"]) {
             Some("energy-dependent") => band.model = ConductionModel::EnergyDependent,
-            Some("eight-band") => checker.report(
-                Diagnostic::error("the model `eight-band` is not available yet")
-                    .at(node.span.clone())
-                    .expected("`parabolic` or `energy-dependent`"),
-            ),
+            Some(model @ "eight-band") => {
+                unavailable(checker, node, model, "`parabolic` or `energy-dependent`");
+            }
             _ => {}
         }
     }
-    if let Some(node) = fields.get("states")
-        && let Some(states) = checker.count(node, read_tune::MAX_LEVELS)
-    {
-        band.states = states as usize;
-    }
+    band.states = states(checker, &fields);
     band
+}
+
+fn valence(checker: &mut Checker, node: &Node) -> ValenceBand {
+    let Some(fields) = checker.fields(node, "`valence`", &["model", "states"]) else {
+        return ValenceBand {
+            states: DEFAULT_STATES as usize,
+        };
+    };
+    if let Some(node) = fields.get("model")
+        && let Some(model @ ("six-band" | "eight-band")) =
+            checker.word(node, &["decoupled", "six-band", "eight-band"])
+    {
+        unavailable(checker, node, model, "`decoupled`");
+    }
+    ValenceBand {
+        states: states(checker, &fields),
+    }
+}
+
+fn unavailable(checker: &mut Checker, node: &Node, model: &str, expected: &str) {
+    checker.report(
+        Diagnostic::error(format!("the model `{model}` is not available yet"))
+            .at(node.span.clone())
+            .expected(expected),
+    );
+}
+
+/// The number of levels asked for.
+fn states(checker: &mut Checker, fields: &Fields) -> usize {
+    let stated = fields
+        .get("states")
+        .and_then(|node| checker.count(node, read_tune::MAX_LEVELS));
+    stated.unwrap_or(DEFAULT_STATES) as usize
 }
 
 /// The line after the title, substrate and temperature, or else the file's first key.

@@ -2,7 +2,7 @@
 
 use super::document::{Node, line_of};
 use super::fields::{Checker, Fields, Limits, above};
-use super::file::{Aim, Follow, Level, Target, Within};
+use super::file::{Aim, BandName, Follow, Level, Target, Within};
 use super::read_tune::MAX_LEVELS;
 use crate::diagnostics::{Diagnostic, probably_meant};
 use crate::units::{self, Dimension};
@@ -14,11 +14,11 @@ const WEIGHT_LIMITS: Limits = above(0.0, 1e6, "more than 0, at most 1e6");
 /// What an aim can be about.
 const TARGETS: [&str; 4] = ["energy", "wavelength", "dipole", "maximize"];
 
-/// The aims of `tune`, those without mistakes.
-pub(super) fn aims(checker: &mut Checker, items: &[Node]) -> Vec<Aim> {
+/// The aims of `tune`, those without mistakes; `solved` are the bands that levels may belong to.
+pub(super) fn aims(checker: &mut Checker, items: &[Node], solved: &[BandName]) -> Vec<Aim> {
     let mut found: Vec<Aim> = Vec::new();
     for item in items {
-        let Some(aim) = aim(checker, item) else {
+        let Some(aim) = aim(checker, item, solved) else {
             continue;
         };
         if let Some(first) = found.iter().find(|other| contradict(other, &aim)) {
@@ -39,20 +39,14 @@ pub(super) fn aims(checker: &mut Checker, items: &[Node]) -> Vec<Aim> {
 
 /// Whether two aims want values of the same thing.
 fn contradict(one: &Aim, other: &Aim) -> bool {
-    let pair = |aim: &Aim| {
-        (
-            aim.from.index.min(aim.to.index),
-            aim.from.index.max(aim.to.index),
-        )
-    };
+    let same_pair = (one.from, one.to) == (other.from, other.to)
+        || (one.from, one.to) == (other.to, other.from);
     let about_energy =
         |aim: &Aim| matches!(aim.target, Target::EnergyEv(_) | Target::WavelengthUm(_));
-    pair(one) == pair(other)
-        && one.follow == other.follow
-        && about_energy(one) == about_energy(other)
+    same_pair && one.follow == other.follow && about_energy(one) == about_energy(other)
 }
 
-fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
+fn aim(checker: &mut Checker, item: &Node, solved: &[BandName]) -> Option<Aim> {
     let fields = checker.fields(
         item,
         "an aim",
@@ -70,8 +64,12 @@ fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
     )?;
     checker.missing(&fields, "this aim", "from", "conduction 1");
     checker.missing(&fields, "this aim", "to", "conduction 2");
-    let from = fields.get("from").and_then(|node| level(checker, node));
-    let to = fields.get("to").and_then(|node| level(checker, node));
+    let from = fields
+        .get("from")
+        .and_then(|node| level(checker, node, solved));
+    let to = fields
+        .get("to")
+        .and_then(|node| level(checker, node, solved));
     let ends_differ = from.is_none() || from != to;
     if !ends_differ && let Some(node) = fields.get("to") {
         checker.report(
@@ -100,9 +98,16 @@ fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
     let (mut from, mut to) = (from?, to.filter(|_| ends_differ)?);
     // Emission is written from the upper level to the lower; counted by energy, it is the same transition. By character,
     // the two may have changed places, and then the order says which of them is to be the upper one.
-    if follow == Follow::Order && from.index > to.index {
+    let lower_first = match (from.band, to.band) {
+        (BandName::Conduction, BandName::Conduction) => from.index < to.index,
+        (one, other) if one == other => from.index > to.index,
+        // Of two different hole bands neither is the lower: the aim says which is meant.
+        (from, _) => from != BandName::Conduction,
+    };
+    if !lower_first && (follow == Follow::Order || from.band != to.band) {
         std::mem::swap(&mut from, &mut to);
     }
+    suits_bands(checker, &fields, [from, to], target, follow)?;
     Some(Aim {
         from,
         to,
@@ -114,26 +119,63 @@ fn aim(checker: &mut Checker, item: &Node) -> Option<Aim> {
     })
 }
 
-/// `conduction 2`.
-pub(super) fn level(checker: &mut Checker, node: &Node) -> Option<Level> {
+/// Holds that an aim between bands asks for what there is between bands.
+fn suits_bands(
+    checker: &mut Checker,
+    fields: &Fields,
+    levels: [Level; 2],
+    target: Option<Target>,
+    follow: Follow,
+) -> Option<()> {
+    let mut fits = true;
+    if levels[0].band != levels[1].band
+        && let Some(key @ ("dipole" | "maximize")) = ["dipole", "maximize"]
+            .into_iter()
+            .find(|key| fields.has(key))
+        && target.is_some()
+    {
+        let node = fields.get(key)?;
+        checker.report(
+            Diagnostic::error("a dipole along growth is between levels of one band")
+                .at(node.span.clone())
+                .expected("`energy` or `wavelength` between bands"),
+        );
+        fits = false;
+    }
+    if follow == Follow::Character && levels.iter().any(|l| l.band == BandName::Valence) {
+        checker.report(
+            Diagnostic::error("`valence` counts levels by energy, whatever their character")
+                .at(fields.get("follow")?.span.clone())
+                .expected("`heavy-hole` or `light-hole` levels to follow"),
+        );
+        fits = false;
+    }
+    fits.then_some(())
+}
+
+/// `conduction 2`, of one of the solved bands.
+pub(super) fn level(checker: &mut Checker, node: &Node, solved: &[BandName]) -> Option<Level> {
     let expected = "a level such as `conduction 2`";
     let text = checker.scalar(node, expected)?;
     let mut words = text.split_whitespace();
-    let (band, index, rest) = (words.next().unwrap_or_default(), words.next(), words.next());
-    let problem = if band != "conduction" {
-        let problem = if ["heavy-hole", "light-hole", "valence"].contains(&band) {
-            Diagnostic::error(format!("the band `{band}` is not solved"))
-        } else {
-            Diagnostic::error(format!("`{band}` is no band"))
-        };
-        match probably_meant(band, ["conduction"]) {
-            Some(meant) => problem.hint(format!("did you mean `{meant}`?")),
-            None => problem,
+    let (word, index, rest) = (words.next().unwrap_or_default(), words.next(), words.next());
+    let known = BandName::ALL.into_iter().find(|band| band.word() == word);
+    let problem = match known {
+        None => {
+            let problem = Diagnostic::error(format!("`{word}` is no band"));
+            match probably_meant(word, solved.iter().map(|band| band.word())) {
+                Some(meant) => problem.hint(format!("did you mean `{meant}`?")),
+                None => problem,
+            }
         }
-    } else {
-        match (index.map(str::parse::<u32>), rest) {
+        Some(band) if !solved.contains(&band) => {
+            Diagnostic::error(format!("the band `{word}` is not solved"))
+                .hint("holes are solved with `valence: {model: decoupled}` under `bands:`")
+        }
+        Some(band) => match (index.map(str::parse::<u32>), rest) {
             (Some(Ok(index)), None) if (1..=MAX_LEVELS).contains(&index) => {
                 return Some(Level {
+                    band,
                     index: index as usize,
                 });
             }
@@ -143,7 +185,7 @@ pub(super) fn level(checker: &mut Checker, node: &Node) -> Option<Level> {
             )),
             (None, _) => Diagnostic::error("the number of the level is missing"),
             _ => Diagnostic::error(format!("`{text}` is no level")),
-        }
+        },
     };
     checker.report(
         problem

@@ -2,7 +2,7 @@
 
 use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Fields, Limits, above, between, one_of};
-use super::file::{Spanned, Structure};
+use super::file::{BandName, Level, Spanned, Structure};
 use super::read_aims::{ENERGY_LIMITS, WAVELENGTH_LIMITS, level};
 use super::read_tune::element;
 use super::spreads::{Grading, Radial, Tolerance, Window};
@@ -269,8 +269,12 @@ fn window(checker: &mut Checker, node: &Node) -> Option<Window> {
     let fields = checker.fields(node, "a window", &["from", "to", "wavelength", "energy"])?;
     checker.missing(&fields, "this window", "from", "conduction 1");
     checker.missing(&fields, "this window", "to", "conduction 2");
-    let from = fields.get("from").and_then(|node| level(checker, node));
-    let to = fields.get("to").and_then(|node| level(checker, node));
+    let from = fields
+        .get("from")
+        .and_then(|node| conduction_level(checker, node));
+    let to = fields
+        .get("to")
+        .and_then(|node| conduction_level(checker, node));
     let bounds = window_bounds(checker, &fields);
     let (from, to) = (from?, to?);
     if from == to {
@@ -283,13 +287,31 @@ fn window(checker: &mut Checker, node: &Node) -> Option<Window> {
         return None;
     }
     let (energies_ev, as_wavelength) = bounds?;
-    let (low, high) = (from.index.min(to.index), from.index.max(to.index));
+    let (from, to) = if from.index < to.index {
+        (from, to)
+    } else {
+        (to, from)
+    };
     Some(Window {
-        from: super::Level { index: low },
-        to: super::Level { index: high },
+        from,
+        to,
         energies_ev,
         as_wavelength,
     })
+}
+
+/// Wafers are sampled for the levels of the conduction band.
+fn conduction_level(checker: &mut Checker, node: &Node) -> Option<Level> {
+    let level = level(checker, node, &BandName::ALL)?;
+    if level.band != BandName::Conduction {
+        checker.report(
+            Diagnostic::error("a window on hole levels is not available yet")
+                .at(node.span.clone())
+                .expected("a level such as `conduction 2`"),
+        );
+        return None;
+    }
+    Some(level)
 }
 
 /// The bounds as energies, and whether they were wavelengths.

@@ -2,7 +2,7 @@
 
 use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Fields, Limits, between, one_of};
-use super::file::{LayerEntry, Tune, Variable, Varied};
+use super::file::{BandName, LayerEntry, Tune, Variable, Varied};
 use super::read_aims;
 use super::read_keep;
 use super::read_layers::{FIELD_LIMITS, WIDTH_LIMITS};
@@ -18,11 +18,12 @@ const MAX_ITEMS: usize = 100;
 
 const FRACTION_LIMITS: Limits = between(0.0, 1.0, "from 0 to 1");
 
-/// Reads `tune`; `entries` holds `None` for a layer that is itself mistaken.
+/// Reads `tune`; `entries` holds `None` for a layer that is itself mistaken, `solved` the bands that aims may name.
 pub(super) fn tune(
     checker: &mut Checker,
     node: &Node,
     entries: &[(Option<String>, Option<LayerEntry>)],
+    solved: &[BandName],
 ) -> Option<Tune> {
     let fields = checker.fields(node, "`tune`", &["vary", "aims", "keep", "snap"])?;
     checker.missing(
@@ -53,7 +54,7 @@ pub(super) fn tune(
             "no aim",
             "energies, wavelengths or dipoles of transitions",
         )?;
-        Some(read_aims::aims(checker, items))
+        Some(read_aims::aims(checker, items, solved))
     });
     let keep = match fields.get("keep") {
         Some(node) => {

@@ -187,7 +187,7 @@ impl Structure {
                 (other, _) => other.clone(),
             };
             let face = stack.face(substance).map_err(refuse)?;
-            match lacking(self.conduction.model, &face.free) {
+            match lacking(self, &face.free) {
                 None => Ok(face),
                 Some(key) => Err(Diagnostic::error(format!(
                     "the material of {} has no `{key}`, which the chosen model needs",
@@ -255,17 +255,25 @@ fn refused(error: &MaterialError, place: &Range<usize>) -> Diagnostic {
     }
 }
 
-/// The first parameter that the model needs and the material lacks.
-fn lacking(model: ConductionModel, material: &Material) -> Option<&'static str> {
+/// The first parameter that the chosen models need and the material lacks.
+fn lacking(structure: &Structure, material: &Material) -> Option<&'static str> {
     let mut needed = vec![
         ("conduction_edge", material.conduction_edge_ev.is_none()),
         ("electron_mass", material.electron_mass_m0.is_none()),
     ];
+    let model = structure.conduction.model;
     if model == ConductionModel::EnergyDependent && material.nonparabolicity_energy_ev.is_none() {
         needed.extend([
             ("gap", material.gap_ev.is_none()),
             ("spin_orbit", material.spin_orbit_ev.is_none()),
             ("kane_energy", material.kane_energy_ev.is_none()),
+        ]);
+    }
+    if structure.valence.is_some() {
+        needed.extend([
+            ("valence_edge", material.valence_edge_ev.is_none()),
+            ("heavy_hole_mass", material.heavy_hole_mass_m0.is_none()),
+            ("light_hole_mass", material.light_hole_mass_m0.is_none()),
         ]);
     }
     needed
@@ -298,6 +306,16 @@ impl Stack {
             faces.push(height);
         }
         faces
+    }
+
+    /// The layer at a height above the bottom, in nm, with the fraction of its width that lies below. An interface belongs
+    /// to the layer above it. `None` outside of the stack.
+    pub fn layer_at(&self, z_nm: f64) -> Option<(usize, f64)> {
+        let faces = self.faces_nm();
+        let above = faces.partition_point(|face| *face <= z_nm);
+        let layer = above.checked_sub(1)?.min(self.layers.len().checked_sub(1)?);
+        let t = (z_nm - faces[layer]) / self.layers[layer].width_nm;
+        (t <= 1.0 + 1e-9).then_some((layer, t.clamp(0.0, 1.0)))
     }
 
     /// Whether the layer has one material throughout.

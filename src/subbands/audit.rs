@@ -28,6 +28,28 @@ pub struct Audit {
 pub const FAULT: f64 = 1e-5;
 
 impl Audit {
+    /// Of nothing at all.
+    pub const CLEAN: Audit = Audit {
+        orthonormality: 0.0,
+        velocity: 0.0,
+        force: 0.0,
+        sum_rule: 0.0,
+        returned: 0,
+        counted: 0,
+    };
+
+    /// The worst of two, states added up.
+    pub fn with(self, other: Audit) -> Audit {
+        Audit {
+            orthonormality: self.orthonormality.max(other.orthonormality),
+            velocity: self.velocity.max(other.velocity),
+            force: self.force.max(other.force),
+            sum_rule: self.sum_rule.max(other.sum_rule),
+            returned: self.returned + other.returned,
+            counted: self.counted + other.counted,
+        }
+    }
+
     /// What is off, in words; empty when all is well.
     pub fn faults(&self) -> Vec<String> {
         let checks = [
@@ -64,12 +86,9 @@ pub(super) fn audit(subbands: &Subbands) -> Audit {
         .map(|pair| envelope(pencil, &pair.vector))
         .collect();
     let mut audit = Audit {
-        orthonormality: 0.0,
-        velocity: 0.0,
-        force: 0.0,
-        sum_rule: 0.0,
         returned: pairs.len(),
         counted: pairs.len(),
+        ..Audit::CLEAN
     };
     for (i, pair) in pairs.iter().enumerate() {
         for (j, other) in pairs.iter().enumerate().skip(i) {

@@ -1,23 +1,24 @@
 //! How the discretised problem of a stack changes when one of its numbers does.
 
 use crate::materials::Element;
-use crate::models::{self, ConductionOperator};
+use crate::models::{self, BandOperator};
 use crate::numerics::pencil::{Coefficient, Pencil};
 use crate::numerics::sensitivity::Change;
 use crate::structure::Knob;
 
 /// The change per nm of width, per unit of fraction, or per V/nm of field.
-pub fn change(operator: &ConductionOperator, pencil: &Pencil, knob: Knob) -> Change {
+pub fn change(operator: &BandOperator, pencil: &Pencil, knob: Knob) -> Change {
     match knob {
         Knob::Width { entry } => width(operator, pencil, entry),
         Knob::Fraction { entry, element } => fraction(operator, pencil, entry, element),
-        Knob::Field => field(pencil),
+        Knob::Field => field(operator, pencil),
     }
 }
 
 /// Elements of the layer stretch, those above it move up; the field's energy moves with the place.
-fn width(operator: &ConductionOperator, pencil: &Pencil, entry: usize) -> Change {
+fn width(operator: &BandOperator, pencil: &Pencil, entry: usize) -> Change {
     let stack = operator.stack();
+    let slope = operator.band().sign() * stack.field_v_per_nm;
     let mut below = 0.0;
     let mut elements = Vec::with_capacity(pencil.mesh.elements.len());
     let mut coefficients = Vec::with_capacity(pencil.coefficients.len());
@@ -35,7 +36,7 @@ fn width(operator: &ConductionOperator, pencil: &Pencil, entry: usize) -> Change
         elements.push((start, stretch));
         for (at, node) in pencil.at(index).iter().zip(&pencil.mesh.reference.nodes) {
             let moved = start + stretch * 0.5 * (1.0 + node);
-            coefficients.push(models::raising(at, stack.field_v_per_nm * moved));
+            coefficients.push(models::raising(at, slope * moved));
         }
     }
     Change {
@@ -44,7 +45,7 @@ fn width(operator: &ConductionOperator, pencil: &Pencil, entry: usize) -> Change
     }
 }
 
-fn fraction(operator: &ConductionOperator, pencil: &Pencil, entry: usize, of: Element) -> Change {
+fn fraction(operator: &BandOperator, pencil: &Pencil, entry: usize, of: Element) -> Change {
     let stack = operator.stack();
     let mut coefficients = Vec::with_capacity(pencil.coefficients.len());
     let mut uniform: Option<(usize, Coefficient)> = None;
@@ -72,11 +73,12 @@ fn fraction(operator: &ConductionOperator, pencil: &Pencil, entry: usize, of: El
     }
 }
 
-fn field(pencil: &Pencil) -> Change {
+fn field(operator: &BandOperator, pencil: &Pencil) -> Change {
+    let sign = operator.band().sign();
     let mut coefficients = Vec::with_capacity(pencil.coefficients.len());
     for (index, element) in pencil.mesh.elements.iter().enumerate() {
         for (q, at) in pencil.at(index).iter().enumerate() {
-            coefficients.push(models::raising(at, pencil.mesh.position(element, q)));
+            coefficients.push(models::raising(at, sign * pencil.mesh.position(element, q)));
         }
     }
     Change {

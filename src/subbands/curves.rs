@@ -1,7 +1,7 @@
 //! The band edge and the squared envelopes as lines for drawing.
 
 use super::Subbands;
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::numerics::pencil::Coefficient;
 use crate::numerics::polyline::simplified;
 use crate::numerics::quadrature::MAX_ORDER;
@@ -38,12 +38,7 @@ const SAMPLES_PER_ORDER: usize = 4;
 
 /// Samples the band edge and the lowest `count` states so that a straight line between neighbouring points is nowhere
 /// off by more than `fineness` times the edge's range or the state's largest value.
-pub fn curves(
-    operator: &ConductionOperator,
-    subbands: &Subbands,
-    count: usize,
-    fineness: f64,
-) -> Curves {
+pub fn curves(operator: &BandOperator, subbands: &Subbands, count: usize, fineness: f64) -> Curves {
     let mesh = &subbands.pencil.mesh;
     let samples = SAMPLES_PER_ORDER * mesh.order();
     let shares: Vec<f64> = (0..=samples).map(|k| k as f64 / samples as f64).collect();
@@ -58,7 +53,11 @@ pub fn curves(
             })
         })
         .collect();
-    let edge: Vec<[f64; 2]> = sampled.iter().map(|(z, at)| [*z, at.constant]).collect();
+    let sign = operator.band().sign();
+    let edge: Vec<[f64; 2]> = sampled
+        .iter()
+        .map(|(z, at)| [*z, sign * at.constant])
+        .collect();
     let low = edge.iter().fold(f64::INFINITY, |a, p| a.min(p[1]));
     let high = edge.iter().fold(f64::NEG_INFINITY, |a, p| a.max(p[1]));
     let places: Vec<f64> = shares.iter().map(|share| 2.0 * share - 1.0).collect();

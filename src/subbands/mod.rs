@@ -1,6 +1,7 @@
 //! Solved subbands of a stack: energies, envelopes, where they sit, and an audit of the solution.
 
 mod audit;
+mod bands;
 mod change;
 mod curves;
 mod envelope;
@@ -11,13 +12,14 @@ mod state;
 pub mod strengths;
 
 pub use audit::Audit;
+pub use bands::{Bands, Place};
 pub use change::change;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
 pub use nearby::{Nearby, lower_outer_edge_ev};
 pub use state::{Hold, State, in_plane_mass_m0};
 
-use crate::models::ConductionOperator;
+use crate::models::{Band, BandOperator};
 use crate::numerics::eigenpairs::{self, Eigenpair};
 use crate::numerics::mesh::Mesh;
 use crate::numerics::pencil::Pencil;
@@ -47,18 +49,23 @@ const MAX_HALVINGS: usize = 4;
 /// The order is raised by this much for the error estimate.
 const ORDER_STEP: usize = 2;
 
-/// The lowest states of one band with the discretised problem they solve.
+/// The states of one band nearest its edge with the discretised problem they solve.
+///
+/// For holes the problem is that of minus the energy: its lowest eigenvalue is the highest level.
 #[derive(Clone, Debug)]
 pub struct Subbands {
+    pub band: Band,
     pub pencil: Pencil,
     pub pairs: Vec<Eigenpair>,
     /// Estimated discretisation error of each energy, eV.
     pub errors_ev: Vec<f64>,
+    /// ħ²/2m∥ at the nodes of each element where it is not the pencil's A: in hole bands.
+    in_plane_stiffness: Option<Vec<f64>>,
 }
 
 /// Solves for the `count` lowest states; fewer come back only when the stack is too small a box to hold them on the
 /// finest mesh.
-pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) -> Subbands {
+pub fn solve(operator: &BandOperator, count: usize, accuracy: Accuracy) -> Subbands {
     let (lengths, mut pieces) = resolution::pieces(operator, count);
     let mut halvings = 0;
     loop {
@@ -85,7 +92,7 @@ pub fn solve(operator: &ConductionOperator, count: usize, accuracy: Accuracy) ->
 }
 
 /// Solves on a given mesh, with the errors estimated on a higher order.
-pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subbands {
+pub fn on_mesh(operator: &BandOperator, mesh: Mesh, count: usize) -> Subbands {
     let pencil = pencil_on(operator, mesh);
     let pairs = eigenpairs::lowest(&pencil, count);
     let finer = pencil_on(
@@ -94,13 +101,34 @@ pub fn on_mesh(operator: &ConductionOperator, mesh: Mesh, count: usize) -> Subba
     );
     let errors_ev = eigenpairs::improvements(&pencil, &pairs, &finer);
     Subbands {
+        band: operator.band(),
+        in_plane_stiffness: in_plane_stiffness(operator, &pencil.mesh),
         pencil,
         pairs,
         errors_ev: errors_ev.into_iter().map(f64::abs).collect(),
     }
 }
 
-fn pencil_on(operator: &ConductionOperator, mesh: Mesh) -> Pencil {
+fn in_plane_stiffness(operator: &BandOperator, mesh: &Mesh) -> Option<Vec<f64>> {
+    let mut list = Vec::new();
+    if operator.band().sign() > 0.0 {
+        return None;
+    }
+    for element in &mesh.elements {
+        let uniform = operator.stack().is_uniform(element.segment);
+        let first = operator.in_plane_stiffness(element.segment, 0.0)?;
+        for q in 0..=mesh.order() {
+            list.push(if uniform {
+                first
+            } else {
+                operator.in_plane_stiffness(element.segment, mesh.fraction(element, q))?
+            });
+        }
+    }
+    Some(list)
+}
+
+fn pencil_on(operator: &BandOperator, mesh: Mesh) -> Pencil {
     Pencil::new(mesh, |mesh, element, q| {
         operator.at(
             element.segment,
@@ -111,7 +139,12 @@ fn pencil_on(operator: &ConductionOperator, mesh: Mesh) -> Pencil {
 }
 
 impl Subbands {
-    /// What is known of each state, in the order of energy.
+    /// The energy of a state, on the absolute scale, in eV.
+    pub fn energy_ev(&self, index: usize) -> f64 {
+        self.band.sign() * self.pairs[index].value
+    }
+
+    /// What is known of each state, those nearest the band's edge first.
     pub fn states(&self) -> Vec<State> {
         (0..self.pairs.len())
             .map(|index| state::describe(self, index))
@@ -123,7 +156,7 @@ impl Subbands {
         audit::audit(self)
     }
 
-    /// Number of states below the lower of the two outer barrier edges.
+    /// Number of states that lie nearer to the band's edge than both outer barriers.
     pub fn bound_count(&self) -> usize {
         eigenpairs::count_below(&self.pencil, state::lower_outer_edge_ev(&self.pencil))
     }

@@ -1,7 +1,7 @@
 //! Energies of stacks that differ little from a solved one, fast: thousands of them, one after the other.
 
 use super::{Subbands, pencil_on, state};
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::numerics::mesh::Mesh;
 use crate::numerics::nearby::lowest_near;
 use crate::numerics::pencil::Pencil;
@@ -28,7 +28,7 @@ impl<'s> Nearby<'s> {
     }
 
     /// The discretised problem of a stack with the same number of layers.
-    pub fn pencil(&self, operator: &ConductionOperator) -> Pencil {
+    pub fn pencil(&self, operator: &BandOperator) -> Pencil {
         let layers = &operator.stack().layers;
         let lengths: Vec<f64> = layers.iter().map(|layer| layer.width_nm).collect();
         let order = self.solved.pencil.mesh.order();

@@ -1,6 +1,6 @@
 //! How many elements each layer gets.
 
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::numerics::mesh::Mesh;
 
 /// Largest phase (or decay exponent) that one element of order 8 has to follow. Measured on wells, double wells and
@@ -10,7 +10,7 @@ const MAX_PHASE: f64 = 5.0;
 const MAX_PIECES: usize = 4000;
 
 /// Layer widths in nm, and the number of elements in each.
-pub fn pieces(operator: &ConductionOperator, count: usize) -> (Vec<f64>, Vec<usize>) {
+pub fn pieces(operator: &BandOperator, count: usize) -> (Vec<f64>, Vec<usize>) {
     let lengths: Vec<f64> = operator
         .stack()
         .layers

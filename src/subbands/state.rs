@@ -20,11 +20,13 @@ pub enum Hold {
 #[derive(Clone, Debug)]
 pub struct State {
     pub energy_ev: f64,
-    /// Height above the lowest point of the band edge in the stack, the field included.
+    /// Distance from the band's edge where it is nearest to the gap in the stack, the field included: upwards in the
+    /// conduction band, downwards for holes.
     pub from_edge_ev: f64,
     /// Estimated discretisation error of the energy.
     pub error_ev: f64,
-    /// 1/m∥ is the mean of 1/m(E, z) in the state: the curvature of the subband at its bottom, in free-electron masses.
+    /// 1/m∥ is the mean of 1/m(E, z) in the state: the curvature of the subband at its edge, in free-electron masses.
+    /// For holes that of the diagonal approximation, counted positive.
     pub in_plane_mass_m0: f64,
     /// Mean position above the bottom of the stack.
     pub centre_nm: f64,
@@ -78,7 +80,7 @@ pub(super) fn integrate(pencil: &Pencil, mut f: impl FnMut(usize, usize) -> f64)
 }
 
 /// The lower of the two outer barrier edges, each taken at its highest point: below it a classical particle is turned
-/// back on both sides.
+/// back on both sides. For holes on the scale of minus the energy.
 pub(super) fn lower_outer_edge_ev(pencil: &Pencil) -> f64 {
     let elements = &pencil.mesh.elements;
     let highest = |segment: usize| {
@@ -100,7 +102,11 @@ pub fn in_plane_mass_m0(subbands: &Subbands, index: usize) -> f64 {
     let pair = &pairs[index];
     let kinetic = integrate(pencil, |e, q| {
         let value = pencil.mesh.local(e, &pair.vector)[q];
-        pencil.at(e)[q].a(pair.value) * value * value
+        let along = match &subbands.in_plane_stiffness {
+            Some(in_plane) => in_plane[e * (pencil.mesh.order() + 1) + q],
+            None => pencil.at(e)[q].a(pair.value),
+        };
+        along * value * value
     });
     HBAR2_OVER_2M0 / kinetic
 }
@@ -108,7 +114,8 @@ pub fn in_plane_mass_m0(subbands: &Subbands, index: usize) -> f64 {
 pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
     let pencil = &subbands.pencil;
     let pair = &subbands.pairs[index];
-    let energy_ev = pair.value;
+    // The solver's eigenvalue: minus the energy for holes.
+    let level_ev = pair.value;
     let p = pencil.mesh.order();
     let density = density(subbands, index);
     let at = |e: usize, q: usize| density[e * (p + 1) + q];
@@ -137,9 +144,9 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
         pencil.coefficients[0],
         pencil.coefficients[pencil.coefficients.len() - 1],
     );
-    let hold = if energy_ev > lower_outer_edge_ev(pencil) {
+    let hold = if level_ev > lower_outer_edge_ev(pencil) {
         Hold::Walls
-    } else if energy_ev > first.constant.min(last.constant) {
+    } else if level_ev > first.constant.min(last.constant) {
         Hold::Leaky
     } else {
         Hold::Bound
@@ -151,15 +158,15 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
             .zip(pressures)
             // The envelope falls by exp(−κ d): a wall moved out by d works against a pressure falling as exp(−2 κ d).
             .map(|(c, pressure)| {
-                pressure / (2.0 * ((c.constant - energy_ev) / c.a(energy_ev)).sqrt())
+                pressure / (2.0 * ((c.constant - level_ev) / c.a(level_ev)).sqrt())
             })
             .sum()
     } else {
         0.0
     };
     State {
-        energy_ev,
-        from_edge_ev: energy_ev - pencil.floor(),
+        energy_ev: subbands.energy_ev(index),
+        from_edge_ev: level_ev - pencil.floor(),
         error_ev: subbands.errors_ev[index],
         in_plane_mass_m0: in_plane_mass_m0(subbands, index),
         centre_nm,

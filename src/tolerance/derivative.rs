@@ -6,7 +6,7 @@
 //! differences leave no more than rounding. In this way fluxes, compositions, interfaces and temperature follow the very code that
 //! grows a sampled wafer.
 
-use crate::models::{ConductionOperator, unchanging};
+use crate::models::{BandOperator, unchanging};
 use crate::numerics::pencil::Coefficient;
 use crate::numerics::sensitivity::{Change, value_slope};
 use crate::structure::{Cause, ConductionModel, Design};
@@ -70,7 +70,7 @@ pub fn level_slopes(
         design
             .grow(&mut wafer, std::slice::from_ref(cause), &[offset * step])
             .ok()?;
-        let operator = ConductionOperator::new(&wafer, model).ok()?;
+        let operator = BandOperator::conduction(&wafer, model).ok()?;
         let pencil = nearby.pencil(&operator);
         let weight = weight / step;
         for ((start, length), element) in change.elements.iter_mut().zip(&pencil.mesh.elements) {

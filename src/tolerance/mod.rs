@@ -13,7 +13,7 @@ pub use sampling::{Distributed, Sampled, Source, Watch, WindowYield, sample, sou
 pub use sensitivities::{Sensitivity, sensitivities};
 pub use statistics::{Histogram, Share, Statistics, share};
 
-use crate::models::{ConductionOperator, Unsuitable};
+use crate::models::{BandOperator, Unsuitable};
 use crate::structure::{Design, Stack, Structure};
 use crate::subbands::{self, Accuracy, Nearby, Subbands};
 
@@ -82,7 +82,7 @@ pub fn tolerance(
     let highest = windows.iter().map(|window| window.to.index).max();
     let levels = structure.conduction.states.max(highest.unwrap_or(0));
 
-    let operator = ConductionOperator::new(stack, model)
+    let operator = BandOperator::conduction(stack, model)
         .map_err(|(layer, reason)| ToleranceError::Unsuitable { layer, reason })?;
     let abrupt = subbands::solve(&operator, levels, accuracy);
 
@@ -94,7 +94,7 @@ pub fn tolerance(
     let solved = match grading_nm {
         None => abrupt.clone(),
         Some(_) => {
-            let operator = ConductionOperator::new(design.stack(), model).map_err(unsuitable)?;
+            let operator = BandOperator::conduction(design.stack(), model).map_err(unsuitable)?;
             subbands::solve(&operator, levels, accuracy)
         }
     };
@@ -107,7 +107,7 @@ pub fn tolerance(
     let sampled = match stated {
         None => None,
         Some(tolerance) => {
-            let operator = ConductionOperator::new(design.stack(), model).map_err(unsuitable)?;
+            let operator = BandOperator::conduction(design.stack(), model).map_err(unsuitable)?;
             let coarse = Accuracy {
                 tolerance_ev: accuracy.tolerance_ev.max(SAMPLING_TOLERANCE_EV),
             };

@@ -1,7 +1,7 @@
 //! The levels from the centre of a wafer to its edge.
 
 use super::ToleranceError;
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::structure::{Cause, ConductionModel, Design, Radial};
 use crate::subbands::{self, Accuracy};
 
@@ -34,7 +34,7 @@ pub fn rings(
         design
             .grow(&mut wafer, &[Cause::Rate], &[-drop])
             .map_err(|_| ToleranceError::NoLayer)?;
-        let operator = ConductionOperator::new(&wafer, model)
+        let operator = BandOperator::conduction(&wafer, model)
             .map_err(|(layer, reason)| ToleranceError::interface(design, layer, reason))?;
         let solved = subbands::solve(&operator, levels, accuracy);
         rings.push(Ring {

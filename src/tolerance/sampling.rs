@@ -3,7 +3,7 @@
 use super::derivative::level_slopes;
 use super::statistics::{Histogram, Share, Statistics, histogram, share, statistics};
 use crate::constants::HC_EV_UM;
-use crate::models::ConductionOperator;
+use crate::models::BandOperator;
 use crate::structure::{
     Cause, ConductionModel, Design, NotGrown, Stack, Structure, Tolerance, Window,
 };
@@ -249,7 +249,7 @@ fn wafer(
     stack: &mut Stack,
 ) -> Result<Wafer, NotGrown> {
     design.grow(stack, causes, amounts)?;
-    let operator = ConductionOperator::new(stack, model).map_err(|_| NotGrown)?;
+    let operator = BandOperator::conduction(stack, model).map_err(|_| NotGrown)?;
     let pencil = nearby.pencil(&operator);
     let mut guesses_ev: Vec<f64> = nearby
         .solved()

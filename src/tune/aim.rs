@@ -1,21 +1,23 @@
 //! What a design is tuned for, as residuals of a least-squares problem.
 
+use crate::structure::Level;
+
 /// The goal of one aim.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum Goal {
     /// E(to) − E(from) in eV; a wavelength is kept as its energy.
     Energy { target_ev: f64, within_ev: f64 },
-    /// |⟨from|z|to⟩| in nm.
+    /// |⟨from|z|to⟩| in nm, of two levels of one band.
     Dipole { target_nm: f64, within_nm: f64 },
     /// As large a dipole as the other aims allow.
     LargestDipole,
 }
 
-/// One aim on a pair of subbands, numbered from 0.
+/// One aim on a pair of levels.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Aim {
-    pub from: usize,
-    pub to: usize,
+    pub from: Level,
+    pub to: Level,
     pub goal: Goal,
     pub weight: f64,
     /// The states are those that have the character of the file's states, whatever their order becomes.

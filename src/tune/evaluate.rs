@@ -2,13 +2,14 @@
 
 use super::aim::{Aim, Goal};
 use super::keep::Keep;
-use crate::models::{ConductionOperator, Unsuitable};
+use crate::models::{Band, BandOperator, Unsuitable};
 use crate::numerics::sensitivity::{
     Change, PairSlope, moment, moment_slope, pair_slopes, value_slope,
 };
-use crate::structure::{ConductionModel, Knob, Stack};
-use crate::subbands::{self, Accuracy, Subbands, change};
+use crate::structure::{BandName, Knob, Level, Stack};
+use crate::subbands::{self, Accuracy, Bands, Place, Subbands, change};
 use nalgebra::{DMatrix, DVector};
+use std::collections::HashMap;
 
 /// One variable with its bounds, in inner units.
 #[derive(Clone, Debug, PartialEq)]
@@ -40,22 +41,21 @@ impl Variable {
 #[derive(Clone, Debug)]
 pub struct Task {
     pub stack: Stack,
-    pub model: ConductionModel,
+    /// The bands to solve, the conduction band first, with their numbers of states.
+    pub bands: Vec<(Band, usize)>,
     pub variables: Vec<Variable>,
     pub aims: Vec<Aim>,
     pub keeps: Vec<Keep>,
     pub accuracy: Accuracy,
-    /// Number of states to solve for.
-    pub count: usize,
 }
 
 /// A solved design.
 #[derive(Clone, Debug)]
 pub struct Design {
     pub stack: Stack,
-    pub subbands: Subbands,
+    pub bands: Bands,
     /// The pair of states that each aim speaks of here.
-    pub states: Vec<(usize, usize)>,
+    pub states: Vec<(Place, Place)>,
     /// Energy in eV or dipole in nm of each aim.
     pub values: Vec<f64>,
     /// The value of each bound on strain.
@@ -71,20 +71,28 @@ impl Design {
     }
 }
 
-/// Envelopes of the states that aims by character speak of.
-pub type Characters = Vec<Vec<f64>>;
+/// Envelopes of the states that aims by character speak of, band by band.
+pub type Characters = Vec<Vec<Vec<f64>>>;
+
+/// The envelopes of all states of a design.
+pub fn characters(design: &Design) -> Characters {
+    let bands = design.bands.all().iter();
+    bands
+        .map(|band| subbands::layer_envelopes(band, &design.stack))
+        .collect()
+}
 
 /// States beyond the highest that an aim names, so that a followed state is still among the solved after crossings.
 const SPARE_STATES: usize = 3;
 
 impl Task {
-    /// Number of states that the aims need.
-    pub fn states_needed(aims: &[Aim]) -> usize {
-        let highest = aims
-            .iter()
-            .map(|aim| aim.from.max(aim.to) + 1)
-            .max()
-            .unwrap_or(1);
+    /// Number of states of a band that the aims need.
+    pub fn states_needed(aims: &[Aim], band: Band) -> usize {
+        let own = |level: &Level| {
+            level.band == band.name() || (level.band == BandName::Valence && band.sign() < 0.0)
+        };
+        let levels = || aims.iter().flat_map(|aim| [aim.from, aim.to]);
+        let highest = levels().filter(own).map(|l| l.index).max().unwrap_or(1);
         if aims.iter().any(|aim| aim.by_character) {
             highest + SPARE_STATES
         } else {
@@ -118,26 +126,30 @@ impl Task {
         stack: Stack,
         characters: Option<&Characters>,
     ) -> Result<Design, (usize, Unsuitable)> {
-        let operator = ConductionOperator::new(&stack, self.model)?;
-        let subbands = subbands::solve(&operator, self.count, self.accuracy);
-        let own: Vec<Vec<f64>> = match characters {
-            Some(_) => subbands::layer_envelopes(&subbands, &stack),
+        let bands = Bands::solve(&stack, &self.bands, self.accuracy)?;
+        let own: Vec<Vec<Vec<f64>>> = match characters {
+            Some(_) => bands
+                .all()
+                .iter()
+                .map(|band| subbands::layer_envelopes(band, &stack))
+                .collect(),
             None => Vec::new(),
         };
-        let last = subbands.pairs.len().saturating_sub(1);
-        let states: Vec<(usize, usize)> = self
+        let states: Vec<(Place, Place)> = self
             .aims
             .iter()
-            .map(|aim| match characters {
-                Some(wanted) if aim.by_character => {
-                    let alike = |k: usize| {
-                        wanted
-                            .get(k)
-                            .map_or(k.min(last), |envelope| most_alike(envelope, &own))
-                    };
-                    (alike(aim.from), alike(aim.to))
-                }
-                _ => (aim.from.min(last), aim.to.min(last)),
+            .map(|aim| {
+                let place = |level: Level| {
+                    let Place { band, state } = bands.place(level);
+                    let wanted = characters
+                        .filter(|_| aim.by_character)
+                        .and_then(|all| all.get(band)?.get(level.index - 1));
+                    Place {
+                        band,
+                        state: wanted.map_or(state, |envelope| most_alike(envelope, &own[band])),
+                    }
+                };
+                (place(aim.from), place(aim.to))
             })
             .collect();
         let values: Vec<f64> = self
@@ -145,8 +157,11 @@ impl Task {
             .iter()
             .zip(&states)
             .map(|(aim, &(from, to))| match aim.goal {
-                Goal::Energy { .. } => subbands.pairs[to].value - subbands.pairs[from].value,
-                _ => moment(&subbands.pencil, &subbands.pairs[from], &subbands.pairs[to]).abs(),
+                Goal::Energy { .. } => bands.energy_ev(to) - bands.energy_ev(from),
+                _ => {
+                    let Subbands { pencil, pairs, .. } = bands.of(from);
+                    moment(pencil, &pairs[from.state], &pairs[to.state]).abs()
+                }
             })
             .collect();
         let residuals = self
@@ -159,10 +174,9 @@ impl Task {
         let excesses = excesses.map(|(keep, &value)| keep.residual(value).0);
         let count = self.aims.len() + self.keeps.len();
         let residuals = DVector::from_iterator(count, residuals.chain(excesses));
-        drop(operator);
         Ok(Design {
             stack,
-            subbands,
+            bands,
             states,
             values,
             kept,
@@ -173,38 +187,47 @@ impl Task {
     /// The slopes of the aims' values: one row per aim, one column per variable, per inner unit of the variable.
     pub fn value_slopes(&self, design: &Design) -> DMatrix<f64> {
         let mut slopes = DMatrix::zeros(self.aims.len(), self.variables.len());
-        let Ok(operator) = ConductionOperator::new(&design.stack, self.model) else {
-            return slopes;
-        };
-        let Subbands { pencil, pairs, .. } = &design.subbands;
-        let changes: Vec<Change> = self
-            .variables
+        let changes: Vec<Vec<Change>> = design
+            .bands
+            .all()
             .iter()
-            .map(|v| change(&operator, pencil, v.knob))
+            .map(|solved| {
+                // A design that was solved has its operators.
+                let operator = BandOperator::new(&design.stack, solved.band).ok();
+                self.variables
+                    .iter()
+                    .filter_map(|v| Some(change(operator.as_ref()?, &solved.pencil, v.knob)))
+                    .collect()
+            })
             .collect();
-        let mut with_vectors: Vec<Option<Vec<PairSlope>>> = vec![None; pairs.len()];
+        let energy_slope = |place: Place, column: usize| {
+            let solved = design.bands.of(place);
+            let change = changes[place.band].get(column);
+            let slope = change.map(|c| value_slope(&solved.pencil, c, &solved.pairs[place.state]));
+            solved.band.sign() * slope.unwrap_or(0.0)
+        };
+        let mut with_vectors: HashMap<(usize, usize), Vec<PairSlope>> = HashMap::new();
         for (row, (aim, &(from, to))) in self.aims.iter().zip(&design.states).enumerate() {
             if aim.goal.is_energy() {
-                for (column, change) in changes.iter().enumerate() {
-                    slopes[(row, column)] = value_slope(pencil, change, &pairs[to])
-                        - value_slope(pencil, change, &pairs[from]);
+                for column in 0..self.variables.len() {
+                    slopes[(row, column)] = energy_slope(to, column) - energy_slope(from, column);
                 }
                 continue;
             }
-            for state in [from, to] {
-                if with_vectors[state].is_none() {
-                    with_vectors[state] = Some(pair_slopes(pencil, &changes, &pairs[state]));
-                }
+            let Subbands { pencil, pairs, .. } = design.bands.of(from);
+            let changes = &changes[from.band];
+            for place in [from, to] {
+                with_vectors
+                    .entry((place.band, place.state))
+                    .or_insert_with(|| pair_slopes(pencil, changes, &pairs[place.state]));
             }
-            if let (Some(from_slopes), Some(to_slopes)) = (&with_vectors[from], &with_vectors[to]) {
-                let sign = moment(pencil, &pairs[from], &pairs[to]).signum();
-                for (column, change) in changes.iter().enumerate() {
-                    let (i, j) = (
-                        (&pairs[from], &from_slopes[column]),
-                        (&pairs[to], &to_slopes[column]),
-                    );
-                    slopes[(row, column)] = sign * moment_slope(pencil, change, i, j);
-                }
+            let [from_slopes, to_slopes] =
+                [from, to].map(|place| &with_vectors[&(place.band, place.state)]);
+            let (i, j) = (&pairs[from.state], &pairs[to.state]);
+            let sign = moment(pencil, i, j).signum();
+            for (column, change) in changes.iter().enumerate() {
+                let (i, j) = ((i, &from_slopes[column]), (j, &to_slopes[column]));
+                slopes[(row, column)] = sign * moment_slope(pencil, change, i, j);
             }
         }
         slopes

@@ -18,9 +18,11 @@ pub use search::{Stage, Watch};
 pub use snap::SnapError;
 
 use crate::constants::HC_EV_UM;
-use crate::models::Unsuitable;
-use crate::structure::{self, Follow, Knob, Stack, Structure, Target, Varied, Within};
-use crate::subbands::{self, Accuracy};
+use crate::models::{Band, Unsuitable};
+use crate::structure::{
+    self, BandName, Follow, Knob, Level, Stack, Structure, Target, Varied, Within,
+};
+use crate::subbands::Accuracy;
 use search::Found;
 
 /// An energy counts as met within this part of it, a dipole within the other, unless the file says `within`.
@@ -105,27 +107,39 @@ fn within_bounds(
         .iter()
         .filter_map(|v| variable(v, structure, stack))
         .collect();
-    let needed = Task::states_needed(&aims);
+    let asked = Band::of(structure);
+    let counts = |listed: bool| -> Vec<(Band, usize)> {
+        let needed = |&(band, count): &(Band, usize)| {
+            let needed = Task::states_needed(&aims, band);
+            (band, if listed { needed.max(count) } else { needed })
+        };
+        asked.iter().map(needed).collect()
+    };
+    let mut searched = counts(false);
+    // Holes that no aim names need not be solved on the way.
+    let electrons_only = |aim: &Aim| [aim.from, aim.to].iter().all(is_electron);
+    if aims.iter().all(electrons_only) {
+        searched.truncate(1);
+    }
     let task = Task {
         stack: stack.clone(),
-        model: structure.conduction.model,
+        bands: counts(true),
         variables,
         aims,
         keeps: keep::keeps(structure, stack),
         accuracy,
-        count: needed.max(structure.conduction.states),
     };
     let searching = Task {
         accuracy: Accuracy {
             tolerance_ev: accuracy.tolerance_ev.max(SEARCH_TOLERANCE_EV),
         },
-        count: needed,
+        bands: searched,
         ..task.clone()
     };
     let unsuitable = |(layer, reason)| TuneError::Unsuitable { layer, reason };
     let before = task.design(stack.clone(), None).map_err(unsuitable)?;
     let by_character = task.aims.iter().any(|aim| aim.by_character);
-    let characters = by_character.then(|| subbands::layer_envelopes(&before.subbands, stack));
+    let characters = by_character.then(|| evaluate::characters(&before));
     let started_outside = task
         .variables
         .iter()
@@ -227,9 +241,13 @@ fn snapped(
 
 /// The characters of the file's states, with the followed ones as they are in a design.
 fn reference(task: &Task, before: &Design, design: &Design) -> evaluate::Characters {
-    let mut characters = subbands::layer_envelopes(&before.subbands, &before.stack);
+    let mut characters = evaluate::characters(before);
     search::follow(task, &mut characters, design);
     characters
+}
+
+fn is_electron(level: &Level) -> bool {
+    level.band == BandName::Conduction
 }
 
 fn aim(wish: &structure::Aim) -> Aim {
@@ -257,8 +275,8 @@ fn aim(wish: &structure::Aim) -> Aim {
         Target::MaximizeDipole => Goal::LargestDipole,
     };
     Aim {
-        from: wish.from.index - 1,
-        to: wish.to.index - 1,
+        from: wish.from,
+        to: wish.to,
         goal,
         weight: wish.weight,
         by_character: wish.follow == Follow::Character,
@@ -303,7 +321,7 @@ fn on_written_steps(task: &Task, design: &Design, whole: bool) -> Option<Design>
     // The step changes no order: the states are the design's own, by their numbers there.
     let mut same_states = task.clone();
     for (aim, &(from, to)) in same_states.aims.iter_mut().zip(&design.states) {
-        (aim.from, aim.to) = (from, to);
+        (aim.from, aim.to) = (design.bands.level(from), design.bands.level(to));
     }
     same_states.design(stack, None).ok()
 }

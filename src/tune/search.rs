@@ -1,9 +1,8 @@
 //! The search over continuous variables: a descent from the file's design, and where that does not reach the aims,
 //! descents from the best of many starts spread over the box.
 
-use super::evaluate::{Characters, Design, Task};
+use super::evaluate::{Characters, Design, Task, characters};
 use super::least_squares::BoundedLeastSquares;
-use crate::subbands;
 use argmin::core::{Error, Executor, Jacobian, Operator};
 use nalgebra::{DMatrix, DVector};
 use rayon::prelude::*;
@@ -97,11 +96,14 @@ impl Jacobian for Descent<'_> {
 }
 
 /// Takes over the followed states' envelopes from a design.
-pub fn follow(task: &Task, characters: &mut Characters, design: &Design) {
-    let own = subbands::layer_envelopes(&design.subbands, &design.stack);
+pub fn follow(task: &Task, followed: &mut Characters, design: &Design) {
+    let own = characters(design);
     for (aim, &(from, to)) in task.aims.iter().zip(&design.states) {
-        for (wanted, state) in [(aim.from, from), (aim.to, to)] {
-            if let (Some(place), Some(envelope)) = (characters.get_mut(wanted), own.get(state)) {
+        for (wanted, now) in [(aim.from, from), (aim.to, to)] {
+            let place = followed
+                .get_mut(now.band)
+                .and_then(|band| band.get_mut(wanted.index - 1));
+            if let (Some(place), Some(envelope)) = (place, own[now.band].get(now.state)) {
                 place.clone_from(envelope);
             }
         }

@@ -14,7 +14,7 @@ use crate::models::model_name;
 use crate::numerics::polyline::simplified;
 use crate::optics::{Transition, transitions};
 use crate::report::table::significant;
-use crate::structure::{ConductionModel, Item, Stack, Structure};
+use crate::structure::{BandName, ConductionModel, Item, Stack, Structure};
 use crate::subbands::{Curves, Hold, StateCurves, Subbands};
 
 /// How finely the curves of a diagram are to be sampled: well below a line's width.
@@ -520,8 +520,10 @@ fn chosen(structure: &Structure, subbands: &Subbands, shown: usize) -> Vec<Trans
     if let Some(tune) = &structure.tune {
         let named = |t: &Transition| {
             tune.aims.iter().any(|aim| {
-                let pair = [aim.from.index, aim.to.index];
-                pair == [t.from + 1, t.to + 1] || pair == [t.to + 1, t.from + 1]
+                let levels = [aim.from, aim.to];
+                let pair = levels.map(|level| level.index);
+                levels.iter().all(|l| l.band == BandName::Conduction)
+                    && (pair == [t.from + 1, t.to + 1] || pair == [t.to + 1, t.from + 1])
             })
         };
         all.retain(named);

@@ -1,0 +1,51 @@
+//! Heavy- and light-hole edges of a layer grown coherently on (001).
+//!
+//! G. L. Bir and G. E. Pikus, Symmetry and Strain-Induced Effects in Semiconductors (Wiley 1974); with the split-off
+//! coupling in closed form as in C. Y.-P. Chao and S. L. Chuang, Phys. Rev. B 46, 4110 (1992), eqs. 25–27:
+//!
+//! E_hh = Ev − Q,  E_lh = Ev + (Q − Δ + √(Δ² + 2ΔQ + 9Q²))/2,  Q = −b (ε∥ − ε_zz),
+//!
+//! with Ev moved by −a_v Tr ε beforehand. Under compression Q < 0 and the heavy holes lie on top.
+
+use super::dual::Number;
+use super::material::Material;
+use super::strain::strain;
+
+/// The edges in eV, on the scale of the material's valence edge.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct HoleEdges<T = f64> {
+    pub heavy_ev: T,
+    pub light_ev: T,
+}
+
+/// The hole edges of a material whose valence edge already carries the hydrostatic shift, as
+/// [`strained`](super::strained) leaves it.
+///
+/// Both are that edge when there is no substrate, when the strain is unknown, or without `shear_b`. Without `spin_orbit`
+/// the split-off band is taken to be far away: E_lh = Ev + Q. `None` without a valence edge.
+pub fn hole_edges<T: Number>(
+    material: &Material<T>,
+    substrate_lattice_nm: Option<f64>,
+) -> Option<HoleEdges<T>> {
+    let edge = material.valence_edge_ev?;
+    let strain = substrate_lattice_nm.and_then(|lattice| strain(material, lattice));
+    let (Some(strain), Some(b)) = (strain, material.shear_b_ev) else {
+        return Some(HoleEdges {
+            heavy_ev: edge,
+            light_ev: edge,
+        });
+    };
+    let q = -(b * (strain.in_plane - strain.growth));
+    let light_shift = match material.spin_orbit_ev {
+        None => q,
+        Some(split) => {
+            let (two, nine) = (T::constant(2.0), T::constant(9.0));
+            let root = (split * split + two * split * q + nine * q * q).sqrt();
+            (q - split + root) / two
+        }
+    };
+    Some(HoleEdges {
+        heavy_ev: edge - q,
+        light_ev: edge + light_shift,
+    })
+}
