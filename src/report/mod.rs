@@ -34,7 +34,7 @@ pub trait Report: Serialize {
     /// The tables as CSV, one after the other with an empty line between.
     fn csv(&self) -> Result<String, csv::Error>;
 
-    /// One JSON object, its numbers to [`JSON_DIGITS`] significant digits.
+    /// One JSON object, its numbers to twelve significant digits.
     fn json(&self) -> Result<String, serde_json::Error> {
         let mut object = serde_json::to_value(self)?;
         round(&mut object);

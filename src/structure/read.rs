@@ -267,7 +267,10 @@ fn unavailable(checker: &mut Checker, node: &Node, model: &str, expected: &str) 
     checker.report(
         Diagnostic::error(format!("the model `{model}` is not available yet"))
             .at(node.span.clone())
-            .expected(expected),
+            .expected(expected)
+            .hint(format!(
+                "`wellwright dispersion --model {model}` solves it for levels, masses and E(k∥)"
+            )),
     );
 }
 
