@@ -23,6 +23,8 @@ pub enum Dimension {
     LengthRate,
     /// A part of the quantity that is spoken of; 1 % is 0.01 inside.
     Percentage,
+    /// The inner unit is 1/nm.
+    WaveVector,
 }
 
 impl Dimension {
@@ -40,6 +42,7 @@ impl Dimension {
             Dimension::MonolayerRate => "a growth rate in monolayers",
             Dimension::LengthRate => "a growth rate",
             Dimension::Percentage => "a percentage",
+            Dimension::WaveVector => "a wave vector",
         }
     }
 
@@ -57,6 +60,7 @@ impl Dimension {
             Dimension::MonolayerRate => "0.70 ML/s",
             Dimension::LengthRate => "1.0 µm/h",
             Dimension::Percentage => "0.7 %",
+            Dimension::WaveVector => "0.5 nm^-1",
         }
     }
 }
@@ -126,6 +130,8 @@ pub static UNITS: &[Unit] = &[
     unit!("Å/s", LengthRate, 0.1, "A/s", "Å/s"),
     unit!("µm/h", LengthRate, 1.0 / 3.6, "μm/h", "um/h"),
     unit!("%", Percentage, 1e-2),
+    unit!("nm^-1", WaveVector, 1.0, "1/nm", "/nm"),
+    unit!("cm^-1", WaveVector, 1e-7, "1/cm", "/cm"),
 ];
 
 /// A number with its unit, as the user wrote it.

@@ -80,6 +80,34 @@ pub enum Command {
         #[arg(short, long, value_name = "FILE")]
         output: Option<PathBuf>,
     },
+    /// Follow the subbands of coupled bands along an in-plane wave vector
+    Dispersion {
+        /// Structure file
+        file: PathBuf,
+        /// Bands that are coupled: heavy, light and split-off holes, or these and the electrons
+        #[arg(long, value_enum, default_value_t = Coupled::SixBand)]
+        model: Coupled,
+        /// Subbands of each band, counted from the gap
+        #[arg(long, value_name = "N", default_value_t = 4, value_parser = clap::value_parser!(u8).range(1..=50))]
+        states: u8,
+        /// Direction of the wave vector
+        #[arg(long, value_enum, default_value_t = Along::Axis)]
+        along: Along,
+        /// Largest wave vector with its unit
+        #[arg(
+            long,
+            value_name = "WAVE VECTOR",
+            default_value = "0.5 nm^-1",
+            allow_hyphen_values = true
+        )]
+        to: String,
+        /// Wave vectors from zero to the largest
+        #[arg(long, value_name = "N", default_value_t = 26, value_parser = clap::value_parser!(u16).range(2..=1000))]
+        points: u16,
+        /// A file name ending in .svg receives the picture
+        #[command(flatten)]
+        output: Output,
+    },
     /// List the material library, or print one material's parameters
     Materials {
         /// Chemical formula, such as GaAs or Al0.3Ga0.7As
@@ -117,6 +145,22 @@ pub enum SheetFormat {
     Json,
     /// One page that holds everything and prints on A4
     Html,
+}
+
+/// Coupled bands.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Coupled {
+    SixBand,
+    EightBand,
+}
+
+/// Direction of the in-plane wave vector.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Along {
+    #[value(name = "100")]
+    Axis,
+    #[value(name = "110")]
+    Diagonal,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]

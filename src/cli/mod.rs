@@ -3,6 +3,7 @@
 mod arguments;
 mod check;
 mod deliver;
+mod dispersion;
 mod input;
 mod levels;
 mod materials;

@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, levels, materials, plot, sheet, tolerance, tune};
+use super::{check, dispersion, levels, materials, plot, sheet, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -31,6 +31,15 @@ pub fn run(arguments: Arguments) -> Exit {
             width,
             output,
         } => plot::plot(&file, what, width.into(), output.as_deref()),
+        Command::Dispersion {
+            file,
+            model,
+            states,
+            along,
+            to,
+            points,
+            output,
+        } => dispersion::dispersion(&file, (model, states), (along, &to, points), &output),
         Command::Materials {
             formula,
             temperature,

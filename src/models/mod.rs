@@ -3,9 +3,12 @@
 //!
 //! A model supplies the coefficients of one layer and knows nothing of meshes.
 
+pub mod eight_band;
 mod energy_dependent;
 mod hole;
+pub mod multiband;
 mod parabolic;
+pub mod six_band;
 
 pub use hole::Hole;
 

@@ -163,6 +163,10 @@ impl Banded {
 }
 
 impl Factored {
+    pub fn size(&self) -> usize {
+        self.matrix.size()
+    }
+
     /// Number of negative eigenvalues.
     pub fn negative(&self) -> usize {
         self.negative

@@ -2,9 +2,12 @@
 //! here.
 
 pub mod banded;
+pub mod curvature;
 pub mod eigenpairs;
+pub mod matrix_pencil;
 pub mod mesh;
 pub mod nearby;
+pub mod nearest;
 pub mod pencil;
 pub mod polyline;
 pub mod quadrature;

@@ -1,6 +1,7 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
 mod check;
+mod dispersion;
 mod interband;
 mod layer_edges;
 mod levels;
@@ -16,6 +17,7 @@ mod tolerance;
 mod tuning;
 
 pub use check::Check;
+pub use dispersion::Dispersion;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
 pub use sheet::Sheet;

@@ -5,9 +5,11 @@ mod bands;
 mod change;
 mod curves;
 mod envelope;
+pub mod multiband;
 mod nearby;
 mod resolution;
 mod state;
+pub mod strengths;
 
 pub use audit::Audit;
 pub use bands::{Bands, Place};

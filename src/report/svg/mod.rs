@@ -6,6 +6,7 @@
 mod axes;
 mod band_diagram;
 mod bars;
+mod dispersion;
 mod histogram;
 mod key;
 mod ladder;
@@ -18,6 +19,7 @@ mod tolerances;
 
 pub use band_diagram::{BandDiagram, FINENESS};
 pub use bars::{SensitivityBar, SensitivityBars};
+pub use dispersion::DispersionCurves;
 pub use histogram::{Gaussian, Window, YieldHistogram};
 pub use text::width_pt as text_width_pt;
 pub use tolerances::{sensitivity_bars, yield_histogram};

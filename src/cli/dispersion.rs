@@ -1,0 +1,95 @@
+//! `dispersion`: subbands of coupled bands along an in-plane wave vector.
+
+use super::arguments::{Along, Coupled, Output};
+use super::deliver::{Exit, check_output, complain, deliver, show, write};
+use super::input::Input;
+use crate::diagnostics::Diagnostic;
+use crate::models::multiband::{Direction, MultibandModel, MultibandOperator};
+use crate::report::Dispersion;
+use crate::report::svg::Width;
+use crate::subbands::multiband::{Wanted, follow_multiband, solve_multiband, zone_centre_masses};
+use crate::units::{self, Dimension};
+use std::path::Path;
+
+/// Each energy is this exact, in eV: a tenth of the last digit that is printed.
+const TOLERANCE_EV: f64 = 1e-6;
+/// Beyond this wave vector, in 1/nm, no model of bands around the zone's centre holds.
+const LARGEST_PER_NM: f64 = 2.0;
+
+pub fn dispersion(
+    file: &Path,
+    (model, states): (Coupled, u8),
+    (along, to, points): (Along, &str, u16),
+    output: &Output,
+) -> Result<Exit, Exit> {
+    let input = Input::read(file)?;
+    check_output(output.output.as_deref(), file)?;
+    let furthest = match units::parse(to, &[Dimension::WaveVector]) {
+        Ok(quantity) if quantity.value() > 0.0 && quantity.value() <= LARGEST_PER_NM => {
+            quantity.value()
+        }
+        Ok(_) => {
+            complain(&format!(
+                "error: --to {to}: expected a wave vector above 0 and up to {LARGEST_PER_NM} nm^-1"
+            ));
+            return Err(Exit::WrongInput);
+        }
+        Err(error) => {
+            complain(&format!(
+                "error: --to: {error}; expected one such as \"0.5 nm^-1\""
+            ));
+            return Err(Exit::WrongInput);
+        }
+    };
+    let model = match model {
+        Coupled::SixBand => MultibandModel::SixBand,
+        Coupled::EightBand => MultibandModel::EightBand,
+    };
+    let (direction, name) = match along {
+        Along::Axis => (Direction::ALONG_100, "[100]"),
+        Along::Diagonal => (Direction::ALONG_110, "[110]"),
+    };
+    let operator =
+        MultibandOperator::new(&input.stack, model, direction).map_err(|(layer, reason)| {
+            let layer = &input.stack.layers[layer];
+            let words = format!("the material of `{}` {reason}", layer.label);
+            let mut problem = Diagnostic::error(words);
+            if let Some(entry) = input.structure.entries.get(layer.entry) {
+                problem = problem.at(entry.material.span.clone());
+            }
+            show(&problem, &input.name, &input.text);
+            Exit::WrongInput
+        })?;
+    let wanted = Wanted {
+        conduction: match model {
+            MultibandModel::SixBand => 0,
+            MultibandModel::EightBand => usize::from(states),
+        },
+        valence: usize::from(states),
+    };
+    let k_per_nm: Vec<f64> = (0..points)
+        .map(|step| furthest * f64::from(step) / f64::from(points - 1))
+        .collect();
+    let centre = solve_multiband(&operator, 0.0, wanted, TOLERANCE_EV);
+    let masses_m0 = zone_centre_masses(&operator, &centre);
+    let followed = follow_multiband(&operator, &k_per_nm, wanted, TOLERANCE_EV);
+    let report = Dispersion::new(
+        (&input.structure, &input.stack),
+        model,
+        name,
+        &centre,
+        &masses_m0,
+        &k_per_nm,
+        &followed,
+    );
+    match output.output.as_deref() {
+        Some(path)
+            if path
+                .extension()
+                .is_some_and(|e| e.eq_ignore_ascii_case("svg")) =>
+        {
+            write(path, &report.svg(Width::Page), file)
+        }
+        path => deliver(&report, output.format, path, file),
+    }
+}

@@ -1,0 +1,574 @@
+//! Subbands of coupled bands: six-band holes, and eight bands with the electrons among them.
+//!
+//! States are told by their number, counted from the gap: on a mesh the matrix has as many conduction levels as there are
+//! values of the conduction function, whatever the layers (for bands in a common gap it is quasi-definite: Vanderbei,
+//! SIAM J. Optim. 5, 100 (1995)). So no state is taken for one of the other band, even where the gap is broken.
+
+use crate::constants::HBAR2_OVER_2M0;
+use crate::models::multiband::{MultibandModel, MultibandOperator, Part};
+use crate::numerics::curvature::curvature;
+use crate::numerics::matrix_pencil::{MatrixCoefficient, MatrixPencil};
+use crate::numerics::mesh::Mesh;
+use crate::numerics::nearest::{self, NearPair};
+use rayon::prelude::*;
+use std::borrow::Cow;
+
+/// How many states of each band are wanted, counted from the gap. Six bands have no conduction states.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Wanted {
+    pub conduction: usize,
+    pub valence: usize,
+}
+
+/// The side of the gap.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Band {
+    Conduction,
+    Valence,
+}
+
+/// Parts of a state, which add up to one.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Shares {
+    pub conduction: f64,
+    pub heavy: f64,
+    pub light: f64,
+    pub split_off: f64,
+}
+
+/// A pair of states that the reversal of time joins at k∥ = 0.
+#[derive(Clone, Debug)]
+pub struct PairState {
+    pub band: Band,
+    /// From 1 at the gap.
+    pub number: usize,
+    /// Electron energies of the two members on the absolute scale; equal at k∥ = 0, and in a stack that is its own mirror
+    /// image. Where k∥ lies in no mirror plane, two neighbours in energy are taken for a pair.
+    pub energies_ev: [f64; 2],
+    /// Estimated discretisation error.
+    pub error_ev: f64,
+    /// Of the first member.
+    pub shares: Shares,
+}
+
+/// The states at one k∥.
+#[derive(Clone, Debug)]
+pub struct MultibandSubbands {
+    pub k_per_nm: f64,
+    /// One problem for each part of H, or one for the whole where k∥ lies in no mirror plane.
+    pub parts: Vec<PartSolution>,
+    /// Conduction states upwards from the gap, then valence states downwards.
+    pub states: Vec<PairState>,
+}
+
+/// The solved problem of one part of H.
+#[derive(Clone, Debug)]
+pub struct PartSolution {
+    pub pencil: MatrixPencil,
+    /// Upwards from the gap.
+    pub conduction: Vec<NearPair>,
+    /// Downwards from the gap.
+    pub valence: Vec<NearPair>,
+}
+
+/// A subband followed through k∥.
+#[derive(Clone, Debug)]
+pub struct FollowedBand {
+    pub band: Band,
+    /// At the first k∥.
+    pub number: usize,
+    pub energies_ev: Vec<[f64; 2]>,
+    /// Of the first member.
+    pub shares: Vec<Shares>,
+}
+
+/// Orders that are tried in turn before the elements are halved.
+const ORDERS: [usize; 2] = [8, 12];
+const MAX_HALVINGS: usize = 3;
+/// The order is raised by this much for the error estimate.
+const ORDER_STEP: usize = 2;
+/// Largest phase or decay exponent that one element has to follow.
+const MAX_PHASE: f64 = 5.0;
+const MAX_PIECES: usize = 400;
+/// The band offsets that decide over the mesh are taken to be at least this, in eV.
+const LEAST_DEPTH_EV: f64 = 0.15;
+/// Where levels of an unknown stack are looked for first, from the edge, in eV.
+const FIRST_STEP_EV: f64 = 0.05;
+/// States are followed with this many more at hand, so that none leaves the list.
+const SPARE: usize = 2;
+/// A step along k∥ is halved where a state looks like its follower by less than this.
+const ALIKE: f64 = 0.6;
+const MAX_DEPTH: usize = 5;
+
+/// Solves at one k∥ on a mesh that is refined until the estimated errors are below the tolerance, or as fine as is
+/// sensible; the errors that were reached are reported.
+pub fn solve_multiband(
+    operator: &MultibandOperator,
+    k_per_nm: f64,
+    wanted: Wanted,
+    tolerance_ev: f64,
+) -> MultibandSubbands {
+    let lengths: Vec<f64> = operator.stack().layers.iter().map(|l| l.width_nm).collect();
+    let mut pieces = pieces(operator);
+    let mut halvings = 0;
+    loop {
+        for order in ORDERS {
+            let subbands = multiband_on_mesh(
+                operator,
+                Mesh::new(&lengths, &pieces, order),
+                k_per_nm,
+                wanted,
+            );
+            let exact = subbands.states.iter().all(|s| s.error_ev <= tolerance_ev);
+            if exact || (halvings == MAX_HALVINGS && order == ORDERS[ORDERS.len() - 1]) {
+                return subbands;
+            }
+        }
+        pieces.iter_mut().for_each(|n| *n *= 2);
+        halvings += 1;
+    }
+}
+
+/// Solves on a given mesh, with the errors estimated on a higher order.
+pub fn multiband_on_mesh(
+    operator: &MultibandOperator,
+    mesh: Mesh,
+    k_per_nm: f64,
+    wanted: Wanted,
+) -> MultibandSubbands {
+    let parts = solve_parts(operator, &mesh, k_per_nm, wanted);
+    let finer = mesh.with_order(mesh.order() + ORDER_STEP);
+    let finer = pencil(operator, finer, k_per_nm, kinds(operator)[0]);
+    let moves = |pairs: &[NearPair]| {
+        let mut ascending = pairs.to_vec();
+        ascending.sort_by(|a, b| a.value.total_cmp(&b.value));
+        nearest::improvements(&parts[0].pencil, &ascending, &finer)
+    };
+    let conduction_moves = moves(&parts[0].conduction);
+    let mut valence_moves = moves(&parts[0].valence);
+    valence_moves.reverse();
+    let mut states = Vec::new();
+    for (band, moves) in [
+        (Band::Conduction, conduction_moves),
+        (Band::Valence, valence_moves),
+    ] {
+        let per_pair = 2 / parts.len();
+        for index in 0..fewest(&parts, band) / per_pair {
+            let [first, second] = members(&parts, band, index);
+            states.push(PairState {
+                band,
+                number: index + 1,
+                energies_ev: [first.1.value, second.1.value],
+                error_ev: moves[index * per_pair].abs(),
+                shares: shares(first.0, first.1),
+            });
+        }
+    }
+    MultibandSubbands {
+        k_per_nm,
+        parts,
+        states,
+    }
+}
+
+/// The two members of a pair with their problems.
+fn members(parts: &[PartSolution], band: Band, index: usize) -> [(&MatrixPencil, &NearPair); 2] {
+    let at = |part: usize, place: usize| (&parts[part].pencil, &list(&parts[part], band)[place]);
+    if parts.len() == 2 {
+        [at(0, index), at(1, index)]
+    } else {
+        [at(0, 2 * index), at(0, 2 * index + 1)]
+    }
+}
+
+/// How many states of a band every part has.
+fn fewest(parts: &[PartSolution], band: Band) -> usize {
+    let counts = parts.iter().map(|part| list(part, band).len());
+    counts.min().unwrap_or(0)
+}
+
+fn kinds(operator: &MultibandOperator) -> &'static [Part] {
+    if operator.direction().is_mirror_plane() {
+        &[Part::Plus, Part::Minus]
+    } else {
+        &[Part::Both]
+    }
+}
+
+/// The problem of one part of H on a mesh.
+pub fn pencil(operator: &MultibandOperator, mesh: Mesh, k_per_nm: f64, part: Part) -> MatrixPencil {
+    let field = operator.stack().field_v_per_nm;
+    on(operator, mesh, part, |layer, t, z_nm| {
+        let block = operator.block(layer, t);
+        block.at(k_per_nm, part, field * z_nm)
+    })
+}
+
+/// The derivative of the problem of one part with respect to k∥.
+pub(super) fn derivative(
+    operator: &MultibandOperator,
+    mesh: &Mesh,
+    k_per_nm: f64,
+    part: Part,
+) -> MatrixPencil {
+    on(operator, mesh.clone(), part, |layer, t, _| {
+        let [mut slope, second] = operator.block(layer, t).orders(part);
+        slope.c += 2.0 * k_per_nm * second.c;
+        slope
+    })
+}
+
+/// A problem with one set of coefficients per layer or place.
+fn on(
+    operator: &MultibandOperator,
+    mesh: Mesh,
+    part: Part,
+    coefficient: impl Fn(usize, f64, f64) -> MatrixCoefficient,
+) -> MatrixPencil {
+    let frame = mesh.clone();
+    let n = operator.model().components() * if part == Part::Both { 2 } else { 1 };
+    MatrixPencil::new(mesh, n, |element, q| {
+        Cow::Owned(coefficient(
+            element.segment,
+            frame.fraction(element, q),
+            frame.position(element, q),
+        ))
+    })
+}
+
+fn solve_parts(
+    operator: &MultibandOperator,
+    mesh: &Mesh,
+    k_per_nm: f64,
+    wanted: Wanted,
+) -> Vec<PartSolution> {
+    let parts = kinds(operator).iter();
+    parts
+        .map(|&part| solve_part(operator, mesh, k_per_nm, wanted, part, None))
+        .collect()
+}
+
+/// Solves one part of H. The levels are looked for first amid those of `nearby`, a solution at a k∥ not far off, or next
+/// to the edges of the stack.
+fn solve_part(
+    operator: &MultibandOperator,
+    mesh: &Mesh,
+    k_per_nm: f64,
+    wanted: Wanted,
+    part: Part,
+    nearby: Option<&PartSolution>,
+) -> PartSolution {
+    let pencil = pencil(operator, mesh.clone(), k_per_nm, part);
+    let copies = if part == Part::Both { 2 } else { 1 };
+    let gap = 3 * copies * (mesh.node_count() - 2);
+    let [floor_ev, top_ev] = band_edges(operator);
+    let guess = |levels: Option<&[NearPair]>, otherwise: f64| match levels {
+        Some([.., _, _]) => levels.map_or(otherwise, amid),
+        _ => otherwise,
+    };
+    let conduction = match operator.model() {
+        MultibandModel::SixBand => Vec::new(),
+        MultibandModel::EightBand => nearest::numbered(
+            &pencil,
+            gap..gap + copies * wanted.conduction,
+            guess(nearby.map(|n| &n.conduction[..]), floor_ev + FIRST_STEP_EV),
+            FIRST_STEP_EV,
+        ),
+    };
+    let mut valence = nearest::numbered(
+        &pencil,
+        gap.saturating_sub(copies * wanted.valence)..gap,
+        guess(nearby.map(|n| &n.valence[..]), top_ev - FIRST_STEP_EV),
+        FIRST_STEP_EV,
+    );
+    valence.reverse();
+    PartSolution {
+        pencil,
+        conduction,
+        valence,
+    }
+}
+
+/// Halfway between the two middle ones of at least two levels.
+fn amid(levels: &[NearPair]) -> f64 {
+    let upper = levels.len() / 2;
+    0.5 * (levels[upper - 1].value + levels[upper].value)
+}
+
+/// The lowest conduction edge (NaN without) and the highest valence edge of the stack, the field included, at the faces.
+fn band_edges(operator: &MultibandOperator) -> [f64; 2] {
+    let stack = operator.stack();
+    let faces = stack.faces_nm();
+    let (mut floor, mut top) = (f64::INFINITY, f64::NEG_INFINITY);
+    for layer in 0..stack.layers.len() {
+        for (t, z_nm) in [(0.0, faces[layer]), (1.0, faces[layer + 1])] {
+            let c = &operator.block(layer, t).c[0];
+            let n = c.nrows();
+            let raised = stack.field_v_per_nm * z_nm;
+            floor = floor.min(c[(0, 0)] + raised);
+            top = top.max(c[(n - 3, n - 3)].max(c[(n - 2, n - 2)]) + raised);
+        }
+    }
+    [floor, top]
+}
+
+/// The number of elements in each layer.
+fn pieces(operator: &MultibandOperator) -> Vec<usize> {
+    let stack = operator.stack();
+    let [floor_ev, top_ev] = band_edges(operator);
+    let mut pieces = Vec::new();
+    for (layer, own) in stack.layers.iter().enumerate() {
+        let block = operator.block(layer, 0.0);
+        let n = block.a.nrows();
+        let mut rate = 0.0_f64;
+        if operator.model() == MultibandModel::EightBand {
+            let depth_ev = (block.c[0][(0, 0)] - floor_ev).abs().max(LEAST_DEPTH_EV);
+            // Light electrons: a twentieth of the free mass is near that of most wells.
+            rate = rate.max(depth_ev * 0.05 / HBAR2_OVER_2M0);
+        }
+        let heavy = n - 3;
+        let depth_ev = (top_ev - block.c[0][(heavy, heavy)])
+            .abs()
+            .max(LEAST_DEPTH_EV);
+        rate = rate.max(depth_ev / block.a[(heavy, heavy)].abs());
+        let count = (rate.sqrt() * own.width_nm / MAX_PHASE).ceil() as usize;
+        pieces.push(count.clamp(1, MAX_PIECES));
+    }
+    pieces
+}
+
+fn shares(pencil: &MatrixPencil, pair: &NearPair) -> Shares {
+    let n = pencil.components();
+    let mut squares = vec![0.0; n];
+    for (index, x) in pair.vector.iter().enumerate() {
+        squares[index % n] += x * x;
+    }
+    let of_block = if n.is_multiple_of(4) { 4 } else { 3 };
+    let sum = |from_end: usize| -> f64 {
+        let own = squares.iter().enumerate();
+        own.filter(|(k, _)| k % of_block + from_end == of_block)
+            .map(|(_, s)| s)
+            .sum()
+    };
+    Shares {
+        conduction: if of_block == 4 { sum(4) } else { 0.0 },
+        heavy: sum(3),
+        light: sum(2),
+        split_off: sum(1),
+    }
+}
+
+/// The in-plane mass of each pair at k∥ = 0 in free-electron masses, from the second derivative of its energy: exact
+/// second-order perturbation of the discretised problem, with the sum over all other states done by a solve. Positive
+/// where an electron's energy rises or a hole's falls. `None` for a state that coincides with one it couples to.
+///
+/// `centre` are the states at k∥ = 0.
+pub fn zone_centre_masses(
+    operator: &MultibandOperator,
+    centre: &MultibandSubbands,
+) -> Vec<Option<f64>> {
+    let mesh = &centre.parts[0].pencil.mesh;
+    let kind = Part::Plus;
+    let solved;
+    let part = if centre.parts.len() == 2 {
+        &centre.parts[0]
+    } else {
+        let count = |band| centre.states.iter().filter(|s| s.band == band).count();
+        let wanted = Wanted {
+            conduction: count(Band::Conduction),
+            valence: count(Band::Valence),
+        };
+        solved = solve_part(operator, mesh, 0.0, wanted, kind, None);
+        &solved
+    };
+    let [first, second] = [0, 1].map(|order| {
+        on(operator, mesh.clone(), kind, |layer, t, _| {
+            let [first, second] = operator.block(layer, t).orders(kind);
+            if order == 0 { first } else { second }
+        })
+    });
+    let all: Vec<&NearPair> = part.conduction.iter().chain(&part.valence).collect();
+    let mut masses = Vec::with_capacity(all.len());
+    for (index, pair) in all.iter().enumerate() {
+        let sign = if index < part.conduction.len() {
+            1.0
+        } else {
+            -1.0
+        };
+        let curvature = curvature(&part.pencil, &first, &second, &all, pair);
+        masses.push(curvature.map(|c| sign * HBAR2_OVER_2M0 / c));
+    }
+    masses
+}
+
+/// Energies along a list of k∥ in 1/nm, in the direction of the operator, ascending from the first. The states are
+/// followed by their likeness from one k∥ to the next, each member of a pair on its own, with smaller steps between
+/// where that is in doubt. The mesh is the one that reaches the tolerance at both ends of the list.
+pub fn follow_multiband(
+    operator: &MultibandOperator,
+    list_per_nm: &[f64],
+    wanted: Wanted,
+    tolerance_ev: f64,
+) -> Vec<FollowedBand> {
+    let (Some(&first), Some(&last)) = (list_per_nm.first(), list_per_nm.last()) else {
+        return Vec::new();
+    };
+    let ends = [first, last].map(|k| solve_multiband(operator, k, wanted, tolerance_ev));
+    let mesh = ends
+        .iter()
+        .map(|subbands| &subbands.parts[0].pencil.mesh)
+        .max_by_key(|mesh| mesh.node_count())
+        .cloned();
+    let Some(mesh) = mesh else {
+        return Vec::new();
+    };
+    follow_on_mesh(operator, &mesh, list_per_nm, wanted)
+}
+
+/// As [`follow_multiband`], on a given mesh.
+pub fn follow_on_mesh(
+    operator: &MultibandOperator,
+    mesh: &Mesh,
+    list_per_nm: &[f64],
+    wanted: Wanted,
+) -> Vec<FollowedBand> {
+    let more = |count: usize| if count == 0 { 0 } else { count + SPARE };
+    let roomy = Wanted {
+        conduction: more(wanted.conduction),
+        valence: more(wanted.valence),
+    };
+    let solve = |k: f64| solve_parts(operator, mesh, k, roomy);
+    // One part after the other on its way through k∥, both at the same time.
+    let ways: Vec<Vec<PartSolution>> = kinds(operator)
+        .par_iter()
+        .map(|&part| {
+            let mut way: Vec<PartSolution> = Vec::with_capacity(list_per_nm.len());
+            for &k in list_per_nm {
+                let next = solve_part(operator, mesh, k, roomy, part, way.last());
+                way.push(next);
+            }
+            way
+        })
+        .collect();
+    let mut solved: Vec<Vec<PartSolution>> = list_per_nm.iter().map(|_| Vec::new()).collect();
+    for way in ways {
+        for (parts, part) in solved.iter_mut().zip(way) {
+            parts.push(part);
+        }
+    }
+    let Some(start) = solved.first() else {
+        return Vec::new();
+    };
+    let mut bands = Vec::new();
+    for (band, count) in [
+        (Band::Conduction, wanted.conduction),
+        (Band::Valence, wanted.valence),
+    ] {
+        // For each part the place of every followed state in the list at the present k∥.
+        let copies = 2 / start.len();
+        let mut places: Vec<Vec<usize>> =
+            vec![(0..list(&start[0], band).len()).collect(); start.len()];
+        let fewest = solved.iter().map(|parts| fewest(parts, band)).min();
+        let count = count.min(fewest.unwrap_or(0) / copies);
+        if count == 0 {
+            continue;
+        }
+        let mut followed: Vec<FollowedBand> = (0..count)
+            .map(|index| FollowedBand {
+                band,
+                number: index + 1,
+                energies_ev: Vec::with_capacity(list_per_nm.len()),
+                shares: Vec::with_capacity(list_per_nm.len()),
+            })
+            .collect();
+        for (step, parts) in solved.iter().enumerate() {
+            if step > 0 {
+                let between = [list_per_nm[step - 1], list_per_nm[step]];
+                let ends = [&solved[step - 1], parts];
+                let moves = successors(&solve, between, ends, band, MAX_DEPTH);
+                for (own, moves) in places.iter_mut().zip(&moves) {
+                    own.iter_mut().for_each(|place| *place = moves[*place]);
+                }
+            }
+            for (index, band_of) in followed.iter_mut().enumerate() {
+                let member = |which: usize| {
+                    let (part, place) = if copies == 1 {
+                        (which, places[which][index])
+                    } else {
+                        (0, places[0][2 * index + which])
+                    };
+                    (&parts[part].pencil, &list(&parts[part], band)[place])
+                };
+                let (pencil, pair) = member(0);
+                band_of.energies_ev.push([pair.value, member(1).1.value]);
+                band_of.shares.push(shares(pencil, pair));
+            }
+        }
+        bands.extend(followed);
+    }
+    bands
+}
+
+fn list(part: &PartSolution, band: Band) -> &[NearPair] {
+    match band {
+        Band::Conduction => &part.conduction,
+        Band::Valence => &part.valence,
+    }
+}
+
+/// For each part, where in the list of the second k∥ each state of the first goes.
+fn successors(
+    solve: &impl Fn(f64) -> Vec<PartSolution>,
+    between: [f64; 2],
+    ends: [&Vec<PartSolution>; 2],
+    band: Band,
+    depth: usize,
+) -> Vec<Vec<usize>> {
+    let [from, to] = ends;
+    let direct: Vec<(Vec<usize>, f64)> = from
+        .iter()
+        .zip(to)
+        .map(|(a, b)| alike(list(a, band), list(b, band)))
+        .collect();
+    if depth == 0 || direct.iter().all(|(_, least)| *least >= ALIKE) {
+        return direct.into_iter().map(|(moves, _)| moves).collect();
+    }
+    let middle = 0.5 * (between[0] + between[1]);
+    let parts = solve(middle);
+    let lower = successors(solve, [between[0], middle], [from, &parts], band, depth - 1);
+    let upper = successors(solve, [middle, between[1]], [&parts, to], band, depth - 1);
+    lower
+        .into_iter()
+        .zip(upper)
+        .map(|(first, then)| first.into_iter().map(|place| then[place]).collect())
+        .collect()
+}
+
+/// The assignment of states by their overlap, the most alike first, and the least overlap among those that are not the
+/// outermost.
+fn alike(from: &[NearPair], to: &[NearPair]) -> (Vec<usize>, f64) {
+    let mut overlaps = Vec::with_capacity(from.len() * to.len());
+    for (i, a) in from.iter().enumerate() {
+        for (j, b) in to.iter().enumerate() {
+            let product: f64 = a.vector.iter().zip(&b.vector).map(|(x, y)| x * y).sum();
+            overlaps.push((product * product, i, j));
+        }
+    }
+    overlaps.sort_by(|a, b| b.0.total_cmp(&a.0));
+    // A state that finds no follower, because fewer are at hand, stays with the last one.
+    let mut places = vec![to.len().saturating_sub(1); from.len()];
+    let mut placed = vec![false; from.len()];
+    let mut taken = vec![false; to.len()];
+    let mut least = 1.0_f64;
+    for (overlap, i, j) in overlaps {
+        if !placed[i] && !taken[j] {
+            places[i] = j;
+            placed[i] = true;
+            taken[j] = true;
+            if i + SPARE < from.len() {
+                least = least.min(overlap);
+            }
+        }
+    }
+    (places, least)
+}
