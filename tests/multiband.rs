@@ -7,11 +7,7 @@ use wellwright::materials::{Library, Material, Strain};
 use wellwright::models::multiband::{
     Direction, MultibandModel, MultibandOperator, MultibandUnsuitable, Part,
 };
-<<<<<<< HEAD
 use wellwright::models::{Band as OneBand, BandOperator, eight_band};
-=======
-use wellwright::models::{BandOperator, eight_band};
->>>>>>> h-holes
 use wellwright::numerics::curvature::curvature;
 use wellwright::numerics::matrix_pencil::{MatrixCoefficient, MatrixPencil};
 use wellwright::numerics::mesh::Mesh;
@@ -549,16 +545,11 @@ fn heavy_holes_at_the_centre_are_those_of_one_band() {
     };
     for field in [0.0, 30.0] {
         let mirror = stack_of(&text(-field, &one));
-<<<<<<< HEAD
         let operator = BandOperator::new(
             &mirror,
             OneBand::Conduction(structure::ConductionModel::Parabolic),
         )
         .unwrap();
-=======
-        let operator =
-            BandOperator::conduction(&mirror, structure::ConductionModel::Parabolic).unwrap();
->>>>>>> h-holes
         let expected = solve(&operator, 3, Accuracy::default());
         for model in MODELS {
             let subbands = solved(
