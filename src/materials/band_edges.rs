@@ -1,6 +1,7 @@
 //! Band edges of a coherently strained (001) layer.
 
 use super::dual::Number;
+use super::hole_edges::mixed_shifts;
 use super::material::Material;
 use super::strain::strain;
 
@@ -57,10 +58,8 @@ pub fn band_edges<T: Number>(
         .map(|b| -b * (strain.in_plane - strain.growth));
     let mixed = mean.zip(shear).zip(free.spin_orbit_ev);
     let mixed = mixed.map(|((mean, q), delta)| {
-        let [two, nine] = [2.0, 9.0].map(T::constant);
-        let root = (delta * delta + two * delta * q + nine * q * q).sqrt();
-        let centre = mean + (q - delta) / two;
-        (centre + root / two, centre - root / two)
+        let (light, split_off) = mixed_shifts(q, delta);
+        (mean + light, mean + split_off)
     });
     BandEdges {
         conduction_ev: conduction

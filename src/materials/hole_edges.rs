@@ -38,14 +38,18 @@ pub fn hole_edges<T: Number>(
     let q = -(b * (strain.in_plane - strain.growth));
     let light_shift = match material.spin_orbit_ev {
         None => q,
-        Some(split) => {
-            let (two, nine) = (T::constant(2.0), T::constant(9.0));
-            let root = (split * split + two * split * q + nine * q * q).sqrt();
-            (q - split + root) / two
-        }
+        Some(split) => mixed_shifts(q, split).0,
     };
     Some(HoleEdges {
         heavy_ev: edge - q,
         light_ev: edge + light_shift,
     })
+}
+
+/// How far light holes and split-off band lie from the heavy holes' edge without shear: their coupling by √2 Q included.
+pub(super) fn mixed_shifts<T: Number>(q: T, split: T) -> (T, T) {
+    let (two, nine) = (T::constant(2.0), T::constant(9.0));
+    let root = (split * split + two * split * q + nine * q * q).sqrt();
+    let centre = q - split;
+    ((centre + root) / two, (centre - root) / two)
 }
