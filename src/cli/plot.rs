@@ -30,9 +30,13 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
         }
     };
     let Some(picture) = picture else {
-        let nothing =
-            Diagnostic::error("there is nothing to draw: no transition of the file varies")
-                .expected("a `tolerance` block with spreads, and two levels");
+        let why = if input.structure.tolerance.is_none() {
+            "the file has no `tolerance` block"
+        } else {
+            "no transition of the file varies"
+        };
+        let nothing = Diagnostic::error(format!("there is nothing to draw: {why}"))
+            .expected("a `tolerance` block with spreads, and two levels");
         show(&nothing, &input.name, &input.text);
         return Err(Exit::WrongInput);
     };
