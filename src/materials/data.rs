@@ -38,18 +38,6 @@ impl std::fmt::Display for Known {
     }
 }
 
-impl Known {
-    /// The words of the files.
-    pub fn words(self) -> &'static str {
-        match self {
-            Known::Given => "given",
-            Known::Seen => "seen",
-            Known::Computed => "computed",
-            Known::FromMemory => "from memory",
-        }
-    }
-}
-
 /// A value with where it comes from and what else could stand there.
 #[derive(Clone, Debug)]
 pub(super) struct Entry<V> {

@@ -11,7 +11,7 @@
 //! 879 (1981); Foreman 1997). That both signs are right makes the operator elliptic (Veprek, Steiger and Witzigmann,
 //! Phys. Rev. B 76, 165320 (2007)), and at k∥ = 0 leaves no state in a gap that all layers share.
 
-use super::multiband::{BlockCoefficient, Direction, MultibandUnsuitable, Valence, shear_ev};
+use super::multiband::{BlockCoefficient, Direction, MultibandUnsuitable, Valence};
 use crate::constants::HBAR2_OVER_2M0;
 use crate::materials::{Material, Strain};
 
@@ -78,19 +78,8 @@ pub fn block(
 ) -> Result<BlockCoefficient, MultibandUnsuitable> {
     let missing = |key| MultibandUnsuitable::Missing { key, model: MODEL };
     let reduced = reduction(material)?;
-    let [g1, g2, g3] = reduced.luttinger;
-    let m = -(g1 - 2.0 * g2);
     // What the conduction band contributes to N is of the order N₊, and E_P is taken out of it there.
-    let n_minus = m - 1.0;
-    let valence = Valence {
-        l: -HBAR2_OVER_2M0 * (g1 + 4.0 * g2),
-        m: HBAR2_OVER_2M0 * m,
-        n_plus: HBAR2_OVER_2M0 * (-6.0 * g3 - n_minus),
-        n_minus: HBAR2_OVER_2M0 * n_minus,
-        edge_ev: material.valence_edge_ev.ok_or(missing("valence_edge"))?,
-        spin_orbit_ev: material.spin_orbit_ev.ok_or(missing("spin_orbit"))?,
-        shear_ev: shear_ev(material, strain, MODEL)?,
-    };
+    let valence = Valence::new(material, reduced.luttinger, strain, MODEL)?;
     let mut block = BlockCoefficient::zeros(4);
     valence.add_to(&mut block, 1, direction);
     let [s, x, z] = [0, 1, 3];

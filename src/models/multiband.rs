@@ -16,6 +16,7 @@
 //! centre of the crystal is kept.
 
 use super::{eight_band, six_band};
+use crate::constants::HBAR2_OVER_2M0;
 use crate::materials::{Material, Strain, strain};
 use crate::numerics::matrix_pencil::MatrixCoefficient;
 use crate::structure::Stack;
@@ -174,6 +175,29 @@ pub(super) struct Valence {
 }
 
 impl Valence {
+    /// From γ₁, γ₂, γ₃ as they enter the model: the tabulated ones, or what is left of them beside a coupling.
+    ///
+    /// N₋ is M without the free electron's own term.
+    pub fn new(
+        material: &Material,
+        [g1, g2, g3]: [f64; 3],
+        strain: Option<Strain>,
+        model: &'static str,
+    ) -> Result<Valence, MultibandUnsuitable> {
+        let missing = |key| MultibandUnsuitable::Missing { key, model };
+        let m = -(g1 - 2.0 * g2);
+        let n_minus = m - 1.0;
+        Ok(Valence {
+            l: -HBAR2_OVER_2M0 * (g1 + 4.0 * g2),
+            m: HBAR2_OVER_2M0 * m,
+            n_plus: HBAR2_OVER_2M0 * (-6.0 * g3 - n_minus),
+            n_minus: HBAR2_OVER_2M0 * n_minus,
+            edge_ev: material.valence_edge_ev.ok_or(missing("valence_edge"))?,
+            spin_orbit_ev: material.spin_orbit_ev.ok_or(missing("spin_orbit"))?,
+            shear_ev: shear_ev(material, strain, model)?,
+        })
+    }
+
     /// Coefficients in the basis X, Y, Z, from row and column `first` on.
     pub fn add_to(&self, block: &mut BlockCoefficient, first: usize, direction: Direction) {
         let [x, y, z] = [first, first + 1, first + 2];
@@ -245,7 +269,7 @@ impl BlockCoefficient {
 ///
 /// # Errors
 /// When the layer is strained and b is unknown.
-pub(super) fn shear_ev(
+fn shear_ev(
     material: &Material,
     strain: Option<Strain>,
     model: &'static str,

@@ -7,8 +7,7 @@
 //! symmetry left out; N₊ is the rest. Spin–orbit splitting Δ at k = 0 only; strain after Pikus & Bir (1959), of which
 //! biaxial strain on (001) needs a_v (in the edge of the material at hand) and b.
 
-use super::multiband::{BlockCoefficient, Direction, MultibandUnsuitable, Valence, shear_ev};
-use crate::constants::HBAR2_OVER_2M0;
+use super::multiband::{BlockCoefficient, Direction, MultibandUnsuitable, Valence};
 use crate::materials::{Material, Strain};
 
 const MODEL: &str = "six-band";
@@ -31,16 +30,7 @@ pub fn block(
             light: -l,
         });
     }
-    let n_minus = m - 1.0;
-    let valence = Valence {
-        l: HBAR2_OVER_2M0 * l,
-        m: HBAR2_OVER_2M0 * m,
-        n_plus: HBAR2_OVER_2M0 * (-6.0 * g3 - n_minus),
-        n_minus: HBAR2_OVER_2M0 * n_minus,
-        edge_ev: material.valence_edge_ev.ok_or(missing("valence_edge"))?,
-        spin_orbit_ev: material.spin_orbit_ev.ok_or(missing("spin_orbit"))?,
-        shear_ev: shear_ev(material, strain, MODEL)?,
-    };
+    let valence = Valence::new(material, [g1, g2, g3], strain, MODEL)?;
     let mut block = BlockCoefficient::zeros(3);
     valence.add_to(&mut block, 0, direction);
     Ok(block.into_holes())

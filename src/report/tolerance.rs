@@ -71,7 +71,7 @@ struct SensitivityRow {
 
 #[derive(Debug, Serialize)]
 #[allow(non_snake_case)]
-struct DistributionRow {
+struct SpreadRow {
     from: String,
     to: String,
     mean_energy_meV: f64,
@@ -88,6 +88,13 @@ struct DistributionRow {
     wavelength_95_percent_um: f64,
     /// Wafers in which the upper level lies above the lower outer barrier edge.
     unbound: usize,
+}
+
+/// A sampled transition: its spread, and what makes it.
+#[derive(Debug, Serialize)]
+struct DistributionRow {
+    #[serde(flatten)]
+    spread: SpreadRow,
     contributors: Vec<ContributorRow>,
     histogram: HistogramRow,
 }
@@ -288,7 +295,7 @@ impl Tolerances {
         let shown = || {
             self.distributions
                 .iter()
-                .filter(|d| self.is_shown(&d.from, &d.to))
+                .filter(|d| self.is_shown(&d.spread.from, &d.spread.to))
         };
         let energies = table(
             &[
@@ -298,14 +305,14 @@ impl Tolerances {
             shown()
                 .map(|d| {
                     vec![
-                        number(&d.from).to_owned(),
-                        number(&d.to).to_owned(),
-                        format!("{:.2}", d.mean_energy_meV),
-                        significant(d.deviation_energy_meV, 3),
-                        significant(d.linear_deviation_energy_meV, 3),
-                        format!("{:.2}", d.energy_5_percent_meV),
-                        format!("{:.2}", d.energy_50_percent_meV),
-                        format!("{:.2}", d.energy_95_percent_meV),
+                        number(&d.spread.from).to_owned(),
+                        number(&d.spread.to).to_owned(),
+                        format!("{:.2}", d.spread.mean_energy_meV),
+                        significant(d.spread.deviation_energy_meV, 3),
+                        significant(d.spread.linear_deviation_energy_meV, 3),
+                        format!("{:.2}", d.spread.energy_5_percent_meV),
+                        format!("{:.2}", d.spread.energy_50_percent_meV),
+                        format!("{:.2}", d.spread.energy_95_percent_meV),
                     ]
                 })
                 .collect(),
@@ -318,14 +325,14 @@ impl Tolerances {
             shown()
                 .map(|d| {
                     vec![
-                        number(&d.from).to_owned(),
-                        number(&d.to).to_owned(),
-                        significant(d.mean_wavelength_um, 4),
-                        significant(d.deviation_wavelength_um, 3),
-                        significant(d.linear_deviation_wavelength_um, 3),
-                        significant(d.wavelength_5_percent_um, 4),
-                        significant(d.wavelength_50_percent_um, 4),
-                        significant(d.wavelength_95_percent_um, 4),
+                        number(&d.spread.from).to_owned(),
+                        number(&d.spread.to).to_owned(),
+                        significant(d.spread.mean_wavelength_um, 4),
+                        significant(d.spread.deviation_wavelength_um, 3),
+                        significant(d.spread.linear_deviation_wavelength_um, 3),
+                        significant(d.spread.wavelength_5_percent_um, 4),
+                        significant(d.spread.wavelength_50_percent_um, 4),
+                        significant(d.spread.wavelength_95_percent_um, 4),
                     ]
                 })
                 .collect(),
@@ -341,21 +348,21 @@ impl Tolerances {
                 .collect();
             text += &format!(
                 "{} to {} varies by {}.\n",
-                d.from,
-                number(&d.to),
+                d.spread.from,
+                number(&d.spread.to),
                 named.join(", ")
             );
         }
         let mut told: Vec<&str> = Vec::new();
-        for d in shown().filter(|d| d.unbound > 0) {
-            if told.contains(&d.to.as_str()) {
+        for d in shown().filter(|d| d.spread.unbound > 0) {
+            if told.contains(&d.spread.to.as_str()) {
                 continue;
             }
-            told.push(&d.to);
+            told.push(&d.spread.to);
             text += &format!(
                 "In {} of the wafers {} lies above the lower outer barrier edge: only the walls hold it.\n",
-                percent(d.unbound as f64 / samples as f64, 1),
-                d.to
+                percent(d.spread.unbound as f64 / samples as f64, 1),
+                d.spread.to
             );
         }
         for w in &self.windows {
@@ -457,7 +464,7 @@ fn shown(
 fn distribution_row(t: &Distributed, design_ev: f64, sampled: &Sampled) -> DistributionRow {
     let [low, middle, high] = t.energy_ev.quantiles.map(|ev| 1e3 * ev);
     let [short, centre, long] = t.wavelength_um.quantiles;
-    DistributionRow {
+    let spread = SpreadRow {
         from: name(t.from),
         to: name(t.to),
         mean_energy_meV: 1e3 * t.energy_ev.mean,
@@ -473,6 +480,9 @@ fn distribution_row(t: &Distributed, design_ev: f64, sampled: &Sampled) -> Distr
         wavelength_50_percent_um: centre,
         wavelength_95_percent_um: long,
         unbound: sampled.unbound.get(t.to).copied().unwrap_or(0),
+    };
+    DistributionRow {
+        spread,
         contributors: t
             .contributors
             .iter()
@@ -605,53 +615,14 @@ impl Report for Tolerances {
             high_meV: f64,
             count: usize,
         }
-        #[derive(Serialize)]
-        #[allow(non_snake_case)]
-        struct Spread<'r> {
-            from: &'r str,
-            to: &'r str,
-            mean_energy_meV: f64,
-            deviation_energy_meV: f64,
-            linear_deviation_energy_meV: f64,
-            energy_5_percent_meV: f64,
-            energy_50_percent_meV: f64,
-            energy_95_percent_meV: f64,
-            mean_wavelength_um: f64,
-            deviation_wavelength_um: f64,
-            linear_deviation_wavelength_um: f64,
-            wavelength_5_percent_um: f64,
-            wavelength_50_percent_um: f64,
-            wavelength_95_percent_um: f64,
-            unbound: usize,
-        }
-        let spreads: Vec<Spread> = self
-            .distributions
-            .iter()
-            .map(|d| Spread {
-                from: &d.from,
-                to: &d.to,
-                mean_energy_meV: d.mean_energy_meV,
-                deviation_energy_meV: d.deviation_energy_meV,
-                linear_deviation_energy_meV: d.linear_deviation_energy_meV,
-                energy_5_percent_meV: d.energy_5_percent_meV,
-                energy_50_percent_meV: d.energy_50_percent_meV,
-                energy_95_percent_meV: d.energy_95_percent_meV,
-                mean_wavelength_um: d.mean_wavelength_um,
-                deviation_wavelength_um: d.deviation_wavelength_um,
-                linear_deviation_wavelength_um: d.linear_deviation_wavelength_um,
-                wavelength_5_percent_um: d.wavelength_5_percent_um,
-                wavelength_50_percent_um: d.wavelength_50_percent_um,
-                wavelength_95_percent_um: d.wavelength_95_percent_um,
-                unbound: d.unbound,
-            })
-            .collect();
+        let spreads: Vec<&SpreadRow> = self.distributions.iter().map(|d| &d.spread).collect();
         let contributions: Vec<Contribution> = self
             .distributions
             .iter()
             .flat_map(|d| {
                 d.contributors.iter().map(|c| Contribution {
-                    from: &d.from,
-                    to: &d.to,
+                    from: &d.spread.from,
+                    to: &d.spread.to,
                     quantity: &c.quantity,
                     variance_share: c.variance_share,
                 })
@@ -663,8 +634,8 @@ impl Report for Tolerances {
             .flat_map(|d| {
                 let edges = d.histogram.edges_meV.windows(2);
                 edges.zip(&d.histogram.counts).map(|(edges, count)| Bin {
-                    from: &d.from,
-                    to: &d.to,
+                    from: &d.spread.from,
+                    to: &d.spread.to,
                     low_meV: edges[0],
                     high_meV: edges[1],
                     count: *count,
