@@ -1,14 +1,12 @@
 //! Compositions that are chosen among those that the mounted cells give: the rest is tuned for each choice in turn, and
 //! the best result is taken.
 
-use super::{Outcome, TuneError, Variable};
+use super::{FRACTION_STEP, Outcome, TuneError, Variable};
 use crate::growth;
 use crate::structure::{Knob, Stack, Structure, Varied};
 
 /// More combinations than this are not tried.
 const MAX_COMBINATIONS: usize = 256;
-/// Fractions are given to this step, so that what a file then says is what was solved.
-const FRACTION_STEP: f64 = 1e-5;
 
 /// A variable with the values that it may take.
 #[derive(Clone, Debug, PartialEq)]
