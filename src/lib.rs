@@ -27,6 +27,8 @@ pub mod tune;
 
 pub mod tolerance;
 
+pub mod sweep;
+
 pub mod report;
 
 pub mod cli;

@@ -3,6 +3,7 @@
 use super::file::{LayerEntry, Structure, Variable, Varied};
 use super::read_tolerance;
 use super::stack::{Stack, no_monolayer};
+use super::sweeps;
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Material, Valley, strain};
 use crate::units::Dimension;
@@ -53,6 +54,7 @@ pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
         }
     }
     read_tolerance::unfitting(structure, stack, &mut found);
+    sweeps::unfitting(structure, stack, &mut found);
     found
 }
 

@@ -4,6 +4,7 @@ use super::document::Node;
 use super::growth::Growth;
 use super::rewrite::FreeLine;
 use super::spreads::Tolerance;
+use super::sweeps::Sweep;
 use crate::materials::{Element, Library, Substance};
 use crate::units::Quantity;
 use std::fmt;
@@ -50,6 +51,7 @@ pub struct Structure {
     pub tune: Option<Tune>,
     pub growth: Option<Growth>,
     pub tolerance: Option<Tolerance>,
+    pub sweep: Option<Sweep>,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
 }

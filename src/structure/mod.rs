@@ -16,11 +16,13 @@ mod read_growth;
 mod read_keep;
 mod read_layers;
 mod read_materials;
+mod read_sweep;
 mod read_tolerance;
 mod read_tune;
 mod rewrite;
 mod spreads;
 mod stack;
+mod sweeps;
 mod temperature;
 mod wafer;
 
@@ -30,9 +32,11 @@ pub use file::{
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;
+pub use read_sweep::MOST_POINTS;
 pub use rewrite::{Edits, NewWidth, rewrite};
 pub use spreads::{Grading, Radial, Tolerance, Window};
-pub use stack::{Layer, Stack};
+pub use stack::{Layer, MAX_TOTAL_NM, Stack};
+pub use sweeps::{Doping, Steps, Sweep, Swept};
 pub use wafer::{Cause, Design, NotGrown};
 
 mod knob;

@@ -5,11 +5,11 @@ use super::fields::{Checker, Fields, Limits};
 use super::file::{BandName, ConductionBand, ConductionModel, Structure, ValenceBand};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
-use super::{read_growth, read_materials, read_tolerance, read_tune};
+use super::{read_growth, read_materials, read_sweep, read_tolerance, read_tune};
 use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
-const KEYS: [&str; 11] = [
+const KEYS: [&str; 12] = [
     "title",
     "substrate",
     "temperature",
@@ -21,8 +21,9 @@ const KEYS: [&str; 11] = [
     "tune",
     "growth",
     "tolerance",
+    "sweep",
 ];
-const TEMPERATURE_LIMITS: Limits =
+pub(super) const TEMPERATURE_LIMITS: Limits =
     super::fields::between(0.0, 1000.0, "a temperature from 0 K to 1000 K");
 const DEFAULT_TEMPERATURE_K: f64 = 300.0;
 const DEFAULT_STATES: u32 = 4;
@@ -157,6 +158,9 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let tolerance = fields
         .get("tolerance")
         .and_then(|node| read_tolerance::tolerance(checker, node));
+    let sweep = fields
+        .get("sweep")
+        .and_then(|node| read_sweep::sweep(checker, node, entries, solved));
     let layers = layers?;
     Some(Structure {
         title,
@@ -176,6 +180,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         tune,
         growth: settled(growth)?,
         tolerance,
+        sweep,
         field_line: free_line(checker.text, root),
     })
 }

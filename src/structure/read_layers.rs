@@ -11,7 +11,7 @@ use std::collections::HashMap;
 /// Bounds that keep sizes within what can be grown and solved; common practice.
 pub(super) const WIDTH_LIMITS: Limits = above(0.0, 1e5, "a width above 0 nm, of at most 100 µm");
 pub(super) const FIELD_LIMITS: Limits = between(-1.0, 1.0, "a field from -10 MV/cm to 10 MV/cm");
-const DOPING_LIMITS: Limits = between(0.0, 1e22, "from 0 to 1e22 cm^-3");
+pub(super) const DOPING_LIMITS: Limits = between(0.0, 1e22, "from 0 to 1e22 cm^-3");
 const MAX_REPEATS: u32 = 10_000;
 /// How many layers the stack may have with its repeats laid out.
 pub(super) const MAX_LAYERS: usize = 20_000;

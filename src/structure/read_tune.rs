@@ -114,7 +114,11 @@ fn variables(
 ) -> Vec<Variable> {
     let mut found: Vec<Variable> = Vec::new();
     for item in items {
-        let Some(quantity) = varied(checker, item, entries) else {
+        let keys = &["layer", "width", "fraction", "between", "field"];
+        let Some(quantity) = checker
+            .fields(item, "an entry of `vary`", keys)
+            .and_then(|fields| varied(checker, &fields, entries))
+        else {
             continue;
         };
         let span = checker.head(&item.span);
@@ -163,17 +167,12 @@ fn same_variable(one: &Varied, other: &Varied) -> bool {
     }
 }
 
-fn varied(
+/// What an entry of `vary` names: the width or a fraction of a layer, or the field.
+pub(super) fn varied(
     checker: &mut Checker,
-    item: &Node,
+    fields: &Fields,
     entries: &[(Option<String>, Option<LayerEntry>)],
 ) -> Option<Varied> {
-    let what = "an entry of `vary`";
-    let fields = checker.fields(
-        item,
-        what,
-        &["layer", "width", "fraction", "between", "field"],
-    )?;
     let of_field = fields.get("field");
     if let Some(node) = of_field {
         if ["layer", "width", "fraction", "between"]
@@ -231,7 +230,7 @@ fn varied(
                 bounds: bounds?,
             })
         }
-        (false, true) => fraction(checker, &fields, entry, entries),
+        (false, true) => fraction(checker, fields, entry, entries),
         _ => {
             checker.report(
                 Diagnostic::error(
@@ -425,7 +424,8 @@ fn room_of(layer: &LayerEntry, element: Element) -> Result<Room, (String, &'stat
     })
 }
 
-fn quantities(
+/// The two ends of a range of quantities, the lower first.
+pub(super) fn quantities(
     checker: &mut Checker,
     node: &Node,
     example: &str,

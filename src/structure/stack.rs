@@ -14,7 +14,7 @@ use std::ops::Range;
 const MATCH_TEMPERATURE_K: f64 = 300.0;
 
 /// The most that all layers may have together, in nm: more than any epitaxial stack, and as much as one layer may have.
-const MAX_TOTAL_NM: f64 = 1e5;
+pub const MAX_TOTAL_NM: f64 = 1e5;
 
 /// A stack of layers, lowest first, ready to be solved and cheap to change.
 #[derive(Clone, Debug)]

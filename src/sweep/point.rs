@@ -1,0 +1,221 @@
+//! Levels and transitions at one value of the swept number.
+
+use super::anticrossing::{Anticrossing, names};
+use super::nodes::{Along, SPARE};
+use super::solution::{NotSolved, solved};
+use crate::constants::HC_EV_UM;
+use crate::models::Band;
+use crate::optics::{Transition, interband, transitions};
+use crate::structure::{BandName, Level};
+use crate::subbands::{Bands, Place, lower_outer_edge_ev};
+
+/// One point of a sweep.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Point {
+    /// Part of the way.
+    pub part: f64,
+    /// The swept number, in its shown unit.
+    pub value: f64,
+    pub found: Result<Found, NotSolved>,
+}
+
+/// What was found at a point.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Found {
+    /// Of each band, from its edge; only those that are shown.
+    pub levels: Vec<Vec<LevelAt>>,
+    /// In the order in which they are shown; `None` where the stack holds too few levels.
+    pub transitions: Vec<Option<TransitionAt>>,
+    /// What the audit of the solution objects to.
+    pub faults: Vec<String>,
+}
+
+/// A level at a point.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LevelAt {
+    /// By energy.
+    pub level: Level,
+    pub follows: Follows,
+    pub energy_ev: f64,
+    /// Distance from the band's edge where it is nearest to the gap, as in the table of levels.
+    pub from_edge_ev: f64,
+    pub error_ev: f64,
+    /// Whether both outer barriers hold it.
+    pub bound: bool,
+}
+
+/// Which state of the lower end of the range a state is.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Follows {
+    Level(Level),
+    /// One from this level on: it has come from beyond those that are solved.
+    FromOn(Level),
+}
+
+/// A transition at a point.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct TransitionAt {
+    /// By energy within their bands; `valence` is resolved into heavy or light hole.
+    pub from: Level,
+    pub to: Level,
+    pub from_follows: Follows,
+    pub to_follows: Follows,
+    pub energy_ev: f64,
+    pub strength: Strength,
+}
+
+/// How strong a transition is.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Strength {
+    /// Inside a band: |⟨from|z|to⟩| and 2 m₀ E |z|²/ħ².
+    Dipole {
+        dipole_nm: f64,
+        oscillator_strength: f64,
+    },
+    /// Between a hole and an electron: the overlap of the envelopes, and the squared momentum matrix elements in units of
+    /// the bulk's.
+    Momentum { overlap: f64, te: f64, tm: f64 },
+    /// Between heavy and light holes: there is none while they are solved apart.
+    Apart,
+}
+
+impl TransitionAt {
+    /// Vacuum wavelength in µm; `None` where the energy is not positive.
+    pub fn wavelength_um(&self) -> Option<f64> {
+        (self.energy_ev > 0.0).then(|| HC_EV_UM / self.energy_ev)
+    }
+}
+
+/// What is shown at every point.
+#[derive(Clone, Debug)]
+pub struct Shown {
+    /// The bands with the numbers of levels to solve.
+    pub bands: Vec<(Band, usize)>,
+    /// Levels of each band that are listed.
+    pub listed: Vec<usize>,
+    pub transitions: Vec<(Level, Level)>,
+}
+
+/// Solves one point.
+pub fn point(along: &Along, shown: &Shown, anticrossings: &[Anticrossing], part: f64) -> Point {
+    let value = along.axis.value(part);
+    let found = found(along, shown, anticrossings, part);
+    Point { part, value, found }
+}
+
+fn found(
+    along: &Along,
+    shown: &Shown,
+    anticrossings: &[Anticrossing],
+    part: f64,
+) -> Result<Found, NotSolved> {
+    let stack = along.axis.stack(along.stack, along.axis.value(part))?;
+    let bands = solved(&stack, &shown.bands, along.accuracy)?;
+    let names: Vec<Vec<usize>> = shown
+        .bands
+        .iter()
+        .enumerate()
+        .map(|(band, (_, count))| names(anticrossings, band, count + SPARE, part))
+        .collect();
+    let follows = |place: Place| {
+        let last = names[place.band].len() - 1;
+        let name = names[place.band][place.state];
+        let level = bands.level(Place {
+            state: name,
+            ..place
+        });
+        match name {
+            name if name == last => Follows::FromOn(level),
+            _ => Follows::Level(level),
+        }
+    };
+    let levels = bands.all().iter().enumerate().map(|(band, solved)| {
+        let (floor_ev, outer_ev) = (solved.pencil.floor(), lower_outer_edge_ev(&solved.pencil));
+        let pairs = solved.pairs.iter().zip(&solved.errors_ev).enumerate();
+        pairs
+            .take(shown.listed[band])
+            .map(|(state, (pair, error_ev))| {
+                let place = Place { band, state };
+                LevelAt {
+                    level: bands.level(place),
+                    follows: follows(place),
+                    energy_ev: bands.energy_ev(place),
+                    from_edge_ev: pair.value - floor_ev,
+                    error_ev: *error_ev,
+                    bound: pair.value <= outer_ev,
+                }
+            })
+            .collect()
+    });
+    let levels = levels.collect();
+    let places = shown
+        .transitions
+        .iter()
+        .map(|&(from, to)| Some((place(&bands, from)?, place(&bands, to)?)));
+    let places: Vec<Option<(Place, Place)>> = places.collect();
+    let inside = |band: usize| -> Vec<Transition> {
+        let mut pairs = places.iter().flatten();
+        match pairs.any(|(from, to)| from.band == band && to.band == band) {
+            true => transitions(&bands.all()[band]),
+            false => Vec::new(),
+        }
+    };
+    let inside: Vec<Vec<Transition>> = (0..bands.all().len()).map(inside).collect();
+    let across = places
+        .iter()
+        .flatten()
+        .any(|(from, to)| (from.band == 0) != (to.band == 0));
+    let across = match across {
+        true => interband(&stack, &bands),
+        false => Vec::new(),
+    };
+    let transitions = places.into_iter().map(|places| {
+        let (from, to) = places?;
+        let strength = if from.band == to.band {
+            let own = &inside[from.band];
+            let (lower, upper) = (from.state.min(to.state), from.state.max(to.state));
+            let found = own.iter().find(|t| t.from == lower && t.to == upper)?;
+            Strength::Dipole {
+                dipole_nm: found.dipole_nm,
+                oscillator_strength: found.oscillator_strength,
+            }
+        } else {
+            let (electron, hole) = if from.band == 0 { (from, to) } else { (to, from) };
+            match across
+                .iter()
+                .find(|pair| pair.electron == electron && pair.hole == hole)
+            {
+                Some(pair) => Strength::Momentum {
+                    overlap: pair.overlap,
+                    te: pair.te,
+                    tm: pair.tm,
+                },
+                None => Strength::Apart,
+            }
+        };
+        Some(TransitionAt {
+            from: bands.level(from),
+            to: bands.level(to),
+            from_follows: follows(from),
+            to_follows: follows(to),
+            energy_ev: bands.energy_ev(to) - bands.energy_ev(from),
+            strength,
+        })
+    });
+    let faults = bands.all().iter().flat_map(|band| band.audit().faults());
+    Ok(Found {
+        transitions: transitions.collect(),
+        faults: faults.map(|fault| fault.to_string()).collect(),
+        levels,
+    })
+}
+
+/// The place of a level, if the stack holds it.
+fn place(bands: &Bands, level: Level) -> Option<Place> {
+    let place = bands.place(level);
+    let exists = match level.band {
+        BandName::Valence => level.index <= bands.holes().len(),
+        _ => place.state + 1 == level.index && place.state < bands.of(place).pairs.len(),
+    };
+    exists.then_some(place)
+}
