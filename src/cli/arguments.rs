@@ -1,6 +1,8 @@
 //! What the user types.
 
 use crate::report::svg::Width;
+use crate::structure::MOST_POINTS;
+use crate::sweep::Part;
 use clap::{Args, Parser, Subcommand, ValueEnum};
 use std::path::PathBuf;
 
@@ -55,6 +57,30 @@ pub enum Command {
         /// Threads to use; as many as there are cores when left out
         #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
         threads: Option<u16>,
+        #[command(flatten)]
+        output: Output,
+    },
+    /// Levels and transitions while one number of the stack goes through the range of the file's `sweep` block
+    Sweep {
+        /// Structure file with a `sweep` block
+        file: PathBuf,
+        /// Points instead of the number in the file
+        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(2..=i64::from(MOST_POINTS)))]
+        points: Option<u32>,
+        /// Solve one slice of the points only, the I-th of N: the CSV of all slices, one after the other, is that of the
+        /// whole
+        #[arg(long, value_name = "I/N")]
+        part: Option<Part>,
+        /// Threads to use; as many as there are cores when left out
+        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
+        threads: Option<u16>,
+        /// What a picture shows: levels when left out
+        #[arg(long, value_enum)]
+        what: Option<SweepWhat>,
+        /// Printed width of a picture: a page (170 mm) when left out, or a column of a journal (86 mm)
+        #[arg(long, value_enum)]
+        width: Option<PlotWidth>,
+        /// A file name ending in .svg receives the picture
         #[command(flatten)]
         output: Output,
     },
@@ -171,6 +197,14 @@ pub enum Picture {
     Sensitivities,
     /// The sampled distribution of a transition with its window
     Yield,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum SweepWhat {
+    /// Levels, each line following a state
+    Levels,
+    /// Transition energies
+    Transitions,
 }
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]

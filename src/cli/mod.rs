@@ -12,6 +12,8 @@ mod plot;
 mod progress;
 mod run;
 mod sheet;
+mod sweep;
+mod threads;
 mod tolerance;
 mod tune;
 

@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, dispersion, levels, materials, plot, sheet, tolerance, tune};
+use super::{check, dispersion, levels, materials, plot, sheet, sweep, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -24,6 +24,15 @@ pub fn run(arguments: Arguments) -> Exit {
             threads,
             output,
         } => tolerance::tolerance(&file, samples, threads, &output),
+        Command::Sweep {
+            file,
+            points,
+            part,
+            threads,
+            what,
+            width,
+            output,
+        } => sweep::sweep(&file, (points, part, threads), (what, width), &output),
         Command::Check { file, output } => check::check(&file, &output),
         Command::Plot {
             file,

@@ -1,9 +1,10 @@
 //! `tolerance`: how far transitions move, and what share of wafers will do.
 
 use super::arguments::Output;
-use super::deliver::{Exit, check_output, complain, deliver, show};
+use super::deliver::{Exit, check_output, deliver, show};
 use super::input::Input;
 use super::progress::SearchProgress;
+use super::threads::pool;
 use crate::diagnostics::Diagnostic;
 use crate::report::Tolerances;
 use crate::subbands::Accuracy;
@@ -40,13 +41,7 @@ pub fn worked_out(
     samples: Option<u32>,
     threads: Option<u16>,
 ) -> Result<Outcome, Exit> {
-    let pool = rayon::ThreadPoolBuilder::new()
-        .num_threads(threads.map_or(0, usize::from))
-        .build()
-        .map_err(|error| {
-            complain(&format!("error: no threads can be started: {error}"));
-            Exit::NotPossible
-        })?;
+    let pool = pool(threads)?;
     let progress = SearchProgress::new();
     let outcome = pool.install(|| {
         tolerance::tolerance(

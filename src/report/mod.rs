@@ -12,6 +12,7 @@ mod sheet_html;
 mod sheet_text;
 mod strain;
 pub mod svg;
+mod sweep;
 mod table;
 mod tolerance;
 mod tuning;
@@ -21,6 +22,7 @@ pub use dispersion::Dispersion;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
 pub use sheet::Sheet;
+pub use sweep::Sweeps;
 pub use tolerance::Tolerances;
 pub use tuning::Tuning;
 
@@ -50,13 +52,19 @@ fn round(value: &mut serde_json::Value) {
         serde_json::Value::Array(list) => list.iter_mut().for_each(round),
         serde_json::Value::Object(object) => object.values_mut().for_each(round),
         serde_json::Value::Number(number) if number.is_f64() => {
-            let text = format!("{:.*e}", JSON_DIGITS - 1, number.as_f64().unwrap_or(0.0));
-            if let Some(rounded) = text.parse().ok().and_then(serde_json::Number::from_f64) {
+            let value = rounded(number.as_f64().unwrap_or(0.0));
+            if let Some(rounded) = serde_json::Number::from_f64(value) {
                 *number = rounded;
             }
         }
         _ => {}
     }
+}
+
+/// A number to the digits that JSON has.
+fn rounded(value: f64) -> f64 {
+    let text = format!("{value:.*e}", JSON_DIGITS - 1);
+    text.parse().unwrap_or(value)
 }
 
 /// Rows of one CSV table, with a header.

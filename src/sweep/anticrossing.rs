@@ -107,7 +107,9 @@ fn exchange(nodes: &[Node], band: usize, level: usize, at: usize) -> bool {
 /// The names of the levels of a band at a place: `names[level]` is the number that the state had at the lower end.
 pub fn names(anticrossings: &[Anticrossing], band: usize, count: usize, part: f64) -> Vec<usize> {
     let mut names: Vec<usize> = (0..count).collect();
-    let passed = anticrossings.iter().filter(|c| c.band == band && c.part < part);
+    let passed = anticrossings
+        .iter()
+        .filter(|c| c.band == band && c.part < part);
     for crossing in passed {
         if crossing.level + 1 < count {
             names.swap(crossing.level, crossing.level + 1);

@@ -1,9 +1,7 @@
 //! The swept number: its values, and the stack at each of them.
 
 use super::NotSolved;
-use crate::structure::{
-    Doping, Knob, MAX_TOTAL_NM, Stack, Steps, Structure, Sweep, Swept, Varied,
-};
+use crate::structure::{Doping, Knob, MAX_TOTAL_NM, Stack, Steps, Structure, Sweep, Swept, Varied};
 use crate::units::{Dimension, Quantity};
 
 /// What is swept, from where to where, in the unit in which it is shown.
@@ -76,11 +74,25 @@ impl Axis {
             Swept::Knob(Varied::Field { bounds_v_per_nm }) => {
                 let range = bounds_v_per_nm.map(|v_per_nm| 1e4 * v_per_nm);
                 let turned = Turned::Knob(Knob::Field);
-                axis("field".to_owned(), "kV/cm", "field_kV_cm", range, turned, 1e-4)
+                axis(
+                    "field".to_owned(),
+                    "kV/cm",
+                    "field_kV_cm",
+                    range,
+                    turned,
+                    1e-4,
+                )
             }
             Swept::Temperature { bounds_k } => {
                 let name = "temperature".to_owned();
-                axis(name, "K", "temperature_K", *bounds_k, Turned::Temperature, 1.0)
+                axis(
+                    name,
+                    "K",
+                    "temperature_K",
+                    *bounds_k,
+                    Turned::Temperature,
+                    1.0,
+                )
             }
             Swept::Doping {
                 entry,

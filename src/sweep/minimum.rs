@@ -76,11 +76,7 @@ pub fn least_gap(
 }
 
 /// Vertex of the parabola through three points, if it opens upwards.
-fn vertex(
-    (x0, f0): (f64, f64),
-    (x1, f1): (f64, f64),
-    (x2, f2): (f64, f64),
-) -> Option<(f64, f64)> {
+fn vertex((x0, f0): (f64, f64), (x1, f1): (f64, f64), (x2, f2): (f64, f64)) -> Option<(f64, f64)> {
     let (first, second) = ((f1 - f0) / (x1 - x0), (f2 - f1) / (x2 - x1));
     let curvature = (second - first) / (x2 - x0);
     if curvature.is_nan() || curvature <= 0.0 {
@@ -118,7 +114,10 @@ mod tests {
         let gap = |x: f64| 1e-3 + (x - 0.37).abs().powi(3) + 0.5 * (x - 0.37).powi(4);
         let bracket = [0.0, 0.2, 1.0].map(|x| (x, gap(x)));
         let least = least_gap(bracket, |x| Some(gap(x))).unwrap();
-        assert!(least.settled && (least.gap_ev - 1e-3).abs() < 1e-8, "{least:?}");
+        assert!(
+            least.settled && (least.gap_ev - 1e-3).abs() < 1e-8,
+            "{least:?}"
+        );
         assert!(least_gap(bracket, |_| None).is_none());
     }
 }

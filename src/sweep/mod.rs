@@ -33,7 +33,7 @@ pub struct Outcome {
     pub bands: Vec<(BandName, usize)>,
     /// The transitions that are listed, `from` the lower.
     pub transitions: Vec<(Level, Level)>,
-    /// Of the whole range, also when only a slice of its points is solved.
+    /// Of the listed levels and of the whole range, also when only a slice of its points is solved.
     pub anticrossings: Vec<Anticrossing>,
     /// Whether every state was known again along the whole range.
     pub followed: bool,
@@ -64,10 +64,7 @@ pub fn sweep(
     accuracy: Accuracy,
     watch: Watch,
 ) -> Result<Outcome, SweepError> {
-    let wish = structure
-        .sweep
-        .as_ref()
-        .ok_or(SweepError::NothingToSweep)?;
+    let wish = structure.sweep.as_ref().ok_or(SweepError::NothingToSweep)?;
     let axis = Axis::new(structure, stack, wish).ok_or(SweepError::NothingToSweep)?;
     let transitions = transitions(structure);
     let bands = bands(structure, &transitions);
@@ -102,10 +99,13 @@ pub fn sweep(
         })
         .collect();
     let names = shown.bands.iter().map(|(band, _)| band.name());
+    let anticrossings = anticrossings.into_iter();
+    let anticrossings =
+        anticrossings.filter(|crossing| crossing.level < shown.listed[crossing.band]);
     Ok(Outcome {
+        anticrossings: anticrossings.collect(),
         bands: names.zip(shown.listed).collect(),
         transitions: shown.transitions,
-        anticrossings,
         followed,
         points,
         axis,

@@ -2,8 +2,8 @@
 //!
 //! They are the same whatever the number of points, and whatever slice of them is asked for.
 
-use super::solution::{NotSolved, solved};
 use super::Axis;
+use super::solution::{NotSolved, solved};
 use crate::models::Band;
 use crate::structure::{Stack, Structure};
 use crate::subbands::{Accuracy, layer_envelopes};
@@ -38,7 +38,10 @@ pub struct Node {
 impl Node {
     /// The squared overlap of a state here with one elsewhere.
     pub fn alike(&self, other: &Node, band: usize, own: usize, theirs: usize) -> f64 {
-        let (a, b) = (self.envelopes[band].get(own), other.envelopes[band].get(theirs));
+        let (a, b) = (
+            self.envelopes[band].get(own),
+            other.envelopes[band].get(theirs),
+        );
         let (Some(a), Some(b)) = (a, b) else {
             return 0.0;
         };
@@ -97,7 +100,9 @@ impl Along<'_> {
 pub fn nodes(along: &Along, bands: &[(Band, usize)]) -> Result<(Vec<Node>, bool), NotSolved> {
     let more = with_spare(bands);
     let solve = |part: f64| along.node(part, &more);
-    let parts: Vec<f64> = (0..=INTERVALS).map(|k| k as f64 / INTERVALS as f64).collect();
+    let parts: Vec<f64> = (0..=INTERVALS)
+        .map(|k| k as f64 / INTERVALS as f64)
+        .collect();
     let first: Vec<Result<Node, NotSolved>> = parts.into_par_iter().map(solve).collect();
     let mut nodes = Vec::new();
     let mut refused = None;
@@ -128,9 +133,9 @@ pub fn nodes(along: &Along, bands: &[(Band, usize)]) -> Result<(Vec<Node>, bool)
         nodes.extend(between);
         nodes.sort_by(|a, b| a.part.total_cmp(&b.part));
     }
-    let followed = nodes
-        .windows(2)
-        .all(|pair| is_followed(&pair[0], &pair[1], bands) || change_places(&pair[0], &pair[1], bands));
+    let followed = nodes.windows(2).all(|pair| {
+        is_followed(&pair[0], &pair[1], bands) || change_places(&pair[0], &pair[1], bands)
+    });
     Ok((nodes, followed))
 }
 
@@ -144,8 +149,7 @@ pub fn with_spare(bands: &[(Band, usize)]) -> Vec<(Band, usize)> {
 fn is_followed(a: &Node, b: &Node, bands: &[(Band, usize)]) -> bool {
     bands.iter().enumerate().all(|(band, &(_, count))| {
         let solved = |node: &Node| node.energies_ev[band].len();
-        (0..count.min(solved(a)).min(solved(b)))
-            .all(|state| a.alike(b, band, state, state) > ALIKE)
+        (0..count.min(solved(a)).min(solved(b))).all(|state| a.alike(b, band, state, state) > ALIKE)
     })
 }
 

@@ -67,7 +67,9 @@ mod tests {
 
     #[test]
     fn what_is_no_slice_is_refused() {
-        for text in ["0/3", "4/3", "a/b", "1", "1/0", "-1/3", "1/3/2", "", "1/100001"] {
+        for text in [
+            "0/3", "4/3", "a/b", "1", "1/0", "-1/3", "1/3/2", "", "1/100001",
+        ] {
             assert!(text.parse::<Part>().is_err(), "{text}");
         }
         assert_eq!("2/3".parse(), Ok(Part { index: 2, of: 3 }));

@@ -5,6 +5,7 @@ use super::nodes::{Along, SPARE};
 use super::solution::{NotSolved, solved};
 use crate::constants::HC_EV_UM;
 use crate::models::Band;
+use crate::numerics::pencil::Pencil;
 use crate::optics::{Transition, interband, transitions};
 use crate::structure::{BandName, Level};
 use crate::subbands::{Bands, Place, lower_outer_edge_ev};
@@ -39,6 +40,9 @@ pub struct LevelAt {
     pub energy_ev: f64,
     /// Distance from the band's edge where it is nearest to the gap, as in the table of levels.
     pub from_edge_ev: f64,
+    /// Distance from that edge without the field, when the field is zero at the middle of the stack: in a field the edge
+    /// itself moves with the ends of the stack.
+    pub from_middle_ev: f64,
     pub error_ev: f64,
     /// Whether both outer barriers hold it.
     pub bound: bool,
@@ -131,6 +135,8 @@ fn found(
     };
     let levels = bands.all().iter().enumerate().map(|(band, solved)| {
         let (floor_ev, outer_ev) = (solved.pencil.floor(), lower_outer_edge_ev(&solved.pencil));
+        let field = solved.band.sign() * stack.field_v_per_nm;
+        let middle_ev = field * 0.5 * stack.total_width_nm() + flat_floor_ev(&solved.pencil, field);
         let pairs = solved.pairs.iter().zip(&solved.errors_ev).enumerate();
         pairs
             .take(shown.listed[band])
@@ -141,6 +147,7 @@ fn found(
                     follows: follows(place),
                     energy_ev: bands.energy_ev(place),
                     from_edge_ev: pair.value - floor_ev,
+                    from_middle_ev: pair.value - middle_ev,
                     error_ev: *error_ev,
                     bound: pair.value <= outer_ev,
                 }
@@ -180,7 +187,11 @@ fn found(
                 oscillator_strength: found.oscillator_strength,
             }
         } else {
-            let (electron, hole) = if from.band == 0 { (from, to) } else { (to, from) };
+            let (electron, hole) = if from.band == 0 {
+                (from, to)
+            } else {
+                (to, from)
+            };
             match across
                 .iter()
                 .find(|pair| pair.electron == electron && pair.hole == hole)
@@ -208,6 +219,18 @@ fn found(
         faults: faults.map(|fault| fault.to_string()).collect(),
         levels,
     })
+}
+
+/// The lowest band edge without its field, on the solver's scale.
+fn flat_floor_ev(pencil: &Pencil, field_v_per_nm: f64) -> f64 {
+    let elements = pencil.mesh.elements.iter().enumerate();
+    elements
+        .flat_map(|(e, element)| {
+            let nodes = pencil.at(e).iter().enumerate();
+            nodes
+                .map(move |(q, at)| at.constant - field_v_per_nm * pencil.mesh.position(element, q))
+        })
+        .fold(f64::INFINITY, f64::min)
 }
 
 /// The place of a level, if the stack holds it.

@@ -14,6 +14,7 @@ mod layer_strip;
 mod page;
 pub mod palette;
 mod spread;
+mod sweep;
 mod text;
 mod tolerances;
 
@@ -21,6 +22,7 @@ pub use band_diagram::{BandDiagram, FINENESS};
 pub use bars::{SensitivityBar, SensitivityBars};
 pub use dispersion::DispersionCurves;
 pub use histogram::{Gaussian, Window, YieldHistogram};
+pub use sweep::{SweepLine, SweepPanel, SweepPicture};
 pub use text::width_pt as text_width_pt;
 pub use tolerances::{sensitivity_bars, yield_histogram};
 
