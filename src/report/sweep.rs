@@ -5,7 +5,9 @@ use super::table::{given, significant, table};
 use super::{Report, rounded};
 use crate::models::model_name;
 use crate::structure::{BandName, Level, Stack, Steps, Structure};
-use crate::sweep::{Axis, Follows, Found, LevelAt, Outcome, Point, Strength, TransitionAt};
+use crate::sweep::{
+    Anticrossing, Axis, Follows, Found, LevelAt, Outcome, Point, Strength, TransitionAt,
+};
 use serde::Serialize;
 use std::collections::BTreeMap;
 
@@ -201,9 +203,11 @@ impl Sweeps {
         let axis = &outcome.axis;
         let anticrossings = outcome.anticrossings.iter().map(|crossing| {
             let named = |state| level(&outcome, crossing.band, state).to_string();
+            let mut states = crossing.follows;
+            states.sort_by_key(|state| state.level().index);
             AnticrossingRow {
-                one: named(crossing.names[0].min(crossing.names[1])),
-                other: named(crossing.names[0].max(crossing.names[1])),
+                one: name(states[0]),
+                other: name(states[1]),
                 levels: [named(crossing.level), named(crossing.level + 1)],
                 at: axis.value(crossing.part),
                 gap_meV: 1e3 * crossing.gap_ev,
@@ -401,12 +405,8 @@ impl Sweeps {
     /// The levels, each line following a state.
     pub fn levels_svg(&self, width: Width) -> String {
         let outcome = &self.outcome;
-        let place = |value: f64| self.place(value);
         let mut panels = Vec::new();
-        for (axis, holes) in [
-            ("Electron energy (meV)", false),
-            ("Electron energy of holes (meV)", true),
-        ] {
+        for (axis, holes) in [("Energy (meV)", false), ("Energy of holes (meV)", true)] {
             let mut lines: BTreeMap<(usize, String), Vec<Vec<[f64; 2]>>> = BTreeMap::new();
             let mut gaps = Vec::new();
             let sign = if holes { -1e3 } else { 1e3 };
@@ -415,35 +415,18 @@ impl Sweeps {
                     continue;
                 }
                 for state in 0..count {
-                    let curve = outcome.points.iter().map(|point| {
-                        let at = point.found.as_ref().ok()?.levels[band].get(state)?;
-                        let energy = sign * at.from_middle_ev;
-                        Some((at.follows, [place(point.value), energy]))
-                    });
-                    let curve: Vec<Option<(Follows, [f64; 2])>> = curve.collect();
-                    let turns: Vec<f64> = outcome
-                        .anticrossings
-                        .iter()
-                        .filter(|c| c.band == band && (c.level == state || c.level + 1 == state))
-                        .map(|c| place(outcome.axis.value(c.part)))
-                        .collect();
-                    for (follows, piece) in pieces(&curve, &turns) {
-                        let style = match follows {
-                            Follows::Level(level) | Follows::FromOn(level) => level.index - 1,
-                        };
+                    for (follows, piece) in self.pieces(band, state, sign) {
                         // Light holes begin their styles after the heavy ones.
-                        let style = style + if of == BandName::LightHole { 4 } else { 0 };
+                        let first = if of == BandName::LightHole { 8 } else { 0 };
+                        let style = first + follows.level().index - 1;
                         lines.entry((style, name(follows))).or_default().push(piece);
                     }
                 }
-                for crossing in outcome.anticrossings.iter().filter(|c| c.band == band) {
-                    let at = place(outcome.axis.value(crossing.part));
-                    let energy = |state: usize| self.energy_at(band, state, at, sign);
-                    if let (Some(a), Some(b)) = (energy(crossing.level), energy(crossing.level + 1))
-                    {
-                        gaps.push((at, [a, b]));
-                    }
-                }
+                let own = outcome.anticrossings.iter().filter(|c| c.band == band);
+                gaps.extend(own.map(|crossing| {
+                    let at = self.place(outcome.axis.value(crossing.part));
+                    (at, crossing.from_middle_ev.map(|ev| sign * ev))
+                }));
             }
             if !lines.is_empty() {
                 let lines = lines.into_iter().map(|((style, name), pieces)| SweepLine {
@@ -546,55 +529,39 @@ impl Sweeps {
         }
     }
 
-    /// The energy of a level at a place of the picture's axis, straight between the points beside it.
-    fn energy_at(&self, band: usize, state: usize, at: f64, sign: f64) -> Option<f64> {
-        let points = &self.outcome.points;
-        let above = points.partition_point(|point| self.place(point.value) < at);
-        let energy = |index: usize| {
-            let point = points.get(index)?;
-            let found = point.found.as_ref().ok()?.levels.get(band)?.get(state)?;
-            Some([self.place(point.value), sign * found.from_middle_ev])
-        };
-        Some(between(energy(above.checked_sub(1)?)?, energy(above)?, at)[1])
-    }
-}
-
-/// The point at `x` on the straight line through two others.
-fn between(a: [f64; 2], b: [f64; 2], x: f64) -> [f64; 2] {
-    let share = if b[0] > a[0] {
-        (x - a[0]) / (b[0] - a[0])
-    } else {
-        0.0
-    };
-    [x, a[1] + share * (b[1] - a[1])]
-}
-
-/// The stretches of a level's curve with the state that each follows: it breaks where there is no level, and changes over
-/// at the `turns` or else halfway.
-fn pieces(curve: &[Option<(Follows, [f64; 2])>], turns: &[f64]) -> Vec<(Follows, Vec<[f64; 2]>)> {
-    let mut list: Vec<(Follows, Vec<[f64; 2]>)> = Vec::new();
-    let mut before: Option<(Follows, [f64; 2])> = None;
-    for at in curve {
-        match (before, *at) {
-            (Some((was, a)), Some((is, b))) if was != is => {
-                let inside = turns.iter().find(|x| a[0] < **x && **x <= b[0]);
-                let turn = between(a, b, *inside.unwrap_or(&(0.5 * (a[0] + b[0]))));
-                if let Some((_, piece)) = list.last_mut() {
+    /// The curve of a level in stretches, each with the state that it follows: it breaks where there is no level, and
+    /// passes through the least gaps.
+    fn pieces(&self, band: usize, state: usize, sign: f64) -> Vec<(Follows, Vec<[f64; 2]>)> {
+        let outcome = &self.outcome;
+        let mut list: Vec<(Follows, Vec<[f64; 2]>)> = Vec::new();
+        let mut broken = true;
+        let side = |crossing: &Anticrossing| state.checked_sub(crossing.level).filter(|s| *s < 2);
+        let own = outcome.anticrossings.iter().filter(|c| c.band == band);
+        let mut turns = own.filter_map(|c| Some((c, side(c)?))).peekable();
+        for point in &outcome.points {
+            while let Some((crossing, side)) = turns.next_if(|(c, _)| c.part < point.part) {
+                let x = self.place(outcome.axis.value(crossing.part));
+                let turn = [x, sign * crossing.from_middle_ev[side]];
+                if let (false, Some((_, piece))) = (broken, list.last_mut()) {
                     piece.push(turn);
                 }
-                list.push((is, vec![turn, b]));
+                list.push((crossing.follows[1 - side], vec![turn]));
+                broken = false;
             }
-            (Some(_), Some((_, b))) => {
-                if let Some((_, piece)) = list.last_mut() {
-                    piece.push(b);
-                }
+            let found = point.found.as_ref().ok();
+            let Some(at) = found.and_then(|found| found.levels[band].get(state)) else {
+                broken = true;
+                continue;
+            };
+            let here = [self.place(point.value), sign * at.from_middle_ev];
+            match list.last_mut() {
+                Some((_, piece)) if !broken => piece.push(here),
+                _ => list.push((at.follows, vec![here])),
             }
-            (None, Some((is, b))) => list.push((is, vec![b])),
-            (_, None) => {}
+            broken = false;
         }
-        before = *at;
+        list
     }
-    list
 }
 
 /// A gap in meV with the digits that its error leaves.

@@ -8,6 +8,7 @@
 use super::minimum::least_gap;
 use super::nodes::{Along, Node};
 use crate::models::Band;
+use crate::structure::Level;
 use rayon::prelude::*;
 
 /// The states are compared where the gap has grown to this many times its least: by the two-level model the exchange is
@@ -23,14 +24,45 @@ pub struct Anticrossing {
     pub band: usize,
     /// The nearer of the two levels to the band's edge, counted from 0; the other is the next one.
     pub level: usize,
-    /// The names of the two below this place, by their numbers at the lower end of the range, counted from 0.
-    pub names: [usize; 2],
+    /// The states of the two levels below this place; above it they are exchanged.
+    pub follows: [Follows; 2],
     /// Part of the way.
     pub part: f64,
     /// The full gap.
     pub gap_ev: f64,
+    /// Both levels there, counted from the band's edge as `LevelAt::from_middle_ev`.
+    pub from_middle_ev: [f64; 2],
     /// Whether the search for the minimum settled.
     pub settled: bool,
+}
+
+/// Which state of the lower end of the range a state is.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Follows {
+    Level(Level),
+    /// One from this level on: it has come from beyond those that are solved.
+    FromOn(Level),
+}
+
+impl Follows {
+    /// `name` counts from 0 among `count` names.
+    pub fn new(band: Band, name: usize, count: usize) -> Follows {
+        let level = Level {
+            band: band.name(),
+            index: name + 1,
+        };
+        if name + 1 == count {
+            Follows::FromOn(level)
+        } else {
+            Follows::Level(level)
+        }
+    }
+
+    pub fn level(self) -> Level {
+        match self {
+            Follows::Level(level) | Follows::FromOn(level) => level,
+        }
+    }
 }
 
 /// All anticrossings along solved places, in their order. `bands` are those that the nodes were solved for.
@@ -50,22 +82,28 @@ pub fn anticrossings(along: &Along, nodes: &[Node], bands: &[(Band, usize)]) -> 
             let least = least_gap(bracket, |part| {
                 along.node(part, bands).ok()?.gap_ev(band, level)
             })?;
+            let there = along.node(least.part, bands).ok()?;
+            let from_middle =
+                |level: usize| Some(there.energies_ev[band].get(level)? - there.middles_ev[band]);
+            let (of, count) = bands[band];
             Some(Anticrossing {
                 band,
                 level,
-                names: [level, level + 1],
+                follows: [level, level + 1].map(|name| Follows::new(of, name, count)),
                 part: least.part,
+                from_middle_ev: [from_middle(level)?, from_middle(level + 1)?],
                 gap_ev: least.gap_ev,
                 settled: least.settled,
             })
         })
         .collect();
     found.sort_by(|a, b| a.part.total_cmp(&b.part));
-    for (band, &(_, count)) in bands.iter().enumerate() {
+    for (band, &(of, count)) in bands.iter().enumerate() {
         let mut names: Vec<usize> = (0..count).collect();
         for crossing in found.iter_mut().filter(|crossing| crossing.band == band) {
             let level = crossing.level;
-            crossing.names = [names[level], names[level + 1]];
+            crossing.follows =
+                [names[level], names[level + 1]].map(|name| Follows::new(of, name, count));
             names.swap(level, level + 1);
         }
     }

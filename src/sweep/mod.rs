@@ -8,10 +8,10 @@ mod part;
 mod point;
 mod solution;
 
-pub use anticrossing::Anticrossing;
+pub use anticrossing::{Anticrossing, Follows};
 pub use axis::Axis;
 pub use part::Part;
-pub use point::{Follows, Found, LevelAt, Point, Strength, TransitionAt};
+pub use point::{Found, LevelAt, Point, Strength, TransitionAt};
 pub use solution::NotSolved;
 
 use crate::models::Band;

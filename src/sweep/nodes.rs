@@ -3,7 +3,7 @@
 //! They are the same whatever the number of points, and whatever slice of them is asked for.
 
 use super::Axis;
-use super::solution::{NotSolved, solved};
+use super::solution::{NotSolved, middle_ev, solved};
 use crate::models::Band;
 use crate::structure::{Stack, Structure};
 use crate::subbands::{Accuracy, layer_envelopes};
@@ -29,6 +29,8 @@ pub struct Node {
     pub part: f64,
     /// Of each band, from its edge: on the solver's scale, ascending, in eV.
     pub energies_ev: Vec<Vec<f64>>,
+    /// Where the levels of each band are counted from in pictures, on the same scale.
+    pub middles_ev: Vec<f64>,
     /// Envelopes at the same fractions of all layers, each of norm 1.
     envelopes: Vec<Vec<Vec<f64>>>,
     /// Levels of each band that the structure asks for.
@@ -79,9 +81,11 @@ impl Along<'_> {
             all
         });
         let energies_ev = found.all().iter();
+        let middles_ev = found.all().iter().map(|band| middle_ev(&stack, band));
         Ok(Node {
             part,
             envelopes: envelopes.collect(),
+            middles_ev: middles_ev.collect(),
             energies_ev: energies_ev
                 .map(|band| band.pairs.iter().map(|pair| pair.value).collect())
                 .collect(),

@@ -1,11 +1,10 @@
 //! Levels and transitions at one value of the swept number.
 
-use super::anticrossing::{Anticrossing, names};
+use super::anticrossing::{Anticrossing, Follows, names};
 use super::nodes::{Along, SPARE};
-use super::solution::{NotSolved, solved};
+use super::solution::{NotSolved, middle_ev, solved};
 use crate::constants::HC_EV_UM;
 use crate::models::Band;
-use crate::numerics::pencil::Pencil;
 use crate::optics::{Transition, interband, transitions};
 use crate::structure::{BandName, Level};
 use crate::subbands::{Bands, Place, lower_outer_edge_ev};
@@ -46,14 +45,6 @@ pub struct LevelAt {
     pub error_ev: f64,
     /// Whether both outer barriers hold it.
     pub bound: bool,
-}
-
-/// Which state of the lower end of the range a state is.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Follows {
-    Level(Level),
-    /// One from this level on: it has come from beyond those that are solved.
-    FromOn(Level),
 }
 
 /// A transition at a point.
@@ -122,21 +113,12 @@ fn found(
         .map(|(band, (_, count))| names(anticrossings, band, count + SPARE, part))
         .collect();
     let follows = |place: Place| {
-        let last = names[place.band].len() - 1;
-        let name = names[place.band][place.state];
-        let level = bands.level(Place {
-            state: name,
-            ..place
-        });
-        match name {
-            name if name == last => Follows::FromOn(level),
-            _ => Follows::Level(level),
-        }
+        let names = &names[place.band];
+        Follows::new(bands.of(place).band, names[place.state], names.len())
     };
     let levels = bands.all().iter().enumerate().map(|(band, solved)| {
         let (floor_ev, outer_ev) = (solved.pencil.floor(), lower_outer_edge_ev(&solved.pencil));
-        let field = solved.band.sign() * stack.field_v_per_nm;
-        let middle_ev = field * 0.5 * stack.total_width_nm() + flat_floor_ev(&solved.pencil, field);
+        let middle_ev = middle_ev(&stack, solved);
         let pairs = solved.pairs.iter().zip(&solved.errors_ev).enumerate();
         pairs
             .take(shown.listed[band])
@@ -219,18 +201,6 @@ fn found(
         faults: faults.map(|fault| fault.to_string()).collect(),
         levels,
     })
-}
-
-/// The lowest band edge without its field, on the solver's scale.
-fn flat_floor_ev(pencil: &Pencil, field_v_per_nm: f64) -> f64 {
-    let elements = pencil.mesh.elements.iter().enumerate();
-    elements
-        .flat_map(|(e, element)| {
-            let nodes = pencil.at(e).iter().enumerate();
-            nodes
-                .map(move |(q, at)| at.constant - field_v_per_nm * pencil.mesh.position(element, q))
-        })
-        .fold(f64::INFINITY, f64::min)
 }
 
 /// The place of a level, if the stack holds it.

@@ -1,0 +1,654 @@
+//! Sweeps against closed forms, a published pair of wells and the program's own single solves; slices, threads, bad input.
+
+mod common;
+
+use common::{Bench, Ran, list, number};
+use serde_json::Value;
+use wellwright::constants::HBAR2_OVER_2M0;
+
+/// A layer between hard walls, of one mass.
+const BOX: &str = "\
+field: 0 kV/cm
+bands: {conduction: {model: parabolic, states: 4}}
+materials:
+  Box: {conduction_edge: 0 eV, electron_mass: 0.067}
+layers:
+  - {name: box, material: Box, width: 10 nm}
+";
+
+/// Two wells of different widths behind a barrier that hardly lets through.
+const PAIR: &str = "\
+title: Pair
+substrate: GaAs
+temperature: 10 K
+bands: {conduction: {model: parabolic, states: 3}}
+layers:
+  - {name: bottom, material: Al0.3Ga0.7As, width: 15 nm}
+  - {name: wide, material: GaAs, width: 10 nm}
+  - {name: barrier, material: Al0.3Ga0.7As, width: 7 nm}
+  - {name: narrow, material: GaAs, width: 7 nm}
+  - {name: top, material: Al0.3Ga0.7As, width: 15 nm}
+";
+
+const PAIR_SWEEP: &str = "sweep: {vary: {field: [-40 kV/cm, 20 kV/cm]}, points: 23}\n";
+
+fn bench(text: &str) -> Bench {
+    let bench = Bench::new();
+    bench.write("stack.yaml", text);
+    bench
+}
+
+/// A sweep of one file, as JSON.
+#[track_caller]
+fn swept(text: &str) -> Value {
+    sweep(&bench(text), &["--format", "json"]).json()
+}
+
+#[track_caller]
+fn sweep(bench: &Bench, arguments: &[&str]) -> Ran {
+    let mut all = vec!["sweep", "stack.yaml"];
+    all.extend(arguments);
+    bench.run(&all).code(0)
+}
+
+/// One number of every level at a point.
+fn of_levels(point: &Value, key: &str) -> Vec<f64> {
+    list(point, "levels")
+        .iter()
+        .map(|l| number(l, key))
+        .collect()
+}
+
+#[track_caller]
+fn near(found: f64, expected: f64, tolerance: f64) {
+    assert!(
+        (found - expected).abs() <= tolerance,
+        "{found} for {expected}"
+    );
+}
+
+/// Hard walls: E_n = ħ²π²n²/2mL², z12 = 16L/9π², f12 = 256/27π² · m0/m (any textbook; 30 digits in closed_forms.json).
+#[test]
+fn a_box_follows_the_square_of_its_width() {
+    let text = "sweep: {vary: {layer: box, width: [5 nm, 20 nm]}, points: 5, steps: logarithmic}\n";
+    let file = swept(&format!("{BOX}{text}"));
+    let pi = std::f64::consts::PI;
+    for (point, width_nm) in list(&file, "points")
+        .iter()
+        .zip([5.0, 7.0710678, 10.0, 14.142136, 20.0])
+    {
+        near(number(point, "at"), width_nm, 1e-6);
+        let width_nm = number(point, "at");
+        for (n, mev) in (1..=4).zip(of_levels(point, "from_edge_meV")) {
+            let wave = f64::from(n) * pi / width_nm;
+            near(mev, 1e3 * HBAR2_OVER_2M0 / 0.067 * wave * wave, 1e-3);
+        }
+        let first = &list(point, "transitions")[0];
+        near(
+            number(first, "dipole_nm"),
+            16.0 * width_nm / (9.0 * pi * pi),
+            1e-6 * width_nm,
+        );
+        near(
+            number(first, "oscillator_strength"),
+            256.0 / (27.0 * pi * pi) / 0.067,
+            1e-5,
+        );
+        near(
+            number(first, "wavelength_um") * number(first, "energy_meV"),
+            1_239.841_984,
+            1e-5,
+        );
+    }
+    assert_eq!(list(&file, "anticrossings"), &[] as &[Value]);
+    assert_eq!(list(&file, "points").len(), 5);
+}
+
+/// Airy determinant with 30 digits (tests/reference/closed_forms.py), zero of energy at the middle of the box.
+#[test]
+fn a_box_in_a_field_has_the_levels_of_airy_functions() {
+    let file = swept(&format!(
+        "{BOX}sweep: {{vary: {{field: [0 kV/cm, 100 kV/cm]}}, points: 6}}\n"
+    ));
+    let points = list(&file, "points");
+    for (point, expected) in [
+        (1, [56.046741123417, 224.51861701645, 505.12885512606]),
+        (5, [54.206226569685, 225.05951209959, 505.45756433981]),
+    ] {
+        let levels = of_levels(&points[point], "from_middle_meV");
+        for (mev, expected) in levels.into_iter().zip(expected) {
+            near(mev, expected, 1e-3);
+        }
+    }
+}
+
+/// E_n = −a_n (ħ²e²F²/2m)^(1/3) above the wall's foot, a_n the zeros of Ai (Abramowitz and Stegun 1964, table 10.13).
+#[test]
+fn a_triangular_well_follows_the_two_thirds_power_of_the_field() {
+    let file = swept(&format!(
+        "{}sweep: {{vary: {{field: [20 kV/cm, 80 kV/cm]}}, points: 3}}\n",
+        BOX.replace("width: 10 nm", "width: 90 nm")
+    ));
+    for (point, field) in list(&file, "points").iter().zip([2e-3_f64, 5e-3, 8e-3]) {
+        let scale = (HBAR2_OVER_2M0 / 0.067 * field * field).cbrt();
+        for (mev, zero) in of_levels(point, "from_edge_meV").into_iter().zip([
+            2.338_107_41,
+            4.087_949_44,
+            5.520_559_83,
+            6.786_708_09,
+        ]) {
+            near(mev, 1e3 * scale * zero, 1e-3);
+        }
+    }
+}
+
+/// Equal wells are in resonance without a field; the gap there is 18.600 853 442 589 meV by the closed form of a double
+/// well with 60/20/60 Å, 0.25 eV, masses 0.067 and 0.09 (tests/reference/closed_forms.py).
+#[test]
+fn equal_wells_anticross_without_field() {
+    let text = "\
+bands: {conduction: {model: parabolic, states: 2}}
+materials:
+  W: {conduction_edge: 0 eV, electron_mass: 0.067}
+  B: {conduction_edge: 0.25 eV, electron_mass: 0.09}
+layers:
+  - {material: B, width: 30 nm}
+  - {material: W, width: 6 nm}
+  - {material: B, width: 2 nm}
+  - {material: W, width: 6 nm}
+  - {material: B, width: 30 nm}
+sweep: {vary: {field: [-61 kV/cm, 83 kV/cm]}, points: 7}
+";
+    let file = swept(text);
+    let [row] = list(&file, "anticrossings") else {
+        panic!("{file}");
+    };
+    near(number(row, "gap_meV"), 18.600853442589, 1e-5);
+    near(number(row, "at"), 0.0, 0.02);
+    assert_eq!(
+        (&row["one"], &row["other"]),
+        (&"conduction 1".into(), &"conduction 2".into())
+    );
+    assert_eq!(row["settled"], true);
+}
+
+/// Leo et al., Phys. Rev. Lett. 66, 201 (1991), from memory: 170/17/120 Å with Al0.35Ga0.65As oscillate with 1.3 ps at
+/// resonance, within 10 %. Beside it the gap of an independent finite-difference program with the parameters of
+/// Vurgaftman et al. (2001), 3.36 meV.
+#[test]
+fn a_published_pair_of_wells_has_its_gap() {
+    let text = "\
+substrate: GaAs
+temperature: 10 K
+bands: {conduction: {model: parabolic, states: 2}}
+layers:
+  - {material: Al0.35Ga0.65As, width: 25 nm}
+  - {material: GaAs, width: 17 nm}
+  - {material: Al0.35Ga0.65As, width: 1.7 nm}
+  - {material: GaAs, width: 12 nm}
+  - {material: Al0.35Ga0.65As, width: 25 nm}
+sweep: {vary: {field: [-16 kV/cm, 2 kV/cm]}, points: 10}
+";
+    let file = swept(text);
+    let [row] = list(&file, "anticrossings") else {
+        panic!("{file}");
+    };
+    let gap_mev = number(row, "gap_meV");
+    near(4.135_667_7 / gap_mev, 1.3, 0.13);
+    near(gap_mev, 3.36, 0.02);
+}
+
+/// Two-level model (von Neumann and Wigner 1929): g² = Δ² + s²(F − F0)². Three gaps far from the resonance give Δ² no
+/// digit, so s and F0 are taken from two of them and the third is foretold; the states there sit in one well each.
+#[test]
+fn names_go_with_the_wells_through_a_crossing() {
+    let file = swept(&format!("{PAIR}{PAIR_SWEEP}"));
+    let crossings = list(&file, "anticrossings");
+    let row = crossings
+        .iter()
+        .find(|row| row["levels"][0] == "conduction 1")
+        .unwrap();
+    let (at, gap_mev) = (number(row, "at"), number(row, "gap_meV"));
+    assert!(gap_mev < 0.5, "{gap_mev}");
+    let points = list(&file, "points");
+    let distance = |index: usize| {
+        let levels = of_levels(&points[index], "energy_eV");
+        1e3 * (levels[1] - levels[0])
+    };
+    // Straight lines through the two lowest points on one side meet zero at the resonance.
+    let (one, two) = (points.len() - 1, points.len() - 4);
+    let (x1, x2) = (number(&points[one], "at"), number(&points[two], "at"));
+    let (g1, g2) = (distance(one), distance(two));
+    let side = if x2 > at { 1.0 } else { panic!("{at}") };
+    assert_eq!(side, 1.0);
+    let meets = x1 - g1 * (x1 - x2) / (g1 - g2);
+    near(meets, at, 0.15);
+    // The layers that hold the states, by single solves at both ends.
+    let mut seen = Vec::new();
+    for field in ["-40", "20"] {
+        let bench = bench(&format!("{PAIR}field: {field} kV/cm\n"));
+        let levels = bench
+            .run(&["levels", "stack.yaml", "--format", "json"])
+            .code(0)
+            .json();
+        let layer = |k: usize| {
+            list(&levels, "subbands")[k]["layer"]
+                .as_str()
+                .unwrap()
+                .to_owned()
+        };
+        seen.push([layer(0), layer(1)]);
+    }
+    assert_eq!(seen[0][0], seen[1][1]);
+    assert_eq!(seen[0][1], seen[1][0]);
+    for point in points {
+        let levels = list(point, "levels");
+        let expected = if number(point, "at") < at {
+            ["conduction 1", "conduction 2"]
+        } else {
+            ["conduction 2", "conduction 1"]
+        };
+        for (level, expected) in levels.iter().zip(expected) {
+            assert_eq!(level["follows"], expected, "{point}");
+        }
+        let first = &list(point, "transitions")[0];
+        assert_eq!(first["from_follows"], expected[0]);
+        assert_eq!(first["to_follows"], expected[1]);
+    }
+}
+
+/// Every point is the file solved with the value written into it.
+#[test]
+fn points_are_single_solves() {
+    let pair = PAIR.replace(
+        "states: 3}",
+        "states: 2}, valence: {model: decoupled, states: 2}",
+    );
+    for (vary, place, written) in [
+        (
+            "{temperature: [10 K, 250 K]}",
+            "temperature: 10 K",
+            "temperature: 250 K",
+        ),
+        (
+            "{layer: wide, width: [20 ML, 40 ML]}",
+            "width: 10 nm",
+            "width: 40 ML",
+        ),
+        (
+            "{layer: barrier, fraction: Al, between: [0.2, 0.35]}",
+            "{name: barrier, material: Al0.3Ga0.7As",
+            "{name: barrier, material: Al0.35Ga0.65As",
+        ),
+    ] {
+        let file = swept(&format!("{pair}sweep: {{vary: {vary}, points: 3}}\n"));
+        let last = list(&file, "points").last().unwrap();
+        let bench = bench(&pair.replace(place, written));
+        let levels = bench
+            .run(&["levels", "stack.yaml", "--format", "json"])
+            .code(0)
+            .json();
+        for row in list(&levels, "subbands") {
+            let name = format!("{} {}", row["band"].as_str().unwrap(), row["index"]);
+            let own = list(last, "levels")
+                .iter()
+                .find(|l| l["level"] == *name)
+                .unwrap();
+            near(number(own, "energy_eV"), number(row, "energy_eV"), 1e-9);
+            near(
+                number(own, "from_edge_meV"),
+                number(row, "from_edge_meV"),
+                1e-6,
+            );
+        }
+        // Neighbouring levels are shown: the gap and inside the band.
+        let transitions = list(last, "transitions");
+        assert_eq!(transitions.len(), 2);
+        for own in transitions {
+            let rows = list(&levels, "transitions")
+                .iter()
+                .chain(list(&levels, "interband"));
+            let mut rows = rows.filter(|row| row["from"] == own["from"] && row["to"] == own["to"]);
+            let row = rows.next().unwrap();
+            for key in [
+                "energy_meV",
+                "wavelength_um",
+                "dipole_nm",
+                "oscillator_strength",
+                "overlap",
+                "te_Ep",
+            ] {
+                if own.get(key).is_some() {
+                    near(number(own, key), number(row, key), 1e-6);
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn slices_join_to_the_bytes_of_the_whole() {
+    let bench = bench(&format!("{PAIR}{PAIR_SWEEP}"));
+    let whole = sweep(&bench, &["--format", "csv"]).stdout;
+    assert_eq!(whole.lines().count(), 24);
+    let header = whole.lines().next().unwrap();
+    assert!(
+        header.starts_with("field_kV_cm,conduction_1_energy_eV,"),
+        "{header}"
+    );
+    // Both names of the lowest level occur, so that a slice that began to count anew would show.
+    let column = header
+        .split(',')
+        .position(|c| c == "conduction_1_follows")
+        .unwrap();
+    let names = whole
+        .lines()
+        .skip(1)
+        .map(|line| line.split(',').nth(column).unwrap());
+    let names: std::collections::BTreeSet<&str> = names.collect();
+    assert_eq!(names.into_iter().collect::<Vec<_>>(), ["1", "2"]);
+    for of in [1, 3, 7, 30] {
+        let slices = (1..=of).map(|index| {
+            let part = format!("{index}/{of}");
+            sweep(&bench, &["--format", "csv", "--part", &part]).stdout
+        });
+        assert_eq!(slices.collect::<String>(), whole, "{of} slices");
+    }
+    sweep(
+        &bench,
+        &["--format", "csv", "--part", "2/3", "-o", "second.csv"],
+    );
+    assert!(whole.contains(&bench.read("second.csv")));
+}
+
+#[test]
+fn neither_threads_nor_points_change_what_is_followed() {
+    let bench = bench(&format!("{PAIR}{PAIR_SWEEP}"));
+    let one = sweep(&bench, &["--format", "json", "--threads", "1"]).stdout;
+    for threads in ["2", "5"] {
+        assert_eq!(
+            sweep(&bench, &["--format", "json", "--threads", threads]).stdout,
+            one
+        );
+    }
+    let more = sweep(&bench, &["--format", "json", "--points", "50"]).json();
+    let one: Value = serde_json::from_str(&one).unwrap();
+    assert_eq!(more["anticrossings"], one["anticrossings"]);
+    assert_eq!(list(&more, "points").len(), 50);
+}
+
+/// A remote-band term that makes the mass of GaAs negative, and with more aluminium positive again: the first points have
+/// no solution and stay in the list.
+#[test]
+fn points_without_a_solution_are_marked() {
+    let text = "\
+bands: {conduction: {model: energy-dependent, states: 2}}
+materials:
+  GaAs: {remote_band_f: -10.5}
+layers:
+  - {material: Al0.5Ga0.5As, width: 20 nm}
+  - {name: well, material: Al0.3Ga0.7As, width: 10 nm}
+  - {material: Al0.5Ga0.5As, width: 20 nm}
+sweep: {vary: {layer: well, fraction: Al, between: [0, 0.4]}, points: 9}
+";
+    let bench = bench(text);
+    let ran = sweep(&bench, &["--format", "json"]);
+    let file = ran.json();
+    let points = list(&file, "points");
+    assert_eq!(points.len(), 9);
+    assert!(
+        points[0]["not_solved"]
+            .as_str()
+            .unwrap()
+            .contains("not positive")
+    );
+    assert_eq!(list(&points[0], "levels"), &[] as &[Value]);
+    assert!(points[8].get("not_solved").is_none());
+    assert_eq!(list(&points[8], "levels").len(), 2);
+    assert!(
+        ran.stderr.contains("of 9 points cannot be solved"),
+        "{}",
+        ran.stderr
+    );
+    let csv = sweep(&bench, &["--format", "csv"]).stdout;
+    assert_eq!(csv.lines().count(), 10);
+    assert!(csv.lines().nth(1).unwrap().contains("not positive"));
+    let table = sweep(&bench, &[]).stdout;
+    assert!(
+        table.contains("of 9 points cannot be solved (-), the first at 0:"),
+        "{table}"
+    );
+    sweep(&bench, &["-o", "levels.svg"]);
+    // Nowhere is another matter.
+    let nowhere = common::Bench::new();
+    nowhere.write("stack.yaml", text.replace("[0, 0.4]", "[0, 0.05]"));
+    let ran = nowhere.run(&["sweep", "stack.yaml"]).code(2);
+    assert!(ran.stderr.contains("not positive"), "{}", ran.stderr);
+}
+
+#[test]
+fn doping_is_swept_with_a_warning() {
+    let text = format!(
+        "{PAIR}sweep: {{vary: {{layer: wide, donors: [1e16 cm^-3, 1e18 cm^-3]}}, points: 3, steps: logarithmic}}\n"
+    );
+    let ran = sweep(&bench(&text), &["--format", "json"]);
+    assert!(
+        ran.stderr.contains("the levels do not depend on doping"),
+        "{}",
+        ran.stderr
+    );
+    let file = ran.json();
+    let at: Vec<f64> = list(&file, "points")
+        .iter()
+        .map(|p| number(p, "at"))
+        .collect();
+    assert_eq!(at, [1e16, 1e17, 1e18]);
+    assert_eq!(list(&file, "anticrossings"), &[] as &[Value]);
+}
+
+#[test]
+fn mistakes_in_the_block_are_told_with_their_place() {
+    for (block, place, message) in [
+        (
+            "vary: {layer: box, width: [9 nm, 3 nm]}",
+            "7:34",
+            "the bounds are reversed",
+        ),
+        (
+            "vary: {layer: box, width: [3 nm, 3 nm]}",
+            "7:34",
+            "nothing can vary",
+        ),
+        (
+            "vary: {layer: bux, width: [3 nm, 9 nm]}",
+            "7:22",
+            "did you mean `box`?",
+        ),
+        (
+            "vary: {layer: cap, width: [3 nm, 9 nm]}",
+            "7:22",
+            "no layer is named `cap`",
+        ),
+        (
+            "vary: {layer: box, width: [3, 9 nm]}",
+            "7:35",
+            "has no unit",
+        ),
+        (
+            "vary: {layer: box, width: [0 nm, 9 nm]}",
+            "7:35",
+            "out of range",
+        ),
+        (
+            "vary: {layer: box, width: [-3 nm, 9 nm]}",
+            "7:35",
+            "out of range",
+        ),
+        (
+            "vary: {layer: box, width: [3 nm, NaN nm]}",
+            "7:41",
+            "expected a length",
+        ),
+        (
+            "vary: {layer: box, width: [3 nm]}",
+            "7:34",
+            "1 bounds stand here",
+        ),
+        ("vary: {temperature: [4 K, 3000 K]}", "7:34", "out of range"),
+        ("vary: {temperature: [-4 K, 300 K]}", "7:29", "out of range"),
+        (
+            "vary: {layer: box, temperature: [4 K, 300 K]}",
+            "7:15",
+            "the same temperature",
+        ),
+        (
+            "vary: {temperatur: [4 K, 300 K]}",
+            "7:16",
+            "did you mean `temperature`?",
+        ),
+        (
+            "vary: {layer: box, donors: [1e17 cm^-3, 1e16 cm^-3]}",
+            "7:35",
+            "the bounds are reversed",
+        ),
+        (
+            "vary: {donors: [1e16 cm^-3, 1e17 cm^-3]}",
+            "7:15",
+            "has no `layer`",
+        ),
+        (
+            "vary: {layer: box, width: [3 nm, 9 nm], donors: [1e16 cm^-3, 1e17 cm^-3]}",
+            "7:15",
+            "at once",
+        ),
+        ("vary: {layer: box}", "7:15", "does not say what to sweep"),
+        (
+            "vary: [{layer: box, width: [3 nm, 9 nm]}]",
+            "7:15",
+            "expected `vary`, a mapping",
+        ),
+        ("points: 20", "7:8", "`sweep` has no `vary`"),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, points: 1",
+            "7:52",
+            "out of range",
+        ),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, points: 2.5",
+            "7:52",
+            "no whole number",
+        ),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, points: 1e9",
+            "7:52",
+            "out of range",
+        ),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, steps: logarithmic",
+            "7:51",
+            "no logarithmic steps",
+        ),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, steps: log",
+            "7:51",
+            "expected `even` or `logarithmic`",
+        ),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, show: []",
+            "7:50",
+            "0 transitions",
+        ),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, show: [{from: conduction 1, to: conduction 1}]",
+            "7:76",
+            "from a level to itself",
+        ),
+        (
+            "vary: {field: [0 kV/cm, 9 kV/cm]}, show: [{from: heavy-hole 1, to: conduction 1}]",
+            "7:58",
+            "is not solved",
+        ),
+    ] {
+        let bench = bench(&format!("{BOX}sweep: {{{block}}}\n"));
+        let ran = bench.run(&["sweep", "stack.yaml", "-o", "out.svg"]).code(2);
+        assert!(ran.stderr.contains(message), "{block}\n{}", ran.stderr);
+        assert!(
+            ran.stderr.contains(&format!("stack.yaml:{place}")),
+            "{block}\n{}",
+            ran.stderr
+        );
+        assert_eq!(bench.files(), ["stack.yaml"]);
+    }
+    let ran = bench(BOX).run(&["sweep", "stack.yaml"]).code(2);
+    assert!(ran.stderr.contains("no `sweep` block"), "{}", ran.stderr);
+}
+
+#[test]
+fn arguments_that_make_no_sense_are_refused() {
+    let bench = bench(&format!("{PAIR}{PAIR_SWEEP}"));
+    for (arguments, message) in [
+        (&["--format", "csv", "--part", "0/3"][..], "1/3"),
+        (&["--format", "csv", "--part", "4/3"], "from `1/3` to `3/3`"),
+        (&["--format", "csv", "--part", "a/b"], "as in `1/4`"),
+        (&["--part", "1/3"], "--part needs --format csv"),
+        (
+            &["--part", "1/3", "--format", "csv", "-o", "a.svg"],
+            "no picture",
+        ),
+        (&["--points", "1"], "2..=100000"),
+        (&["--points", "0"], "2..=100000"),
+        (&["--threads", "0"], "1..=1024"),
+        (&["--what", "levels"], "ends in .svg"),
+    ] {
+        let mut all = vec!["sweep", "stack.yaml"];
+        all.extend(arguments);
+        let ran = bench.run(&all).code(2);
+        assert!(
+            ran.stderr.contains(message),
+            "{arguments:?}\n{}",
+            ran.stderr
+        );
+        assert_eq!(bench.files(), ["stack.yaml"]);
+    }
+}
+
+#[test]
+fn pictures_show_every_state_once() {
+    let bench = bench(&format!("{PAIR}{PAIR_SWEEP}"));
+    for (what, width, points, names) in [
+        (
+            "levels",
+            "page",
+            170.0,
+            ["conduction 1", "conduction 2", "conduction 3"],
+        ),
+        (
+            "transitions",
+            "column",
+            86.0,
+            [
+                "conduction 1 to conduction 2",
+                "conduction 2 to conduction 3",
+                "Field (kV/cm)",
+            ],
+        ),
+    ] {
+        sweep(&bench, &["--what", what, "--width", width, "-o", "a.svg"]);
+        let text = bench.read("a.svg");
+        let picture = roxmltree::Document::parse(&text).unwrap();
+        let root = picture.root_element();
+        let wide: f64 = root
+            .attribute("width")
+            .unwrap()
+            .trim_end_matches("pt")
+            .parse()
+            .unwrap();
+        near(wide, points * 72.0 / 25.4, 0.01);
+        for name in names {
+            let found = root
+                .descendants()
+                .filter(|n| n.has_tag_name("text") && n.text() == Some(name));
+            assert_eq!(found.count(), 1, "{name}\n{text}");
+        }
+    }
+}
