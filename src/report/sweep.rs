@@ -179,9 +179,11 @@ fn with_unit(axis: &Axis, value: f64) -> String {
 
 /// The place of a least gap with its unit, to a ten-thousandth of the range: it is flat there.
 fn place_of(axis: &Axis, value: f64) -> String {
-    let finest = 1e-4 * (axis.high - axis.low);
-    let digits = (value.abs() / finest).log10().ceil().clamp(1.0, 8.0);
-    unit_after(axis, significant(value, digits as usize))
+    let digits = match axis.steps {
+        Steps::Even => (1e4 * value.abs() / (axis.high - axis.low)).log10().ceil(),
+        Steps::Logarithmic => 4.0,
+    };
+    unit_after(axis, significant(value, digits.clamp(1.0, 8.0) as usize))
 }
 
 fn unit_after(axis: &Axis, number: String) -> String {
@@ -320,7 +322,7 @@ impl Sweeps {
         let any =
             |test: &dyn Fn(&LevelAt) -> bool| self.rows().into_iter().flat_map(levels).any(test);
         if any(&|at| at.follows != Follows::Level(at.level)) {
-            text += "(n) the state has the character of level n at the lower end of the range.\n";
+            text += "(n) the state has the character of level n at the lower end of the range; n+, of level n or one beyond.\n";
         }
         if any(&|at| !at.bound) {
             text += "† only the walls hold it.\n";
@@ -509,7 +511,7 @@ impl Sweeps {
         let unit = axis.unit.replace("^-3", "⁻³");
         SweepPicture {
             title: self.title.clone().unwrap_or_else(|| "Sweep".to_owned()),
-            caption,
+            caption: caption.replace(" -", " −"),
             axis: match (axis.steps, &*unit) {
                 (Steps::Even, "") => name,
                 (Steps::Even, unit) => format!("{name} ({unit})"),
