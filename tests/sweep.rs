@@ -646,3 +646,33 @@ fn pictures_show_every_state_once() {
         }
     }
 }
+
+/// Each shipped structure with a `sweep` block is swept without a doubt about what its states follow.
+#[test]
+fn shipped_structures_are_swept() {
+    let mut swept = 0;
+    for path in common::shipped_structures() {
+        let text = std::fs::read_to_string(&path).unwrap();
+        if !text.contains("\nsweep:") {
+            continue;
+        }
+        swept += 1;
+        let ran = sweep(&bench(&text), &["--format", "json"]);
+        assert!(!ran.stderr.contains("not sure"), "{}", ran.stderr);
+        assert!(!ran.stderr.contains("audit"), "{}", ran.stderr);
+        let file = ran.json();
+        for point in list(&file, "points") {
+            assert!(point.get("not_solved").is_none(), "{point}");
+            assert_eq!(
+                list(point, "transitions").len(),
+                list(&list(&file, "points")[0], "transitions").len()
+            );
+        }
+        assert!(
+            list(&file, "anticrossings")
+                .iter()
+                .all(|row| row["settled"] == true)
+        );
+    }
+    assert!(swept >= 2);
+}
