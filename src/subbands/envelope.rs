@@ -1,6 +1,7 @@
 //! Envelopes of solved states outside the solver's own mesh.
 
 use super::{Subbands, state};
+use crate::numerics::mesh::Mesh;
 use crate::numerics::quadrature::Reference;
 use crate::structure::Stack;
 
@@ -11,48 +12,42 @@ const POINTS_ORDER: usize = 10;
 /// their overlap: lists of stacks that differ in widths only can be set against each other.
 pub fn layer_envelopes(subbands: &Subbands, stack: &Stack) -> Vec<Vec<f64>> {
     let points = Reference::of_order(POINTS_ORDER);
-    let widths: Vec<f64> = stack.layers.iter().map(|layer| layer.width_nm).collect();
-    subbands
-        .pairs
-        .iter()
-        .map(|pair| {
-            let mut list = Vec::with_capacity(widths.len() * points.nodes.len());
-            for (layer, width) in widths.iter().enumerate() {
-                let values = layer_values(subbands, &pair.vector, layer, &points.nodes);
-                for (value, weight) in values.iter().zip(&points.weights) {
-                    list.push(value * (0.5 * weight * width).sqrt());
-                }
+    let mesh = &subbands.pencil.mesh;
+    let mut lists = vec![Vec::new(); subbands.pairs.len()];
+    for (layer, own) in stack.layers.iter().enumerate() {
+        let places = layer_rows(mesh, layer, &points.nodes);
+        for (place, weight) in places.iter().zip(&points.weights) {
+            let scale = (0.5 * weight * own.width_nm).sqrt();
+            for (list, pair) in lists.iter_mut().zip(&subbands.pairs) {
+                let value = place.as_ref().map_or(0.0, |(element, row)| {
+                    let local = mesh.local(*element, &pair.vector).iter();
+                    row.iter().zip(local).map(|(m, v)| m * v).sum()
+                });
+                list.push(value * scale);
             }
-            list
-        })
-        .collect()
+        }
+    }
+    lists
 }
 
-/// Values of a nodal vector at the given places of one layer (−1 its bottom, 1 its top).
-fn layer_values(subbands: &Subbands, vector: &[f64], layer: usize, places: &[f64]) -> Vec<f64> {
-    let mesh = &subbands.pencil.mesh;
+/// The element at each of the given places of one layer (−1 its bottom, 1 its top), and what takes values at the element's
+/// nodes to that place.
+fn layer_rows(mesh: &Mesh, layer: usize, places: &[f64]) -> Vec<Option<(usize, Vec<f64>)>> {
     let own: Vec<usize> = (0..mesh.elements.len())
         .filter(|&e| mesh.elements[e].segment == layer)
         .collect();
-    places
-        .iter()
-        .map(|place| {
-            let t = 0.5 * (1.0 + place);
-            let holding = own
-                .iter()
-                .copied()
-                .rev()
-                .find(|&e| mesh.elements[e].start_fraction <= t + 1e-12);
-            let Some(e) = holding else { return 0.0 };
-            let element = &mesh.elements[e];
-            let x = 2.0 * (t - element.start_fraction) / element.length_fraction - 1.0;
-            let row = mesh.reference.interpolation(&[x.clamp(-1.0, 1.0)]);
-            row.iter()
-                .zip(mesh.local(e, vector))
-                .map(|(m, v)| m * v)
-                .sum()
-        })
-        .collect()
+    let rows = places.iter().map(|place| {
+        let t = 0.5 * (1.0 + place);
+        let e = own
+            .iter()
+            .copied()
+            .rev()
+            .find(|&e| mesh.elements[e].start_fraction <= t + 1e-12)?;
+        let element = &mesh.elements[e];
+        let x = 2.0 * (t - element.start_fraction) / element.length_fraction - 1.0;
+        Some((e, mesh.reference.interpolation(&[x.clamp(-1.0, 1.0)])))
+    });
+    rows.collect()
 }
 
 /// Every state's √(w ρ) at the nodes of each element, with ρ its probability density and w the quadrature weights: the

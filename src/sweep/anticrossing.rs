@@ -40,7 +40,7 @@ pub struct Anticrossing {
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Follows {
     Level(Level),
-    /// One from this level on: it has come from beyond those that are solved.
+    /// One from this level on: it has come from beyond those that are followed.
     FromOn(Level),
 }
 
@@ -75,7 +75,7 @@ pub fn anticrossings(along: &Along, nodes: &[Node], bands: &[(Band, usize)]) -> 
     }
     let mut found: Vec<Anticrossing> = candidates
         .into_par_iter()
-        .filter(|&(band, level, at)| exchange(nodes, band, level, at))
+        .filter(|&(band, level, at)| is_exchange(nodes, band, level, at))
         .filter_map(|(band, level, at)| {
             let gap = |node: &Node| Some((node.part, node.gap_ev(band, level)?));
             let bracket = [gap(&nodes[at - 1])?, gap(&nodes[at])?, gap(&nodes[at + 1])?];
@@ -104,7 +104,7 @@ pub fn anticrossings(along: &Along, nodes: &[Node], bands: &[(Band, usize)]) -> 
             let level = crossing.level;
             crossing.follows =
                 [names[level], names[level + 1]].map(|name| Follows::new(of, name, count));
-            names.swap(level, level + 1);
+            exchange(&mut names, level);
         }
     }
     found
@@ -125,7 +125,7 @@ fn dips(nodes: &[Node], band: usize, level: usize) -> impl Iterator<Item = usize
 }
 
 /// Whether the two states around a dip have changed characters from one side to the other.
-fn exchange(nodes: &[Node], band: usize, level: usize, at: usize) -> bool {
+fn is_exchange(nodes: &[Node], band: usize, level: usize, at: usize) -> bool {
     let gap = |at: usize| nodes[at].gap_ev(band, level).unwrap_or(0.0);
     let grown = |side: usize| gap(side) >= GROWN * gap(at);
     let (mut below, mut above) = (at - 1, at + 1);
@@ -142,6 +142,15 @@ fn exchange(nodes: &[Node], band: usize, level: usize, at: usize) -> bool {
     exchanged > kept
 }
 
+/// Lets a level and the next one exchange their names. The last level lets go of what comes to it, since it may go on
+/// from there among levels that are not solved, and gives what has its own name.
+fn exchange(names: &mut [usize], level: usize) {
+    names.swap(level, level + 1);
+    if let Some(last) = names.len().checked_sub(1) {
+        names[last] = last;
+    }
+}
+
 /// The names of the levels of a band at a place: `names[level]` is the number that the state had at the lower end.
 pub fn names(anticrossings: &[Anticrossing], band: usize, count: usize, part: f64) -> Vec<usize> {
     let mut names: Vec<usize> = (0..count).collect();
@@ -150,7 +159,7 @@ pub fn names(anticrossings: &[Anticrossing], band: usize, count: usize, part: f6
         .filter(|c| c.band == band && c.part < part);
     for crossing in passed {
         if crossing.level + 1 < count {
-            names.swap(crossing.level, crossing.level + 1);
+            exchange(&mut names, crossing.level);
         }
     }
     names

@@ -19,8 +19,9 @@ const ALIKE: f64 = 0.5;
 const MOST_HALVINGS: usize = 10;
 /// No more places than this are solved for.
 const MOST_NODES: usize = 3000;
-/// Levels beyond those that are shown, so that one that comes down among them is known before.
-pub const SPARE: usize = 3;
+/// Levels beyond those that are shown. The last one is where states come from that are not solved, and go to: it is
+/// followed no further.
+pub const SPARE: usize = 2;
 
 /// A solved place.
 #[derive(Clone, Debug)]
@@ -124,7 +125,7 @@ pub fn nodes(along: &Along, bands: &[(Band, usize)]) -> Result<(Vec<Node>, bool)
     for _ in 0..MOST_HALVINGS {
         let halves: Vec<f64> = nodes
             .windows(2)
-            .filter(|pair| !is_followed(&pair[0], &pair[1], bands))
+            .filter(|pair| !is_followed(&pair[0], &pair[1], &more))
             .map(|pair| 0.5 * (pair[0].part + pair[1].part))
             .collect();
         if halves.is_empty() || nodes.len() + halves.len() > MOST_NODES {
@@ -138,7 +139,7 @@ pub fn nodes(along: &Along, bands: &[(Band, usize)]) -> Result<(Vec<Node>, bool)
         nodes.sort_by(|a, b| a.part.total_cmp(&b.part));
     }
     let followed = nodes.windows(2).all(|pair| {
-        is_followed(&pair[0], &pair[1], bands) || change_places(&pair[0], &pair[1], bands)
+        is_followed(&pair[0], &pair[1], &more) || change_places(&pair[0], &pair[1], &more)
     });
     Ok((nodes, followed))
 }
@@ -149,19 +150,20 @@ pub fn with_spare(bands: &[(Band, usize)]) -> Vec<(Band, usize)> {
     bands.iter().map(more).collect()
 }
 
-/// Whether every shown state keeps its number from one place to the next.
+/// Whether every state but the last keeps its number from one place to the next.
 fn is_followed(a: &Node, b: &Node, bands: &[(Band, usize)]) -> bool {
     bands.iter().enumerate().all(|(band, &(_, count))| {
         let solved = |node: &Node| node.energies_ev[band].len();
-        (0..count.min(solved(a)).min(solved(b))).all(|state| a.alike(b, band, state, state) > ALIKE)
+        (0..(count - 1).min(solved(a)).min(solved(b)))
+            .all(|state| a.alike(b, band, state, state) > ALIKE)
     })
 }
 
-/// Whether every shown state keeps its number or changes places with a neighbour.
+/// Whether every state but the last keeps its number or changes places with a neighbour.
 fn change_places(a: &Node, b: &Node, bands: &[(Band, usize)]) -> bool {
     bands.iter().enumerate().all(|(band, &(_, count))| {
         let solved = |node: &Node| node.energies_ev[band].len();
-        (0..count.min(solved(a)).min(solved(b))).all(|state| {
+        (0..(count - 1).min(solved(a)).min(solved(b))).all(|state| {
             (state.saturating_sub(1)..=state + 1).any(|other| {
                 a.alike(b, band, state, other) > ALIKE && a.alike(b, band, other, state) > ALIKE
             })
