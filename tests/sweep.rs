@@ -676,3 +676,40 @@ fn shipped_structures_are_swept() {
     }
     assert!(swept >= 2);
 }
+
+/// What a state follows does not depend on how many levels are asked for: a widening well draws states from far above
+/// down through those of its neighbours. With few levels some are told only as having come from beyond.
+#[test]
+fn asking_for_more_levels_changes_no_name() {
+    let file = |states: usize| {
+        swept(&format!(
+            "\
+substrate: GaAs
+field: 2.1 kV/cm
+bands: {{conduction: {{model: parabolic, states: {states}}}}}
+layers:
+  - {{material: Al0.3Ga0.7As, width: 15 nm}}
+  - {{name: well, material: GaAs, width: 7 nm}}
+  - {{material: Al0.3Ga0.7As, width: 5.5 nm}}
+  - {{material: GaAs, width: 12 nm}}
+  - {{material: Al0.3Ga0.7As, width: 6 nm}}
+  - {{material: GaAs, width: 9 nm}}
+  - {{material: Al0.3Ga0.7As, width: 15 nm}}
+sweep: {{vary: {{layer: well, width: [2 nm, 18 nm]}}, points: 41}}
+"
+        ))
+    };
+    let (few, many) = (file(3), file(9));
+    let mut told = 0;
+    for (few, many) in list(&few, "points").iter().zip(list(&many, "points")) {
+        for (one, other) in list(few, "levels").iter().zip(list(many, "levels")) {
+            let name = one["follows"].as_str().unwrap();
+            assert!(
+                name == other["follows"] || name == "conduction 5+",
+                "{one} {other}"
+            );
+            told += usize::from(name == other["follows"] && name != one["level"]);
+        }
+    }
+    assert!(told > 20, "{told}");
+}
