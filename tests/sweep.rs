@@ -431,6 +431,11 @@ fn doping_is_swept_with_a_warning() {
         "{}",
         ran.stderr
     );
+    let table = sweep(&bench(&text), &[]).stdout;
+    assert!(
+        table.contains("donors of wide from 1e16 to 1e18 cm^-3, 3 points"),
+        "{table}"
+    );
     let file = ran.json();
     let at: Vec<f64> = list(&file, "points")
         .iter()
@@ -620,11 +625,7 @@ fn pictures_show_every_state_once() {
             "transitions",
             "column",
             86.0,
-            [
-                "conduction 1 to conduction 2",
-                "conduction 2 to conduction 3",
-                "Field (kV/cm)",
-            ],
+            ["to conduction 2", "to conduction 3", "Field (kV/cm)"],
         ),
     ] {
         sweep(&bench, &["--what", what, "--width", width, "-o", "a.svg"]);

@@ -172,9 +172,22 @@ fn level(outcome: &Outcome, band: usize, state: usize) -> Level {
     }
 }
 
+/// A value of the swept number, without idle zeros.
+fn figure(value: f64) -> String {
+    match given(value, 6).split_once('e') {
+        None => given(value, 6),
+        Some((digits, power)) => {
+            format!(
+                "{}e{power}",
+                digits.trim_end_matches('0').trim_end_matches('.')
+            )
+        }
+    }
+}
+
 /// A value of the swept number with its unit.
 fn with_unit(axis: &Axis, value: f64) -> String {
-    unit_after(axis, given(value, 6))
+    unit_after(axis, figure(value))
 }
 
 /// The place of a least gap with its unit, to a ten-thousandth of the range: it is flat there.
@@ -260,7 +273,7 @@ impl Sweeps {
         if let Some(field_kv_cm) = self.field_kv_cm {
             text += &format!(", field {} kV/cm", given(field_kv_cm, 4));
         }
-        let (low, high) = (given(axis.low, 6), with_unit(axis, axis.high));
+        let (low, high) = (figure(axis.low), with_unit(axis, axis.high));
         let points = self.points.len();
         format!(
             "{text}; {} from {low} to {high}, {points} points",
@@ -312,7 +325,7 @@ impl Sweeps {
                         }
                     })
                 };
-                let mut row = vec![given(point.value, 6)];
+                let mut row = vec![figure(point.value)];
                 row.extend(columns.iter().map(cell));
                 row
             });
@@ -344,7 +357,7 @@ impl Sweeps {
         let states = header.len();
         header.push("states");
         let rows = self.rows().into_iter().map(|point| {
-            let mut row = vec![given(point.value, 6)];
+            let mut row = vec![figure(point.value)];
             match transitions(point).nth(which).flatten() {
                 None => row.extend(vec!["-".to_owned(); header.len() - 1]),
                 Some(at) => {
@@ -486,7 +499,7 @@ impl Sweeps {
                 line.retain(|piece| !piece.is_empty());
                 lines.push(SweepLine {
                     style: lines.len(),
-                    name: format!("{from} to {to}"),
+                    name: format!("{from}\nto {to}"),
                     pieces: line,
                 });
             }
@@ -635,8 +648,8 @@ impl Sweeps {
     }
 
     fn csv_row(&self, point: &Point, columns: usize) -> Vec<String> {
-        let figure = |value: f64| rounded(value).to_string();
-        let mut row = vec![figure(point.value)];
+        let digits = |value: f64| rounded(value).to_string();
+        let mut row = vec![digits(point.value)];
         match &point.found {
             Ok(found) => {
                 self.csv_cells(found, &mut row);
@@ -651,14 +664,14 @@ impl Sweeps {
     }
 
     fn csv_cells(&self, found: &Found, row: &mut Vec<String>) {
-        let figure = |value: f64| rounded(value).to_string();
+        let digits = |value: f64| rounded(value).to_string();
         for (levels, &(_, count)) in found.levels.iter().zip(&self.outcome.bands) {
             for state in 0..count {
                 match levels.get(state) {
                     Some(at) => row.extend([
-                        figure(at.energy_ev),
-                        figure(1e3 * at.from_edge_ev),
-                        figure(1e3 * at.from_middle_ev),
+                        digits(at.energy_ev),
+                        digits(1e3 * at.from_edge_ev),
+                        digits(1e3 * at.from_middle_ev),
                         number(at.follows),
                         at.bound.to_string(),
                     ]),
@@ -673,8 +686,8 @@ impl Sweeps {
                 continue;
             };
             row.extend([
-                figure(1e3 * at.energy_ev),
-                at.wavelength_um().map_or(String::new(), figure),
+                digits(1e3 * at.energy_ev),
+                at.wavelength_um().map_or(String::new(), digits),
                 name(at.from_follows),
                 name(at.to_follows),
             ]);
@@ -682,8 +695,8 @@ impl Sweeps {
                 Strength::Dipole {
                     dipole_nm,
                     oscillator_strength,
-                } => row.extend([dipole_nm, oscillator_strength].map(figure)),
-                Strength::Momentum { overlap, te, tm } => row.extend([overlap, te, tm].map(figure)),
+                } => row.extend([dipole_nm, oscillator_strength].map(digits)),
+                Strength::Momentum { overlap, te, tm } => row.extend([overlap, te, tm].map(digits)),
                 Strength::Apart => {}
             }
         }

@@ -35,6 +35,7 @@ pub struct SweepPanel {
 pub struct SweepLine {
     /// Which of the line styles.
     pub style: usize,
+    /// May have several lines.
     pub name: String,
     /// Pieces without a break, each from left to right.
     pub pieces: Vec<Vec<[f64; 2]>>,
@@ -51,7 +52,8 @@ impl SweepPicture {
         let mut top = page.title(&self.title) + 6.0;
         let lines = || self.panels.iter().flat_map(|panel| &panel.lines);
         let widest = lines()
-            .map(|line| width_pt(&line.name, SMALL_PT))
+            .flat_map(|line| line.name.lines())
+            .map(|name| width_pt(name, SMALL_PT))
             .fold(0.0, f64::max);
         let right = page.width - MARGIN_PT - widest - 14.0;
         let left = self
@@ -71,7 +73,7 @@ impl SweepPicture {
             top = bottom + BOTTOM_ROOM + GAP_PT;
         }
         let y = page.caption(&self.caption, bottom + BOTTOM_ROOM + 4.0);
-        let names: Vec<&str> = lines().map(|line| &*line.name).collect();
+        let names: Vec<String> = lines().map(|line| line.name.replace('\n', " ")).collect();
         page.finish(y + 4.0, &self.title, &names.join("; "))
     }
 }
@@ -119,18 +121,23 @@ impl SweepPanel {
         }
         labels.sort_by(|a, b| a.1.total_cmp(&b.1));
         let ends: Vec<f64> = labels.iter().map(|(_, y, _)| *y).collect();
-        let sizes = vec![SMALL_PT * 1.25; ends.len()];
+        let height = |name: &str| name.lines().count() as f64 * SMALL_PT * 1.25;
+        let sizes: Vec<f64> = labels.iter().map(|(.., name)| height(name)).collect();
         for ((x, end, name), y) in labels.iter().zip(spread(&ends, &sizes, top, bottom)) {
             page.line(
                 [x + 1.0, *end],
                 [right + 9.0, y],
                 Stroke::solid(palette::GUIDE, 0.4),
             );
-            page.text(
-                [right + 11.0, y + 0.5 * ASCENT * SMALL_PT],
-                Style::new(SMALL_PT, Anchor::Start),
-                name,
-            );
+            let first = y - 0.5 * (height(name) - SMALL_PT * 1.25);
+            for (k, line) in name.lines().enumerate() {
+                let y = first + k as f64 * SMALL_PT * 1.25;
+                page.text(
+                    [right + 11.0, y + 0.5 * ASCENT * SMALL_PT],
+                    Style::new(SMALL_PT, Anchor::Start),
+                    line,
+                );
+            }
         }
     }
 }
