@@ -156,7 +156,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     }
     let tolerance = fields
         .get("tolerance")
-        .and_then(|node| read_tolerance::tolerance(checker, node));
+        .and_then(|node| read_tolerance::tolerance(checker, node, solved));
     let layers = layers?;
     Some(Structure {
         title,

@@ -98,13 +98,7 @@ fn aim(checker: &mut Checker, item: &Node, solved: &[BandName]) -> Option<Aim> {
     let (mut from, mut to) = (from?, to.filter(|_| ends_differ)?);
     // Emission is written from the upper level to the lower; counted by energy, it is the same transition. By character,
     // the two may have changed places, and then the order says which of them is to be the upper one.
-    let lower_first = match (from.band, to.band) {
-        (BandName::Conduction, BandName::Conduction) => from.index < to.index,
-        (one, other) if one == other => from.index > to.index,
-        // Of two different hole bands neither is the lower: the aim says which is meant.
-        (from, _) => from != BandName::Conduction,
-    };
-    if !lower_first && (follow == Follow::Order || from.band != to.band) {
+    if !is_lower_first(from, to) && (follow == Follow::Order || from.band != to.band) {
         std::mem::swap(&mut from, &mut to);
     }
     suits_bands(checker, &fields, [from, to], target, follow)?;
@@ -117,6 +111,16 @@ fn aim(checker: &mut Checker, item: &Node, solved: &[BandName]) -> Option<Aim> {
         follow,
         span: checker.head(&item.span),
     })
+}
+
+/// Whether the first of two levels has the lower energy.
+pub(super) fn is_lower_first(from: Level, to: Level) -> bool {
+    match (from.band, to.band) {
+        (BandName::Conduction, BandName::Conduction) => from.index < to.index,
+        (one, other) if one == other => from.index > to.index,
+        // Of two different hole bands neither is the lower: the file says which is meant.
+        (from, _) => from != BandName::Conduction,
+    }
 }
 
 /// Holds that an aim between bands asks for what there is between bands.
