@@ -1,13 +1,13 @@
 //! Pictures are read back from their SVG: what is drawn where.
 
 use roxmltree::{Document, Node};
-use wellwright::models::BandOperator;
+use wellwright::models::{Band, BandOperator};
 use wellwright::report::svg::{
     BandDiagram, FINENESS, Gaussian, SensitivityBar, SensitivityBars, Width, Window,
     YieldHistogram, palette, text_width_pt,
 };
 use wellwright::structure::{self, Stack, Structure};
-use wellwright::subbands::{Accuracy, Curves, Subbands, curves, solve};
+use wellwright::subbands::{Accuracy, Bands, Curves, curves};
 
 const SHIPPED: [&str; 6] = [
     include_str!("../structures/coupled-well-emitter.yaml"),
@@ -24,8 +24,9 @@ const TALLEST_PT: f64 = 740.0;
 struct Solved {
     structure: Structure,
     stack: Stack,
-    subbands: Subbands,
-    curves: Curves,
+    bands: Bands,
+    shown: Vec<usize>,
+    curves: Vec<Curves>,
 }
 
 fn solved(text: &str) -> Solved {
@@ -34,13 +35,16 @@ fn solved(text: &str) -> Solved {
     let stack = structure
         .stack()
         .unwrap_or_else(|problems| panic!("{problems:?}\n{text}"));
-    let states = structure.conduction.states;
-    let operator = BandOperator::conduction(&stack, structure.conduction.model).unwrap();
-    let subbands = solve(&operator, states, Accuracy::default());
-    let curves = curves(&operator, &subbands, states, FINENESS);
+    let bands = Bands::solve(&stack, &Band::of(&structure), Accuracy::default()).unwrap();
+    let shown = bands.asked_for(&structure);
+    let curves = bands.all().iter().zip(&shown).map(|(solved, shown)| {
+        let operator = BandOperator::new(&stack, solved.band).unwrap();
+        curves(&operator, solved, *shown, FINENESS)
+    });
     Solved {
-        curves,
-        subbands,
+        curves: curves.collect(),
+        bands,
+        shown,
         structure,
         stack,
     }
@@ -50,11 +54,11 @@ fn diagram(solved: &Solved) -> BandDiagram {
     let Solved {
         structure,
         stack,
-        subbands,
+        bands,
+        shown,
         curves,
     } = solved;
-    let states = structure.conduction.states;
-    BandDiagram::new(structure, stack, subbands, curves.clone(), states)
+    BandDiagram::new(structure, stack, bands, curves.clone(), shown)
 }
 
 fn attribute(node: Node, name: &str) -> f64 {
@@ -197,7 +201,7 @@ fn assert_levels_in_place(name: &str, solved: &Solved, svg: &str) {
     let levels: Vec<f64> = children(group(&document, "levels"), "line")
         .map(|line| attribute(line, "y1"))
         .collect();
-    let states = solved.subbands.states();
+    let states = solved.bands.conduction().states();
     assert_eq!(levels.len(), states.len(), "{name}");
     for (y, state) in levels.iter().zip(&states) {
         let (drawn, solved) = (energy(*y), unit * state.from_edge_ev);
@@ -291,7 +295,7 @@ fn many_levels_nearly_in_one_place() {
            layers:\n      - {name: a well, material: W, width: 6 nm}\n      - {name: a barrier, material: B, width: 9 nm}\n  \
            - {material: B, width: 6 nm}\n";
     let solved = solved(&text);
-    let pairs = &solved.subbands.pairs;
+    let pairs = &solved.bands.conduction().pairs;
     assert!(pairs[11].value - pairs[0].value < 1e-3);
     check_all("twelve levels", &text);
 }
@@ -357,7 +361,7 @@ fn area(line: &[[f64; 2]]) -> f64 {
 fn squared_envelopes_have_an_area_of_one() {
     for text in SHIPPED.iter().map(|t| t.to_string()).chain([cascade()]) {
         let solved = solved(&text);
-        for state in &solved.curves.states {
+        for state in &solved.curves[0].states {
             let whole = state.whole();
             let peak = whole.iter().fold(0.0, |a: f64, p| a.max(p[1]));
             let bound = FINENESS * peak * solved.stack.total_width_nm();
@@ -374,7 +378,7 @@ fn a_well_between_hard_walls() {
     let text = "materials: {W: {conduction_edge: 0 eV, electron_mass: 0.067}}\nlayers: [{material: W, width: 10 nm}]\n";
     let solved = solved(text);
     let length = 10.0;
-    for (index, state) in solved.curves.states.iter().enumerate() {
+    for (index, state) in solved.curves[0].states.iter().enumerate() {
         let n = (index + 1) as f64;
         for [z, value] in state.whole() {
             let expected = 2.0 / length * (n * std::f64::consts::PI * z / length).sin().powi(2);
@@ -392,7 +396,7 @@ fn a_well_between_hard_walls() {
 fn the_edge_jumps_at_interfaces_only() {
     let text = MATERIALS.to_owned()
         + "field: 10 kV/cm\nlayers:\n  - {material: B, width: 20 nm}\n  - {material: W, width: 8 nm}\n  - {material: B, width: 20 nm}\n";
-    let edge = solved(&text).curves.edge;
+    let edge = solved(&text).curves[0].edge.clone();
     // 10 kV/cm is 1 meV/nm.
     let expected = [
         [0.0, 0.250],
@@ -635,7 +639,7 @@ fn a_histogram_shows_what_it_was_given() {
 #[test]
 fn every_aim_is_told() {
     let solved = solved(SHIPPED[4]);
-    let energy = |k: usize| solved.subbands.pairs[k].value;
+    let energy = |k: usize| solved.bands.conduction().pairs[k].value;
     for width in WIDTHS {
         let svg = diagram(&solved).svg(width);
         let document = Document::parse(&svg).unwrap();

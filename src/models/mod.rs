@@ -14,7 +14,7 @@ pub use hole::Hole;
 
 use crate::materials::{Dual, Element, Material, Number};
 use crate::numerics::pencil::{Coefficient, Pole};
-use crate::structure::{BandName, ConductionModel, Stack, Structure};
+use crate::structure::{BandName, ConductionModel, Level, Stack, Structure};
 
 /// A band that is solved on its own.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -34,6 +34,22 @@ impl Band {
             bands.extend([Hole::Heavy, Hole::Light].map(|hole| (Band::Hole(hole), valence.states)));
         }
         bands
+    }
+
+    /// The same with as many levels as it takes to hold the named ones too.
+    pub fn holding(structure: &Structure, named: &[Level]) -> Vec<(Band, usize)> {
+        let asked = Self::of(structure).into_iter();
+        asked
+            .map(|(band, count)| (band, count.max(band.highest(named))))
+            .collect()
+    }
+
+    /// The highest number that names a level of the band, one of all holes included; 0 without one.
+    pub fn highest(self, named: &[Level]) -> usize {
+        let own = named.iter().filter(|level| {
+            level.band == self.name() || (level.band == BandName::Valence && self.sign() < 0.0)
+        });
+        own.map(|level| level.index).max().unwrap_or(0)
     }
 
     /// What the solver's eigenvalues are multiplied with to give the electron's energy: −1 for holes.

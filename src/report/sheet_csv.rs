@@ -59,6 +59,9 @@ pub fn sheet_csv(sheet: &Sheet) -> Result<String, csv::Error> {
     if !sheet.flux_targets.is_empty() {
         tables.push(csv_table(&sheet.flux_targets)?);
     }
+    if !sheet.photoluminescence.is_empty() {
+        tables.push(csv_table(&sheet.photoluminescence)?);
+    }
     if !sentences.is_empty() {
         tables.push(csv_table(&sentences)?);
     }

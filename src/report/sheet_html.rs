@@ -79,7 +79,7 @@ impl Sheet {
         page.push_str(&self.heed());
         page.push_str(&self.layers());
         page.push_str(&self.uses());
-        for table in self.strain.tables() {
+        for table in self.more_tables() {
             page.push_str(&titled(&table));
         }
         for (caption, svg) in pictures {

@@ -78,7 +78,7 @@ pub fn sheet_text(sheet: &Sheet) -> String {
             text.push_str(&format!("  {}  in {}\n", target.ratio, target.layers));
         }
     }
-    for table in sheet.strain.tables() {
+    for table in sheet.more_tables() {
         text.push('\n');
         text.push_str(&table.text());
     }

@@ -82,40 +82,28 @@ pub fn energies_ev(bands: &Bands, names: &[Level]) -> Vec<f64> {
     names.iter().map(energy).collect()
 }
 
-/// The bands of a structure with as many levels as it asks for and its windows name.
-pub fn bands_of(structure: &Structure, windows: &[Window]) -> Vec<(Band, usize)> {
-    let named = |band: Band| {
-        let levels = windows.iter().flat_map(|window| [window.from, window.to]);
-        let own = levels.filter(move |level| {
-            level.band == band.name() || (level.band == BandName::Valence && band.sign() < 0.0)
-        });
-        own.map(|level| level.index).max().unwrap_or(0)
-    };
-    let asked = Band::of(structure).into_iter();
-    asked
-        .map(|(band, count)| (band, count.max(named(band))))
-        .collect()
+/// The levels that windows name.
+pub fn named_by(windows: &[Window]) -> Vec<Level> {
+    let levels = windows.iter().flat_map(|window| [window.from, window.to]);
+    levels.collect()
 }
 
 /// The levels to follow: those that the structure asks for, and what its windows and aims name.
 pub fn names(structure: &Structure, windows: &[Window], bands: &Bands) -> Vec<Level> {
     let aims = structure.tune.iter().flat_map(|tune| &tune.aims);
-    let of_windows = windows.iter().flat_map(|window| [window.from, window.to]);
-    let of_both: Vec<Level> = of_windows
-        .clone()
-        .chain(aims.flat_map(|aim| [aim.from, aim.to]))
-        .collect();
+    let of_windows = named_by(windows);
+    let of_aims = aims.flat_map(|aim| [aim.from, aim.to]);
     let asked = bands.asked_for(structure);
     let mut names: Vec<Level> = Vec::new();
     for (solved, asked) in bands.all().iter().zip(asked) {
         let band = solved.band.name();
-        let named = of_windows.clone().filter(|level| level.band == band);
-        let highest = named.map(|level| level.index).max().unwrap_or(0);
+        let own = of_windows.iter().filter(|level| level.band == band);
+        let highest = own.map(|level| level.index).max().unwrap_or(0);
         let count = asked.max(highest).min(solved.pairs.len());
         names.extend((1..=count).map(|index| Level { band, index }));
     }
     let holes = bands.holes().len();
-    for level in of_both {
+    for level in of_windows.iter().copied().chain(of_aims) {
         let known = level.band == BandName::Valence && level.index <= holes;
         if known && !names.contains(&level) {
             names.push(level);
@@ -126,13 +114,7 @@ pub fn names(structure: &Structure, windows: &[Window], bands: &Bands) -> Vec<Le
 
 /// As few levels of each band as the named ones need.
 pub fn fewest(asked: &[(Band, usize)], names: &[Level]) -> Vec<(Band, usize)> {
-    let needed = |band: Band| {
-        let own = names.iter().filter(|level| {
-            level.band == band.name() || (level.band == BandName::Valence && band.sign() < 0.0)
-        });
-        own.map(|level| level.index).max().unwrap_or(1)
-    };
-    let count = |&(band, count): &(Band, usize)| (band, needed(band).min(count));
+    let count = |&(band, count): &(Band, usize)| (band, band.highest(names).clamp(1, count));
     asked.iter().map(count).collect()
 }
 

@@ -15,7 +15,7 @@ pub use sampling::{Distributed, Sampled, Source, Watch, WindowYield, sample, sou
 pub use sensitivities::{Sensitivity, sensitivities};
 pub use statistics::{Histogram, Share, Statistics, share};
 
-use crate::models::Unsuitable;
+use crate::models::{Band, Unsuitable};
 use crate::structure::{Design, Level, Stack, Structure};
 use crate::subbands::{Accuracy, Bands};
 
@@ -84,7 +84,8 @@ pub fn tolerance(
 ) -> Result<Outcome, ToleranceError> {
     let stated = structure.tolerance.as_ref();
     let windows = stated.map_or(&[][..], |tolerance| &tolerance.windows);
-    let asked = followed::bands_of(structure, windows);
+    let named = followed::named_by(windows);
+    let asked = Band::holding(structure, &named);
     let abrupt = Bands::solve(stack, &asked, accuracy)
         .map_err(|(layer, reason)| ToleranceError::Unsuitable { layer, reason })?;
 
@@ -98,7 +99,6 @@ pub fn tolerance(
         Some(_) => Bands::solve(design.stack(), &asked, accuracy).map_err(unsuitable)?,
     };
     let levels = followed::names(structure, windows, &bands);
-    let named = windows.iter().flat_map(|window| [window.from, window.to]);
     if let Some(wanted) = named.into_iter().find(|level| !levels.contains(level)) {
         return Err(ToleranceError::NoLevel { wanted });
     }
