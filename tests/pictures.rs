@@ -17,6 +17,11 @@ const SHIPPED: [&str; 6] = [
     include_str!("../structures/terahertz-module.yaml"),
     include_str!("../structures/thermal-camera-8p6um.yaml"),
 ];
+/// Those with holes.
+const WITH_HOLES: [&str; 2] = [
+    include_str!("../structures/field-modulator-well.yaml"),
+    include_str!("../structures/strained-980nm-well.yaml"),
+];
 const WIDTHS: [Width; 2] = [Width::Page, Width::Column];
 /// A figure that two columns of a journal or a page can take: A4 less its margins, in points.
 const TALLEST_PT: f64 = 740.0;
@@ -170,7 +175,10 @@ fn number(text: &str) -> f64 {
 
 /// Value against place on an axis: slope and offset from its lowest and its highest tick.
 fn axis(document: &Document, class: &str, place: &str) -> impl Fn(f64) -> f64 + use<> {
-    let group = group(document, class);
+    axis_of(group(document, class), class, place)
+}
+
+fn axis_of(group: Node, class: &str, place: &str) -> impl Fn(f64) -> f64 + use<> {
     let values: Vec<f64> = children(group, "text")
         .map(words)
         .filter_map(|text| text.replace('−', "-").parse().ok())
@@ -688,4 +696,63 @@ fn the_command_prints_or_writes_the_picture() {
     let refused = run(&[input.as_ref(), "-o".as_ref(), input.as_ref()]);
     assert_eq!(refused.status.code(), Some(2));
     assert_eq!(std::fs::read_to_string(&input).unwrap(), SHIPPED[2]);
+}
+
+/// Of two panels on one z axis the upper one has the electrons and the lower one the holes, each on its own scale, with arrows from one to
+/// the other that carry the wavelength of the aim.
+#[test]
+fn holes_hang_below_the_electrons() {
+    for text in WITH_HOLES {
+        let solved = solved(text);
+        let bands = &solved.bands;
+        let edges = bands.all()[1..].iter().map(|band| -band.pencil.floor());
+        let zeros = [
+            bands.conduction().pencil.floor(),
+            edges.fold(f64::NEG_INFINITY, f64::max),
+        ];
+        let holes: Vec<f64> = bands
+            .holes()
+            .into_iter()
+            .filter(|place| place.state < solved.shown[place.band])
+            .map(|place| bands.energy_ev(place))
+            .collect();
+        for width in WIDTHS {
+            let svg = diagram(&solved).svg(width);
+            let name = format!("{:?} ({width:?})", solved.structure.title);
+            assert_tidy(&name, &svg);
+            assert_levels_in_place(&name, &solved, &svg);
+            let document = Document::parse(&svg).unwrap();
+            let all = |class: &'static str| -> Vec<Node> {
+                document
+                    .descendants()
+                    .filter(move |node| node.attribute("class") == Some(class))
+                    .collect()
+            };
+            let (axes, levels, edges) = (all("axis-y"), all("levels"), all("edge"));
+            assert_eq!((axes.len(), levels.len(), edges.len()), (2, 2, 2), "{name}");
+            let energy = axis_of(axes[1], "axis-y", "y1");
+            let per_point = (energy(0.0) - energy(1.0)).abs();
+            let drawn: Vec<f64> = children(levels[1], "line")
+                .map(|line| attribute(line, "y1"))
+                .collect();
+            assert_eq!(drawn.len(), holes.len());
+            for (y, hole_ev) in drawn.iter().zip(&holes) {
+                let expected = 1e3 * (hole_ev - zeros[1]);
+                assert!((energy(*y) - expected).abs() <= 0.02 * per_point, "{name}");
+            }
+            let electrons: Vec<f64> = children(levels[0], "line")
+                .map(|line| attribute(line, "y1"))
+                .collect();
+            let lowest = electrons.iter().fold(0.0, |a: f64, y| a.max(*y));
+            assert!(drawn.iter().all(|y| *y > lowest), "{name}: holes below");
+            let wavelength_um = 1.239_841_984 / (bands.conduction().energy_ev(0) - holes[0]);
+            let told: String = children(document.root_element(), "text")
+                .map(words)
+                .collect();
+            assert!(
+                told.contains(&format!("{wavelength_um:.4} µm")),
+                "{name}: {told}"
+            );
+        }
+    }
 }

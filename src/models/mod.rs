@@ -78,7 +78,7 @@ fn coefficient<T: Number>(
     match band {
         Band::Conduction(ConductionModel::Parabolic) => parabolic::coefficient(material),
         Band::Conduction(ConductionModel::EnergyDependent) => {
-            energy_dependent::coefficient(material)
+            energy_dependent::coefficient(material, substrate_lattice_nm)
         }
         Band::Hole(hole) => hole::coefficient(hole, material, substrate_lattice_nm),
     }
@@ -97,7 +97,7 @@ pub enum Unsuitable {
     )]
     NoLaw,
     #[error(
-        "has a mass at the band edge that is not positive: 1 + 2F + (Ep/3)(2/Eg + 1/(Eg + Δ)) = {inverse_mass:.3}"
+        "has a mass at the band edge that is not positive: 1 + 2F and the coupling to its valence edges make m0/m = {inverse_mass:.3}"
     )]
     NegativeMass { inverse_mass: f64 },
 }
@@ -176,7 +176,8 @@ impl<'s> BandOperator<'s> {
             return None;
         };
         let material = self.stack.material_at(layer, t);
-        hole::in_plane_stiffness(hole, &material).or(Some(self.at(layer, t, 0.0).stiffness))
+        hole::in_plane_stiffness(hole, &material, self.stack.substrate_lattice_nm())
+            .or(Some(self.at(layer, t, 0.0).stiffness))
     }
 
     /// The slopes of A and C with respect to the fraction of an element in the layer's material, the field left out.

@@ -489,7 +489,7 @@ fn caption(structure: &Structure, stack: &Stack, zeros_ev: [f64; 2], panels: &[C
             minus(&format!("{:.4}", zeros_ev[0]))
         ),
         true => format!(
-            "c conduction, hh heavy-hole, lh light-hole levels. The axis is broken: zeros are the lowest conduction edge \
+            "Levels: c conduction, hh heavy-hole, lh light-hole. The axis is broken: zeros are the lowest conduction edge \
              ({} eV in the table of levels) and the highest valence edge ({} eV), {} meV below it; the panels have scales of \
              their own.",
             minus(&format!("{:.4}", zeros_ev[0])),
