@@ -35,6 +35,8 @@ pub struct Sheet {
     pub flux_targets: Vec<FluxRatio>,
     /// What the cells do not give, with what comes nearest.
     pub compositions: Vec<NotGiven>,
+    /// Graded layers as digital alloys.
+    pub grades: Vec<DigitalGradeRow>,
     pub warnings: Vec<String>,
     /// Critical thickness, strain balance and x-ray peaks.
     pub strain: StrainReport,
@@ -160,6 +162,20 @@ pub struct DigitalAlloy {
     pub duty: f64,
     pub total_monolayers: u32,
     pub mean: String,
+    /// The layers as a structure file has them.
+    pub structure: String,
+    pub sentence: String,
+}
+
+/// A graded layer in whole monolayers of two materials.
+#[derive(Debug, Serialize)]
+pub struct DigitalGradeRow {
+    pub layer: String,
+    pub periods: usize,
+    pub total_monolayers: u32,
+    /// The largest difference in a fraction between a period and the grade there.
+    pub largest_miss: f64,
+    pub mean_miss: f64,
     /// The layers as a structure file has them.
     pub structure: String,
     pub sentence: String,
@@ -317,6 +333,7 @@ impl Sheet {
                 .iter()
                 .filter_map(|flag| not_given(flag, growth))
                 .collect(),
+            grades: plan.flags.iter().filter_map(grade).collect(),
             warnings: plan.flags.iter().filter_map(warning).collect(),
             strain: StrainReport::new(structure, stack),
             cautions: cautions(&[symbols, substrate].concat())
@@ -592,17 +609,52 @@ fn warning(flag: &Flag) -> Option<String> {
                 below + 1.0
             ))
         }
-        Flag::Ramped { label, profile } => {
+        Flag::Ramped {
+            label,
+            profile,
+            digital,
+        } => {
             let how = match profile {
                 Profile::Linear => "linearly",
                 Profile::Parabolic => "as a parabola",
             };
+            let otherwise = match digital {
+                Some(_) => "or grow the digital alloy below",
+                None => "no digital alloy of two settings of these cells follows it",
+            };
             Some(format!(
-                "{label}: fixed rates do not give a graded layer. Ramp the fluxes between the rates of its line, the composition changing {how} with height, or grow digital steps"
+                "{label}: fixed rates do not give a graded layer. Ramp the fluxes between the rates of its line, the composition changing {how} with height; {otherwise}"
             ))
         }
         Flag::Composition(_) => None,
     }
+}
+
+fn grade(flag: &Flag) -> Option<DigitalGradeRow> {
+    let Flag::Ramped {
+        label,
+        digital: Some(digital),
+        ..
+    } = flag
+    else {
+        return None;
+    };
+    let [first, second] = &digital.formulas;
+    Some(DigitalGradeRow {
+        layer: label.clone(),
+        periods: digital.periods.len(),
+        total_monolayers: digital.total(),
+        largest_miss: digital.largest_miss,
+        mean_miss: digital.mean_miss,
+        structure: digital.yaml(),
+        sentence: format!(
+            "{label}: {} periods of {first} and {second}, {} ML. A period's mean is off the grade by up to {:.3} in a fraction, the whole layer's by {:.4}",
+            digital.periods.len(),
+            digital.total(),
+            digital.largest_miss,
+            digital.mean_miss
+        ),
+    })
 }
 
 fn not_given(flag: &Flag, chamber: &Growth) -> Option<NotGiven> {

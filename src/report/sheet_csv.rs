@@ -32,6 +32,10 @@ pub fn sheet_csv(sheet: &Sheet) -> Result<String, csv::Error> {
             kind: "composition",
             text,
         })
+        .chain(sheet.grades.iter().map(|grade| Line {
+            kind: "grade",
+            text: &grade.sentence,
+        }))
         .chain(sheet.warnings.iter().map(|text| Line {
             kind: "warning",
             text,

@@ -139,6 +139,13 @@ impl Sheet {
         for warning in &self.warnings {
             text.push_str(&format!("<li>{}.</li>", escape(warning)));
         }
+        for grade in &self.grades {
+            text.push_str(&format!(
+                "<li>{}.<pre>{}</pre></li>",
+                escape(&grade.sentence),
+                escape(grade.structure.trim_end())
+            ));
+        }
         text.push_str("</ul></div>\n");
         text
     }

@@ -100,6 +100,15 @@ pub fn sheet_text(sheet: &Sheet) -> String {
             text.push_str(&format!("- {warning}.\n"));
         }
     }
+    if !sheet.grades.is_empty() {
+        text.push_str("\nGraded layers as digital alloys, each written as it takes the layer's place in the file\n");
+        for grade in &sheet.grades {
+            text.push_str(&format!("- {}.\n", grade.sentence));
+            for line in grade.structure.lines() {
+                text.push_str(&format!("      {line}\n"));
+            }
+        }
+    }
     text.push_str("\nFor the grower\n");
     for entry in GROWER_ENTRIES {
         text.push_str(&format!("{entry:<16}{}\n", "_".repeat(50)));
