@@ -883,3 +883,86 @@ fn tuning_among_cells_takes_the_best_growable_composition() {
     let single = bare.replace("layer: step, fraction: Al", "layer: well, fraction: Ga");
     assert!(structure::read(&single).0.is_none());
 }
+
+/// The light that a wafer should give on the bench, whatever field it is made for:
+/// - the heavy-hole exciton of 95 Å GaAs wells in Al0.32Ga0.68As at room temperature, 1.457 ± 0.005 eV (Miller and others, Phys. Rev.
+///   Lett. 53, 2173 (1984), from memory);
+/// - from 77 to 300 K a wide well moves with the gap of GaAs, 1.519 eV − 5.405e-4 T²/(T + 204) (Vurgaftman, Meyer and Ram-Mohan 2001):
+///   85.1 meV, less what the lighter mass adds.
+#[test]
+fn the_sheet_foretells_the_photoluminescence() {
+    let folder = tempfile::tempdir().unwrap();
+    let peaks = |width: &str, field: &str| -> Vec<serde_json::Value> {
+        let text = format!(
+            "substrate: GaAs\ntemperature: 120 K\nfield: {field}\nbands: {{conduction: {{model: energy-dependent, states: 1}}, \
+             valence: {{model: decoupled, states: 1}}}}\nlayers:\n  - {{material: Al0.32Ga0.68As, width: 15 nm}}\n  \
+             - {{material: GaAs, width: {width}}}\n  - {{material: Al0.32Ga0.68As, width: 15 nm}}\n\
+             growth: {{rates: {{Ga: 0.68 ML/s, Al: 0.32 ML/s}}}}\n"
+        );
+        let file = folder.path().join("well.yaml");
+        fs::write(&file, text).unwrap();
+        let file = file.to_str().unwrap();
+        let json: serde_json::Value =
+            serde_json::from_slice(&run(&["sheet", file, "--format", "json"]).stdout).unwrap();
+        let printed = run(&["sheet", file]).stdout;
+        assert!(
+            String::from_utf8(printed)
+                .unwrap()
+                .contains("Expected photoluminescence")
+        );
+        json["photoluminescence"].as_array().unwrap().clone()
+    };
+    let of = |row: &serde_json::Value, key: &str| row[key].as_f64().unwrap();
+    let narrow = peaks("9.5 nm", "70 kV/cm");
+    assert_eq!(narrow, peaks("9.5 nm", "0 kV/cm"));
+    assert_eq!(narrow.len(), 2);
+    assert_eq!(of(&narrow[1], "temperature_K"), 300.0);
+    near(of(&narrow[1], "peak_meV"), 1457.0, 5.0);
+    for row in &narrow {
+        let binding = of(row, "binding_meV");
+        assert!((6.0..10.0).contains(&binding), "{binding}");
+        near(
+            of(row, "transition_meV") - binding,
+            of(row, "peak_meV"),
+            1e-9,
+        );
+        near(
+            of(row, "peak_meV") * of(row, "peak_nm"),
+            1_239_841.984,
+            0.01,
+        );
+    }
+    let wide = peaks("20 nm", "0 kV/cm");
+    near(
+        of(&wide[0], "peak_meV") - of(&wide[1], "peak_meV"),
+        85.1,
+        1.0,
+    );
+}
+
+/// Aims between bands are transitions of the sheet by their names, and no others are taken for them.
+#[test]
+fn transitions_between_bands_have_names() {
+    let sheet = run(&[
+        "sheet",
+        "structures/strained-980nm-well.yaml",
+        "--format",
+        "json",
+    ]);
+    let json: serde_json::Value = serde_json::from_slice(&sheet.stdout).unwrap();
+    let transitions = json["transitions"].as_array().unwrap();
+    assert_eq!(transitions.len(), 1);
+    assert_eq!(transitions[0]["from"], "heavy-hole 1");
+    assert_eq!(transitions[0]["to"], "conduction 1");
+    let levels = run(&[
+        "levels",
+        "structures/strained-980nm-well.yaml",
+        "--format",
+        "json",
+    ]);
+    let levels: serde_json::Value = serde_json::from_slice(&levels.stdout).unwrap();
+    assert_eq!(
+        transitions[0]["energy_meV"],
+        levels["interband"][0]["energy_meV"]
+    );
+}

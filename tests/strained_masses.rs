@@ -122,6 +122,24 @@ fn the_electrons_mass_is_that_of_eight_bands() {
                 "{name} on {substrate} at {k}/nm: {own_ev} for {energy_ev}"
             );
         }
+        // In the plane the same, where strain makes a difference.
+        let in_plane = operator.in_plane(0, 0.0);
+        assert_eq!(
+            in_plane.is_some(),
+            name != substrate,
+            "{name} on {substrate}"
+        );
+        for k in [0.01, 0.1, 0.3] {
+            let energy_ev = levels(&material, lattice, &flat, 0, k)[7];
+            let stiffness = in_plane
+                .as_ref()
+                .map_or(law.a(energy_ev), |own| own.at(energy_ev));
+            let own_ev = law.constant + stiffness * k * k;
+            assert!(
+                (energy_ev - own_ev).abs() < 1e-10,
+                "{name} on {substrate} at {k}/nm in the plane: {own_ev} for {energy_ev}"
+            );
+        }
         // At the edge the valence bands' own terms do not count.
         let [g1, g2, _] = material.luttinger.unwrap();
         let whole = Kinetic {
@@ -160,7 +178,7 @@ fn the_light_holes_masses_are_those_of_six_bands() {
         };
         for (axis, own) in [
             (2, operator.at(0, 0.0, 0.0).stiffness),
-            (0, operator.in_plane_stiffness(0, 0.0).unwrap()),
+            (0, operator.in_plane(0, 0.0).unwrap().at(0.0)),
         ] {
             let at = |k: f64| levels(&material, lattice, &kinetic, axis, k);
             let edge_ev = operator.edge_ev(0);

@@ -1,5 +1,5 @@
-//! How strain changes what the bands do along growth: which valence edges the conduction band is coupled to, and how
-//! strongly, and the light hole's mass.
+//! How strain changes the masses: which valence edges the conduction band is coupled to, and how strongly, and the light
+//! hole's mass.
 //!
 //! For k along \[001] the conduction band couples to Z alone, and at the zone centre Z mixes with (X ± iY)/√2. In these two
 //! functions strain and spin–orbit splitting are, from the mean valence edge,
@@ -8,7 +8,8 @@
 //! ⎣ √2Δ/3     −Q − 2Δ/3  ⎦
 //!
 //! (Bir and Pikus 1974). Its eigenvalues are the edges of light holes and split-off band; what they hold of Z is the residue
-//! of the resolvent, w = ±(E + Q + 2Δ/3)/(E_lh − E_so): 2/3 and 1/3 without strain. (Bahder, Phys. Rev. B 41, 11992
+//! of the resolvent, w = ±(E + Q + 2Δ/3)/(E_lh − E_so): 2/3 and 1/3 without strain. For k in the plane, along X, the heavy
+//! holes hold half of X, and the other two (1 − w)/2 each. (Bahder, Phys. Rev. B 41, 11992
 //! (1990), has the whole matrix; Chuang, Physics of Optoelectronic Devices (1995), ch. 4.)
 
 use super::dual::Number;
@@ -19,6 +20,8 @@ use super::strain::strain;
 /// The valence edges that the conduction band sees along growth.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct GrowthCoupling<T = f64> {
+    /// From the heavy holes' edge to the conduction edge, in eV: in the plane it couples too.
+    pub heavy_gap_ev: T,
     /// From the light holes' edge to the conduction edge, in eV.
     pub light_gap_ev: T,
     /// From the split-off edge to the light holes', in eV.
@@ -37,6 +40,7 @@ pub fn growth_coupling<T: Number>(
     substrate_lattice_nm: Option<f64>,
 ) -> GrowthCoupling<T> {
     let mut coupling = GrowthCoupling {
+        heavy_gap_ev: gap_ev,
         light_gap_ev: gap_ev,
         split_ev: spin_orbit_ev,
         light_thirds: T::constant(2.0),
@@ -54,8 +58,10 @@ pub fn growth_coupling<T: Number>(
             coupling.light_gap_ev = coupling.light_gap_ev + potential * strain.trace();
         }
     }
+    coupling.heavy_gap_ev = coupling.light_gap_ev;
     if let Some(q) = shear(material, substrate_lattice_nm) {
         let (light, split_off) = mixed_shifts(q, spin_orbit_ev);
+        coupling.heavy_gap_ev = coupling.heavy_gap_ev + q;
         coupling.light_gap_ev = coupling.light_gap_ev - light;
         coupling.split_ev = light - split_off;
         if coupling.split_ev.value() > 0.0 {

@@ -17,7 +17,7 @@
 //! frozen where the energy comes nearer to the valence edge than a tenth of the gap (deep tails in a strong field), and
 //! where a negative 1 + 2F would drive it beyond ten times the edge mass.
 
-use super::Unsuitable;
+use super::{InPlane, Unsuitable};
 use crate::constants::HBAR2_OVER_2M0;
 use crate::materials::{Material, Number, growth_coupling};
 use crate::numerics::pencil::{Coefficient, Pole};
@@ -107,6 +107,46 @@ pub fn coefficient<T: Number>(
         stiffness: free * remote,
         poles: [Some(light), Some(split_off)],
         constant: edge,
+    })
+}
+
+/// What makes the mass in the plane, where strain makes it another one than along growth: the heavy holes with half of E_P, the
+/// light holes and the split-off band with what they hold of X (see [`growth_coupling`]). `None` without strain, and for a material
+/// that states E′.
+pub fn in_plane(material: &Material, substrate_lattice_nm: Option<f64>) -> Option<InPlane> {
+    if material.nonparabolicity_energy_ev.is_some() {
+        return None;
+    }
+    let (gap, spin_orbit) = (material.gap_ev?, material.spin_orbit_ev?);
+    let coupling = growth_coupling(material, (gap, spin_orbit), substrate_lattice_nm);
+    if coupling.heavy_gap_ev == coupling.light_gap_ev {
+        return None;
+    }
+    let along = coefficient(material, substrate_lattice_nm).ok()?;
+    let [Some(light), Some(split_off)] = along.poles else {
+        return None;
+    };
+    let sixth = HBAR2_OVER_2M0 * material.kane_energy_ev? / 6.0;
+    let heavy_ev = along.constant - coupling.heavy_gap_ev;
+    // The same range of energies as along growth, and no nearer to the heavy holes than to the light ones.
+    let up = light.position - heavy_ev;
+    let heavy = Pole {
+        strength: 3.0 * sixth,
+        position: heavy_ev,
+        nearest: (light.nearest + up).max(NEAREST_OF_GAP * coupling.heavy_gap_ev),
+        farthest: light.farthest + up,
+    };
+    let with = |pole: Pole, thirds: f64| Pole {
+        strength: sixth * (3.0 - thirds),
+        ..pole
+    };
+    Some(InPlane {
+        stiffness: along.stiffness,
+        poles: vec![
+            heavy,
+            with(light, coupling.light_thirds),
+            with(split_off, coupling.split_off_thirds),
+        ],
     })
 }
 

@@ -102,6 +102,29 @@ pub enum Unsuitable {
     NegativeMass { inverse_mass: f64 },
 }
 
+/// ħ²/2m in the plane at one place, in eV nm²: a constant and poles in the energy.
+#[derive(Clone, Debug)]
+pub struct InPlane {
+    pub stiffness: f64,
+    pub poles: Vec<Pole>,
+}
+
+impl InPlane {
+    pub fn at(&self, energy_ev: f64) -> f64 {
+        let poles = self.poles.iter();
+        let poles = poles.map(|pole| pole.strength / pole.distance(energy_ev).0);
+        self.stiffness + poles.sum::<f64>()
+    }
+
+    /// The same with all edges raised.
+    pub fn raised(mut self, energy_ev: f64) -> InPlane {
+        for pole in &mut self.poles {
+            pole.position += energy_ev;
+        }
+        self
+    }
+}
+
 /// The operator of one band on one stack.
 #[derive(Clone, Debug)]
 pub struct BandOperator<'s> {
@@ -169,15 +192,21 @@ impl<'s> BandOperator<'s> {
         self.band.sign() * self.bottoms[layer].constant
     }
 
-    /// ħ²/2m∥ of a hole band at fraction `t` of a layer, in eV nm². `None` for the conduction band, whose mass is the
-    /// same in all directions; a hole without a mass in the plane has the one along growth.
-    pub fn in_plane_stiffness(&self, layer: usize, t: f64) -> Option<f64> {
-        let Band::Hole(hole) = self.band else {
+    /// ħ²/2m∥ at fraction `t` of a layer, with no field, where it is not A: of hole bands, and of electrons in strained layers
+    /// whose mass depends on energy.
+    pub fn in_plane(&self, layer: usize, t: f64) -> Option<InPlane> {
+        if self.band == Band::Conduction(ConductionModel::Parabolic) {
             return None;
-        };
+        }
         let material = self.stack.material_at(layer, t);
-        hole::in_plane_stiffness(hole, &material, self.stack.substrate_lattice_nm())
-            .or(Some(self.at(layer, t, 0.0).stiffness))
+        let substrate_lattice_nm = self.stack.substrate_lattice_nm();
+        match self.band {
+            Band::Conduction(_) => energy_dependent::in_plane(&material, substrate_lattice_nm),
+            Band::Hole(hole) => Some(InPlane {
+                stiffness: hole::in_plane_stiffness(hole, &material, substrate_lattice_nm)?,
+                poles: Vec::new(),
+            }),
+        }
     }
 
     /// The slopes of A and C with respect to the fraction of an element in the layer's material, the field left out.
