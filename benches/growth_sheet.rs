@@ -4,10 +4,10 @@
 use criterion::{Criterion, criterion_group, criterion_main};
 use std::hint::black_box;
 use wellwright::growth;
-use wellwright::models::BandOperator;
+use wellwright::models::Band;
 use wellwright::report::Sheet;
 use wellwright::structure;
-use wellwright::subbands::{Accuracy, Subbands, solve};
+use wellwright::subbands::{Accuracy, Bands};
 
 const STATES: usize = 4;
 
@@ -31,21 +31,19 @@ fn cascade() -> String {
     text + "growth: {rates: {Ga: 0.85 ML/s, Al: 0.15 ML/s}}\n"
 }
 
-fn solved(text: &str) -> (structure::Structure, structure::Stack, Subbands) {
+fn solved(text: &str) -> (structure::Structure, structure::Stack, Bands) {
     let (file, _) = structure::read(text);
     let file = file.expect("the file is right");
     let stack = file.stack().expect("the stack is right");
-    let operator = BandOperator::conduction(&stack, file.conduction.model).expect("it suits");
-    let subbands = solve(&operator, STATES, Accuracy::default());
-    drop(operator);
-    (file, stack, subbands)
+    let bands = Bands::solve(&stack, &Band::of(&file), Accuracy::default()).expect("it suits");
+    (file, stack, bands)
 }
 
 fn page(text: &str) -> String {
-    let (file, stack, subbands) = solved(text);
+    let (file, stack, bands) = solved(text);
     let plan = growth::plan(&file, &stack).expect("it can be grown");
     let chamber = file.growth.as_ref().expect("it has cells");
-    Sheet::new(&file, chamber, &stack, &plan, &subbands, STATES).html(&[])
+    Sheet::new(&file, chamber, &stack, &plan, (&bands, &[STATES]), &[]).html(&[])
 }
 
 fn bench(c: &mut Criterion) {

@@ -6,10 +6,10 @@
 use criterion::{Criterion, criterion_group, criterion_main};
 use std::hint::black_box;
 use wellwright::constants::HBAR2_OVER_2M0;
-use wellwright::models::BandOperator;
-use wellwright::structure::{self, Cause, Design, Stack};
-use wellwright::subbands::{Accuracy, Nearby, solve};
-use wellwright::tolerance::{sample, sources};
+use wellwright::models::{Band, BandOperator};
+use wellwright::structure::{self, BandName, Cause, Design, Level, Stack};
+use wellwright::subbands::{Accuracy, Bands, solve};
+use wellwright::tolerance::{Followed, sample, sources};
 
 const STATES: usize = 4;
 const ACCURACY: Accuracy = Accuracy { tolerance_ev: 1e-6 };
@@ -92,17 +92,24 @@ fn bench(c: &mut Criterion) {
         let stated = file.tolerance.as_ref().expect("a tolerance block");
         let grading_nm = stated.grading.as_ref().map(|g| g.length_nm);
         let design = Design::new(&stack, grading_nm).expect("a design");
-        let model = file.conduction.model;
-        let operator = BandOperator::conduction(design.stack(), model).expect("the materials suit");
-        let solved = solve(&operator, STATES, ACCURACY);
-        let nearby = Nearby::new(&solved);
-        let sources = sources(&file, &stack, stated, &design, &nearby);
+        let conduction = Band::Conduction(file.conduction.model);
+        let bands = Bands::solve(design.stack(), &[(conduction, STATES)], ACCURACY)
+            .expect("the materials suit");
+        let level = |index| Level {
+            band: BandName::Conduction,
+            index,
+        };
+        let followed = Followed::new(&bands, (1..=STATES).map(level).collect());
+        let pairs: Vec<(usize, usize)> = (0..STATES)
+            .flat_map(|from| (from + 1..STATES).map(move |to| (from, to)))
+            .collect();
+        let sources = sources(&file, &stack, stated, &design, &followed);
         group.bench_function(name, |b| {
             b.iter(|| {
                 black_box(sample(
-                    model,
                     &design,
-                    &nearby,
+                    &followed,
+                    &pairs,
                     &sources,
                     &[],
                     (10_000, 1),

@@ -5,8 +5,8 @@ mod common;
 use approx::assert_abs_diff_eq;
 use common::{Bench, list, number};
 use wellwright::epitaxy::{
-    Glide, balance, glides, layer_mean, matthews_blakeslee_nm, net_strain_slope, people_bean_nm,
-    strain_budget, thickness_ratio,
+    Glide, LayerMean, balance, glides, layer_mean, matthews_blakeslee_nm, net_strain_slope,
+    people_bean_nm, strain_budget, thickness_ratio, whole_thickness_ratio,
 };
 use wellwright::materials::Element;
 use wellwright::structure::{self, Knob, Stack, Structure};
@@ -409,8 +409,13 @@ tune:
         "{}",
         ran.stdout
     );
+    // The layers are bounded one by one here; what they make together is another bound.
     let checked = bench.run(&["check", "tuned.yaml"]).code(0);
-    assert!(!checked.stderr.contains("critical"), "{}", checked.stderr);
+    assert!(
+        !checked.stderr.contains("is thicker than its critical"),
+        "{}",
+        checked.stderr
+    );
     // Out of reach: the balance of a single strained layer.
     bench.write(
         "never.yaml",
@@ -465,6 +470,119 @@ fn mistakes_in_bounds_are_pointed_at() {
             "{line}\n{}",
             ran.stderr
         );
+        assert!(ran.stderr.contains(part), "{part}\n{}", ran.stderr);
+    }
+}
+
+const FIVE_WELLS: &str = "\
+substrate: GaAs
+bands: {conduction: {model: energy-dependent, states: 1}, valence: {model: decoupled, states: 1}}
+layers:
+  - {material: GaAs, width: 15 nm}
+  - repeat: 5
+    layers:
+      - {name: well, material: In0.2Ga0.8As, width: 6 nm}
+      - {name: between, material: Al0.1Ga0.9As, width: 10 nm}
+  - {material: GaAs, width: 15 nm}
+";
+
+/// The stack as one layer is W/h_c(f, W) with the width of all from the first to the last strained layer and the misfit's mean
+/// over it, and its slopes are those of differences.
+#[test]
+fn strained_layers_together_are_one_layer() {
+    let stack = |width: f64, between: f64, indium: f64| {
+        let text = FIVE_WELLS
+            .replace("6 nm", &format!("{width} nm"))
+            .replace("10 nm", &format!("{between} nm"))
+            .replace(
+                "In0.2Ga0.8As",
+                &format!("In{indium:.6}Ga{:.6}As", 1.0 - indium),
+            );
+        structure::read(&text).0.unwrap().stack().unwrap()
+    };
+    let at = |width: f64, between: f64, indium: f64| {
+        whole_thickness_ratio(&stack(width, between, indium), None).value
+    };
+    let design = stack(6.0, 10.0, 0.2);
+    // AlGaAs is strained a little too: five wells and five of those.
+    let (well, spacer) = (
+        layer_mean(&design, 1).unwrap(),
+        layer_mean(&design, 2).unwrap(),
+    );
+    let mean = |of: fn(&LayerMean) -> f64| (6.0 * of(&well) + 10.0 * of(&spacer)) / 16.0;
+    let critical_nm = matthews_blakeslee_nm(
+        mean(|m| m.lattice_nm),
+        mean(|m| m.misfit),
+        mean(|m| m.poisson),
+        Glide::Buried,
+    );
+    let expected = 80.0 / critical_nm;
+    assert!((at(6.0, 10.0, 0.2) / expected - 1.0).abs() < 1e-12);
+    let knobs = [
+        (Knob::Width { entry: 1 }, [1.0, 0.0, 0.0], 1e-3),
+        (Knob::Width { entry: 2 }, [0.0, 1.0, 0.0], 1e-3),
+        (
+            Knob::Fraction {
+                entry: 1,
+                element: Element::In,
+            },
+            [0.0, 0.0, 1.0],
+            1e-4,
+        ),
+        (Knob::Width { entry: 0 }, [0.0, 0.0, 0.0], 1.0),
+    ];
+    for (knob, [width, between, indium], h) in knobs {
+        let off = |by: f64| at(6.0 + by * width, 10.0 + by * between, 0.2 + by * indium);
+        let difference = (off(h) - off(-h)) / (2.0 * h);
+        let slope = whole_thickness_ratio(&design, Some(knob)).slope;
+        assert!(
+            (slope - difference).abs() < 1e-5 * difference.abs() + 1e-12,
+            "{knob:?}: {slope} for {difference}"
+        );
+    }
+}
+
+/// Each well alone would stay coherent, the five together would not: the bound on the stack takes indium out or room in.
+#[test]
+fn tuning_keeps_the_stack_below_the_critical_thickness() {
+    let file = |keep: &str| {
+        FIVE_WELLS.to_owned()
+            + "tune:
+  vary:
+    - {layer: well, width: [4 nm, 9 nm]}
+    - {layer: between, width: [8 nm, 30 nm]}
+    - {layer: well, fraction: In, between: [0.05, 0.3]}
+  aims:
+    - {from: heavy-hole 1, to: conduction 1, wavelength: 920 nm, within: 1 nm}
+" + keep
+    };
+    let bench = Bench::new();
+    bench.write(
+        "kept.yaml",
+        file("  keep: [{thickness: below critical, of: stack}]\n"),
+    );
+    let ran = bench
+        .run(&["tune", "kept.yaml", "-o", "tuned.yaml"])
+        .code(0);
+    let text = &ran.stdout;
+    assert!(
+        text.contains("strained layers together in critical thicknesses"),
+        "{text}"
+    );
+    let tuned = structure::read(&bench.read("tuned.yaml"))
+        .0
+        .unwrap()
+        .stack()
+        .unwrap();
+    assert!(whole_thickness_ratio(&tuned, None).value <= 1.0);
+    let free = structure::read(FIVE_WELLS).0.unwrap().stack().unwrap();
+    assert!(whole_thickness_ratio(&free, None).value > 1.0);
+    bench.write(
+        "bad.yaml",
+        file("  keep: [{thickness: below critical, of: stack, layer: well}, {thickness: below critical, of: stak}]\n"),
+    );
+    let ran = bench.run(&["check", "bad.yaml"]).code(2);
+    for part in ["`of: stack` is all of them", "did you mean `stack`?"] {
         assert!(ran.stderr.contains(part), "{part}\n{}", ran.stderr);
     }
 }

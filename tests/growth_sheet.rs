@@ -6,8 +6,9 @@ use std::process::{Command, Output};
 use wellwright::diagnostics::Severity;
 use wellwright::growth::{self, Filling, Flag, LayerRow, Plan, Row, Sums};
 use wellwright::materials::Element;
+use wellwright::models::BandOperator;
 use wellwright::structure::{self, Stack, Structure, document};
-use wellwright::subbands::Accuracy;
+use wellwright::subbands::{Accuracy, solve};
 use wellwright::tune;
 
 fn laid_out(text: &str) -> (Structure, Stack) {
@@ -303,6 +304,92 @@ fn graded_layers_ramp_a_cell() {
          growth: {rates: {Ga: 0.70 ML/s, Al: 0.30 ML/s}}\n",
     );
     assert_eq!(layers(&whole)[0].own.time_cs, 10000);
+}
+
+/// A linear grade over N monolayers from A to B holds N t²/2 of B up to the part t: after each period whole monolayers are off
+/// by half of one at most, and the written layers are the same ones.
+#[test]
+fn graded_layers_have_a_digital_alloy() {
+    let plan = plan(
+        "substrate: GaAs\nlayers:\n  - {name: ramp, material: Al0.3Ga0.7As, to: GaAs, width: 100 ML}\n\
+         growth: {rates: {Ga: 0.70 ML/s, Al: 0.30 ML/s}}\n",
+    );
+    let [
+        Flag::Ramped {
+            digital: Some(digital),
+            ..
+        },
+    ] = &plan.flags[..]
+    else {
+        panic!("{:?}", plan.flags);
+    };
+    assert_eq!(digital.formulas, ["Al0.3Ga0.7As", "GaAs"]);
+    let (mut grown, mut placed) = (0, 0);
+    for [of_a, of_b] in &digital.periods {
+        grown += of_a + of_b;
+        placed += of_b;
+        let t = f64::from(grown) / 100.0;
+        assert!(
+            (f64::from(placed) - 50.0 * t * t).abs() <= 0.5,
+            "{grown}: {placed}"
+        );
+    }
+    assert_eq!((grown, placed), (100, 50));
+    // Two roundings of half a monolayer in a period of eight, in units of 0.3 Al.
+    assert!(digital.largest_miss <= 0.3 / 8.0 && digital.mean_miss < 1e-12);
+    let written = structure::read(&format!("substrate: GaAs\nlayers:\n{}", digital.yaml()));
+    let stack = written.0.unwrap().stack().unwrap();
+    let monolayer_nm = stack.monolayer_nm(0).unwrap();
+    let of = |formula: &str| -> f64 {
+        let own = (0..stack.layers.len())
+            .filter(|layer| stack.composition_at(*layer, 0.0).unwrap().formula() == formula);
+        own.map(|layer| stack.layers[layer].width_nm).sum()
+    };
+    near(of("GaAs") / monolayer_nm, 50.0, 0.1);
+    near(of("Al0.3Ga0.7As") / monolayer_nm, 50.0, 0.1);
+}
+
+/// A digital parabola makes nearly the same ladder as the ramped one: 8 monolayers are thin against the states.
+#[test]
+fn a_digital_parabola_has_the_levels_of_the_ramped_one() {
+    let text = include_str!("../structures/graded-parabolic-well.yaml");
+    let read = |text: &str| structure::read(text).0.unwrap();
+    let file = read(text);
+    let plan = wellwright::growth::plan(&file, &file.stack().unwrap()).unwrap();
+    let snippets: Vec<String> = plan
+        .flags
+        .iter()
+        .filter_map(|flag| match flag {
+            Flag::Ramped { digital, .. } => digital.as_ref().map(|d| d.yaml()),
+            _ => None,
+        })
+        .collect();
+    assert_eq!(snippets.len(), 2);
+    let barrier = "  - {material: Al0.30Ga0.70As, width: 10 nm}\n";
+    let inner: String = snippets
+        .concat()
+        .lines()
+        .map(|line| format!("  {line}\n"))
+        .collect();
+    let digital = format!(
+        "substrate: GaAs\ntemperature: 10 K\nbands: {{conduction: {{model: energy-dependent, states: 4}}}}\nlayers:\n{barrier}{inner}{barrier}"
+    );
+    let levels = |text: &str| {
+        let file = read(text);
+        let stack = file.stack().unwrap();
+        let operator = BandOperator::conduction(&stack, file.conduction.model).unwrap();
+        let solved = solve(&operator, 4, Accuracy::default());
+        let pairs = solved.pairs.windows(2);
+        pairs
+            .map(|pair| pair[1].value - pair[0].value)
+            .collect::<Vec<f64>>()
+    };
+    for (ramped, digital) in levels(text).iter().zip(levels(&digital)) {
+        assert!(
+            (digital / ramped - 1.0).abs() < 0.03,
+            "{digital} for {ramped}"
+        );
+    }
 }
 
 /// Four formula units per cell: Ga in 100 nm of GaAs is 4/(0.565325 nm)³ x 100 nm = 2.2139e15 per µm², 2.2139e17 per cm².
@@ -795,4 +882,87 @@ fn tuning_among_cells_takes_the_best_growable_composition() {
     // A layer of one group-III element has no choice either.
     let single = bare.replace("layer: step, fraction: Al", "layer: well, fraction: Ga");
     assert!(structure::read(&single).0.is_none());
+}
+
+/// The light that a wafer should give on the bench, whatever field it is made for:
+/// - the heavy-hole exciton of 95 Å GaAs wells in Al0.32Ga0.68As at room temperature, 1.457 ± 0.005 eV (Miller and others, Phys. Rev.
+///   Lett. 53, 2173 (1984), from memory);
+/// - from 77 to 300 K a wide well moves with the gap of GaAs, 1.519 eV − 5.405e-4 T²/(T + 204) (Vurgaftman, Meyer and Ram-Mohan 2001):
+///   85.1 meV, less what the lighter mass adds.
+#[test]
+fn the_sheet_foretells_the_photoluminescence() {
+    let folder = tempfile::tempdir().unwrap();
+    let peaks = |width: &str, field: &str| -> Vec<serde_json::Value> {
+        let text = format!(
+            "substrate: GaAs\ntemperature: 120 K\nfield: {field}\nbands: {{conduction: {{model: energy-dependent, states: 1}}, \
+             valence: {{model: decoupled, states: 1}}}}\nlayers:\n  - {{material: Al0.32Ga0.68As, width: 15 nm}}\n  \
+             - {{material: GaAs, width: {width}}}\n  - {{material: Al0.32Ga0.68As, width: 15 nm}}\n\
+             growth: {{rates: {{Ga: 0.68 ML/s, Al: 0.32 ML/s}}}}\n"
+        );
+        let file = folder.path().join("well.yaml");
+        fs::write(&file, text).unwrap();
+        let file = file.to_str().unwrap();
+        let json: serde_json::Value =
+            serde_json::from_slice(&run(&["sheet", file, "--format", "json"]).stdout).unwrap();
+        let printed = run(&["sheet", file]).stdout;
+        assert!(
+            String::from_utf8(printed)
+                .unwrap()
+                .contains("Expected photoluminescence")
+        );
+        json["photoluminescence"].as_array().unwrap().clone()
+    };
+    let of = |row: &serde_json::Value, key: &str| row[key].as_f64().unwrap();
+    let narrow = peaks("9.5 nm", "70 kV/cm");
+    assert_eq!(narrow, peaks("9.5 nm", "0 kV/cm"));
+    assert_eq!(narrow.len(), 2);
+    assert_eq!(of(&narrow[1], "temperature_K"), 300.0);
+    near(of(&narrow[1], "peak_meV"), 1457.0, 5.0);
+    for row in &narrow {
+        let binding = of(row, "binding_meV");
+        assert!((6.0..10.0).contains(&binding), "{binding}");
+        near(
+            of(row, "transition_meV") - binding,
+            of(row, "peak_meV"),
+            1e-9,
+        );
+        near(
+            of(row, "peak_meV") * of(row, "peak_nm"),
+            1_239_841.984,
+            0.01,
+        );
+    }
+    let wide = peaks("20 nm", "0 kV/cm");
+    near(
+        of(&wide[0], "peak_meV") - of(&wide[1], "peak_meV"),
+        85.1,
+        1.0,
+    );
+}
+
+/// Aims between bands are transitions of the sheet by their names, and no others are taken for them.
+#[test]
+fn transitions_between_bands_have_names() {
+    let sheet = run(&[
+        "sheet",
+        "structures/strained-980nm-well.yaml",
+        "--format",
+        "json",
+    ]);
+    let json: serde_json::Value = serde_json::from_slice(&sheet.stdout).unwrap();
+    let transitions = json["transitions"].as_array().unwrap();
+    assert_eq!(transitions.len(), 1);
+    assert_eq!(transitions[0]["from"], "heavy-hole 1");
+    assert_eq!(transitions[0]["to"], "conduction 1");
+    let levels = run(&[
+        "levels",
+        "structures/strained-980nm-well.yaml",
+        "--format",
+        "json",
+    ]);
+    let levels: serde_json::Value = serde_json::from_slice(&levels.stdout).unwrap();
+    assert_eq!(
+        transitions[0]["energy_meV"],
+        levels["interband"][0]["energy_meV"]
+    );
 }

@@ -727,8 +727,11 @@ fn what_does_not_fit_is_told() {
     );
     refused(
         &format!(
-            "{holes}{layers}tolerance: {{rate: 1 %, window: {{from: heavy-hole 1, to: conduction 1, wavelength: [800 nm, 900 nm]}}}}\n"
+            "{layers}tolerance: {{rate: 1 %, window: {{from: heavy-hole 1, to: conduction 1, wavelength: [800 nm, 900 nm]}}}}\n"
         ),
-        &["a window on hole levels is not available yet"],
+        &[
+            "the band `heavy-hole` is not solved",
+            "`valence: {model: decoupled}`",
+        ],
     );
 }

@@ -1,13 +1,13 @@
 //! Pictures are read back from their SVG: what is drawn where.
 
 use roxmltree::{Document, Node};
-use wellwright::models::BandOperator;
+use wellwright::models::{Band, BandOperator};
 use wellwright::report::svg::{
     BandDiagram, FINENESS, Gaussian, SensitivityBar, SensitivityBars, Width, Window,
     YieldHistogram, palette, text_width_pt,
 };
 use wellwright::structure::{self, Stack, Structure};
-use wellwright::subbands::{Accuracy, Curves, Subbands, curves, solve};
+use wellwright::subbands::{Accuracy, Bands, Curves, curves};
 
 const SHIPPED: [&str; 6] = [
     include_str!("../structures/coupled-well-emitter.yaml"),
@@ -17,6 +17,11 @@ const SHIPPED: [&str; 6] = [
     include_str!("../structures/terahertz-module.yaml"),
     include_str!("../structures/thermal-camera-8p6um.yaml"),
 ];
+/// Those with holes.
+const WITH_HOLES: [&str; 2] = [
+    include_str!("../structures/field-modulator-well.yaml"),
+    include_str!("../structures/strained-980nm-well.yaml"),
+];
 const WIDTHS: [Width; 2] = [Width::Page, Width::Column];
 /// A figure that two columns of a journal or a page can take: A4 less its margins, in points.
 const TALLEST_PT: f64 = 740.0;
@@ -24,8 +29,9 @@ const TALLEST_PT: f64 = 740.0;
 struct Solved {
     structure: Structure,
     stack: Stack,
-    subbands: Subbands,
-    curves: Curves,
+    bands: Bands,
+    shown: Vec<usize>,
+    curves: Vec<Curves>,
 }
 
 fn solved(text: &str) -> Solved {
@@ -34,13 +40,16 @@ fn solved(text: &str) -> Solved {
     let stack = structure
         .stack()
         .unwrap_or_else(|problems| panic!("{problems:?}\n{text}"));
-    let states = structure.conduction.states;
-    let operator = BandOperator::conduction(&stack, structure.conduction.model).unwrap();
-    let subbands = solve(&operator, states, Accuracy::default());
-    let curves = curves(&operator, &subbands, states, FINENESS);
+    let bands = Bands::solve(&stack, &Band::of(&structure), Accuracy::default()).unwrap();
+    let shown = bands.asked_for(&structure);
+    let curves = bands.all().iter().zip(&shown).map(|(solved, shown)| {
+        let operator = BandOperator::new(&stack, solved.band).unwrap();
+        curves(&operator, solved, *shown, FINENESS)
+    });
     Solved {
-        curves,
-        subbands,
+        curves: curves.collect(),
+        bands,
+        shown,
         structure,
         stack,
     }
@@ -50,11 +59,11 @@ fn diagram(solved: &Solved) -> BandDiagram {
     let Solved {
         structure,
         stack,
-        subbands,
+        bands,
+        shown,
         curves,
     } = solved;
-    let states = structure.conduction.states;
-    BandDiagram::new(structure, stack, subbands, curves.clone(), states)
+    BandDiagram::new(structure, stack, bands, curves.clone(), shown)
 }
 
 fn attribute(node: Node, name: &str) -> f64 {
@@ -166,7 +175,10 @@ fn number(text: &str) -> f64 {
 
 /// Value against place on an axis: slope and offset from its lowest and its highest tick.
 fn axis(document: &Document, class: &str, place: &str) -> impl Fn(f64) -> f64 + use<> {
-    let group = group(document, class);
+    axis_of(group(document, class), class, place)
+}
+
+fn axis_of(group: Node, class: &str, place: &str) -> impl Fn(f64) -> f64 + use<> {
     let values: Vec<f64> = children(group, "text")
         .map(words)
         .filter_map(|text| text.replace('−', "-").parse().ok())
@@ -197,7 +209,7 @@ fn assert_levels_in_place(name: &str, solved: &Solved, svg: &str) {
     let levels: Vec<f64> = children(group(&document, "levels"), "line")
         .map(|line| attribute(line, "y1"))
         .collect();
-    let states = solved.subbands.states();
+    let states = solved.bands.conduction().states();
     assert_eq!(levels.len(), states.len(), "{name}");
     for (y, state) in levels.iter().zip(&states) {
         let (drawn, solved) = (energy(*y), unit * state.from_edge_ev);
@@ -291,7 +303,7 @@ fn many_levels_nearly_in_one_place() {
            layers:\n      - {name: a well, material: W, width: 6 nm}\n      - {name: a barrier, material: B, width: 9 nm}\n  \
            - {material: B, width: 6 nm}\n";
     let solved = solved(&text);
-    let pairs = &solved.subbands.pairs;
+    let pairs = &solved.bands.conduction().pairs;
     assert!(pairs[11].value - pairs[0].value < 1e-3);
     check_all("twelve levels", &text);
 }
@@ -357,7 +369,7 @@ fn area(line: &[[f64; 2]]) -> f64 {
 fn squared_envelopes_have_an_area_of_one() {
     for text in SHIPPED.iter().map(|t| t.to_string()).chain([cascade()]) {
         let solved = solved(&text);
-        for state in &solved.curves.states {
+        for state in &solved.curves[0].states {
             let whole = state.whole();
             let peak = whole.iter().fold(0.0, |a: f64, p| a.max(p[1]));
             let bound = FINENESS * peak * solved.stack.total_width_nm();
@@ -374,7 +386,7 @@ fn a_well_between_hard_walls() {
     let text = "materials: {W: {conduction_edge: 0 eV, electron_mass: 0.067}}\nlayers: [{material: W, width: 10 nm}]\n";
     let solved = solved(text);
     let length = 10.0;
-    for (index, state) in solved.curves.states.iter().enumerate() {
+    for (index, state) in solved.curves[0].states.iter().enumerate() {
         let n = (index + 1) as f64;
         for [z, value] in state.whole() {
             let expected = 2.0 / length * (n * std::f64::consts::PI * z / length).sin().powi(2);
@@ -392,7 +404,7 @@ fn a_well_between_hard_walls() {
 fn the_edge_jumps_at_interfaces_only() {
     let text = MATERIALS.to_owned()
         + "field: 10 kV/cm\nlayers:\n  - {material: B, width: 20 nm}\n  - {material: W, width: 8 nm}\n  - {material: B, width: 20 nm}\n";
-    let edge = solved(&text).curves.edge;
+    let edge = solved(&text).curves[0].edge.clone();
     // 10 kV/cm is 1 meV/nm.
     let expected = [
         [0.0, 0.250],
@@ -635,7 +647,7 @@ fn a_histogram_shows_what_it_was_given() {
 #[test]
 fn every_aim_is_told() {
     let solved = solved(SHIPPED[4]);
-    let energy = |k: usize| solved.subbands.pairs[k].value;
+    let energy = |k: usize| solved.bands.conduction().pairs[k].value;
     for width in WIDTHS {
         let svg = diagram(&solved).svg(width);
         let document = Document::parse(&svg).unwrap();
@@ -684,4 +696,63 @@ fn the_command_prints_or_writes_the_picture() {
     let refused = run(&[input.as_ref(), "-o".as_ref(), input.as_ref()]);
     assert_eq!(refused.status.code(), Some(2));
     assert_eq!(std::fs::read_to_string(&input).unwrap(), SHIPPED[2]);
+}
+
+/// Of two panels on one z axis the upper one has the electrons and the lower one the holes, each on its own scale, with arrows from one to
+/// the other that carry the wavelength of the aim.
+#[test]
+fn holes_hang_below_the_electrons() {
+    for text in WITH_HOLES {
+        let solved = solved(text);
+        let bands = &solved.bands;
+        let edges = bands.all()[1..].iter().map(|band| -band.pencil.floor());
+        let zeros = [
+            bands.conduction().pencil.floor(),
+            edges.fold(f64::NEG_INFINITY, f64::max),
+        ];
+        let holes: Vec<f64> = bands
+            .holes()
+            .into_iter()
+            .filter(|place| place.state < solved.shown[place.band])
+            .map(|place| bands.energy_ev(place))
+            .collect();
+        for width in WIDTHS {
+            let svg = diagram(&solved).svg(width);
+            let name = format!("{:?} ({width:?})", solved.structure.title);
+            assert_tidy(&name, &svg);
+            assert_levels_in_place(&name, &solved, &svg);
+            let document = Document::parse(&svg).unwrap();
+            let all = |class: &'static str| -> Vec<Node> {
+                document
+                    .descendants()
+                    .filter(move |node| node.attribute("class") == Some(class))
+                    .collect()
+            };
+            let (axes, levels, edges) = (all("axis-y"), all("levels"), all("edge"));
+            assert_eq!((axes.len(), levels.len(), edges.len()), (2, 2, 2), "{name}");
+            let energy = axis_of(axes[1], "axis-y", "y1");
+            let per_point = (energy(0.0) - energy(1.0)).abs();
+            let drawn: Vec<f64> = children(levels[1], "line")
+                .map(|line| attribute(line, "y1"))
+                .collect();
+            assert_eq!(drawn.len(), holes.len());
+            for (y, hole_ev) in drawn.iter().zip(&holes) {
+                let expected = 1e3 * (hole_ev - zeros[1]);
+                assert!((energy(*y) - expected).abs() <= 0.02 * per_point, "{name}");
+            }
+            let electrons: Vec<f64> = children(levels[0], "line")
+                .map(|line| attribute(line, "y1"))
+                .collect();
+            let lowest = electrons.iter().fold(0.0, |a: f64, y| a.max(*y));
+            assert!(drawn.iter().all(|y| *y > lowest), "{name}: holes below");
+            let wavelength_um = 1.239_841_984 / (bands.conduction().energy_ev(0) - holes[0]);
+            let told: String = children(document.root_element(), "text")
+                .map(words)
+                .collect();
+            assert!(
+                told.contains(&format!("{wavelength_um:.4} µm")),
+                "{name}: {told}"
+            );
+        }
+    }
 }

@@ -75,15 +75,6 @@ impl Input {
         Exit::WrongInput
     }
 
-    /// Says that a command leaves the holes of the file out.
-    pub fn without_holes(&self, what: &str) {
-        if self.structure.valence.is_some() {
-            let words =
-                format!("{what} the conduction band only; `levels` and `tune` solve the holes too");
-            show(&Diagnostic::warning(words), &self.name, &self.text);
-        }
-    }
-
     /// Doubts about the solutions of all bands, of each about the states that are listed.
     pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
         for (band, shown) in bands.all().iter().zip(shown) {

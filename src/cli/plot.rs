@@ -5,9 +5,9 @@ use super::deliver::{Exit, check_output, print, show, write};
 use super::input::Input;
 use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
-use crate::models::BandOperator;
+use crate::models::{Band, BandOperator};
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
-use crate::subbands::{self, Accuracy};
+use crate::subbands::{self, Accuracy, Bands};
 use std::path::Path;
 
 /// As few wafers as may be sampled.
@@ -16,7 +16,6 @@ const LEAST_SAMPLES: u32 = 2;
 pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
-    input.without_holes("the picture shows");
     let picture = match what {
         Picture::Bands => Some(bands(&input, width)?),
         Picture::Sensitivities => {
@@ -47,12 +46,24 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
 }
 
 fn bands(input: &Input, width: Width) -> Result<String, Exit> {
-    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
-    let states = input.structure.conduction.states;
-    let subbands = subbands::solve(&operator, states, Accuracy::default());
-    input.doubt(&subbands, states);
-    let curves = subbands::curves(&operator, &subbands, states, FINENESS);
-    let diagram = BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
-    Ok(diagram.svg(width))
+    let bands = Bands::solve(
+        &input.stack,
+        &Band::of(&input.structure),
+        Accuracy::default(),
+    )
+    .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    let shown = bands.asked_for(&input.structure);
+    input.doubt_all(&bands, &shown);
+    Ok(diagram(input, &bands, &shown).svg(width))
+}
+
+/// The band diagram of solved bands.
+pub fn diagram(input: &Input, bands: &Bands, shown: &[usize]) -> BandDiagram {
+    let curves = bands.all().iter().zip(shown).filter_map(|(solved, shown)| {
+        // What was solved has its operator.
+        let operator = BandOperator::new(&input.stack, solved.band).ok()?;
+        Some(subbands::curves(&operator, solved, *shown, FINENESS))
+    });
+    let curves = curves.collect();
+    BandDiagram::new(&input.structure, &input.stack, bands, curves, shown)
 }

@@ -3,17 +3,23 @@
 use super::arguments::{Format, SheetFormat};
 use super::deliver::{Exit, check_output, deliver, print, show, write};
 use super::input::Input;
+use super::plot::diagram;
 use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
 use crate::growth;
-use crate::models::BandOperator;
+use crate::models::Band;
+use crate::optics::photoluminescence;
 use crate::report::Sheet;
-use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
-use crate::subbands::{self, Accuracy};
+use crate::report::svg::{Width, sensitivity_bars, yield_histogram};
+use crate::structure::Level;
+use crate::subbands::{Accuracy, Bands};
 use std::path::Path;
 
 /// The page samples wafers of stacks up to this size: larger ones would keep the reader waiting.
 const MOST_SAMPLED_LAYERS: usize = 60;
+
+/// Photoluminescence is measured in liquid nitrogen and at room temperature, in K.
+const BENCH_K: [f64; 2] = [77.0, 300.0];
 
 pub fn sheet(
     file: &Path,
@@ -32,20 +38,31 @@ pub fn sheet(
         // A plan is made of a `growth` block.
         (Ok(_), None) => return Err(Exit::WrongInput),
     };
-    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
-    let highest = aims.map(|aim| aim.from.index.max(aim.to.index)).max();
-    let states = input.structure.conduction.states.max(highest.unwrap_or(0));
-    let subbands = subbands::solve(&operator, states, Accuracy::default());
-    input.doubt(&subbands, states);
+    let named: Vec<Level> = aims.flat_map(|aim| [aim.from, aim.to]).collect();
+    let asked = Band::holding(&input.structure, &named);
+    let accuracy = Accuracy::default();
+    let unsuitable = |(layer, reason)| input.unsuitable(layer, &reason);
+    let bands = Bands::solve(&input.stack, &asked, accuracy).map_err(unsuitable)?;
+    let mut shown = bands.asked_for(&input.structure);
+    for (shown, solved) in shown.iter_mut().zip(bands.all()) {
+        let own = named.iter().filter(|l| l.band == solved.band.name());
+        let highest = own.map(|level| level.index).max().unwrap_or(0);
+        *shown = (*shown).max(highest).min(solved.pairs.len());
+    }
+    input.doubt_all(&bands, &shown);
+    let mut peaks = Vec::new();
+    for temperature_k in BENCH_K {
+        let peak = photoluminescence(&input.stack, &asked, temperature_k, accuracy);
+        peaks.extend(peak.map_err(unsuitable)?);
+    }
     let sheet = Sheet::new(
         &input.structure,
         growth,
         &input.stack,
         &plan,
-        &subbands,
-        states,
+        (&bands, &shown),
+        &peaks,
     );
     let page = output.is_some_and(|path| {
         path.extension()
@@ -57,12 +74,9 @@ pub fn sheet(
         SheetFormat::Table
     }) {
         SheetFormat::Html => {
-            let curves = subbands::curves(&operator, &subbands, states, FINENESS);
-            let diagram =
-                BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
             let mut pictures = vec![(
-                "Band edge and squared envelopes at their energies".to_owned(),
-                diagram.svg(Width::Page),
+                "Band edges and squared envelopes at their energies".to_owned(),
+                diagram(&input, &bands, &shown).svg(Width::Page),
             )];
             let layers = input.stack.layers.len();
             if input.structure.tolerance.is_some() && layers > MOST_SAMPLED_LAYERS {

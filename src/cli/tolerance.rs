@@ -19,14 +19,20 @@ pub fn tolerance(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
-    input.without_holes("tolerances are those of");
     if input.structure.tolerance.is_none() {
         let doubt = Diagnostic::warning("there is no `tolerance` block, so nothing is sampled")
             .expected("`tolerance` with spreads such as `rate: 0.7 %`");
         show(&doubt, &input.name, &input.text);
     }
     let outcome = worked_out(&input, samples, threads)?;
-    input.doubt(&outcome.abrupt, outcome.levels_ev.len());
+    let bands = outcome.abrupt.all().iter();
+    let listed: Vec<usize> = bands
+        .map(|solved| {
+            let own = outcome.levels.iter();
+            own.filter(|level| level.band == solved.band.name()).count()
+        })
+        .collect();
+    input.doubt_all(&outcome.abrupt, &listed);
     deliver(
         &Tolerances::new(&input.structure, &input.stack, &outcome),
         output.format,

@@ -16,7 +16,7 @@ pub use doubts::doubts;
 pub use layers::{LayerStrain, Part, layer_strains};
 pub use mean::{LayerMean, layer_mean};
 pub use periods::{Period, periods};
-pub use sensitivity::{net_strain_slope, thickness_ratio};
+pub use sensitivity::{net_strain_slope, thickness_ratio, whole_thickness_ratio};
 pub use strain_balance::{Balance, balance};
 pub use strain_budget::{LayerThickness, StrainBudget, WholeThickness, glides, strain_budget};
 pub use x_ray::{

@@ -2,8 +2,9 @@
 
 use super::critical_thickness::{Glide, matthews_blakeslee_nm};
 use super::layers::first_copies;
-use super::mean::{layer_mean, layer_mean_slope};
+use super::mean::{LayerMean, layer_mean, layer_mean_slope};
 use super::strain_balance::balance;
+use super::strain_budget::as_one;
 use crate::materials::Dual;
 use crate::structure::{Knob, Stack};
 
@@ -64,23 +65,56 @@ pub fn thickness_ratio(stack: &Stack, entry: usize, glide: Glide, knob: Option<K
         if knob == Some(Knob::Width { entry }) {
             width.slope = 1.0;
         }
-        let critical = matthews_blakeslee_nm(mean.lattice_nm, mean.misfit, mean.poisson, glide);
-        if critical.value.is_infinite() {
-            return None;
-        }
-        // Where no thickness is stable, a tenth of a nanometre stands for none.
-        if critical.value < LEAST_NM {
-            return Some(Dual {
-                value: width.value / LEAST_NM,
-                slope: width.slope / LEAST_NM,
-            });
-        }
-        Some(width / critical)
+        in_critical(width, mean, glide)
     };
-    ratio().unwrap_or(Dual {
-        value: 0.0,
-        slope: 0.0,
-    })
+    ratio().unwrap_or(NONE)
 }
 
+/// The same of all strained layers and what lies between them, as one layer with their mean misfit.
+pub fn whole_thickness_ratio(stack: &Stack, knob: Option<Knob>) -> Dual {
+    let firsts = first_copies(stack);
+    let entries = firsts.iter().map(|(_, entry, _)| entry + 1).max();
+    let mut means = vec![None; entries.unwrap_or(0)];
+    for (layer, entry, _) in firsts {
+        means[entry] = match knob {
+            Some(Knob::Fraction {
+                entry: own,
+                element,
+            }) if own == entry => layer_mean_slope(stack, layer, element),
+            _ => layer_mean(stack, layer).map(|mean| mean.map(|value| Dual { value, slope: 0.0 })),
+        };
+    }
+    let width = |layer: usize| {
+        let own = &stack.layers[layer];
+        let varies = knob == Some(Knob::Width { entry: own.entry });
+        Dual {
+            value: own.width_nm,
+            slope: f64::from(u8::from(varies)),
+        }
+    };
+    as_one(stack, &means, width)
+        .and_then(|one| in_critical(one.width_nm, one.mean, one.glide))
+        .unwrap_or(NONE)
+}
+
+/// A width over the critical thickness by Matthews and Blakeslee; `None` for a matched layer.
+fn in_critical(width: Dual, mean: LayerMean<Dual>, glide: Glide) -> Option<Dual> {
+    let critical = matthews_blakeslee_nm(mean.lattice_nm, mean.misfit, mean.poisson, glide);
+    if critical.value.is_infinite() {
+        return None;
+    }
+    // Where no thickness is stable, a tenth of a nanometre stands for none.
+    if critical.value < LEAST_NM {
+        return Some(Dual {
+            value: width.value / LEAST_NM,
+            slope: width.slope / LEAST_NM,
+        });
+    }
+    Some(width / critical)
+}
+
+const NONE: Dual = Dual {
+    value: 0.0,
+    slope: 0.0,
+};
 const LEAST_NM: f64 = 0.1;

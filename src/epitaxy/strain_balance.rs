@@ -39,13 +39,13 @@ pub fn balance(stack: &Stack, entries: &[usize]) -> Option<Balance> {
 
 /// Sums over layers, weighted by thickness.
 #[derive(Default)]
-pub(super) struct Sum {
+struct Sum {
     thickness_nm: f64,
     weighted: Option<LayerMean>,
 }
 
 impl Sum {
-    pub fn add(&mut self, width_nm: f64, mean: LayerMean) {
+    fn add(&mut self, width_nm: f64, mean: LayerMean) {
         self.thickness_nm += width_nm;
         let here = mean.map(|value| value * width_nm);
         self.weighted = Some(match self.weighted {
@@ -54,7 +54,7 @@ impl Sum {
         });
     }
 
-    pub fn balance(self, substrate_nm: f64) -> Option<Balance> {
+    fn balance(self, substrate_nm: f64) -> Option<Balance> {
         let sum = self.weighted?;
         // Σ A t/a² from ε∥ = (a_s − a)/a: A ε∥/a = A a_s/a² − A/a.
         let net_strain = sum.tension / sum.stiffness;

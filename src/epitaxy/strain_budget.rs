@@ -4,7 +4,7 @@ use super::critical_thickness::{Glide, matthews_blakeslee_nm, people_bean_nm};
 use super::layers::first_copies;
 use super::mean::{LayerMean, layer_mean};
 use super::periods::periods;
-use super::strain_balance::Sum;
+use crate::materials::Number;
 use crate::structure::{Stack, Structure};
 
 /// Layers with less misfit than this count as matched when it is asked which layers are strained.
@@ -86,34 +86,60 @@ pub fn strain_budget(structure: &Structure, stack: &Stack) -> StrainBudget {
 }
 
 fn whole(stack: &Stack, means: &[Option<LayerMean>]) -> Option<WholeThickness> {
-    let mean_of = |layer: usize| *means.get(stack.layers.get(layer)?.entry)?;
-    let is_strained =
-        |&layer: &usize| mean_of(layer).is_some_and(|mean| mean.misfit.abs() > MATCHED);
-    let lowest = (0..stack.layers.len()).find(is_strained)?;
-    let highest = (0..stack.layers.len()).rev().find(is_strained)?;
-    let mut sum = Sum::default();
-    for layer in lowest..=highest {
-        sum.add(stack.layers[layer].width_nm, mean_of(layer)?);
-    }
-    let all = sum.balance(stack.substrate_lattice_nm()?)?;
-    let glide = if highest + 1 == stack.layers.len() {
-        Glide::FreeLayer
-    } else {
-        Glide::Buried
-    };
+    let one = as_one(stack, means, |layer| stack.layers[layer].width_nm)?;
     let LayerMean {
         lattice_nm,
         misfit,
         poisson,
         ..
-    } = all.mean;
+    } = one.mean;
     Some(WholeThickness {
-        layers: (lowest, highest),
-        width_nm: all.thickness_nm,
+        layers: one.layers,
+        width_nm: one.width_nm,
         misfit,
-        glide,
-        matthews_blakeslee_nm: matthews_blakeslee_nm(lattice_nm, misfit, poisson, glide),
+        glide: one.glide,
+        matthews_blakeslee_nm: matthews_blakeslee_nm(lattice_nm, misfit, poisson, one.glide),
         people_bean_nm: people_bean_nm(lattice_nm, misfit, poisson),
+    })
+}
+
+/// All strained layers and what lies between them as one layer.
+pub(super) struct One<T> {
+    pub layers: (usize, usize),
+    pub width_nm: T,
+    /// Over the thickness.
+    pub mean: LayerMean<T>,
+    pub glide: Glide,
+}
+
+/// Joins the strained layers of a stack, of whose entries the means are given. `None` when no layer is strained, or when one in
+/// between has unknown constants.
+pub(super) fn as_one<T: Number>(
+    stack: &Stack,
+    means: &[Option<LayerMean<T>>],
+    width_nm: impl Fn(usize) -> T,
+) -> Option<One<T>> {
+    let mean_of = |layer: usize| *means.get(stack.layers.get(layer)?.entry)?;
+    let is_strained =
+        |&layer: &usize| mean_of(layer).is_some_and(|mean| mean.misfit.value().abs() > MATCHED);
+    let lowest = (0..stack.layers.len()).find(is_strained)?;
+    let highest = (0..stack.layers.len()).rev().find(is_strained)?;
+    let mut whole_nm = width_nm(lowest);
+    let mut sum = mean_of(lowest)?.map(|value| value * whole_nm);
+    for layer in lowest + 1..=highest {
+        let own_nm = width_nm(layer);
+        sum = sum.plus(mean_of(layer)?.map(|value| value * own_nm));
+        whole_nm = whole_nm + own_nm;
+    }
+    Some(One {
+        layers: (lowest, highest),
+        width_nm: whole_nm,
+        mean: sum.map(|value| value / whole_nm),
+        glide: if highest + 1 == stack.layers.len() {
+            Glide::FreeLayer
+        } else {
+            Glide::Buried
+        },
     })
 }
 

@@ -111,7 +111,7 @@ pub fn strain_on(
 }
 
 /// The compositions of the openings, each once.
-fn distinct(openings: &[Opening]) -> Vec<[f64; 3]> {
+pub(super) fn distinct(openings: &[Opening]) -> Vec<[f64; 3]> {
     let mut found: Vec<[f64; 3]> = Vec::new();
     for opening in openings {
         if !found

@@ -6,6 +6,7 @@
 
 mod cautions;
 mod digital;
+mod digital_grade;
 mod identity;
 mod openings;
 mod plan;
@@ -15,6 +16,7 @@ mod totals;
 
 pub use cautions::{Caution, Limit, cautions};
 pub use digital::Digital;
+pub use digital_grade::DigitalGrade;
 pub use identity::content_id;
 pub use openings::{Opening, growable_fractions, nearest, openings};
 pub use plan::{Flag, FluxTarget, NotGiven, Plan, plan};

@@ -1,6 +1,7 @@
 //! From a structure and its stack to the lines of the sheet.
 
 use super::digital::{COMPOSITION_TOLERANCE, Digital, digital, strain_on};
+use super::digital_grade::{DigitalGrade, digital_grade};
 use super::identity::content_id;
 use super::openings::{Opening, group_three, miss, nearest, openings};
 use super::ramp::ramp;
@@ -42,7 +43,12 @@ pub enum Flag {
     /// The cells do not give the composition.
     Composition(Box<NotGiven>),
     /// A graded layer, for which rates have to change during growth.
-    Ramped { label: String, profile: Profile },
+    Ramped {
+        label: String,
+        profile: Profile,
+        /// What takes its place where rates stay.
+        digital: Option<Box<DigitalGrade>>,
+    },
 }
 
 /// A composition that the cells do not give.
@@ -262,6 +268,12 @@ fn flags(structure: &Structure, stack: &Stack, openings: &[Opening], row: &Layer
                 .entries
                 .get(row.entry)
                 .map_or(Profile::Linear, |entry| entry.profile),
+            digital: stack
+                .layers
+                .iter()
+                .position(|layer| layer.entry == row.entry)
+                .and_then(|layer| digital_grade(openings, stack, layer, row.monolayers))
+                .map(Box::new),
         }),
         Filling::Open { cells, .. } => {
             let layer = stack.layers.iter().position(|l| l.entry == row.entry);

@@ -28,14 +28,12 @@ pub fn hole_edges<T: Number>(
     substrate_lattice_nm: Option<f64>,
 ) -> Option<HoleEdges<T>> {
     let edge = material.valence_edge_ev?;
-    let strain = substrate_lattice_nm.and_then(|lattice| strain(material, lattice));
-    let (Some(strain), Some(b)) = (strain, material.shear_b_ev) else {
+    let Some(q) = shear(material, substrate_lattice_nm) else {
         return Some(HoleEdges {
             heavy_ev: edge,
             light_ev: edge,
         });
     };
-    let q = -(b * (strain.in_plane - strain.growth));
     let light_shift = match material.spin_orbit_ev {
         None => q,
         Some(split) => mixed_shifts(q, split).0,
@@ -44,6 +42,15 @@ pub fn hole_edges<T: Number>(
         heavy_ev: edge - q,
         light_ev: edge + light_shift,
     })
+}
+
+/// Q = −b (ε∥ − ε_zz) in eV; `None` when strain or `shear_b` is unknown.
+pub(super) fn shear<T: Number>(
+    material: &Material<T>,
+    substrate_lattice_nm: Option<f64>,
+) -> Option<T> {
+    let strain = strain(material, substrate_lattice_nm?)?;
+    Some(-(material.shear_b_ev? * (strain.in_plane - strain.growth)))
 }
 
 /// How far light holes and split-off band lie from the heavy holes' edge without shear: their coupling by √2 Q included.

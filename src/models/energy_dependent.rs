@@ -6,6 +6,10 @@
 //!
 //! m₀/m(E, z) = 1 + 2F + (Ep/3) [2/(E − Ev) + 1/(E − Ev + Δ)],  Ev(z) = Ec(z) − Eg.
 //!
+//! In a layer under coherent strain on (001) the edges are those of the strained light holes and split-off band, each
+//! with what it holds of Z in place of 2/3 and 1/3 (see [`growth_coupling`]). F and Ep stay, so that the edge mass becomes
+//! that of the strained layer along growth.
+//!
 //! The two-band form m(E) = m* (1 + (E − Ec)/E′) of most published intersubband designs (Nelson, Miller and Kleinman,
 //! Phys. Rev. B 35, 7770 (1987)), when a material states E′.
 //!
@@ -13,9 +17,9 @@
 //! frozen where the energy comes nearer to the valence edge than a tenth of the gap (deep tails in a strong field), and
 //! where a negative 1 + 2F would drive it beyond ten times the edge mass.
 
-use super::Unsuitable;
+use super::{InPlane, Unsuitable};
 use crate::constants::HBAR2_OVER_2M0;
-use crate::materials::{Material, Number};
+use crate::materials::{Material, Number, growth_coupling};
 use crate::numerics::pencil::{Coefficient, Pole};
 
 /// The energy is followed down to this part of the gap above the valence edge.
@@ -24,7 +28,10 @@ const NEAREST_OF_GAP: f64 = 0.1;
 const HEAVIEST_OF_EDGE: f64 = 10.0;
 
 /// A(E) = ħ²/2m(E) and C = the conduction edge.
-pub fn coefficient<T: Number>(material: &Material<T>) -> Result<Coefficient<T>, Unsuitable> {
+pub fn coefficient<T: Number>(
+    material: &Material<T>,
+    substrate_lattice_nm: Option<f64>,
+) -> Result<Coefficient<T>, Unsuitable> {
     let missing = |key| Unsuitable::Missing {
         key,
         model: "energy-dependent",
@@ -65,32 +72,36 @@ pub fn coefficient<T: Number>(material: &Material<T>) -> Result<Coefficient<T>, 
                 - coupled(gap)
         }
     };
-    let inverse_mass = (remote + coupled(gap)).value();
-    if inverse_mass <= 0.0 || !inverse_mass.is_finite() {
+    // What couples now, which without strain is the same.
+    let coupling = growth_coupling(material, (gap, spin_orbit), substrate_lattice_nm);
+    let (gap, split) = (coupling.light_gap_ev, coupling.split_ev);
+    let light_part = third * coupling.light_thirds;
+    let split_off_part = third * coupling.split_off_thirds;
+    let inverse_mass = (remote + light_part / gap + split_off_part / (gap + split)).value();
+    if inverse_mass <= 0.0 || !inverse_mass.is_finite() || gap.value() <= 0.0 {
         return Err(Unsuitable::NegativeMass { inverse_mass });
     }
     let farthest = if remote.value() < inverse_mass / HEAVIEST_OF_EDGE {
         heaviest_distance(
-            remote.value(),
-            third.value(),
-            spin_orbit.value(),
-            inverse_mass / HEAVIEST_OF_EDGE,
+            remote.value() - inverse_mass / HEAVIEST_OF_EDGE,
+            [light_part.value(), split_off_part.value()],
+            split.value(),
         )
     } else {
         f64::INFINITY
     };
     let nearest = gap * T::constant(NEAREST_OF_GAP);
     let light = Pole {
-        strength: free * third * T::constant(2.0),
+        strength: free * light_part,
         position: edge - gap,
         nearest,
         farthest: T::constant(farthest),
     };
     let split_off = Pole {
-        strength: free * third,
-        position: edge - gap - spin_orbit,
-        nearest: nearest + spin_orbit,
-        farthest: spin_orbit + T::constant(farthest),
+        strength: free * split_off_part,
+        position: edge - gap - split,
+        nearest: nearest + split,
+        farthest: split + T::constant(farthest),
     };
     Ok(Coefficient {
         stiffness: free * remote,
@@ -99,11 +110,49 @@ pub fn coefficient<T: Number>(material: &Material<T>) -> Result<Coefficient<T>, 
     })
 }
 
-/// The distance x from the valence edge at which `remote` + third (2/x + 1/(x + Δ)) has fallen to `least`: the positive
-/// root of a quadratic.
-fn heaviest_distance(remote: f64, third: f64, spin_orbit: f64, least: f64) -> f64 {
-    let span = least - remote;
-    let b = span * spin_orbit - 3.0 * third;
-    let c = -2.0 * third * spin_orbit;
-    (-b + (b * b - 4.0 * span * c).sqrt()) / (2.0 * span)
+/// What makes the mass in the plane, where strain makes it another one than along growth: the heavy holes with half of E_P, the
+/// light holes and the split-off band with what they hold of X (see [`growth_coupling`]). `None` without strain, and for a material
+/// that states E′.
+pub fn in_plane(material: &Material, substrate_lattice_nm: Option<f64>) -> Option<InPlane> {
+    if material.nonparabolicity_energy_ev.is_some() {
+        return None;
+    }
+    let (gap, spin_orbit) = (material.gap_ev?, material.spin_orbit_ev?);
+    let coupling = growth_coupling(material, (gap, spin_orbit), substrate_lattice_nm);
+    if coupling.heavy_gap_ev == coupling.light_gap_ev {
+        return None;
+    }
+    let along = coefficient(material, substrate_lattice_nm).ok()?;
+    let [Some(light), Some(split_off)] = along.poles else {
+        return None;
+    };
+    let sixth = HBAR2_OVER_2M0 * material.kane_energy_ev? / 6.0;
+    let heavy_ev = along.constant - coupling.heavy_gap_ev;
+    // The same range of energies as along growth, and no nearer to the heavy holes than to the light ones.
+    let up = light.position - heavy_ev;
+    let heavy = Pole {
+        strength: 3.0 * sixth,
+        position: heavy_ev,
+        nearest: (light.nearest + up).max(NEAREST_OF_GAP * coupling.heavy_gap_ev),
+        farthest: light.farthest + up,
+    };
+    let with = |pole: Pole, thirds: f64| Pole {
+        strength: sixth * (3.0 - thirds),
+        ..pole
+    };
+    Some(InPlane {
+        stiffness: along.stiffness,
+        poles: vec![
+            heavy,
+            with(light, coupling.light_thirds),
+            with(split_off, coupling.split_off_thirds),
+        ],
+    })
+}
+
+/// The distance x from the light holes' edge at which a/x + b/(x + Δ) + `lack` = 0, with `lack` negative: the positive root of a
+/// quadratic.
+fn heaviest_distance(lack: f64, [a, b]: [f64; 2], split: f64) -> f64 {
+    let linear = lack * split + a + b;
+    (-linear - (linear * linear - 4.0 * lack * a * split).sqrt()) / (2.0 * lack)
 }

@@ -14,7 +14,7 @@ pub use hole::Hole;
 
 use crate::materials::{Dual, Element, Material, Number};
 use crate::numerics::pencil::{Coefficient, Pole};
-use crate::structure::{BandName, ConductionModel, Stack, Structure};
+use crate::structure::{BandName, ConductionModel, Level, Stack, Structure};
 
 /// A band that is solved on its own.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -34,6 +34,22 @@ impl Band {
             bands.extend([Hole::Heavy, Hole::Light].map(|hole| (Band::Hole(hole), valence.states)));
         }
         bands
+    }
+
+    /// The same with as many levels as it takes to hold the named ones too.
+    pub fn holding(structure: &Structure, named: &[Level]) -> Vec<(Band, usize)> {
+        let asked = Self::of(structure).into_iter();
+        asked
+            .map(|(band, count)| (band, count.max(band.highest(named))))
+            .collect()
+    }
+
+    /// The highest number that names a level of the band, one of all holes included; 0 without one.
+    pub fn highest(self, named: &[Level]) -> usize {
+        let own = named.iter().filter(|level| {
+            level.band == self.name() || (level.band == BandName::Valence && self.sign() < 0.0)
+        });
+        own.map(|level| level.index).max().unwrap_or(0)
     }
 
     /// What the solver's eigenvalues are multiplied with to give the electron's energy: −1 for holes.
@@ -62,7 +78,7 @@ fn coefficient<T: Number>(
     match band {
         Band::Conduction(ConductionModel::Parabolic) => parabolic::coefficient(material),
         Band::Conduction(ConductionModel::EnergyDependent) => {
-            energy_dependent::coefficient(material)
+            energy_dependent::coefficient(material, substrate_lattice_nm)
         }
         Band::Hole(hole) => hole::coefficient(hole, material, substrate_lattice_nm),
     }
@@ -81,9 +97,32 @@ pub enum Unsuitable {
     )]
     NoLaw,
     #[error(
-        "has a mass at the band edge that is not positive: 1 + 2F + (Ep/3)(2/Eg + 1/(Eg + Δ)) = {inverse_mass:.3}"
+        "has a mass at the band edge that is not positive: 1 + 2F and the coupling to its valence edges make m0/m = {inverse_mass:.3}"
     )]
     NegativeMass { inverse_mass: f64 },
+}
+
+/// ħ²/2m in the plane at one place, in eV nm²: a constant and poles in the energy.
+#[derive(Clone, Debug)]
+pub struct InPlane {
+    pub stiffness: f64,
+    pub poles: Vec<Pole>,
+}
+
+impl InPlane {
+    pub fn at(&self, energy_ev: f64) -> f64 {
+        let poles = self.poles.iter();
+        let poles = poles.map(|pole| pole.strength / pole.distance(energy_ev).0);
+        self.stiffness + poles.sum::<f64>()
+    }
+
+    /// The same with all edges raised.
+    pub fn raised(mut self, energy_ev: f64) -> InPlane {
+        for pole in &mut self.poles {
+            pole.position += energy_ev;
+        }
+        self
+    }
 }
 
 /// The operator of one band on one stack.
@@ -153,14 +192,21 @@ impl<'s> BandOperator<'s> {
         self.band.sign() * self.bottoms[layer].constant
     }
 
-    /// ħ²/2m∥ of a hole band at fraction `t` of a layer, in eV nm². `None` for the conduction band, whose mass is the
-    /// same in all directions; a hole without a mass in the plane has the one along growth.
-    pub fn in_plane_stiffness(&self, layer: usize, t: f64) -> Option<f64> {
-        let Band::Hole(hole) = self.band else {
+    /// ħ²/2m∥ at fraction `t` of a layer, with no field, where it is not A: of hole bands, and of electrons in strained layers
+    /// whose mass depends on energy.
+    pub fn in_plane(&self, layer: usize, t: f64) -> Option<InPlane> {
+        if self.band == Band::Conduction(ConductionModel::Parabolic) {
             return None;
-        };
+        }
         let material = self.stack.material_at(layer, t);
-        hole::in_plane_stiffness(hole, &material).or(Some(self.at(layer, t, 0.0).stiffness))
+        let substrate_lattice_nm = self.stack.substrate_lattice_nm();
+        match self.band {
+            Band::Conduction(_) => energy_dependent::in_plane(&material, substrate_lattice_nm),
+            Band::Hole(hole) => Some(InPlane {
+                stiffness: hole::in_plane_stiffness(hole, &material, substrate_lattice_nm)?,
+                poles: Vec::new(),
+            }),
+        }
     }
 
     /// The slopes of A and C with respect to the fraction of an element in the layer's material, the field left out.

@@ -1,11 +1,13 @@
 //! Transitions between subbands of one band: energies, dipoles and strengths for light polarised along growth; and those
-//! between the valence and the conduction band, with their exciton.
+//! between the valence and the conduction band, with their exciton and the photoluminescence.
 
 mod exciton;
 mod interband;
+mod photoluminescence;
 
 pub use exciton::{Exciton, Pair, exciton};
 pub use interband::{Alignment, Interband, Selection, interband, lowest_exciton};
+pub use photoluminescence::{Photoluminescence, photoluminescence};
 
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0, HC_EV_UM};
 use crate::numerics::pencil::dot;

@@ -4,12 +4,13 @@ use super::Report;
 use super::sheet_csv::sheet_csv;
 use super::sheet_text::sheet_text;
 use super::strain::StrainReport;
-use super::table::significant;
+use super::table::{TitledTable, significant};
+use crate::constants::HC_EV_UM;
 use crate::growth::{self, Caution, Digital, Filling, Flag, LayerRow, Plan, Row, Sums, cautions};
 use crate::materials::Element;
-use crate::optics::transitions;
-use crate::structure::{Growth, Profile, Stack, Structure};
-use crate::subbands::Subbands;
+use crate::optics::Photoluminescence;
+use crate::structure::{BandName, Growth, Level, Profile, Stack, Structure};
+use crate::subbands::Bands;
 use serde::Serialize;
 
 /// The whole sheet, in the units in which it is printed.
@@ -26,12 +27,16 @@ pub struct Sheet {
     pub field_kv_cm: f64,
     pub total: Total,
     pub transitions: Vec<DesignTransition>,
+    /// What the wafer should show on the bench; empty without holes.
+    pub photoluminescence: Vec<PeakRow>,
     pub rows: Vec<SheetRow>,
     pub shutters: Vec<Shutter>,
     pub materials: Vec<Material>,
     pub flux_targets: Vec<FluxRatio>,
     /// What the cells do not give, with what comes nearest.
     pub compositions: Vec<NotGiven>,
+    /// Graded layers as digital alloys.
+    pub grades: Vec<DigitalGradeRow>,
     pub warnings: Vec<String>,
     /// Critical thickness, strain balance and x-ray peaks.
     pub strain: StrainReport,
@@ -54,10 +59,25 @@ pub struct Total {
 #[derive(Debug, Serialize)]
 #[allow(non_snake_case)]
 pub struct DesignTransition {
-    pub from: usize,
-    pub to: usize,
+    pub from: String,
+    pub to: String,
     pub energy_meV: f64,
-    pub wavelength_um: f64,
+    /// `None` where the lower level lies above the upper one: a broken gap.
+    pub wavelength_um: Option<f64>,
+}
+
+/// The expected peak of the photoluminescence at one temperature.
+#[derive(Debug, Serialize)]
+#[allow(non_snake_case)]
+pub struct PeakRow {
+    pub temperature_K: f64,
+    pub from: String,
+    pub to: String,
+    pub transition_meV: f64,
+    pub transition_nm: f64,
+    pub binding_meV: Option<f64>,
+    pub peak_meV: f64,
+    pub peak_nm: f64,
 }
 
 /// A layer, or the beginning or end of a loop.
@@ -147,6 +167,20 @@ pub struct DigitalAlloy {
     pub sentence: String,
 }
 
+/// A graded layer in whole monolayers of two materials.
+#[derive(Debug, Serialize)]
+pub struct DigitalGradeRow {
+    pub layer: String,
+    pub periods: usize,
+    pub total_monolayers: u32,
+    /// The largest difference in a fraction between a period and the grade there.
+    pub largest_miss: f64,
+    pub mean_miss: f64,
+    /// The layers as a structure file has them.
+    pub structure: String,
+    pub sentence: String,
+}
+
 #[derive(Debug, Serialize)]
 pub struct CautionEntry {
     pub title: String,
@@ -164,42 +198,75 @@ pub const GROWER_ENTRIES: [&str; 6] = [
     "Remarks",
 ];
 
+/// What the peaks mean.
+const PEAK_NOTE: &str = "Peak: transition less exciton binding, at both temperatures (free excitons carry the light of wells up to 300 K: Dawson and \
+others 1983); where carriers are free, the transition itself. No field, holes solved apart; filled bands and disorder, which pull it down, left out.";
 /// Decimals of a fraction in sentences about compositions.
 const FRACTION_DECIMALS: usize = 4;
 
 impl Sheet {
-    /// Gathers the sheet. The transitions are those of the file's aims, or else all among the `shown` lowest states.
+    /// Gathers the sheet. The transitions are those of the file's aims, or else all inside the conduction band among the
+    /// `shown` states of each band, and from the highest hole across the gap.
     pub fn new(
         structure: &Structure,
         growth: &Growth,
         stack: &Stack,
         plan: &Plan,
-        subbands: &Subbands,
-        shown: usize,
+        (bands, shown): (&Bands, &[usize]),
+        peaks: &[Photoluminescence],
     ) -> Sheet {
-        let aims: Vec<(usize, usize)> = structure
-            .tune
-            .iter()
-            .flat_map(|tune| &tune.aims)
-            .map(|aim| (aim.from.index - 1, aim.to.index - 1))
-            .collect();
-        let wanted = |from: usize, to: usize| {
-            if aims.is_empty() {
-                from.max(to) < shown
-            } else {
-                aims.contains(&(from, to)) || aims.contains(&(to, from))
+        let transition = |from: Level, to: Level| {
+            let ev = bands.energy_ev(bands.place(to)) - bands.energy_ev(bands.place(from));
+            DesignTransition {
+                from: from.to_string(),
+                to: to.to_string(),
+                energy_meV: 1e3 * ev,
+                wavelength_um: (ev > 0.0).then(|| HC_EV_UM / ev),
             }
         };
-        let transitions = transitions(subbands)
+        let mut wanted: Vec<(Level, Level)> = Vec::new();
+        for aim in structure.tune.iter().flat_map(|tune| &tune.aims) {
+            let (mut from, mut to) = (aim.from, aim.to);
+            // Of one band the lower level first, also where an aim by character goes down.
+            if from.band == to.band
+                && (from.index > to.index) == (from.band == BandName::Conduction)
+            {
+                (from, to) = (to, from);
+            }
+            if !wanted.contains(&(from, to)) {
+                wanted.push((from, to));
+            }
+        }
+        if wanted.is_empty() {
+            let electron = |index| Level {
+                band: BandName::Conduction,
+                index,
+            };
+            let highest = bands.holes().first().map(|place| bands.level(*place));
+            wanted.extend(highest.map(|hole| (hole, electron(1))));
+            for from in 1..=shown[0] {
+                wanted.extend((from + 1..=shown[0]).map(|to| (electron(from), electron(to))));
+            }
+        }
+        let there = |level: Level| match level.band {
+            BandName::Valence => level.index <= bands.holes().len(),
+            _ => bands.level(bands.place(level)) == level,
+        };
+        wanted.retain(|(from, to)| there(*from) && there(*to));
+        let transitions = wanted
             .iter()
-            .filter(|t| wanted(t.from, t.to))
-            .map(|t| DesignTransition {
-                from: t.from + 1,
-                to: t.to + 1,
-                energy_meV: 1e3 * t.energy_ev,
-                wavelength_um: t.wavelength_um(),
-            })
+            .map(|(from, to)| transition(*from, *to))
             .collect();
+        let peak = |peak: &Photoluminescence| PeakRow {
+            temperature_K: peak.temperature_k,
+            from: peak.from.to_string(),
+            to: peak.to.to_string(),
+            transition_meV: 1e3 * peak.transition_ev,
+            transition_nm: 1e3 * HC_EV_UM / peak.transition_ev,
+            binding_meV: peak.binding_ev.map(|ev| 1e3 * ev),
+            peak_meV: 1e3 * peak.peak_ev(),
+            peak_nm: 1e3 * HC_EV_UM / peak.peak_ev(),
+        };
         let calibrated = growth.cells.iter().map(|cell| {
             use crate::units::Dimension;
             match cell.calibrated.unit.dimension {
@@ -241,6 +308,7 @@ impl Sheet {
                 shutter_openings: shutters.iter().map(|shutter| shutter.openings).sum(),
             },
             transitions,
+            photoluminescence: peaks.iter().map(peak).collect(),
             rows: plan.rows.iter().map(|row| sheet_row(row, growth)).collect(),
             shutters,
             materials: plan
@@ -265,6 +333,7 @@ impl Sheet {
                 .iter()
                 .filter_map(|flag| not_given(flag, growth))
                 .collect(),
+            grades: plan.flags.iter().filter_map(grade).collect(),
             warnings: plan.flags.iter().filter_map(warning).collect(),
             strain: StrainReport::new(structure, stack),
             cautions: cautions(&[symbols, substrate].concat())
@@ -281,13 +350,17 @@ impl Sheet {
             .transitions
             .iter()
             .map(|t| {
-                format!(
-                    "{} to {}: {:.2} meV, {} µm",
-                    t.from,
-                    t.to,
-                    t.energy_meV,
-                    significant(t.wavelength_um, 4)
-                )
+                let electrons = "conduction ";
+                let (from, to) =
+                    match (t.from.strip_prefix(electrons), t.to.strip_prefix(electrons)) {
+                        (Some(from), Some(to)) => (from, to),
+                        _ => (t.from.as_str(), t.to.as_str()),
+                    };
+                let length = match t.wavelength_um {
+                    Some(um) => significant(um, 4) + " µm",
+                    None => "no light".to_owned(),
+                };
+                format!("{from} to {to}: {:.2} meV, {length}", t.energy_meV)
             })
             .collect();
         vec![
@@ -327,6 +400,44 @@ impl Sheet {
                 },
             ),
         ]
+    }
+}
+
+impl Sheet {
+    /// The expected photoluminescence and what concerns strain.
+    pub fn more_tables(&self) -> Vec<TitledTable> {
+        let mut tables = self.strain.tables();
+        if !self.photoluminescence.is_empty() {
+            let rows = self.photoluminescence.iter().map(|peak| {
+                vec![
+                    plain(peak.temperature_K),
+                    format!("{} to {}", peak.from, peak.to),
+                    format!("{:.1}", peak.transition_meV),
+                    format!("{:.1}", peak.transition_nm),
+                    peak.binding_meV
+                        .map_or("-".to_owned(), |mev| format!("{mev:.1}")),
+                    format!("{:.1}", peak.peak_meV),
+                    format!("{:.1}", peak.peak_nm),
+                ]
+            });
+            let table = TitledTable {
+                title: "Expected photoluminescence".to_owned(),
+                header: vec![
+                    "K",
+                    "lowest pair",
+                    "transition meV",
+                    "nm",
+                    "exciton meV",
+                    "peak meV",
+                    "peak nm",
+                ],
+                left: vec![1],
+                rows: rows.collect(),
+                note: PEAK_NOTE,
+            };
+            tables.insert(0, table);
+        }
+        tables
     }
 }
 
@@ -498,17 +609,52 @@ fn warning(flag: &Flag) -> Option<String> {
                 below + 1.0
             ))
         }
-        Flag::Ramped { label, profile } => {
+        Flag::Ramped {
+            label,
+            profile,
+            digital,
+        } => {
             let how = match profile {
                 Profile::Linear => "linearly",
                 Profile::Parabolic => "as a parabola",
             };
+            let otherwise = match digital {
+                Some(_) => "or grow the digital alloy below",
+                None => "no digital alloy of two settings of these cells follows it",
+            };
             Some(format!(
-                "{label}: fixed rates do not give a graded layer. Ramp the fluxes between the rates of its line, the composition changing {how} with height, or grow digital steps"
+                "{label}: fixed rates do not give a graded layer. Ramp the fluxes between the rates of its line, the composition changing {how} with height; {otherwise}"
             ))
         }
         Flag::Composition(_) => None,
     }
+}
+
+fn grade(flag: &Flag) -> Option<DigitalGradeRow> {
+    let Flag::Ramped {
+        label,
+        digital: Some(digital),
+        ..
+    } = flag
+    else {
+        return None;
+    };
+    let [first, second] = &digital.formulas;
+    Some(DigitalGradeRow {
+        layer: label.clone(),
+        periods: digital.periods.len(),
+        total_monolayers: digital.total(),
+        largest_miss: digital.largest_miss,
+        mean_miss: digital.mean_miss,
+        structure: digital.yaml(),
+        sentence: format!(
+            "{label}: {} periods of {first} and {second}, {} ML. A period's mean is off the grade by up to {:.3} in a fraction, the whole layer's by {:.4}",
+            digital.periods.len(),
+            digital.total(),
+            digital.largest_miss,
+            digital.mean_miss
+        ),
+    })
 }
 
 fn not_given(flag: &Flag, chamber: &Growth) -> Option<NotGiven> {

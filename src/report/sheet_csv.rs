@@ -32,6 +32,10 @@ pub fn sheet_csv(sheet: &Sheet) -> Result<String, csv::Error> {
             kind: "composition",
             text,
         })
+        .chain(sheet.grades.iter().map(|grade| Line {
+            kind: "grade",
+            text: &grade.sentence,
+        }))
         .chain(sheet.warnings.iter().map(|text| Line {
             kind: "warning",
             text,
@@ -58,6 +62,9 @@ pub fn sheet_csv(sheet: &Sheet) -> Result<String, csv::Error> {
     ];
     if !sheet.flux_targets.is_empty() {
         tables.push(csv_table(&sheet.flux_targets)?);
+    }
+    if !sheet.photoluminescence.is_empty() {
+        tables.push(csv_table(&sheet.photoluminescence)?);
     }
     if !sentences.is_empty() {
         tables.push(csv_table(&sentences)?);

@@ -79,7 +79,7 @@ impl Sheet {
         page.push_str(&self.heed());
         page.push_str(&self.layers());
         page.push_str(&self.uses());
-        for table in self.strain.tables() {
+        for table in self.more_tables() {
             page.push_str(&titled(&table));
         }
         for (caption, svg) in pictures {
@@ -138,6 +138,13 @@ impl Sheet {
         }
         for warning in &self.warnings {
             text.push_str(&format!("<li>{}.</li>", escape(warning)));
+        }
+        for grade in &self.grades {
+            text.push_str(&format!(
+                "<li>{}.<pre>{}</pre></li>",
+                escape(&grade.sentence),
+                escape(grade.structure.trim_end())
+            ));
         }
         text.push_str("</ul></div>\n");
         text

@@ -78,7 +78,7 @@ pub fn sheet_text(sheet: &Sheet) -> String {
             text.push_str(&format!("  {}  in {}\n", target.ratio, target.layers));
         }
     }
-    for table in sheet.strain.tables() {
+    for table in sheet.more_tables() {
         text.push('\n');
         text.push_str(&table.text());
     }
@@ -98,6 +98,15 @@ pub fn sheet_text(sheet: &Sheet) -> String {
         text.push_str("\nWarnings\n");
         for warning in &sheet.warnings {
             text.push_str(&format!("- {warning}.\n"));
+        }
+    }
+    if !sheet.grades.is_empty() {
+        text.push_str("\nGraded layers as digital alloys, each written as it takes the layer's place in the file\n");
+        for grade in &sheet.grades {
+            text.push_str(&format!("- {}.\n", grade.sentence));
+            for line in grade.structure.lines() {
+                text.push_str(&format!("      {line}\n"));
+            }
         }
     }
     text.push_str("\nFor the grower\n");

@@ -4,8 +4,8 @@ use super::table::{given, significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
 use crate::models::model_name;
-use crate::structure::{BandName, Stack, Structure, Target, Window};
-use crate::tolerance::{Distributed, Outcome, Ring, Sampled, Share};
+use crate::structure::{BandName, Level, Stack, Structure, Target, Window};
+use crate::tolerance::{Distributed, Outcome, Ring, Share, Statistics};
 use serde::Serialize;
 
 /// What the numbers mean; printed with them.
@@ -15,6 +15,8 @@ const DEFINITIONS: [&str; 4] = [
     "Flux: thickness and composition of all layers that hold the element move together. Repeats move together.",
     "Shares of wafers carry Wilson's 95 % interval. Doping has no entry: charge is not part of the model.",
 ];
+/// The same with holes.
+const HOLES: &str = "`valence` counts the highest hole levels of each wafer, of either kind; holes are solved apart, excitons left out.";
 /// Contributors that are named in the table.
 const NAMED: usize = 3;
 /// A smaller share of the variance is not named.
@@ -25,6 +27,8 @@ const LEAST_SHARE: f64 = 0.005;
 pub struct Tolerances {
     title: Option<String>,
     model: &'static str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    valence_model: Option<&'static str>,
     #[serde(rename = "temperature_K")]
     temperature_k: f64,
     #[serde(rename = "field_kV_cm")]
@@ -41,10 +45,13 @@ pub struct Tolerances {
     windows: Vec<WindowRow>,
     all_windows: Option<ShareRow>,
     radial: Vec<RadialRow>,
-    definitions: [&'static str; 4],
+    definitions: Vec<&'static str>,
     /// The pairs of levels that the text is about; the other forms hold all.
     #[serde(skip)]
-    shown: Vec<(usize, usize)>,
+    shown: Vec<(Level, Level)>,
+    /// Wafers in which the walls alone hold a level.
+    #[serde(skip)]
+    unbound: Vec<(Level, usize)>,
 }
 
 #[derive(Debug, Serialize)]
@@ -53,7 +60,7 @@ struct TransitionRow {
     from: String,
     to: String,
     energy_meV: f64,
-    wavelength_um: f64,
+    wavelength_um: Option<f64>,
     /// The same with abrupt interfaces.
     abrupt_energy_meV: f64,
 }
@@ -66,7 +73,7 @@ struct SensitivityRow {
     from: String,
     to: String,
     energy_meV: f64,
-    wavelength_um: f64,
+    wavelength_um: Option<f64>,
 }
 
 #[derive(Debug, Serialize)]
@@ -80,13 +87,13 @@ struct SpreadRow {
     energy_5_percent_meV: f64,
     energy_50_percent_meV: f64,
     energy_95_percent_meV: f64,
-    mean_wavelength_um: f64,
-    deviation_wavelength_um: f64,
-    linear_deviation_wavelength_um: f64,
-    wavelength_5_percent_um: f64,
-    wavelength_50_percent_um: f64,
-    wavelength_95_percent_um: f64,
-    /// Wafers in which the upper level lies above the lower outer barrier edge.
+    mean_wavelength_um: Option<f64>,
+    deviation_wavelength_um: Option<f64>,
+    linear_deviation_wavelength_um: Option<f64>,
+    wavelength_5_percent_um: Option<f64>,
+    wavelength_50_percent_um: Option<f64>,
+    wavelength_95_percent_um: Option<f64>,
+    /// Wafers in which the walls alone hold one of the two levels.
     unbound: usize,
 }
 
@@ -144,33 +151,35 @@ struct RadialRow {
     from: String,
     to: String,
     energy_meV: f64,
-    wavelength_um: f64,
+    wavelength_um: Option<f64>,
     /// Whether it lies in the file's window, if there is one for this transition.
     inside: Option<bool>,
 }
 
-fn name(level: usize) -> String {
-    format!("conduction {}", level + 1)
+/// The vacuum wavelength; none where the lower level lies above the upper one, as holes do in a broken gap.
+fn wavelength_um(energy_ev: f64) -> Option<f64> {
+    (energy_ev > 0.0).then(|| HC_EV_UM / energy_ev)
 }
 
-fn number(name: &str) -> &str {
-    name.trim_start_matches("conduction ")
+/// A level's name after another one of the same band: its number.
+fn after<'n>(from: &str, to: &'n str) -> &'n str {
+    match (from.split_once(' '), to.split_once(' ')) {
+        (Some((one, _)), Some((other, number))) if one == other => number,
+        _ => to,
+    }
 }
 
 impl Tolerances {
     pub fn new(structure: &Structure, stack: &Stack, outcome: &Outcome) -> Tolerances {
-        let levels = outcome.levels_ev.len();
+        let name = |level: usize| outcome.levels[level].to_string();
         let energy_ev = |levels: &[f64], from: usize, to: usize| levels[to] - levels[from];
-        let abrupt_ev: Vec<f64> = outcome.abrupt.pairs.iter().map(|p| p.value).collect();
-        let pairs: Vec<(usize, usize)> = (0..levels)
-            .flat_map(|from| (from + 1..levels).map(move |to| (from, to)))
-            .collect();
+        let pairs = &outcome.pairs;
         let windows = structure
             .tolerance
             .as_ref()
             .map_or(&[][..], |tolerance| &tolerance.windows);
         let mut sensitivities = Vec::new();
-        for &(from, to) in &pairs {
+        for &(from, to) in pairs {
             let ev = energy_ev(&outcome.levels_ev, from, to);
             for found in &outcome.sensitivities {
                 let shift_ev = energy_ev(&found.level_shifts_ev, from, to);
@@ -180,7 +189,7 @@ impl Tolerances {
                     from: name(from),
                     to: name(to),
                     energy_meV: 1e3 * shift_ev,
-                    wavelength_um: -HC_EV_UM / ev * shift_ev / ev,
+                    wavelength_um: wavelength_um(ev).map(|um| -um * shift_ev / ev),
                 });
             }
         }
@@ -188,6 +197,7 @@ impl Tolerances {
         Tolerances {
             title: structure.title.clone(),
             model: model_name(structure.conduction.model),
+            valence_model: structure.valence.map(|_| "decoupled"),
             temperature_k: structure.temperature_k,
             field_kv_cm: 1e4 * stack.field_v_per_nm,
             grading_nm: structure
@@ -203,8 +213,8 @@ impl Tolerances {
                         from: name(from),
                         to: name(to),
                         energy_meV: 1e3 * ev,
-                        wavelength_um: HC_EV_UM / ev,
-                        abrupt_energy_meV: 1e3 * energy_ev(&abrupt_ev, from, to),
+                        wavelength_um: wavelength_um(ev),
+                        abrupt_energy_meV: 1e3 * energy_ev(&outcome.abrupt_levels_ev, from, to),
                     }
                 })
                 .collect(),
@@ -215,7 +225,7 @@ impl Tolerances {
             distributions: sampled.map_or(Vec::new(), |sampled| {
                 let row = |t: &Distributed| {
                     let ev = energy_ev(&outcome.levels_ev, t.from, t.to);
-                    distribution_row(t, ev, sampled)
+                    distribution_row(t, ev, [name(t.from), name(t.to)])
                 };
                 sampled.transitions.iter().map(row).collect()
             }),
@@ -224,8 +234,10 @@ impl Tolerances {
                     .windows
                     .iter()
                     .map(|w| {
-                        let (from, to) = (w.window.from.index - 1, w.window.to.index - 1);
-                        window_row(&w.window, energy_ev(&outcome.levels_ev, from, to), w.share)
+                        let place = |level| outcome.levels.iter().position(|own| *own == level);
+                        let ends = place(w.window.from).zip(place(w.window.to));
+                        let design = ends.map(|(from, to)| energy_ev(&outcome.levels_ev, from, to));
+                        window_row(&w.window, design, w.share)
                     })
                     .collect()
             }),
@@ -240,17 +252,24 @@ impl Tolerances {
                 .rings
                 .iter()
                 .flat_map(|ring| pairs.iter().map(move |&pair| (ring, pair)))
-                .map(|(ring, pair)| radial_row(ring, pair, windows))
+                .map(|(ring, pair)| radial_row(ring, pair, &outcome.levels, windows))
                 .collect(),
-            definitions: DEFINITIONS,
-            shown: shown(structure, windows, pairs),
+            definitions: DEFINITIONS
+                .into_iter()
+                .chain(structure.valence.map(|_| HOLES))
+                .collect(),
+            shown: shown(structure, windows, outcome),
+            unbound: sampled.map_or(Vec::new(), |s| {
+                let counts = s.unbound.iter().copied();
+                outcome.levels.iter().copied().zip(counts).collect()
+            }),
         }
     }
 
     fn is_shown(&self, from: &str, to: &str) -> bool {
         self.shown
             .iter()
-            .any(|&(a, b)| name(a) == from && name(b) == to)
+            .any(|(a, b)| a.to_string() == from && b.to_string() == to)
     }
 
     fn shifts(&self) -> String {
@@ -268,7 +287,8 @@ impl Tolerances {
                         s.quantity.clone(),
                         s.step.to_owned(),
                         signed(s.energy_meV, s.energy_meV),
-                        signed(s.wavelength_um, s.energy_meV),
+                        s.wavelength_um
+                            .map_or("-".to_owned(), |um| signed(um, s.energy_meV)),
                     ]
                 })
                 .collect();
@@ -277,11 +297,14 @@ impl Tolerances {
                 None => String::new(),
             };
             text += &format!(
-                "Shift of {} to {} ({:.2} meV, {} µm{abrupt})\n{}\n",
+                "Shift of {} to {} ({:.2} meV, {}{abrupt})\n{}\n",
                 row.from,
-                number(&row.to),
+                after(&row.from, &row.to),
                 row.energy_meV,
-                significant(row.wavelength_um, 4),
+                match row.wavelength_um {
+                    Some(um) => significant(um, digits(&row.from, &row.to)) + " µm",
+                    None => "no light".to_owned(),
+                },
                 table(&["with", "by", "meV", "µm"], &[0, 1], rows),
             );
         }
@@ -297,16 +320,26 @@ impl Tolerances {
                 .iter()
                 .filter(|d| self.is_shown(&d.spread.from, &d.spread.to))
         };
+        // With one band only its levels need no name.
+        let electrons = |name: &str| name.trim_start_matches("conduction ").to_owned();
+        let level = |name: &str| match self.valence_model {
+            Some(_) => name.to_owned(),
+            None => electrons(name),
+        };
+        let left: &[usize] = match self.valence_model {
+            Some(_) => &[0, 1],
+            None => &[],
+        };
         let energies = table(
             &[
                 "from", "to", "mean meV", "spread", "linear", "5 %", "50 %", "95 %",
             ],
-            &[],
+            left,
             shown()
                 .map(|d| {
                     vec![
-                        number(&d.spread.from).to_owned(),
-                        number(&d.spread.to).to_owned(),
+                        level(&d.spread.from),
+                        level(&d.spread.to),
                         format!("{:.2}", d.spread.mean_energy_meV),
                         significant(d.spread.deviation_energy_meV, 3),
                         significant(d.spread.linear_deviation_energy_meV, 3),
@@ -321,18 +354,23 @@ impl Tolerances {
             &[
                 "from", "to", "mean µm", "spread", "linear", "5 %", "50 %", "95 %",
             ],
-            &[],
+            left,
             shown()
                 .map(|d| {
+                    let s = &d.spread;
+                    let length = |um: Option<f64>, digits: usize| {
+                        um.map_or("-".to_owned(), |um| significant(um, digits))
+                    };
+                    let fine = digits(&s.from, &s.to);
                     vec![
-                        number(&d.spread.from).to_owned(),
-                        number(&d.spread.to).to_owned(),
-                        significant(d.spread.mean_wavelength_um, 4),
-                        significant(d.spread.deviation_wavelength_um, 3),
-                        significant(d.spread.linear_deviation_wavelength_um, 3),
-                        significant(d.spread.wavelength_5_percent_um, 4),
-                        significant(d.spread.wavelength_50_percent_um, 4),
-                        significant(d.spread.wavelength_95_percent_um, 4),
+                        level(&s.from),
+                        level(&s.to),
+                        length(s.mean_wavelength_um, fine),
+                        length(s.deviation_wavelength_um, 3),
+                        length(s.linear_deviation_wavelength_um, 3),
+                        length(s.wavelength_5_percent_um, fine),
+                        length(s.wavelength_50_percent_um, fine),
+                        length(s.wavelength_95_percent_um, fine),
                     ]
                 })
                 .collect(),
@@ -349,27 +387,33 @@ impl Tolerances {
             text += &format!(
                 "{} to {} varies by {}.\n",
                 d.spread.from,
-                number(&d.spread.to),
+                after(&d.spread.from, &d.spread.to),
                 named.join(", ")
             );
         }
-        let mut told: Vec<&str> = Vec::new();
-        for d in shown().filter(|d| d.spread.unbound > 0) {
-            if told.contains(&d.spread.to.as_str()) {
+        for (level, wafers) in self.unbound.iter().filter(|(_, wafers)| *wafers > 0) {
+            let told = |(from, to): &(Level, Level)| match (from.band, to.band) {
+                // Of two levels of the band the upper one is the looser.
+                (BandName::Conduction, BandName::Conduction) => to == level,
+                _ => from == level || to == level,
+            };
+            if !self.shown.iter().any(told) {
                 continue;
             }
-            told.push(&d.spread.to);
             text += &format!(
-                "In {} of the wafers {} lies above the lower outer barrier edge: only the walls hold it.\n",
-                percent(d.spread.unbound as f64 / samples as f64, 1),
-                d.spread.to
+                "In {} of the wafers {level} lies {} outer barrier edge: only the walls hold it.\n",
+                percent(*wafers as f64 / samples as f64, 1),
+                match level.band {
+                    BandName::Conduction => "above the lower",
+                    _ => "below the higher",
+                }
             );
         }
         for w in &self.windows {
             text += &format!(
                 "{} to {} from {} to {} {}: {}.\n",
                 w.from,
-                number(&w.to),
+                after(&w.from, &w.to),
                 bound(w.low),
                 bound(w.high),
                 w.unit,
@@ -405,10 +449,16 @@ impl Tolerances {
                 vec![
                     format!("{:.1}", r.radius_mm),
                     format!("{:.2}", 1e2 * r.thickness),
-                    number(&r.from).to_owned(),
-                    number(&r.to).to_owned(),
+                    match self.valence_model {
+                        Some(_) => r.from.clone(),
+                        None => r.from.trim_start_matches("conduction ").to_owned(),
+                    },
+                    after(&r.from, &r.to).to_owned(),
                     format!("{:.2}", r.energy_meV),
-                    significant(r.wavelength_um, 4),
+                    match r.wavelength_um {
+                        Some(um) => significant(um, digits(&r.from, &r.to)),
+                        None => "-".to_owned(),
+                    },
                     match r.inside {
                         Some(true) => "inside".to_owned(),
                         Some(false) => "outside".to_owned(),
@@ -434,52 +484,72 @@ impl Tolerances {
     }
 }
 
-/// The transitions that windows speak of, or else the aims of tuning, or else all.
-fn shown(
-    structure: &Structure,
-    windows: &[Window],
-    all: Vec<(usize, usize)>,
-) -> Vec<(usize, usize)> {
-    let of_windows = windows.iter().map(|w| (w.from.index - 1, w.to.index - 1));
-    let mut named: Vec<(usize, usize)> = of_windows.collect();
+/// Digits of a wavelength: between bands one more, as everywhere.
+fn digits(from: &str, to: &str) -> usize {
+    match after(from, to) == to {
+        true => 5,
+        false => 4,
+    }
+}
+
+/// The transitions that windows speak of, or else the aims of tuning, or else those inside the conduction band and, with
+/// holes, that of the gap.
+fn shown(structure: &Structure, windows: &[Window], outcome: &Outcome) -> Vec<(Level, Level)> {
+    let all = outcome
+        .pairs
+        .iter()
+        .map(|&(from, to)| (outcome.levels[from], outcome.levels[to]));
+    let of_windows = windows.iter().map(|w| (w.from, w.to));
+    let mut named: Vec<(Level, Level)> = of_windows.collect();
     if named.is_empty() {
         let aims = structure.tune.iter().flat_map(|tune| &tune.aims);
         named = aims
             .filter(|aim| matches!(aim.target, Target::EnergyEv(_) | Target::WavelengthUm(_)))
-            .filter(|aim| {
-                [aim.from, aim.to]
-                    .iter()
-                    .all(|l| l.band == BandName::Conduction)
-            })
-            .map(|aim| {
-                let (a, b) = (aim.from.index - 1, aim.to.index - 1);
-                (a.min(b), a.max(b))
-            })
+            .map(|aim| (aim.from, aim.to))
             .collect();
     }
-    named.retain(|pair| all.contains(pair));
-    if named.is_empty() { all } else { named }
+    // An aim by character may go down.
+    let is_named =
+        |pair: &(Level, Level)| named.contains(pair) || named.contains(&(pair.1, pair.0));
+    let found: Vec<(Level, Level)> = all.clone().filter(is_named).collect();
+    if !found.is_empty() {
+        return found;
+    }
+    let gap = all
+        .clone()
+        .filter(|(from, to)| from.band != to.band && to.index == 1)
+        .min_by(|a, b| {
+            let ev = |level: &Level| {
+                let place = outcome.levels.iter().position(|own| own == level);
+                place.map_or(f64::NEG_INFINITY, |place| outcome.levels_ev[place])
+            };
+            ev(&b.0).total_cmp(&ev(&a.0))
+        });
+    all.filter(|(from, _)| from.band == BandName::Conduction)
+        .chain(gap)
+        .collect()
 }
 
-fn distribution_row(t: &Distributed, design_ev: f64, sampled: &Sampled) -> DistributionRow {
+fn distribution_row(t: &Distributed, design_ev: f64, [from, to]: [String; 2]) -> DistributionRow {
     let [low, middle, high] = t.energy_ev.quantiles.map(|ev| 1e3 * ev);
-    let [short, centre, long] = t.wavelength_um.quantiles;
+    let um = |of: fn(&Statistics) -> f64| t.wavelength_um.as_ref().map(of);
     let spread = SpreadRow {
-        from: name(t.from),
-        to: name(t.to),
+        from,
+        to,
         mean_energy_meV: 1e3 * t.energy_ev.mean,
         deviation_energy_meV: 1e3 * t.energy_ev.deviation,
         linear_deviation_energy_meV: 1e3 * t.linear_deviation_ev,
         energy_5_percent_meV: low,
         energy_50_percent_meV: middle,
         energy_95_percent_meV: high,
-        mean_wavelength_um: t.wavelength_um.mean,
-        deviation_wavelength_um: t.wavelength_um.deviation,
-        linear_deviation_wavelength_um: HC_EV_UM / design_ev * t.linear_deviation_ev / design_ev,
-        wavelength_5_percent_um: short,
-        wavelength_50_percent_um: centre,
-        wavelength_95_percent_um: long,
-        unbound: sampled.unbound.get(t.to).copied().unwrap_or(0),
+        mean_wavelength_um: um(|s| s.mean),
+        deviation_wavelength_um: um(|s| s.deviation),
+        linear_deviation_wavelength_um: wavelength_um(design_ev)
+            .map(|um| um * t.linear_deviation_ev / design_ev),
+        wavelength_5_percent_um: um(|s| s.quantiles[0]),
+        wavelength_50_percent_um: um(|s| s.quantiles[1]),
+        wavelength_95_percent_um: um(|s| s.quantiles[2]),
+        unbound: t.unbound,
     };
     DistributionRow {
         spread,
@@ -501,7 +571,7 @@ fn distribution_row(t: &Distributed, design_ev: f64, sampled: &Sampled) -> Distr
     }
 }
 
-fn window_row(window: &Window, design_ev: f64, share: Share) -> WindowRow {
+fn window_row(window: &Window, design_ev: Option<f64>, share: Share) -> WindowRow {
     let [low_ev, high_ev] = window.energies_ev;
     let (unit, low, high) = if window.as_wavelength {
         ("µm", HC_EV_UM / high_ev, HC_EV_UM / low_ev)
@@ -509,12 +579,12 @@ fn window_row(window: &Window, design_ev: f64, share: Share) -> WindowRow {
         ("meV", 1e3 * low_ev, 1e3 * high_ev)
     };
     WindowRow {
-        from: name(window.from.index - 1),
-        to: name(window.to.index - 1),
+        from: window.from.to_string(),
+        to: window.to.to_string(),
         unit,
         low,
         high,
-        design_inside: (low_ev..=high_ev).contains(&design_ev),
+        design_inside: design_ev.is_some_and(|ev| (low_ev..=high_ev).contains(&ev)),
         inside: share.inside,
         of: share.of,
         share: share.share,
@@ -523,18 +593,23 @@ fn window_row(window: &Window, design_ev: f64, share: Share) -> WindowRow {
     }
 }
 
-fn radial_row(ring: &Ring, (from, to): (usize, usize), windows: &[Window]) -> RadialRow {
+fn radial_row(
+    ring: &Ring,
+    (from, to): (usize, usize),
+    levels: &[Level],
+    windows: &[Window],
+) -> RadialRow {
     let ev = ring.levels_ev[to] - ring.levels_ev[from];
     let window = windows
         .iter()
-        .find(|w| (w.from.index - 1, w.to.index - 1) == (from, to));
+        .find(|w| (w.from, w.to) == (levels[from], levels[to]));
     RadialRow {
         radius_mm: ring.radius_mm,
         thickness: 1.0 - ring.drop,
-        from: name(from),
-        to: name(to),
+        from: levels[from].to_string(),
+        to: levels[to].to_string(),
         energy_meV: 1e3 * ev,
-        wavelength_um: HC_EV_UM / ev,
+        wavelength_um: wavelength_um(ev),
         inside: window.map(|w| (w.energies_ev[0]..=w.energies_ev[1]).contains(&ev)),
     }
 }
@@ -587,10 +662,14 @@ impl Report for Tolerances {
             None => String::new(),
         };
         format!(
-            "{title}{} K, field {} kV/cm, {} mass{interfaces}\n\n{}{}{}{}\n",
+            "{title}{} K, field {} kV/cm, {} mass{}{interfaces}\n\n{}{}{}{}\n",
             given(self.temperature_k, 4),
             given(self.field_kv_cm, 4),
             self.model,
+            match self.valence_model {
+                Some(model) => format!(", {model} holes"),
+                None => String::new(),
+            },
             self.shifts(),
             self.wafers(),
             self.across(),

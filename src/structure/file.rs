@@ -176,6 +176,8 @@ pub enum StrainBound {
     },
     /// A layer, or each one, is no thicker than its critical thickness.
     BelowCritical { entry: Option<usize> },
+    /// All strained layers together, as one layer with their mean misfit, stay below its critical thickness.
+    StackBelowCritical,
 }
 
 /// One aim of tuning: a property of the transition between two levels.

@@ -157,7 +157,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     }
     let tolerance = fields
         .get("tolerance")
-        .and_then(|node| read_tolerance::tolerance(checker, node));
+        .and_then(|node| read_tolerance::tolerance(checker, node, solved));
     let sweep = fields
         .get("sweep")
         .and_then(|node| read_sweep::sweep(checker, node, entries, solved));

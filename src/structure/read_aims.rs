@@ -98,7 +98,7 @@ fn aim(checker: &mut Checker, item: &Node, solved: &[BandName]) -> Option<Aim> {
     let (mut from, mut to) = (from?, to.filter(|_| ends_differ)?);
     // Emission is written from the upper level to the lower; counted by energy, it is the same transition. By character,
     // the two may have changed places, and then the order says which of them is to be the upper one.
-    if !lower_first(from, to) && (follow == Follow::Order || from.band != to.band) {
+    if !is_lower_first(from, to) && (follow == Follow::Order || from.band != to.band) {
         std::mem::swap(&mut from, &mut to);
     }
     suits_bands(checker, &fields, [from, to], target, follow)?;
@@ -113,8 +113,8 @@ fn aim(checker: &mut Checker, item: &Node, solved: &[BandName]) -> Option<Aim> {
     })
 }
 
-/// Whether the first of two levels is the lower where levels are counted by energy.
-pub(super) fn lower_first(from: Level, to: Level) -> bool {
+/// Whether the first of two levels has the lower energy.
+pub(super) fn is_lower_first(from: Level, to: Level) -> bool {
     match (from.band, to.band) {
         (BandName::Conduction, BandName::Conduction) => from.index < to.index,
         (one, other) if one == other => from.index > to.index,

@@ -36,10 +36,10 @@ fn bound(
     let fields = checker.fields(
         item,
         what,
-        &["strain", "from", "to", "within", "thickness", "layer"],
+        &["strain", "from", "to", "within", "thickness", "layer", "of"],
     )?;
     let example = "one of `{strain: balanced, from: first well, to: last barrier, within: 0.02 %}`, \
-                   `{thickness: below critical, layer: well}`";
+                   `{thickness: below critical, layer: well}`, `{thickness: below critical, of: stack}`";
     let wrong = |message: &str| {
         Diagnostic::error(message)
             .at(fields.head.clone())
@@ -47,7 +47,7 @@ fn bound(
     };
     let has = |keys: &[&str]| keys.iter().any(|key| fields.has(key));
     match (fields.has("strain"), fields.has("thickness")) {
-        (true, false) if !fields.has("layer") => {
+        (true, false) if !has(&["layer", "of"]) => {
             let word = fields
                 .get("strain")
                 .and_then(|node| checker.word(node, &["balanced"]));
@@ -84,12 +84,27 @@ fn bound(
             let word = fields
                 .get("thickness")
                 .and_then(|node| checker.word(node, &["below critical"]));
+            let whole = match fields.get("of") {
+                Some(node) => {
+                    checker.word(node, &["stack"])?;
+                    true
+                }
+                None => false,
+            };
+            if whole && fields.has("layer") {
+                checker.report(wrong("`layer` is one layer and `of: stack` is all of them"));
+                return None;
+            }
             let entry = match fields.get("layer") {
                 Some(node) => Some(layer(checker, node, entries)?),
                 None => None,
             };
             word?;
-            Some(StrainBound::BelowCritical { entry })
+            Some(if whole {
+                StrainBound::StackBelowCritical
+            } else {
+                StrainBound::BelowCritical { entry }
+            })
         }
         _ => {
             checker.report(wrong(

@@ -4,7 +4,7 @@ use super::document::Node;
 use super::fields::{Checker, Fields, Limits, between};
 use super::file::{BandName, LayerEntry, Level, Varied};
 use super::read::TEMPERATURE_LIMITS;
-use super::read_aims::{level, lower_first};
+use super::read_aims::{is_lower_first, level};
 use super::read_layers::DOPING_LIMITS;
 use super::read_tune;
 use super::sweeps::{Doping, Steps, Sweep, Swept};
@@ -254,7 +254,7 @@ fn transition(checker: &mut Checker, item: &Node, solved: &[BandName]) -> Option
         );
         return None;
     }
-    Some(if lower_first(from, to) {
+    Some(if is_lower_first(from, to) {
         (from, to)
     } else {
         (to, from)

@@ -2,8 +2,8 @@
 
 use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Fields, Limits, above, between, one_of};
-use super::file::{BandName, Level, Spanned, Structure};
-use super::read_aims::{ENERGY_LIMITS, WAVELENGTH_LIMITS, level};
+use super::file::{BandName, Spanned, Structure};
+use super::read_aims::{ENERGY_LIMITS, WAVELENGTH_LIMITS, is_lower_first, level};
 use super::read_tune::element;
 use super::spreads::{Grading, Radial, Tolerance, Window};
 use super::stack::{Stack, no_monolayer};
@@ -46,8 +46,12 @@ const TEMPERATURE_LIMITS: Limits = above(
 const DROP_LIMITS: Limits = between(-0.5, 0.5, "from -50 % to 50 %");
 const RADIUS_LIMITS: Limits = above(0.0, 1e9, "more than 0 mm, at most 1 m");
 
-/// Reads `tolerance`.
-pub(super) fn tolerance(checker: &mut Checker, node: &Node) -> Option<Tolerance> {
+/// Reads `tolerance`; `solved` are the bands that levels may belong to.
+pub(super) fn tolerance(
+    checker: &mut Checker,
+    node: &Node,
+    solved: &[BandName],
+) -> Option<Tolerance> {
     const KEYS: [&str; 11] = [
         "rate",
         "flux",
@@ -93,7 +97,9 @@ pub(super) fn tolerance(checker: &mut Checker, node: &Node) -> Option<Tolerance>
         Some(node) => checker.count(node, u32::MAX).map(u64::from),
         None => Some(DEFAULT_SEED),
     };
-    let windows = fields.get("window").map(|node| windows(checker, node));
+    let windows = fields
+        .get("window")
+        .map(|node| windows(checker, node, solved));
     let radial = fields.get("radial").map(|node| radial(checker, node));
     let tolerance = Tolerance {
         rate: settled(rate)?,
@@ -229,9 +235,9 @@ fn grading(checker: &mut Checker, node: &Node) -> Option<Grading> {
 }
 
 /// One window, or a list of them.
-fn windows(checker: &mut Checker, node: &Node) -> Option<Vec<Window>> {
+fn windows(checker: &mut Checker, node: &Node, solved: &[BandName]) -> Option<Vec<Window>> {
     let Value::List(items) = &node.value else {
-        return Some(vec![window(checker, node)?]);
+        return Some(vec![window(checker, node, solved)?]);
     };
     if items.is_empty() || items.len() > MAX_WINDOWS {
         checker.report(
@@ -244,7 +250,7 @@ fn windows(checker: &mut Checker, node: &Node) -> Option<Vec<Window>> {
     let mut found: Vec<(usize, Window)> = Vec::new();
     let mut complete = true;
     for item in items {
-        let Some(next) = window(checker, item) else {
+        let Some(next) = window(checker, item, solved) else {
             complete = false;
             continue;
         };
@@ -265,16 +271,16 @@ fn windows(checker: &mut Checker, node: &Node) -> Option<Vec<Window>> {
 }
 
 /// `{from: conduction 1, to: conduction 2, wavelength: [8.4 µm, 8.8 µm]}`, or the same with `energy`.
-fn window(checker: &mut Checker, node: &Node) -> Option<Window> {
+fn window(checker: &mut Checker, node: &Node, solved: &[BandName]) -> Option<Window> {
     let fields = checker.fields(node, "a window", &["from", "to", "wavelength", "energy"])?;
     checker.missing(&fields, "this window", "from", "conduction 1");
     checker.missing(&fields, "this window", "to", "conduction 2");
     let from = fields
         .get("from")
-        .and_then(|node| conduction_level(checker, node));
+        .and_then(|node| level(checker, node, solved));
     let to = fields
         .get("to")
-        .and_then(|node| conduction_level(checker, node));
+        .and_then(|node| level(checker, node, solved));
     let bounds = window_bounds(checker, &fields);
     let (from, to) = (from?, to?);
     if from == to {
@@ -287,7 +293,7 @@ fn window(checker: &mut Checker, node: &Node) -> Option<Window> {
         return None;
     }
     let (energies_ev, as_wavelength) = bounds?;
-    let (from, to) = if from.index < to.index {
+    let (from, to) = if is_lower_first(from, to) {
         (from, to)
     } else {
         (to, from)
@@ -298,20 +304,6 @@ fn window(checker: &mut Checker, node: &Node) -> Option<Window> {
         energies_ev,
         as_wavelength,
     })
-}
-
-/// Wafers are sampled for the levels of the conduction band.
-fn conduction_level(checker: &mut Checker, node: &Node) -> Option<Level> {
-    let level = level(checker, node, &BandName::ALL)?;
-    if level.band != BandName::Conduction {
-        checker.report(
-            Diagnostic::error("a window on hole levels is not available yet")
-                .at(node.span.clone())
-                .expected("a level such as `conduction 2`"),
-        );
-        return None;
-    }
-    Some(level)
 }
 
 /// The bounds as energies, and whether they were wavelengths.

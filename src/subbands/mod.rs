@@ -19,7 +19,7 @@ pub use envelope::{amplitudes, layer_envelopes};
 pub use nearby::{Nearby, lower_outer_edge_ev};
 pub use state::{Hold, State, in_plane_mass_m0};
 
-use crate::models::{Band, BandOperator};
+use crate::models::{Band, BandOperator, InPlane};
 use crate::numerics::eigenpairs::{self, Eigenpair};
 use crate::numerics::mesh::Mesh;
 use crate::numerics::pencil::Pencil;
@@ -59,8 +59,8 @@ pub struct Subbands {
     pub pairs: Vec<Eigenpair>,
     /// Estimated discretisation error of each energy, eV.
     pub errors_ev: Vec<f64>,
-    /// ħ²/2m∥ at the nodes of each element where it is not the pencil's A: in hole bands.
-    in_plane_stiffness: Option<Vec<f64>>,
+    /// ħ²/2m∥ at the nodes of each element, where it is not the pencil's A.
+    in_plane: Option<Vec<Option<InPlane>>>,
 }
 
 /// Solves for the `count` lowest states; fewer come back only when the stack is too small a box to hold them on the
@@ -102,30 +102,29 @@ pub fn on_mesh(operator: &BandOperator, mesh: Mesh, count: usize) -> Subbands {
     let errors_ev = eigenpairs::improvements(&pencil, &pairs, &finer);
     Subbands {
         band: operator.band(),
-        in_plane_stiffness: in_plane_stiffness(operator, &pencil.mesh),
+        in_plane: in_plane(operator, &pencil.mesh),
         pencil,
         pairs,
         errors_ev: errors_ev.into_iter().map(f64::abs).collect(),
     }
 }
 
-fn in_plane_stiffness(operator: &BandOperator, mesh: &Mesh) -> Option<Vec<f64>> {
+/// Where no node has a mass in the plane of its own, none is kept.
+fn in_plane(operator: &BandOperator, mesh: &Mesh) -> Option<Vec<Option<InPlane>>> {
     let mut list = Vec::new();
-    if operator.band().sign() > 0.0 {
-        return None;
-    }
     for element in &mesh.elements {
         let uniform = operator.stack().is_uniform(element.segment);
-        let first = operator.in_plane_stiffness(element.segment, 0.0)?;
+        let first = operator.in_plane(element.segment, 0.0);
         for q in 0..=mesh.order() {
-            list.push(if uniform {
-                first
-            } else {
-                operator.in_plane_stiffness(element.segment, mesh.fraction(element, q))?
-            });
+            let here = match uniform {
+                true => first.clone(),
+                false => operator.in_plane(element.segment, mesh.fraction(element, q)),
+            };
+            let raised_ev = operator.stack().field_v_per_nm * mesh.position(element, q);
+            list.push(here.map(|in_plane| in_plane.raised(raised_ev)));
         }
     }
-    Some(list)
+    list.iter().any(Option::is_some).then_some(list)
 }
 
 fn pencil_on(operator: &BandOperator, mesh: Mesh) -> Pencil {

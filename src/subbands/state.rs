@@ -102,11 +102,13 @@ pub fn in_plane_mass_m0(subbands: &Subbands, index: usize) -> f64 {
     let pair = &pairs[index];
     let kinetic = integrate(pencil, |e, q| {
         let value = pencil.mesh.local(e, &pair.vector)[q];
-        let along = match &subbands.in_plane_stiffness {
-            Some(in_plane) => in_plane[e * (pencil.mesh.order() + 1) + q],
-            None => pencil.at(e)[q].a(pair.value),
-        };
-        along * value * value
+        let own = subbands.in_plane.as_ref();
+        let own = own.and_then(|nodes| nodes[e * (pencil.mesh.order() + 1) + q].as_ref());
+        let stiffness = own.map_or_else(
+            || pencil.at(e)[q].a(pair.value),
+            |in_plane| in_plane.at(pair.value),
+        );
+        stiffness * value * value
     });
     HBAR2_OVER_2M0 / kinetic
 }

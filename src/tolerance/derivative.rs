@@ -9,7 +9,7 @@
 use crate::models::{BandOperator, unchanging};
 use crate::numerics::pencil::Coefficient;
 use crate::numerics::sensitivity::{Change, value_slope};
-use crate::structure::{Cause, ConductionModel, Design};
+use crate::structure::{Cause, Design};
 use crate::subbands::Nearby;
 
 /// Offsets in steps with their weights: the first derivative to fourth order (Abramowitz & Stegun 1964, table 25.2).
@@ -45,15 +45,10 @@ fn step(design: &Design, cause: &Cause) -> f64 {
     }
 }
 
-/// The slope of each solved level in eV per unit of the cause (a part, nm, a fraction, V/nm or K).
+/// The slope of each solved level of a band in eV per unit of the cause (a part, nm, a fraction, V/nm or K).
 ///
 /// `None` when the design has no room for the cause: a fraction that is zero, interfaces that are abrupt.
-pub fn level_slopes(
-    design: &Design,
-    model: ConductionModel,
-    nearby: &Nearby,
-    cause: &Cause,
-) -> Option<Vec<f64>> {
+pub fn level_slopes(design: &Design, nearby: &Nearby, cause: &Cause) -> Option<Vec<f64>> {
     let step = step(design, cause);
     if step.is_nan() || step <= 0.0 {
         return None;
@@ -70,7 +65,7 @@ pub fn level_slopes(
         design
             .grow(&mut wafer, std::slice::from_ref(cause), &[offset * step])
             .ok()?;
-        let operator = BandOperator::conduction(&wafer, model).ok()?;
+        let operator = BandOperator::new(&wafer, solved.band).ok()?;
         let pencil = nearby.pencil(&operator);
         let weight = weight / step;
         for ((start, length), element) in change.elements.iter_mut().zip(&pencil.mesh.elements) {
@@ -85,7 +80,7 @@ pub fn level_slopes(
         solved
             .pairs
             .iter()
-            .map(|pair| value_slope(&solved.pencil, &change, pair))
+            .map(|pair| solved.band.sign() * value_slope(&solved.pencil, &change, pair))
             .collect(),
     )
 }

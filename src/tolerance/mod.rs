@@ -2,28 +2,36 @@
 //! of wafers will do.
 
 mod derivative;
+mod followed;
 mod radial;
 mod sampling;
 mod sensitivities;
 mod statistics;
 
 pub use derivative::level_slopes;
+pub use followed::Followed;
 pub use radial::Ring;
 pub use sampling::{Distributed, Sampled, Source, Watch, WindowYield, sample, sources};
 pub use sensitivities::{Sensitivity, sensitivities};
 pub use statistics::{Histogram, Share, Statistics, share};
 
-use crate::models::{BandOperator, Unsuitable};
-use crate::structure::{Design, Stack, Structure};
-use crate::subbands::{self, Accuracy, Nearby, Subbands};
+use crate::models::{Band, Unsuitable};
+use crate::structure::{Design, Level, Stack, Structure};
+use crate::subbands::{Accuracy, Bands};
 
 /// Everything about a structure's tolerances.
 #[derive(Clone, Debug)]
 pub struct Outcome {
     /// The file's stack with abrupt interfaces, solved.
-    pub abrupt: Subbands,
-    /// The levels that all below starts from, in eV: those with graded interfaces where the file says so.
+    pub abrupt: Bands,
+    /// The levels that are followed, the conduction band's first.
+    pub levels: Vec<Level>,
+    /// Their energies that all below starts from, in eV: those with graded interfaces where the file says so.
     pub levels_ev: Vec<f64>,
+    /// The same with abrupt interfaces.
+    pub abrupt_levels_ev: Vec<f64>,
+    /// The transitions, as places in the list of levels.
+    pub pairs: Vec<(usize, usize)>,
     pub sensitivities: Vec<Sensitivity>,
     /// `None` when the file states nothing by which wafers differ.
     pub sampled: Option<Sampled>,
@@ -44,10 +52,8 @@ pub enum ToleranceError {
     },
     #[error("graded interfaces leave nothing of a layer")]
     NoLayer,
-    #[error(
-        "a window names conduction {wanted}, but the stack is too small a box for more than {levels} levels"
-    )]
-    NoLevel { wanted: usize, levels: usize },
+    #[error("a window names {wanted}, but the stack is too small a box for so many levels")]
+    NoLevel { wanted: Level },
 }
 
 impl ToleranceError {
@@ -76,56 +82,54 @@ pub fn tolerance(
     accuracy: Accuracy,
     watch: Watch,
 ) -> Result<Outcome, ToleranceError> {
-    let model = structure.conduction.model;
     let stated = structure.tolerance.as_ref();
     let windows = stated.map_or(&[][..], |tolerance| &tolerance.windows);
-    let highest = windows.iter().map(|window| window.to.index).max();
-    let levels = structure.conduction.states.max(highest.unwrap_or(0));
-
-    let operator = BandOperator::conduction(stack, model)
+    let named = followed::named_by(windows);
+    let asked = Band::holding(structure, &named);
+    let abrupt = Bands::solve(stack, &asked, accuracy)
         .map_err(|(layer, reason)| ToleranceError::Unsuitable { layer, reason })?;
-    let abrupt = subbands::solve(&operator, levels, accuracy);
 
     let grading_nm = stated
         .and_then(|tolerance| tolerance.grading.as_ref())
         .map(|grading| grading.length_nm);
     let design = Design::new(stack, grading_nm).map_err(|_| ToleranceError::NoLayer)?;
     let unsuitable = |(layer, reason)| ToleranceError::interface(&design, layer, reason);
-    let solved = match grading_nm {
+    let bands = match grading_nm {
         None => abrupt.clone(),
-        Some(_) => {
-            let operator = BandOperator::conduction(design.stack(), model).map_err(unsuitable)?;
-            subbands::solve(&operator, levels, accuracy)
-        }
+        Some(_) => Bands::solve(design.stack(), &asked, accuracy).map_err(unsuitable)?,
     };
-    if let Some(wanted) = highest.filter(|wanted| *wanted > solved.pairs.len()) {
-        let levels = solved.pairs.len();
-        return Err(ToleranceError::NoLevel { wanted, levels });
+    let levels = followed::names(structure, windows, &bands);
+    if let Some(wanted) = named.into_iter().find(|level| !levels.contains(level)) {
+        return Err(ToleranceError::NoLevel { wanted });
     }
-    let nearby = Nearby::new(&solved);
-    let sensitivities = sensitivities(structure, stack, &design, model, &nearby);
+    let pairs = followed::pairs(structure, windows, &levels);
+    let followed = Followed::new(&bands, levels.clone());
+    let sensitivities = sensitivities(structure, stack, &design, &followed);
+    let fewest = followed::fewest(&asked, &levels);
     let sampled = match stated {
         None => None,
         Some(tolerance) => {
-            let operator = BandOperator::conduction(design.stack(), model).map_err(unsuitable)?;
             let coarse = Accuracy {
                 tolerance_ev: accuracy.tolerance_ev.max(SAMPLING_TOLERANCE_EV),
             };
-            let solved = subbands::solve(&operator, levels, coarse);
-            let nearby = Nearby::new(&solved);
-            let sources = sources(structure, stack, tolerance, &design, &nearby);
+            let bands = Bands::solve(design.stack(), &fewest, coarse).map_err(unsuitable)?;
+            let followed = Followed::new(&bands, levels.clone());
+            let sources = sources(structure, stack, tolerance, &design, &followed);
             let count = (samples.unwrap_or(tolerance.samples), tolerance.seed);
             (!sources.is_empty())
-                .then(|| sample(model, &design, &nearby, &sources, windows, count, watch))
+                .then(|| sample(&design, &followed, &pairs, &sources, windows, count, watch))
         }
     };
     let rings = match stated.and_then(|tolerance| tolerance.radial) {
-        Some(radial) => radial::rings(&design, model, radial, levels, accuracy)?,
+        Some(radial) => radial::rings(&design, &fewest, &levels, radial, accuracy)?,
         None => Vec::new(),
     };
     Ok(Outcome {
-        levels_ev: solved.pairs.iter().map(|pair| pair.value).collect(),
+        abrupt_levels_ev: followed::energies_ev(&abrupt, &levels),
+        levels_ev: followed.energies_ev().to_vec(),
         abrupt,
+        levels,
+        pairs,
         sensitivities,
         sampled,
         rings,

@@ -1,9 +1,10 @@
 //! The levels from the centre of a wafer to its edge.
 
 use super::ToleranceError;
-use crate::models::BandOperator;
-use crate::structure::{Cause, ConductionModel, Design, Radial};
-use crate::subbands::{self, Accuracy};
+use super::followed;
+use crate::models::Band;
+use crate::structure::{Cause, Design, Level, Radial};
+use crate::subbands::{Accuracy, Bands};
 
 /// Rings from the centre to the stated radius, both included.
 const RINGS: usize = 6;
@@ -14,6 +15,7 @@ pub struct Ring {
     pub radius_mm: f64,
     /// The missing part of every thickness.
     pub drop: f64,
+    /// Of the followed levels.
     pub levels_ev: Vec<f64>,
 }
 
@@ -21,9 +23,9 @@ pub struct Ring {
 /// file's widths are those at the centre.
 pub fn rings(
     design: &Design,
-    model: ConductionModel,
+    asked: &[(Band, usize)],
+    names: &[Level],
     radial: Radial,
-    levels: usize,
     accuracy: Accuracy,
 ) -> Result<Vec<Ring>, ToleranceError> {
     let mut rings = Vec::new();
@@ -34,13 +36,12 @@ pub fn rings(
         design
             .grow(&mut wafer, &[Cause::Rate], &[-drop])
             .map_err(|_| ToleranceError::NoLayer)?;
-        let operator = BandOperator::conduction(&wafer, model)
+        let bands = Bands::solve(&wafer, asked, accuracy)
             .map_err(|(layer, reason)| ToleranceError::interface(design, layer, reason))?;
-        let solved = subbands::solve(&operator, levels, accuracy);
         rings.push(Ring {
             radius_mm: part * radial.radius_mm,
             drop,
-            levels_ev: solved.pairs.iter().map(|pair| pair.value).collect(),
+            levels_ev: followed::energies_ev(&bands, names),
         });
     }
     Ok(rings)

@@ -1,13 +1,11 @@
 //! The sampled yield: many wafers, each grown off by its own draws and solved in full, against what the slopes foretell.
 
-use super::derivative::level_slopes;
+use super::followed::Followed;
 use super::statistics::{Histogram, Share, Statistics, histogram, share, statistics};
 use crate::constants::HC_EV_UM;
 use crate::models::BandOperator;
-use crate::structure::{
-    Cause, ConductionModel, Design, NotGrown, Stack, Structure, Tolerance, Window,
-};
-use crate::subbands::{Nearby, lower_outer_edge_ev};
+use crate::structure::{Cause, Design, Level, NotGrown, Stack, Structure, Tolerance, Window};
+use crate::subbands::{Place, lower_outer_edge_ev};
 use crate::units::Dimension;
 use rand_chacha::ChaCha8Rng;
 use rand_chacha::rand_core::SeedableRng;
@@ -31,8 +29,10 @@ pub struct Source {
     pub cause: Cause,
     /// Standard deviation in the cause's unit.
     pub deviation: f64,
-    /// The slope of each level, eV per unit of the cause.
+    /// The slope of each followed level, eV per unit of the cause.
     pub level_slopes_ev: Vec<f64>,
+    /// The slope of each solved level, band by band.
+    band_slopes_ev: Vec<Vec<f64>>,
 }
 
 /// What the sampled wafers say.
@@ -43,7 +43,8 @@ pub struct Sampled {
     /// Wafers that cannot be: a draw took a whole layer away or drove a fraction below zero. They count as outside of
     /// every window and enter no distribution.
     pub not_grown: usize,
-    /// Of each level, the wafers in which it lies above the lower outer barrier edge, held by the walls only.
+    /// Of each followed level, the wafers in which it lies beyond the outer barrier edge that is nearer to the gap, held by
+    /// the walls only.
     pub unbound: Vec<usize>,
     pub transitions: Vec<Distributed>,
     pub windows: Vec<WindowYield>,
@@ -51,13 +52,16 @@ pub struct Sampled {
     pub all_windows: Option<Share>,
 }
 
-/// One transition over all wafers; levels counted from 0.
+/// One transition over all wafers; places in the list of followed levels.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Distributed {
     pub from: usize,
     pub to: usize,
     pub energy_ev: Statistics,
-    pub wavelength_um: Statistics,
+    /// `None` where some wafer has no light to give: its lower level lies above the upper one.
+    pub wavelength_um: Option<Statistics>,
+    /// Wafers in which the walls alone hold one of the two levels.
+    pub unbound: usize,
     /// The standard deviation that the slopes at the design give.
     pub linear_deviation_ev: f64,
     /// What it comes from, with the shares of that variance, the largest first.
@@ -79,7 +83,7 @@ pub fn sources(
     stack: &Stack,
     tolerance: &Tolerance,
     design: &Design,
-    nearby: &Nearby,
+    followed: &Followed,
 ) -> Vec<Source> {
     let mut found: Vec<(String, Cause, f64)> = Vec::new();
     let mut add = |name: String, cause: Cause, deviation: f64| found.push((name, cause, deviation));
@@ -137,13 +141,14 @@ pub fn sources(
     if let Some(deviation) = tolerance.temperature_k {
         add("temperature".to_owned(), Cause::Temperature, deviation);
     }
-    let model = structure.conduction.model;
     found
         .into_par_iter()
         .filter(|(_, _, deviation)| *deviation > 0.0)
         .filter_map(|(name, cause, deviation)| {
+            let band_slopes_ev = followed.band_slopes(design, &cause)?;
             Some(Source {
-                level_slopes_ev: level_slopes(design, model, nearby, &cause)?,
+                level_slopes_ev: followed.named(&band_slopes_ev)?,
+                band_slopes_ev,
                 name,
                 cause,
                 deviation,
@@ -153,17 +158,16 @@ pub fn sources(
 }
 
 /// Grows and solves the wafers. The same seed gives the same wafers, whatever the number of threads: each has a stream
-/// of its own.
+/// of its own. `pairs` are the transitions to follow, as places in the list of followed levels.
 pub fn sample(
-    model: ConductionModel,
     design: &Design,
-    nearby: &Nearby,
+    followed: &Followed,
+    pairs: &[(usize, usize)],
     sources: &[Source],
     windows: &[Window],
     (samples, seed): (usize, u64),
     watch: Watch,
 ) -> Sampled {
-    let levels = nearby.solved().pairs.len();
     let causes: Vec<Cause> = sources.iter().map(|source| source.cause.clone()).collect();
     let done = AtomicUsize::new(0);
     let generator = ChaCha8Rng::seed_from_u64(seed);
@@ -181,7 +185,7 @@ pub fn sample(
                         source.deviation * normal
                     })
                     .collect();
-                let wafer = wafer(model, design, nearby, sources, (&causes, &amounts), stack);
+                let wafer = wafer(design, followed, sources, (&causes, &amounts), stack);
                 let count = done.fetch_add(1, Ordering::Relaxed) + 1;
                 if count.is_multiple_of(WATCHED) {
                     watch(count);
@@ -191,22 +195,23 @@ pub fn sample(
         )
         .collect();
     let grown: Vec<&Wafer> = solved.iter().flatten().collect();
-    let unbound = (0..levels)
-        .map(|level| grown.iter().filter(|w| level >= w.held).count())
+    let unbound = (0..followed.names.len())
+        .map(|level| grown.iter().filter(|w| !w.held[level]).count())
         .collect();
-    let mut transitions = Vec::new();
-    for from in 0..levels {
-        for to in from + 1..levels {
-            transitions.extend(distributed(&grown, sources, from, to));
-        }
-    }
+    let transitions = pairs
+        .iter()
+        .filter_map(|&(from, to)| distributed(&grown, sources, from, to))
+        .collect();
+    let place = |level: Level| followed.names.iter().position(|name| *name == level);
     let inside = |wafer: &Wafer, window: &Window| {
-        let energy_ev = wafer.energy_ev(window.from.index - 1, window.to.index - 1);
+        let (Some(from), Some(to)) = (place(window.from), place(window.to)) else {
+            return false;
+        };
+        let energy_ev = wafer.energy_ev(from, to);
         (window.energies_ev[0]..=window.energies_ev[1]).contains(&energy_ev)
     };
     let windows: Vec<WindowYield> = windows
         .iter()
-        .filter(|window| window.to.index <= levels)
         .map(|window| WindowYield {
             window: window.clone(),
             share: share(grown.iter().filter(|w| inside(w, window)).count(), samples),
@@ -227,11 +232,11 @@ pub fn sample(
     }
 }
 
-/// A solved wafer.
+/// The followed levels of a solved wafer.
 struct Wafer {
     energies_ev: Vec<f64>,
-    /// Levels below the lower outer barrier edge.
-    held: usize,
+    /// Whether barriers hold the level, not the walls alone.
+    held: Vec<bool>,
 }
 
 impl Wafer {
@@ -241,32 +246,36 @@ impl Wafer {
 }
 
 fn wafer(
-    model: ConductionModel,
     design: &Design,
-    nearby: &Nearby,
+    followed: &Followed,
     sources: &[Source],
     (causes, amounts): (&[Cause], &[f64]),
     stack: &mut Stack,
 ) -> Result<Wafer, NotGrown> {
     design.grow(stack, causes, amounts)?;
-    let operator = BandOperator::conduction(stack, model).map_err(|_| NotGrown)?;
-    let pencil = nearby.pencil(&operator);
-    let mut guesses_ev: Vec<f64> = nearby
-        .solved()
-        .pairs
-        .iter()
-        .map(|pair| pair.value)
-        .collect();
-    for (source, amount) in sources.iter().zip(amounts) {
-        for (guess, slope) in guesses_ev.iter_mut().zip(&source.level_slopes_ev) {
-            *guess += amount * slope;
+    let mut energies_ev = Vec::new();
+    let mut held = Vec::new();
+    for (band, nearby) in followed.nearby().iter().enumerate() {
+        let sign = nearby.solved().band.sign();
+        let operator = BandOperator::new(stack, nearby.solved().band).map_err(|_| NotGrown)?;
+        let pencil = nearby.pencil(&operator);
+        let pairs = &nearby.solved().pairs;
+        let mut guesses_ev: Vec<f64> = pairs.iter().map(|pair| pair.value).collect();
+        for (source, amount) in sources.iter().zip(amounts) {
+            for (guess, slope) in guesses_ev.iter_mut().zip(&source.band_slopes_ev[band]) {
+                *guess += amount * sign * slope;
+            }
         }
+        let values = nearby.energies_ev(&pencil, &guesses_ev, TOLERANCE_EV);
+        let edge_ev = lower_outer_edge_ev(&pencil);
+        held.push(values.partition_point(|value| *value <= edge_ev));
+        energies_ev.push(values.into_iter().map(|value| sign * value).collect());
     }
-    let energies_ev = nearby.energies_ev(&pencil, &guesses_ev, TOLERANCE_EV);
-    let edge_ev = lower_outer_edge_ev(&pencil);
+    let places = followed.places_on(&energies_ev).ok_or(NotGrown)?;
+    let energy = |place: &Place| energies_ev[place.band][place.state];
     Ok(Wafer {
-        held: energies_ev.partition_point(|energy| *energy <= edge_ev),
-        energies_ev,
+        energies_ev: places.iter().map(energy).collect(),
+        held: places.iter().map(|p| p.state < held[p.band]).collect(),
     })
 }
 
@@ -278,7 +287,9 @@ fn distributed(
     to: usize,
 ) -> Option<Distributed> {
     let energies_ev: Vec<f64> = wafers.iter().map(|w| w.energy_ev(from, to)).collect();
+    let light = energies_ev.iter().all(|ev| *ev > 0.0);
     let wavelengths_um: Vec<f64> = energies_ev.iter().map(|ev| HC_EV_UM / ev).collect();
+    let loose = |w: &&&Wafer| !(w.held[from] && w.held[to]);
     let mut variances: Vec<(String, f64)> = Vec::new();
     for source in sources {
         let slope = source.level_slopes_ev[to] - source.level_slopes_ev[from];
@@ -299,7 +310,8 @@ fn distributed(
         from,
         to,
         energy_ev: statistics(&energies_ev)?,
-        wavelength_um: statistics(&wavelengths_um)?,
+        wavelength_um: statistics(&wavelengths_um).filter(|_| light),
+        unbound: wafers.iter().filter(loose).count(),
         linear_deviation_ev: whole.sqrt(),
         contributors,
         histogram: histogram(&energies_ev),

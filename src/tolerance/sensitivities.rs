@@ -1,8 +1,7 @@
 //! How far each level moves per monolayer of each layer, per percent of rate and flux, and so on.
 
-use super::derivative::level_slopes;
-use crate::structure::{Cause, ConductionModel, Design, Stack, Structure};
-use crate::subbands::Nearby;
+use super::followed::Followed;
+use crate::structure::{Cause, Design, Stack, Structure};
 use rayon::prelude::*;
 
 /// The movement of all levels with one number of the design.
@@ -25,8 +24,7 @@ pub fn sensitivities(
     structure: &Structure,
     stack: &Stack,
     design: &Design,
-    model: ConductionModel,
-    nearby: &Nearby,
+    followed: &Followed,
 ) -> Vec<Sensitivity> {
     let mut asked: Vec<(String, &'static str, Cause, f64)> = Vec::new();
     for (entry, layer) in structure.entries.iter().enumerate() {
@@ -59,7 +57,7 @@ pub fn sensitivities(
     asked
         .into_par_iter()
         .filter_map(|(name, step, cause, amount)| {
-            let slopes = level_slopes(design, model, nearby, &cause)?;
+            let slopes = followed.slopes(design, &cause)?;
             Some(Sensitivity {
                 name,
                 step,

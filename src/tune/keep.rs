@@ -1,6 +1,8 @@
 //! Bounds on strain as residuals that vanish inside them.
 
-use crate::epitaxy::{Glide, balance, glides, net_strain_slope, periods, thickness_ratio};
+use crate::epitaxy::{
+    Glide, balance, glides, net_strain_slope, periods, thickness_ratio, whole_thickness_ratio,
+};
 use crate::structure::{Knob, Stack, StrainBound, Structure};
 
 /// One bound.
@@ -18,6 +20,8 @@ pub enum Rule {
     Balanced { entries: Vec<usize>, within: f64 },
     /// The width of this entry over its critical thickness stays below 1.
     BelowCritical { entry: usize, glide: Glide },
+    /// The same of all strained layers as one.
+    StackBelowCritical,
 }
 
 /// The residual begins at this part of the bound, so that a search that comes to rest on it lies inside.
@@ -32,6 +36,7 @@ impl Keep {
             Rule::BelowCritical { entry, glide } => {
                 thickness_ratio(stack, *entry, *glide, None).value
             }
+            Rule::StackBelowCritical => whole_thickness_ratio(stack, None).value,
         }
     }
 
@@ -42,6 +47,7 @@ impl Keep {
             Rule::BelowCritical { entry, glide } => {
                 thickness_ratio(stack, *entry, *glide, Some(knob)).slope
             }
+            Rule::StackBelowCritical => whole_thickness_ratio(stack, Some(knob)).slope,
         }
     }
 
@@ -49,7 +55,7 @@ impl Keep {
     pub fn limit(&self) -> f64 {
         match self.rule {
             Rule::Balanced { within, .. } => within,
-            Rule::BelowCritical { .. } => 1.0,
+            Rule::BelowCritical { .. } | Rule::StackBelowCritical => 1.0,
         }
     }
 
@@ -61,7 +67,7 @@ impl Keep {
     pub fn residual(&self, value: f64) -> (f64, f64) {
         let margin = match self.rule {
             Rule::Balanced { .. } => BALANCE_MARGIN,
-            Rule::BelowCritical { .. } => THICKNESS_MARGIN,
+            Rule::BelowCritical { .. } | Rule::StackBelowCritical => THICKNESS_MARGIN,
         };
         let (start, unit) = (margin * self.limit(), (1.0 - margin) * self.limit());
         let excess = value.abs() - start;
@@ -99,6 +105,10 @@ pub fn keeps(structure: &Structure, stack: &Stack) -> Vec<Keep> {
                     name,
                 }]
             }
+            StrainBound::StackBelowCritical => vec![Keep {
+                name: "strained layers together in critical thicknesses".to_owned(),
+                rule: Rule::StackBelowCritical,
+            }],
             StrainBound::BelowCritical { entry: Some(entry) } => vec![thickness(entry)],
             StrainBound::BelowCritical { entry: None } => {
                 (0..structure.entries.len()).map(thickness).collect()

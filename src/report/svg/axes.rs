@@ -89,6 +89,16 @@ pub(super) fn left_axis(page: &mut Page, scale: Scale, x: f64, name: &str) {
     });
 }
 
+/// Two slanted strokes across a vertical line between two axes that do not join.
+pub(super) fn break_marks(page: &mut Page, x: f64, upper_end: f64, lower_end: f64) {
+    const HALF_PT: f64 = 3.0;
+    page.group("break", |page| {
+        for y in [upper_end + 2.0, lower_end - 2.0] {
+            page.line([x - HALF_PT, y + 1.5], [x + HALF_PT, y - 1.5], AXIS);
+        }
+    });
+}
+
 /// How much a left axis needs: its name, its numbers and its ticks.
 pub(super) fn left_room(scale: Scale) -> f64 {
     let ticks = scale.ticks(28.0);

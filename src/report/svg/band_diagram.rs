@@ -1,111 +1,152 @@
-//! The band edge along the growth direction with the squared envelopes at their energies.
+//! The band edges along the growth direction with the squared envelopes at their energies: electrons, and with holes two
+//! panels on one z axis, since the gap between them is many times as wide as what happens on either side.
 
 use super::Width;
-use super::axes::{BOTTOM_ROOM, Scale, bottom_axis, left_axis, left_room};
+use super::axes::{BOTTOM_ROOM, Scale, bottom_axis, break_marks, left_axis, left_room};
+use super::band_panel::{Content, DrawnState, LABEL_STEP_PT, Panel, StateLabels};
 use super::key;
 use super::ladder::{Ladder, Rung};
 use super::layer_strip::{LayerStrip, StripLayer};
-use super::page::{ASCENT, Anchor, LABEL_PT, MARGIN_PT, Page, SMALL_PT, Style};
-use super::palette::{self, BODY, GUIDE, INK, Stroke};
-use super::spread::spread;
-use super::text::{Run, formula, minus, plain, short, shortened, width_pt};
+use super::page::{MARGIN_PT, Page, SMALL_PT};
+use super::palette;
+use super::text::{Run, formula, minus, plain, short, shortened};
+use crate::constants::HC_EV_UM;
 use crate::materials::Substance;
 use crate::models::model_name;
-use crate::numerics::polyline::simplified;
-use crate::optics::{Transition, transitions};
+use crate::optics::{interband, transitions};
 use crate::report::table::significant;
 use crate::structure::{BandName, ConductionModel, Item, Stack, Structure};
-use crate::subbands::{Curves, Hold, StateCurves, Subbands};
+use crate::subbands::{Bands, Curves, Hold, Place};
 
 /// How finely the curves of a diagram are to be sampled: well below a line's width.
 pub const FINENESS: f64 = 4e-4;
-/// Transitions that are drawn when the file has no aims.
+/// Transitions of electrons that are drawn when the file has no aims, and those between the bands.
 const MOST_TRANSITIONS: usize = 4;
+const MOST_BETWEEN_BANDS: usize = 2;
 /// Of those, none weaker than this part of the strongest.
 const WEAKEST: f64 = 0.05;
-/// A squared envelope is drawn where it is above this part of its peak.
-const TAIL: f64 = 0.004;
-/// A deviation of a line that is not seen.
-const INVISIBLE_PT: f64 = 0.03;
-/// How opaque the area under a squared envelope is.
-const TINT: f64 = 0.18;
-/// A wider range of energy is given in eV.
-const EV_AXIS_FROM: f64 = 2.0;
 /// Names and materials in the key are cut to this.
 const LONGEST_NAME_PT: f64 = 110.0;
-/// Decimals that may be added so that the energies of neighbours differ.
-const MORE_DECIMALS: usize = 3;
 /// From a level to where it ends at its label.
 const LEADER_PT: f64 = 11.0;
-/// From an envelope to the level's label.
-const DOTTED: Stroke = Stroke {
-    colour: GUIDE,
-    width_pt: 0.4,
-    dash: "0.8 1.6",
-};
-/// Distance of the labels of levels.
-const LABEL_STEP_PT: f64 = 1.25 * LABEL_PT;
-/// A panel grows to this height for the labels of its levels; beyond it they are thinned out.
+/// A picture's panels grow to this height together for the labels of their levels; beyond it they are thinned out.
 const TALLEST_PT: f64 = 560.0;
+/// Between two panels.
+const BREAK_PT: f64 = 16.0;
+/// Hole edges that are nowhere farther apart than this are one line.
+const ONE_EDGE_EV: f64 = 1e-4;
 
 /// All that a band diagram shows.
 #[derive(Clone, Debug)]
 pub struct BandDiagram {
     title: String,
     caption: String,
-    /// nm, eV above the zero.
-    edge: Vec<[f64; 2]>,
+    /// Electrons, then holes if they are solved.
+    panels: Vec<Content>,
     layers: Vec<StripLayer>,
     /// What each number in the strip stands for.
     meanings: Vec<Vec<Run>>,
-    states: Vec<DrawnState>,
-    transitions: Vec<Transition>,
+    transitions: Vec<Drawn>,
     width_nm: f64,
 }
 
+/// A transition between two states, each the number of its panel and its own there, the lower in energy first.
 #[derive(Clone, Debug)]
-struct DrawnState {
-    /// Above the zero.
+struct Drawn {
+    from: (usize, usize),
+    to: (usize, usize),
     energy_ev: f64,
-    curves: StateCurves,
-    /// A sign that the caption explains.
-    mark: &'static str,
 }
 
 impl BandDiagram {
-    /// Gathers the diagram of the lowest `shown` states. The transitions are those that the file's aims name, else the
-    /// strongest.
+    /// Gathers the diagram of so many states of each band. The transitions are those that the file's aims name, else
+    /// the strongest.
     pub fn new(
         structure: &Structure,
         stack: &Stack,
-        subbands: &Subbands,
-        curves: Curves,
-        shown: usize,
+        bands: &Bands,
+        curves: Vec<Curves>,
+        shown: &[usize],
     ) -> BandDiagram {
-        let zero_ev = subbands.pencil.floor();
-        let states: Vec<DrawnState> = subbands
-            .states()
-            .iter()
-            .zip(curves.states)
-            .take(shown)
-            .map(|(state, curves)| DrawnState {
-                energy_ev: state.from_edge_ev,
-                curves,
-                mark: match state.hold {
-                    Hold::Bound => "",
-                    Hold::Leaky => "‡",
-                    Hold::Walls => "†",
-                },
+        let with_holes = bands.all().len() > 1;
+        // Floors of hole bands are those of minus the energy.
+        let highest = bands.all().iter().skip(1).map(|b| -b.pencil.floor());
+        let zeros_ev = [
+            bands.conduction().pencil.floor(),
+            highest.fold(f64::NEG_INFINITY, f64::max),
+        ];
+        let panel_of = |place: Place| usize::from(place.band > 0);
+        let mut panels = vec![Content {
+            sign: 1.0,
+            edges: Vec::new(),
+            states: Vec::new(),
+        }];
+        if with_holes {
+            panels.push(Content {
+                sign: -1.0,
+                ..panels[0].clone()
+            });
+        }
+        let mut places: [Vec<Place>; 2] = Default::default();
+        let conduction = (0..bands.conduction().pairs.len()).map(|state| Place { band: 0, state });
+        for place in conduction.chain(bands.holes()) {
+            if place.state < shown[place.band] {
+                places[panel_of(place)].push(place);
+            }
+        }
+        for (panel, content) in panels.iter_mut().enumerate() {
+            for (band, curves) in curves.iter().enumerate() {
+                if panel_of(Place { band, state: 0 }) == panel {
+                    let raised = |[z, ev]: &[f64; 2]| [*z, ev - zeros_ev[panel]];
+                    content.edges.push(curves.edge.iter().map(raised).collect());
+                }
+            }
+            content.edges.dedup_by(|one, other| alike(one, other));
+            for (number, place) in places[panel].iter().enumerate() {
+                let state = &bands.of(*place).states()[place.state];
+                let level = bands.level(*place);
+                content.states.push(DrawnState {
+                    energy_ev: bands.energy_ev(*place) - zeros_ev[panel],
+                    curves: curves[place.band].states[place.state].clone(),
+                    label: match level.band {
+                        _ if !with_holes => level.index.to_string(),
+                        BandName::HeavyHole => format!("hh {}", level.index),
+                        BandName::LightHole => format!("lh {}", level.index),
+                        _ => format!("c {}", level.index),
+                    },
+                    name: level.to_string(),
+                    stroke: match level.band {
+                        BandName::Conduction => palette::state(number, 0.9),
+                        band => palette::hole(number, band == BandName::LightHole, 0.9),
+                    },
+                    mark: match state.hold {
+                        Hold::Bound => "",
+                        Hold::Leaky => "‡",
+                        Hold::Walls => "†",
+                    },
+                });
+            }
+        }
+        let drawn = |(from, to): (Place, Place)| {
+            let find = |place: Place| {
+                let panel = panel_of(place);
+                let own = places[panel].iter().position(|p| *p == place)?;
+                Some((panel, own))
+            };
+            Some(Drawn {
+                from: find(from)?,
+                to: find(to)?,
+                energy_ev: bands.energy_ev(to) - bands.energy_ev(from),
             })
-            .collect();
+        };
+        let chosen = chosen(structure, stack, bands, shown);
         BandDiagram {
             title: structure.title.clone().unwrap_or_default(),
-            caption: caption(structure, stack, zero_ev, &states),
-            edge: curves.edge.iter().map(|[z, v]| [*z, v - zero_ev]).collect(),
+            caption: caption(structure, stack, zeros_ev, &panels),
             layers: strip_layers(structure, stack),
             meanings: meanings(structure, stack),
-            transitions: chosen(structure, subbands, states.len()),
-            states,
+            transitions: chosen.into_iter().filter_map(drawn).collect(),
+            panels,
             width_nm: stack.total_width_nm(),
         }
     }
@@ -117,48 +158,86 @@ impl BandDiagram {
             Width::Column => (165.0_f64, 1),
             Width::Page => (215.0, 3),
         };
-        let labels_height = LABEL_STEP_PT * self.states.len() as f64;
-        let height = least_height.max(labels_height.min(TALLEST_PT));
-        let unit = self.unit();
-        let (vertical, pt_per_density) = self.vertical(height);
-        let mut panel = Panel {
-            horizontal: Scale {
-                domain: [0.0, self.width_nm],
-                range: [0.0, 1.0],
-            },
-            vertical,
-            unit,
-            pt_per_density,
+        // Of two panels the electrons' is the taller: they have more room in most stacks.
+        let (parts, most): (&[f64], f64) = match self.panels.len() {
+            1 => (&[1.0], TALLEST_PT),
+            _ => (&[0.8, 0.65], 0.5 * TALLEST_PT),
         };
-        let labels = self.state_labels(unit);
-        let rungs = self.transitions.iter().map(|t| self.rung(t, &panel));
+        let mut panels: Vec<Panel> = Vec::new();
+        let mut height = 0.0;
+        for (content, part) in self.panels.iter().zip(parts) {
+            let labels_height = LABEL_STEP_PT * content.states.len() as f64;
+            let own = (part * least_height).max(labels_height.min(most));
+            let (mut vertical, pt_per_density) = content.vertical(own);
+            if height > 0.0 {
+                height += BREAK_PT;
+            }
+            vertical.range = vertical.range.map(|y| y + height);
+            height += own;
+            panels.push(Panel {
+                content,
+                horizontal: Scale {
+                    domain: [0.0, self.width_nm],
+                    range: [0.0, 1.0],
+                },
+                vertical,
+                unit: content.unit(),
+                pt_per_density,
+            });
+        }
+        let labels: Vec<StateLabels> = self.panels.iter().map(Content::labels).collect();
+        let rungs = self.transitions.iter().filter(|t| t.energy_ev > 0.0);
+        let rungs = rungs.map(|t| self.rung(t, &panels));
         let (ladder, left_out) = Ladder::new(rungs.collect(), columns, height);
 
-        let left = MARGIN_PT + left_room(vertical);
-        let labels_left = page.width - MARGIN_PT - labels.width();
+        let rooms = panels.iter().map(|panel| left_room(panel.vertical));
+        let left = MARGIN_PT + rooms.fold(0.0, f64::max);
+        let widths = labels.iter().map(StateLabels::widths);
+        let widths = widths.fold([0.0; 2], |[a, b], [c, d]| [f64::max(a, c), f64::max(b, d)]);
+        let labels_room = labels.iter().map(|l| l.room(widths)).fold(0.0, f64::max);
+        let labels_left = page.width - MARGIN_PT - labels_room;
         let ladder_right = labels_left - LEADER_PT;
         let ladder_left = ladder_right - ladder.width();
         let right = ladder_left - if ladder.width() > 0.0 { 7.0 } else { 0.0 };
-        panel.horizontal.range = [left, right];
 
         let below_title = if self.title.is_empty() {
             4.0
         } else {
             page.title(&self.title)
         };
-        let strip = LayerStrip::new(&self.layers, panel.horizontal);
+        let horizontal = Scale {
+            domain: [0.0, self.width_nm],
+            range: [left, right],
+        };
+        let strip = LayerStrip::new(&self.layers, horizontal);
         strip.draw(&mut page, below_title);
         let top = below_title + strip.height() + 1.0;
         let bottom = top + height;
-        panel.vertical.range = vertical.range.map(|y| y + top);
-
-        self.draw_edge(&mut page, &panel);
-        self.draw_states(&mut page, &panel, [ladder_left, ladder_right]);
+        for panel in &mut panels {
+            panel.horizontal = horizontal;
+            panel.vertical.range = panel.vertical.range.map(|y| y + top);
+            panel.draw_edges(&mut page, self.layers.len());
+            panel.draw_states(&mut page, [ladder_left, ladder_right]);
+        }
         ladder.draw(&mut page, ladder_left, top, bottom);
-        self.draw_labels(&mut page, &panel, &labels, [ladder_right, labels_left]);
-        let name = format!("Energy ({})", unit.name);
-        left_axis(&mut page, panel.vertical, left, &name);
-        bottom_axis(&mut page, panel.horizontal, bottom, "z (nm)");
+        for (panel, labels) in panels.iter().zip(&labels) {
+            panel.draw_labels(&mut page, labels, [ladder_right, labels_left], widths);
+            let name = match (self.panels.len(), panel.content.sign > 0.0) {
+                (1, _) => format!("Energy ({})", panel.unit.name),
+                (_, true) => format!("Electrons ({})", panel.unit.name),
+                (_, false) => format!("Holes ({})", panel.unit.name),
+            };
+            left_axis(&mut page, panel.vertical, left, &name);
+        }
+        if let [upper, lower] = &panels[..] {
+            break_marks(
+                &mut page,
+                left,
+                upper.vertical.range[0],
+                lower.vertical.range[1],
+            );
+        }
+        bottom_axis(&mut page, horizontal, bottom, "z (nm)");
 
         let entries: Vec<key::Entry> = strip
             .keyed
@@ -174,287 +253,95 @@ impl BandDiagram {
             let [wavelength, energy] = rung.lines;
             caption += &format!(" Not drawn: {}, {wavelength}, {energy}.", rung.states);
         }
+        for dark in self.transitions.iter().filter(|t| t.energy_ev <= 0.0) {
+            caption += &format!(
+                " No light: {}, {} meV.",
+                self.words(dark),
+                minus(&significant(1e3 * dark.energy_ev, 4))
+            );
+        }
         y = page.caption(&caption, y + 1.0);
         let title = if self.title.is_empty() {
             "Band diagram"
         } else {
             &self.title
         };
-        page.finish(y + 4.0, title, &self.description(unit))
+        page.finish(y + 4.0, title, &self.description())
     }
 
-    fn rung(&self, transition: &Transition, panel: &Panel) -> Rung {
+    fn state(&self, (panel, state): (usize, usize)) -> &DrawnState {
+        &self.panels[panel].states[state]
+    }
+
+    fn words(&self, transition: &Drawn) -> String {
+        let [from, to] = [transition.from, transition.to].map(|place| &self.state(place).label);
+        format!("{from} to {to}")
+    }
+
+    fn rung(&self, transition: &Drawn, panels: &[Panel]) -> Rung {
+        let y = |place: (usize, usize)| panels[place.0].y(self.state(place).energy_ev);
         Rung {
-            upper_y: panel.y(self.states[transition.to].energy_ev),
-            lower_y: panel.y(self.states[transition.from].energy_ev),
+            upper_y: y(transition.to),
+            lower_y: y(transition.from),
             lines: [
-                wavelength(transition),
+                wavelength(transition.energy_ev),
                 format!("{} meV", significant(1e3 * transition.energy_ev, 4)),
             ],
-            states: format!("{} to {}", transition.from + 1, transition.to + 1),
+            states: self.words(transition),
         }
-    }
-
-    fn draw_edge(&self, page: &mut Page, panel: &Panel) {
-        let [left, right] = panel.horizontal.range;
-        let [bottom, _] = panel.vertical.range;
-        let edge: Vec<[f64; 2]> = self
-            .edge
-            .iter()
-            .map(|[z, e]| [panel.horizontal.at(*z), panel.y(*e)])
-            .collect();
-        // Where the layers stand close, the line must leave room between its flanks.
-        let width_pt = (0.25 * (right - left) / self.layers.len() as f64).clamp(0.25, 1.1);
-        let mut body = edge.clone();
-        body.extend([[right, bottom], [left, bottom]]);
-        page.group("body", |page| page.area(&body, BODY));
-        page.group("edge", |page| {
-            page.polyline(&edge, Stroke::solid(INK, width_pt));
-        });
-    }
-
-    /// The squared envelopes, the highest state first, so that the lower ones stand in front; then the levels.
-    fn draw_states(&self, page: &mut Page, panel: &Panel, [ladder_left, ladder_right]: [f64; 2]) {
-        let wholes: Vec<Vec<[f64; 2]>> = self
-            .states
-            .iter()
-            .map(|state| panel.density(state.energy_ev, state.curves.whole()))
-            .collect();
-        let states = || self.states.iter().zip(&wholes).enumerate();
-        page.group("guides", |page| {
-            for (_, (state, whole)) in states() {
-                let y = panel.y(state.energy_ev);
-                let from = whole
-                    .last()
-                    .map_or(panel.horizontal.range[0], |point| point[0]);
-                page.line([from, y], [ladder_left, y], DOTTED);
-            }
-        });
-        page.group("densities", |page| {
-            for (index, (state, whole)) in states().rev() {
-                let stroke = palette::state(index, 0.9);
-                if state.curves.sum.is_some() {
-                    page.tinted(whole, TINT, Stroke::solid(stroke.colour, 0.25));
-                    let envelope = panel.density(state.energy_ev, &state.curves.envelope);
-                    page.polyline(&envelope, stroke);
-                } else {
-                    page.tinted(whole, TINT, stroke);
-                }
-            }
-        });
-        page.group("levels", |page| {
-            for (index, (state, whole)) in states() {
-                let y = panel.y(state.energy_ev);
-                if let (Some(first), Some(last)) = (whole.first(), whole.last()) {
-                    let stroke = Stroke::solid(palette::state(index, 0.5).colour, 0.5);
-                    page.line([first[0], y], [last[0], y], stroke);
-                }
-            }
-        });
-        page.group("rungs", |page| {
-            for (index, (state, _)) in states() {
-                let y = panel.y(state.energy_ev);
-                page.line(
-                    [ladder_left, y],
-                    [ladder_right, y],
-                    palette::state(index, 0.9),
-                );
-            }
-        });
-    }
-
-    fn unit(&self) -> Unit {
-        let [low, high] = self.energies(0.0);
-        if high - low > EV_AXIS_FROM {
-            Unit {
-                name: "eV",
-                factor: 1.0,
-                decimals: 4,
-            }
-        } else {
-            Unit {
-                name: "meV",
-                factor: 1e3,
-                decimals: 1,
-            }
-        }
-    }
-
-    /// The lowest and the highest energy of the picture, with `above_ev` of room above every level.
-    fn energies(&self, above_ev: f64) -> [f64; 2] {
-        let edge = self.edge.iter().map(|p| p[1]);
-        let levels = self.states.iter().map(|state| state.energy_ev + above_ev);
-        edge.chain(levels).fold([0.0, 1e-3], |[low, high], e| {
-            [f64::min(low, e), f64::max(high, e)]
-        })
-    }
-
-    /// The height of the highest peak: about the distance of neighbouring levels, within limits.
-    fn peak_pt(&self, height: f64) -> f64 {
-        let [low, high] = self.energies(0.0);
-        let mut gaps: Vec<f64> = self
-            .states
-            .windows(2)
-            .map(|pair| pair[1].energy_ev - pair[0].energy_ev)
-            .collect();
-        gaps.sort_by(f64::total_cmp);
-        let gap_ev = gaps.get(gaps.len() / 2).copied().unwrap_or(high - low);
-        (0.9 * gap_ev / (high - low)).clamp(0.11, 0.22) * height
-    }
-
-    /// The scale of energy from a panel's top at 0, and points per 1/nm of the squared envelopes.
-    fn vertical(&self, height: f64) -> (Scale, f64) {
-        let peak_pt = self.peak_pt(height);
-        let [low, high] = self.energies(0.0);
-        // A peak on the uppermost level must fit below the top.
-        let above_ev = peak_pt / height * (high - low);
-        let [low, high] = self.energies(1.15 * above_ev);
-        let room = 0.04 * (high - low);
-        let factor = self.unit().factor;
-        let scale = Scale {
-            domain: [factor * (low - room), factor * (high + room)],
-            range: [height, 0.0],
-        };
-        let largest = self
-            .states
-            .iter()
-            .flat_map(|state| state.curves.whole())
-            .fold(0.0, |a: f64, p| a.max(p[1]));
-        (
-            scale,
-            if largest > 0.0 {
-                peak_pt / largest
-            } else {
-                0.0
-            },
-        )
-    }
-
-    /// The labels at the right, with so many decimals that neighbours differ.
-    fn state_labels(&self, unit: Unit) -> StateLabels {
-        let narrowest = self
-            .states
-            .windows(2)
-            .map(|pair| unit.factor * (pair[1].energy_ev - pair[0].energy_ev))
-            .fold(f64::INFINITY, f64::min);
-        let most = unit.decimals + MORE_DECIMALS;
-        let decimals = (unit.decimals..most)
-            .find(|d| narrowest >= 2.0 * 10f64.powi(-(*d as i32)))
-            .unwrap_or(most);
-        let energy = |state: &DrawnState| format!("{:.decimals$}", unit.factor * state.energy_ev);
-        StateLabels {
-            unit: unit.name,
-            numbers: (1..=self.states.len()).map(|n| n.to_string()).collect(),
-            energies: self.states.iter().map(energy).collect(),
-            marks: self.states.iter().map(|state| state.mark).collect(),
-        }
-    }
-
-    fn draw_labels(
-        &self,
-        page: &mut Page,
-        panel: &Panel,
-        labels: &StateLabels,
-        [from, to]: [f64; 2],
-    ) {
-        let [bottom, top] = panel.vertical.range;
-        let most = ((bottom - top) / LABEL_STEP_PT).floor().max(1.0) as usize;
-        let every = self.states.len().div_ceil(most).max(1);
-        let chosen: Vec<usize> = (0..self.states.len()).step_by(every).rev().collect();
-        let wanted: Vec<f64> = chosen
-            .iter()
-            .map(|k| panel.y(self.states[*k].energy_ev))
-            .collect();
-        let sizes = vec![LABEL_STEP_PT; chosen.len()];
-        let places = spread(&wanted, &sizes, top, bottom);
-        let numbers_right = to + StateLabels::widest(&labels.numbers);
-        let energies_right =
-            numbers_right + StateLabels::GAP_PT + StateLabels::widest(&labels.energies);
-        let number = Style {
-            bold: true,
-            ..Style::new(LABEL_PT, Anchor::End)
-        };
-        let energy = Style::new(LABEL_PT, Anchor::End);
-        let mark = Style::new(LABEL_PT, Anchor::Start);
-        page.group("energies", |page| {
-            page.text([energies_right, top - 3.0], energy, labels.unit);
-            for ((&index, y), place) in chosen.iter().zip(&wanted).zip(places) {
-                let leader = [
-                    [from, *y],
-                    [from + 2.0, *y],
-                    [to - 3.0, place],
-                    [to - 1.0, place],
-                ];
-                page.polyline(
-                    &leader,
-                    Stroke::solid(palette::state(index, 0.5).colour, 0.5),
-                );
-                let line = place + 0.5 * ASCENT * LABEL_PT;
-                page.text([numbers_right, line], number, &labels.numbers[index]);
-                page.text([energies_right, line], energy, &labels.energies[index]);
-                if !labels.marks[index].is_empty() {
-                    page.text([energies_right + 0.5, line], mark, labels.marks[index]);
-                }
-            }
-        });
     }
 
     /// The picture in words.
-    fn description(&self, unit: Unit) -> String {
-        let states = self.states.iter().enumerate().map(|(index, state)| {
-            format!(
-                "conduction {} at {:.*} {}",
-                index + 1,
-                unit.decimals,
-                unit.factor * state.energy_ev,
-                unit.name
-            )
+    fn description(&self) -> String {
+        let states = self.panels.iter().flat_map(|panel| {
+            let unit = panel.unit();
+            panel.states.iter().map(move |state| {
+                format!(
+                    "{} at {:.*} {}",
+                    state.name,
+                    unit.decimals,
+                    unit.factor * state.energy_ev,
+                    unit.name
+                )
+            })
         });
-        let transitions = self.transitions.iter().map(|t| {
-            format!(
-                "{} to {}: {} meV, {}",
-                t.from + 1,
-                t.to + 1,
-                significant(1e3 * t.energy_ev, 4),
-                wavelength(t)
-            )
-        });
+        let transitions = self
+            .transitions
+            .iter()
+            .filter(|t| t.energy_ev > 0.0)
+            .map(|t| {
+                format!(
+                    "{}: {} meV, {}",
+                    self.words(t),
+                    significant(1e3 * t.energy_ev, 4),
+                    wavelength(t.energy_ev)
+                )
+            });
         let list: Vec<String> = states.chain(transitions).collect();
         format!(
-            "Band edge and squared envelopes along the growth direction. {}.",
+            "Band {} and squared envelopes along the growth direction. {}.",
+            if self.panels.len() > 1 {
+                "edges"
+            } else {
+                "edge"
+            },
             list.join("; ")
         )
     }
 }
 
-/// Where energies, positions and squared envelopes are drawn.
-struct Panel {
-    horizontal: Scale,
-    /// In the unit.
-    vertical: Scale,
-    unit: Unit,
-    pt_per_density: f64,
-}
-
-impl Panel {
-    fn y(&self, energy_ev: f64) -> f64 {
-        self.vertical.at(self.unit.factor * energy_ev)
-    }
-
-    /// The part of a squared envelope that stands out, on the line of its energy.
-    fn density(&self, energy_ev: f64, curve: &[[f64; 2]]) -> Vec<[f64; 2]> {
-        let level = self.y(energy_ev);
-        let points: Vec<[f64; 2]> = standing_out(curve)
+/// Whether two edges are one line.
+fn alike(one: &[[f64; 2]], other: &[[f64; 2]]) -> bool {
+    one.len() == other.len()
+        && one
             .iter()
-            .map(|[z, value]| [self.horizontal.at(*z), level - self.pt_per_density * value])
-            .collect();
-        simplified(&points, INVISIBLE_PT)
-    }
+            .zip(other)
+            .all(|(a, b)| (a[1] - b[1]).abs() < ONE_EDGE_EV)
 }
 
 /// The vacuum wavelength in µm, or in mm from 1 mm on.
-fn wavelength(transition: &Transition) -> String {
-    let wavelength_um = transition.wavelength_um();
+fn wavelength(energy_ev: f64) -> String {
+    let wavelength_um = HC_EV_UM / energy_ev;
     if wavelength_um < 1e3 {
         format!("{} µm", significant(wavelength_um, 4))
     } else {
@@ -462,78 +349,53 @@ fn wavelength(transition: &Transition) -> String {
     }
 }
 
-/// The texts at the right of a diagram.
-struct StateLabels {
-    unit: &'static str,
-    numbers: Vec<String>,
-    energies: Vec<String>,
-    marks: Vec<&'static str>,
-}
-
-impl StateLabels {
-    const GAP_PT: f64 = 5.0;
-
-    fn widest(texts: &[String]) -> f64 {
-        texts
-            .iter()
-            .map(|text| width_pt(text, LABEL_PT))
-            .fold(0.0, f64::max)
-    }
-
-    fn width(&self) -> f64 {
-        let marks = self.marks.iter().map(|mark| width_pt(mark, LABEL_PT));
-        Self::widest(&self.numbers)
-            + Self::GAP_PT
-            + Self::widest(&self.energies)
-            + marks.fold(0.0, f64::max)
-    }
-}
-
-/// A unit of energy on the axis.
-#[derive(Clone, Copy)]
-struct Unit {
-    name: &'static str,
-    /// Units per eV.
-    factor: f64,
-    decimals: usize,
-}
-
-/// The part of a curve between the places where it first and last rises above its tails.
-fn standing_out(density: &[[f64; 2]]) -> &[[f64; 2]] {
-    let peak = density.iter().fold(0.0, |a: f64, p| a.max(p[1]));
-    let above = |p: &[f64; 2]| p[1] > TAIL * peak;
-    match (
-        density.iter().position(above),
-        density.iter().rposition(above),
-    ) {
-        (Some(first), Some(last)) => {
-            &density[first.saturating_sub(1)..(last + 2).min(density.len())]
-        }
-        _ => density,
-    }
-}
-
 /// Pairs of states, the lower first, that the aims name; without aims the strongest transitions.
-fn chosen(structure: &Structure, subbands: &Subbands, shown: usize) -> Vec<Transition> {
-    let mut all = transitions(subbands);
-    all.retain(|t| t.to < shown);
+fn chosen(
+    structure: &Structure,
+    stack: &Stack,
+    bands: &Bands,
+    shown: &[usize],
+) -> Vec<(Place, Place)> {
+    let is_shown = |place: &Place| place.state < shown[place.band];
     if let Some(tune) = &structure.tune {
-        let named = |t: &Transition| {
-            tune.aims.iter().any(|aim| {
-                let levels = [aim.from, aim.to];
-                let pair = levels.map(|level| level.index);
-                levels.iter().all(|l| l.band == BandName::Conduction)
-                    && (pair == [t.from + 1, t.to + 1] || pair == [t.to + 1, t.from + 1])
-            })
-        };
-        all.retain(named);
-        return all;
+        let mut pairs: Vec<(Place, Place)> = Vec::new();
+        for aim in &tune.aims {
+            let mut pair = (bands.place(aim.from), bands.place(aim.to));
+            let same_band = pair.0.band == pair.1.band;
+            if same_band && bands.energy_ev(pair.0) > bands.energy_ev(pair.1) {
+                pair = (pair.1, pair.0);
+            }
+            let named = |place: Place, level: crate::structure::Level| {
+                level.band == BandName::Valence || bands.level(place) == level
+            };
+            let there =
+                named(bands.place(aim.from), aim.from) && named(bands.place(aim.to), aim.to);
+            if there && is_shown(&pair.0) && is_shown(&pair.1) && !pairs.contains(&pair) {
+                pairs.push(pair);
+            }
+        }
+        return pairs;
     }
-    all.sort_by(|a, b| b.oscillator_strength.total_cmp(&a.oscillator_strength));
-    let strongest = all.first().map_or(0.0, |t| t.oscillator_strength);
-    all.retain(|t| t.oscillator_strength >= WEAKEST * strongest);
-    all.truncate(MOST_TRANSITIONS);
-    all
+    let mut inside = transitions(bands.conduction());
+    inside.retain(|t| t.to < shown[0]);
+    inside.sort_by(|a, b| b.oscillator_strength.total_cmp(&a.oscillator_strength));
+    let strongest = inside.first().map_or(0.0, |t| t.oscillator_strength);
+    inside.retain(|t| t.oscillator_strength >= WEAKEST * strongest);
+    inside.truncate(MOST_TRANSITIONS);
+    let electron = |state: usize| Place { band: 0, state };
+    let inside = inside.iter().map(|t| (electron(t.from), electron(t.to)));
+    let mut between = Vec::new();
+    if bands.all().len() > 1 {
+        between = interband(stack, bands);
+        between.retain(|pair| is_shown(&pair.hole) && is_shown(&pair.electron));
+        // The light of both TE directions and TM together.
+        between.sort_by(|a, b| b.overlap.abs().total_cmp(&a.overlap.abs()));
+        let lowest = |pair: &crate::optics::Interband| pair.electron == electron(0);
+        between.retain(lowest);
+        between.truncate(MOST_BETWEEN_BANDS);
+    }
+    let between = between.iter().map(|pair| (pair.hole, pair.electron));
+    between.chain(inside).collect()
 }
 
 fn strip_layers(structure: &Structure, stack: &Stack) -> Vec<StripLayer> {
@@ -594,10 +456,19 @@ fn substance(substance: &Substance) -> Vec<Run> {
     }
 }
 
-fn caption(structure: &Structure, stack: &Stack, zero_ev: f64, states: &[DrawnState]) -> String {
+fn caption(structure: &Structure, stack: &Stack, zeros_ev: [f64; 2], panels: &[Content]) -> String {
+    let with_holes = panels.len() > 1;
     let mut text = format!(
-        "Black: conduction band edge. Lines: squared envelopes, each standing on its energy{}. \
-         {} K, field {} kV/cm, {} mass. The zero is the lowest band edge, {} eV in the table of levels.",
+        "Black: {}. Lines: squared envelopes, each {} on its energy{}. {} K, field {} kV/cm, {} mass{}. ",
+        match with_holes {
+            false => "conduction band edge",
+            true if panels[1].edges.len() > 1 => "band edges, dashed that of light holes",
+            true => "band edges",
+        },
+        match with_holes {
+            true => "standing (electrons) or hanging (holes; light ones dashed)",
+            false => "standing",
+        },
         match structure.conduction.model {
             ConductionModel::Parabolic => ", all of the same area",
             ConductionModel::EnergyDependent => {
@@ -607,14 +478,32 @@ fn caption(structure: &Structure, stack: &Stack, zero_ev: f64, states: &[DrawnSt
         short(structure.temperature_k, 4),
         short(1e4 * stack.field_v_per_nm, 4),
         model_name(structure.conduction.model),
-        minus(&format!("{zero_ev:.4}")),
+        match with_holes {
+            true => ", decoupled holes",
+            false => "",
+        },
     );
+    text += &match with_holes {
+        false => format!(
+            "The zero is the lowest band edge, {} eV in the table of levels.",
+            minus(&format!("{:.4}", zeros_ev[0]))
+        ),
+        true => format!(
+            "Levels: c conduction, hh heavy-hole, lh light-hole. The axis is broken: zeros are the lowest conduction edge \
+             ({} eV in the table of levels) and the highest valence edge ({} eV), {} meV below it; the panels have scales of \
+             their own.",
+            minus(&format!("{:.4}", zeros_ev[0])),
+            minus(&format!("{:.4}", zeros_ev[1])),
+            minus(&format!("{:.1}", 1e3 * (zeros_ev[0] - zeros_ev[1])))
+        ),
+    };
     repeats(&structure.sequence, &mut text);
     for (mark, meaning) in [
         ("†", "held by the walls only, not bound"),
         ("‡", "can tunnel out at an end"),
     ] {
-        if states.iter().any(|state| state.mark == mark) {
+        let mut states = panels.iter().flat_map(|panel| &panel.states);
+        if states.any(|state| state.mark == mark) {
             text += &format!(" {mark} {meaning}.");
         }
     }

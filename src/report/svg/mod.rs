@@ -5,6 +5,7 @@
 
 mod axes;
 mod band_diagram;
+mod band_panel;
 mod bars;
 mod dispersion;
 mod histogram;

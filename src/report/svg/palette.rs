@@ -9,6 +9,9 @@ pub const STATES: [&str; 4] = ["#1b2a66", "#1f7a78", "#8a2f4f", "#bf8a1e"];
 /// Dashes of successive fours of states, in points.
 const DASHES: [&str; 4] = ["", "4 1.6", "5 1.4 1.2 1.4", "1.4 1.4"];
 
+/// Dashes of all that belongs to light holes.
+pub const LIGHT_HOLES: &str = "3 1.4";
+
 /// Text, axes and the band edge.
 pub const INK: &str = "#1d1f22";
 /// Captions.
@@ -48,5 +51,14 @@ pub fn state(index: usize, width_pt: f64) -> Stroke {
         colour: STATES[index % STATES.len()],
         width_pt,
         dash: DASHES[index / STATES.len() % DASHES.len()],
+    }
+}
+
+/// The line of a hole state, numbered from 0 from the gap on; light holes are dashed.
+pub fn hole(index: usize, light: bool, width_pt: f64) -> Stroke {
+    Stroke {
+        colour: STATES[index % STATES.len()],
+        width_pt,
+        dash: if light { LIGHT_HOLES } else { "" },
     }
 }

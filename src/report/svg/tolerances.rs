@@ -2,20 +2,34 @@
 
 use super::{Gaussian, SensitivityBar, SensitivityBars, Window, YieldHistogram};
 use crate::constants::HC_EV_UM;
-use crate::structure::{Structure, Target};
+use crate::structure::{BandName, Level, Structure, Target};
 use crate::tolerance::{Outcome, WindowYield};
 
-/// The transition that the pictures are about, numbered from 0: the first window's, else the first aim's, else that of
-/// the two lowest levels. `None` where it was not solved for.
+/// The transition that the pictures are about, as places in the list of levels: the first window's, else the first aim's,
+/// else that of the first two levels listed. `None` where it was not solved for.
 fn transition(structure: &Structure, outcome: &Outcome) -> Option<(usize, usize)> {
     let window = structure.tolerance.iter().flat_map(|t| &t.windows).next();
     let aim = structure.tune.iter().flat_map(|tune| &tune.aims).next();
-    let (from, to) = match (window, aim) {
-        (Some(window), _) => (window.from.index - 1, window.to.index - 1),
-        (None, Some(aim)) => (aim.from.index - 1, aim.to.index - 1),
-        (None, None) => (0, 1),
+    let named = match (window, aim) {
+        (Some(window), _) => Some([window.from, window.to]),
+        (None, Some(aim)) => Some([aim.from, aim.to]),
+        (None, None) => None,
     };
-    (from.max(to) < outcome.levels_ev.len()).then_some((from.min(to), from.max(to)))
+    let Some(named) = named else {
+        return outcome.pairs.first().copied();
+    };
+    outcome.pairs.iter().copied().find(|&(from, to)| {
+        let levels = [outcome.levels[from], outcome.levels[to]];
+        named == levels || named == [levels[1], levels[0]]
+    })
+}
+
+/// `1 to 2` inside the conduction band, else both with their bands.
+fn words(from: Level, to: Level) -> String {
+    match [from.band, to.band] == [BandName::Conduction; 2] {
+        true => format!("{} to {}", from.index, to.index),
+        false => format!("{from} to {to}"),
+    }
 }
 
 fn title(structure: &Structure, what: &str) -> String {
@@ -36,11 +50,17 @@ pub fn sensitivity_bars(structure: &Structure, outcome: &Outcome) -> Option<Sens
     });
     Some(SensitivityBars {
         title: title(structure, "sensitivities"),
-        quantity: format!("transition {} to {}", from + 1, to + 1),
+        quantity: format!(
+            "transition {}",
+            words(outcome.levels[from], outcome.levels[to])
+        ),
         caption: format!(
-            "First-order changes of the transition at {:.2} meV ({:.4} µm), each for the step beside its name.",
+            "First-order changes of the transition at {:.2} meV{}, each for the step beside its name.",
             1e3 * energy_ev,
-            HC_EV_UM / energy_ev
+            match energy_ev > 0.0 {
+                true => format!(" ({:.4} µm)", HC_EV_UM / energy_ev),
+                false => String::new(),
+            }
         ),
         bars: bars.collect(),
     })
@@ -55,15 +75,16 @@ pub fn yield_histogram(structure: &Structure, outcome: &Outcome) -> Option<Yield
         .iter()
         .find(|t| (t.from, t.to) == (from, to))?;
     let bins = own.histogram.as_ref()?;
-    let window = sampled.windows.iter().find(|w| {
-        let levels = (w.window.from.index - 1, w.window.to.index - 1);
-        (levels.0.min(levels.1), levels.0.max(levels.1)) == (from, to)
-    });
+    let window = sampled
+        .windows
+        .iter()
+        .find(|w| (w.window.from, w.window.to) == (outcome.levels[from], outcome.levels[to]));
     let first_aim = structure.tune.iter().flat_map(|tune| &tune.aims).next();
     let as_wavelength = match (window, first_aim) {
         (Some(w), _) => w.window.as_wavelength,
         (None, aim) => aim.is_some_and(|aim| matches!(aim.target, Target::WavelengthUm(_))),
     };
+    let as_wavelength = as_wavelength && own.wavelength_um.is_some();
     let energy_ev = outcome.levels_ev[to] - outcome.levels_ev[from];
     let caption = format!(
         "{} wafers, each solved in full. Dashed: the normal distribution that the sensitivities foretell.",
@@ -71,7 +92,13 @@ pub fn yield_histogram(structure: &Structure, outcome: &Outcome) -> Option<Yield
     );
     let counts = bins.counts.iter().map(|count| *count as u64);
     let shared = YieldHistogram {
-        title: title(structure, &format!("transition {} to {}", from + 1, to + 1)),
+        title: title(
+            structure,
+            &format!(
+                "transition {}",
+                words(outcome.levels[from], outcome.levels[to])
+            ),
+        ),
         quantity: "Energy".to_owned(),
         unit: "meV".to_owned(),
         caption,

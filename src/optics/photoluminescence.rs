@@ -1,0 +1,62 @@
+//! The photoluminescence that a wafer should show on the bench: at other temperatures than that of use, and with no
+//! field.
+//!
+//! Peak = transition of the lowest pair less the binding of its exciton, at low temperature and at room temperature alike:
+//! free excitons carry the emission of wells up to 300 K (Dawson, Duggan, Ralph and Woodbridge, Phys. Rev. B 28, 7381
+//! (1983), from memory). Where carriers are free the peak is the transition itself: in two dimensions the density of pairs
+//! is a step, and a step times exp(−E/kT) is highest at its edge, without the kT/2 of the bulk. The light then lies between
+//! the two. Filled bands, alloy disorder and wells that differ (all of which pull the peak down) are left out.
+
+use super::lowest_exciton;
+use crate::models::{Band, Unsuitable};
+use crate::structure::{Level, Stack};
+use crate::subbands::{Accuracy, Bands, Place};
+
+/// The expected peak of the lowest pair at one temperature.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Photoluminescence {
+    pub temperature_k: f64,
+    pub from: Level,
+    pub to: Level,
+    pub transition_ev: f64,
+    /// 0 where no exciton is bound; `None` where a permittivity is missing.
+    pub binding_ev: Option<f64>,
+}
+
+impl Photoluminescence {
+    /// The excitonic peak in eV.
+    pub fn peak_ev(&self) -> f64 {
+        self.transition_ev - self.binding_ev.unwrap_or(0.0)
+    }
+}
+
+/// The peak of a stack at a temperature in K, widths and compositions as they are and the field off. `None` where the gap
+/// is broken, or without holes.
+///
+/// # Errors
+/// The layer whose material does not suit at that temperature, and why.
+pub fn photoluminescence(
+    stack: &Stack,
+    bands: &[(Band, usize)],
+    temperature_k: f64,
+    accuracy: Accuracy,
+) -> Result<Option<Photoluminescence>, (usize, Unsuitable)> {
+    let Ok(mut stack) = stack.at_temperature(temperature_k) else {
+        return Ok(None);
+    };
+    stack.field_v_per_nm = 0.0;
+    let lowest: Vec<(Band, usize)> = bands.iter().map(|(band, _)| (*band, 1)).collect();
+    let bands = Bands::solve(&stack, &lowest, accuracy)?;
+    let Some(hole) = bands.holes().first().copied() else {
+        return Ok(None);
+    };
+    let electron = Place { band: 0, state: 0 };
+    let transition_ev = bands.energy_ev(electron) - bands.energy_ev(hole);
+    Ok((transition_ev > 0.0).then(|| Photoluminescence {
+        temperature_k,
+        from: bands.level(hole),
+        to: bands.level(electron),
+        transition_ev,
+        binding_ev: lowest_exciton(&stack, &bands).map(|(_, exciton)| exciton.binding_ev.max(0.0)),
+    }))
+}
