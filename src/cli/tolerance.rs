@@ -18,7 +18,7 @@ pub fn tolerance(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
-    input.without_holes("tolerances are those of");
+    input.without_holes("tolerances are those of")?;
     if input.structure.tolerance.is_none() {
         let doubt = Diagnostic::warning("there is no `tolerance` block, so nothing is sampled")
             .expected("`tolerance` with spreads such as `rate: 0.7 %`");

@@ -1,6 +1,7 @@
 //! Envelopes of solved states outside the solver's own mesh.
 
 use super::{Subbands, state};
+use crate::numerics::mesh::Mesh;
 use crate::numerics::quadrature::Reference;
 use crate::structure::Stack;
 
@@ -10,27 +11,27 @@ const POINTS_ORDER: usize = 10;
 /// Every state's envelope at the same fractions of every layer, weighted so that the scalar product of two lists is
 /// their overlap: lists of stacks that differ in widths only can be set against each other.
 pub fn layer_envelopes(subbands: &Subbands, stack: &Stack) -> Vec<Vec<f64>> {
-    let points = Reference::of_order(POINTS_ORDER);
-    let widths: Vec<f64> = stack.layers.iter().map(|layer| layer.width_nm).collect();
-    subbands
-        .pairs
-        .iter()
-        .map(|pair| {
-            let mut list = Vec::with_capacity(widths.len() * points.nodes.len());
-            for (layer, width) in widths.iter().enumerate() {
-                let values = layer_values(subbands, &pair.vector, layer, &points.nodes);
-                for (value, weight) in values.iter().zip(&points.weights) {
-                    list.push(value * (0.5 * weight * width).sqrt());
-                }
-            }
-            list
-        })
+    let pairs = subbands.pairs.iter();
+    pairs
+        .map(|pair| layer_values(&subbands.pencil.mesh, &pair.vector, stack))
         .collect()
 }
 
+/// A function's weighted values at the same fractions of every layer, from its values at the nodes.
+pub(super) fn layer_values(mesh: &Mesh, nodal: &[f64], stack: &Stack) -> Vec<f64> {
+    let points = Reference::of_order(POINTS_ORDER);
+    let mut list = Vec::with_capacity(stack.layers.len() * points.nodes.len());
+    for (layer, own) in stack.layers.iter().enumerate() {
+        let values = values_in(mesh, nodal, layer, &points.nodes);
+        for (value, weight) in values.iter().zip(&points.weights) {
+            list.push(value * (0.5 * weight * own.width_nm).sqrt());
+        }
+    }
+    list
+}
+
 /// Values of a nodal vector at the given places of one layer (−1 its bottom, 1 its top).
-fn layer_values(subbands: &Subbands, vector: &[f64], layer: usize, places: &[f64]) -> Vec<f64> {
-    let mesh = &subbands.pencil.mesh;
+fn values_in(mesh: &Mesh, vector: &[f64], layer: usize, places: &[f64]) -> Vec<f64> {
     let own: Vec<usize> = (0..mesh.elements.len())
         .filter(|&e| mesh.elements[e].segment == layer)
         .collect();
@@ -58,16 +59,19 @@ fn layer_values(subbands: &Subbands, vector: &[f64], layer: usize, places: &[f64
 /// Every state's √(w ρ) at the nodes of each element, with ρ its probability density and w the quadrature weights: the
 /// scalar product of two lists is the overlap ∫ √(ρ_i ρ_j) dz.
 pub fn amplitudes(subbands: &Subbands) -> Vec<Vec<f64>> {
-    let mesh = &subbands.pencil.mesh;
-    let amplitudes = (0..subbands.pairs.len()).map(|index| {
-        let mut list = state::density(subbands, index);
-        let nodes = list.chunks_exact_mut(mesh.order() + 1);
-        for (values, element) in nodes.zip(&mesh.elements) {
-            for (value, w) in values.iter_mut().zip(&mesh.reference.weights) {
-                *value = (0.5 * element.length * w * *value).sqrt();
-            }
+    let states = 0..subbands.pairs.len();
+    states
+        .map(|index| amplitude(&subbands.pencil.mesh, state::density(subbands, index)))
+        .collect()
+}
+
+/// √(w ρ) of a density at the nodes of each element.
+pub(super) fn amplitude(mesh: &Mesh, mut density: Vec<f64>) -> Vec<f64> {
+    let nodes = density.chunks_exact_mut(mesh.order() + 1);
+    for (values, element) in nodes.zip(&mesh.elements) {
+        for (value, w) in values.iter_mut().zip(&mesh.reference.weights) {
+            *value = (0.5 * element.length * w * *value).sqrt();
         }
-        list
-    });
-    amplitudes.collect()
+    }
+    density
 }

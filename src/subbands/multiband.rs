@@ -137,20 +137,12 @@ pub fn multiband_on_mesh(
     wanted: Wanted,
 ) -> MultibandSubbands {
     let parts = solve_parts(operator, &mesh, k_per_nm, wanted);
-    let finer = mesh.with_order(mesh.order() + ORDER_STEP);
-    let finer = pencil(operator, finer, k_per_nm, kinds(operator)[0]);
-    let moves = |pairs: &[NearPair]| {
-        let mut ascending = pairs.to_vec();
-        ascending.sort_by(|a, b| a.value.total_cmp(&b.value));
-        nearest::improvements(&parts[0].pencil, &ascending, &finer)
-    };
-    let conduction_moves = moves(&parts[0].conduction);
-    let mut valence_moves = moves(&parts[0].valence);
-    valence_moves.reverse();
+    let [conduction_errors, valence_errors] =
+        errors_ev(operator, &parts[0], k_per_nm, kinds(operator)[0]);
     let mut states = Vec::new();
-    for (band, moves) in [
-        (Band::Conduction, conduction_moves),
-        (Band::Valence, valence_moves),
+    for (band, errors_ev) in [
+        (Band::Conduction, conduction_errors),
+        (Band::Valence, valence_errors),
     ] {
         let per_pair = 2 / parts.len();
         for index in 0..fewest(&parts, band) / per_pair {
@@ -159,7 +151,7 @@ pub fn multiband_on_mesh(
                 band,
                 number: index + 1,
                 energies_ev: [first.1.value, second.1.value],
-                error_ev: moves[index * per_pair].abs(),
+                error_ev: errors_ev[index * per_pair],
                 shares: shares(first.0, first.1),
             });
         }
@@ -168,6 +160,52 @@ pub fn multiband_on_mesh(
         k_per_nm,
         parts,
         states,
+    }
+}
+
+/// The estimated discretisation errors of a part's conduction and valence levels, in eV: how far each moves on elements of
+/// higher order.
+fn errors_ev(
+    operator: &MultibandOperator,
+    solved: &PartSolution,
+    k_per_nm: f64,
+    part: Part,
+) -> [Vec<f64>; 2] {
+    let mesh = &solved.pencil.mesh;
+    let finer = mesh.with_order(mesh.order() + ORDER_STEP);
+    let finer = pencil(operator, finer, k_per_nm, part);
+    let moves = |ascending: &[NearPair]| -> Vec<f64> {
+        let moves = nearest::improvements(&solved.pencil, ascending, &finer);
+        moves.into_iter().map(f64::abs).collect()
+    };
+    let upwards: Vec<NearPair> = solved.valence.iter().rev().cloned().collect();
+    let mut valence = moves(&upwards);
+    valence.reverse();
+    [moves(&solved.conduction), valence]
+}
+
+/// Solves the first part alone at k∥ = 0, where the second has the same levels, as [`solve_multiband`] does: the solution
+/// and the errors of its conduction and valence levels.
+pub(super) fn solve_centre(
+    operator: &MultibandOperator,
+    wanted: Wanted,
+    tolerance_ev: f64,
+) -> (PartSolution, [Vec<f64>; 2]) {
+    let lengths: Vec<f64> = operator.stack().layers.iter().map(|l| l.width_nm).collect();
+    let mut pieces = pieces(operator);
+    let mut halvings = 0;
+    loop {
+        for order in ORDERS {
+            let mesh = Mesh::new(&lengths, &pieces, order);
+            let part = solve_part(operator, &mesh, 0.0, wanted, Part::Plus, None);
+            let errors = errors_ev(operator, &part, 0.0, Part::Plus);
+            let exact = errors.iter().flatten().all(|error| *error <= tolerance_ev);
+            if exact || (halvings == MAX_HALVINGS && order == ORDERS[ORDERS.len() - 1]) {
+                return (part, errors);
+            }
+        }
+        pieces.iter_mut().for_each(|n| *n *= 2);
+        halvings += 1;
     }
 }
 
@@ -337,7 +375,7 @@ fn pieces(operator: &MultibandOperator) -> Vec<usize> {
     pieces
 }
 
-fn shares(pencil: &MatrixPencil, pair: &NearPair) -> Shares {
+pub(super) fn shares(pencil: &MatrixPencil, pair: &NearPair) -> Shares {
     let n = pencil.components();
     let mut squares = vec![0.0; n];
     for (index, x) in pair.vector.iter().enumerate() {
@@ -387,18 +425,27 @@ pub fn zone_centre_masses(
             if order == 0 { first } else { second }
         })
     });
+    masses_m0(part, &first, &second)
+}
+
+/// The in-plane masses of a part's conduction and then valence states at k∥ = 0, from the terms of first and second order
+/// in k∥.
+pub(super) fn masses_m0(
+    part: &PartSolution,
+    first: &MatrixPencil,
+    second: &MatrixPencil,
+) -> Vec<Option<f64>> {
     let all: Vec<&NearPair> = part.conduction.iter().chain(&part.valence).collect();
-    let mut masses = Vec::with_capacity(all.len());
-    for (index, pair) in all.iter().enumerate() {
+    let masses = all.iter().enumerate().map(|(index, pair)| {
         let sign = if index < part.conduction.len() {
             1.0
         } else {
             -1.0
         };
-        let curvature = curvature(&part.pencil, &first, &second, &all, pair);
-        masses.push(curvature.map(|c| sign * HBAR2_OVER_2M0 / c));
-    }
-    masses
+        let curvature = curvature(&part.pencil, first, second, &all, pair);
+        curvature.map(|c| sign * HBAR2_OVER_2M0 / c)
+    });
+    masses.collect()
 }
 
 /// Energies along a list of k∥ in 1/nm, in the direction of the operator, ascending from the first. The states are

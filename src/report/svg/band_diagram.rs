@@ -600,7 +600,7 @@ fn caption(structure: &Structure, stack: &Stack, zero_ev: f64, states: &[DrawnSt
          {} K, field {} kV/cm, {} mass. The zero is the lowest band edge, {} eV in the table of levels.",
         match structure.conduction.model {
             ConductionModel::Parabolic => ", all of the same area",
-            ConductionModel::EnergyDependent => {
+            ConductionModel::EnergyDependent | ConductionModel::EightBand => {
                 "; shaded: the sum over all components of each state, all of the same area"
             }
         },
