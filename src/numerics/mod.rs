@@ -3,6 +3,7 @@
 
 pub mod banded;
 pub mod curvature;
+pub mod decay;
 pub mod eigenpairs;
 pub mod matrix_pencil;
 pub mod matrix_sensitivity;

@@ -9,6 +9,7 @@ use crate::models::Unsuitable;
 use crate::models::multiband::{
     BlockCoefficient, Direction, MultibandModel, MultibandOperator, Part,
 };
+use crate::numerics::decay::decay_rates;
 use crate::numerics::matrix_pencil::MatrixPencil;
 use crate::numerics::matrix_sensitivity::{At, moment};
 use crate::numerics::mesh::Mesh;
@@ -418,6 +419,7 @@ impl Coupled {
         let mesh = self.mesh();
         let p = mesh.order();
         let states: Vec<Vec<Nodal>> = pairs.iter().map(|pair| self.nodal(pair)).collect();
+        let speeds: Vec<f64> = states.iter().map(|nodal| self.speed(nodal)).collect();
         let mut audit = Audit {
             returned: pairs.len(),
             counted: pairs.len(),
@@ -432,7 +434,6 @@ impl Coupled {
                     continue;
                 }
                 // ⟨i|[H, z]|j⟩ = ∫ ψ_i′·A ψ_j − ψ_i·A ψ_j′ + ψ_i·(Gᵀ − G) ψ_j.
-                let mut size = 0.0;
                 let velocity = state::integrate(mesh, |e, q| {
                     let (x, y) = (&states[i][e * (p + 1) + q], &states[j][e * (p + 1) + q]);
                     let at = self.at(e, q);
@@ -442,16 +443,12 @@ impl Coupled {
                         form(at.g, &y.values, &x.values),
                         -form(at.g, &x.values, &y.values),
                     ];
-                    let weight = 0.5 * mesh.elements[e].length * mesh.reference.weights[q];
-                    size += weight * terms.iter().map(|t| t.abs()).sum::<f64>();
                     terms.iter().sum()
                 });
                 let dipole = moment(&self.part.pencil, &pairs[i].vector, &pairs[j].vector);
                 let off = (velocity - (pairs[i].value - pairs[j].value) * dipole).abs();
-                // Heavy holes have no velocity to anything else: nothing is set against nothing there.
-                if size > 0.0 {
-                    audit.velocity = audit.velocity.max(off / size);
-                }
+                // Against what each moves itself: heavy holes have no velocity to anything else.
+                audit.velocity = audit.velocity.max(off / (speeds[i] * speeds[j]).sqrt());
             }
             audit.sum_rule = audit.sum_rule.max(self.sum_rule_deviation(pairs[i], &states[i]));
         }
@@ -479,6 +476,18 @@ impl Coupled {
         };
         audit.counted = counted(Side::Conduction) + counted(Side::Valence);
         audit
+    }
+
+    /// ∫ |ψ·A ψ′| + |ψ·G ψ| dz, function by function: the size of a state's velocity.
+    fn speed(&self, nodal: &[Nodal]) -> f64 {
+        let mesh = self.mesh();
+        state::integrate(mesh, |e, q| {
+            let at = self.at(e, q);
+            let Nodal { values, slopes } = &nodal[e * (mesh.order() + 1) + q];
+            let sizes = |list: &[f64]| list.iter().map(|v| v.abs()).collect::<Vec<f64>>();
+            let (values, slopes) = (sizes(values), sizes(slopes));
+            form(&at.a.abs(), &values, &slopes) + form(&at.g.abs(), &values, &values)
+        })
     }
 
     /// ⟨zψ| H − E |zψ⟩ = ∫ ψ·A ψ dz, z from the state's centre.
@@ -552,8 +561,7 @@ fn form(matrix: &DMatrix<f64>, x: &[f64], y: &[f64]) -> f64 {
     sum
 }
 
-/// The smallest κ with which a state of this energy decays as exp(−κz) in a bulk: the roots of
-/// det(−A κ² + (Gᵀ − G) κ + C − E) as eigenvalues of the companion matrix. Heavy holes stand alone.
+/// The smallest κ with which a state of this energy decays as exp(−κz) in a bulk. Heavy holes stand alone.
 fn slowest_decay(at: &At, energy_ev: f64, own: Edge) -> Option<f64> {
     let n = at.a.nrows();
     let heavy = n - 3;
@@ -561,18 +569,6 @@ fn slowest_decay(at: &At, energy_ev: f64, own: Edge) -> Option<f64> {
         Edge::Heavy => vec![heavy],
         Edge::Conduction | Edge::Light => (0..n).filter(|&k| k != heavy).collect(),
     };
-    let m = kept.len();
-    let pick = |of: &dyn Fn(usize, usize) -> f64| DMatrix::from_fn(m, m, |i, j| of(kept[i], kept[j]));
-    let inverse = pick(&|i, j| at.a[(i, j)]).try_inverse()?;
-    let linear = &inverse * pick(&|i, j| at.g[(j, i)] - at.g[(i, j)]);
-    let constant = &inverse
-        * pick(&|i, j| at.c[(i, j)] + if i == j { at.raised - energy_ev } else { 0.0 });
-    let mut companion = DMatrix::zeros(2 * m, 2 * m);
-    companion.view_mut((0, m), (m, m)).fill_with_identity();
-    companion.view_mut((m, 0), (m, m)).copy_from(&constant);
-    companion.view_mut((m, m), (m, m)).copy_from(&linear);
-    let rates = companion.complex_eigenvalues();
-    let decays = rates.iter().map(|rate| rate.re.abs());
-    let slowest = decays.fold(f64::INFINITY, f64::min);
+    let slowest = *decay_rates(at, energy_ev, &kept)?.first()?;
     (slowest > 0.0 && slowest.is_finite()).then_some(slowest)
 }
