@@ -5,6 +5,7 @@ use criterion::{Criterion, criterion_group, criterion_main};
 use std::hint::black_box;
 use wellwright::growth;
 use wellwright::models::BandOperator;
+use wellwright::optics::transitions;
 use wellwright::report::Sheet;
 use wellwright::structure;
 use wellwright::subbands::{Accuracy, Subbands, solve};
@@ -45,7 +46,8 @@ fn page(text: &str) -> String {
     let (file, stack, subbands) = solved(text);
     let plan = growth::plan(&file, &stack).expect("it can be grown");
     let chamber = file.growth.as_ref().expect("it has cells");
-    Sheet::new(&file, chamber, &stack, &plan, &subbands, STATES).html(&[])
+    let transitions = transitions(&subbands);
+    Sheet::new(&file, chamber, &stack, &plan, &transitions, STATES).html(&[])
 }
 
 fn bench(c: &mut Criterion) {

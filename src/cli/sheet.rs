@@ -6,10 +6,11 @@ use super::input::Input;
 use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
 use crate::growth;
-use crate::models::BandOperator;
+use crate::models::{Band, BandOperator};
+use crate::optics::band_transitions;
 use crate::report::Sheet;
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
-use crate::subbands::{self, Accuracy};
+use crate::subbands::{self, Accuracy, Bands};
 use std::path::Path;
 
 /// The page samples wafers of stacks up to this size: larger ones would keep the reader waiting.
@@ -32,19 +33,19 @@ pub fn sheet(
         // A plan is made of a `growth` block.
         (Ok(_), None) => return Err(Exit::WrongInput),
     };
-    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
     let highest = aims.map(|aim| aim.from.index.max(aim.to.index)).max();
     let states = input.structure.conduction.states.max(highest.unwrap_or(0));
-    let subbands = subbands::solve(&operator, states, Accuracy::default());
-    input.doubt(&subbands, states);
+    let conduction = Band::Conduction(input.structure.conduction.model);
+    let bands = Bands::solve(&input.stack, &[(conduction, states)], Accuracy::default())
+        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    input.doubt_all(&bands, &[states]);
     let sheet = Sheet::new(
         &input.structure,
         growth,
         &input.stack,
         &plan,
-        &subbands,
+        &band_transitions(&bands, 0),
         states,
     );
     let page = output.is_some_and(|path| {
@@ -57,20 +58,31 @@ pub fn sheet(
         SheetFormat::Table
     }) {
         SheetFormat::Html => {
-            let curves = subbands::curves(&operator, &subbands, states, FINENESS);
-            let diagram =
-                BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
-            let mut pictures = vec![(
-                "Band edge and squared envelopes at their energies".to_owned(),
-                diagram.svg(Width::Page),
-            )];
+            let alone = bands.conduction();
+            let mut pictures = Vec::new();
+            if let Some(subbands) = alone {
+                let operator =
+                    BandOperator::conduction(&input.stack, input.structure.conduction.model)
+                        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+                let curves = subbands::curves(&operator, subbands, states, FINENESS);
+                let diagram =
+                    BandDiagram::new(&input.structure, &input.stack, subbands, curves, states);
+                pictures.push((
+                    "Band edge and squared envelopes at their energies".to_owned(),
+                    diagram.svg(Width::Page),
+                ));
+            } else {
+                let left_out = "the page has no pictures: they show a conduction band that is solved on its own";
+                show(&Diagnostic::warning(left_out), &input.name, &input.text);
+            }
             let layers = input.stack.layers.len();
-            if input.structure.tolerance.is_some() && layers > MOST_SAMPLED_LAYERS {
+            let sampled = input.structure.tolerance.is_some() && alone.is_some();
+            if sampled && layers > MOST_SAMPLED_LAYERS {
                 let left_out = format!(
                     "the yield of {layers} layers is not sampled for the page: `plot --what yield` draws it in its own time"
                 );
                 show(&Diagnostic::warning(left_out), &input.name, &input.text);
-            } else if input.structure.tolerance.is_some() {
+            } else if sampled {
                 let outcome = worked_out(&input, None, None)?;
                 if let Some(bars) = sensitivity_bars(&input.structure, &outcome) {
                     pictures.push((

@@ -24,6 +24,7 @@ use crate::models::{Band, BandOperator, Hole};
 use crate::numerics::mesh::Mesh;
 use crate::numerics::shared_points::SharedPoints;
 use crate::structure::Stack;
+use crate::subbands::multiband::Shares;
 use crate::subbands::{Bands, Place, Solution, State, Subbands};
 use std::borrow::Cow;
 
@@ -68,7 +69,8 @@ pub enum Alignment {
     Apart,
 }
 
-/// An overlap whose square is below this is suppressed, below that forbidden.
+/// A transition whose strengths in the three directions add up to less than this is suppressed, to less than that
+/// forbidden. Where the electron is in one band the sum is the overlap's square.
 const SUPPRESSED: f64 = 0.1;
 const FORBIDDEN: f64 = 1e-8;
 /// Points of the exciton's form factor are in stretches no longer than this, or than this part of the stack: the kink of
@@ -134,7 +136,8 @@ pub fn interband(stack: &Stack, bands: &Bands) -> Vec<Interband> {
                 te: te / unit,
                 tm: tm / unit,
                 kane_energy_ev,
-                selection: match overlap * overlap {
+                // The sum over the three directions of the field: overlap² where the electron is in one band.
+                selection: match (2.0 * te + tm) / unit {
                     s if s < FORBIDDEN => Selection::Forbidden,
                     s if s < SUPPRESSED => Selection::Suppressed,
                     _ => Selection::Allowed,
@@ -289,7 +292,10 @@ pub fn lowest_exciton(stack: &Stack, bands: &Bands) -> Result<(Place, Exciton), 
     let electron = bands.states(0).into_iter().next().ok_or(NoExciton::NoPair)?;
     let hole = bands.states(highest.band).swap_remove(highest.state);
     let edges_ev = [0, highest.band].map(|band| edges_ev(stack, bands, band));
-    let broken = alignment(edges_ev.each_ref(), &electron, &hole) == Alignment::BrokenGap;
+    // Where the bands are inverted the levels next to the gap are of the other kind.
+    let inverted = |shares: &Shares| shares.conduction < 0.5;
+    let broken = alignment(edges_ev.each_ref(), &electron, &hole) == Alignment::BrokenGap
+        || electron.shares.as_ref().is_some_and(inverted);
     if broken || electron.energy_ev <= hole.energy_ev {
         return Err(NoExciton::BrokenGap);
     }

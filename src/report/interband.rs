@@ -194,7 +194,8 @@ impl Interbands {
         };
         let mixed = if self.interband.iter().any(|pair| pair.alignment == MIXED) {
             "Broken gap: the electron's layer has its conduction edge below the hole's valence edge, and the two bands mix; the \
-             shares of the states tell how far. Levels are counted from the gap that the stack still has.\n"
+             shares of the states tell how far. With eight bands levels are counted from the gap by their number, so that one \
+             above it is called `conduction` even where it is mostly a hole: the bands are inverted there.\n"
         } else {
             ""
         };

@@ -7,9 +7,8 @@ use super::strain::StrainReport;
 use super::table::significant;
 use crate::growth::{self, Caution, Digital, Filling, Flag, LayerRow, Plan, Row, Sums, cautions};
 use crate::materials::Element;
-use crate::optics::transitions;
+use crate::optics::Transition;
 use crate::structure::{Growth, Profile, Stack, Structure};
-use crate::subbands::Subbands;
 use serde::Serialize;
 
 /// The whole sheet, in the units in which it is printed.
@@ -168,13 +167,14 @@ pub const GROWER_ENTRIES: [&str; 6] = [
 const FRACTION_DECIMALS: usize = 4;
 
 impl Sheet {
-    /// Gathers the sheet. The transitions are those of the file's aims, or else all among the `shown` lowest states.
+    /// Gathers the sheet. Of the conduction band's transitions those of the file's aims are listed, or else all among the
+    /// `shown` lowest states.
     pub fn new(
         structure: &Structure,
         growth: &Growth,
         stack: &Stack,
         plan: &Plan,
-        subbands: &Subbands,
+        transitions: &[Transition],
         shown: usize,
     ) -> Sheet {
         let aims: Vec<(usize, usize)> = structure
@@ -190,7 +190,7 @@ impl Sheet {
                 aims.contains(&(from, to)) || aims.contains(&(to, from))
             }
         };
-        let transitions = transitions(subbands)
+        let transitions = transitions
             .iter()
             .filter(|t| wanted(t.from, t.to))
             .map(|t| DesignTransition {
