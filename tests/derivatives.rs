@@ -645,7 +645,9 @@ const LOPSIDED_FRACTIONS: &[(usize, Element)] = &[
 #[test]
 fn six_band_holes_of_a_strained_graded_stack_in_a_field() {
     assert_coupled_exact(
-        &lopsided("{conduction: {model: energy-dependent, states: 2}, valence: {model: six-band, states: 4}}"),
+        &lopsided(
+            "{conduction: {model: energy-dependent, states: 2}, valence: {model: six-band, states: 4}}",
+        ),
         LOPSIDED_FRACTIONS,
     );
 }

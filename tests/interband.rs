@@ -480,7 +480,9 @@ fn a_broken_gap_is_named() {
     assert!(ran.stdout.contains("a broken gap"), "{}", ran.stdout);
     assert!(
         ran.stderr.contains("broken.yaml:6:16")
-            && ran.stderr.contains("a broken gap, in which electrons and holes mix")
+            && ran
+                .stderr
+                .contains("a broken gap, in which electrons and holes mix")
             && ran.stderr.contains("{model: eight-band}"),
         "{}",
         ran.stderr

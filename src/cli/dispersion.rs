@@ -67,9 +67,8 @@ pub fn dispersion(
         Along::Axis => (Direction::ALONG_100, "[100]"),
         Along::Diagonal => (Direction::ALONG_110, "[110]"),
     };
-    let operator =
-        MultibandOperator::new(&input.stack, model, direction)
-            .map_err(|(layer, reason)| input.unsuitable(layer, &reason.into()))?;
+    let operator = MultibandOperator::new(&input.stack, model, direction)
+        .map_err(|(layer, reason)| input.unsuitable(layer, &reason.into()))?;
     let k_per_nm: Vec<f64> = (0..points)
         .map(|step| furthest * f64::from(step) / f64::from(points - 1))
         .collect();

@@ -7,9 +7,8 @@ use nalgebra::DMatrix;
 /// det(−A κ² + (Gᵀ − G) κ + C − λ) are the eigenvalues of the companion matrix. `None` when A is singular.
 pub fn decay_rates(at: &At, lambda: f64, kept: &[usize]) -> Option<Vec<f64>> {
     let m = kept.len();
-    let pick = |of: &dyn Fn(usize, usize) -> f64| {
-        DMatrix::from_fn(m, m, |i, j| of(kept[i], kept[j]))
-    };
+    let pick =
+        |of: &dyn Fn(usize, usize) -> f64| DMatrix::from_fn(m, m, |i, j| of(kept[i], kept[j]));
     let inverse = pick(&|i, j| at.a[(i, j)]).try_inverse()?;
     let linear = &inverse * pick(&|i, j| at.g[(j, i)] - at.g[(i, j)]);
     let shift = |i: usize, j: usize| if i == j { at.raised - lambda } else { 0.0 };

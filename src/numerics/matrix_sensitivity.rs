@@ -137,7 +137,10 @@ pub fn pair_slope<'c>(
 /// ∫ z x · y.
 pub fn moment(pencil: &MatrixPencil, x: &[f64], y: &[f64]) -> f64 {
     let n = pencil.components();
-    let products = x.chunks_exact(n).zip(y.chunks_exact(n)).map(|(x, y)| dot(x, y));
+    let products = x
+        .chunks_exact(n)
+        .zip(y.chunks_exact(n))
+        .map(|(x, y)| dot(x, y));
     products.zip(pencil.positions()).map(|(xy, z)| xy * z).sum()
 }
 

@@ -191,7 +191,9 @@ fn joints(bands: &Bands, hole_band: usize) -> Vec<Vec<Joint>> {
             let [te, tm] = factors(holes.band);
             let holes = points.values(1, meshes[1], &vectors(holes));
             let electrons = points.values(0, meshes[0], &vectors(electrons));
-            let pairs = electrons.iter().flat_map(|e| holes.iter().map(move |h| (e, h)));
+            let pairs = electrons
+                .iter()
+                .flat_map(|e| holes.iter().map(move |h| (e, h)));
             let joints = pairs.map(|(electron, hole)| {
                 let overlap = overlap(&points, electron, hole).abs();
                 let square = overlap * overlap;
@@ -214,7 +216,9 @@ fn joints(bands: &Bands, hole_band: usize) -> Vec<Vec<Joint>> {
                     points.values(1, meshes[1], &functions)
                 })
                 .collect();
-            let pairs = electrons.iter().flat_map(|e| holes.iter().map(move |h| (e, h)));
+            let pairs = electrons
+                .iter()
+                .flat_map(|e| holes.iter().map(move |h| (e, h)));
             let joints = pairs.map(|(electron, hole)| {
                 // Heavy, light and split-off hole stand last.
                 let [h, l, s] = [3, 2, 1]
@@ -289,7 +293,11 @@ pub enum NoExciton {
 /// Why there is none.
 pub fn lowest_exciton(stack: &Stack, bands: &Bands) -> Result<(Place, Exciton), NoExciton> {
     let highest = *bands.holes().first().ok_or(NoExciton::NoPair)?;
-    let electron = bands.states(0).into_iter().next().ok_or(NoExciton::NoPair)?;
+    let electron = bands
+        .states(0)
+        .into_iter()
+        .next()
+        .ok_or(NoExciton::NoPair)?;
     let hole = bands.states(highest.band).swap_remove(highest.state);
     let edges_ev = [0, highest.band].map(|band| edges_ev(stack, bands, band));
     // Where the bands are inverted the levels next to the gap are of the other kind.
@@ -353,7 +361,11 @@ impl Pair {
     }
 
     /// Electron and hole at shared points, each as the sum of the squares of its functions, normalised.
-    pub fn of_functions<F: AsRef<[f64]>>(points: &SharedPoints, electron: &[F], hole: &[F]) -> Pair {
+    pub fn of_functions<F: AsRef<[f64]>>(
+        points: &SharedPoints,
+        electron: &[F],
+        hole: &[F],
+    ) -> Pair {
         let probability = |functions: &[F]| -> Vec<f64> {
             let mut list = vec![0.0; points.weights.len()];
             for function in functions {

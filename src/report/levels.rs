@@ -14,8 +14,7 @@ use serde::Serialize;
 /// What the oscillator strengths mean; printed with them.
 const STRENGTH_DEFINITION: &str = "2 m0 E |z|²/ħ² with the free-electron mass; normalised: with the in-plane mass of the lower state";
 /// What the dipoles mean with an energy-dependent mass.
-const DIPOLE_DEFINITION: &str =
-    "|<from|z|to>|, of all components of the states where the mass depends on energy or bands are coupled";
+const DIPOLE_DEFINITION: &str = "|<from|z|to>|, of all components of the states where the mass depends on energy or bands are coupled";
 
 /// The solved levels of a stack.
 #[derive(Debug, Serialize)]
@@ -373,7 +372,14 @@ impl Levels {
             false => format!(
                 "\n{}",
                 table(
-                    &["level", "mostly", "conduction %", "heavy %", "light %", "split-off %"],
+                    &[
+                        "level",
+                        "mostly",
+                        "conduction %",
+                        "heavy %",
+                        "light %",
+                        "split-off %"
+                    ],
                     &[0, 1],
                     characters
                         .iter()
@@ -435,7 +441,8 @@ impl Report for Levels {
             given(self.temperature_k, 4),
             given(self.field_kv_cm, 4),
             match self.valence_model {
-                _ if self.model == model_name(ConductionModel::EightBand) => "eight-band electrons and holes".to_owned(),
+                _ if self.model == model_name(ConductionModel::EightBand) =>
+                    "eight-band electrons and holes".to_owned(),
                 Some(model) => format!("{} mass, {model} holes", self.model),
                 None => format!("{} mass", self.model),
             },

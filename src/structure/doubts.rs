@@ -66,7 +66,11 @@ fn broken_gap(structure: &Structure, stack: &Stack) -> Option<Diagnostic> {
         ConductionModel::Parabolic | ConductionModel::EnergyDependent => {}
     }
     let faces = |layer: usize| {
-        let ends: &[f64] = if stack.is_uniform(layer) { &[0.0] } else { &[0.0, 1.0] };
+        let ends: &[f64] = if stack.is_uniform(layer) {
+            &[0.0]
+        } else {
+            &[0.0, 1.0]
+        };
         ends.iter().map(move |t| stack.material_at(layer, *t))
     };
     let layers = || (0..stack.layers.len()).flat_map(|layer| faces(layer).map(move |m| (layer, m)));

@@ -234,11 +234,14 @@ fn bands(checker: &mut Checker, node: &Node) -> (ConductionBand, Option<ValenceB
         .map(|node| band(checker, node, "`valence`", VALENCE_MODELS));
     let sides = [&conduction, &valence].map(|side| side.as_ref().and_then(|s| s.model.clone()));
     // Eight bands are one problem: what one side says holds for both.
-    let eight_band = sides.iter().flatten().any(|model| model.value == EIGHT_BAND);
-    for (model, (side, other)) in sides.iter().zip([
-        ("conduction", "valence"),
-        ("valence", "conduction"),
-    ]) {
+    let eight_band = sides
+        .iter()
+        .flatten()
+        .any(|model| model.value == EIGHT_BAND);
+    for (model, (side, other)) in sides
+        .iter()
+        .zip([("conduction", "valence"), ("valence", "conduction")])
+    {
         if let Some(model) = model
             && eight_band
             && model.value != EIGHT_BAND

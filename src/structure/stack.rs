@@ -1,8 +1,6 @@
 //! The stack: a flat list of layers from the substrate up, with materials resolved at the temperature and the strain.
 
-use super::file::{
-    ConductionModel, Item, LayerEntry, Profile, Spanned, Structure, ValenceModel,
-};
+use super::file::{ConductionModel, Item, LayerEntry, Profile, Spanned, Structure, ValenceModel};
 use super::grade::{self, Law};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{

@@ -143,10 +143,9 @@ impl Bands {
     /// The probability density of a state at the nodes of each element of a mesh, in 1/nm: all its components together.
     pub fn density(&self, place: Place) -> (&Mesh, Vec<f64>) {
         match self.solution(place.band) {
-            Solution::Alone(subbands) => (
-                &subbands.pencil.mesh,
-                state::density(subbands, place.state),
-            ),
+            Solution::Alone(subbands) => {
+                (&subbands.pencil.mesh, state::density(subbands, place.state))
+            }
             Solution::Coupled(coupled, side) => {
                 (&coupled.pencil().mesh, coupled.density(side, place.state))
             }
@@ -191,7 +190,10 @@ impl Bands {
     pub fn audit(&self) -> Audit {
         let alone = self.alone().map(Subbands::audit);
         let coupled = self.coupled().into_iter().map(Coupled::audit);
-        alone.chain(coupled).reduce(Audit::with).unwrap_or(Audit::CLEAN)
+        alone
+            .chain(coupled)
+            .reduce(Audit::with)
+            .unwrap_or(Audit::CLEAN)
     }
 
     /// The hole states, highest first.

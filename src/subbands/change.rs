@@ -1,7 +1,7 @@
 //! How the discretised problem of a stack changes when one of its numbers does.
 
-use crate::materials::Element;
 use super::Coupled;
+use crate::materials::Element;
 use crate::models::multiband::{Direction, MultibandOperator};
 use crate::models::{self, BandOperator, Unsuitable};
 use crate::numerics::matrix_pencil::MatrixCoefficient;

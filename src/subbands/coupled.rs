@@ -1,7 +1,9 @@
 //! Coupled bands as levels: the states of one member of each pair at k∥ = 0, where both members have the same energy.
 
 use super::audit::Audit;
-use super::multiband::{Band as Side, PartSolution, Shares, Wanted, masses_m0, shares, solve_centre};
+use super::multiband::{
+    Band as Side, PartSolution, Shares, Wanted, masses_m0, shares, solve_centre,
+};
 use super::state::{self, Hold, State};
 use super::strengths::{Strength, strengths};
 use super::{Accuracy, envelope};
@@ -142,7 +144,11 @@ impl Coupled {
 
     /// All levels, those of the conduction band first.
     pub fn all_pairs(&self) -> Vec<&NearPair> {
-        self.part.conduction.iter().chain(&self.part.valence).collect()
+        self.part
+            .conduction
+            .iter()
+            .chain(&self.part.valence)
+            .collect()
     }
 
     pub fn pencil(&self) -> &MatrixPencil {
@@ -156,7 +162,11 @@ impl Coupled {
     /// What the energy of light between two states is set against: E_P in use where the layer is at its bottom, in eV.
     /// `None` for six bands.
     pub fn kane_energy_ev(&self, layer: usize) -> Option<f64> {
-        let element = self.mesh().elements.iter().position(|e| e.segment == layer)?;
+        let element = self
+            .mesh()
+            .elements
+            .iter()
+            .position(|e| e.segment == layer)?;
         let block = &self.blocks[self.places[element * (self.mesh().order() + 1)]];
         (self.model == MultibandModel::EightBand).then(|| block.coefficient.kane_energy_ev())
     }
@@ -256,9 +266,10 @@ impl Coupled {
         let mut density = Vec::with_capacity(self.places.len());
         for e in 0..mesh.elements.len() {
             let p = mesh.order();
-            density.extend((e * p..=(e + 1) * p).map(|node| {
-                functions.iter().map(|f| f[node] * f[node]).sum::<f64>()
-            }));
+            density.extend(
+                (e * p..=(e + 1) * p)
+                    .map(|node| functions.iter().map(|f| f[node] * f[node]).sum::<f64>()),
+            );
         }
         density
     }
@@ -267,7 +278,9 @@ impl Coupled {
     pub fn functions(&self, side: Side, index: usize) -> Vec<Vec<f64>> {
         let vector = &self.pairs(side)[index].vector;
         let components = 0..self.model.components();
-        components.map(|k| self.part.pencil.function(vector, k)).collect()
+        components
+            .map(|k| self.part.pencil.function(vector, k))
+            .collect()
     }
 
     /// |⟨i|z|j⟩| of two states of one side, in nm.
@@ -358,7 +371,9 @@ impl Coupled {
             self.heights(edge)
                 .enumerate()
                 .filter(|(node, _)| elements[node / per_element].segment == segment)
-                .fold(f64::NEG_INFINITY, |highest, (_, height)| highest.max(height))
+                .fold(f64::NEG_INFINITY, |highest, (_, height)| {
+                    highest.max(height)
+                })
         };
         highest(0).min(highest(last))
     }
@@ -373,7 +388,9 @@ impl Coupled {
                 .count_below(self.lower_outer_ev(Edge::Conduction))
                 .saturating_sub(gap),
             Side::Valence => {
-                let edge_ev = -self.lower_outer_ev(Edge::Heavy).min(self.lower_outer_ev(Edge::Light));
+                let edge_ev = -self
+                    .lower_outer_ev(Edge::Heavy)
+                    .min(self.lower_outer_ev(Edge::Light));
                 gap.saturating_sub(pencil.count_below(edge_ev))
             }
         }
@@ -427,7 +444,12 @@ impl Coupled {
         };
         for i in 0..pairs.len() {
             for j in i..pairs.len() {
-                let inner: f64 = pairs[i].vector.iter().zip(&pairs[j].vector).map(|(x, y)| x * y).sum();
+                let inner: f64 = pairs[i]
+                    .vector
+                    .iter()
+                    .zip(&pairs[j].vector)
+                    .map(|(x, y)| x * y)
+                    .sum();
                 let wanted = f64::from(u8::from(i == j));
                 audit.orthonormality = audit.orthonormality.max((inner - wanted).abs());
                 if i == j {
@@ -450,7 +472,9 @@ impl Coupled {
                 // Against what each moves itself: heavy holes have no velocity to anything else.
                 audit.velocity = audit.velocity.max(off / (speeds[i] * speeds[j]).sqrt());
             }
-            audit.sum_rule = audit.sum_rule.max(self.sum_rule_deviation(pairs[i], &states[i]));
+            audit.sum_rule = audit
+                .sum_rule
+                .max(self.sum_rule_deviation(pairs[i], &states[i]));
         }
         let gap = self.gap_number();
         let counted = |side: Side| {
@@ -460,9 +484,11 @@ impl Coupled {
             };
             let clear = 1e-9 * (1.0 + last.value.abs());
             let up_to = |beyond: f64| match side {
-                Side::Conduction => {
-                    self.part.pencil.count_below(last.value + beyond).saturating_sub(gap)
-                }
+                Side::Conduction => self
+                    .part
+                    .pencil
+                    .count_below(last.value + beyond)
+                    .saturating_sub(gap),
                 Side::Valence => {
                     gap.saturating_sub(self.part.pencil.count_below(last.value - beyond))
                 }

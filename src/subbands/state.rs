@@ -1,8 +1,8 @@
 //! What is known of one state.
 
 use super::Subbands;
-use crate::constants::HBAR2_OVER_2M0;
 use super::multiband::Shares;
+use crate::constants::HBAR2_OVER_2M0;
 use crate::numerics::mesh::Mesh;
 use crate::numerics::pencil::Pencil;
 use crate::numerics::quadrature::MAX_ORDER;

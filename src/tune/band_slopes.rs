@@ -29,9 +29,9 @@ impl<'b> BandSlopes<'b> {
         match solution {
             Solution::Alone(subbands) => {
                 let operator = BandOperator::new(stack, subbands.band).ok();
-                let changes = knobs.iter().filter_map(|&knob| {
-                    Some(change(operator.as_ref()?, &subbands.pencil, knob))
-                });
+                let changes = knobs
+                    .iter()
+                    .filter_map(|&knob| Some(change(operator.as_ref()?, &subbands.pencil, knob)));
                 BandSlopes::Alone {
                     subbands,
                     changes: changes.collect(),

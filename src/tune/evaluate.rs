@@ -1,8 +1,8 @@
 //! A stack at given values of its variables, solved and set against the aims.
 
 use super::aim::{Aim, Goal};
-use super::keep::Keep;
 use super::band_slopes::BandSlopes;
+use super::keep::Keep;
 use crate::models::{Band, Unsuitable};
 use crate::structure::{BandName, Knob, Level, Stack};
 use crate::subbands::{Accuracy, Bands, Place};
