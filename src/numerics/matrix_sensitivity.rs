@@ -56,8 +56,8 @@ fn changed_product<'c>(
     let (n, p) = (pencil.components(), reference.order);
     let functions: Vec<Vec<f64>> = (0..n).map(|k| pencil.function(&pair.vector, k)).collect();
     let mut images = vec![vec![0.0; mesh.node_count()]; n];
-    let mut slopes = vec![[0.0; MAX_ORDER + 1]; n];
-    let (mut along, mut across) = (slopes.clone(), slopes.clone());
+    let empty = [0.0; MAX_ORDER + 1];
+    let (mut slopes, mut along, mut across) = (vec![empty; n], vec![empty; n], vec![empty; n]);
     for (index, element) in mesh.elements.iter().enumerate() {
         let stretch = change.elements[index].1;
         let own = &change.coefficients[index * (p + 1)..(index + 1) * (p + 1)];
@@ -70,6 +70,7 @@ fn changed_product<'c>(
             reference.slopes(mesh.local(index, function), &mut slopes[..=p]);
         }
         let value = |k: usize, q: usize| functions[k][index * p + q];
+        let slope_of = |k: usize, q: usize| slopes[k][q];
         for q in 0..=p {
             let (here, slope, w) = (at(index, q), &own[q], reference.weights[q]);
             let (shorter, longer) = (2.0 / element.length * w, 0.5 * element.length * w);
@@ -77,15 +78,15 @@ fn changed_product<'c>(
                 let (mut f, mut g) = (0.0, longer * slope.raised * value(r, q));
                 if relative != 0.0 {
                     for c in 0..n {
-                        f -= shorter * relative * here.a[(r, c)] * slopes[c][q];
+                        f -= shorter * relative * here.a[(r, c)] * slope_of(c, q);
                         g += longer * relative * here.c[(r, c)] * value(c, q);
                     }
                     g += longer * relative * (here.raised - pair.value) * value(r, q);
                 }
                 if let Some(m) = &slope.matrices {
                     for c in 0..n {
-                        f += shorter * m.a[(r, c)] * slopes[c][q] + w * m.g[(r, c)] * value(c, q);
-                        g += w * m.g[(c, r)] * slopes[c][q] + longer * m.c[(r, c)] * value(c, q);
+                        f += shorter * m.a[(r, c)] * slope_of(c, q) + w * m.g[(r, c)] * value(c, q);
+                        g += w * m.g[(c, r)] * slope_of(c, q) + longer * m.c[(r, c)] * value(c, q);
                     }
                 }
                 (along[r][q], across[r][q]) = (f, g);

@@ -300,11 +300,14 @@ pub fn lowest_exciton(stack: &Stack, bands: &Bands) -> Result<(Place, Exciton), 
         .ok_or(NoExciton::NoPair)?;
     let hole = bands.states(highest.band).swap_remove(highest.state);
     let edges_ev = [0, highest.band].map(|band| edges_ev(stack, bands, band));
-    // Where the bands are inverted the levels next to the gap are of the other kind.
+    // In a broken gap that confinement has opened again, the two are an ordinary pair.
+    let inside = electron.energy_ev < edges_ev[1][hole.layer][kind(&hole)];
+    let apart = alignment(edges_ev.each_ref(), &electron, &hole) != Alignment::BrokenGap;
     let inverted = |shares: &Shares| shares.conduction < 0.5;
-    let broken = alignment(edges_ev.each_ref(), &electron, &hole) == Alignment::BrokenGap
-        || electron.shares.as_ref().is_some_and(inverted);
-    if broken || electron.energy_ev <= hole.energy_ev {
+    if electron.energy_ev <= hole.energy_ev
+        || (inside && !apart)
+        || electron.shares.as_ref().is_some_and(inverted)
+    {
         return Err(NoExciton::BrokenGap);
     }
     for (is_hole, state) in [(false, &electron), (true, &hole)] {

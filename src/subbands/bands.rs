@@ -16,7 +16,7 @@ pub struct Bands(Vec<(Band, Solved)>);
 
 #[derive(Clone, Debug)]
 enum Solved {
-    Alone(Subbands),
+    Alone(Box<Subbands>),
     /// One side of the gap of a solution that both sides share.
     Coupled(Arc<Coupled>, Side),
 }
@@ -65,7 +65,8 @@ impl Bands {
         let solved = asked.iter().map(|&(band, count)| {
             let Some(model) = band.coupled() else {
                 let operator = BandOperator::new(stack, band)?;
-                return Ok((band, Solved::Alone(solve(&operator, count, accuracy))));
+                let subbands = Box::new(solve(&operator, count, accuracy));
+                return Ok((band, Solved::Alone(subbands)));
             };
             let coupled = match &shared {
                 Some(known) => known.clone(),
@@ -97,7 +98,7 @@ impl Bands {
     /// The bands that were solved on their own.
     pub fn alone(&self) -> impl Iterator<Item = &Subbands> {
         self.0.iter().filter_map(|(_, solved)| match solved {
-            Solved::Alone(subbands) => Some(subbands),
+            Solved::Alone(subbands) => Some(&**subbands),
             Solved::Coupled(..) => None,
         })
     }
