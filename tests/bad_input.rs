@@ -789,12 +789,6 @@ fn parts_that_are_not_there_yet_are_said_to_be_so() {
         7,
         &["not available yet", "`walls`"],
     );
-    one_mistake(
-        &with_head("bands: {conduction: {model: eight-band}}"),
-        1,
-        29,
-        &["`eight-band` is not available yet"],
-    );
 }
 
 #[test]

@@ -96,6 +96,7 @@ fn values(design: &Design) -> Vec<f64> {
     let energies = design
         .bands
         .conduction()
+        .unwrap()
         .pairs
         .iter()
         .map(|pair| pair.value);
@@ -103,7 +104,12 @@ fn values(design: &Design) -> Vec<f64> {
 }
 
 /// The sixth-order difference of all values in a knob.
-fn difference(task: &Task, knob: Knob, step: f64) -> Vec<f64> {
+fn difference(
+    task: &Task,
+    knob: Knob,
+    step: f64,
+    values: impl Fn(&Design) -> Vec<f64>,
+) -> Vec<f64> {
     let at = knob.value(&task.stack).unwrap();
     let solved = |shift: f64| {
         let mut stack = task.stack.clone();
@@ -127,7 +133,7 @@ fn assert_exact(case: &Case) {
     let task = task(case);
     let design = task.design(task.stack.clone(), None).unwrap();
     let operator = BandOperator::new(&task.stack, task.bands[0].0).unwrap();
-    let subbands = design.bands.conduction();
+    let subbands = design.bands.conduction().unwrap();
     let pencil = &subbands.pencil;
     let dipole_slopes = task.value_slopes(&design);
     let n = case.states;
@@ -144,8 +150,8 @@ fn assert_exact(case: &Case) {
             Knob::Field => 1e-4 * case.steps.2,
         };
         let (coarse, fine) = (
-            difference(&task, variable.knob, step),
-            difference(&task, variable.knob, 0.5 * step),
+            difference(&task, variable.knob, step, values),
+            difference(&task, variable.knob, 0.5 * step, values),
         );
         let own = change(&operator, pencil, variable.knob);
         let energy_slopes = subbands
@@ -500,4 +506,156 @@ layers:
         ],
         steps: (0.02, 0.002, 0.05),
     });
+}
+
+/// Rounding of a level of coupled bands, in eV: that of the thin elements' stiffness, some 1e4 eV.
+const COUPLED_ROUNDING: f64 = 1e-11;
+
+/// The same for coupled bands: transitions between the sides of the gap, and all dipoles within each, a state with itself
+/// included.
+#[track_caller]
+fn assert_coupled_exact(text: &str, fractions: &[(usize, Element)]) {
+    let (file, problems) = structure::read(text);
+    let file = file.unwrap_or_else(|| panic!("{problems:#?}"));
+    let stack = file.stack().unwrap();
+    let bands = Band::of(&file);
+    let entries = 1 + stack.layers.iter().map(|layer| layer.entry).max().unwrap();
+    let knobs = (0..entries)
+        .map(|entry| (Knob::Width { entry }, 0.02))
+        .chain(
+            fractions
+                .iter()
+                .map(|&(entry, element)| (Knob::Fraction { entry, element }, 1e-3)),
+        )
+        .chain([(Knob::Field, 1e-5)]);
+    let knobs: Vec<(Knob, f64)> = knobs.collect();
+    let level = |band: usize, state: usize| Level {
+        band: bands[band].0.name(),
+        index: state + 1,
+    };
+    let mut aims = Vec::new();
+    let mut aim = |from: Level, to: Level, goal: Goal| {
+        aims.push(Aim {
+            from,
+            to,
+            goal,
+            weight: 1.0,
+            by_character: false,
+        });
+    };
+    for i in 0..bands[0].1 {
+        for j in 0..bands[1].1 {
+            let energy = Goal::Energy {
+                target_ev: 1.0,
+                within_ev: 0.1,
+            };
+            aim(level(1, j), level(0, i), energy);
+        }
+    }
+    for (band, &(_, states)) in bands.iter().enumerate() {
+        for i in 0..states {
+            for j in i..states {
+                let dipole = Goal::Dipole {
+                    target_nm: 1.0,
+                    within_nm: 0.1,
+                };
+                aim(level(band, i), level(band, j), dipole);
+            }
+        }
+    }
+    let task = Task {
+        stack,
+        bands: bands.clone(),
+        variables: knobs
+            .iter()
+            .map(|&(knob, _)| Variable {
+                knob,
+                low: 0.0,
+                high: 1.0,
+                name: format!("{knob:?}"),
+            })
+            .collect(),
+        aims,
+        keeps: Vec::new(),
+        accuracy: ACCURACY,
+    };
+    let design = task.design(task.stack.clone(), None).unwrap();
+    let exact = task.value_slopes(&design);
+    let energies = bands[0].1 * bands[1].1;
+    let values = |design: &Design| design.values.clone();
+    let mut worst = 0.0_f64;
+    for (column, &(knob, step)) in knobs.iter().enumerate() {
+        let [coarse, fine] = [step, 0.5 * step].map(|step| difference(&task, knob, step, values));
+        let largest =
+            |range: std::ops::Range<usize>| fine[range].iter().fold(0.0_f64, |a, b| a.max(b.abs()));
+        let scales = [largest(0..energies), largest(energies..fine.len())];
+        for row in 0..fine.len() {
+            let is_energy = row < energies;
+            let scale = fine[row].abs().max(SMALL * scales[usize::from(!is_energy)]);
+            // Of dipoles: over the distance of near levels, here at least a tenth of a meV.
+            let rounding = if is_energy { 1.0 } else { 1e3 } * COUPLED_ROUNDING / step;
+            let relative = |deviation: f64| (deviation.abs() - rounding) / scale;
+            let aim = &task.aims[row];
+            assert!(
+                relative(coarse[row] - fine[row]) < UNSURE,
+                "{} to {} by {knob:?}: the differences {} and {} do not agree; choose another step",
+                aim.from,
+                aim.to,
+                coarse[row],
+                fine[row]
+            );
+            let miss = relative(exact[(row, column)] - fine[row]);
+            worst = worst.max((exact[(row, column)] - fine[row]).abs() / scale);
+            assert!(
+                miss < RELATIVE,
+                "{} to {} by {knob:?}: {} where differences say {}, relative {miss:.1e}",
+                aim.from,
+                aim.to,
+                exact[(row, column)],
+                fine[row]
+            );
+        }
+    }
+    println!("worst {worst:.1e}");
+}
+
+/// A strained stack with a graded layer and a field, so that nothing is its own mirror image.
+fn lopsided(bands: &str) -> String {
+    format!(
+        "\
+field: 15 kV/cm
+substrate: GaAs
+bands: {bands}
+layers:
+  - {{material: Al0.3Ga0.7As, width: 9 nm}}
+  - {{material: In0.12Ga0.88As, width: 6.1 nm}}
+  - {{material: GaAs, to: Al0.2Ga0.8As, width: 3.3 nm}}
+  - {{material: Al0.28Ga0.72As, width: 8 nm}}
+"
+    )
+}
+
+const LOPSIDED_FRACTIONS: &[(usize, Element)] = &[
+    (0, Element::Al),
+    (1, Element::In),
+    (2, Element::Ga),
+    (3, Element::Al),
+];
+
+#[test]
+fn six_band_holes_of_a_strained_graded_stack_in_a_field() {
+    assert_coupled_exact(
+        &lopsided(
+            "{conduction: {model: energy-dependent, states: 2}, valence: {model: six-band, states: 4}}",
+        ),
+        LOPSIDED_FRACTIONS,
+    );
+}
+
+#[test]
+fn eight_bands_of_a_strained_graded_stack_in_a_field() {
+    assert_coupled_exact(
+        &lopsided("{conduction: {model: eight-band, states: 2}, valence: {states: 4}}"),
+        LOPSIDED_FRACTIONS,
+    );
 }

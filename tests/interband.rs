@@ -166,7 +166,7 @@ fn the_field_draws_electron_and_hole_apart() {
     let middle = 0.5 * stack.total_width_nm();
     let centre = |band: BandName| {
         let place = bands.place(level(band, 1));
-        bands.of(place).states()[place.state].centre_nm
+        bands.states(place.band)[place.state].centre_nm
     };
     assert!(centre(BandName::Conduction) < middle - 0.5);
     assert!(centre(BandName::HeavyHole) > middle + 0.5);
@@ -232,8 +232,8 @@ fn a_strained_laser_well() {
             energy_ev(&bands, BandName::Conduction, 1) - energy_ev(&bands, BandName::HeavyHole, 1);
         close(1e3 * HC_EV_UM / ev, nm, 15.0);
         // Electron and heavy hole are bound: the compressed well holds both.
-        assert!(bands.conduction().bound_count() >= 1);
-        assert!(bands.all()[1].bound_count() >= 1);
+        assert!(bands.bound_count(0) >= 1);
+        assert!(bands.bound_count(1) >= 1);
     }
 }
 
@@ -387,7 +387,8 @@ fn exciton_binding_against_the_width() {
     ] {
         let (_, bands) = solved(&well(width, 25.0, [0.2591, 0.159], masses, [1, 2]));
         for (band, plane, expected) in [(1, 6.98 + 2.06, heavy_mev), (2, 6.98 - 2.06, light_mev)] {
-            let (electrons, holes) = (bands.conduction(), &bands.all()[band]);
+            let electrons = bands.conduction().unwrap();
+            let holes = bands.alone().nth(band).unwrap();
             let meshes = [&electrons.pencil.mesh, &holes.pencil.mesh];
             let points = SharedPoints::new(meshes, 1.0);
             let envelope = |which: usize, vector: &[f64]| {
@@ -471,12 +472,21 @@ fn a_broken_gap_is_named() {
         .code(0)
         .json();
     let first = &list(&json, "interband")[0];
-    assert_eq!(first["alignment"], "type II");
+    assert_eq!(first["alignment"], "broken gap");
     assert!((-143.0..0.0).contains(&number(first, "energy_meV")));
     assert!(first["wavelength_um"].is_null());
     assert!(json["exciton"].is_null());
-    let text = bench.run(&["levels", "broken.yaml"]).code(0).stdout;
-    assert!(text.contains("a broken gap"), "{text}");
+    let ran = bench.run(&["levels", "broken.yaml"]).code(0);
+    assert!(ran.stdout.contains("a broken gap"), "{}", ran.stdout);
+    assert!(
+        ran.stderr.contains("broken.yaml:6:16")
+            && ran
+                .stderr
+                .contains("a broken gap, in which electrons and holes mix")
+            && ran.stderr.contains("{model: eight-band}"),
+        "{}",
+        ran.stderr
+    );
 }
 
 const MODULATOR: &str = "substrate: GaAs
@@ -676,12 +686,10 @@ fn what_does_not_fit_is_told() {
         }
     };
     let layers = "layers: [{name: well, material: GaAs, width: 9 nm}]\n";
-    for model in ["six-band", "eight-band"] {
-        refused(
-            &format!("bands: {{valence: {{model: {model}}}}}\n{layers}"),
-            &["bad.yaml:1:26", "is not available yet", "`decoupled`"],
-        );
-    }
+    refused(
+        &format!("bands: {{valence: {{model: sixband}}}}\n{layers}"),
+        &["bad.yaml:1:26", "did you mean `six-band`?"],
+    );
     refused(
         &format!("bands: {{valence: {{model: decoupld, states: 0}}}}\n{layers}"),
         &["did you mean `decoupled`?", "`0` is out of range"],

@@ -42,7 +42,7 @@ fn solved(text: &str) -> Solved {
         .unwrap_or_else(|problems| panic!("{problems:?}\n{text}"));
     let bands = Bands::solve(&stack, &Band::of(&structure), Accuracy::default()).unwrap();
     let shown = bands.asked_for(&structure);
-    let curves = bands.all().iter().zip(&shown).map(|(solved, shown)| {
+    let curves = bands.alone().zip(&shown).map(|(solved, shown)| {
         let operator = BandOperator::new(&stack, solved.band).unwrap();
         curves(&operator, solved, *shown, FINENESS)
     });
@@ -705,9 +705,9 @@ fn holes_hang_below_the_electrons() {
     for text in WITH_HOLES {
         let solved = solved(text);
         let bands = &solved.bands;
-        let edges = bands.all()[1..].iter().map(|band| -band.pencil.floor());
+        let edges = bands.alone().skip(1).map(|band| -band.pencil.floor());
         let zeros = [
-            bands.conduction().pencil.floor(),
+            bands.conduction().unwrap().pencil.floor(),
             edges.fold(f64::NEG_INFINITY, f64::max),
         ];
         let holes: Vec<f64> = bands

@@ -260,7 +260,7 @@ fn terahertz(table: &mut Table) {
     )
     .unwrap();
     assert!(outcome.met[0]);
-    let list = transitions(outcome.after.bands.conduction());
+    let list = transitions(outcome.after.bands.conduction().unwrap());
     let lasing = list.iter().find(|t| (t.from, t.to) == (2, 3)).unwrap();
     let mut device = table.device(
         "3.9 THz, GaAs/Al0.15Ga0.85As",

@@ -288,22 +288,28 @@ fn parts_that_are_not_available() {
         &[(1, 7, &["`wals`", "did you mean `walls`?"])],
     );
     mistakes(
-        &with("bands: {valence: {model: six-band}}"),
-        &[(1, 26, &["`six-band` is not available yet", "`decoupled`"])],
+        &with("bands: {conduction: {model: eight-band, states: 0}}"),
+        &[(1, 49, &["`0` is out of range", "1 to 200"])],
     );
     mistakes(
-        &with("bands: {conduction: {model: eight-band, states: 0}}"),
-        &[
-            (
-                1,
-                29,
-                &[
-                    "`eight-band` is not available yet",
-                    "`parabolic` or `energy-dependent`",
-                ],
-            ),
-            (1, 49, &["`0` is out of range", "1 to 200"]),
-        ],
+        &with("bands: {conduction: {model: eight-band}, valence: {model: six-band}}"),
+        &[(
+            1,
+            59,
+            &[
+                "`eight-band` solves electrons and holes as one problem",
+                "`valence` asks for `six-band`",
+                "no `model` here",
+            ],
+        )],
+    );
+    mistakes(
+        &with("bands: {conduction: {model: parabolic}, valence: {model: eight-band}}"),
+        &[(1, 29, &["`conduction` asks for `parabolic`"])],
+    );
+    mistakes(
+        &with("bands: {conduction: {model: six-band}}"),
+        &[(1, 29, &["`six-band`", "expected"])],
     );
     mistakes(
         &with("bands: {conduction: {states: 1000000}}"),

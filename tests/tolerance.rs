@@ -7,7 +7,7 @@ use wellwright::diagnostics::Severity;
 use wellwright::models::{Band, BandOperator};
 use wellwright::numerics::sensitivity::value_slope;
 use wellwright::structure::{self, Cause, Design, Knob, Level, Stack, Structure, document};
-use wellwright::subbands::{Accuracy, Bands, change, solve};
+use wellwright::subbands::{Accuracy, Bands, Place, change, solve};
 use wellwright::tolerance::{Followed, Outcome, Sensitivity, sensitivities, tolerance};
 
 const FINE: Accuracy = Accuracy {
@@ -38,7 +38,7 @@ fn sensitivities_of(text: &str) -> Vec<Sensitivity> {
     let grading = structure.tolerance.as_ref().and_then(|t| t.grading.clone());
     let design = Design::new(&stack, grading.map(|g| g.length_nm)).unwrap();
     let bands = Bands::solve(design.stack(), &Band::of(&structure), FINE).unwrap();
-    let names = bands.all().iter().flat_map(|solved| {
+    let names = bands.alone().flat_map(|solved| {
         let band = solved.band.name();
         (1..=solved.pairs.len()).map(move |index| Level { band, index })
     });
@@ -869,7 +869,7 @@ fn two_of_each(text: &str) -> Vec<f64> {
         .map(|(b, _)| (b, 2))
         .collect();
     let bands = Bands::solve(&stack, &asked, FINE).unwrap();
-    let two = bands.all().iter();
+    let two = bands.alone();
     two.flat_map(|band| [band.energy_ev(0), band.energy_ev(1)])
         .collect()
 }
@@ -884,7 +884,7 @@ fn shifts_between_bands_are_those_of_full_solves() {
         .map(|(b, _)| (b, 2))
         .collect();
     let bands = Bands::solve(design.stack(), &asked, FINE).unwrap();
-    let names = bands.all().iter().flat_map(|solved| {
+    let names = bands.alone().flat_map(|solved| {
         let band = solved.band.name();
         (1..=2).map(move |index| Level { band, index })
     });
@@ -968,7 +968,8 @@ fn the_highest_hole_is_that_of_each_wafer() {
     let apart = |width: f64| {
         let (structure, stack) = read(&text(width));
         let bands = Bands::solve(&stack, &Band::of(&structure), FINE).unwrap();
-        bands.all()[1].energy_ev(0) - bands.all()[2].energy_ev(0)
+        let top_ev = |band| bands.energy_ev(Place { band, state: 0 });
+        top_ev(1) - top_ev(2)
     };
     let (mut narrow, mut wide) = (3.0, 14.0);
     assert!(apart(narrow) > 0.0 && apart(wide) < 0.0);

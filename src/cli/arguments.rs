@@ -110,12 +110,13 @@ pub enum Command {
     Dispersion {
         /// Structure file
         file: PathBuf,
-        /// Bands that are coupled: heavy, light and split-off holes, or these and the electrons
-        #[arg(long, value_enum, default_value_t = Coupled::SixBand)]
-        model: Coupled,
-        /// Subbands of each band, counted from the gap
-        #[arg(long, value_name = "N", default_value_t = 4, value_parser = clap::value_parser!(u8).range(1..=50))]
-        states: u8,
+        /// Bands that are coupled: heavy, light and split-off holes, or these and the electrons. That of the file when
+        /// left out, and six bands when it names none
+        #[arg(long, value_enum)]
+        model: Option<Coupled>,
+        /// Subbands of each band, counted from the gap; 4, or as many as the file asks for with the same model
+        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u8).range(1..=50))]
+        states: Option<u8>,
         /// Direction of the wave vector
         #[arg(long, value_enum, default_value_t = Along::Axis)]
         along: Along,

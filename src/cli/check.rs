@@ -3,7 +3,7 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver};
 use super::input::Input;
-use crate::models::{Band, BandOperator};
+use crate::models::Band;
 use crate::report::Check;
 use std::path::Path;
 
@@ -11,7 +11,7 @@ pub fn check(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
     for (band, _) in Band::of(&input.structure) {
-        BandOperator::new(&input.stack, band)
+        band.check(&input.stack)
             .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     }
     input.doubt_growth();

@@ -4,9 +4,11 @@ use super::arguments::{Along, Coupled, Output};
 use super::deliver::{Exit, check_output, complain, deliver, show, write};
 use super::input::Input;
 use crate::diagnostics::Diagnostic;
+use crate::models::Band;
 use crate::models::multiband::{Direction, MultibandModel, MultibandOperator};
 use crate::report::Dispersion;
 use crate::report::svg::Width;
+use crate::structure::Structure;
 use crate::subbands::multiband::{Wanted, follow_multiband, solve_multiband, zone_centre_masses};
 use crate::units::{self, Dimension};
 use std::path::Path;
@@ -15,10 +17,13 @@ use std::path::Path;
 const TOLERANCE_EV: f64 = 1e-6;
 /// Beyond this wave vector, in 1/nm, no model of bands around the zone's centre holds.
 const LARGEST_PER_NM: f64 = 2.0;
+/// Subbands of each band when nothing asks for a number, and the most that are followed.
+const DEFAULT_STATES: usize = 4;
+const MOST_STATES: usize = 50;
 
 pub fn dispersion(
     file: &Path,
-    (model, states): (Coupled, u8),
+    (model, states): (Option<Coupled>, Option<u8>),
     (along, to, points): (Along, &str, u16),
     output: &Output,
 ) -> Result<Exit, Exit> {
@@ -41,32 +46,29 @@ pub fn dispersion(
             return Err(Exit::WrongInput);
         }
     };
+    let named = Band::of(&input.structure)
+        .into_iter()
+        .find_map(|(band, _)| band.coupled());
     let model = match model {
-        Coupled::SixBand => MultibandModel::SixBand,
-        Coupled::EightBand => MultibandModel::EightBand,
+        Some(Coupled::SixBand) => MultibandModel::SixBand,
+        Some(Coupled::EightBand) => MultibandModel::EightBand,
+        None => named.unwrap_or(MultibandModel::SixBand),
     };
+    let apart = input.structure.valence.is_some() && named.is_none();
+    if apart {
+        let words = format!(
+            "the file solves its holes apart from one another; the dispersion is that of the {} model",
+            model.name()
+        );
+        show(&Diagnostic::warning(words), &input.name, &input.text);
+    }
+    let wanted = wanted(&input.structure, model, states.map(usize::from));
     let (direction, name) = match along {
         Along::Axis => (Direction::ALONG_100, "[100]"),
         Along::Diagonal => (Direction::ALONG_110, "[110]"),
     };
-    let operator =
-        MultibandOperator::new(&input.stack, model, direction).map_err(|(layer, reason)| {
-            let layer = &input.stack.layers[layer];
-            let words = format!("the material of `{}` {reason}", layer.label);
-            let mut problem = Diagnostic::error(words);
-            if let Some(entry) = input.structure.entries.get(layer.entry) {
-                problem = problem.at(entry.material.span.clone());
-            }
-            show(&problem, &input.name, &input.text);
-            Exit::WrongInput
-        })?;
-    let wanted = Wanted {
-        conduction: match model {
-            MultibandModel::SixBand => 0,
-            MultibandModel::EightBand => usize::from(states),
-        },
-        valence: usize::from(states),
-    };
+    let operator = MultibandOperator::new(&input.stack, model, direction)
+        .map_err(|(layer, reason)| input.unsuitable(layer, &reason.into()))?;
     let k_per_nm: Vec<f64> = (0..points)
         .map(|step| furthest * f64::from(step) / f64::from(points - 1))
         .collect();
@@ -91,5 +93,24 @@ pub fn dispersion(
             write(path, &report.svg(Width::Page), file)
         }
         path => deliver(&report, output.format, path, file),
+    }
+}
+
+/// How many subbands of each band: those that the command line asks for, or the file for this model.
+fn wanted(structure: &Structure, model: MultibandModel, states: Option<usize>) -> Wanted {
+    let asked = Band::of(structure).into_iter();
+    let of_file = |sign: f64| {
+        asked
+            .clone()
+            .find(|(band, _)| band.coupled() == Some(model) && band.sign() == sign)
+            .map(|(_, count)| count.min(MOST_STATES))
+    };
+    let count = |sign| states.or_else(|| of_file(sign)).unwrap_or(DEFAULT_STATES);
+    Wanted {
+        conduction: match model {
+            MultibandModel::SixBand => 0,
+            MultibandModel::EightBand => count(1.0),
+        },
+        valence: count(-1.0),
     }
 }

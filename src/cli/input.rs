@@ -3,9 +3,9 @@
 use super::deliver::{Exit, complain, show};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
-use crate::models::Unsuitable;
-use crate::structure::{self, Stack, Structure};
-use crate::subbands::{Bands, Hold, State, Subbands};
+use crate::models::{Band, Unsuitable};
+use crate::structure::{self, ConductionModel, Stack, Structure};
+use crate::subbands::{Audit, Bands, Hold, State};
 use std::collections::BTreeSet;
 use std::fs::File;
 use std::io::Read;
@@ -75,11 +75,35 @@ impl Input {
         Exit::WrongInput
     }
 
+    /// Tells a file whose bands are coupled from what a command takes, bands that are solved on their own.
+    ///
+    /// # Errors
+    /// When electrons and holes are one problem, of which the command takes no part.
+    pub fn without_coupled(&self, what: &str) -> Result<(), Exit> {
+        if self.structure.conduction.model == ConductionModel::EightBand {
+            let problem = Diagnostic::error(format!(
+                "{what} bands that are solved on their own, and this file's are `eight-band`"
+            ))
+            .expected("`parabolic` or `energy-dependent` for `conduction`")
+            .hint("`levels`, `tune` and `dispersion` take eight bands");
+            show(&problem, &self.name, &self.text);
+            return Err(Exit::WrongInput);
+        }
+        if Band::alone(&self.structure).len() < Band::of(&self.structure).len() {
+            let words = format!(
+                "{what} the conduction band only, since the holes are coupled; `levels` and `tune` solve them too"
+            );
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
+        Ok(())
+    }
+
     /// Doubts about the solutions of all bands, of each about the states that are listed.
     pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
-        for (band, shown) in bands.all().iter().zip(shown) {
-            self.doubt(band, *shown);
+        for (band, shown) in shown.iter().enumerate() {
+            self.doubt_states(bands.band(band), &bands.states(band), *shown);
         }
+        self.audited(&bands.audit());
     }
 
     /// Doubts about whether the layers stay coherent.
@@ -89,23 +113,22 @@ impl Input {
         }
     }
 
-    /// Doubts about a solution. States of one kind, one above the other in one layer, share a message.
-    pub fn doubt(&self, subbands: &Subbands, shown: usize) {
+    /// Doubts about the states of one band. States of one kind, one above the other in one layer, share a message.
+    fn doubt_states(&self, band: Band, states: &[State], shown: usize) {
         /// Level shifts by the walls below this do not change a printed digit.
         const WALL_SHIFT_EV: f64 = 1e-5;
-        let states = subbands.states();
         let shown = shown.min(states.len());
         // All unbound states share one message: there is no limit to them.
         let alike = |a: &State, b: &State| {
             a.hold == b.hold && (a.hold == Hold::Walls || a.layer == b.layer)
         };
-        let band = subbands.band.name().word();
         // Holes are the other way up.
-        let (outside, raise) = if subbands.band.sign() > 0.0 {
+        let (outside, raise) = if band.sign() > 0.0 {
             ("above the lower", "raise")
         } else {
             ("below the higher", "lower")
         };
+        let band = band.name().word();
         let mut first = 0;
         for group in states[..shown].chunk_by(alike) {
             let last = first + group.len();
@@ -146,7 +169,10 @@ impl Input {
             };
             show(&Diagnostic::warning(words), &self.name, &self.text);
         }
-        for fault in subbands.audit().faults() {
+    }
+
+    fn audited(&self, audit: &Audit) {
+        for fault in audit.faults() {
             show(
                 &Diagnostic::warning(format!("audit: {fault}")),
                 &self.name,

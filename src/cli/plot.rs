@@ -16,6 +16,7 @@ const LEAST_SAMPLES: u32 = 2;
 pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
+    input.without_coupled("the picture shows")?;
     let picture = match what {
         Picture::Bands => Some(bands(&input, width)?),
         Picture::Sensitivities => {
@@ -48,7 +49,7 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
 fn bands(input: &Input, width: Width) -> Result<String, Exit> {
     let bands = Bands::solve(
         &input.stack,
-        &Band::of(&input.structure),
+        &Band::alone(&input.structure),
         Accuracy::default(),
     )
     .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
@@ -59,7 +60,7 @@ fn bands(input: &Input, width: Width) -> Result<String, Exit> {
 
 /// The band diagram of solved bands.
 pub fn diagram(input: &Input, bands: &Bands, shown: &[usize]) -> BandDiagram {
-    let curves = bands.all().iter().zip(shown).filter_map(|(solved, shown)| {
+    let curves = bands.alone().zip(shown).filter_map(|(solved, shown)| {
         // What was solved has its operator.
         let operator = BandOperator::new(&input.stack, solved.band).ok()?;
         Some(subbands::curves(&operator, solved, *shown, FINENESS))

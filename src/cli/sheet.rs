@@ -45,10 +45,10 @@ pub fn sheet(
     let unsuitable = |(layer, reason)| input.unsuitable(layer, &reason);
     let bands = Bands::solve(&input.stack, &asked, accuracy).map_err(unsuitable)?;
     let mut shown = bands.asked_for(&input.structure);
-    for (shown, solved) in shown.iter_mut().zip(bands.all()) {
-        let own = named.iter().filter(|l| l.band == solved.band.name());
+    for (band, shown) in shown.iter_mut().enumerate() {
+        let own = named.iter().filter(|l| l.band == bands.band(band).name());
         let highest = own.map(|level| level.index).max().unwrap_or(0);
-        *shown = (*shown).max(highest).min(solved.pairs.len());
+        *shown = (*shown).max(highest).min(bands.level_count(band));
     }
     input.doubt_all(&bands, &shown);
     let mut peaks = Vec::new();
@@ -74,17 +74,26 @@ pub fn sheet(
         SheetFormat::Table
     }) {
         SheetFormat::Html => {
-            let mut pictures = vec![(
-                "Band edges and squared envelopes at their energies".to_owned(),
-                diagram(&input, &bands, &shown).svg(Width::Page),
-            )];
+            let alone = bands.conduction();
+            let mut pictures = Vec::new();
+            if alone.is_some() {
+                pictures.push((
+                    "Band edges and squared envelopes at their energies".to_owned(),
+                    diagram(&input, &bands, &shown).svg(Width::Page),
+                ));
+            } else {
+                let left_out =
+                    "the page has no pictures: they show bands that are solved on their own";
+                show(&Diagnostic::warning(left_out), &input.name, &input.text);
+            }
             let layers = input.stack.layers.len();
-            if input.structure.tolerance.is_some() && layers > MOST_SAMPLED_LAYERS {
+            let sampled = input.structure.tolerance.is_some() && alone.is_some();
+            if sampled && layers > MOST_SAMPLED_LAYERS {
                 let left_out = format!(
                     "the yield of {layers} layers is not sampled for the page: `plot --what yield` draws it in its own time"
                 );
                 show(&Diagnostic::warning(left_out), &input.name, &input.text);
-            } else if input.structure.tolerance.is_some() {
+            } else if sampled {
                 let outcome = worked_out(&input, None, None)?;
                 if let Some(bars) = sensitivity_bars(&input.structure, &outcome) {
                     pictures.push((

@@ -19,13 +19,14 @@ pub fn tolerance(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    input.without_coupled("tolerances are those of")?;
     if input.structure.tolerance.is_none() {
         let doubt = Diagnostic::warning("there is no `tolerance` block, so nothing is sampled")
             .expected("`tolerance` with spreads such as `rate: 0.7 %`");
         show(&doubt, &input.name, &input.text);
     }
     let outcome = worked_out(&input, samples, threads)?;
-    let bands = outcome.abrupt.all().iter();
+    let bands = outcome.abrupt.alone();
     let listed: Vec<usize> = bands
         .map(|solved| {
             let own = outcome.levels.iter();

@@ -14,29 +14,47 @@ pub use hole::Hole;
 
 use crate::materials::{Dual, Element, Material, Number};
 use crate::numerics::pencil::{Coefficient, Pole};
-use crate::structure::{BandName, ConductionModel, Level, Stack, Structure};
+use crate::structure::{BandName, ConductionModel, Level, Stack, Structure, ValenceModel};
+use multiband::{Direction, MultibandModel, MultibandOperator, MultibandUnsuitable};
 
-/// A band that is solved on its own.
+/// A band that is solved, on its own or coupled to others.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Band {
+    /// Electrons; with the eight-band model coupled to the holes.
     Conduction(ConductionModel),
+    /// Heavy or light holes on their own.
     Hole(Hole),
+    /// All holes, coupled to one another or to the electrons too.
+    Valence(MultibandModel),
 }
 
 impl Band {
     /// The bands that a structure asks for, the conduction band first, each with the number of levels to solve.
     ///
-    /// The valence levels asked for are those of both hole bands together, so each is solved for as many.
+    /// The valence levels asked for are those of all holes together, so hole bands on their own are each solved for as
+    /// many.
     pub fn of(structure: &Structure) -> Vec<(Band, usize)> {
         let conduction = structure.conduction;
         let mut bands = vec![(Band::Conduction(conduction.model), conduction.states)];
         if let Some(valence) = structure.valence {
-            bands.extend([Hole::Heavy, Hole::Light].map(|hole| (Band::Hole(hole), valence.states)));
+            let holes: &[Band] = match valence.model {
+                ValenceModel::Decoupled => &[Band::Hole(Hole::Heavy), Band::Hole(Hole::Light)],
+                ValenceModel::SixBand => &[Band::Valence(MultibandModel::SixBand)],
+                ValenceModel::EightBand => &[Band::Valence(MultibandModel::EightBand)],
+            };
+            bands.extend(holes.iter().map(|&hole| (hole, valence.states)));
         }
         bands
     }
 
-    /// The same with as many levels as it takes to hold the named ones too.
+    /// The bands of [`Band::of`] that are solved on their own.
+    pub fn alone(structure: &Structure) -> Vec<(Band, usize)> {
+        let mut bands = Self::of(structure);
+        bands.retain(|(band, _)| band.coupled().is_none());
+        bands
+    }
+
+    /// All bands that a structure asks for, with as many levels as it takes to hold the named ones too.
     pub fn holding(structure: &Structure, named: &[Level]) -> Vec<(Band, usize)> {
         let asked = Self::of(structure).into_iter();
         asked
@@ -53,10 +71,34 @@ impl Band {
     }
 
     /// What the solver's eigenvalues are multiplied with to give the electron's energy: −1 for holes.
+    /// The model of coupled bands that this one is part of.
+    pub fn coupled(self) -> Option<MultibandModel> {
+        match self {
+            Band::Conduction(ConductionModel::EightBand) => Some(MultibandModel::EightBand),
+            Band::Valence(model) => Some(model),
+            Band::Conduction(_) | Band::Hole(_) => None,
+        }
+    }
+
+    /// Checks that every layer has what the band's model needs. The error carries the number of the first layer that has
+    /// not.
+    ///
+    /// # Errors
+    /// Why the material of a layer does not suit the model.
+    pub fn check(self, stack: &Stack) -> Result<(), (usize, Unsuitable)> {
+        match self.coupled() {
+            None => BandOperator::new(stack, self).map(|_| ()),
+            Some(model) => MultibandOperator::new(stack, model, Direction::ALONG_100)
+                .map(|_| ())
+                .map_err(|(layer, reason)| (layer, reason.into())),
+        }
+    }
+
+    /// What the energy away from the gap is multiplied with to give the electron's: −1 for holes.
     pub fn sign(self) -> f64 {
         match self {
             Band::Conduction(_) => 1.0,
-            Band::Hole(_) => -1.0,
+            Band::Hole(_) | Band::Valence(_) => -1.0,
         }
     }
 
@@ -65,6 +107,7 @@ impl Band {
             Band::Conduction(_) => BandName::Conduction,
             Band::Hole(Hole::Heavy) => BandName::HeavyHole,
             Band::Hole(Hole::Light) => BandName::LightHole,
+            Band::Valence(_) => BandName::Valence,
         }
     }
 }
@@ -81,6 +124,7 @@ fn coefficient<T: Number>(
             energy_dependent::coefficient(material, substrate_lattice_nm)
         }
         Band::Hole(hole) => hole::coefficient(hole, material, substrate_lattice_nm),
+        Band::Conduction(ConductionModel::EightBand) | Band::Valence(_) => Err(Unsuitable::Coupled),
     }
 }
 
@@ -100,6 +144,10 @@ pub enum Unsuitable {
         "has a mass at the band edge that is not positive: 1 + 2F and the coupling to its valence edges make m0/m = {inverse_mass:.3}"
     )]
     NegativeMass { inverse_mass: f64 },
+    #[error("is to be solved with coupled bands, which are no bands on their own")]
+    Coupled,
+    #[error(transparent)]
+    Multiband(#[from] MultibandUnsuitable),
 }
 
 /// ħ²/2m in the plane at one place, in eV nm²: a constant and poles in the energy.
@@ -206,6 +254,7 @@ impl<'s> BandOperator<'s> {
                 stiffness: hole::in_plane_stiffness(hole, &material, substrate_lattice_nm)?,
                 poles: Vec::new(),
             }),
+            Band::Valence(_) => None,
         }
     }
 
@@ -272,5 +321,15 @@ pub fn model_name(model: ConductionModel) -> &'static str {
     match model {
         ConductionModel::Parabolic => "parabolic",
         ConductionModel::EnergyDependent => "energy-dependent",
+        ConductionModel::EightBand => "eight-band",
+    }
+}
+
+/// The valence model's name in files and reports.
+pub fn valence_model_name(model: ValenceModel) -> &'static str {
+    match model {
+        ValenceModel::Decoupled => "decoupled",
+        ValenceModel::SixBand => "six-band",
+        ValenceModel::EightBand => "eight-band",
     }
 }

@@ -17,10 +17,14 @@
 
 use super::{eight_band, six_band};
 use crate::constants::HBAR2_OVER_2M0;
-use crate::materials::{Material, Strain, strain};
+use crate::materials::{Element, Material, Strain, strain};
 use crate::numerics::matrix_pencil::MatrixCoefficient;
 use crate::structure::Stack;
 use nalgebra::{DMatrix, Matrix3};
+
+/// Step of a fraction in the difference that gives the slopes of the matrices: its fourth power is as small as the
+/// rounding over it.
+const SLOPE_STEP: f64 = 1e-3;
 
 /// Which bands are coupled.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -115,6 +119,13 @@ pub struct BlockCoefficient {
 }
 
 impl BlockCoefficient {
+    /// E_P = P²/(ħ²/2m₀) of the coupling of S and X, in eV: that in use, after any reduction.
+    pub fn kane_energy_ev(&self) -> f64 {
+        // The coupling to X is spread over heavy, light and split-off holes; see the module.
+        let couplings = self.c[1].row(0);
+        couplings.norm_squared() / HBAR2_OVER_2M0
+    }
+
     /// The coefficients at one k∥, raised by an energy.
     pub fn at(&self, k_per_nm: f64, part: Part, raised_ev: f64) -> MatrixCoefficient {
         let k = k_per_nm;
@@ -361,10 +372,38 @@ impl<'s> MultibandOperator<'s> {
     }
 
     fn resolve(&self, layer: usize, t: f64) -> Result<BlockCoefficient, MultibandUnsuitable> {
-        let material = self.stack.material_at(layer, t);
+        self.block_of(&self.stack.material_at(layer, t))
+    }
+
+    fn block_of(&self, material: &Material) -> Result<BlockCoefficient, MultibandUnsuitable> {
         let substrate = self.stack.substrate_lattice_nm();
-        let strain = substrate.and_then(|lattice| strain(&material, lattice));
-        self.model.block(&material, strain, self.direction)
+        let strain = substrate.and_then(|lattice| strain(material, lattice));
+        self.model.block(material, strain, self.direction)
+    }
+
+    /// The slopes of A, G and C of the first part at k∥ = 0 with respect to the fraction of an element in the layer's
+    /// material, the field left out: a difference of fourth order of these matrices along the exact slopes of the
+    /// material's parameters, right to rounding. Zero for a layer without that element.
+    pub fn fraction_slope(&self, layer: usize, t: f64, element: Element) -> MatrixCoefficient {
+        let h = SLOPE_STEP;
+        let steps = [h, -h, 2.0 * h, -2.0 * h];
+        let materials = self.stack.materials_moved_at(layer, t, element, &steps);
+        let blocks: Option<Vec<MatrixCoefficient>> = materials.ok().and_then(|materials| {
+            let blocks = materials.iter().map(|m| self.block_of(m).ok());
+            blocks.map(|b| Some(b?.at(0.0, Part::Plus, 0.0))).collect()
+        });
+        // Abramowitz and Stegun 1964, table 25.2, five points.
+        let slope = |pick: fn(&MatrixCoefficient) -> &DMatrix<f64>, [a, b, c, d]: [&_; 4]| {
+            ((pick(a) - pick(b)) * 8.0 - (pick(c) - pick(d))) / (12.0 * h)
+        };
+        match blocks.as_deref() {
+            Some([a, b, c, d]) => MatrixCoefficient {
+                a: slope(|m| &m.a, [a, b, c, d]),
+                g: slope(|m| &m.g, [a, b, c, d]),
+                c: slope(|m| &m.c, [a, b, c, d]),
+            },
+            _ => MatrixCoefficient::zeros(self.model.components()),
+        }
     }
 
     pub fn stack(&self) -> &'s Stack {

@@ -23,26 +23,41 @@ pub fn curvature(
     known: &[&NearPair],
     pair: &NearPair,
 ) -> Option<f64> {
-    let mut sum = dot(&pair.vector, &second.matrix().times(&pair.vector));
-    let mut image = first.matrix().times(&pair.vector);
-    let scale = dot(&image, &image).sqrt();
+    let image = first.matrix().times(&pair.vector);
+    let bent = dot(&pair.vector, &second.matrix().times(&pair.vector));
+    Some(bent - dot(&image, &respond(pencil, known, pair, &image)?))
+}
+
+/// The vector u that has nothing of `pair` in it and solves (T − λ) u = b for the pair's λ, what b has of the pair left
+/// out. `None` when b has a part in another level of the same λ.
+pub fn respond(
+    pencil: &MatrixPencil,
+    known: &[&NearPair],
+    pair: &NearPair,
+    b: &[f64],
+) -> Option<Vec<f64>> {
+    let scale = dot(b, b).sqrt();
+    let mut rest = b.to_vec();
+    let mut answer = vec![0.0; b.len()];
     for other in known {
-        let part = take_out(&mut image, &other.vector);
+        let part = take_out(&mut rest, &other.vector);
         if std::ptr::eq(*other, pair) {
             continue;
         }
-        let apart = pair.value - other.value;
+        let apart = other.value - pair.value;
         if apart.abs() > EQUAL {
-            sum += part * part / apart;
+            for (u, x) in answer.iter_mut().zip(&other.vector) {
+                *u += part / apart * x;
+            }
         } else if part.abs() > EQUAL * scale {
             return None;
         }
     }
     let aside = 1e-7 * (1.0 + pair.value.abs());
     let factored = pencil.factor(pair.value + aside, None);
-    let mut x = vec![0.0; image.len()];
+    let mut x = vec![0.0; rest.len()];
     for _ in 0..SOLVES {
-        for (v, b) in x.iter_mut().zip(&image) {
+        for (v, b) in x.iter_mut().zip(&rest) {
             *v = b - aside * *v;
         }
         factored.solve(&mut x);
@@ -50,5 +65,8 @@ pub fn curvature(
             take_out(&mut x, &other.vector);
         }
     }
-    Some(sum - dot(&image, &x))
+    for (u, x) in answer.iter_mut().zip(&x) {
+        *u += x;
+    }
+    Some(answer)
 }

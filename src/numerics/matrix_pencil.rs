@@ -178,6 +178,21 @@ impl MatrixPencil {
         ends.clone().chain(inner).chain(ends).collect()
     }
 
+    /// The height of every inner node, each for all functions there.
+    pub fn positions(&self) -> impl Iterator<Item = f64> + '_ {
+        let p = self.mesh.order();
+        let inner = 1..self.mesh.node_count() - 1;
+        inner.map(move |g| self.mesh.position(&self.mesh.elements[g / p], g % p))
+    }
+
+    /// A linear form given by its values on the functions at all nodes, as it acts on scaled vectors.
+    pub(super) fn scaled_form(&self, functions: &[Vec<f64>]) -> Vec<f64> {
+        let nodes = self.roots.iter().enumerate();
+        nodes
+            .flat_map(|(node, root)| functions.iter().map(move |f| f[node + 1] / root))
+            .collect()
+    }
+
     /// The scaled vector of unknowns on `finer` (same elements, another order) of the functions that `scaled` stands for.
     pub fn transfer(&self, scaled: &[f64], finer: &MatrixPencil) -> Vec<f64> {
         let n = self.components;

@@ -16,7 +16,7 @@ pub struct Element {
     pub length: f64,
 }
 
-/// Equal elements inside each segment, with one polynomial order throughout.
+/// Elements inside each segment, with one polynomial order throughout.
 ///
 /// Neighbouring elements share their border node: with p the order, element e holds the global nodes
 /// `e * p ..= (e + 1) * p`.
@@ -29,18 +29,27 @@ pub struct Mesh {
 impl Mesh {
     /// Cuts segment k, of length `lengths[k]`, into `pieces[k]` equal elements. The line starts at 0.
     pub fn new(lengths: &[f64], pieces: &[usize], order: usize) -> Mesh {
-        let mut elements = Vec::with_capacity(pieces.iter().sum());
-        let mut start = 0.0;
-        for (segment, (&length, &count)) in lengths.iter().zip(pieces).enumerate() {
+        let parts = pieces.iter().map(|&count| {
             let fraction = 1.0 / count as f64;
-            for piece in 0..count {
-                let start_fraction = piece as f64 * fraction;
+            let starts = (0..count).map(|piece| piece as f64 * fraction);
+            starts.map(|start| (start, fraction)).collect()
+        });
+        Mesh::of_parts(lengths, &parts.collect::<Vec<_>>(), order)
+    }
+
+    /// Cuts segment k, of length `lengths[k]`, into elements that start at fractions of it and have fractions of its
+    /// length, `parts[k]`. The line starts at 0.
+    pub fn of_parts(lengths: &[f64], parts: &[Vec<(f64, f64)>], order: usize) -> Mesh {
+        let mut elements = Vec::with_capacity(parts.iter().map(Vec::len).sum());
+        let mut start = 0.0;
+        for (segment, (&length, parts)) in lengths.iter().zip(parts).enumerate() {
+            for &(start_fraction, length_fraction) in parts {
                 elements.push(Element {
                     segment,
                     start_fraction,
-                    length_fraction: fraction,
+                    length_fraction,
                     start: start + start_fraction * length,
-                    length: fraction * length,
+                    length: length_fraction * length,
                 });
             }
             start += length;

@@ -3,8 +3,10 @@
 
 pub mod banded;
 pub mod curvature;
+pub mod decay;
 pub mod eigenpairs;
 pub mod matrix_pencil;
+pub mod matrix_sensitivity;
 pub mod mesh;
 pub mod nearby;
 pub mod nearest;

@@ -6,13 +6,13 @@ mod interband;
 mod photoluminescence;
 
 pub use exciton::{Exciton, Pair, exciton};
-pub use interband::{Alignment, Interband, Selection, interband, lowest_exciton};
+pub use interband::{Alignment, Interband, NoExciton, Selection, interband, lowest_exciton};
 pub use photoluminescence::{Photoluminescence, photoluminescence};
 
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0, HC_EV_UM};
 use crate::numerics::pencil::dot;
 use crate::numerics::sensitivity::moment;
-use crate::subbands::{Subbands, amplitudes, in_plane_mass_m0};
+use crate::subbands::{Bands, Subbands, amplitudes, in_plane_mass_m0};
 
 /// A pair of subbands, `from` below `to`, numbered from 0.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -47,15 +47,43 @@ impl Transition {
 /// All pairs of the solved subbands, ordered by lower state, then by upper state.
 pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
     let pairs = &subbands.pairs;
-    let masses_m0: Vec<f64> = (0..pairs.len())
-        .map(|index| in_plane_mass_m0(subbands, index))
+    let states: Vec<(f64, f64)> = (0..pairs.len())
+        .map(|index| (pairs[index].value, in_plane_mass_m0(subbands, index)))
         .collect();
-    let amplitudes = amplitudes(subbands);
+    let dipole_nm = |i: usize, j: usize| moment(&subbands.pencil, &pairs[i], &pairs[j]).abs();
+    of_states(&states, &amplitudes(subbands), dipole_nm)
+}
+
+/// As [`transitions`], of one of the solved bands. Of coupled holes `from` is the deeper one, and the lower state of a
+/// hole, whose mass normalises, is the other.
+pub fn band_transitions(bands: &Bands, band: usize) -> Vec<Transition> {
+    let states = bands.states(band);
+    let sign = bands.band(band).sign();
+    let states: Vec<(f64, f64)> = states
+        .iter()
+        .map(|state| (sign * state.energy_ev, state.in_plane_mass_m0))
+        .collect();
+    let dipole_nm = |i: usize, j: usize| bands.dipole_nm(band, i, j);
+    let mut list = of_states(&states, &bands.amplitudes(band), dipole_nm);
+    if sign < 0.0 {
+        for transition in &mut list {
+            std::mem::swap(&mut transition.from, &mut transition.to);
+        }
+    }
+    list
+}
+
+/// Pairs of states with these energies away from the gap and in-plane masses.
+fn of_states(
+    states: &[(f64, f64)],
+    amplitudes: &[Vec<f64>],
+    dipole_nm: impl Fn(usize, usize) -> f64,
+) -> Vec<Transition> {
     let mut list = Vec::new();
-    for from in 0..pairs.len() {
-        for to in from + 1..pairs.len() {
-            let energy_ev = pairs[to].value - pairs[from].value;
-            let dipole_nm = moment(&subbands.pencil, &pairs[from], &pairs[to]).abs();
+    for (from, (lower_ev, mass_m0)) in states.iter().enumerate() {
+        for (to, (upper_ev, _)) in states.iter().enumerate().skip(from + 1) {
+            let energy_ev = upper_ev - lower_ev;
+            let dipole_nm = dipole_nm(from, to);
             let oscillator_strength = energy_ev * dipole_nm * dipole_nm / HBAR2_OVER_2M0;
             list.push(Transition {
                 from,
@@ -63,7 +91,7 @@ pub fn transitions(subbands: &Subbands) -> Vec<Transition> {
                 energy_ev,
                 dipole_nm,
                 oscillator_strength,
-                normalised_strength: oscillator_strength * masses_m0[from],
+                normalised_strength: oscillator_strength * mass_m0,
                 overlap: dot(&amplitudes[from], &amplitudes[to]),
             });
         }

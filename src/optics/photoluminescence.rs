@@ -7,7 +7,7 @@
 //! is a step, and a step times exp(−E/kT) is highest at its edge, without the kT/2 of the bulk. The light then lies between
 //! the two. Filled bands, alloy disorder and wells that differ (all of which pull the peak down) are left out.
 
-use super::lowest_exciton;
+use super::{NoExciton, lowest_exciton};
 use crate::models::{Band, Unsuitable};
 use crate::structure::{Level, Stack};
 use crate::subbands::{Accuracy, Bands, Place};
@@ -19,7 +19,8 @@ pub struct Photoluminescence {
     pub from: Level,
     pub to: Level,
     pub transition_ev: f64,
-    /// 0 where no exciton is bound; `None` where a permittivity is missing.
+    /// 0 where no exciton is bound; `None` where there is none to tell: a permittivity is missing, or a mass in the plane is not
+    /// positive.
     pub binding_ev: Option<f64>,
 }
 
@@ -57,6 +58,10 @@ pub fn photoluminescence(
         from: bands.level(hole),
         to: bands.level(electron),
         transition_ev,
-        binding_ev: lowest_exciton(&stack, &bands).map(|(_, exciton)| exciton.binding_ev.max(0.0)),
+        binding_ev: match lowest_exciton(&stack, &bands) {
+            Ok((_, exciton)) => Some(exciton.binding_ev.max(0.0)),
+            Err(NoExciton::Unbound) => Some(0.0),
+            Err(_) => None,
+        },
     }))
 }

@@ -4,11 +4,25 @@ use super::csv_table;
 use super::table::{significant, table};
 use crate::constants::HC_EV_UM;
 use crate::optics::{Alignment, Selection, interband, lowest_exciton};
-use crate::structure::Stack;
+use crate::structure::{Stack, ValenceModel};
 use crate::subbands::{Bands, Place};
 use serde::Serialize;
 
-const MOMENTUM_DEFINITION: &str = "squared momentum matrix element 2|p|²/m0 in units of the bulk's E_P, one electron spin with both holes of the pair: overlap² × 1/2 (heavy, TE), 0 (heavy, TM), 1/6 (light, TE), 2/3 (light, TM)";
+/// What TE and TM mean, by the model of the holes.
+const MOMENTUM_DEFINITIONS: [(ValenceModel, &str); 3] = [
+    (
+        ValenceModel::Decoupled,
+        "squared momentum matrix element 2|p|²/m0 in units of the bulk's E_P, one electron spin with both holes of the pair: overlap² × 1/2 (heavy, TE), 0 (heavy, TM), 1/6 (light, TE), 2/3 (light, TM)",
+    ),
+    (
+        ValenceModel::SixBand,
+        "squared momentum matrix element 2|p|²/m0 in units of the bulk's E_P, one electron spin with both holes of the pair: that of the hole's X part (TE) and Z part (TM) with the electron's envelope",
+    ),
+    (
+        ValenceModel::EightBand,
+        "squared element of ∂H/∂k over ħ²/2m0, one electron spin with both holes of the pair, in units of E_P as it is in use in the layer that holds most of the electron",
+    ),
+];
 const EXCITON_DEFINITION: &str = "variational 1s state f_e(z) f_h(z) exp(−ρ/radius), static permittivity, parabolic in-plane masses (Bastard and others 1982)";
 
 /// The pairs of hole and electron levels, and the exciton of the lowest.
@@ -16,6 +30,8 @@ const EXCITON_DEFINITION: &str = "variational 1s state f_e(z) f_h(z) exp(−ρ/r
 pub struct Interbands {
     interband: Vec<PairRow>,
     exciton: Option<ExcitonRow>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    no_exciton: Option<String>,
     momentum_definition: &'static str,
     exciton_definition: &'static str,
 }
@@ -31,6 +47,9 @@ struct PairRow {
     overlap: f64,
     te_Ep: f64,
     tm_Ep: f64,
+    /// E_P in use, where it is not the bulk's own: with eight bands.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    Ep_eV: Option<f64>,
     selection: &'static str,
     alignment: &'static str,
 }
@@ -60,13 +79,14 @@ fn alignment(alignment: Alignment) -> &'static str {
     match alignment {
         Alignment::Direct => "same layer",
         Alignment::TypeTwo => "type II",
+        Alignment::BrokenGap => "broken gap",
         Alignment::Apart => "apart",
     }
 }
 
 impl Interbands {
     /// Of the states that are listed: so many of each band.
-    pub fn new(stack: &Stack, bands: &Bands, shown: &[usize]) -> Interbands {
+    pub fn new(model: ValenceModel, stack: &Stack, bands: &Bands, shown: &[usize]) -> Interbands {
         let name = |place: Place| bands.level(place).to_string();
         let pairs = interband(stack, bands);
         let is_shown = |place: Place| place.state < shown[place.band];
@@ -81,16 +101,15 @@ impl Interbands {
                 overlap: pair.overlap,
                 te_Ep: pair.te,
                 tm_Ep: pair.tm,
+                Ep_eV: pair.kane_energy_ev,
                 selection: selection(pair.selection),
                 alignment: alignment(pair.alignment),
             });
         let electron = Place { band: 0, state: 0 };
-        let exciton = lowest_exciton(stack, bands).and_then(|(hole, exciton)| {
+        let lowest = lowest_exciton(stack, bands);
+        let no_exciton = lowest.as_ref().err().map(ToString::to_string);
+        let exciton = lowest.ok().map(|(hole, exciton)| {
             let transition_ev = bands.energy_ev(electron) - bands.energy_ev(hole);
-            // In a broken gap the two mix instead of binding.
-            (transition_ev > 0.0).then_some((hole, exciton, transition_ev))
-        });
-        let exciton = exciton.map(|(hole, exciton, transition_ev)| {
             let light_ev = transition_ev - exciton.binding_ev;
             ExcitonRow {
                 from: name(hole),
@@ -103,10 +122,12 @@ impl Interbands {
                 photoluminescence_um: (light_ev > 0.0).then(|| HC_EV_UM / light_ev),
             }
         });
+        let definition = MOMENTUM_DEFINITIONS.iter().find(|(of, _)| *of == model);
         Interbands {
             interband: rows.collect(),
             exciton,
-            momentum_definition: MOMENTUM_DEFINITION,
+            no_exciton,
+            momentum_definition: definition.map_or("", |(_, words)| *words),
             exciton_definition: EXCITON_DEFINITION,
         }
     }
@@ -158,11 +179,12 @@ impl Interbands {
                 e.photoluminescence_um
                     .map_or("no light".to_owned(), |um| significant(um, 4) + " µm"),
             ),
-            None => {
-                "No exciton: the pair does not bind, the gap is broken, or a material has no `permittivity_static`.\n"
-                    .to_owned()
-            }
+            None => format!(
+                "No exciton: {}.\n",
+                self.no_exciton.as_deref().unwrap_or("nothing binds")
+            ),
         };
+        const MIXED: &str = "broken gap";
         let dark = |pair: &PairRow| pair.wavelength_um.is_none();
         let broken = if self.interband.iter().any(dark) {
             "Where the energy is negative, the hole lies above the electron: a broken gap, in which the two mix. Bands \
@@ -170,7 +192,17 @@ impl Interbands {
         } else {
             ""
         };
-        format!("{pairs}\nTE, TM: {MOMENTUM_DEFINITION}.\n{broken}{exciton}")
+        let mixed = if self.interband.iter().any(|pair| pair.alignment == MIXED) {
+            "Broken gap: the electron's layer has its conduction edge below the hole's valence edge, and the two bands mix; the \
+             shares of the states tell how far. With eight bands levels are counted from the gap by their number, so that one \
+             above it is called `conduction` even where it is mostly a hole: the bands are inverted there.\n"
+        } else {
+            ""
+        };
+        format!(
+            "{pairs}\nTE, TM: {}.\n{broken}{mixed}{exciton}",
+            self.momentum_definition
+        )
     }
 
     pub fn csv(&self) -> Result<String, csv::Error> {

@@ -1,11 +1,11 @@
 //! What only shows once materials are resolved: doubts about the physics, and bounds of tuning that do not fit.
 
-use super::file::{LayerEntry, Structure, Variable, Varied};
+use super::file::{ConductionModel, LayerEntry, Structure, Variable, Varied};
 use super::read_tolerance;
 use super::stack::{Stack, no_monolayer};
 use super::sweeps;
 use crate::diagnostics::Diagnostic;
-use crate::materials::{Material, Valley, strain};
+use crate::materials::{Material, Valley, hole_edges, strain};
 use crate::units::Dimension;
 use std::ops::Range;
 
@@ -29,6 +29,7 @@ pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
             of_layer(entry, index, stack, &mut found);
         }
     }
+    found.extend(broken_gap(structure, stack));
     if let Some(doped) = structure
         .entries
         .iter()
@@ -56,6 +57,49 @@ pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
     read_tolerance::unfitting(structure, stack, &mut found);
     sweeps::unfitting(structure, stack, &mut found);
     found
+}
+
+/// A doubt about bands that are solved apart although one layer's valence edge lies above another's conduction edge.
+fn broken_gap(structure: &Structure, stack: &Stack) -> Option<Diagnostic> {
+    // A parabolic electron on its own may be counted on a scale of the user's own.
+    match structure.conduction.model {
+        ConductionModel::EightBand => return None,
+        ConductionModel::Parabolic if structure.valence.is_none() => return None,
+        ConductionModel::Parabolic | ConductionModel::EnergyDependent => {}
+    }
+    let faces = |layer: usize| {
+        let ends: &[f64] = if stack.is_uniform(layer) {
+            &[0.0]
+        } else {
+            &[0.0, 1.0]
+        };
+        ends.iter().map(move |t| stack.material_at(layer, *t))
+    };
+    let layers = || (0..stack.layers.len()).flat_map(|layer| faces(layer).map(move |m| (layer, m)));
+    let (lowest, conduction_ev) = layers()
+        .filter_map(|(layer, material)| Some((layer, material.conduction_edge_ev?)))
+        .min_by(|a, b| a.1.total_cmp(&b.1))?;
+    let (highest, valence_ev) = layers()
+        .filter_map(|(layer, material)| {
+            let edges = hole_edges(&material, stack.substrate_lattice_nm())?;
+            Some((layer, edges.heavy_ev.max(edges.light_ev)))
+        })
+        .max_by(|a, b| a.1.total_cmp(&b.1))?;
+    if valence_ev <= conduction_ev {
+        return None;
+    }
+    let entry = |layer: usize| structure.entries.get(stack.layers[layer].entry);
+    let (electrons, holes) = (entry(lowest)?, entry(highest)?);
+    Some(
+        Diagnostic::warning(format!(
+            "the valence edge of {} lies {:.0} meV above the conduction edge of {}: a broken gap, in which electrons and holes mix",
+            holes.in_words(),
+            1e3 * (valence_ev - conduction_ev),
+            electrons.in_words()
+        ))
+        .at(place(holes))
+        .hint("bands that are solved apart miss that, whatever the mass of the electron; `conduction: {model: eight-band}` under `bands:` solves them together"),
+    )
 }
 
 /// Where a message about a layer points.

@@ -64,11 +64,23 @@ pub struct ConductionBand {
     pub states: usize,
 }
 
-/// The valence bands that are to be solved: heavy and light holes, each on its own.
+/// The valence bands that are to be solved.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct ValenceBand {
-    /// How many levels of both together are asked for, the highest ones.
+    pub model: ValenceModel,
+    /// How many levels of all holes together are asked for, the highest ones.
     pub states: usize,
+}
+
+/// Which bands the holes are coupled to.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum ValenceModel {
+    /// Heavy and light holes, each on its own.
+    Decoupled,
+    /// Heavy, light and split-off holes, to one another.
+    SixBand,
+    /// The same and the electrons: [`ConductionModel::EightBand`].
+    EightBand,
 }
 
 /// How the electron's mass depends on its energy.
@@ -78,6 +90,8 @@ pub enum ConductionModel {
     Parabolic,
     /// As the material's energy-dependent mass says.
     EnergyDependent,
+    /// As the coupling to the valence bands makes it: one problem of electrons and holes.
+    EightBand,
 }
 
 /// One step of the layer sequence.
@@ -208,7 +222,7 @@ pub enum BandName {
     Conduction,
     HeavyHole,
     LightHole,
-    /// Heavy and light holes together, in the order of their energies.
+    /// All holes together, in the order of their energies: solved apart, or coupled.
     Valence,
 }
 

@@ -28,7 +28,8 @@ mod wafer;
 
 pub use file::{
     Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile,
-    Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
+    Spanned, StrainBound, Structure, Target, Tune, ValenceBand, ValenceModel, Variable, Varied,
+    Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;

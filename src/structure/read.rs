@@ -2,7 +2,9 @@
 
 use super::document::{self, Node, Value};
 use super::fields::{Checker, Fields, Limits};
-use super::file::{BandName, ConductionBand, ConductionModel, Structure, ValenceBand};
+use super::file::{
+    BandName, ConductionBand, ConductionModel, Spanned, Structure, ValenceBand, ValenceModel,
+};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
 use super::{read_growth, read_materials, read_sweep, read_tolerance, read_tune};
@@ -117,8 +119,11 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         Some(node) => bands(checker, node),
         None => (conduction_default(), None),
     };
-    let solved = match valence {
-        Some(_) => &BandName::ALL[..],
+    let solved = match valence.map(|valence| valence.model) {
+        Some(ValenceModel::Decoupled) => &BandName::ALL[..],
+        Some(ValenceModel::SixBand | ValenceModel::EightBand) => {
+            &[BandName::Conduction, BandName::Valence]
+        }
         None => &[BandName::Conduction],
     };
     checker.missing(
@@ -228,55 +233,85 @@ fn bands(checker: &mut Checker, node: &Node) -> (ConductionBand, Option<ValenceB
     };
     let conduction = fields
         .get("conduction")
-        .map_or(conduction_default(), |node| conduction(checker, node));
-    let valence = fields.get("valence").map(|node| valence(checker, node));
+        .map(|node| band(checker, node, "`conduction`", CONDUCTION_MODELS));
+    let valence = fields
+        .get("valence")
+        .map(|node| band(checker, node, "`valence`", VALENCE_MODELS));
+    let sides = [&conduction, &valence].map(|side| side.as_ref().and_then(|s| s.model.clone()));
+    // Eight bands are one problem: what one side says holds for both.
+    let eight_band = sides
+        .iter()
+        .flatten()
+        .any(|model| model.value == EIGHT_BAND);
+    for (model, (side, other)) in sides
+        .iter()
+        .zip([("conduction", "valence"), ("valence", "conduction")])
+    {
+        if let Some(model) = model
+            && eight_band
+            && model.value != EIGHT_BAND
+        {
+            checker.report(
+                Diagnostic::error(format!(
+                    "`{EIGHT_BAND}` solves electrons and holes as one problem, but `{side}` asks for `{}` where `{other}` asks for `{EIGHT_BAND}`",
+                    model.value
+                ))
+                .at(model.span.clone())
+                .expected(format!("`{EIGHT_BAND}` for both, or no `model` here")),
+            );
+        }
+    }
+    let default = conduction_default();
+    let [conduction_model, valence_model] = sides.map(|model| model.map(|model| model.value));
+    let conduction = ConductionBand {
+        model: match conduction_model {
+            _ if eight_band => ConductionModel::EightBand,
+            Some("energy-dependent") => ConductionModel::EnergyDependent,
+            _ => default.model,
+        },
+        states: conduction.map_or(default.states, |side| side.states),
+    };
+    let valence = valence.map(|side| ValenceBand {
+        model: match valence_model {
+            _ if eight_band => ValenceModel::EightBand,
+            Some("six-band") => ValenceModel::SixBand,
+            _ => ValenceModel::Decoupled,
+        },
+        states: side.states,
+    });
     (conduction, valence)
 }
 
-fn conduction(checker: &mut Checker, node: &Node) -> ConductionBand {
-    let mut band = conduction_default();
-    let Some(fields) = checker.fields(node, "`conduction`", &["model", "states"]) else {
-        return band;
-    };
-    if let Some(node) = fields.get("model") {
-        match checker.word(node, &["parabolic", "energy-dependent", "eight-band"]) {
-            Some("energy-dependent") => band.model = ConductionModel::EnergyDependent,
-            Some(model @ "eight-band") => {
-                unavailable(checker, node, model, "`parabolic` or `energy-dependent`");
-            }
-            _ => {}
-        }
-    }
-    band.states = states(checker, &fields);
-    band
+const EIGHT_BAND: &str = "eight-band";
+const CONDUCTION_MODELS: &[&str] = &["parabolic", "energy-dependent", EIGHT_BAND];
+const VALENCE_MODELS: &[&str] = &["decoupled", "six-band", EIGHT_BAND];
+
+/// One side of the gap as it is written.
+struct WrittenBand {
+    model: Option<Spanned<&'static str>>,
+    states: usize,
 }
 
-fn valence(checker: &mut Checker, node: &Node) -> ValenceBand {
-    let Some(fields) = checker.fields(node, "`valence`", &["model", "states"]) else {
-        return ValenceBand {
+fn band(
+    checker: &mut Checker,
+    node: &Node,
+    name: &str,
+    models: &'static [&'static str],
+) -> WrittenBand {
+    let Some(fields) = checker.fields(node, name, &["model", "states"]) else {
+        return WrittenBand {
+            model: None,
             states: DEFAULT_STATES as usize,
         };
     };
-    if let Some(node) = fields.get("model")
-        && let Some(model @ ("six-band" | "eight-band")) =
-            checker.word(node, &["decoupled", "six-band", "eight-band"])
-    {
-        unavailable(checker, node, model, "`decoupled`");
-    }
-    ValenceBand {
+    let model = fields.get("model").and_then(|node| {
+        let word = checker.word(node, models)?;
+        Some(Spanned::new(word, node))
+    });
+    WrittenBand {
+        model,
         states: states(checker, &fields),
     }
-}
-
-fn unavailable(checker: &mut Checker, node: &Node, model: &str, expected: &str) {
-    checker.report(
-        Diagnostic::error(format!("the model `{model}` is not available yet"))
-            .at(node.span.clone())
-            .expected(expected)
-            .hint(format!(
-                "`wellwright dispersion --model {model}` solves it for levels, masses and E(k∥)"
-            )),
-    );
 }
 
 /// The number of levels asked for.

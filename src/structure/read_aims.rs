@@ -101,7 +101,7 @@ fn aim(checker: &mut Checker, item: &Node, solved: &[BandName]) -> Option<Aim> {
     if !is_lower_first(from, to) && (follow == Follow::Order || from.band != to.band) {
         std::mem::swap(&mut from, &mut to);
     }
-    suits_bands(checker, &fields, [from, to], target, follow)?;
+    suits_bands(checker, &fields, [from, to], target, follow, solved)?;
     Some(Aim {
         from,
         to,
@@ -130,6 +130,7 @@ fn suits_bands(
     levels: [Level; 2],
     target: Option<Target>,
     follow: Follow,
+    solved: &[BandName],
 ) -> Option<()> {
     let mut fits = true;
     if levels[0].band != levels[1].band
@@ -146,7 +147,12 @@ fn suits_bands(
         );
         fits = false;
     }
-    if follow == Follow::Character && levels.iter().any(|l| l.band == BandName::Valence) {
+    // Where the holes are coupled, `valence` is the name of their band; else it only counts.
+    let counts_apart = solved.contains(&BandName::HeavyHole);
+    if follow == Follow::Character
+        && counts_apart
+        && levels.iter().any(|l| l.band == BandName::Valence)
+    {
         checker.report(
             Diagnostic::error("`valence` counts levels by energy, whatever their character")
                 .at(fields.get("follow")?.span.clone())
@@ -173,8 +179,12 @@ pub(super) fn level(checker: &mut Checker, node: &Node, solved: &[BandName]) -> 
             }
         }
         Some(band) if !solved.contains(&band) => {
-            Diagnostic::error(format!("the band `{word}` is not solved"))
-                .hint("holes are solved with `valence: {model: decoupled}` under `bands:`")
+            let problem = Diagnostic::error(format!("the band `{word}` is not solved"));
+            if solved.contains(&BandName::Valence) {
+                problem.hint("the holes of this file are coupled: their levels are `valence 1`, `valence 2`, …, heavy and light ones together")
+            } else {
+                problem.hint("holes are solved with `valence: {model: decoupled}` under `bands:`, or with `six-band` or `eight-band`")
+            }
         }
         Some(band) => match (index.map(str::parse::<u32>), rest) {
             (Some(Ok(index)), None) if (1..=MAX_LEVELS).contains(&index) => {

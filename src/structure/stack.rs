@@ -1,6 +1,6 @@
 //! The stack: a flat list of layers from the substrate up, with materials resolved at the temperature and the strain.
 
-use super::file::{ConductionModel, Item, LayerEntry, Profile, Spanned, Structure};
+use super::file::{ConductionModel, Item, LayerEntry, Profile, Spanned, Structure, ValenceModel};
 use super::grade::{self, Law};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{
@@ -261,20 +261,30 @@ fn lacking(structure: &Structure, material: &Material) -> Option<&'static str> {
         ("conduction_edge", material.conduction_edge_ev.is_none()),
         ("electron_mass", material.electron_mass_m0.is_none()),
     ];
-    let model = structure.conduction.model;
-    if model == ConductionModel::EnergyDependent && material.nonparabolicity_energy_ev.is_none() {
-        needed.extend([
+    let law = material.nonparabolicity_energy_ev.is_some();
+    match structure.conduction.model {
+        ConductionModel::EnergyDependent if !law => needed.extend([
             ("gap", material.gap_ev.is_none()),
             ("spin_orbit", material.spin_orbit_ev.is_none()),
             ("kane_energy", material.kane_energy_ev.is_none()),
-        ]);
+        ]),
+        ConductionModel::EightBand => needed.push(("gap", material.gap_ev.is_none())),
+        ConductionModel::Parabolic | ConductionModel::EnergyDependent => {}
     }
-    if structure.valence.is_some() {
-        needed.extend([
+    let coupled = [
+        ("valence_edge", material.valence_edge_ev.is_none()),
+        ("luttinger", material.luttinger.is_none()),
+        ("spin_orbit", material.spin_orbit_ev.is_none()),
+    ];
+    match structure.valence.map(|valence| valence.model) {
+        Some(ValenceModel::Decoupled) => needed.extend([
             ("valence_edge", material.valence_edge_ev.is_none()),
             ("heavy_hole_mass", material.heavy_hole_mass_m0.is_none()),
             ("light_hole_mass", material.light_hole_mass_m0.is_none()),
-        ]);
+        ]),
+        Some(ValenceModel::SixBand | ValenceModel::EightBand) => needed.extend(coupled),
+        None if structure.conduction.model == ConductionModel::EightBand => needed.extend(coupled),
+        None => {}
     }
     needed
         .into_iter()
@@ -433,6 +443,26 @@ impl Stack {
             }
         };
         Ok(mixed)
+    }
+
+    /// The materials of a layer at a height in it moved by `steps` along the slope of
+    /// [`material_slope_at`](Self::material_slope_at): every parameter its value plus that many times its slope.
+    ///
+    /// # Errors
+    /// As [`material_slope_at`](Self::material_slope_at).
+    ///
+    /// # Panics
+    /// When there is no such layer.
+    pub fn materials_moved_at(
+        &self,
+        layer: usize,
+        t: f64,
+        element: Element,
+        steps: &[f64],
+    ) -> Result<Vec<Material>, MaterialError> {
+        let along = self.material_slope_at(layer, t, element)?;
+        let moved = |step: &f64| grade::combine(&along, &along, |a, _| a.value + step * a.slope);
+        Ok(steps.iter().map(moved).collect())
     }
 
     /// The monolayer of a layer in nm, strained when there is a substrate; the mean of both faces when it is graded.

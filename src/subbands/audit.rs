@@ -137,7 +137,7 @@ fn velocity_deviation(subbands: &Subbands, envelopes: &[Envelope], i: usize, j: 
     let count = pencil.mesh.order() + 1;
     let (e_i, e_j) = (pairs[i].value, pairs[j].value);
     let mut size = 0.0;
-    let velocity = integrate(pencil, |e, q| {
+    let velocity = integrate(&pencil.mesh, |e, q| {
         let (k, at) = (e * count + q, &pencil.at(e)[q]);
         let forward = envelopes[i].values[k] * at.a(e_j) * envelopes[j].slopes[k];
         let backward = envelopes[i].slopes[k] * at.a(e_i) * envelopes[j].values[k];
@@ -155,7 +155,7 @@ fn sum_rule_deviation(subbands: &Subbands, envelope: &Envelope, index: usize) ->
     let energy = pairs[index].value;
     let centre = moment(pencil, &pairs[index], &pairs[index]);
     let mut size = 0.0;
-    let difference = integrate(pencil, |e, q| {
+    let difference = integrate(&pencil.mesh, |e, q| {
         let (k, at) = (e * count + q, &pencil.at(e)[q]);
         let element = &pencil.mesh.elements[e];
         let z = pencil.mesh.position(element, q) - centre;

@@ -11,16 +11,22 @@ const POINTS_ORDER: usize = 10;
 /// Every state's envelope at the same fractions of every layer, weighted so that the scalar product of two lists is
 /// their overlap: lists of stacks that differ in widths only can be set against each other.
 pub fn layer_envelopes(subbands: &Subbands, stack: &Stack) -> Vec<Vec<f64>> {
+    let pairs = subbands.pairs.iter();
+    let vectors: Vec<&[f64]> = pairs.map(|pair| &pair.vector[..]).collect();
+    layer_values(&subbands.pencil.mesh, &vectors, stack)
+}
+
+/// The weighted values of functions at the same fractions of every layer, from their values at the nodes.
+pub(super) fn layer_values(mesh: &Mesh, functions: &[&[f64]], stack: &Stack) -> Vec<Vec<f64>> {
     let points = Reference::of_order(POINTS_ORDER);
-    let mesh = &subbands.pencil.mesh;
-    let mut lists = vec![Vec::new(); subbands.pairs.len()];
+    let mut lists = vec![Vec::new(); functions.len()];
     for (layer, own) in stack.layers.iter().enumerate() {
         let places = layer_rows(mesh, layer, &points.nodes);
         for (place, weight) in places.iter().zip(&points.weights) {
             let scale = (0.5 * weight * own.width_nm).sqrt();
-            for (list, pair) in lists.iter_mut().zip(&subbands.pairs) {
+            for (list, nodal) in lists.iter_mut().zip(functions) {
                 let value = place.as_ref().map_or(0.0, |(element, row)| {
-                    let local = mesh.local(*element, &pair.vector).iter();
+                    let local = mesh.local(*element, nodal).iter();
                     row.iter().zip(local).map(|(m, v)| m * v).sum()
                 });
                 list.push(value * scale);
@@ -53,16 +59,19 @@ fn layer_rows(mesh: &Mesh, layer: usize, places: &[f64]) -> Vec<Option<(usize, V
 /// Every state's √(w ρ) at the nodes of each element, with ρ its probability density and w the quadrature weights: the
 /// scalar product of two lists is the overlap ∫ √(ρ_i ρ_j) dz.
 pub fn amplitudes(subbands: &Subbands) -> Vec<Vec<f64>> {
-    let mesh = &subbands.pencil.mesh;
-    let amplitudes = (0..subbands.pairs.len()).map(|index| {
-        let mut list = state::density(subbands, index);
-        let nodes = list.chunks_exact_mut(mesh.order() + 1);
-        for (values, element) in nodes.zip(&mesh.elements) {
-            for (value, w) in values.iter_mut().zip(&mesh.reference.weights) {
-                *value = (0.5 * element.length * w * *value).sqrt();
-            }
+    let states = 0..subbands.pairs.len();
+    states
+        .map(|index| amplitude(&subbands.pencil.mesh, state::density(subbands, index)))
+        .collect()
+}
+
+/// √(w ρ) of a density at the nodes of each element.
+pub(super) fn amplitude(mesh: &Mesh, mut density: Vec<f64>) -> Vec<f64> {
+    let nodes = density.chunks_exact_mut(mesh.order() + 1);
+    for (values, element) in nodes.zip(&mesh.elements) {
+        for (value, w) in values.iter_mut().zip(&mesh.reference.weights) {
+            *value = (0.5 * element.length * w * *value).sqrt();
         }
-        list
-    });
-    amplitudes.collect()
+    }
+    density
 }

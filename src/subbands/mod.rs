@@ -3,6 +3,7 @@
 mod audit;
 mod bands;
 mod change;
+mod coupled;
 mod curves;
 mod envelope;
 pub mod multiband;
@@ -12,8 +13,9 @@ mod state;
 pub mod strengths;
 
 pub use audit::Audit;
-pub use bands::{Bands, Place};
-pub use change::change;
+pub use bands::{Bands, Place, Solution};
+pub use change::{change, coupled_change};
+pub use coupled::Coupled;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
 pub use nearby::{Nearby, lower_outer_edge_ev};

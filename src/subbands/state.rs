@@ -1,7 +1,9 @@
 //! What is known of one state.
 
 use super::Subbands;
+use super::multiband::Shares;
 use crate::constants::HBAR2_OVER_2M0;
+use crate::numerics::mesh::Mesh;
 use crate::numerics::pencil::Pencil;
 use crate::numerics::quadrature::MAX_ORDER;
 
@@ -26,7 +28,9 @@ pub struct State {
     /// Estimated discretisation error of the energy.
     pub error_ev: f64,
     /// 1/m∥ is the mean of 1/m(E, z) in the state: the curvature of the subband at its edge, in free-electron masses.
-    /// For holes that of the diagonal approximation, counted positive.
+    /// For holes on their own that of the diagonal approximation, counted positive. Of coupled bands the curvature at
+    /// k∥ = 0: negative where a hole's energy rises or an electron's falls, 0 where two levels that coincide leave in
+    /// straight lines.
     pub in_plane_mass_m0: f64,
     /// Mean position above the bottom of the stack.
     pub centre_nm: f64,
@@ -39,6 +43,8 @@ pub struct State {
     /// How far the energy would fall if the walls stood at infinity: first order in the walls' pressure. Zero unless
     /// the state is bound.
     pub wall_shift_ev: f64,
+    /// What the state is made of, where bands are coupled.
+    pub shares: Option<Shares>,
 }
 
 /// The probability density at the nodes of each element, in 1/nm: all components of the state together.
@@ -69,10 +75,10 @@ pub(super) fn density(subbands: &Subbands, index: usize) -> Vec<f64> {
 }
 
 /// Σ over the nodes of weight × f(element, local node).
-pub(super) fn integrate(pencil: &Pencil, mut f: impl FnMut(usize, usize) -> f64) -> f64 {
+pub(super) fn integrate(mesh: &Mesh, mut f: impl FnMut(usize, usize) -> f64) -> f64 {
     let mut sum = 0.0;
-    for (e, element) in pencil.mesh.elements.iter().enumerate() {
-        for (q, w) in pencil.mesh.reference.weights.iter().enumerate() {
+    for (e, element) in mesh.elements.iter().enumerate() {
+        for (q, w) in mesh.reference.weights.iter().enumerate() {
             sum += 0.5 * element.length * w * f(e, q);
         }
     }
@@ -100,7 +106,7 @@ pub(super) fn lower_outer_edge_ev(pencil: &Pencil) -> f64 {
 pub fn in_plane_mass_m0(subbands: &Subbands, index: usize) -> f64 {
     let Subbands { pencil, pairs, .. } = subbands;
     let pair = &pairs[index];
-    let kinetic = integrate(pencil, |e, q| {
+    let kinetic = integrate(&pencil.mesh, |e, q| {
         let value = pencil.mesh.local(e, &pair.vector)[q];
         let own = subbands.in_plane.as_ref();
         let own = own.and_then(|nodes| nodes[e * (pencil.mesh.order() + 1) + q].as_ref());
@@ -118,30 +124,7 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
     let pair = &subbands.pairs[index];
     // The solver's eigenvalue: minus the energy for holes.
     let level_ev = pair.value;
-    let p = pencil.mesh.order();
-    let density = density(subbands, index);
-    let at = |e: usize, q: usize| density[e * (p + 1) + q];
-    let centre_nm = integrate(pencil, |e, q| {
-        at(e, q) * pencil.mesh.position(&pencil.mesh.elements[e], q)
-    });
-    let variance = integrate(pencil, |e, q| {
-        let distance = pencil.mesh.position(&pencil.mesh.elements[e], q) - centre_nm;
-        at(e, q) * distance * distance
-    });
-    let layers = pencil.mesh.elements.last().map_or(0, |e| e.segment + 1);
-    let mut shares = vec![0.0; layers];
-    integrate(pencil, |e, q| {
-        let element = &pencil.mesh.elements[e];
-        shares[element.segment] +=
-            0.5 * element.length * pencil.mesh.reference.weights[q] * at(e, q);
-        0.0
-    });
-    let (layer, layer_share) = shares
-        .iter()
-        .copied()
-        .enumerate()
-        .max_by(|a, b| a.1.total_cmp(&b.1))
-        .unwrap_or((0, 0.0));
+    let place = place(&pencil.mesh, &density(subbands, index));
     let (first, last) = (
         pencil.coefficients[0],
         pencil.coefficients[pencil.coefficients.len() - 1],
@@ -171,12 +154,48 @@ pub(super) fn describe(subbands: &Subbands, index: usize) -> State {
         from_edge_ev: level_ev - pencil.floor(),
         error_ev: subbands.errors_ev[index],
         in_plane_mass_m0: in_plane_mass_m0(subbands, index),
+        centre_nm: place.centre_nm,
+        extent_nm: place.extent_nm,
+        layer: place.layer,
+        layer_share: place.layer_share,
+        hold,
+        wall_shift_ev,
+        shares: None,
+    }
+}
+
+/// Where a probability density lies.
+pub(super) struct Place {
+    pub centre_nm: f64,
+    pub extent_nm: f64,
+    pub layer: usize,
+    pub layer_share: f64,
+}
+
+/// Mean position, its standard deviation and the layer that holds most of a density, given at the nodes of each element.
+pub(super) fn place(mesh: &Mesh, density: &[f64]) -> Place {
+    let at = |e: usize, q: usize| density[e * (mesh.order() + 1) + q];
+    let position = |e: usize, q: usize| mesh.position(&mesh.elements[e], q);
+    let centre_nm = integrate(mesh, |e, q| at(e, q) * position(e, q));
+    let variance = integrate(mesh, |e, q| at(e, q) * (position(e, q) - centre_nm).powi(2));
+    let layers = mesh.elements.last().map_or(0, |e| e.segment + 1);
+    let mut shares = vec![0.0; layers];
+    integrate(mesh, |e, q| {
+        let element = &mesh.elements[e];
+        shares[element.segment] += 0.5 * element.length * mesh.reference.weights[q] * at(e, q);
+        0.0
+    });
+    let (layer, layer_share) = shares
+        .iter()
+        .copied()
+        .enumerate()
+        .max_by(|a, b| a.1.total_cmp(&b.1))
+        .unwrap_or((0, 0.0));
+    Place {
         centre_nm,
         extent_nm: variance.max(0.0).sqrt(),
         layer,
         layer_share,
-        hold,
-        wall_shift_ev,
     }
 }
 

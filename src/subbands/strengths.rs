@@ -11,6 +11,7 @@
 use super::multiband::{MultibandSubbands, PartSolution, derivative};
 use crate::constants::HBAR2_OVER_2M0;
 use crate::models::multiband::{MultibandOperator, Part};
+use crate::numerics::matrix_pencil::MatrixPencil;
 
 /// The coupling of one conduction and one valence state of the first part.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -34,6 +35,11 @@ pub fn interband_strengths(
         return Vec::new();
     };
     let slope = derivative(operator, &part.pencil.mesh, subbands.k_per_nm, Part::Plus);
+    strengths(part, &slope)
+}
+
+/// All pairs of a conduction and a valence state of the first part, whose derivative with respect to k∥ is `slope`.
+pub(super) fn strengths(part: &PartSolution, slope: &MatrixPencil) -> Vec<Strength> {
     let heights = heights(part);
     let mut strengths = Vec::new();
     for (c, upper) in part.conduction.iter().enumerate() {
@@ -63,9 +69,7 @@ pub fn interband_strengths(
 
 /// z of every unknown, in nm.
 fn heights(part: &PartSolution) -> Vec<f64> {
-    let mesh = &part.pencil.mesh;
-    let (p, n) = (mesh.order(), part.pencil.components());
-    let nodes = 1..mesh.node_count() - 1;
-    let places = nodes.map(|g| mesh.position(&mesh.elements[g / p], g % p));
+    let n = part.pencil.components();
+    let places = part.pencil.positions();
     places.flat_map(|z| std::iter::repeat_n(z, n)).collect()
 }

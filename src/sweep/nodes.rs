@@ -3,10 +3,10 @@
 //! They are the same whatever the number of points, and whatever slice of them is asked for.
 
 use super::Axis;
-use super::solution::{NotSolved, middle_ev, solved};
+use super::solution::{NotSolved, middle_ev, solved, values_ev};
 use crate::models::Band;
 use crate::structure::{Stack, Structure};
-use crate::subbands::{Accuracy, layer_envelopes};
+use crate::subbands::Accuracy;
 use rayon::prelude::*;
 
 /// Intervals that the range is cut into to begin with: an anticrossing of a field sweep is seldom narrower than a
@@ -72,8 +72,9 @@ impl Along<'_> {
     pub fn node(&self, part: f64, bands: &[(Band, usize)]) -> Result<Node, NotSolved> {
         let stack = self.axis.stack(self.stack, self.axis.value(part))?;
         let found = solved(&stack, bands, self.accuracy)?;
-        let envelopes = found.all().iter().map(|band| {
-            let mut all = layer_envelopes(band, &stack);
+        let count = 0..found.count();
+        let envelopes = count.clone().map(|band| {
+            let mut all = found.layer_envelopes(band, &stack);
             for envelope in &mut all {
                 let norm = envelope.iter().map(|v| v * v).sum::<f64>().sqrt();
                 // With an energy-dependent mass part of the norm lies in the valence components.
@@ -81,15 +82,13 @@ impl Along<'_> {
             }
             all
         });
-        let energies_ev = found.all().iter();
-        let middles_ev = found.all().iter().map(|band| middle_ev(&stack, band));
+        let energies_ev = count.clone().map(|band| values_ev(&found, band));
+        let middles_ev = count.map(|band| middle_ev(&stack, &found, band));
         Ok(Node {
             part,
             envelopes: envelopes.collect(),
             middles_ev: middles_ev.collect(),
-            energies_ev: energies_ev
-                .map(|band| band.pairs.iter().map(|pair| pair.value).collect())
-                .collect(),
+            energies_ev: energies_ev.collect(),
             asked: found.asked_for(self.structure),
         })
     }

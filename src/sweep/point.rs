@@ -5,9 +5,9 @@ use super::nodes::{Along, SPARE};
 use super::solution::{NotSolved, middle_ev, solved};
 use crate::constants::HC_EV_UM;
 use crate::models::Band;
-use crate::optics::{Transition, interband, transitions};
+use crate::optics::{Transition, band_transitions, interband};
 use crate::structure::{BandName, Level};
-use crate::subbands::{Bands, Place, lower_outer_edge_ev};
+use crate::subbands::{Bands, Hold, Place};
 
 /// One point of a sweep.
 #[derive(Clone, Debug, PartialEq)]
@@ -114,24 +114,24 @@ fn found(
         .collect();
     let follows = |place: Place| {
         let names = &names[place.band];
-        Follows::new(bands.of(place).band, names[place.state], names.len())
+        Follows::new(bands.band(place.band), names[place.state], names.len())
     };
-    let levels = bands.all().iter().enumerate().map(|(band, solved)| {
-        let (floor_ev, outer_ev) = (solved.pencil.floor(), lower_outer_edge_ev(&solved.pencil));
-        let middle_ev = middle_ev(&stack, solved);
-        let pairs = solved.pairs.iter().zip(&solved.errors_ev).enumerate();
-        pairs
+    let levels = (0..bands.count()).map(|band| {
+        let sign = bands.band(band).sign();
+        let middle_ev = middle_ev(&stack, &bands, band);
+        let states = bands.states(band).into_iter().enumerate();
+        states
             .take(shown.listed[band])
-            .map(|(state, (pair, error_ev))| {
+            .map(|(state, own)| {
                 let place = Place { band, state };
                 LevelAt {
                     level: bands.level(place),
                     follows: follows(place),
-                    energy_ev: bands.energy_ev(place),
-                    from_edge_ev: pair.value - floor_ev,
-                    from_middle_ev: pair.value - middle_ev,
-                    error_ev: *error_ev,
-                    bound: pair.value <= outer_ev,
+                    energy_ev: own.energy_ev,
+                    from_edge_ev: own.from_edge_ev,
+                    from_middle_ev: sign * own.energy_ev - middle_ev,
+                    error_ev: own.error_ev,
+                    bound: own.hold != Hold::Walls,
                 }
             })
             .collect()
@@ -145,11 +145,11 @@ fn found(
     let inside = |band: usize| -> Vec<Transition> {
         let mut pairs = places.iter().flatten();
         match pairs.any(|(from, to)| from.band == band && to.band == band) {
-            true => transitions(&bands.all()[band]),
+            true => band_transitions(&bands, band),
             false => Vec::new(),
         }
     };
-    let inside: Vec<Vec<Transition>> = (0..bands.all().len()).map(inside).collect();
+    let inside: Vec<Vec<Transition>> = (0..bands.count()).map(inside).collect();
     let across = places
         .iter()
         .flatten()
@@ -163,7 +163,9 @@ fn found(
         let strength = if from.band == to.band {
             let own = &inside[from.band];
             let (lower, upper) = (from.state.min(to.state), from.state.max(to.state));
-            let found = own.iter().find(|t| t.from == lower && t.to == upper)?;
+            let found = own
+                .iter()
+                .find(|t| (t.from.min(t.to), t.from.max(t.to)) == (lower, upper))?;
             Strength::Dipole {
                 dipole_nm: found.dipole_nm,
                 oscillator_strength: found.oscillator_strength,
@@ -195,7 +197,7 @@ fn found(
             strength,
         })
     });
-    let faults = bands.all().iter().flat_map(|band| band.audit().faults());
+    let faults = bands.audit().faults().into_iter();
     Ok(Found {
         transitions: transitions.collect(),
         faults: faults.map(|fault| fault.to_string()).collect(),
@@ -208,7 +210,7 @@ fn place(bands: &Bands, level: Level) -> Option<Place> {
     let place = bands.place(level);
     let exists = match level.band {
         BandName::Valence => level.index <= bands.holes().len(),
-        _ => place.state + 1 == level.index && place.state < bands.of(place).pairs.len(),
+        _ => place.state + 1 == level.index && place.state < bands.level_count(place.band),
     };
     exists.then_some(place)
 }

@@ -3,7 +3,8 @@
 use crate::materials::MaterialError;
 use crate::models::{Band, Unsuitable};
 use crate::structure::Stack;
-use crate::subbands::{Accuracy, Bands, Subbands};
+use crate::subbands::multiband::Band as Side;
+use crate::subbands::{Accuracy, Bands, Place, Solution};
 
 /// Why there is nothing at one value of the swept number.
 #[derive(Clone, Debug, PartialEq, thiserror::Error)]
@@ -26,14 +27,36 @@ pub fn solved(
         .map_err(|(layer, reason)| NotSolved::Unsuitable { layer, reason })
 }
 
-/// The lowest band edge without the field, and with a field that is zero at the middle of the stack: on the solver's
-/// scale, in eV. In a field the edge itself moves with the ends of the stack.
-pub fn middle_ev(stack: &Stack, solved: &Subbands) -> f64 {
-    let mesh = &solved.pencil.mesh;
-    let field = solved.band.sign() * stack.field_v_per_nm;
-    let edges = mesh.elements.iter().enumerate().flat_map(|(e, element)| {
-        let nodes = solved.pencil.at(e).iter().enumerate();
-        nodes.map(move |(q, at)| at.constant - field * mesh.position(element, q))
-    });
-    edges.fold(f64::INFINITY, f64::min) + field * 0.5 * stack.total_width_nm()
+/// The levels of a band counted away from the gap, ascending, in eV.
+pub fn values_ev(bands: &Bands, band: usize) -> Vec<f64> {
+    let sign = bands.band(band).sign();
+    let states = 0..bands.level_count(band);
+    states
+        .map(|state| sign * bands.energy_ev(Place { band, state }))
+        .collect()
+}
+
+/// A band's edge where it is nearest to the gap without the field, and with a field that is zero at the middle of the
+/// stack: counted away from the gap, in eV. In a field the edge itself moves with the ends of the stack.
+pub fn middle_ev(stack: &Stack, bands: &Bands, band: usize) -> f64 {
+    let field = bands.band(band).sign() * stack.field_v_per_nm;
+    let edge_ev = match bands.solution(band) {
+        Solution::Alone(solved) => {
+            let mesh = &solved.pencil.mesh;
+            let edges = mesh.elements.iter().enumerate().flat_map(|(e, element)| {
+                let nodes = solved.pencil.at(e).iter().enumerate();
+                nodes.map(move |(q, at)| at.constant - field * mesh.position(element, q))
+            });
+            edges.fold(f64::INFINITY, f64::min)
+        }
+        Solution::Coupled(coupled, side) => coupled
+            .layer_edges_ev()
+            .into_iter()
+            .map(|[conduction, heavy, light]| match side {
+                Side::Conduction => conduction,
+                Side::Valence => -heavy.max(light),
+            })
+            .fold(f64::INFINITY, f64::min),
+    };
+    edge_ev + field * 0.5 * stack.total_width_nm()
 }

@@ -24,7 +24,7 @@ impl<'b> Followed<'b> {
             energies_ev: energies_ev(bands, &names),
             names,
             places,
-            nearby: bands.all().iter().map(Nearby::new).collect(),
+            nearby: bands.alone().map(Nearby::new).collect(),
         }
     }
 
@@ -95,7 +95,7 @@ pub fn names(structure: &Structure, windows: &[Window], bands: &Bands) -> Vec<Le
     let of_aims = aims.flat_map(|aim| [aim.from, aim.to]);
     let asked = bands.asked_for(structure);
     let mut names: Vec<Level> = Vec::new();
-    for (solved, asked) in bands.all().iter().zip(asked) {
+    for (solved, asked) in bands.alone().zip(asked) {
         let band = solved.band.name();
         let own = of_windows.iter().filter(|level| level.band == band);
         let highest = own.map(|level| level.index).max().unwrap_or(0);

@@ -1,15 +1,12 @@
 //! A stack at given values of its variables, solved and set against the aims.
 
 use super::aim::{Aim, Goal};
+use super::band_slopes::BandSlopes;
 use super::keep::Keep;
-use crate::models::{Band, BandOperator, Unsuitable};
-use crate::numerics::sensitivity::{
-    Change, PairSlope, moment, moment_slope, pair_slopes, value_slope,
-};
+use crate::models::{Band, Unsuitable};
 use crate::structure::{BandName, Knob, Level, Stack};
-use crate::subbands::{self, Accuracy, Bands, Place, Subbands, change};
+use crate::subbands::{Accuracy, Bands, Place};
 use nalgebra::{DMatrix, DVector};
-use std::collections::HashMap;
 
 /// One variable with its bounds, in inner units.
 #[derive(Clone, Debug, PartialEq)]
@@ -76,9 +73,12 @@ pub type Characters = Vec<Vec<Vec<f64>>>;
 
 /// The envelopes of all states of a design.
 pub fn characters(design: &Design) -> Characters {
-    let bands = design.bands.all().iter();
-    bands
-        .map(|band| subbands::layer_envelopes(band, &design.stack))
+    all_envelopes(&design.bands, &design.stack)
+}
+
+fn all_envelopes(bands: &Bands, stack: &Stack) -> Characters {
+    (0..bands.count())
+        .map(|band| bands.layer_envelopes(band, stack))
         .collect()
 }
 
@@ -128,11 +128,7 @@ impl Task {
     ) -> Result<Design, (usize, Unsuitable)> {
         let bands = Bands::solve(&stack, &self.bands, self.accuracy)?;
         let own: Vec<Vec<Vec<f64>>> = match characters {
-            Some(_) => bands
-                .all()
-                .iter()
-                .map(|band| subbands::layer_envelopes(band, &stack))
-                .collect(),
+            Some(_) => all_envelopes(&bands, &stack),
             None => Vec::new(),
         };
         let states: Vec<(Place, Place)> = self
@@ -158,10 +154,7 @@ impl Task {
             .zip(&states)
             .map(|(aim, &(from, to))| match aim.goal {
                 Goal::Energy { .. } => bands.energy_ev(to) - bands.energy_ev(from),
-                _ => {
-                    let Subbands { pencil, pairs, .. } = bands.of(from);
-                    moment(pencil, &pairs[from.state], &pairs[to.state]).abs()
-                }
+                _ => bands.dipole_nm(from.band, from.state, to.state),
             })
             .collect();
         let residuals = self
@@ -187,47 +180,18 @@ impl Task {
     /// The slopes of the aims' values: one row per aim, one column per variable, per inner unit of the variable.
     pub fn value_slopes(&self, design: &Design) -> DMatrix<f64> {
         let mut slopes = DMatrix::zeros(self.aims.len(), self.variables.len());
-        let changes: Vec<Vec<Change>> = design
-            .bands
-            .all()
-            .iter()
-            .map(|solved| {
-                // A design that was solved has its operators.
-                let operator = BandOperator::new(&design.stack, solved.band).ok();
-                self.variables
-                    .iter()
-                    .filter_map(|v| Some(change(operator.as_ref()?, &solved.pencil, v.knob)))
-                    .collect()
-            })
+        let knobs: Vec<Knob> = self.variables.iter().map(|v| v.knob).collect();
+        let mut bands: Vec<BandSlopes> = (0..design.bands.count())
+            .map(|band| BandSlopes::new(&design.stack, design.bands.solution(band), &knobs))
             .collect();
-        let energy_slope = |place: Place, column: usize| {
-            let solved = design.bands.of(place);
-            let change = changes[place.band].get(column);
-            let slope = change.map(|c| value_slope(&solved.pencil, c, &solved.pairs[place.state]));
-            solved.band.sign() * slope.unwrap_or(0.0)
-        };
-        let mut with_vectors: HashMap<(usize, usize), Vec<PairSlope>> = HashMap::new();
         for (row, (aim, &(from, to))) in self.aims.iter().zip(&design.states).enumerate() {
-            if aim.goal.is_energy() {
-                for column in 0..self.variables.len() {
-                    slopes[(row, column)] = energy_slope(to, column) - energy_slope(from, column);
-                }
-                continue;
-            }
-            let Subbands { pencil, pairs, .. } = design.bands.of(from);
-            let changes = &changes[from.band];
-            for place in [from, to] {
-                with_vectors
-                    .entry((place.band, place.state))
-                    .or_insert_with(|| pair_slopes(pencil, changes, &pairs[place.state]));
-            }
-            let [from_slopes, to_slopes] =
-                [from, to].map(|place| &with_vectors[&(place.band, place.state)]);
-            let (i, j) = (&pairs[from.state], &pairs[to.state]);
-            let sign = moment(pencil, i, j).signum();
-            for (column, change) in changes.iter().enumerate() {
-                let (i, j) = ((i, &from_slopes[column]), (j, &to_slopes[column]));
-                slopes[(row, column)] = sign * moment_slope(pencil, change, i, j);
+            for column in 0..self.variables.len() {
+                slopes[(row, column)] = if aim.goal.is_energy() {
+                    bands[to.band].energy(to.state, column)
+                        - bands[from.band].energy(from.state, column)
+                } else {
+                    bands[from.band].dipole(from.state, to.state, column)
+                };
             }
         }
         slopes

@@ -1,6 +1,7 @@
 //! Tuning: layer widths, compositions and field changed, inside their bounds, until the transitions are the wanted ones.
 
 mod aim;
+mod band_slopes;
 mod choice;
 mod evaluate;
 mod keep;

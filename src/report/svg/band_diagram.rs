@@ -13,10 +13,10 @@ use super::text::{Run, formula, minus, plain, short, shortened};
 use crate::constants::HC_EV_UM;
 use crate::materials::Substance;
 use crate::models::model_name;
-use crate::optics::{interband, transitions};
+use crate::optics::{band_transitions, interband};
 use crate::report::table::significant;
 use crate::structure::{BandName, ConductionModel, Item, Stack, Structure};
-use crate::subbands::{Bands, Curves, Hold, Place};
+use crate::subbands::{Bands, Curves, Hold, Place, State, Subbands};
 
 /// How finely the curves of a diagram are to be sampled: well below a line's width.
 pub const FINENESS: f64 = 4e-4;
@@ -59,7 +59,7 @@ struct Drawn {
 }
 
 impl BandDiagram {
-    /// Gathers the diagram of so many states of each band. The transitions are those that the file's aims name, else
+    /// Gathers the diagram of so many states of each band that was solved on its own. The transitions are those that the file's aims name, else
     /// the strongest.
     pub fn new(
         structure: &Structure,
@@ -68,12 +68,16 @@ impl BandDiagram {
         curves: Vec<Curves>,
         shown: &[usize],
     ) -> BandDiagram {
-        let with_holes = bands.all().len() > 1;
+        let with_holes = bands.alone().count() > 1;
         // Floors of hole bands are those of minus the energy.
-        let highest = bands.all().iter().skip(1).map(|b| -b.pencil.floor());
+        let floor_ev = |b: &Subbands| b.band.sign() * b.pencil.floor();
         let zeros_ev = [
-            bands.conduction().pencil.floor(),
-            highest.fold(f64::NEG_INFINITY, f64::max),
+            bands.conduction().map_or(0.0, floor_ev),
+            bands
+                .alone()
+                .skip(1)
+                .map(floor_ev)
+                .fold(f64::NEG_INFINITY, f64::max),
         ];
         let panel_of = |place: Place| usize::from(place.band > 0);
         let mut panels = vec![Content {
@@ -88,12 +92,13 @@ impl BandDiagram {
             });
         }
         let mut places: [Vec<Place>; 2] = Default::default();
-        let conduction = (0..bands.conduction().pairs.len()).map(|state| Place { band: 0, state });
+        let conduction = (0..bands.level_count(0)).map(|state| Place { band: 0, state });
         for place in conduction.chain(bands.holes()) {
-            if place.state < shown[place.band] {
+            if place.band < curves.len() && place.state < shown[place.band] {
                 places[panel_of(place)].push(place);
             }
         }
+        let states: Vec<Vec<State>> = (0..curves.len()).map(|band| bands.states(band)).collect();
         for (panel, content) in panels.iter_mut().enumerate() {
             for (band, curves) in curves.iter().enumerate() {
                 if panel_of(Place { band, state: 0 }) == panel {
@@ -103,7 +108,7 @@ impl BandDiagram {
             }
             content.edges.dedup_by(|one, other| alike(one, other));
             for (number, place) in places[panel].iter().enumerate() {
-                let state = &bands.of(*place).states()[place.state];
+                let state = &states[place.band][place.state];
                 let level = bands.level(*place);
                 content.states.push(DrawnState {
                     energy_ev: bands.energy_ev(*place) - zeros_ev[panel],
@@ -376,7 +381,7 @@ fn chosen(
         }
         return pairs;
     }
-    let mut inside = transitions(bands.conduction());
+    let mut inside = band_transitions(bands, 0);
     inside.retain(|t| t.to < shown[0]);
     inside.sort_by(|a, b| b.oscillator_strength.total_cmp(&a.oscillator_strength));
     let strongest = inside.first().map_or(0.0, |t| t.oscillator_strength);
@@ -385,7 +390,7 @@ fn chosen(
     let electron = |state: usize| Place { band: 0, state };
     let inside = inside.iter().map(|t| (electron(t.from), electron(t.to)));
     let mut between = Vec::new();
-    if bands.all().len() > 1 {
+    if bands.alone().count() > 1 {
         between = interband(stack, bands);
         between.retain(|pair| is_shown(&pair.hole) && is_shown(&pair.electron));
         // The light of both TE directions and TM together.
@@ -471,7 +476,7 @@ fn caption(structure: &Structure, stack: &Stack, zeros_ev: [f64; 2], panels: &[C
         },
         match structure.conduction.model {
             ConductionModel::Parabolic => ", all of the same area",
-            ConductionModel::EnergyDependent => {
+            ConductionModel::EnergyDependent | ConductionModel::EightBand => {
                 "; shaded: the sum over all components of each state, all of the same area"
             }
         },
