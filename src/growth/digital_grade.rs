@@ -64,7 +64,7 @@ pub fn digital_grade(
     let (_, [a, b]) = best?;
     let total = monolayers.round() as u32;
     let count = total.div_ceil(PERIOD) as usize;
-    if count < 2 || count > MOST_PERIODS {
+    if !(2..=MOST_PERIODS).contains(&count) {
         return None;
     }
     let scale = miss(a, b);
