@@ -58,9 +58,9 @@ fn levels(
     for spin in [0, 4] {
         matrix[(spin, spin)] =
             Complex::from(material.conduction_edge_ev.unwrap() + h * kinetic.own);
-        for i in 0..3 {
+        for (i, strain) in strains.iter().enumerate() {
             let own = h * if i == axis { kinetic.l } else { kinetic.m };
-            let shear = b * (3.0 * strains[i] - trace);
+            let shear = b * (3.0 * strain - trace);
             let place = spin + 1 + i;
             matrix[(place, place)] = Complex::from(edge - third + own + shear);
             if i == axis {

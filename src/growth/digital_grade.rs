@@ -8,15 +8,15 @@ use super::digital::{COMPOSITION_TOLERANCE, distinct};
 use super::openings::{Opening, group_three, miss};
 use crate::structure::Stack;
 
-/// Monolayers of one period: some 2 nm, thin enough for electrons to see the mean; common practice.
-const PERIOD: u32 = 8;
+/// Monolayers of one period: less than 2 nm, thin enough for electrons to see the mean; common practice.
+const PERIOD: u32 = 6;
 /// More periods than this fill no sheet.
 const MOST_PERIODS: usize = 60;
 
 /// A digital alloy that takes the place of a graded layer.
 #[derive(Clone, Debug, PartialEq)]
 pub struct DigitalGrade {
-    /// The formulas of the two materials, the lower one of each period first.
+    /// The formulas of the two materials, that of the lower face first.
     pub formulas: [String; 2],
     /// Whole monolayers of each in each period, from the bottom up.
     pub periods: Vec<[u32; 2]>,
@@ -64,7 +64,7 @@ pub fn digital_grade(
     let (_, [a, b]) = best?;
     let total = monolayers.round() as u32;
     let count = total.div_ceil(PERIOD) as usize;
-    if count < 2 || count > MOST_PERIODS {
+    if !(2..=MOST_PERIODS).contains(&count) {
         return None;
     }
     let scale = miss(a, b);
@@ -114,15 +114,22 @@ impl DigitalGrade {
         self.periods.iter().flatten().sum()
     }
 
-    /// The layers as they are written in a structure file, in place of the graded layer; neighbours of one material are one
-    /// layer.
+    /// The layers as they are written in a structure file, in place of the graded layer: in each period the scarcer material in
+    /// the middle, so that no period leans to one side; neighbours of one material are one layer.
     pub fn yaml(&self) -> String {
         let mut layers: Vec<(usize, u32)> = Vec::new();
-        for period in &self.periods {
-            for (material, &monolayers) in period.iter().enumerate().filter(|(_, n)| **n > 0) {
+        for &[first, second] in &self.periods {
+            let (around, middle) = match second <= first {
+                true => ((0, first), (1, second)),
+                false => ((1, second), (0, first)),
+            };
+            let below = around.1 / 2;
+            for (material, monolayers) in [(around.0, below), middle, (around.0, around.1 - below)]
+            {
                 match layers.last_mut() {
                     Some((last, sum)) if *last == material => *sum += monolayers,
-                    _ => layers.push((material, monolayers)),
+                    _ if monolayers > 0 => layers.push((material, monolayers)),
+                    _ => {}
                 }
             }
         }

@@ -50,13 +50,12 @@ pub fn growth_coupling<T: Number>(
         return coupling;
     };
     // Both potentials in their tabulated signs: Ec moves by a_c Tr ε, Ev by −a_v Tr ε.
-    for potential in [
+    let potentials = [
         material.hydrostatic_conduction_ev,
         material.hydrostatic_valence_ev,
-    ] {
-        if let Some(potential) = potential {
-            coupling.light_gap_ev = coupling.light_gap_ev + potential * strain.trace();
-        }
+    ];
+    for potential in potentials.into_iter().flatten() {
+        coupling.light_gap_ev = coupling.light_gap_ev + potential * strain.trace();
     }
     coupling.heavy_gap_ev = coupling.light_gap_ev;
     if let Some(q) = shear(material, substrate_lattice_nm) {

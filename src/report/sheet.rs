@@ -648,7 +648,7 @@ fn grade(flag: &Flag) -> Option<DigitalGradeRow> {
         mean_miss: digital.mean_miss,
         structure: digital.yaml(),
         sentence: format!(
-            "{label}: {} periods of {first} and {second}, {} ML. A period's mean is off the grade by up to {:.3} in a fraction, the whole layer's by {:.4}",
+            "{label}: {} periods of {first} and {second}, {} ML. A period's mean is off the grade by up to {:.3} in a fraction, the whole layer's by {:.4}; solve it before it is grown",
             digital.periods.len(),
             digital.total(),
             digital.largest_miss,

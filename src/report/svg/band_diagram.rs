@@ -495,11 +495,15 @@ fn caption(structure: &Structure, stack: &Stack, zeros_ev: [f64; 2], panels: &[C
         ),
         true => format!(
             "Levels: c conduction, hh heavy-hole, lh light-hole. The axis is broken: zeros are the lowest conduction edge \
-             ({} eV in the table of levels) and the highest valence edge ({} eV), {} meV below it; the panels have scales of \
+             ({} eV in the table of levels) and the highest valence edge ({} eV), {:.1} meV {} it; the panels have scales of \
              their own.",
             minus(&format!("{:.4}", zeros_ev[0])),
             minus(&format!("{:.4}", zeros_ev[1])),
-            minus(&format!("{:.1}", 1e3 * (zeros_ev[0] - zeros_ev[1])))
+            1e3 * (zeros_ev[0] - zeros_ev[1]).abs(),
+            match zeros_ev[0] < zeros_ev[1] {
+                true => "above",
+                false => "below",
+            }
         ),
     };
     repeats(&structure.sequence, &mut text);
