@@ -209,7 +209,7 @@ fn assert_levels_in_place(name: &str, solved: &Solved, svg: &str) {
     let levels: Vec<f64> = children(group(&document, "levels"), "line")
         .map(|line| attribute(line, "y1"))
         .collect();
-    let states = solved.bands.conduction().states();
+    let states = solved.bands.conduction().unwrap().states();
     assert_eq!(levels.len(), states.len(), "{name}");
     for (y, state) in levels.iter().zip(&states) {
         let (drawn, solved) = (energy(*y), unit * state.from_edge_ev);
@@ -303,7 +303,7 @@ fn many_levels_nearly_in_one_place() {
            layers:\n      - {name: a well, material: W, width: 6 nm}\n      - {name: a barrier, material: B, width: 9 nm}\n  \
            - {material: B, width: 6 nm}\n";
     let solved = solved(&text);
-    let pairs = &solved.bands.conduction().pairs;
+    let pairs = &solved.bands.conduction().unwrap().pairs;
     assert!(pairs[11].value - pairs[0].value < 1e-3);
     check_all("twelve levels", &text);
 }
@@ -647,7 +647,7 @@ fn a_histogram_shows_what_it_was_given() {
 #[test]
 fn every_aim_is_told() {
     let solved = solved(SHIPPED[4]);
-    let energy = |k: usize| solved.bands.conduction().pairs[k].value;
+    let energy = |k: usize| solved.bands.conduction().unwrap().pairs[k].value;
     for width in WIDTHS {
         let svg = diagram(&solved).svg(width);
         let document = Document::parse(&svg).unwrap();
@@ -745,7 +745,7 @@ fn holes_hang_below_the_electrons() {
                 .collect();
             let lowest = electrons.iter().fold(0.0, |a: f64, y| a.max(*y));
             assert!(drawn.iter().all(|y| *y > lowest), "{name}: holes below");
-            let wavelength_um = 1.239_841_984 / (bands.conduction().energy_ev(0) - holes[0]);
+            let wavelength_um = 1.239_841_984 / (bands.conduction().unwrap().energy_ev(0) - holes[0]);
             let told: String = children(document.root_element(), "text")
                 .map(words)
                 .collect();
