@@ -4,14 +4,17 @@
 //! text → document (nodes with places) → Structure (what the file says, checked) → Stack (flat layers, materials resolved)
 //! ```
 
+mod charge;
 pub mod document;
 mod doubts;
 mod fields;
 mod file;
 mod grade;
 mod growth;
+mod potential;
 mod read;
 mod read_aims;
+mod read_charge;
 mod read_growth;
 mod read_keep;
 mod read_layers;
@@ -24,15 +27,17 @@ mod stack;
 mod temperature;
 mod wafer;
 
+pub use charge::{Bending, Charge, Ionisation};
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile,
-    Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
+    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, PlaneEntry,
+    Profile, Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};
 pub use spreads::{Grading, Radial, Tolerance, Window};
-pub use stack::{Layer, Stack};
+pub use potential::Potential;
+pub use stack::{Layer, Plane, Stack};
 pub use wafer::{Cause, Design, NotGrown};
 
 mod knob;

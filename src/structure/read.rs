@@ -1,15 +1,16 @@
 //! The whole of a structure file: text in, checked structure and messages out.
 
+use super::charge::Charge;
 use super::document::{self, Node, Value};
 use super::fields::{Checker, Fields, Limits};
 use super::file::{BandName, ConductionBand, ConductionModel, Structure, ValenceBand};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
-use super::{read_growth, read_materials, read_tolerance, read_tune};
+use super::{read_charge, read_growth, read_materials, read_tolerance, read_tune};
 use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
-const KEYS: [&str; 11] = [
+const KEYS: [&str; 12] = [
     "title",
     "substrate",
     "temperature",
@@ -18,6 +19,7 @@ const KEYS: [&str; 11] = [
     "bands",
     "materials",
     "layers",
+    "charge",
     "tune",
     "growth",
     "tolerance",
@@ -54,6 +56,7 @@ pub fn read(text: &str) -> (Option<Structure>, Vec<Diagnostic>) {
         match structure.stack() {
             Ok(stack) => {
                 problems.extend(super::doubts::doubts(structure, &stack));
+                problems.extend(read_charge::unfitting(structure, &stack));
                 if let Some(growth) = &structure.growth {
                     problems.extend(read_growth::of_stack(growth, structure, &stack));
                 }
@@ -157,8 +160,11 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let tolerance = fields
         .get("tolerance")
         .and_then(|node| read_tolerance::tolerance(checker, node));
+    let charge = fields
+        .get("charge")
+        .map(|node| read_charge::charge(checker, node, &fields));
     let layers = layers?;
-    Some(Structure {
+    let mut structure = Structure {
         title,
         substrate: settled(substrate)?,
         temperature_k: settled(temperature)?
@@ -172,12 +178,19 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
             .into_iter()
             .map(|(_, entry)| entry)
             .collect::<Option<_>>()?,
+        planes: layers.planes,
         sequence: layers.sequence,
+        charge: settled(charge)?.unwrap_or(Charge::Flat),
         tune,
         growth: settled(growth)?,
         tolerance,
         field_line: free_line(checker.text, root),
-    })
+    };
+    if !fields.has("charge") {
+        let walls = fields.get("ends").and_then(Node::text).is_none_or(|ends| ends == "walls");
+        structure.charge = read_charge::unstated(checker, &structure, walls);
+    }
+    Some(structure)
 }
 
 /// `None` when the key was there but mistaken.

@@ -297,8 +297,19 @@ impl Design {
                 width_nm: 0.0,
                 donors_cm3: 0.0,
                 acceptors_cm3: 0.0,
+                sheet_donors_cm2: 0.0,
+                sheet_acceptors_cm2: 0.0,
             });
         }
+        // Planes at a face come to lie in the middle of its interface; those at an end stay there.
+        for plane in &mut self.stack.planes {
+            (plane.layer, plane.fraction) = match plane.layer {
+                layer if plane.fraction > 0.0 => (2 * layer, plane.fraction),
+                0 => (0, 0.0),
+                layer => (2 * layer - 1, 0.5),
+            };
+        }
+        self.stack.potential = None;
     }
 
     /// Makes the interfaces of what lies below and above them.

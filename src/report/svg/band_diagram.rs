@@ -643,6 +643,7 @@ fn entries(items: &[Item], list: &mut Vec<usize>) {
     for item in items {
         match item {
             Item::Layer(entry) => list.push(*entry),
+            Item::Plane(_) => {}
             Item::Repeat { items, .. } => entries(items, list),
         }
     }
