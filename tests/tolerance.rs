@@ -43,7 +43,6 @@ fn sensitivities_of(text: &str) -> Vec<Sensitivity> {
         &structure,
         &stack,
         &design,
-        structure.conduction.model,
         &Nearby::new(&solved),
     )
 }

@@ -7,6 +7,7 @@ use crate::diagnostics::Diagnostic;
 use crate::models::multiband::{Direction, MultibandModel, MultibandOperator};
 use crate::report::Dispersion;
 use crate::report::svg::Width;
+use crate::structure::Charge;
 use crate::subbands::multiband::{Wanted, follow_multiband, solve_multiband, zone_centre_masses};
 use crate::units::{self, Dimension};
 use std::path::Path;
@@ -60,6 +61,10 @@ pub fn dispersion(
             show(&problem, &input.name, &input.text);
             Exit::WrongInput
         })?;
+    if input.structure.charge != Charge::Flat {
+        let words = "charge bends the bands of this file, but coupled bands are solved with flat ones";
+        show(&Diagnostic::warning(words), &input.name, &input.text);
+    }
     let wanted = Wanted {
         conduction: match model {
             MultibandModel::SixBand => 0,

@@ -7,7 +7,8 @@ use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
 use crate::models::BandOperator;
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
-use crate::subbands::{self, Accuracy};
+use crate::subbands;
+use crate::tolerance::charged_bands;
 use std::path::Path;
 
 /// As few wafers as may be sampled.
@@ -47,12 +48,15 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
 }
 
 fn bands(input: &Input, width: Width) -> Result<String, Exit> {
-    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let states = input.structure.conduction.states;
-    let subbands = subbands::solve(&operator, states, Accuracy::default());
-    input.doubt(&subbands, states);
-    let curves = subbands::curves(&operator, &subbands, states, FINENESS);
-    let diagram = BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
+    let solution = input.solved(&charged_bands(&input.structure, states))?;
+    let subbands = solution.bands.conduction();
+    let operator = BandOperator::new(&solution.stack, subbands.band)
+        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    input.doubt(subbands, states);
+    input.doubt_charge(solution.equilibrium.as_ref());
+    let curves = subbands::curves(&operator, subbands, states, FINENESS);
+    let diagram = BandDiagram::new(&input.structure, &solution.stack, subbands, curves, states)
+        .with_fermi_level(solution.equilibrium.as_ref().map(|found| found.fermi_ev));
     Ok(diagram.svg(width))
 }

@@ -9,7 +9,8 @@ use crate::growth;
 use crate::models::BandOperator;
 use crate::report::Sheet;
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
-use crate::subbands::{self, Accuracy};
+use crate::subbands;
+use crate::tolerance::charged_bands;
 use std::path::Path;
 
 /// The page samples wafers of stacks up to this size: larger ones would keep the reader waiting.
@@ -32,19 +33,19 @@ pub fn sheet(
         // A plan is made of a `growth` block.
         (Ok(_), None) => return Err(Exit::WrongInput),
     };
-    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
-        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
     let highest = aims.map(|aim| aim.from.index.max(aim.to.index)).max();
     let states = input.structure.conduction.states.max(highest.unwrap_or(0));
-    let subbands = subbands::solve(&operator, states, Accuracy::default());
-    input.doubt(&subbands, states);
+    let solution = input.solved(&charged_bands(&input.structure, states))?;
+    let subbands = solution.bands.conduction();
+    input.doubt(subbands, states);
+    input.doubt_charge(solution.equilibrium.as_ref());
     let sheet = Sheet::new(
         &input.structure,
         growth,
         &input.stack,
         &plan,
-        &subbands,
+        subbands,
         states,
     );
     let page = output.is_some_and(|path| {
@@ -57,9 +58,12 @@ pub fn sheet(
         SheetFormat::Table
     }) {
         SheetFormat::Html => {
-            let curves = subbands::curves(&operator, &subbands, states, FINENESS);
+            let operator = BandOperator::new(&solution.stack, subbands.band)
+                .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+            let curves = subbands::curves(&operator, subbands, states, FINENESS);
             let diagram =
-                BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
+                BandDiagram::new(&input.structure, &solution.stack, subbands, curves, states)
+                    .with_fermi_level(solution.equilibrium.as_ref().map(|found| found.fermi_ev));
             let mut pictures = vec![(
                 "Band edge and squared envelopes at their energies".to_owned(),
                 diagram.svg(Width::Page),

@@ -1,9 +1,11 @@
 //! Transitions between subbands of one band: energies, dipoles and strengths for light polarised along growth; and those
 //! between the valence and the conduction band, with their exciton.
 
+mod depolarisation;
 mod exciton;
 mod interband;
 
+pub use depolarisation::{Depolarisation, Line, Shifted, depolarisation};
 pub use exciton::{Exciton, Pair, exciton};
 pub use interband::{Alignment, Interband, Selection, interband, lowest_exciton};
 

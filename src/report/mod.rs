@@ -1,5 +1,6 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod charge;
 mod check;
 mod dispersion;
 mod interband;
@@ -16,6 +17,7 @@ mod table;
 mod tolerance;
 mod tuning;
 
+pub use charge::ChargeReport;
 pub use check::Check;
 pub use dispersion::Dispersion;
 pub use levels::Levels;

@@ -86,6 +86,11 @@ impl Design {
         &self.stack
     }
 
+    /// Takes the potential over that the design's own stack, solved, carries.
+    pub fn take_potential(&mut self, solved: &Stack) {
+        self.stack.potential = solved.potential.clone();
+    }
+
     /// The length over which interfaces are graded, if they are.
     pub fn grading_nm(&self) -> Option<f64> {
         self.grading_nm

@@ -1,21 +1,24 @@
 //! Tolerances: how far each transition moves with everything that a grower and a user cannot hold exactly, and what share
 //! of wafers will do.
 
+mod charged;
 mod derivative;
 mod radial;
 mod sampling;
 mod sensitivities;
 mod statistics;
 
+pub use charged::bands as charged_bands;
 pub use derivative::level_slopes;
 pub use radial::Ring;
 pub use sampling::{Distributed, Sampled, Source, Watch, WindowYield, sample, sources};
 pub use sensitivities::{Sensitivity, sensitivities};
 pub use statistics::{Histogram, Share, Statistics, share};
 
-use crate::models::{BandOperator, Unsuitable};
+use crate::charge::{self, ChargeError};
+use crate::models::Unsuitable;
 use crate::structure::{Design, Stack, Structure};
-use crate::subbands::{self, Accuracy, Nearby, Subbands};
+use crate::subbands::{Accuracy, Nearby, Subbands};
 
 /// Everything about a structure's tolerances.
 #[derive(Clone, Debug)]
@@ -48,16 +51,51 @@ pub enum ToleranceError {
         "a window names conduction {wanted}, but the stack is too small a box for more than {levels} levels"
     )]
     NoLevel { wanted: usize, levels: usize },
+    #[error(transparent)]
+    Charge(ChargeError),
+    #[error("charge and potential of a wafer did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV")]
+    Unsettled { residual_ev: f64 },
 }
 
 impl ToleranceError {
-    /// A layer of the design that does not suit, when all layers of the file do.
-    fn interface(design: &Design, layer: usize, reason: Unsuitable) -> Self {
-        ToleranceError::Interface {
-            interface: design.stack().layers[layer].label.clone(),
-            reason,
+    /// What is wrong with a design, when all layers of the file suit.
+    fn of_design(design: &Design, error: ToleranceError) -> Self {
+        match error {
+            ToleranceError::Unsuitable { layer, reason } => ToleranceError::Interface {
+                interface: design.stack().layers[layer].label.clone(),
+                reason,
+            },
+            other => other,
         }
     }
+}
+
+/// A stack with the potential of its charge, and so many levels of its conduction band.
+fn solved(
+    structure: &Structure,
+    stack: &Stack,
+    levels: usize,
+    accuracy: Accuracy,
+) -> Result<(Stack, Subbands), ToleranceError> {
+    let bands = charged::bands(structure, levels);
+    let solution =
+        charge::solve(stack, &structure.charge, &bands, accuracy).map_err(|error| match error {
+            ChargeError::Unsuitable { layer, reason } => {
+                ToleranceError::Unsuitable { layer, reason }
+            }
+            other => ToleranceError::Charge(other),
+        })?;
+    if let Some(found) = &solution.equilibrium
+        && !found.is_settled()
+    {
+        let residual_ev = found.residual_ev;
+        return Err(ToleranceError::Unsettled { residual_ev });
+    }
+    let mut conduction = solution.bands.conduction().clone();
+    // More may have been solved because they are filled.
+    conduction.pairs.truncate(levels);
+    conduction.errors_ev.truncate(levels);
+    Ok((solution.stack, conduction))
 }
 
 /// The mesh of sampled wafers is this exact, in eV: far less than any spread that can be grown.
@@ -82,20 +120,22 @@ pub fn tolerance(
     let highest = windows.iter().map(|window| window.to.index).max();
     let levels = structure.conduction.states.max(highest.unwrap_or(0));
 
-    let operator = BandOperator::conduction(stack, model)
-        .map_err(|(layer, reason)| ToleranceError::Unsuitable { layer, reason })?;
-    let abrupt = subbands::solve(&operator, levels, accuracy);
+    let (bent, abrupt) = solved(structure, stack, levels, accuracy)?;
 
     let grading_nm = stated
         .and_then(|tolerance| tolerance.grading.as_ref())
         .map(|grading| grading.length_nm);
-    let design = Design::new(stack, grading_nm).map_err(|_| ToleranceError::NoLayer)?;
-    let unsuitable = |(layer, reason)| ToleranceError::interface(&design, layer, reason);
+    let mut design = Design::new(&bent, grading_nm).map_err(|_| ToleranceError::NoLayer)?;
+    let solved_as = |design: &Design, accuracy: Accuracy| {
+        solved(structure, design.stack(), levels, accuracy)
+            .map_err(|error| ToleranceError::of_design(design, error))
+    };
     let solved = match grading_nm {
         None => abrupt.clone(),
         Some(_) => {
-            let operator = BandOperator::conduction(design.stack(), model).map_err(unsuitable)?;
-            subbands::solve(&operator, levels, accuracy)
+            let (bent, solved) = solved_as(&design, accuracy)?;
+            design.take_potential(&bent);
+            solved
         }
     };
     if let Some(wanted) = highest.filter(|wanted| *wanted > solved.pairs.len()) {
@@ -103,15 +143,14 @@ pub fn tolerance(
         return Err(ToleranceError::NoLevel { wanted, levels });
     }
     let nearby = Nearby::new(&solved);
-    let sensitivities = sensitivities(structure, stack, &design, model, &nearby);
+    let sensitivities = sensitivities(structure, stack, &design, &nearby);
     let sampled = match stated {
         None => None,
         Some(tolerance) => {
-            let operator = BandOperator::conduction(design.stack(), model).map_err(unsuitable)?;
             let coarse = Accuracy {
                 tolerance_ev: accuracy.tolerance_ev.max(SAMPLING_TOLERANCE_EV),
             };
-            let solved = subbands::solve(&operator, levels, coarse);
+            let (_, solved) = solved_as(&design, coarse)?;
             let nearby = Nearby::new(&solved);
             let sources = sources(structure, stack, tolerance, &design, &nearby);
             let count = (samples.unwrap_or(tolerance.samples), tolerance.seed);
@@ -120,7 +159,7 @@ pub fn tolerance(
         }
     };
     let rings = match stated.and_then(|tolerance| tolerance.radial) {
-        Some(radial) => radial::rings(&design, model, radial, levels, accuracy)?,
+        Some(radial) => radial::rings(structure, &design, radial, levels, accuracy)?,
         None => Vec::new(),
     };
     Ok(Outcome {

@@ -1,9 +1,8 @@
 //! The levels from the centre of a wafer to its edge.
 
-use super::ToleranceError;
-use crate::models::BandOperator;
-use crate::structure::{Cause, ConductionModel, Design, Radial};
-use crate::subbands::{self, Accuracy};
+use super::{ToleranceError, solved};
+use crate::structure::{Cause, Design, Radial, Structure};
+use crate::subbands::Accuracy;
 
 /// Rings from the centre to the stated radius, both included.
 const RINGS: usize = 6;
@@ -20,8 +19,8 @@ pub struct Ring {
 /// All layers thin out alike, parabolically in the radius; compositions stay, as does the length of interfaces. The
 /// file's widths are those at the centre.
 pub fn rings(
+    structure: &Structure,
     design: &Design,
-    model: ConductionModel,
     radial: Radial,
     levels: usize,
     accuracy: Accuracy,
@@ -34,9 +33,8 @@ pub fn rings(
         design
             .grow(&mut wafer, &[Cause::Rate], &[-drop])
             .map_err(|_| ToleranceError::NoLayer)?;
-        let operator = BandOperator::conduction(&wafer, model)
-            .map_err(|(layer, reason)| ToleranceError::interface(design, layer, reason))?;
-        let solved = subbands::solve(&operator, levels, accuracy);
+        let (_, solved) = solved(structure, &wafer, levels, accuracy)
+            .map_err(|error| ToleranceError::of_design(design, error))?;
         rings.push(Ring {
             radius_mm: part * radial.radius_mm,
             drop,

@@ -1,6 +1,6 @@
 //! The sampled yield: many wafers, each grown off by its own draws and solved in full, against what the slopes foretell.
 
-use super::derivative::level_slopes;
+use super::charged::slopes;
 use super::statistics::{Histogram, Share, Statistics, histogram, share, statistics};
 use crate::constants::HC_EV_UM;
 use crate::models::BandOperator;
@@ -33,6 +33,8 @@ pub struct Source {
     pub deviation: f64,
     /// The slope of each level, eV per unit of the cause.
     pub level_slopes_ev: Vec<f64>,
+    /// The part of it that the charge's answer adds; 0 in flat bands.
+    pub charge_slopes_ev: Vec<f64>,
 }
 
 /// What the sampled wafers say.
@@ -137,13 +139,14 @@ pub fn sources(
     if let Some(deviation) = tolerance.temperature_k {
         add("temperature".to_owned(), Cause::Temperature, deviation);
     }
-    let model = structure.conduction.model;
     found
         .into_par_iter()
         .filter(|(_, _, deviation)| *deviation > 0.0)
         .filter_map(|(name, cause, deviation)| {
+            let slopes = slopes(structure, design, nearby, &cause)?;
             Some(Source {
-                level_slopes_ev: level_slopes(design, model, nearby, &cause)?,
+                level_slopes_ev: slopes.whole,
+                charge_slopes_ev: slopes.of_charge,
                 name,
                 cause,
                 deviation,
@@ -258,11 +261,18 @@ fn wafer(
         .map(|pair| pair.value)
         .collect();
     for (source, amount) in sources.iter().zip(amounts) {
-        for (guess, slope) in guesses_ev.iter_mut().zip(&source.level_slopes_ev) {
-            *guess += amount * slope;
+        let slopes = source.level_slopes_ev.iter().zip(&source.charge_slopes_ev);
+        for (guess, (whole, of_charge)) in guesses_ev.iter_mut().zip(slopes) {
+            *guess += amount * (whole - of_charge);
         }
     }
-    let energies_ev = nearby.energies_ev(&pencil, &guesses_ev, TOLERANCE_EV);
+    // The layers take their potential along; to first order the charge's answer adds its slopes.
+    let mut energies_ev = nearby.energies_ev(&pencil, &guesses_ev, TOLERANCE_EV);
+    for (source, amount) in sources.iter().zip(amounts) {
+        for (energy_ev, of_charge) in energies_ev.iter_mut().zip(&source.charge_slopes_ev) {
+            *energy_ev += amount * of_charge;
+        }
+    }
     let edge_ev = lower_outer_edge_ev(&pencil);
     Ok(Wafer {
         held: energies_ev.partition_point(|energy| *energy <= edge_ev),

@@ -1,7 +1,7 @@
 //! How far each level moves per monolayer of each layer, per percent of rate and flux, and so on.
 
-use super::derivative::level_slopes;
-use crate::structure::{Cause, ConductionModel, Design, Stack, Structure};
+use super::charged::slopes;
+use crate::structure::{Cause, Design, Stack, Structure};
 use crate::subbands::Nearby;
 use rayon::prelude::*;
 
@@ -25,7 +25,6 @@ pub fn sensitivities(
     structure: &Structure,
     stack: &Stack,
     design: &Design,
-    model: ConductionModel,
     nearby: &Nearby,
 ) -> Vec<Sensitivity> {
     let mut asked: Vec<(String, &'static str, Cause, f64)> = Vec::new();
@@ -59,7 +58,7 @@ pub fn sensitivities(
     asked
         .into_par_iter()
         .filter_map(|(name, step, cause, amount)| {
-            let slopes = level_slopes(design, model, nearby, &cause)?;
+            let slopes = slopes(structure, design, nearby, &cause)?.whole;
             Some(Sensitivity {
                 name,
                 step,

@@ -43,6 +43,11 @@ const DOTTED: Stroke = Stroke {
     width_pt: 0.4,
     dash: "0.8 1.6",
 };
+const FERMI: Stroke = Stroke {
+    colour: INK,
+    width_pt: 0.5,
+    dash: "6 2.5",
+};
 /// Distance of the labels of levels.
 const LABEL_STEP_PT: f64 = 1.25 * LABEL_PT;
 /// A panel grows to this height for the labels of its levels; beyond it they are thinned out.
@@ -61,6 +66,9 @@ pub struct BandDiagram {
     states: Vec<DrawnState>,
     transitions: Vec<Transition>,
     width_nm: f64,
+    zero_ev: f64,
+    /// Above the zero.
+    fermi_ev: Option<f64>,
 }
 
 #[derive(Clone, Debug)]
@@ -107,7 +115,18 @@ impl BandDiagram {
             transitions: chosen(structure, subbands, states.len()),
             states,
             width_nm: stack.total_width_nm(),
+            zero_ev,
+            fermi_ev: None,
         }
+    }
+
+    /// With a line at the Fermi level, given on the scale of the table of levels.
+    pub fn with_fermi_level(mut self, fermi_ev: Option<f64>) -> BandDiagram {
+        self.fermi_ev = fermi_ev.map(|fermi_ev| fermi_ev - self.zero_ev);
+        if self.fermi_ev.is_some() {
+            self.caption += " Long dashes: Fermi level.";
+        }
+        self
     }
 
     /// The picture.
@@ -153,6 +172,10 @@ impl BandDiagram {
         panel.vertical.range = vertical.range.map(|y| y + top);
 
         self.draw_edge(&mut page, &panel);
+        if let Some(fermi_ev) = self.fermi_ev {
+            let y = panel.y(fermi_ev);
+            page.group("fermi-level", |page| page.line([left, y], [right, y], FERMI));
+        }
         self.draw_states(&mut page, &panel, [ladder_left, ladder_right]);
         ladder.draw(&mut page, ladder_left, top, bottom);
         self.draw_labels(&mut page, &panel, &labels, [ladder_right, labels_left]);
@@ -284,7 +307,7 @@ impl BandDiagram {
     fn energies(&self, above_ev: f64) -> [f64; 2] {
         let edge = self.edge.iter().map(|p| p[1]);
         let levels = self.states.iter().map(|state| state.energy_ev + above_ev);
-        edge.chain(levels).fold([0.0, 1e-3], |[low, high], e| {
+        edge.chain(levels).chain(self.fermi_ev).fold([0.0, 1e-3], |[low, high], e| {
             [f64::min(low, e), f64::max(high, e)]
         })
     }
@@ -419,7 +442,11 @@ impl BandDiagram {
                 wavelength(t)
             )
         });
-        let list: Vec<String> = states.chain(transitions).collect();
+        let fermi = self.fermi_ev.map(|fermi_ev| {
+            let (decimals, energy) = (unit.decimals, unit.factor * fermi_ev);
+            format!("Fermi level at {energy:.decimals$} {}", unit.name)
+        });
+        let list: Vec<String> = states.chain(transitions).chain(fermi).collect();
         format!(
             "Band edge and squared envelopes along the growth direction. {}.",
             list.join("; ")
