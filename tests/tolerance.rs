@@ -39,12 +39,7 @@ fn sensitivities_of(text: &str) -> Vec<Sensitivity> {
     let design = Design::new(&stack, grading.map(|g| g.length_nm)).unwrap();
     let operator = BandOperator::conduction(design.stack(), structure.conduction.model).unwrap();
     let solved = solve(&operator, structure.conduction.states, FINE);
-    sensitivities(
-        &structure,
-        &stack,
-        &design,
-        &Nearby::new(&solved),
-    )
+    sensitivities(&structure, &stack, &design, &Nearby::new(&solved))
 }
 
 fn outcome(text: &str) -> Outcome {

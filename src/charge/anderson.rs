@@ -43,7 +43,8 @@ impl Anderson {
         }
         self.size = size;
         if let Some((x_before, residual_before)) = self.last.take() {
-            self.steps.push((&x - x_before, &residual - residual_before));
+            self.steps
+                .push((&x - x_before, &residual - residual_before));
             if self.steps.len() > DEPTH {
                 self.steps.remove(0);
             }

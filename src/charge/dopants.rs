@@ -32,7 +32,12 @@ impl Dopants {
     /// Calls `f` with the node, the charge in e/nm² and its slope with the energy of the bands there.
     ///
     /// N/(1 + g exp(±(E_F − E_d)/kT)), the upper sign for donors (Blakemore 1962, sections 3.2 and 3.4).
-    pub fn each(&self, energy_ev: impl Fn(usize) -> f64, fermi_ev: f64, mut f: impl FnMut(usize, f64, f64)) {
+    pub fn each(
+        &self,
+        energy_ev: impl Fn(usize) -> f64,
+        fermi_ev: f64,
+        mut f: impl FnMut(usize, f64, f64),
+    ) {
         let kt = BOLTZMANN_EV_PER_K * self.temperature_k.max(LEAST_TEMPERATURE_K);
         for site in &self.sites {
             let Some(ionisation) = self.ionisation else {

@@ -4,7 +4,9 @@ use super::ChargeError;
 use super::anderson::Anderson;
 use super::dopants::{Dopants, Site};
 use super::exchange::exchange_ev;
-use super::fermi::{BOLTZMANN_EV_PER_K, BulkBand, bulk_fermi_ev, density_of_states, root_of_falling};
+use super::fermi::{
+    BOLTZMANN_EV_PER_K, BulkBand, bulk_fermi_ev, density_of_states, root_of_falling,
+};
 use super::poisson::{Filled, Poisson};
 use crate::constants::COULOMB_EV_NM;
 use crate::materials::{Material, hole_edges};
@@ -145,7 +147,9 @@ pub fn solve(
     let all: Vec<Filled> = filled.concat();
     let fermi_ev = match problem.fixed_fermi_ev {
         Some(fixed) => fixed - shift_ev,
-        None => problem.fermi_ev(&all, &state).unwrap_or(fermi_ev - shift_ev),
+        None => problem
+            .fermi_ev(&all, &state)
+            .unwrap_or(fermi_ev - shift_ev),
     };
     let equilibrium = problem.equilibrium(&filled, &state, fermi_ev, (iterations, residual_ev));
     Ok(Solution {
@@ -334,7 +338,10 @@ impl<'s> Problem<'s> {
             for q in 0..=ORDER {
                 let t = self.mesh.fraction(element, q);
                 let [electron, hole] = known.map_or([0.0; 2], |known| {
-                    [known.electron_ev(element.segment, t), known.hole_ev(element.segment, t)]
+                    [
+                        known.electron_ev(element.segment, t),
+                        known.hole_ev(element.segment, t),
+                    ]
                 });
                 state[e * ORDER + q] = hole;
                 exchange.push(electron - hole);
@@ -343,7 +350,11 @@ impl<'s> Problem<'s> {
         let [lower, upper] = self.poisson.held;
         // The held ends have their energies, and what lies between moves along.
         let bottom_off = if lower || !upper { state[0] } else { 0.0 };
-        let top_off = if upper { state[nodes - 1] - self.top_ev } else { bottom_off };
+        let top_off = if upper {
+            state[nodes - 1] - self.top_ev
+        } else {
+            bottom_off
+        };
         let bottom_off = if upper && !lower { top_off } else { bottom_off };
         let total_nm = self.stack.total_width_nm();
         for (e, element) in self.mesh.elements.iter().enumerate() {
@@ -459,7 +470,11 @@ impl<'s> Problem<'s> {
             self.exchange(&solved[0], &electrons)
         });
         // Without a held end the Fermi level stayed where it was, and the potential took what neutrality asks.
-        let moved_ev = if self.poisson.held == [false; 2] { next[0] } else { 0.0 };
+        let moved_ev = if self.poisson.held == [false; 2] {
+            next[0]
+        } else {
+            0.0
+        };
         next.iter_mut().for_each(|value| *value -= moved_ev);
         next.extend(exchange.into_iter().flatten());
         (next, moved_ev)
@@ -482,7 +497,9 @@ impl<'s> Problem<'s> {
         density
             .iter()
             .zip(&self.matter)
-            .map(|(density, (mass_m0, permittivity))| exchange_ev(*density, *mass_m0, *permittivity))
+            .map(|(density, (mass_m0, permittivity))| {
+                exchange_ev(*density, *mass_m0, *permittivity)
+            })
             .collect()
     }
 
@@ -553,7 +570,9 @@ impl<'s> Problem<'s> {
         let elements = &self.mesh.elements;
         let slope = |e: usize, q: usize| {
             let mut slopes = [0.0; ORDER + 1];
-            self.mesh.reference.slopes(self.mesh.local(e, u), &mut slopes);
+            self.mesh
+                .reference
+                .slopes(self.mesh.local(e, u), &mut slopes);
             2.0 / elements[e].length * slopes[q]
         };
         [slope(0, 0), slope(elements.len() - 1, ORDER)]
@@ -562,7 +581,9 @@ impl<'s> Problem<'s> {
 
 /// The place in the list of all elements' nodes at which a plane of dopants lies: a border of elements.
 fn plane_node(mesh: &Mesh, layer: usize, fraction: f64) -> usize {
-    let first = mesh.elements.partition_point(|element| element.segment < layer);
+    let first = mesh
+        .elements
+        .partition_point(|element| element.segment < layer);
     let own = mesh.elements[first..]
         .iter()
         .take_while(|element| element.segment == layer);
@@ -622,7 +643,12 @@ fn contact_fermi_ev(
     let temperature_k = stack.temperature_k();
     let kinds = [
         (layer.all_donors_cm3(), 1.0, bending.donors, levels_ev[0]),
-        (layer.all_acceptors_cm3(), -1.0, bending.acceptors, levels_ev[1]),
+        (
+            layer.all_acceptors_cm3(),
+            -1.0,
+            bending.acceptors,
+            levels_ev[1],
+        ),
     ]
     .map(|(density, charge, ionisation, level_ev)| Dopants {
         sites: vec![Site {

@@ -30,7 +30,8 @@ mod tests {
     #[test]
     fn dense_electrons_have_the_exchange_of_kohn_and_sham() {
         let (density, permittivity) = (1e9, 12.9);
-        let exact = -(3.0 * density / std::f64::consts::PI).powf(1.0 / 3.0) * COULOMB_EV_NM / permittivity;
+        let exact =
+            -(3.0 * density / std::f64::consts::PI).powf(1.0 / 3.0) * COULOMB_EV_NM / permittivity;
         let found = exchange_ev(density, 0.067, permittivity);
         assert!((found / exact - 1.0).abs() < 2e-3, "{found} {exact}");
     }

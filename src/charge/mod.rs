@@ -20,8 +20,12 @@ pub enum ChargeError {
     Unsuitable { layer: usize, reason: Unsuitable },
     #[error("layer {} has no `permittivity_static`, which band bending needs", .layer + 1)]
     NoPermittivity { layer: usize },
-    #[error("the stack cannot be neutral: no solved band holds the carriers that its dopants leave")]
+    #[error(
+        "the stack cannot be neutral: no solved band holds the carriers that its dopants leave"
+    )]
     NotNeutral,
-    #[error("the lowest layer has no Fermi level of its own: it is not doped, or its carriers have no band")]
+    #[error(
+        "the lowest layer has no Fermi level of its own: it is not doped, or its carriers have no band"
+    )]
     NoContact,
 }

@@ -136,7 +136,13 @@ impl Poisson {
     }
 
     /// Electrons per area at each node, in 1/nm², as they answer to the move from `solved` to `u`.
-    pub fn electrons(&self, states: &[Filled], solved: &[f64], u: &[f64], fermi_ev: f64) -> Vec<Vec<f64>> {
+    pub fn electrons(
+        &self,
+        states: &[Filled],
+        solved: &[f64],
+        u: &[f64],
+        fermi_ev: f64,
+    ) -> Vec<Vec<f64>> {
         states
             .iter()
             .filter(|state| state.sign > 0.0)

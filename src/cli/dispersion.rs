@@ -62,7 +62,8 @@ pub fn dispersion(
             Exit::WrongInput
         })?;
     if input.structure.charge != Charge::Flat {
-        let words = "charge bends the bands of this file, but coupled bands are solved with flat ones";
+        let words =
+            "charge bends the bands of this file, but coupled bands are solved with flat ones";
         show(&Diagnostic::warning(words), &input.name, &input.text);
     }
     let wanted = Wanted {

@@ -92,8 +92,8 @@ impl Input {
         if let ChargeError::Unsuitable { layer, reason } = error {
             return self.unsuitable(*layer, reason);
         }
-        let problem = Diagnostic::error(error.to_string())
-            .hint("`charge: flat` leaves the bands flat");
+        let problem =
+            Diagnostic::error(error.to_string()).hint("`charge: flat` leaves the bands flat");
         show(&problem, &self.name, &self.text);
         Exit::NotPossible
     }

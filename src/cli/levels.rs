@@ -17,7 +17,11 @@ pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     input.doubt_growth();
     let levels = Levels::new(&input.structure, &solution.stack, &solution.bands, &shown);
     deliver(
-        &levels.with_charge(ChargeReport::new(&solution, &shown, &input.structure.charge)),
+        &levels.with_charge(ChargeReport::new(
+            &solution,
+            &shown,
+            &input.structure.charge,
+        )),
         output.format,
         output.output.as_deref(),
         file,

@@ -76,7 +76,9 @@ pub fn shutters(growth: &Growth, rows: &[Row], stack: &Stack) -> Vec<ShutterUse>
     let mut planes = stack.planes.iter().peekable();
     for (index, layer) in stack.layers.iter().enumerate() {
         // All cells close for a plane of dopants. How long its shutter is open is not known.
-        while let Some(plane) = planes.next_if(|plane| plane.layer <= index && plane.fraction <= 0.0) {
+        while let Some(plane) =
+            planes.next_if(|plane| plane.layer <= index && plane.fraction <= 0.0)
+        {
             uses[donors].openings += u64::from(plane.donors_cm2 > 0.0);
             uses[acceptors].openings += u64::from(plane.acceptors_cm2 > 0.0);
             before = &[];

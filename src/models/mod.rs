@@ -146,10 +146,14 @@ impl<'s> BandOperator<'s> {
             coefficient(self.band, &material, self.stack.substrate_lattice_nm())
                 .unwrap_or(self.bottoms[layer])
         };
-        let charge_ev = self.stack.potential.as_ref().map_or(0.0, |potential| match self.band {
-            Band::Conduction(_) => potential.electron_ev(layer, t),
-            Band::Hole(_) => potential.hole_ev(layer, t),
-        });
+        let charge_ev = self
+            .stack
+            .potential
+            .as_ref()
+            .map_or(0.0, |potential| match self.band {
+                Band::Conduction(_) => potential.electron_ev(layer, t),
+                Band::Hole(_) => potential.hole_ev(layer, t),
+            });
         let energy_ev = self.stack.field_v_per_nm * z_nm + charge_ev;
         raised(own, self.band.sign() * energy_ev)
     }

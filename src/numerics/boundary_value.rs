@@ -76,7 +76,11 @@ mod tests {
             for q in 0..5 {
                 let z = mesh.position(element, q);
                 let below = 2.0 * z - z * z;
-                let exact = if e == 0 { below } else { 0.75 + 0.25 * (below - 0.75) };
+                let exact = if e == 0 {
+                    below
+                } else {
+                    0.75 + 0.25 * (below - 0.75)
+                };
                 assert!((u[e * 4 + q] - exact).abs() < 1e-13, "{z}");
             }
         }

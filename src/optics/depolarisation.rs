@@ -54,11 +54,7 @@ pub struct Depolarisation {
 
 /// The absorption of a solved conduction band with so many electrons per cm² in its subbands. Permittivities are the
 /// static ones.
-pub fn depolarisation(
-    stack: &Stack,
-    subbands: &Subbands,
-    densities_cm2: &[f64],
-) -> Depolarisation {
+pub fn depolarisation(stack: &Stack, subbands: &Subbands, densities_cm2: &[f64]) -> Depolarisation {
     let all: f64 = densities_cm2.iter().sum();
     let (weights, permittivities) = nodes(stack, subbands);
     let integral = |f: &dyn Fn(usize) -> f64| -> f64 {
@@ -104,7 +100,11 @@ pub fn depolarisation(
     }
     let alone: Vec<f64> = (0..size).map(|a| matrix[(a, a)].max(0.0).sqrt()).collect();
     let modes = SymmetricEigen::new(matrix);
-    let energies_ev: Vec<f64> = modes.eigenvalues.iter().map(|e| e.max(0.0).sqrt()).collect();
+    let energies_ev: Vec<f64> = modes
+        .eigenvalues
+        .iter()
+        .map(|e| e.max(0.0).sqrt())
+        .collect();
     let part = |a: usize, mode: usize| modes.eigenvectors[(a, mode)];
     let largest = |list: &mut dyn Iterator<Item = (usize, f64)>| {
         list.max_by(|a, b| a.1.abs().total_cmp(&b.1.abs()))
@@ -133,7 +133,11 @@ pub fn depolarisation(
             let most = &found[largest(&mut (0..size).map(|a| (a, part(a, mode))))];
             Line {
                 energy_ev: energies_ev[mode],
-                share: if whole > 0.0 { strengths[mode] / whole } else { 0.0 },
+                share: if whole > 0.0 {
+                    strengths[mode] / whole
+                } else {
+                    0.0
+                },
                 from: most.from,
                 to: most.to,
             }

@@ -171,7 +171,11 @@ impl ChargeReport {
         });
         let mut text = format!(
             "Charge\n{}",
-            table(&["level", "carriers cm⁻²", "share"], &[0], filling.collect())
+            table(
+                &["level", "carriers cm⁻²", "share"],
+                &[0],
+                filling.collect()
+            )
         );
         text.push_str(&format!(
             "Fermi level {:.5} eV, {:.2} meV from conduction 1. Electrons {}, holes {}, ionised donors {}, ionised acceptors {} cm⁻².\n",
@@ -217,7 +221,14 @@ impl ChargeReport {
             text.push_str(&format!(
                 "\nAbsorption moved by the electrons' field\n{}",
                 table(
-                    &["from", "to", "bare meV", "alone meV", "coupled meV", "coupled µm"],
+                    &[
+                        "from",
+                        "to",
+                        "bare meV",
+                        "alone meV",
+                        "coupled meV",
+                        "coupled µm"
+                    ],
                     &[],
                     rows.collect()
                 )

@@ -5,7 +5,9 @@ use super::sheet_csv::sheet_csv;
 use super::sheet_text::sheet_text;
 use super::strain::StrainReport;
 use super::table::significant;
-use crate::growth::{self, Caution, Digital, Filling, Flag, LayerRow, Plan, PlaneRow, Row, Sums, cautions};
+use crate::growth::{
+    self, Caution, Digital, Filling, Flag, LayerRow, Plan, PlaneRow, Row, Sums, cautions,
+};
 use crate::materials::Element;
 use crate::optics::transitions;
 use crate::structure::{Growth, Profile, Stack, Structure};
@@ -464,10 +466,7 @@ fn doping(layer: &LayerRow, growth: &Growth) -> Vec<String> {
 }
 
 /// The species of a plane with their densities in cm⁻².
-fn plane_doping<'g>(
-    plane: &PlaneRow,
-    growth: &'g Growth,
-) -> impl Iterator<Item = (&'g str, f64)> {
+fn plane_doping<'g>(plane: &PlaneRow, growth: &'g Growth) -> impl Iterator<Item = (&'g str, f64)> {
     let parts = [
         (plane.donors_cm2, &growth.donors, "donors"),
         (plane.acceptors_cm2, &growth.acceptors, "acceptors"),

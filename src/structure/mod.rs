@@ -29,14 +29,15 @@ mod wafer;
 
 pub use charge::{Bending, Charge, Ionisation};
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, PlaneEntry,
-    Profile, Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
+    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level,
+    PlaneEntry, Profile, Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable,
+    Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
+pub use potential::Potential;
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};
 pub use spreads::{Grading, Radial, Tolerance, Window};
-pub use potential::Potential;
 pub use stack::{Layer, Plane, Stack};
 pub use wafer::{Cause, Design, NotGrown};
 

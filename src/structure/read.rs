@@ -187,7 +187,10 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         field_line: free_line(checker.text, root),
     };
     if !fields.has("charge") {
-        let walls = fields.get("ends").and_then(Node::text).is_none_or(|ends| ends == "walls");
+        let walls = fields
+            .get("ends")
+            .and_then(Node::text)
+            .is_none_or(|ends| ends == "walls");
         structure.charge = read_charge::unstated(checker, &structure, walls);
     }
     Some(structure)

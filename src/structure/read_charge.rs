@@ -102,9 +102,7 @@ fn dopant(checker: &mut Checker, node: &Node, usual: f64) -> Option<Ionisation> 
         Some(node) => checker.number(node, DEGENERACY_LIMITS),
         None => Some(usual),
     };
-    let binding_ev = fields
-        .get("energy")
-        .and_then(|node| energy(checker, node));
+    let binding_ev = fields.get("energy").and_then(|node| energy(checker, node));
     Some(Ionisation {
         binding_ev: binding_ev?,
         degeneracy: degeneracy?,
@@ -122,7 +120,10 @@ pub(super) fn unstated(checker: &mut Checker, structure: &Structure, walls: bool
         let mut vary = tune.vary.iter();
         vary.any(|variable| matches!(variable.quantity, Varied::Field { .. }))
     });
-    let field = structure.field.as_ref().map_or(0.0, |field| field.value.value());
+    let field = structure
+        .field
+        .as_ref()
+        .map_or(0.0, |field| field.value.value());
     if field == 0.0 && !tuned && walls {
         return Charge::Bent(Bending::default());
     }
@@ -190,9 +191,15 @@ pub(super) fn unfitting(structure: &Structure, stack: &Stack) -> Vec<Diagnostic>
         let lacks_holes = net_cm3 < 0.0 && structure.valence.is_none();
         if net_cm3 == 0.0 || lacks_holes {
             let problem = if lacks_holes {
-                format!("the contact `{}` is p-doped, but no valence band is solved", bottom.label)
+                format!(
+                    "the contact `{}` is p-doped, but no valence band is solved",
+                    bottom.label
+                )
             } else {
-                format!("the contact `{}` is not doped, so that its bulk has no Fermi level", bottom.label)
+                format!(
+                    "the contact `{}` is not doped, so that its bulk has no Fermi level",
+                    bottom.label
+                )
             };
             found.push(place(Diagnostic::error(problem)).expected(if lacks_holes {
                 "`valence: {model: decoupled}` under `bands`"
@@ -224,10 +231,12 @@ pub(super) fn unfitting(structure: &Structure, stack: &Stack) -> Vec<Diagnostic>
             };
             let problem = place(Diagnostic::error(problem))
                 .expected("dopants, a `surface` or a `contact`, or `charge: flat`");
-            found.push(match (&bending.span, doped(structure, LayerEntry::has_donors)) {
-                (None, Some((_, span))) => problem.at(span),
-                _ => problem,
-            });
+            found.push(
+                match (&bending.span, doped(structure, LayerEntry::has_donors)) {
+                    (None, Some((_, span))) => problem.at(span),
+                    _ => problem,
+                },
+            );
         }
     }
     for (index, layer) in stack.layers.iter().enumerate() {

@@ -151,12 +151,7 @@ impl LayerReader<'_> {
     }
 
     /// Dopants per area between two layers.
-    fn plane(
-        &mut self,
-        checker: &mut Checker,
-        node: &Node,
-        fields: &Fields,
-    ) -> Option<PlaneEntry> {
+    fn plane(&mut self, checker: &mut Checker, node: &Node, fields: &Fields) -> Option<PlaneEntry> {
         if let Some(key) = ["donors", "acceptors", "to", "profile", "match"]
             .iter()
             .find(|key| fields.has(key))

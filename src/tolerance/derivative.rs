@@ -55,7 +55,11 @@ pub fn offsets(design: &Design, cause: &Cause) -> Option<Vec<(f64, f64)>> {
     let cold = *cause == Cause::Temperature && design.stack().temperature_k() < 2.0 * step;
     let stencil = if cold { FORWARD } else { CENTRAL };
     let scaled = stencil.iter();
-    Some(scaled.map(|(offset, weight)| (offset * step, weight / step)).collect())
+    Some(
+        scaled
+            .map(|(offset, weight)| (offset * step, weight / step))
+            .collect(),
+    )
 }
 
 /// The slope of each solved level in eV per unit of the cause (a part, nm, a fraction, V/nm or K).

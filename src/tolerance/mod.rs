@@ -53,7 +53,9 @@ pub enum ToleranceError {
     NoLevel { wanted: usize, levels: usize },
     #[error(transparent)]
     Charge(ChargeError),
-    #[error("charge and potential of a wafer did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV")]
+    #[error(
+        "charge and potential of a wafer did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV"
+    )]
     Unsettled { residual_ev: f64 },
 }
 

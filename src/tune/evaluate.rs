@@ -210,13 +210,16 @@ impl Task {
                 continue;
             };
             let step = DIFFERENCE * (variable.high - variable.low);
-            let ends = [value - step, value + step].map(|end| end.clamp(variable.low, variable.high));
+            let ends =
+                [value - step, value + step].map(|end| end.clamp(variable.low, variable.high));
             let [below, above] = ends.map(|end| {
                 let mut stack = design.stack.clone();
                 variable.knob.set(&mut stack, end);
                 let solution = charge::solve(&stack, &self.charge, &self.bands, exact).ok()?;
                 let all = self.bands.iter().zip(solution.bands.all());
-                let enough = all.into_iter().all(|((_, count), band)| band.pairs.len() >= *count);
+                let enough = all
+                    .into_iter()
+                    .all(|((_, count), band)| band.pairs.len() >= *count);
                 enough.then(|| self.values(&solution.bands, &design.states))
             });
             if let (Some(below), Some(above)) = (below, above)

@@ -17,8 +17,8 @@ pub use limits::Limit;
 pub use search::{Stage, Watch};
 pub use snap::SnapError;
 
-use crate::constants::HC_EV_UM;
 use crate::charge::ChargeError;
+use crate::constants::HC_EV_UM;
 use crate::models::Band;
 use crate::structure::{
     self, BandName, Charge, Follow, Knob, Level, Stack, Structure, Target, Varied, Within,
@@ -138,7 +138,9 @@ fn within_bounds(
         bands: searched,
         ..task.clone()
     };
-    let before = task.design(stack.clone(), None).map_err(TuneError::Charge)?;
+    let before = task
+        .design(stack.clone(), None)
+        .map_err(TuneError::Charge)?;
     let by_character = task.aims.iter().any(|aim| aim.by_character);
     let characters = by_character.then(|| evaluate::characters(&before));
     let started_outside = task

@@ -174,7 +174,9 @@ impl BandDiagram {
         self.draw_edge(&mut page, &panel);
         if let Some(fermi_ev) = self.fermi_ev {
             let y = panel.y(fermi_ev);
-            page.group("fermi-level", |page| page.line([left, y], [right, y], FERMI));
+            page.group("fermi-level", |page| {
+                page.line([left, y], [right, y], FERMI)
+            });
         }
         self.draw_states(&mut page, &panel, [ladder_left, ladder_right]);
         ladder.draw(&mut page, ladder_left, top, bottom);
@@ -307,9 +309,11 @@ impl BandDiagram {
     fn energies(&self, above_ev: f64) -> [f64; 2] {
         let edge = self.edge.iter().map(|p| p[1]);
         let levels = self.states.iter().map(|state| state.energy_ev + above_ev);
-        edge.chain(levels).chain(self.fermi_ev).fold([0.0, 1e-3], |[low, high], e| {
-            [f64::min(low, e), f64::max(high, e)]
-        })
+        edge.chain(levels)
+            .chain(self.fermi_ev)
+            .fold([0.0, 1e-3], |[low, high], e| {
+                [f64::min(low, e), f64::max(high, e)]
+            })
     }
 
     /// The height of the highest peak: about the distance of neighbouring levels, within limits.
