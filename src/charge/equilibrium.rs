@@ -36,6 +36,8 @@ const MESH_TOLERANCE_EV: f64 = 1e-9;
 const MAX_REFINEMENTS: usize = 3;
 /// Subbands with less than this part of the carriers need no finer mesh.
 const EMPTY: f64 = 1e-9;
+/// Electron subbands beyond those of the loop: absorption into them takes part in its depolarisation.
+const EMPTY_SUBBANDS: usize = 6;
 /// Dopants and carriers that differ by this part are out of balance: far more than a settled potential leaves.
 const UNBALANCED: f64 = 1e-8;
 
@@ -140,7 +142,10 @@ pub fn solve(
     let more: Vec<(Band, usize)> = asked
         .iter()
         .zip(&counts)
-        .map(|((band, _), count)| (*band, *count))
+        .map(|((band, _), count)| {
+            let empty = if band.sign() > 0.0 { EMPTY_SUBBANDS } else { 0 };
+            (*band, count + empty)
+        })
         .collect();
     let bands = Bands::solve(&stack, &more, accuracy).map_err(unsuitable)?;
     let filled: Vec<Vec<Filled>> = bands.all().iter().map(without_parts).collect();

@@ -4,7 +4,7 @@ use super::table::{given, significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
 use crate::models::model_name;
-use crate::structure::{BandName, Stack, Structure, Target, Window};
+use crate::structure::{BandName, Charge, Stack, Structure, Target, Window};
 use crate::tolerance::{Distributed, Outcome, Ring, Sampled, Share};
 use serde::Serialize;
 
@@ -19,6 +19,9 @@ const DEFINITIONS: [&str; 4] = [
 const NAMED: usize = 3;
 /// A smaller share of the variance is not named.
 const LEAST_SHARE: f64 = 0.005;
+
+/// How charge enters.
+const CHARGE_DEFINITION: &str = "Charge answers to every change: sensitivities and radii are self-consistent; of sampled wafers the layers take their potential along and the charge's answer is that of the sensitivities, to first order.";
 
 /// The tolerances of a design.
 #[derive(Debug, Serialize)]
@@ -41,7 +44,7 @@ pub struct Tolerances {
     windows: Vec<WindowRow>,
     all_windows: Option<ShareRow>,
     radial: Vec<RadialRow>,
-    definitions: [&'static str; 4],
+    definitions: Vec<&'static str>,
     /// The pairs of levels that the text is about; the other forms hold all.
     #[serde(skip)]
     shown: Vec<(usize, usize)>,
@@ -242,7 +245,10 @@ impl Tolerances {
                 .flat_map(|ring| pairs.iter().map(move |&pair| (ring, pair)))
                 .map(|(ring, pair)| radial_row(ring, pair, windows))
                 .collect(),
-            definitions: DEFINITIONS,
+            definitions: match structure.charge {
+                Charge::Flat => DEFINITIONS.to_vec(),
+                Charge::Bent(_) => [&DEFINITIONS[..], &[CHARGE_DEFINITION]].concat(),
+            },
             shown: shown(structure, windows, pairs),
         }
     }
