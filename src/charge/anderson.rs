@@ -61,6 +61,9 @@ impl Anderson {
                 }
             }
         }
+        if next.iter().any(|value| !value.is_finite()) {
+            next = &x + LEAST_STEP * &residual;
+        }
         self.last = Some((x, residual));
         next.as_slice().to_vec()
     }

@@ -28,7 +28,7 @@ const MAX_ITERATIONS: usize = 120;
 /// Subbands are solved up to this many kT above the Fermi level, where they hold 1e-12 of a filled one.
 const REACH_KT: f64 = 28.0;
 /// No band is solved for more subbands.
-pub const MAX_SUBBANDS: usize = 120;
+const MAX_SUBBANDS: usize = 120;
 /// The polynomials on which states, charge and potential meet.
 const ORDER: usize = 12;
 /// The levels of filled subbands are this exact on the mesh of the loop, in eV.
@@ -36,6 +36,8 @@ const MESH_TOLERANCE_EV: f64 = 1e-9;
 const MAX_REFINEMENTS: usize = 3;
 /// Subbands with less than this part of the carriers need no finer mesh.
 const EMPTY: f64 = 1e-9;
+/// The bent stack is solved this much finer than asked, for the audit of its states.
+const FINER: f64 = 0.1;
 /// Electron subbands beyond those of the loop: absorption into them takes part in its depolarisation.
 const EMPTY_SUBBANDS: usize = 6;
 /// Dopants and carriers that differ by this part are out of balance: far more than a settled potential leaves.
@@ -70,7 +72,7 @@ pub struct Equilibrium {
     pub iterations: usize,
     /// By how much the potential still changed in the last iteration, in eV.
     pub residual_ev: f64,
-    /// The largest part of a band's carriers in the last subband that was solved.
+    /// The largest part of all carriers in the last subband that was solved of a band.
     pub beyond: f64,
 }
 
@@ -147,7 +149,11 @@ pub fn solve(
             (*band, count + empty)
         })
         .collect();
-    let bands = Bands::solve(&stack, &more, accuracy).map_err(unsuitable)?;
+    // Bent edges ask more of the states than their energies tell.
+    let finer = Accuracy {
+        tolerance_ev: FINER * accuracy.tolerance_ev,
+    };
+    let bands = Bands::solve(&stack, &more, finer).map_err(unsuitable)?;
     let filled: Vec<Vec<Filled>> = bands.all().iter().map(without_parts).collect();
     let all: Vec<Filled> = filled.concat();
     let fermi_ev = match problem.fixed_fermi_ev {
@@ -552,11 +558,9 @@ impl<'s> Problem<'s> {
             fermi_ev,
             beyond: densities
                 .iter()
-                .filter_map(|band| {
-                    let all: f64 = band.iter().sum();
-                    Some(band.last()? / all).filter(|share| share.is_finite())
-                })
-                .fold(0.0, f64::max),
+                .filter_map(|band| band.last())
+                .fold(0.0, |most: f64, last| most.max(*last))
+                / (electrons_cm2 + holes_cm2).max(f64::MIN_POSITIVE),
             densities_cm2: densities,
             electrons_cm2,
             holes_cm2,

@@ -9,7 +9,6 @@ mod fermi;
 mod poisson;
 
 pub use equilibrium::{Equilibrium, Solution, solve};
-pub use fermi::{bulk_fermi_ev, filling};
 
 use crate::models::Unsuitable;
 

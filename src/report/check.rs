@@ -3,6 +3,7 @@
 
 use super::layer_edges::LayerEdges;
 use super::strain::StrainReport;
+use super::table::significant;
 use super::{Report, csv_table};
 use crate::structure::{Charge, Stack, Structure};
 use serde::Serialize;
@@ -63,7 +64,9 @@ fn charge(structure: &Structure, stack: &Stack) -> Option<String> {
         }
     };
     Some(format!(
-        "Doping {donors:.3e} donors and {acceptors:.3e} acceptors per cm²: {bending}."
+        "Doping {} donors and {} acceptors per cm²: {bending}.",
+        significant(donors, 4),
+        significant(acceptors, 4)
     ))
 }
 

@@ -13,7 +13,7 @@ const DEFINITIONS: [&str; 4] = [
     "Spreads are one standard deviation, normal and independent of each other; every wafer is solved in full.",
     "Linear: the spread that the shifts above foretell; contributors are their shares of its variance.",
     "Flux: thickness and composition of all layers that hold the element move together. Repeats move together.",
-    "Shares of wafers carry Wilson's 95 % interval. Doping has no entry: charge is not part of the model.",
+    "Shares of wafers carry Wilson's 95 % interval.",
 ];
 /// Contributors that are named in the table.
 const NAMED: usize = 3;
@@ -21,7 +21,9 @@ const NAMED: usize = 3;
 const LEAST_SHARE: f64 = 0.005;
 
 /// How charge enters.
-const CHARGE_DEFINITION: &str = "Charge answers to every change: sensitivities and radii are self-consistent; of sampled wafers the layers take their potential along and the charge's answer is that of the sensitivities, to first order.";
+const CHARGE_DEFINITION: &str = "Charge answers to every change: sensitivities and radii are self-consistent. Sampled wafers take the potential along with their layers, and the charge's answer is that of the sensitivities, to first order.";
+const FLAT_DEFINITION: &str =
+    "Doping has no entry: the bands stay flat, whatever the charge of dopants and carriers.";
 
 /// The tolerances of a design.
 #[derive(Debug, Serialize)]
@@ -246,7 +248,7 @@ impl Tolerances {
                 .map(|(ring, pair)| radial_row(ring, pair, windows))
                 .collect(),
             definitions: match structure.charge {
-                Charge::Flat => DEFINITIONS.to_vec(),
+                Charge::Flat => [&DEFINITIONS[..], &[FLAT_DEFINITION]].concat(),
                 Charge::Bent(_) => [&DEFINITIONS[..], &[CHARGE_DEFINITION]].concat(),
             },
             shown: shown(structure, windows, pairs),

@@ -37,11 +37,6 @@ impl Potential {
         }
     }
 
-    /// The mesh of the stack that the potential was worked out for.
-    pub fn mesh(&self) -> &Mesh {
-        &self.mesh
-    }
-
     /// The energy of an electron of the conduction band at fraction `t` of a layer, in eV.
     pub fn electron_ev(&self, layer: usize, t: f64) -> f64 {
         self.at(&self.electron, layer, t)

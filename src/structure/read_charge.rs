@@ -163,7 +163,13 @@ fn doped(
 /// Charge that no carriers can make up for, once widths are known.
 pub(super) fn unfitting(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
     let Charge::Bent(bending) = &structure.charge else {
-        return Vec::new();
+        let spread = structure
+            .tolerance
+            .as_ref()
+            .and_then(|stated| stated.doping);
+        let words = "the spread of `doping` moves nothing, because the bands stay flat";
+        let doubt = Diagnostic::warning(words).hint("`charge: {fermi_level: neutral}` bends them");
+        return spread.map(|_| doubt).into_iter().collect();
     };
     let mut found = Vec::new();
     let place = |problem: Diagnostic| match &bending.span {

@@ -36,7 +36,7 @@ const TEMPERATURE_STEP_K: f64 = 0.25;
 
 fn step(design: &Design, cause: &Cause) -> f64 {
     match cause {
-        Cause::Rate | Cause::Flux(_) => PART_STEP,
+        Cause::Rate | Cause::Flux(_) | Cause::Doping => PART_STEP,
         Cause::Layer(_) | Cause::Entry(_) | Cause::Grading => PART_STEP * design.room(cause),
         // A quarter of the room keeps both steps inside.
         Cause::Fraction { .. } | Cause::Alloy { .. } => FRACTION_STEP.min(design.room(cause) / 4.0),

@@ -133,6 +133,9 @@ pub fn sources(
             grading.spread_nm,
         );
     }
+    if let Some(part) = tolerance.doping {
+        add("doping".to_owned(), Cause::Doping, part);
+    }
     if let Some(deviation) = tolerance.field_v_per_nm {
         add("field".to_owned(), Cause::Field, deviation);
     }

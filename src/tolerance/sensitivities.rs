@@ -1,7 +1,7 @@
 //! How far each level moves per monolayer of each layer, per percent of rate and flux, and so on.
 
 use super::charged::slopes;
-use crate::structure::{Cause, Design, Stack, Structure};
+use crate::structure::{Cause, Charge, Design, Stack, Structure};
 use crate::subbands::Nearby;
 use rayon::prelude::*;
 
@@ -52,6 +52,9 @@ pub fn sensitivities(
     if design.grading_nm().is_some() {
         let name = "length of interfaces".to_owned();
         asked.push((name, "0.1 nm", Cause::Grading, 0.1));
+    }
+    if structure.charge != Charge::Flat {
+        asked.push(("doping".to_owned(), "1 %", Cause::Doping, 0.01));
     }
     asked.push(("field".to_owned(), "1 kV/cm", Cause::Field, 1e-4));
     asked.push(("temperature".to_owned(), "1 K", Cause::Temperature, 1.0));
