@@ -68,6 +68,7 @@ fn task(case: &Case) -> Task {
     };
     Task {
         bands: vec![(Band::Conduction(model), case.states)],
+        charge: wellwright::structure::Charge::Flat,
         variables: variables.collect(),
         aims: pairs
             .map(|(from, to)| Aim {
