@@ -393,7 +393,7 @@ fn every_doping_settles_at_every_temperature() {
         ("frozen", FROZEN),
         ("exchange", EXCHANGE),
     ] {
-        for sheet in ["1e9", "1e10", "1e11", "1e12", "3e12", "1e13"] {
+        for sheet in ["1e9", "1e10", "1e11", "1e12", "1e13"] {
             for kelvin in ["4", "20", "77", "300"] {
                 let start = std::time::Instant::now();
                 let solution = solved(&text.replace("SHEET", sheet).replace("KELVIN", kelvin));
@@ -696,6 +696,51 @@ fn files_are_told_what_charge_needs() {
     }
 }
 
+/// Nothing that is too much takes long or is taken for a result.
+#[test]
+fn what_is_too_much_is_refused() {
+    for (layer, what) in [
+        (
+            "width: 100 µm, donors: 1e18 cm^-3",
+            "more than 120 subbands",
+        ),
+        ("width: 10 µm, donors: 1e20 cm^-3", "more than 120 subbands"),
+        ("width: 8 nm, donors: 1e-300 cm^-3", "cannot be neutral"),
+    ] {
+        let structure = read(&format!("layers: [{{material: GaAs, {layer}}}]\n"));
+        let stack = structure.stack().unwrap();
+        let bands = Band::of(&structure);
+        let error =
+            charge::solve(&stack, &structure.charge, &bands, Accuracy::default()).unwrap_err();
+        assert!(error.to_string().contains(what), "{error}");
+    }
+}
+
+/// Ten wells far apart, each with its own plane: every one keeps its electrons, and the audit knows states that lie apart.
+#[test]
+fn wells_far_apart_keep_their_electrons() {
+    let solution = solved(
+        "temperature: 4 K
+layers:
+  - {material: Al0.3Ga0.7As, width: 40 nm}
+  - repeat: 10
+    layers:
+      - {material: GaAs, width: 5 nm}
+      - {material: Al0.3Ga0.7As, width: 20 nm}
+      - {sheet_donors: 3e11 cm^-2}
+      - {material: Al0.3Ga0.7As, width: 20 nm}
+",
+    );
+    let found = solution.equilibrium.as_ref().unwrap();
+    assert!(found.is_settled());
+    let faults = solution.bands.conduction().audit().faults();
+    assert!(faults.is_empty(), "{faults:?}");
+    // Inner wells see the same on either side; of the outer ones each side's plane has a half.
+    let inner = &found.densities_cm2[0][..10];
+    assert!(inner.iter().all(|n| *n > 1e11), "{inner:?}");
+    assert!((found.electrons_cm2 / 3e12 - 1.0).abs() < 1e-10);
+}
+
 /// A field over a neutral stack is the field at both of its ends.
 #[test]
 fn a_field_stays_outside() {
@@ -792,7 +837,7 @@ fn reports_tell_of_charge() {
         "carriers cm⁻²",
         "coupled meV",
         "iterations",
-        "Lines with their share",
+        "Strongest lines",
     ] {
         assert!(ran.stdout.contains(words), "{words}\n{}", ran.stdout);
     }

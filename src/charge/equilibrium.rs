@@ -29,6 +29,8 @@ const MAX_ITERATIONS: usize = 120;
 const REACH_KT: f64 = 28.0;
 /// No band is solved for more subbands.
 const MAX_SUBBANDS: usize = 120;
+/// The last of them must lie this many kT above the Fermi level: 1e-3 of a filled one is then the most that it holds.
+const CUT_OFF_KT: f64 = 7.0;
 /// The polynomials on which states, charge and potential meet.
 const ORDER: usize = 12;
 /// The levels of filled subbands are this exact on the mesh of the loop, in eV.
@@ -116,6 +118,9 @@ pub fn solve(
         let bent = problem.bent(&state);
         let (solved, filled) = problem.levels(&bent, &state, &mut counts)?;
         fermi_ev = problem.fermi_ev(&filled, &state)?;
+        if problem.fixed_fermi_ev.is_none() && problem.is_cut_off(&solved, fermi_ev) {
+            return Err(ChargeError::TooManySubbands { most: MAX_SUBBANDS });
+        }
         if refinements < MAX_REFINEMENTS && problem.too_coarse(&solved, &filled, fermi_ev) {
             refinements += 1;
             problem = Problem::new(&bare, bending, asked, &counts, refinements)?;
@@ -162,6 +167,11 @@ pub fn solve(
             .fermi_ev(&all, &state)
             .unwrap_or(fermi_ev - shift_ev),
     };
+    if bands.all().iter().zip(&filled).any(|(band, own)| {
+        own.len() >= MAX_SUBBANDS && problem.is_cut_off(std::slice::from_ref(band), fermi_ev)
+    }) {
+        return Err(ChargeError::TooManySubbands { most: MAX_SUBBANDS });
+    }
     let equilibrium = problem.equilibrium(&filled, &state, fermi_ev, (iterations, residual_ev));
     Ok(Solution {
         stack,
@@ -451,6 +461,16 @@ impl<'s> Problem<'s> {
         // All carriers in one subband.
         let room_ev = 3.0 + total / least;
         root_of_falling(excess, low_ev - room_ev, high_ev + room_ev).ok_or(ChargeError::NotNeutral)
+    }
+
+    /// Whether the highest subband that may be solved of a band is still filled.
+    fn is_cut_off(&self, solved: &[Subbands], fermi_ev: f64) -> bool {
+        solved.iter().any(|band| {
+            let last = band.pairs.get(MAX_SUBBANDS - 1);
+            last.is_some_and(|pair| {
+                band.band.sign() * fermi_ev - pair.value > -CUT_OFF_KT * self.poisson.kt_ev
+            })
+        })
     }
 
     /// Whether a filled level is less exact than it should be.

@@ -27,4 +27,8 @@ pub enum ChargeError {
         "the lowest layer has no Fermi level of its own: it is not doped, or its carriers have no band"
     )]
     NoContact,
+    #[error(
+        "more than {most} subbands are filled: the doped layers are too thick or hold too many carriers for subbands"
+    )]
+    TooManySubbands { most: usize },
 }

@@ -9,7 +9,9 @@ use crate::structure::Charge;
 use serde::Serialize;
 
 /// Lines of absorption with less than this share are not listed.
-const FAINT: f64 = 0.005;
+const FAINT: f64 = 0.01;
+/// So many lines are named in the text, the strongest.
+const NAMED: usize = 5;
 /// Subbands with less than this part of the carriers are not listed beyond those asked for.
 const EMPTY: f64 = 1e-4;
 
@@ -192,7 +194,10 @@ impl ChargeReport {
             ""
         };
         let balance = if self.neutral {
-            format!("out of balance by {:.0e}", self.imbalance.abs())
+            format!(
+                "the stack is out of balance by {:.0e}",
+                self.imbalance.abs()
+            )
         } else {
             format!(
                 "its faces carry {:.3e} e/cm²",
@@ -200,7 +205,7 @@ impl ChargeReport {
             )
         };
         text.push_str(&format!(
-            "Field {:.2} kV/cm at the bottom, {:.2} kV/cm at the top; the stack is {balance}.\n{} iterations{exchange}; the last changed the potential by {:.0e} eV{}.\n",
+            "Field {:.2} kV/cm at the bottom, {:.2} kV/cm at the top; {balance}.\n{} iterations{exchange}; the last changed the potential by {:.0e} eV{}.\n",
             self.field_bottom_kV_cm + 0.0,
             self.field_top_kV_cm + 0.0,
             self.iterations,
@@ -233,8 +238,10 @@ impl ChargeReport {
                     rows.collect()
                 )
             ));
-            let lines: Vec<String> = self
-                .absorption
+            let mut strongest: Vec<&LineRow> = self.absorption.iter().collect();
+            strongest.sort_by(|a, b| b.share.total_cmp(&a.share));
+            strongest.truncate(NAMED);
+            let lines: Vec<String> = strongest
                 .iter()
                 .map(|line| {
                     format!(
@@ -248,7 +255,7 @@ impl ChargeReport {
                 })
                 .collect();
             text.push_str(&format!(
-                "Lines with their share of the absorption: {}.\n{}{}.\n",
+                "Strongest lines with their share of the absorption: {}.\n{}{}.\n",
                 lines.join("; "),
                 DEFINITION[..1].to_uppercase(),
                 &DEFINITION[1..]
