@@ -21,6 +21,8 @@ pub mod models;
 
 pub mod subbands;
 
+pub mod charge;
+
 pub mod optics;
 
 pub mod tune;

@@ -32,7 +32,7 @@ fn results_go_to_stdout_and_messages_to_stderr() {
     let bench = bench();
     bench.write(
         "doped.yaml",
-        WELL.replace("width: 6 nm", "width: 6 nm, donors: 1e17 cm^-3"),
+        format!("field: 5 kV/cm\n{WELL}").replace("width: 6 nm", "width: 6 nm, donors: 1e17 cm^-3"),
     );
     let ran = bench.run(&["levels", "doped.yaml"]).code(0);
     assert!(ran.stdout.contains("from edge meV"), "{}", ran.stdout);
@@ -42,7 +42,7 @@ fn results_go_to_stdout_and_messages_to_stderr() {
         "{}",
         ran.stderr
     );
-    assert!(ran.stderr.contains("doped.yaml:6:28"), "{}", ran.stderr);
+    assert!(ran.stderr.contains("doped.yaml:7:28"), "{}", ran.stderr);
     let ran = bench.run(&["levels", "well.yaml"]).code(0);
     assert_eq!(ran.stderr, "");
     let ran = bench.run(&["check", "well.yaml"]).code(0);

@@ -9,7 +9,7 @@
 use wellwright::materials::Element;
 use wellwright::models::{Band, BandOperator};
 use wellwright::numerics::sensitivity::value_slope;
-use wellwright::structure::{self, BandName, ConductionModel, Knob, Level, Stack};
+use wellwright::structure::{self, BandName, Charge, ConductionModel, Knob, Level, Stack};
 use wellwright::subbands::{Accuracy, change};
 use wellwright::tune::{Aim, Design, Goal, Task, Variable};
 
@@ -68,6 +68,7 @@ fn task(case: &Case) -> Task {
     };
     Task {
         bands: vec![(Band::Conduction(model), case.states)],
+        charge: wellwright::structure::Charge::Flat,
         variables: variables.collect(),
         aims: pairs
             .map(|(from, to)| Aim {
@@ -566,6 +567,7 @@ fn assert_coupled_exact(text: &str, fractions: &[(usize, Element)]) {
     let task = Task {
         stack,
         bands: bands.clone(),
+        charge: Charge::Flat,
         variables: knobs
             .iter()
             .map(|&(knob, _)| Variable {

@@ -192,6 +192,7 @@ fn sums_hold(plan: &Plan) {
                 assert_eq!(layer.after, base.last().unwrap().plus(pass));
                 open.push(pass);
             }
+            Row::Plane(_) => {}
             Row::LoopBegins { .. } => {
                 base.push(base.last().unwrap().plus(*open.last().unwrap()));
                 open.push(Sums::default());

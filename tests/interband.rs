@@ -605,6 +605,7 @@ fn slopes_between_bands_are_exact() {
     let task = Task {
         stack: stack.clone(),
         bands: Band::of(&file),
+        charge: file.charge.clone(),
         variables: knobs
             .iter()
             .map(|(knob, _)| Variable {

@@ -745,7 +745,8 @@ fn holes_hang_below_the_electrons() {
                 .collect();
             let lowest = electrons.iter().fold(0.0, |a: f64, y| a.max(*y));
             assert!(drawn.iter().all(|y| *y > lowest), "{name}: holes below");
-            let wavelength_um = 1.239_841_984 / (bands.conduction().unwrap().energy_ev(0) - holes[0]);
+            let wavelength_um =
+                1.239_841_984 / (bands.conduction().unwrap().energy_ev(0) - holes[0]);
             let told: String = children(document.root_element(), "text")
                 .map(words)
                 .collect();

@@ -349,6 +349,7 @@ fn doubtful_physics_is_a_warning_that_names_the_layer() {
     let found = warnings(
         "\
 substrate: GaAs
+field: 1 kV/cm
 layers:
   - {name: x, material: Al0.6Ga0.4As, width: 5 nm}
   - {name: near, material: Al0.4Ga0.6As, width: 5 nm}
@@ -368,7 +369,7 @@ layers:
         found[1]
     );
     assert!(
-        found[2].contains("`thin` is doped, but band bending"),
+        found[2].contains("`thin` is doped, but its bands stay flat"),
         "{}",
         found[2]
     );

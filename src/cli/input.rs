@@ -1,11 +1,12 @@
 //! A structure file as a command's input, and the messages about it.
 
 use super::deliver::{Exit, complain, show};
+use crate::charge::{self, ChargeError, Equilibrium, Solution};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::{Band, Unsuitable};
 use crate::structure::{self, ConductionModel, Stack, Structure};
-use crate::subbands::{Audit, Bands, Hold, State};
+use crate::subbands::{Accuracy, Audit, Bands, Hold, State};
 use std::collections::BTreeSet;
 use std::fs::File;
 use std::io::Read;
@@ -73,6 +74,53 @@ impl Input {
         }
         show(&problem, &self.name, &self.text);
         Exit::WrongInput
+    }
+
+    /// The bands of the stack, bent by charge where the file says so.
+    pub fn solved(&self, bands: &[(Band, usize)]) -> Result<Solution, Exit> {
+        charge::solve(
+            &self.stack,
+            &self.structure.charge,
+            bands,
+            Accuracy::default(),
+        )
+        .map_err(|error| self.uncharged(&error))
+    }
+
+    /// Says why there is no equilibrium.
+    pub fn uncharged(&self, error: &ChargeError) -> Exit {
+        if let ChargeError::Unsuitable { layer, reason } = error {
+            return self.unsuitable(*layer, reason);
+        }
+        let problem =
+            Diagnostic::error(error.to_string()).hint("`charge: flat` leaves the bands flat");
+        show(&problem, &self.name, &self.text);
+        Exit::NotPossible
+    }
+
+    /// Doubts about the charge; the exit code is that of work that could not be done where the bands did not settle.
+    pub fn doubt_charge(&self, equilibrium: Option<&Equilibrium>) -> Exit {
+        /// Carriers in the last subband that was solved beyond this part make the result doubtful.
+        const CUT_OFF: f64 = 1e-6;
+        let Some(found) = equilibrium else {
+            return Exit::Done;
+        };
+        if found.beyond > CUT_OFF {
+            let words = format!(
+                "the highest subband that is solved still holds {:.0e} of its band's carriers: those above it are left out",
+                found.beyond
+            );
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
+        if found.is_settled() {
+            return Exit::Done;
+        }
+        let words = format!(
+            "charge and potential did not settle in {} iterations: the last still moved the bands by {:.0e} eV",
+            found.iterations, found.residual_ev
+        );
+        show(&Diagnostic::warning(words), &self.name, &self.text);
+        Exit::NotPossible
     }
 
     /// Tells a file whose bands are coupled from what a command takes, bands that are solved on their own.

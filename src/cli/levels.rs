@@ -4,26 +4,27 @@ use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver};
 use super::input::Input;
 use crate::models::Band;
-use crate::report::Levels;
-use crate::subbands::{Accuracy, Bands};
+use crate::report::{ChargeReport, Levels};
 use std::path::Path;
 
 pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
-    let bands = Bands::solve(
-        &input.stack,
-        &Band::of(&input.structure),
-        Accuracy::default(),
-    )
-    .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
-    let shown = bands.asked_for(&input.structure);
-    input.doubt_all(&bands, &shown);
+    let solution = input.solved(&Band::of(&input.structure))?;
+    let shown = solution.bands.asked_for(&input.structure);
+    input.doubt_all(&solution.bands, &shown);
+    let exit = input.doubt_charge(solution.equilibrium.as_ref());
     input.doubt_growth();
+    let levels = Levels::new(&input.structure, &solution.stack, &solution.bands, &shown);
     deliver(
-        &Levels::new(&input.structure, &input.stack, &bands, &shown),
+        &levels.with_charge(ChargeReport::new(
+            &solution,
+            &shown,
+            &input.structure.charge,
+        )),
         output.format,
         output.output.as_deref(),
         file,
-    )
+    )?;
+    Ok(exit)
 }

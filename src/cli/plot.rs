@@ -4,10 +4,11 @@ use super::arguments::Picture;
 use super::deliver::{Exit, check_output, print, show, write};
 use super::input::Input;
 use super::tolerance::worked_out;
+use crate::charge::Solution;
 use crate::diagnostics::Diagnostic;
 use crate::models::{Band, BandOperator};
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
-use crate::subbands::{self, Accuracy, Bands};
+use crate::subbands;
 use std::path::Path;
 
 /// As few wafers as may be sampled.
@@ -47,24 +48,22 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
 }
 
 fn bands(input: &Input, width: Width) -> Result<String, Exit> {
-    let bands = Bands::solve(
-        &input.stack,
-        &Band::alone(&input.structure),
-        Accuracy::default(),
-    )
-    .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
-    let shown = bands.asked_for(&input.structure);
-    input.doubt_all(&bands, &shown);
-    Ok(diagram(input, &bands, &shown).svg(width))
+    let solution = input.solved(&Band::alone(&input.structure))?;
+    let shown = solution.bands.asked_for(&input.structure);
+    input.doubt_all(&solution.bands, &shown);
+    input.doubt_charge(solution.equilibrium.as_ref());
+    Ok(diagram(input, &solution, &shown).svg(width))
 }
 
 /// The band diagram of solved bands.
-pub fn diagram(input: &Input, bands: &Bands, shown: &[usize]) -> BandDiagram {
+pub fn diagram(input: &Input, solution: &Solution, shown: &[usize]) -> BandDiagram {
+    let Solution { stack, bands, .. } = solution;
     let curves = bands.alone().zip(shown).filter_map(|(solved, shown)| {
         // What was solved has its operator.
-        let operator = BandOperator::new(&input.stack, solved.band).ok()?;
+        let operator = BandOperator::new(stack, solved.band).ok()?;
         Some(subbands::curves(&operator, solved, *shown, FINENESS))
     });
     let curves = curves.collect();
-    BandDiagram::new(&input.structure, &input.stack, bands, curves, shown)
+    BandDiagram::new(&input.structure, stack, bands, curves, shown)
+        .with_fermi_level(solution.equilibrium.as_ref().map(|found| found.fermi_ev))
 }

@@ -12,7 +12,7 @@ use crate::optics::photoluminescence;
 use crate::report::Sheet;
 use crate::report::svg::{Width, sensitivity_bars, yield_histogram};
 use crate::structure::Level;
-use crate::subbands::{Accuracy, Bands};
+use crate::subbands::Accuracy;
 use std::path::Path;
 
 /// The page samples wafers of stacks up to this size: larger ones would keep the reader waiting.
@@ -41,27 +41,29 @@ pub fn sheet(
     let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
     let named: Vec<Level> = aims.flat_map(|aim| [aim.from, aim.to]).collect();
     let asked = Band::holding(&input.structure, &named);
-    let accuracy = Accuracy::default();
-    let unsuitable = |(layer, reason)| input.unsuitable(layer, &reason);
-    let bands = Bands::solve(&input.stack, &asked, accuracy).map_err(unsuitable)?;
+    let solution = input.solved(&asked)?;
+    let bands = &solution.bands;
     let mut shown = bands.asked_for(&input.structure);
     for (band, shown) in shown.iter_mut().enumerate() {
         let own = named.iter().filter(|l| l.band == bands.band(band).name());
         let highest = own.map(|level| level.index).max().unwrap_or(0);
         *shown = (*shown).max(highest).min(bands.level_count(band));
     }
-    input.doubt_all(&bands, &shown);
+    input.doubt_all(bands, &shown);
+    input.doubt_charge(solution.equilibrium.as_ref());
     let mut peaks = Vec::new();
     for temperature_k in BENCH_K {
-        let peak = photoluminescence(&input.stack, &asked, temperature_k, accuracy);
-        peaks.extend(peak.map_err(unsuitable)?);
+        let charge = &input.structure.charge;
+        let accuracy = Accuracy::default();
+        let peak = photoluminescence(&input.stack, charge, &asked, temperature_k, accuracy);
+        peaks.extend(peak.map_err(|error| input.uncharged(&error))?);
     }
     let sheet = Sheet::new(
         &input.structure,
         growth,
         &input.stack,
         &plan,
-        (&bands, &shown),
+        (bands, &shown),
         &peaks,
     );
     let page = output.is_some_and(|path| {
@@ -79,7 +81,7 @@ pub fn sheet(
             if alone.is_some() {
                 pictures.push((
                     "Band edges and squared envelopes at their energies".to_owned(),
-                    diagram(&input, &bands, &shown).svg(Width::Page),
+                    diagram(&input, &solution, &shown).svg(Width::Page),
                 ));
             } else {
                 let left_out =

@@ -62,6 +62,7 @@ pub fn worked_out(
     drop(progress);
     outcome.map_err(|error| match &error {
         ToleranceError::Unsuitable { layer, reason } => input.unsuitable(*layer, reason),
+        ToleranceError::Charge(error) => input.uncharged(error),
         ToleranceError::Interface { .. } | ToleranceError::NoLayer => {
             let mut problem = Diagnostic::error(error.to_string());
             let grading = input.structure.tolerance.as_ref();
@@ -71,7 +72,7 @@ pub fn worked_out(
             show(&problem, &input.name, &input.text);
             Exit::WrongInput
         }
-        ToleranceError::NoLevel { .. } => {
+        ToleranceError::NoLevel { .. } | ToleranceError::Unsettled { .. } => {
             show(
                 &Diagnostic::error(error.to_string()),
                 &input.name,

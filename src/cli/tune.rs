@@ -35,7 +35,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
     );
     drop(progress);
     let outcome = outcome.map_err(|error| match &error {
-        TuneError::Unsuitable { layer, reason } => input.unsuitable(*layer, reason),
+        TuneError::Charge(error) => input.uncharged(error),
         TuneError::NothingToTune => {
             let problem = Diagnostic::error("there is no `tune` block in the file")
                 .expected("`tune` with `vary` and `aims`");
@@ -69,6 +69,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
     let report = Tuning::new(&tuned.structure, &outcome, text.clone());
     let listed = Tuning::listed(&tuned.structure, &outcome);
     tuned.doubt_all(&outcome.after.bands, &listed);
+    let exit = tuned.doubt_charge(outcome.after.equilibrium.as_ref());
     tuned.doubt_growth();
     if let Some(path) = structures.first() {
         write(path, &text, file)?;
@@ -80,7 +81,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
         file,
     )?;
     Ok(if outcome.is_reached() {
-        Exit::Done
+        exit
     } else {
         Exit::NotPossible
     })

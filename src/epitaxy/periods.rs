@@ -37,6 +37,7 @@ fn lay_out(items: &[Item], entries: &mut Vec<usize>) {
     for item in items {
         match item {
             Item::Layer(entry) => entries.push(*entry),
+            Item::Plane(_) => {}
             Item::Repeat { count, items } => {
                 let start = entries.len();
                 lay_out(items, entries);

@@ -39,7 +39,18 @@ pub fn content_id(structure: &Structure, stack: &Stack) -> String {
         let _ = writeln!(
             text,
             "{:.6} nm {:.6e} {:.6e} cm^-3 {material}",
-            layer.width_nm, layer.donors_cm3, layer.acceptors_cm3
+            layer.width_nm,
+            layer.all_donors_cm3(),
+            layer.all_acceptors_cm3()
+        );
+    }
+    for plane in &stack.planes {
+        let _ = writeln!(
+            text,
+            "plane {:.1} {:.6e} {:.6e} cm^-2",
+            plane.layer as f64 + plane.fraction,
+            plane.donors_cm2,
+            plane.acceptors_cm2
         );
     }
     let mut id = hex(&Sha256::digest(text));

@@ -21,5 +21,5 @@ pub use identity::content_id;
 pub use openings::{Opening, growable_fractions, nearest, openings};
 pub use plan::{Flag, FluxTarget, NotGiven, Plan, plan};
 pub use ramp::{Ramp, RampedCell};
-pub use rows::{Filling, LayerRow, Row, Sums};
+pub use rows::{Filling, LayerRow, PlaneRow, Row, Sums};
 pub use totals::{MaterialTotal, ShutterUse};

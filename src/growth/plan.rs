@@ -5,7 +5,7 @@ use super::digital_grade::{DigitalGrade, digital_grade};
 use super::identity::content_id;
 use super::openings::{Opening, group_three, miss, nearest, openings};
 use super::ramp::ramp;
-use super::rows::{Filling, LayerRow, Row, Sums};
+use super::rows::{Filling, LayerRow, PlaneRow, Row, Sums};
 use super::totals::{MaterialTotal, ShutterUse, by_entry, materials, shutters};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Composition, Element, Sublattice, Substance};
@@ -49,6 +49,8 @@ pub enum Flag {
         /// What takes its place where rates stay.
         digital: Option<Box<DigitalGrade>>,
     },
+    /// A plane of dopants, for which growth stops.
+    Stop { label: String },
 }
 
 /// A composition that the cells do not give.
@@ -95,10 +97,16 @@ pub fn plan(structure: &Structure, stack: &Stack) -> Result<Plan, Diagnostic> {
     };
     let total = planner.items(&structure.sequence, 0, Sums::default())?;
     let Planner { openings, rows, .. } = planner;
-    let flags = by_entry(&rows)
+    let of_layers = by_entry(&rows)
         .into_iter()
-        .flat_map(|row| flags(structure, stack, &openings, row))
-        .collect();
+        .flat_map(|row| flags(structure, stack, &openings, row));
+    let planes = rows.iter().filter_map(|row| match row {
+        Row::Plane(plane) => Some(Flag::Stop {
+            label: plane.label.clone(),
+        }),
+        _ => None,
+    });
+    let flags = of_layers.chain(planes).collect();
     Ok(Plan {
         substrate: structure.library.composition(&substrate.value).map_or_else(
             || name_of(&substrate.value),
@@ -154,6 +162,17 @@ impl Planner<'_> {
                     pass = pass.plus(row.own);
                     row.after = before.plus(pass);
                     self.rows.push(Row::Layer(row));
+                }
+                Item::Plane(entry) => {
+                    if let Some(plane) = self.structure.planes.get(*entry) {
+                        self.rows.push(Row::Plane(PlaneRow {
+                            depth,
+                            label: plane.label.clone(),
+                            donors_cm2: plane.donors_cm2,
+                            acceptors_cm2: plane.acceptors_cm2,
+                            after: before.plus(pass),
+                        }));
+                    }
                 }
                 Item::Repeat { count, items } => {
                     let count = *count;
@@ -240,8 +259,8 @@ impl Planner<'_> {
             after: Sums::default(),
             monolayers,
             monolayer_nm,
-            donors_cm3: grown.donors_cm3,
-            acceptors_cm3: grown.acceptors_cm3,
+            donors_cm3: grown.all_donors_cm3(),
+            acceptors_cm3: grown.all_acceptors_cm3(),
             filling,
             group_five: if group_five.len() > 1 {
                 group_five

@@ -68,6 +68,7 @@ impl Sums {
 #[derive(Clone, Debug, PartialEq)]
 pub enum Row {
     Layer(LayerRow),
+    Plane(PlaneRow),
     /// What follows, up to the end of the loop, is grown `count` times.
     LoopBegins {
         count: u32,
@@ -81,6 +82,19 @@ pub enum Row {
         /// From the substrate to the end of the last pass.
         after: Sums,
     },
+}
+
+/// A plane of dopants: growth stops, and the dopant alone is supplied.
+#[derive(Clone, Debug, PartialEq)]
+pub struct PlaneRow {
+    /// How many loops it stands in.
+    pub depth: usize,
+    pub label: String,
+    pub donors_cm2: f64,
+    pub acceptors_cm2: f64,
+    /// From the substrate to the plane, in the first pass of the loops that it stands in; the stop itself takes no time
+    /// here, since no rate of the dopant is known.
+    pub after: Sums,
 }
 
 /// One layer.

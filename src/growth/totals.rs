@@ -73,7 +73,16 @@ pub fn shutters(growth: &Growth, rows: &[Row], stack: &Stack) -> Vec<ShutterUse>
         })
         .collect();
     let mut before: &[usize] = &[];
-    for layer in &stack.layers {
+    let mut planes = stack.planes.iter().peekable();
+    for (index, layer) in stack.layers.iter().enumerate() {
+        // All cells close for a plane of dopants. How long its shutter is open is not known.
+        while let Some(plane) =
+            planes.next_if(|plane| plane.layer <= index && plane.fraction <= 0.0)
+        {
+            uses[donors].openings += u64::from(plane.donors_cm2 > 0.0);
+            uses[acceptors].openings += u64::from(plane.acceptors_cm2 > 0.0);
+            before = &[];
+        }
         let (Some(now), Some(row)) = (open.get(layer.entry), by_entry.get(layer.entry)) else {
             continue;
         };
@@ -82,6 +91,10 @@ pub fn shutters(growth: &Growth, rows: &[Row], stack: &Stack) -> Vec<ShutterUse>
             uses[shutter].openings += u64::from(!before.contains(&shutter));
         }
         before = now;
+    }
+    for plane in planes {
+        uses[donors].openings += u64::from(plane.donors_cm2 > 0.0);
+        uses[acceptors].openings += u64::from(plane.acceptors_cm2 > 0.0);
     }
     let is_cell = |index: usize| index < growth.cells.len();
     let kept = uses.into_iter().enumerate();
@@ -117,6 +130,10 @@ pub fn materials(growth: &Growth, rows: &[Row], stack: &Stack) -> Vec<MaterialTo
         let width_cm = count * row.own.width_nm() * CM_PER_NM;
         donors_cm2 += row.donors_cm3 * width_cm;
         acceptors_cm2 += row.acceptors_cm3 * width_cm;
+    }
+    for plane in &stack.planes {
+        donors_cm2 += plane.donors_cm2;
+        acceptors_cm2 += plane.acceptors_cm2;
     }
     let sites_per_cm2 = stack
         .substrate_lattice_nm()

@@ -222,7 +222,8 @@ impl<'s> BandOperator<'s> {
         self.stack
     }
 
-    /// A and C at fraction `t` of a layer, `z_nm` above the bottom of the stack: eV nm² and eV.
+    /// A and C at fraction `t` of a layer, `z_nm` above the bottom of the stack, with the energy of field and charge:
+    /// eV nm² and eV.
     pub fn at(&self, layer: usize, t: f64, z_nm: f64) -> Coefficient {
         let own = if self.stack.is_uniform(layer) || t <= 0.0 {
             self.bottoms[layer]
@@ -232,7 +233,16 @@ impl<'s> BandOperator<'s> {
             coefficient(self.band, &material, self.stack.substrate_lattice_nm())
                 .unwrap_or(self.bottoms[layer])
         };
-        raised(own, self.band.sign() * self.stack.field_v_per_nm * z_nm)
+        let charge_ev = self
+            .stack
+            .potential
+            .as_ref()
+            .map_or(0.0, |potential| match self.band {
+                Band::Conduction(_) => potential.electron_ev(layer, t),
+                Band::Hole(_) | Band::Valence(_) => potential.hole_ev(layer, t),
+            });
+        let energy_ev = self.stack.field_v_per_nm * z_nm + charge_ev;
+        raised(own, self.band.sign() * energy_ev)
     }
 
     /// The band's edge at the bottom face of a layer without the field, in eV.

@@ -2,6 +2,7 @@
 //! here.
 
 pub mod banded;
+pub mod boundary_value;
 pub mod curvature;
 pub mod decay;
 pub mod eigenpairs;

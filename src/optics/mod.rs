@@ -1,10 +1,12 @@
 //! Transitions between subbands of one band: energies, dipoles and strengths for light polarised along growth; and those
 //! between the valence and the conduction band, with their exciton and the photoluminescence.
 
+mod depolarisation;
 mod exciton;
 mod interband;
 mod photoluminescence;
 
+pub use depolarisation::{Depolarisation, Line, Shifted, depolarisation};
 pub use exciton::{Exciton, Pair, exciton};
 pub use interband::{Alignment, Interband, NoExciton, Selection, interband, lowest_exciton};
 pub use photoluminescence::{Photoluminescence, photoluminescence};

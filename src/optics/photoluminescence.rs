@@ -8,9 +8,10 @@
 //! the two. Filled bands, alloy disorder and wells that differ (all of which pull the peak down) are left out.
 
 use super::{NoExciton, lowest_exciton};
-use crate::models::{Band, Unsuitable};
-use crate::structure::{Level, Stack};
-use crate::subbands::{Accuracy, Bands, Place};
+use crate::charge::{self, ChargeError};
+use crate::models::Band;
+use crate::structure::{Charge, Level, Stack};
+use crate::subbands::{Accuracy, Place};
 
 /// The expected peak of the lowest pair at one temperature.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -35,19 +36,20 @@ impl Photoluminescence {
 /// is broken, or without holes.
 ///
 /// # Errors
-/// The layer whose material does not suit at that temperature, and why.
+/// Why there is no equilibrium of a doped stack, or which layer's material does not suit at that temperature.
 pub fn photoluminescence(
     stack: &Stack,
+    charge: &Charge,
     bands: &[(Band, usize)],
     temperature_k: f64,
     accuracy: Accuracy,
-) -> Result<Option<Photoluminescence>, (usize, Unsuitable)> {
+) -> Result<Option<Photoluminescence>, ChargeError> {
     let Ok(mut stack) = stack.at_temperature(temperature_k) else {
         return Ok(None);
     };
     stack.field_v_per_nm = 0.0;
     let lowest: Vec<(Band, usize)> = bands.iter().map(|(band, _)| (*band, 1)).collect();
-    let bands = Bands::solve(&stack, &lowest, accuracy)?;
+    let charge::Solution { stack, bands, .. } = charge::solve(&stack, charge, &lowest, accuracy)?;
     let Some(hole) = bands.holes().first().copied() else {
         return Ok(None);
     };

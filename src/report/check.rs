@@ -3,8 +3,9 @@
 
 use super::layer_edges::LayerEdges;
 use super::strain::StrainReport;
+use super::table::significant;
 use super::{Report, csv_table};
-use crate::structure::{Stack, Structure};
+use crate::structure::{Charge, Stack, Structure};
 use serde::Serialize;
 
 /// The tables of one file.
@@ -17,6 +18,9 @@ pub struct Check {
     layer_count: usize,
     width_nm: f64,
     has_tune: bool,
+    /// What dopants do to the bands; nothing without dopants.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    charge: Option<String>,
     #[serde(flatten)]
     edges: LayerEdges,
     #[serde(flatten)]
@@ -32,10 +36,38 @@ impl Check {
             layer_count: stack.layers.len(),
             width_nm: stack.total_width_nm(),
             has_tune: structure.tune.is_some(),
+            charge: charge(structure, stack),
             edges: LayerEdges::new(structure, stack),
             strain: StrainReport::new(structure, stack),
         }
     }
+}
+
+/// What dopants do to the bands, in a sentence.
+fn charge(structure: &Structure, stack: &Stack) -> Option<String> {
+    let [donors, acceptors] = stack.sheet_doping_cm2();
+    let bending = match &structure.charge {
+        Charge::Flat if donors + acceptors == 0.0 => return None,
+        Charge::Flat => "the bands stay flat".to_owned(),
+        Charge::Bent(bending) => {
+            let level = match (bending.contact, bending.surface_ev) {
+                (false, None) => "follows from neutrality".to_owned(),
+                (false, Some(ev)) => format!("lies {ev} eV below the edge at the top face"),
+                (true, None) => "is that of the lowest layer".to_owned(),
+                (true, Some(ev)) => {
+                    format!(
+                        "is that of the lowest layer, and lies {ev} eV below the edge at the top face"
+                    )
+                }
+            };
+            format!("charge bends the bands, and the Fermi level {level}")
+        }
+    };
+    Some(format!(
+        "Doping {} donors and {} acceptors per cm²: {bending}.",
+        significant(donors, 4),
+        significant(acceptors, 4)
+    ))
 }
 
 impl Report for Check {
@@ -53,6 +85,9 @@ impl Report for Check {
             self.edges.text(),
             self.edges.offset_lines(),
         );
+        if let Some(charge) = &self.charge {
+            text.push_str(&format!("\n{charge}\n"));
+        }
         for table in self.strain.tables() {
             text.push('\n');
             text.push_str(&table.text());

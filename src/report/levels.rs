@@ -1,5 +1,6 @@
 //! Subband and transition tables of one stack.
 
+use super::charge::ChargeReport;
 use super::interband::Interbands;
 use super::layer_edges::LayerEdges;
 use super::table::{error_mev, given, significant, table};
@@ -40,6 +41,8 @@ pub struct Levels {
     oscillator_strength_definition: &'static str,
     dipole_definition: &'static str,
     audit: AuditRow,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    charge: Option<ChargeReport>,
     #[serde(flatten)]
     edges: LayerEdges,
 }
@@ -247,8 +250,14 @@ impl Levels {
                 states_counted: counted,
                 faults: audit.faults(),
             },
+            charge: None,
             edges: LayerEdges::new(structure, stack),
         }
+    }
+
+    /// With what charge does to the stack.
+    pub fn with_charge(self, charge: Option<ChargeReport>) -> Levels {
+        Levels { charge, ..self }
     }
 
     /// The edges of strained layers, and what the band offsets rest on.
@@ -411,8 +420,13 @@ impl Levels {
                 holes.heavy, holes.light
             )
         });
+        let charge = self
+            .charge
+            .as_ref()
+            .map(|charge| format!("{}\n", charge.text()))
+            .unwrap_or_default();
         format!(
-            "{subbands}\n{} below the lower outer barrier edge.{}\n{characters}\n{transitions}\nStrength: {STRENGTH_DEFINITION}.\nDipole: {DIPOLE_DEFINITION}.\n{interband}\
+            "{subbands}\n{} below the lower outer barrier edge.{}\n{characters}\n{transitions}\nStrength: {STRENGTH_DEFINITION}.\nDipole: {DIPOLE_DEFINITION}.\n{interband}\n{charge}\
              Audit {verdict}: overlaps {:.0e}, velocity and position {:.0e}, mean force {:.0e}, sum rule {:.0e}; {} states found, {} counted.\n",
             match self.bound_states {
                 1 => "One state lies".to_owned(),
@@ -463,6 +477,10 @@ impl Report for Levels {
         if let Some(interband) = &self.interband {
             text.push('\n');
             text.push_str(&interband.csv()?);
+        }
+        if let Some(charge) = &self.charge {
+            text.push('\n');
+            text.push_str(&charge.csv()?);
         }
         if self.edges.are_strained() {
             text.push('\n');

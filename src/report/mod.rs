@@ -1,5 +1,6 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod charge;
 mod check;
 mod dispersion;
 mod interband;
@@ -20,6 +21,7 @@ mod table;
 mod tolerance;
 mod tuning;
 
+pub use charge::ChargeReport;
 pub use check::Check;
 pub use dispersion::Dispersion;
 pub use levels::Levels;

@@ -6,7 +6,9 @@ use super::sheet_text::sheet_text;
 use super::strain::StrainReport;
 use super::table::{TitledTable, significant};
 use crate::constants::HC_EV_UM;
-use crate::growth::{self, Caution, Digital, Filling, Flag, LayerRow, Plan, Row, Sums, cautions};
+use crate::growth::{
+    self, Caution, Digital, Filling, Flag, LayerRow, Plan, PlaneRow, Row, Sums, cautions,
+};
 use crate::materials::Element;
 use crate::optics::Photoluminescence;
 use crate::structure::{BandName, Growth, Level, Profile, Stack, Structure};
@@ -98,7 +100,7 @@ pub struct SheetRow {
     pub thickness_nm: Option<f64>,
     pub thickness_A: Option<f64>,
     pub monolayers: Option<f64>,
-    /// Species and density per cm³.
+    /// Species and density per cm³; per cm² in a plane, with its unit.
     #[serde(serialize_with = "joined")]
     pub doping: Vec<String>,
     pub open_cells: String,
@@ -113,6 +115,8 @@ pub struct SheetRow {
 pub enum RowKind {
     #[serde(rename = "layer")]
     Layer,
+    #[serde(rename = "plane of dopants")]
+    Plane,
     #[serde(rename = "loop begins")]
     LoopBegins,
     #[serde(rename = "loop ends")]
@@ -503,6 +507,20 @@ fn sheet_row(row: &Row, growth: &Growth) -> SheetRow {
         ..row
     };
     match row {
+        Row::Plane(plane) => SheetRow {
+            name: plane.label.clone(),
+            material: "growth stops".to_owned(),
+            doping: plane_doping(plane, growth)
+                .map(|(name, density)| format!("{name} {density:e} cm^-2"))
+                .collect(),
+            open_cells: plane_doping(plane, growth)
+                .map(|(name, _)| name)
+                .collect::<Vec<_>>()
+                .join(", "),
+            cumulative_nm: Some(plane.after.width_nm()),
+            cumulative_s: Some(plane.after.time_s()),
+            ..empty(RowKind::Plane, plane.depth, None)
+        },
         Row::LoopBegins { count, depth } => empty(RowKind::LoopBegins, *depth, Some(*count)),
         Row::LoopEnds {
             count,
@@ -556,6 +574,18 @@ fn doping(layer: &LayerRow, growth: &Growth) -> Vec<String> {
             format!("{name} {density:e}")
         })
         .collect()
+}
+
+/// The species of a plane with their densities in cm⁻².
+fn plane_doping<'g>(plane: &PlaneRow, growth: &'g Growth) -> impl Iterator<Item = (&'g str, f64)> {
+    let parts = [
+        (plane.donors_cm2, &growth.donors, "donors"),
+        (plane.acceptors_cm2, &growth.acceptors, "acceptors"),
+    ];
+    let present = parts.into_iter().filter(|(density, _, _)| *density > 0.0);
+    present.map(|(density, species, word)| {
+        (species.as_ref().map_or(word, |s| s.value.symbol), density)
+    })
 }
 
 fn open_cells(filling: &Filling, growth: &Growth) -> String {
@@ -626,6 +656,9 @@ fn warning(flag: &Flag) -> Option<String> {
                 "{label}: fixed rates do not give a graded layer. Ramp the fluxes between the rates of its line, the composition changing {how} with height; {otherwise}"
             ))
         }
+        Flag::Stop { label } => Some(format!(
+            "{label}: growth stops while the dopant alone is supplied; the growth time does not hold the stop, which the dopant's own calibration gives"
+        )),
         Flag::Composition(_) => None,
     }
 }

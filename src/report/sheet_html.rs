@@ -170,7 +170,7 @@ impl Sheet {
             self.total.time_s,
             self.total.time
         ));
-        if self.rows.iter().any(|row| row.kind != RowKind::Layer) {
+        if self.rows.iter().any(|row| row.kind == RowKind::LoopBegins) {
             text.push_str("<p>Inside a loop, height and clock are those of its first pass.</p>\n");
         }
         text
@@ -251,7 +251,8 @@ fn layer_row(row: &SheetRow) -> String {
     let number = |value: Option<f64>, decimals: usize| {
         value.map_or(String::new(), |value| format!("{value:.decimals$}"))
     };
-    let depth = row.depth + usize::from(row.kind != RowKind::Layer);
+    let is_loop = matches!(row.kind, RowKind::LoopBegins | RowKind::LoopEnds);
+    let depth = row.depth + usize::from(is_loop);
     let inside = if depth > 0 {
         format!(" in\" style=\"padding-left:{}mm", 2 * depth)
     } else {
@@ -273,7 +274,7 @@ fn layer_row(row: &SheetRow) -> String {
             number(row.cumulative_nm, 3),
             row.cumulative_s.map_or(String::new(), clock)
         ),
-        RowKind::Layer => {
+        RowKind::Layer | RowKind::Plane => {
             let doping: Vec<String> = row.doping.iter().map(|d| escape(d)).collect();
             let to = row
                 .to

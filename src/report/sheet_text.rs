@@ -129,7 +129,7 @@ fn cells(row: &SheetRow) -> Vec<String> {
     };
     let indent = "  ".repeat(row.depth);
     let name = match row.kind {
-        RowKind::Layer => format!("{indent}{}", row.name),
+        RowKind::Layer | RowKind::Plane => format!("{indent}{}", row.name),
         RowKind::LoopBegins => format!("{indent}{} times:", row.repeat.unwrap_or(1)),
         RowKind::LoopEnds => format!("{indent}end of {} times", row.repeat.unwrap_or(1)),
     };

@@ -4,7 +4,7 @@ use super::table::{given, significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
 use crate::models::model_name;
-use crate::structure::{BandName, Level, Stack, Structure, Target, Window};
+use crate::structure::{BandName, Charge, Level, Stack, Structure, Target, Window};
 use crate::tolerance::{Distributed, Outcome, Ring, Share, Statistics};
 use serde::Serialize;
 
@@ -13,7 +13,7 @@ const DEFINITIONS: [&str; 4] = [
     "Spreads are one standard deviation, normal and independent of each other; every wafer is solved in full.",
     "Linear: the spread that the shifts above foretell; contributors are their shares of its variance.",
     "Flux: thickness and composition of all layers that hold the element move together. Repeats move together.",
-    "Shares of wafers carry Wilson's 95 % interval. Doping has no entry: charge is not part of the model.",
+    "Shares of wafers carry Wilson's 95 % interval.",
 ];
 /// The same with holes.
 const HOLES: &str = "`valence` counts the highest hole levels of each wafer, of either kind; holes are solved apart, excitons left out.";
@@ -21,6 +21,11 @@ const HOLES: &str = "`valence` counts the highest hole levels of each wafer, of 
 const NAMED: usize = 3;
 /// A smaller share of the variance is not named.
 const LEAST_SHARE: f64 = 0.005;
+
+/// How charge enters.
+const CHARGE_DEFINITION: &str = "Charge answers to every change: sensitivities and radii are self-consistent. Sampled wafers take the potential along with their layers, and the charge's answer is that of the sensitivities, to first order.";
+const FLAT_DEFINITION: &str =
+    "Doping has no entry: the bands stay flat, whatever the charge of dopants and carriers.";
 
 /// The tolerances of a design.
 #[derive(Debug, Serialize)]
@@ -256,6 +261,10 @@ impl Tolerances {
                 .collect(),
             definitions: DEFINITIONS
                 .into_iter()
+                .chain([match structure.charge {
+                    Charge::Flat => FLAT_DEFINITION,
+                    Charge::Bent(_) => CHARGE_DEFINITION,
+                }])
                 .chain(structure.valence.map(|_| HOLES))
                 .collect(),
             shown: shown(structure, windows, outcome),

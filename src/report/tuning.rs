@@ -1,8 +1,10 @@
 //! What a tuning reached: aims before and after, the new values of the variables, and the levels of the result.
 
+use super::charge::ChargeReport;
 use super::levels::Levels;
 use super::table::{significant, table};
 use super::{Report, csv_table};
+use crate::charge::Solution;
 use crate::constants::HC_EV_UM;
 use crate::structure::{BandName, Knob, Structure, Target};
 use crate::tune::{Aim, Design, Goal, Limit, Outcome, Variable};
@@ -170,6 +172,13 @@ impl Tuning {
                 }
             })
             .collect();
+        let solution = Solution {
+            stack: after.stack.clone(),
+            bands: after.bands.clone(),
+            equilibrium: after.equilibrium.clone(),
+        };
+        let listed = Tuning::listed(structure, outcome);
+        let charge = ChargeReport::new(&solution, &listed, &structure.charge);
         Tuning {
             reached: outcome.is_reached(),
             aims,
@@ -182,7 +191,8 @@ impl Tuning {
                 &after.stack,
                 &after.bands,
                 &Tuning::listed(structure, outcome),
-            ),
+            )
+            .with_charge(charge),
             structure: text,
         }
     }

@@ -30,19 +30,6 @@ pub(super) fn doubts(structure: &Structure, stack: &Stack) -> Vec<Diagnostic> {
         }
     }
     found.extend(broken_gap(structure, stack));
-    if let Some(doped) = structure
-        .entries
-        .iter()
-        .find(|entry| entry.donors_cm3 > 0.0 || entry.acceptors_cm3 > 0.0)
-    {
-        found.push(
-            Diagnostic::warning(format!(
-                "{} is doped, but band bending by charge is not included",
-                doped.in_words()
-            ))
-            .at(place(doped)),
-        );
-    }
     if let Some(tune) = &structure.tune {
         for variable in &tune.vary {
             of_variable(

@@ -1,5 +1,6 @@
 //! What a structure file says, checked, with the places it was read from.
 
+use super::charge::Charge;
 use super::document::Node;
 use super::growth::Growth;
 use super::rewrite::FreeLine;
@@ -46,14 +47,27 @@ pub struct Structure {
     pub library: Library,
     /// The file's layers in its order, each once, however often it is repeated.
     pub entries: Vec<LayerEntry>,
-    /// How the entries follow one another, bottom first.
+    /// The file's doping planes in its order, each once.
+    pub planes: Vec<PlaneEntry>,
+    /// How layers and planes follow one another, bottom first.
     pub sequence: Vec<Item>,
     pub tune: Option<Tune>,
     pub growth: Option<Growth>,
     pub tolerance: Option<Tolerance>,
     pub sweep: Option<Sweep>,
+    /// Whether the charge of dopants and carriers bends the bands.
+    pub charge: Charge,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
+}
+
+impl Structure {
+    /// Whether any bands are solved together.
+    pub fn couples_bands(&self) -> bool {
+        let holes = self.valence.map(|valence| valence.model);
+        self.conduction.model == ConductionModel::EightBand
+            || holes.is_some_and(|model| model != ValenceModel::Decoupled)
+    }
 }
 
 /// The conduction band that is to be solved.
@@ -99,6 +113,8 @@ pub enum ConductionModel {
 pub enum Item {
     /// An index into [`Structure::entries`].
     Layer(usize),
+    /// An index into [`Structure::planes`].
+    Plane(usize),
     /// Steps that follow one another `count` times.
     Repeat { count: u32, items: Vec<Item> },
 }
@@ -121,7 +137,32 @@ pub struct LayerEntry {
     pub donors_cm3: f64,
     /// Acceptors per volume, in cm⁻³.
     pub acceptors_cm3: f64,
+    /// Donors per area that are spread over the width, in cm⁻².
+    pub sheet_donors_cm2: f64,
+    /// Acceptors per area that are spread over the width, in cm⁻².
+    pub sheet_acceptors_cm2: f64,
     /// The layer's bytes.
+    pub span: Range<usize>,
+}
+
+impl LayerEntry {
+    pub fn has_donors(&self) -> bool {
+        self.donors_cm3 > 0.0 || self.sheet_donors_cm2 > 0.0
+    }
+
+    pub fn has_acceptors(&self) -> bool {
+        self.acceptors_cm3 > 0.0 || self.sheet_acceptors_cm2 > 0.0
+    }
+}
+
+/// A plane of dopants between two layers: growth stops there, and the dopant alone is supplied.
+#[derive(Clone, Debug)]
+pub struct PlaneEntry {
+    /// The user's name, or else `plane 2`, counted over the file from 1.
+    pub label: String,
+    pub donors_cm2: f64,
+    pub acceptors_cm2: f64,
+    /// The plane's bytes.
     pub span: Range<usize>,
 }
 

@@ -4,14 +4,17 @@
 //! text → document (nodes with places) → Structure (what the file says, checked) → Stack (flat layers, materials resolved)
 //! ```
 
+mod charge;
 pub mod document;
 mod doubts;
 mod fields;
 mod file;
 mod grade;
 mod growth;
+mod potential;
 mod read;
 mod read_aims;
+mod read_charge;
 mod read_growth;
 mod read_keep;
 mod read_layers;
@@ -26,17 +29,19 @@ mod sweeps;
 mod temperature;
 mod wafer;
 
+pub use charge::{Bending, Charge, Ionisation};
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile,
-    Spanned, StrainBound, Structure, Target, Tune, ValenceBand, ValenceModel, Variable, Varied,
-    Within,
+    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level,
+    PlaneEntry, Profile, Spanned, StrainBound, Structure, Target, Tune, ValenceBand, ValenceModel,
+    Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
+pub use potential::Potential;
 pub use read::read;
 pub use read_sweep::MOST_POINTS;
 pub use rewrite::{Edits, NewWidth, rewrite};
 pub use spreads::{Grading, Radial, Tolerance, Window};
-pub use stack::{Layer, MAX_TOTAL_NM, Stack};
+pub use stack::{Layer, MAX_TOTAL_NM, Plane, Stack};
 pub use sweeps::{Doping, Steps, Sweep, Swept};
 pub use wafer::{Cause, Design, NotGrown};
 

@@ -1,5 +1,6 @@
 //! The whole of a structure file: text in, checked structure and messages out.
 
+use super::charge::Charge;
 use super::document::{self, Node, Value};
 use super::fields::{Checker, Fields, Limits};
 use super::file::{
@@ -7,11 +8,11 @@ use super::file::{
 };
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
-use super::{read_growth, read_materials, read_sweep, read_tolerance, read_tune};
+use super::{read_charge, read_growth, read_materials, read_sweep, read_tolerance, read_tune};
 use crate::diagnostics::{Diagnostic, Severity};
 use crate::units::Dimension;
 
-const KEYS: [&str; 12] = [
+const KEYS: [&str; 13] = [
     "title",
     "substrate",
     "temperature",
@@ -20,6 +21,7 @@ const KEYS: [&str; 12] = [
     "bands",
     "materials",
     "layers",
+    "charge",
     "tune",
     "growth",
     "tolerance",
@@ -57,6 +59,7 @@ pub fn read(text: &str) -> (Option<Structure>, Vec<Diagnostic>) {
         match structure.stack() {
             Ok(stack) => {
                 problems.extend(super::doubts::doubts(structure, &stack));
+                problems.extend(read_charge::unfitting(structure, &stack));
                 if let Some(growth) = &structure.growth {
                     problems.extend(read_growth::of_stack(growth, structure, &stack));
                 }
@@ -166,8 +169,11 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let sweep = fields
         .get("sweep")
         .and_then(|node| read_sweep::sweep(checker, node, entries, solved));
+    let charge = fields
+        .get("charge")
+        .map(|node| read_charge::charge(checker, node, &fields));
     let layers = layers?;
-    Some(Structure {
+    let mut structure = Structure {
         title,
         substrate: settled(substrate)?,
         temperature_k: settled(temperature)?
@@ -181,13 +187,23 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
             .into_iter()
             .map(|(_, entry)| entry)
             .collect::<Option<_>>()?,
+        planes: layers.planes,
         sequence: layers.sequence,
+        charge: settled(charge)?.unwrap_or(Charge::Flat),
         tune,
         growth: settled(growth)?,
         tolerance,
         sweep,
         field_line: free_line(checker.text, root),
-    })
+    };
+    if !fields.has("charge") {
+        let walls = fields
+            .get("ends")
+            .and_then(Node::text)
+            .is_none_or(|ends| ends == "walls");
+        structure.charge = read_charge::unstated(checker, &structure, walls);
+    }
+    Some(structure)
 }
 
 /// `None` when the key was there but mistaken.

@@ -2,7 +2,7 @@
 
 use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Limits, between, one_of};
-use super::file::{LayerEntry, Spanned, Structure, Tune, Varied};
+use super::file::{LayerEntry, PlaneEntry, Spanned, Structure, Tune, Varied};
 use super::growth::{Cell, DOPANTS, Dopant, Growth};
 use super::read_layers::{self, Known};
 use super::stack::Stack;
@@ -440,7 +440,7 @@ pub(super) fn of_stack(growth: &Growth, structure: &Structure, stack: &Stack) ->
         }
         if let Some(species) = &growth.donors
             && species.value.acceptor
-            && entry.donors_cm3 > 0.0
+            && entry.has_donors()
             && stack
                 .composition_at(layer, 0.0)
                 .is_some_and(|c| is_antimonide(&c))
@@ -469,20 +469,19 @@ pub(super) fn of_stack(growth: &Growth, structure: &Structure, stack: &Stack) ->
             &growth.donors,
             "donors",
             "Si",
-            doped(structure, |e| e.donors_cm3),
+            doped(structure, LayerEntry::has_donors, |p| p.donors_cm2),
         ),
         (
             &growth.acceptors,
             "acceptors",
             "Be",
-            doped(structure, |e| e.acceptors_cm3),
+            doped(structure, LayerEntry::has_acceptors, |p| p.acceptors_cm2),
         ),
     ] {
-        if let (None, Some(entry)) = (species, doped) {
+        if let (None, Some(name)) = (species, doped) {
             found.push(
                 Diagnostic::warning(format!(
-                    "{} has {key}, but `growth` names no species for them",
-                    entry.in_words()
+                    "{name} has {key}, but `growth` names no species for them"
                 ))
                 .at(growth.span.clone())
                 .hint(format!("add `dopants: {{{key}: {symbol}}}`")),
@@ -497,7 +496,15 @@ fn is_antimonide(composition: &Composition) -> bool {
     composition.fraction(Element::Sb) > 0.5 && composition.fraction(Element::In) < 0.5
 }
 
-/// The first layer with doping of one kind.
-fn doped(structure: &Structure, density: impl Fn(&LayerEntry) -> f64) -> Option<&LayerEntry> {
-    structure.entries.iter().find(|entry| density(entry) > 0.0)
+/// The first layer, or else the first plane, with doping of one kind, in words.
+fn doped(
+    structure: &Structure,
+    layer: impl Fn(&LayerEntry) -> bool,
+    plane: impl Fn(&PlaneEntry) -> f64,
+) -> Option<String> {
+    let doped = structure.entries.iter().find(|entry| layer(entry));
+    let planes = || structure.planes.iter().find(|entry| plane(entry) > 0.0);
+    doped
+        .map(LayerEntry::in_words)
+        .or_else(|| planes().map(|plane| format!("`{}`", plane.label)))
 }

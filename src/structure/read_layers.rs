@@ -2,7 +2,7 @@
 
 use super::document::{Node, line_of};
 use super::fields::{Checker, Fields, Limits, above, between};
-use super::file::{Item, LayerEntry, Profile, Spanned};
+use super::file::{Item, LayerEntry, PlaneEntry, Profile, Spanned};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Library, Substance};
 use crate::units::Dimension;
@@ -12,11 +12,12 @@ use std::collections::HashMap;
 pub(super) const WIDTH_LIMITS: Limits = above(0.0, 1e5, "a width above 0 nm, of at most 100 µm");
 pub(super) const FIELD_LIMITS: Limits = between(-1.0, 1.0, "a field from -10 MV/cm to 10 MV/cm");
 pub(super) const DOPING_LIMITS: Limits = between(0.0, 1e22, "from 0 to 1e22 cm^-3");
+const SHEET_LIMITS: Limits = between(0.0, 1e15, "from 0 to 1e15 cm^-2");
 const MAX_REPEATS: u32 = 10_000;
 /// How many layers the stack may have with its repeats laid out.
 pub(super) const MAX_LAYERS: usize = 20_000;
 
-const LAYER_KEYS: [&str; 10] = [
+const LAYER_KEYS: [&str; 12] = [
     "material",
     "width",
     "name",
@@ -25,6 +26,8 @@ const LAYER_KEYS: [&str; 10] = [
     "to",
     "profile",
     "match",
+    "sheet_donors",
+    "sheet_acceptors",
     "repeat",
     "layers",
 ];
@@ -33,6 +36,7 @@ const LAYER_KEYS: [&str; 10] = [
 pub(super) struct Layers {
     /// Name and content of each entry; a mistaken layer keeps its name, so that `tune` can still refer to it.
     pub entries: Vec<(Option<String>, Option<LayerEntry>)>,
+    pub planes: Vec<PlaneEntry>,
     pub sequence: Vec<Item>,
 }
 
@@ -48,9 +52,17 @@ pub(super) fn layers(checker: &mut Checker, node: &Node, known: &Known) -> Optio
     let mut reader = LayerReader {
         known,
         entries: Vec::new(),
+        planes: Vec::new(),
         names: HashMap::new(),
     };
     let (sequence, total) = reader.items(checker, node)?;
+    if reader.entries.is_empty() && !reader.planes.is_empty() {
+        checker.report(
+            Diagnostic::error("there is no layer, only planes of dopants")
+                .at(checker.head(&node.span))
+                .expected("a layer such as `{material: GaAs, width: 5.2 nm}`"),
+        );
+    }
     if total > MAX_LAYERS {
         checker.report(
             Diagnostic::error(format!(
@@ -62,6 +74,7 @@ pub(super) fn layers(checker: &mut Checker, node: &Node, known: &Known) -> Optio
     }
     Some(Layers {
         entries: reader.entries,
+        planes: reader.planes,
         sequence,
     })
 }
@@ -69,6 +82,7 @@ pub(super) fn layers(checker: &mut Checker, node: &Node, known: &Known) -> Optio
 struct LayerReader<'k> {
     known: &'k Known<'k>,
     entries: Vec<(Option<String>, Option<LayerEntry>)>,
+    planes: Vec<PlaneEntry>,
     /// Where each name stands first.
     names: HashMap<String, usize>,
 }
@@ -100,10 +114,18 @@ impl LayerReader<'_> {
 
     fn item(&mut self, checker: &mut Checker, node: &Node) -> Option<(Item, usize)> {
         let fields = checker.fields(node, "a layer", &LAYER_KEYS)?;
-        if !fields.has("repeat") && !fields.has("layers") {
+        let alone = !fields.has("repeat") && !fields.has("layers");
+        let is_sheet = fields.has("sheet_donors") || fields.has("sheet_acceptors");
+        if alone && is_sheet && !fields.has("material") && !fields.has("width") {
+            let plane = self.plane(checker, node, &fields)?;
+            self.planes.push(plane);
+            // A plane counts as a layer where their number is bounded.
+            return Some((Item::Plane(self.planes.len() - 1), 1));
+        }
+        if alone {
             return Some((Item::Layer(self.layer(checker, node, &fields)), 1));
         }
-        if let Some(key) = LAYER_KEYS[..8].iter().find(|key| fields.has(key)) {
+        if let Some(key) = LAYER_KEYS[..10].iter().find(|key| fields.has(key)) {
             checker.report(
                 Diagnostic::error(format!("`{key}` stands beside `repeat` and `layers`"))
                     .at(fields.head.clone())
@@ -126,6 +148,29 @@ impl LayerReader<'_> {
             Item::Repeat { count, items },
             layers.saturating_mul(count as usize),
         ))
+    }
+
+    /// Dopants per area between two layers.
+    fn plane(&mut self, checker: &mut Checker, node: &Node, fields: &Fields) -> Option<PlaneEntry> {
+        if let Some(key) = ["donors", "acceptors", "to", "profile", "match"]
+            .iter()
+            .find(|key| fields.has(key))
+        {
+            checker.report(
+                Diagnostic::error(format!("`{key}` stands in a plane of dopants"))
+                    .at(fields.head.clone())
+                    .expected("`sheet_donors` or `sheet_acceptors` with `name`; a layer has `material` and `width` too"),
+            );
+        }
+        let name = fields.get("name").and_then(|node| self.name(checker, node));
+        let donors_cm2 = density(checker, fields, "sheet_donors");
+        let acceptors_cm2 = density(checker, fields, "sheet_acceptors");
+        Some(PlaneEntry {
+            label: name.unwrap_or_else(|| format!("plane {}", self.planes.len() + 1)),
+            donors_cm2: donors_cm2?,
+            acceptors_cm2: acceptors_cm2?,
+            span: node.span.clone(),
+        })
     }
 
     /// Reads a layer and returns its index.
@@ -224,14 +269,10 @@ impl LayerReader<'_> {
             }
             None => Some("linear"),
         };
-        let doping = |checker: &mut Checker, key: &str| match fields.get(key) {
-            Some(node) => checker
-                .quantity(node, &[Dimension::VolumeDensity], DOPING_LIMITS)
-                .map(|found| found.value.value()),
-            None => Some(0.0),
-        };
-        let donors_cm3 = doping(checker, "donors");
-        let acceptors_cm3 = doping(checker, "acceptors");
+        let donors_cm3 = density(checker, fields, "donors");
+        let acceptors_cm3 = density(checker, fields, "acceptors");
+        let sheet_donors_cm2 = density(checker, fields, "sheet_donors");
+        let sheet_acceptors_cm2 = density(checker, fields, "sheet_acceptors");
         Some(LayerEntry {
             name,
             label,
@@ -245,8 +286,25 @@ impl LayerReader<'_> {
             },
             donors_cm3: donors_cm3?,
             acceptors_cm3: acceptors_cm3?,
+            sheet_donors_cm2: sheet_donors_cm2?,
+            sheet_acceptors_cm2: sheet_acceptors_cm2?,
             span: node.span.clone(),
         })
+    }
+}
+
+/// The density of dopants that a key states, per volume or, for a sheet, per area; 0 without the key.
+fn density(checker: &mut Checker, fields: &Fields, key: &str) -> Option<f64> {
+    let (dimension, limits) = if key.starts_with("sheet_") {
+        (Dimension::SheetDensity, SHEET_LIMITS)
+    } else {
+        (Dimension::VolumeDensity, DOPING_LIMITS)
+    };
+    match fields.get(key) {
+        Some(node) => checker
+            .quantity(node, &[dimension], limits)
+            .map(|found| found.value.value()),
+        None => Some(0.0),
     }
 }
 

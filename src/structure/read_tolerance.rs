@@ -14,12 +14,13 @@ use crate::materials::{Element, Sublattice};
 use crate::units::{Dimension, Quantity};
 
 /// What the spreads are called in messages: the keys that make wafers differ.
-const SPREADS: [&str; 7] = [
+const SPREADS: [&str; 8] = [
     "rate",
     "flux",
     "jitter",
     "composition",
     "grading",
+    "doping",
     "field",
     "temperature",
 ];
@@ -52,12 +53,13 @@ pub(super) fn tolerance(
     node: &Node,
     solved: &[BandName],
 ) -> Option<Tolerance> {
-    const KEYS: [&str; 11] = [
+    const KEYS: [&str; 12] = [
         "rate",
         "flux",
         "jitter",
         "composition",
         "grading",
+        "doping",
         "field",
         "temperature",
         "samples",
@@ -80,6 +82,7 @@ pub(super) fn tolerance(
             .map(|node| Some(checker.quantity(node, &[dimension], limits)?.value.value()))
     };
     let rate = value("rate", Dimension::Percentage, PART_LIMITS);
+    let doping = value("doping", Dimension::Percentage, PART_LIMITS);
     let field = value("field", Dimension::Field, FIELD_LIMITS);
     let temperature = value("temperature", Dimension::Temperature, TEMPERATURE_LIMITS);
     let flux = fields.get("flux").map(|node| flux(checker, node));
@@ -107,6 +110,7 @@ pub(super) fn tolerance(
         jitter: settled(jitter)?,
         composition: settled(composition)?,
         grading: settled(grading)?,
+        doping: settled(doping)?,
         field_v_per_nm: settled(field)?,
         temperature_k: settled(temperature)?,
         samples: samples? as usize,

@@ -19,6 +19,8 @@ pub struct Tolerance {
     /// Of an element's fraction, the same in all layers of an alloy.
     pub composition: Option<Spanned<f64>>,
     pub grading: Option<Grading>,
+    /// Of all dopants together, as a part.
+    pub doping: Option<f64>,
     pub field_v_per_nm: Option<f64>,
     pub temperature_k: Option<f64>,
     /// Wafers to sample.
@@ -36,6 +38,7 @@ impl Tolerance {
             || self.jitter.is_some()
             || self.composition.is_some()
             || self.grading.as_ref().is_some_and(|g| g.spread_nm > 0.0)
+            || self.doping.is_some()
             || self.field_v_per_nm.is_some()
             || self.temperature_k.is_some()
     }

@@ -2,13 +2,16 @@
 
 use super::file::{ConductionModel, Item, LayerEntry, Profile, Spanned, Structure, ValenceModel};
 use super::grade::{self, Law};
+use super::potential::Potential;
 use crate::diagnostics::Diagnostic;
 use crate::materials::{
     Composition, Dual, Element, Library, Material, MaterialError, Number, Substance, monolayer_nm,
     strained,
 };
 use crate::units::{Dimension, Quantity};
+use std::collections::HashMap;
 use std::ops::Range;
+use std::sync::Arc;
 
 /// The temperature at which compositions are matched to the substrate, in K: that of the library's own match.
 const MATCH_TEMPERATURE_K: f64 = 300.0;
@@ -21,6 +24,10 @@ pub const MAX_TOTAL_NM: f64 = 1e5;
 pub struct Stack {
     /// The layers with all repeats laid out.
     pub layers: Vec<Layer>,
+    /// The doping planes with all repeats laid out, the lowest first.
+    pub planes: Vec<Plane>,
+    /// The energy that charge adds to the band edges, if that was worked out.
+    pub potential: Option<Arc<Potential>>,
     /// The field in V/nm; a positive one raises the electron's potential energy along the growth direction.
     pub field_v_per_nm: f64,
     pub(super) temperature_k: f64,
@@ -40,10 +47,42 @@ pub struct Layer {
     /// Index of the file's layer entry, which all copies of a repeat share.
     pub entry: usize,
     pub width_nm: f64,
-    /// Donors per volume, in cm⁻³.
+    /// Donors per volume, in cm⁻³; those per area come on top.
     pub donors_cm3: f64,
-    /// Acceptors per volume, in cm⁻³.
+    /// Acceptors per volume, in cm⁻³; those per area come on top.
     pub acceptors_cm3: f64,
+    /// Donors per area that are spread over the width, in cm⁻².
+    pub sheet_donors_cm2: f64,
+    /// Acceptors per area that are spread over the width, in cm⁻².
+    pub sheet_acceptors_cm2: f64,
+}
+
+/// 1 cm⁻² over 1 nm in cm⁻³.
+const PER_NM_IN_CM: f64 = 1e7;
+
+impl Layer {
+    /// All donors per volume, in cm⁻³.
+    pub fn all_donors_cm3(&self) -> f64 {
+        self.donors_cm3 + PER_NM_IN_CM * self.sheet_donors_cm2 / self.width_nm
+    }
+
+    /// All acceptors per volume, in cm⁻³.
+    pub fn all_acceptors_cm3(&self) -> f64 {
+        self.acceptors_cm3 + PER_NM_IN_CM * self.sheet_acceptors_cm2 / self.width_nm
+    }
+}
+
+/// A plane of dopants.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Plane {
+    /// The user's name or `plane 2`; copies of a repeat add their number.
+    pub label: String,
+    /// The layer in which it lies, and at which part of its width, from 0 at the bottom: at a face but in a graded
+    /// interface.
+    pub layer: usize,
+    pub fraction: f64,
+    pub donors_cm2: f64,
+    pub acceptors_cm2: f64,
 }
 
 /// What a layer entry consists of, resolved.
@@ -88,6 +127,8 @@ impl Structure {
         }
         let mut stack = Stack {
             layers: Vec::new(),
+            planes: Vec::new(),
+            potential: None,
             field_v_per_nm: self.field.as_ref().map_or(0.0, |field| field.value.value()),
             temperature_k: self.temperature_k,
             substrate: self.substrate.as_ref().map(|s| s.value.clone()),
@@ -113,7 +154,7 @@ impl Structure {
         if !problems.is_empty() {
             return Err(problems);
         }
-        stack.lay_out(&self.sequence, &self.entries, &widths_nm);
+        stack.lay_out(self, &widths_nm);
         match self.too_thick(&stack) {
             Some(problem) => Err(vec![problem]),
             None => Ok(stack),
@@ -304,6 +345,22 @@ impl Stack {
 
     pub fn total_width_nm(&self) -> f64 {
         self.layers.iter().map(|layer| layer.width_nm).sum()
+    }
+
+    /// All donors and all acceptors per area, in cm⁻².
+    pub fn sheet_doping_cm2(&self) -> [f64; 2] {
+        let layers = self.layers.iter().map(|layer| {
+            let width_cm = layer.width_nm / PER_NM_IN_CM;
+            [
+                layer.donors_cm3 * width_cm + layer.sheet_donors_cm2,
+                layer.acceptors_cm3 * width_cm + layer.sheet_acceptors_cm2,
+            ]
+        });
+        let planes = self.planes.iter();
+        let planes = planes.map(|plane| [plane.donors_cm2, plane.acceptors_cm2]);
+        layers
+            .chain(planes)
+            .fold([0.0; 2], |sum, own| [sum[0] + own[0], sum[1] + own[1]])
     }
 
     /// The heights of all faces in nm, from 0 at the bottom: one more than there are layers.
@@ -591,39 +648,70 @@ impl Stack {
         }
     }
 
-    /// Appends the layers of a sequence, bottom first.
-    fn lay_out(&mut self, sequence: &[Item], entries: &[LayerEntry], widths_nm: &[f64]) {
+    /// Appends the layers and planes of a structure, bottom first.
+    fn lay_out(&mut self, structure: &Structure, widths_nm: &[f64]) {
         let mut order = Vec::new();
-        unroll(sequence, &mut order);
-        let mut copies = vec![0_usize; entries.len()];
-        for index in &order {
-            copies[*index] += 1;
+        unroll(&structure.sequence, &mut order);
+        let mut copies: HashMap<Step, usize> = HashMap::new();
+        for step in &order {
+            *copies.entry(*step).or_default() += 1;
         }
-        let mut seen = vec![0_usize; entries.len()];
-        for index in order {
-            let entry = &entries[index];
-            seen[index] += 1;
-            let label = match copies[index] {
-                1 => entry.label.clone(),
-                _ => format!("{} [{}]", entry.label, seen[index]),
+        let mut seen: HashMap<Step, usize> = HashMap::new();
+        for step in order {
+            let number = seen.entry(step).or_default();
+            *number += 1;
+            let label = |own: &str| match copies.get(&step) {
+                None | Some(1) => own.to_owned(),
+                _ => format!("{own} [{number}]"),
             };
-            self.layers.push(Layer {
-                label,
-                entry: index,
-                width_nm: widths_nm[index],
-                donors_cm3: entry.donors_cm3,
-                acceptors_cm3: entry.acceptors_cm3,
-            });
+            match step {
+                Step::Layer(index) => {
+                    let entry = &structure.entries[index];
+                    self.layers.push(Layer {
+                        label: label(&entry.label),
+                        entry: index,
+                        width_nm: widths_nm[index],
+                        donors_cm3: entry.donors_cm3,
+                        acceptors_cm3: entry.acceptors_cm3,
+                        sheet_donors_cm2: entry.sheet_donors_cm2,
+                        sheet_acceptors_cm2: entry.sheet_acceptors_cm2,
+                    });
+                }
+                Step::Plane(index) => {
+                    let entry = &structure.planes[index];
+                    self.planes.push(Plane {
+                        label: label(&entry.label),
+                        layer: self.layers.len(),
+                        fraction: 0.0,
+                        donors_cm2: entry.donors_cm2,
+                        acceptors_cm2: entry.acceptors_cm2,
+                    });
+                }
+            }
+        }
+        // What lies on top of all layers lies at the last one's upper face.
+        for plane in &mut self.planes {
+            if plane.layer == self.layers.len() {
+                plane.layer = plane.layer.saturating_sub(1);
+                plane.fraction = 1.0;
+            }
         }
     }
 }
 
-/// The indices of the entries in the order of growth. The nesting is bounded by that of the text, and the number of
-/// layers was checked.
-fn unroll(sequence: &[Item], order: &mut Vec<usize>) {
+/// A layer or a plane, by its index in the structure.
+#[derive(Clone, Copy, PartialEq, Eq, Hash)]
+enum Step {
+    Layer(usize),
+    Plane(usize),
+}
+
+/// The steps in the order of growth. The nesting is bounded by that of the text, and the number of layers was checked.
+fn unroll(sequence: &[Item], order: &mut Vec<Step>) {
     for item in sequence {
         match item {
-            Item::Layer(entry) => order.push(*entry),
+            Item::Layer(entry) => order.push(Step::Layer(*entry)),
+            Item::Plane(entry) => order.push(Step::Plane(*entry)),
             Item::Repeat { count, items } => {
                 let start = order.len();
                 unroll(items, order);

@@ -1,6 +1,7 @@
 //! What a structure file says of a sweep, checked: one number of the stack that goes through a range, and what is to be
 //! shown on the way.
 
+use super::charge::Charge;
 use super::file::{Level, Structure, Varied};
 use super::stack::{Stack, no_monolayer};
 use crate::diagnostics::Diagnostic;
@@ -87,10 +88,10 @@ pub(super) fn unfitting(structure: &Structure, stack: &Stack, found: &mut Vec<Di
                 found.push(no_monolayer(layer, &sweep.span));
             }
         }
-        // To be taken out once charge is solved for.
-        Swept::Doping { .. } => found.push(
-            Diagnostic::warning("the levels do not depend on doping, because band bending by charge is not included")
-                .at(sweep.span.clone()),
+        Swept::Doping { .. } if structure.charge == Charge::Flat => found.push(
+            Diagnostic::warning("the levels do not depend on doping, because the bands stay flat")
+                .at(sweep.span.clone())
+                .hint("`charge: {fermi_level: neutral}` bends them"),
         ),
         _ => {}
     }

@@ -33,6 +33,8 @@ pub enum Cause {
     },
     /// The length over which interfaces are graded, in nm.
     Grading,
+    /// All dopants, as a part.
+    Doping,
     /// The field, in V/nm.
     Field,
     /// The temperature, in K. Widths, fractions and doping stay.
@@ -84,6 +86,11 @@ impl Design {
     /// The stack as designed, graded interfaces as layers of their own.
     pub fn stack(&self) -> &Stack {
         &self.stack
+    }
+
+    /// Takes the potential over that the design's own stack, solved, carries.
+    pub fn take_potential(&mut self, solved: &Stack) {
+        self.stack.potential = solved.potential.clone();
     }
 
     /// The length over which interfaces are graded, if they are.
@@ -179,7 +186,7 @@ impl Design {
                     .fold(1.0, f64::min)
             };
         match cause {
-            Cause::Rate | Cause::Flux(_) => 1.0,
+            Cause::Rate | Cause::Flux(_) | Cause::Doping => 1.0,
             Cause::Layer(layer) => self.widths_nm[*layer],
             Cause::Entry(entry) => self.stack.entry_width_nm(*entry).unwrap_or(f64::INFINITY),
             Cause::Fraction {
@@ -217,6 +224,7 @@ impl Design {
         let mut other_materials = false;
         wafer.field_v_per_nm = self.stack.field_v_per_nm;
         wafer.temperature_k = self.stack.temperature_k;
+        let mut doping = 1.0;
         for (cause, &amount) in causes.iter().zip(amounts) {
             match cause {
                 Cause::Rate => rate += amount,
@@ -237,6 +245,7 @@ impl Design {
                 Cause::Fraction { .. } | Cause::Alloy { .. } => other_materials = true,
                 // The energies are even in the length, so a draw below zero stands for its size.
                 Cause::Grading => grading_nm = grading_nm.map(|length| (length + amount).abs()),
+                Cause::Doping => doping += amount,
                 Cause::Field => wafer.field_v_per_nm += amount,
                 Cause::Temperature => {
                     wafer.temperature_k = (wafer.temperature_k + amount).max(0.0);
@@ -247,6 +256,7 @@ impl Design {
         if rate <= 0.0 || fluxes.iter().any(|flux| *flux <= 0.0) {
             return Err(NotGrown);
         }
+        self.dope(wafer, doping.max(0.0));
         let mut entry_rates = vec![1.0; self.file_contents().count()];
         if other_materials {
             wafer.substrate_nm = match &wafer.substrate {
@@ -264,6 +274,20 @@ impl Design {
         self.set_widths(wafer, grading_nm, |layer| {
             self.widths_nm[layer] * rate * entry_rates[self.entries[layer]] + added_nm[layer]
         })
+    }
+
+    /// Gives a wafer so many times the design's dopants.
+    fn dope(&self, wafer: &mut Stack, part: f64) {
+        for (layer, designed) in wafer.layers.iter_mut().zip(&self.stack.layers) {
+            layer.donors_cm3 = part * designed.donors_cm3;
+            layer.acceptors_cm3 = part * designed.acceptors_cm3;
+            layer.sheet_donors_cm2 = part * designed.sheet_donors_cm2;
+            layer.sheet_acceptors_cm2 = part * designed.sheet_acceptors_cm2;
+        }
+        for (plane, designed) in wafer.planes.iter_mut().zip(&self.stack.planes) {
+            plane.donors_cm2 = part * designed.donors_cm2;
+            plane.acceptors_cm2 = part * designed.acceptors_cm2;
+        }
     }
 
     /// The contents of the file's entries, without the interfaces.
@@ -297,8 +321,19 @@ impl Design {
                 width_nm: 0.0,
                 donors_cm3: 0.0,
                 acceptors_cm3: 0.0,
+                sheet_donors_cm2: 0.0,
+                sheet_acceptors_cm2: 0.0,
             });
         }
+        // Planes at a face come to lie in the middle of its interface; those at an end stay there.
+        for plane in &mut self.stack.planes {
+            (plane.layer, plane.fraction) = match plane.layer {
+                layer if plane.fraction > 0.0 => (2 * layer, plane.fraction),
+                0 => (0, 0.0),
+                layer => (2 * layer - 1, 0.5),
+            };
+        }
+        self.stack.potential = None;
     }
 
     /// Makes the interfaces of what lies below and above them.

@@ -24,6 +24,8 @@ pub struct Audit {
     pub counted: usize,
 }
 
+/// Velocity elements below this part of the largest possible are nothing but the tails of states that lie apart.
+const APART: f64 = 1e-8;
 /// A deviation above this is reported as a fault.
 pub const FAULT: f64 = 1e-5;
 
@@ -136,15 +138,18 @@ fn velocity_deviation(subbands: &Subbands, envelopes: &[Envelope], i: usize, j: 
     let Subbands { pencil, pairs, .. } = subbands;
     let count = pencil.mesh.order() + 1;
     let (e_i, e_j) = (pairs[i].value, pairs[j].value);
-    let mut size = 0.0;
+    let (mut size, mut most) = (0.0, 0.0);
     let velocity = integrate(&pencil.mesh, |e, q| {
         let (k, at) = (e * count + q, &pencil.at(e)[q]);
         let forward = envelopes[i].values[k] * at.a(e_j) * envelopes[j].slopes[k];
         let backward = envelopes[i].slopes[k] * at.a(e_i) * envelopes[j].values[k];
         let weight = 0.5 * pencil.mesh.elements[e].length * pencil.mesh.reference.weights[q];
         size += weight * (forward.abs() + backward.abs());
+        most += weight * (at.a(e_j) * envelopes[j].slopes[k]).powi(2);
         forward - backward
     });
+    // Of states in places far apart only rounding is left: it is set against what states in one place could have.
+    let size = size.max(APART * most.sqrt());
     (velocity - (e_j - e_i) * moment(pencil, &pairs[i], &pairs[j])).abs() / size
 }
 

@@ -78,6 +78,17 @@ impl Bands {
         Ok(Bands(solved.collect::<Result<_, _>>()?))
     }
 
+    /// The same with no more than so many levels of each band that was solved on its own.
+    pub fn truncated(mut self, counts: &[usize]) -> Bands {
+        for ((_, solved), count) in self.0.iter_mut().zip(counts) {
+            if let Solved::Alone(subbands) = solved {
+                subbands.pairs.truncate(*count);
+                subbands.errors_ev.truncate(*count);
+            }
+        }
+        self
+    }
+
     /// Number of bands.
     pub fn count(&self) -> usize {
         self.0.len()

@@ -93,6 +93,11 @@ pub fn solve(operator: &BandOperator, count: usize, accuracy: Accuracy) -> Subba
     }
 }
 
+/// How many elements each layer gets at first for a number of states.
+pub fn pieces(operator: &BandOperator, count: usize) -> Vec<usize> {
+    resolution::pieces(operator, count).1
+}
+
 /// Solves on a given mesh, with the errors estimated on a higher order.
 pub fn on_mesh(operator: &BandOperator, mesh: Mesh, count: usize) -> Subbands {
     let pencil = pencil_on(operator, mesh);

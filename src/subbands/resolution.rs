@@ -21,7 +21,7 @@ pub fn pieces(operator: &BandOperator, count: usize) -> (Vec<f64>, Vec<usize>) {
     let sample = super::pencil_on(operator, coarse);
     let floor_ev = sample.floor();
     let top_ev = sample.weyl_estimate(count as f64 + 1.0);
-    let pieces = lengths
+    let mut pieces = lengths
         .iter()
         .enumerate()
         .map(|(layer, length)| {
@@ -32,6 +32,12 @@ pub fn pieces(operator: &BandOperator, count: usize) -> (Vec<f64>, Vec<usize>) {
             });
             ((steepest.sqrt() * length / MAX_PHASE).ceil() as usize).clamp(1, MAX_PIECES)
         })
-        .collect();
+        .collect::<Vec<usize>>();
+    for plane in &operator.stack().planes {
+        // A plane inside of a layer lies on a border of elements: in its middle.
+        if plane.fraction > 0.0 && plane.fraction < 1.0 {
+            pieces[plane.layer] += pieces[plane.layer] % 2;
+        }
+    }
     (lengths, pieces)
 }

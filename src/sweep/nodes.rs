@@ -71,7 +71,7 @@ pub struct Along<'s> {
 impl Along<'_> {
     pub fn node(&self, part: f64, bands: &[(Band, usize)]) -> Result<Node, NotSolved> {
         let stack = self.axis.stack(self.stack, self.axis.value(part))?;
-        let found = solved(&stack, bands, self.accuracy)?;
+        let found = solved(&stack, &self.structure.charge, bands, self.accuracy)?;
         let count = 0..found.count();
         let envelopes = count.clone().map(|band| {
             let mut all = found.layer_envelopes(band, &stack);

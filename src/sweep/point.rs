@@ -105,7 +105,12 @@ fn found(
     part: f64,
 ) -> Result<Found, NotSolved> {
     let stack = along.axis.stack(along.stack, along.axis.value(part))?;
-    let bands = solved(&stack, &shown.bands, along.accuracy)?;
+    let bands = solved(
+        &stack,
+        &along.structure.charge,
+        &shown.bands,
+        along.accuracy,
+    )?;
     let names: Vec<Vec<usize>> = shown
         .bands
         .iter()

@@ -1,8 +1,9 @@
 //! The one place where a sweep solves a stack.
 
+use crate::charge::{self, ChargeError};
 use crate::materials::MaterialError;
 use crate::models::{Band, Unsuitable};
-use crate::structure::Stack;
+use crate::structure::{Charge, Stack};
 use crate::subbands::multiband::Band as Side;
 use crate::subbands::{Accuracy, Bands, Place, Solution};
 
@@ -15,16 +16,34 @@ pub enum NotSolved {
     TooThick,
     #[error("the material of layer {} {reason}", .layer + 1)]
     Unsuitable { layer: usize, reason: Unsuitable },
+    #[error(transparent)]
+    Charge(ChargeError),
+    #[error(
+        "charge and potential did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV"
+    )]
+    Unsettled { residual_ev: f64 },
 }
 
-/// Solves each band for a number of levels.
+/// Solves each band for a number of levels, bent by charge where the file says so.
 pub fn solved(
     stack: &Stack,
+    charge: &Charge,
     bands: &[(Band, usize)],
     accuracy: Accuracy,
 ) -> Result<Bands, NotSolved> {
-    Bands::solve(stack, bands, accuracy)
-        .map_err(|(layer, reason)| NotSolved::Unsuitable { layer, reason })
+    let solution = charge::solve(stack, charge, bands, accuracy).map_err(|error| match error {
+        ChargeError::Unsuitable { layer, reason } => NotSolved::Unsuitable { layer, reason },
+        other => NotSolved::Charge(other),
+    })?;
+    if let Some(found) = &solution.equilibrium
+        && !found.is_settled()
+    {
+        let residual_ev = found.residual_ev;
+        return Err(NotSolved::Unsettled { residual_ev });
+    }
+    // More may have been solved because they are filled.
+    let counts: Vec<usize> = bands.iter().map(|(_, count)| *count).collect();
+    Ok(solution.bands.truncated(&counts))
 }
 
 /// The levels of a band counted away from the gap, ascending, in eV.

@@ -36,7 +36,7 @@ const TEMPERATURE_STEP_K: f64 = 0.25;
 
 fn step(design: &Design, cause: &Cause) -> f64 {
     match cause {
-        Cause::Rate | Cause::Flux(_) => PART_STEP,
+        Cause::Rate | Cause::Flux(_) | Cause::Doping => PART_STEP,
         Cause::Layer(_) | Cause::Entry(_) | Cause::Grading => PART_STEP * design.room(cause),
         // A quarter of the room keeps both steps inside.
         Cause::Fraction { .. } | Cause::Alloy { .. } => FRACTION_STEP.min(design.room(cause) / 4.0),
@@ -45,29 +45,40 @@ fn step(design: &Design, cause: &Cause) -> f64 {
     }
 }
 
-/// The slope of each solved level of a band in eV per unit of the cause (a part, nm, a fraction, V/nm or K).
-///
-/// `None` when the design has no room for the cause: a fraction that is zero, interfaces that are abrupt.
-pub fn level_slopes(design: &Design, nearby: &Nearby, cause: &Cause) -> Option<Vec<f64>> {
+/// Amounts of a cause, and the weights with which what is found there adds up to a slope. `None` when the design has no
+/// room for the cause.
+pub fn offsets(design: &Design, cause: &Cause) -> Option<Vec<(f64, f64)>> {
     let step = step(design, cause);
     if step.is_nan() || step <= 0.0 {
         return None;
     }
     let cold = *cause == Cause::Temperature && design.stack().temperature_k() < 2.0 * step;
     let stencil = if cold { FORWARD } else { CENTRAL };
+    let scaled = stencil.iter();
+    Some(
+        scaled
+            .map(|(offset, weight)| (offset * step, weight / step))
+            .collect(),
+    )
+}
+
+/// The slope of each solved level of a band in eV per unit of the cause (a part, nm, a fraction, V/nm or K).
+///
+/// `None` when the design has no room for the cause: a fraction that is zero, interfaces that are abrupt.
+pub fn level_slopes(design: &Design, nearby: &Nearby, cause: &Cause) -> Option<Vec<f64>> {
+    let offsets = offsets(design, cause)?;
     let solved = nearby.solved();
     let mut change = Change {
         elements: vec![(0.0, 0.0); solved.pencil.mesh.elements.len()],
         coefficients: solved.pencil.coefficients.iter().map(unchanging).collect(),
     };
     let mut wafer = design.stack().clone();
-    for (offset, weight) in stencil {
+    for (offset, weight) in offsets {
         design
-            .grow(&mut wafer, std::slice::from_ref(cause), &[offset * step])
+            .grow(&mut wafer, std::slice::from_ref(cause), &[offset])
             .ok()?;
         let operator = BandOperator::new(&wafer, solved.band).ok()?;
         let pencil = nearby.pencil(&operator);
-        let weight = weight / step;
         for ((start, length), element) in change.elements.iter_mut().zip(&pencil.mesh.elements) {
             *start += weight * element.start;
             *length += weight * element.length;

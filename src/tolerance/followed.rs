@@ -1,8 +1,8 @@
 //! The levels whose distances are followed from wafer to wafer, in all bands that are solved.
 
-use super::derivative::level_slopes;
+use super::charged::{Slopes, slopes};
 use crate::models::Band;
-use crate::structure::{BandName, Cause, Design, Level, Structure, Window};
+use crate::structure::{BandName, Cause, Charge, Design, Level, Structure, Window};
 use crate::subbands::{Bands, Nearby, Place};
 
 /// Named levels in the bands of a solved design.
@@ -37,11 +37,9 @@ impl<'b> Followed<'b> {
         &self.nearby
     }
 
-    /// The slope of each solved level, band by band, in eV per unit of the cause; `None` when the design has no room for
-    /// it.
-    pub fn band_slopes(&self, design: &Design, cause: &Cause) -> Option<Vec<Vec<f64>>> {
-        let slopes = |nearby| level_slopes(design, nearby, cause);
-        self.nearby.iter().map(slopes).collect()
+    /// The slope of each solved level, band by band; `None` when the design has no room for the cause.
+    pub fn band_slopes(&self, charge: &Charge, design: &Design, cause: &Cause) -> Option<Slopes> {
+        slopes(charge, design, &self.nearby, cause)
     }
 
     /// Of numbers for each solved level those of the named ones.
@@ -51,8 +49,8 @@ impl<'b> Followed<'b> {
     }
 
     /// The slope of each named level.
-    pub fn slopes(&self, design: &Design, cause: &Cause) -> Option<Vec<f64>> {
-        self.named(&self.band_slopes(design, cause)?)
+    pub fn slopes(&self, charge: &Charge, design: &Design, cause: &Cause) -> Option<Vec<f64>> {
+        self.named(&self.band_slopes(charge, design, cause)?.whole)
     }
 
     /// Where the named levels are on a wafer whose bands have these energies, those nearest the edge first. `None` when

@@ -1,6 +1,7 @@
 //! Tolerances: how far each transition moves with everything that a grower and a user cannot hold exactly, and what share
 //! of wafers will do.
 
+mod charged;
 mod derivative;
 mod followed;
 mod radial;
@@ -15,8 +16,9 @@ pub use sampling::{Distributed, Sampled, Source, Watch, WindowYield, sample, sou
 pub use sensitivities::{Sensitivity, sensitivities};
 pub use statistics::{Histogram, Share, Statistics, share};
 
+use crate::charge::{self, ChargeError};
 use crate::models::{Band, Unsuitable};
-use crate::structure::{Design, Level, Stack, Structure};
+use crate::structure::{Charge, Design, Level, Stack, Structure};
 use crate::subbands::{Accuracy, Bands};
 
 /// Everything about a structure's tolerances.
@@ -54,16 +56,47 @@ pub enum ToleranceError {
     NoLayer,
     #[error("a window names {wanted}, but the stack is too small a box for so many levels")]
     NoLevel { wanted: Level },
+    #[error(transparent)]
+    Charge(ChargeError),
+    #[error(
+        "charge and potential of a wafer did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV"
+    )]
+    Unsettled { residual_ev: f64 },
 }
 
 impl ToleranceError {
-    /// A layer of the design that does not suit, when all layers of the file do.
-    fn interface(design: &Design, layer: usize, reason: Unsuitable) -> Self {
-        ToleranceError::Interface {
-            interface: design.stack().layers[layer].label.clone(),
-            reason,
+    /// What is wrong with a design, when all layers of the file suit.
+    fn of_design(design: &Design, error: ToleranceError) -> Self {
+        match error {
+            ToleranceError::Unsuitable { layer, reason } => ToleranceError::Interface {
+                interface: design.stack().layers[layer].label.clone(),
+                reason,
+            },
+            other => other,
         }
     }
+}
+
+/// A stack with the potential of its charge, and so many levels of its bands.
+fn solved(
+    charge: &Charge,
+    stack: &Stack,
+    asked: &[(Band, usize)],
+    accuracy: Accuracy,
+) -> Result<(Stack, Bands), ToleranceError> {
+    let solution = charge::solve(stack, charge, asked, accuracy).map_err(|error| match error {
+        ChargeError::Unsuitable { layer, reason } => ToleranceError::Unsuitable { layer, reason },
+        other => ToleranceError::Charge(other),
+    })?;
+    if let Some(found) = &solution.equilibrium
+        && !found.is_settled()
+    {
+        let residual_ev = found.residual_ev;
+        return Err(ToleranceError::Unsettled { residual_ev });
+    }
+    // More may have been solved because they are filled.
+    let counts: Vec<usize> = asked.iter().map(|(_, count)| *count).collect();
+    Ok((solution.stack, solution.bands.truncated(&counts)))
 }
 
 /// The mesh of sampled wafers is this exact, in eV: far less than any spread that can be grown.
@@ -85,18 +118,26 @@ pub fn tolerance(
     let stated = structure.tolerance.as_ref();
     let windows = stated.map_or(&[][..], |tolerance| &tolerance.windows);
     let named = followed::named_by(windows);
-    let asked = Band::holding(structure, &named);
-    let abrupt = Bands::solve(stack, &asked, accuracy)
-        .map_err(|(layer, reason)| ToleranceError::Unsuitable { layer, reason })?;
+    let mut asked = Band::holding(structure, &named);
+    asked.retain(|(band, _)| band.coupled().is_none());
+    let charge = &structure.charge;
+    let (bent, abrupt) = solved(charge, stack, &asked, accuracy)?;
 
     let grading_nm = stated
         .and_then(|tolerance| tolerance.grading.as_ref())
         .map(|grading| grading.length_nm);
-    let design = Design::new(stack, grading_nm).map_err(|_| ToleranceError::NoLayer)?;
-    let unsuitable = |(layer, reason)| ToleranceError::interface(&design, layer, reason);
+    let mut design = Design::new(&bent, grading_nm).map_err(|_| ToleranceError::NoLayer)?;
+    let of_design = |design: &Design, asked: &[(Band, usize)], accuracy| {
+        solved(charge, design.stack(), asked, accuracy)
+            .map_err(|error| ToleranceError::of_design(design, error))
+    };
     let bands = match grading_nm {
         None => abrupt.clone(),
-        Some(_) => Bands::solve(design.stack(), &asked, accuracy).map_err(unsuitable)?,
+        Some(_) => {
+            let (bent, bands) = of_design(&design, &asked, accuracy)?;
+            design.take_potential(&bent);
+            bands
+        }
     };
     let levels = followed::names(structure, windows, &bands);
     if let Some(wanted) = named.into_iter().find(|level| !levels.contains(level)) {
@@ -112,7 +153,7 @@ pub fn tolerance(
             let coarse = Accuracy {
                 tolerance_ev: accuracy.tolerance_ev.max(SAMPLING_TOLERANCE_EV),
             };
-            let bands = Bands::solve(design.stack(), &fewest, coarse).map_err(unsuitable)?;
+            let (_, bands) = of_design(&design, &fewest, coarse)?;
             let followed = Followed::new(&bands, levels.clone());
             let sources = sources(structure, stack, tolerance, &design, &followed);
             let count = (samples.unwrap_or(tolerance.samples), tolerance.seed);
@@ -121,7 +162,7 @@ pub fn tolerance(
         }
     };
     let rings = match stated.and_then(|tolerance| tolerance.radial) {
-        Some(radial) => radial::rings(&design, &fewest, &levels, radial, accuracy)?,
+        Some(radial) => radial::rings(charge, &design, &fewest, &levels, radial, accuracy)?,
         None => Vec::new(),
     };
     Ok(Outcome {

@@ -1,10 +1,10 @@
 //! The levels from the centre of a wafer to its edge.
 
-use super::ToleranceError;
 use super::followed;
+use super::{ToleranceError, solved};
 use crate::models::Band;
-use crate::structure::{Cause, Design, Level, Radial};
-use crate::subbands::{Accuracy, Bands};
+use crate::structure::{Cause, Charge, Design, Level, Radial};
+use crate::subbands::Accuracy;
 
 /// Rings from the centre to the stated radius, both included.
 const RINGS: usize = 6;
@@ -22,6 +22,7 @@ pub struct Ring {
 /// All layers thin out alike, parabolically in the radius; compositions stay, as does the length of interfaces. The
 /// file's widths are those at the centre.
 pub fn rings(
+    charge: &Charge,
     design: &Design,
     asked: &[(Band, usize)],
     names: &[Level],
@@ -36,8 +37,8 @@ pub fn rings(
         design
             .grow(&mut wafer, &[Cause::Rate], &[-drop])
             .map_err(|_| ToleranceError::NoLayer)?;
-        let bands = Bands::solve(&wafer, asked, accuracy)
-            .map_err(|(layer, reason)| ToleranceError::interface(design, layer, reason))?;
+        let (_, bands) = solved(charge, &wafer, asked, accuracy)
+            .map_err(|error| ToleranceError::of_design(design, error))?;
         rings.push(Ring {
             radius_mm: part * radial.radius_mm,
             drop,

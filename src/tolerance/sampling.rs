@@ -1,5 +1,6 @@
 //! The sampled yield: many wafers, each grown off by its own draws and solved in full, against what the slopes foretell.
 
+use super::charged::Slopes;
 use super::followed::Followed;
 use super::statistics::{Histogram, Share, Statistics, histogram, share, statistics};
 use crate::constants::HC_EV_UM;
@@ -31,8 +32,8 @@ pub struct Source {
     pub deviation: f64,
     /// The slope of each followed level, eV per unit of the cause.
     pub level_slopes_ev: Vec<f64>,
-    /// The slope of each solved level, band by band.
-    band_slopes_ev: Vec<Vec<f64>>,
+    /// The slopes of each solved level.
+    slopes: Slopes,
 }
 
 /// What the sampled wafers say.
@@ -135,6 +136,9 @@ pub fn sources(
             grading.spread_nm,
         );
     }
+    if let Some(part) = tolerance.doping {
+        add("doping".to_owned(), Cause::Doping, part);
+    }
     if let Some(deviation) = tolerance.field_v_per_nm {
         add("field".to_owned(), Cause::Field, deviation);
     }
@@ -145,10 +149,10 @@ pub fn sources(
         .into_par_iter()
         .filter(|(_, _, deviation)| *deviation > 0.0)
         .filter_map(|(name, cause, deviation)| {
-            let band_slopes_ev = followed.band_slopes(design, &cause)?;
+            let slopes = followed.band_slopes(&structure.charge, design, &cause)?;
             Some(Source {
-                level_slopes_ev: followed.named(&band_slopes_ev)?,
-                band_slopes_ev,
+                level_slopes_ev: followed.named(&slopes.whole)?,
+                slopes,
                 name,
                 cause,
                 deviation,
@@ -261,12 +265,19 @@ fn wafer(
         let pencil = nearby.pencil(&operator);
         let pairs = &nearby.solved().pairs;
         let mut guesses_ev: Vec<f64> = pairs.iter().map(|pair| pair.value).collect();
+        let mut answers_ev = vec![0.0; guesses_ev.len()];
         for (source, amount) in sources.iter().zip(amounts) {
-            for (guess, slope) in guesses_ev.iter_mut().zip(&source.band_slopes_ev[band]) {
-                *guess += amount * sign * slope;
+            let (whole, of_charge) = (&source.slopes.whole[band], &source.slopes.of_charge[band]);
+            for (state, guess) in guesses_ev.iter_mut().enumerate() {
+                *guess += amount * sign * (whole[state] - of_charge[state]);
+                answers_ev[state] += amount * sign * of_charge[state];
             }
         }
-        let values = nearby.energies_ev(&pencil, &guesses_ev, TOLERANCE_EV);
+        // The layers take their potential along; to first order the charge's answer adds its slopes.
+        let mut values = nearby.energies_ev(&pencil, &guesses_ev, TOLERANCE_EV);
+        for (value, answer_ev) in values.iter_mut().zip(&answers_ev) {
+            *value += answer_ev;
+        }
         let edge_ev = lower_outer_edge_ev(&pencil);
         held.push(values.partition_point(|value| *value <= edge_ev));
         energies_ev.push(values.into_iter().map(|value| sign * value).collect());

@@ -1,7 +1,7 @@
 //! How far each level moves per monolayer of each layer, per percent of rate and flux, and so on.
 
 use super::followed::Followed;
-use crate::structure::{Cause, Design, Stack, Structure};
+use crate::structure::{Cause, Charge, Design, Stack, Structure};
 use rayon::prelude::*;
 
 /// The movement of all levels with one number of the design.
@@ -52,12 +52,15 @@ pub fn sensitivities(
         let name = "length of interfaces".to_owned();
         asked.push((name, "0.1 nm", Cause::Grading, 0.1));
     }
+    if structure.charge != Charge::Flat {
+        asked.push(("doping".to_owned(), "1 %", Cause::Doping, 0.01));
+    }
     asked.push(("field".to_owned(), "1 kV/cm", Cause::Field, 1e-4));
     asked.push(("temperature".to_owned(), "1 K", Cause::Temperature, 1.0));
     asked
         .into_par_iter()
         .filter_map(|(name, step, cause, amount)| {
-            let slopes = followed.slopes(design, &cause)?;
+            let slopes = followed.slopes(&structure.charge, design, &cause)?;
             Some(Sensitivity {
                 name,
                 step,

@@ -3,8 +3,9 @@
 use super::aim::{Aim, Goal};
 use super::band_slopes::BandSlopes;
 use super::keep::Keep;
-use crate::models::{Band, Unsuitable};
-use crate::structure::{BandName, Knob, Level, Stack};
+use crate::charge::{self, ChargeError, Equilibrium};
+use crate::models::Band;
+use crate::structure::{BandName, Charge, Knob, Level, Stack};
 use crate::subbands::{Accuracy, Bands, Place};
 use nalgebra::{DMatrix, DVector};
 
@@ -40,6 +41,8 @@ pub struct Task {
     pub stack: Stack,
     /// The bands to solve, the conduction band first, with their numbers of states.
     pub bands: Vec<(Band, usize)>,
+    /// Whether charge bends the bands of every design.
+    pub charge: Charge,
     pub variables: Vec<Variable>,
     pub aims: Vec<Aim>,
     pub keeps: Vec<Keep>,
@@ -51,6 +54,8 @@ pub struct Task {
 pub struct Design {
     pub stack: Stack,
     pub bands: Bands,
+    /// Of the charge, where it bends the bands.
+    pub equilibrium: Option<Equilibrium>,
     /// The pair of states that each aim speaks of here.
     pub states: Vec<(Place, Place)>,
     /// Energy in eV or dipole in nm of each aim.
@@ -82,6 +87,9 @@ fn all_envelopes(bands: &Bands, stack: &Stack) -> Characters {
         .collect()
 }
 
+/// Half the distance of central differences, as a part of a variable's range: the curvature left out and the potential's
+/// residual both stay below 1e-5 of a slope.
+const DIFFERENCE: f64 = 1e-3;
 /// States beyond the highest that an aim names, so that a followed state is still among the solved after crossings.
 const SPARE_STATES: usize = 3;
 
@@ -125,8 +133,12 @@ impl Task {
         &self,
         stack: Stack,
         characters: Option<&Characters>,
-    ) -> Result<Design, (usize, Unsuitable)> {
-        let bands = Bands::solve(&stack, &self.bands, self.accuracy)?;
+    ) -> Result<Design, ChargeError> {
+        let charge::Solution {
+            stack,
+            bands,
+            equilibrium,
+        } = charge::solve(&stack, &self.charge, &self.bands, self.accuracy)?;
         let own: Vec<Vec<Vec<f64>>> = match characters {
             Some(_) => all_envelopes(&bands, &stack),
             None => Vec::new(),
@@ -148,15 +160,7 @@ impl Task {
                 (place(aim.from), place(aim.to))
             })
             .collect();
-        let values: Vec<f64> = self
-            .aims
-            .iter()
-            .zip(&states)
-            .map(|(aim, &(from, to))| match aim.goal {
-                Goal::Energy { .. } => bands.energy_ev(to) - bands.energy_ev(from),
-                _ => bands.dipole_nm(from.band, from.state, to.state),
-            })
-            .collect();
+        let values = self.values(&bands, &states);
         let residuals = self
             .aims
             .iter()
@@ -170,6 +174,7 @@ impl Task {
         Ok(Design {
             stack,
             bands,
+            equilibrium,
             states,
             values,
             kept,
@@ -177,8 +182,54 @@ impl Task {
         })
     }
 
+    /// The aims' values for the states that they speak of.
+    fn values(&self, bands: &Bands, states: &[(Place, Place)]) -> Vec<f64> {
+        let pairs = self.aims.iter().zip(states);
+        pairs
+            .map(|(aim, &(from, to))| match aim.goal {
+                Goal::Energy { .. } => bands.energy_ev(to) - bands.energy_ev(from),
+                _ => bands.dipole_nm(from.band, from.state, to.state),
+            })
+            .collect()
+    }
+
+    /// The slopes of the aims' values where charge answers to the variables: central differences of full solves, each
+    /// from the design's own potential.
+    fn charged_slopes(&self, design: &Design) -> DMatrix<f64> {
+        let mut slopes = DMatrix::zeros(self.aims.len(), self.variables.len());
+        let exact = Accuracy::default();
+        for (column, variable) in self.variables.iter().enumerate() {
+            let Some(value) = variable.knob.value(&design.stack) else {
+                continue;
+            };
+            let step = DIFFERENCE * (variable.high - variable.low);
+            let ends =
+                [value - step, value + step].map(|end| end.clamp(variable.low, variable.high));
+            let [below, above] = ends.map(|end| {
+                let mut stack = design.stack.clone();
+                variable.knob.set(&mut stack, end);
+                let solution = charge::solve(&stack, &self.charge, &self.bands, exact).ok()?;
+                let mut all = self.bands.iter().enumerate();
+                let enough =
+                    all.all(|(band, (_, count))| solution.bands.level_count(band) >= *count);
+                enough.then(|| self.values(&solution.bands, &design.states))
+            });
+            if let (Some(below), Some(above)) = (below, above)
+                && ends[1] > ends[0]
+            {
+                for (row, (above, below)) in above.iter().zip(&below).enumerate() {
+                    slopes[(row, column)] = (above - below) / (ends[1] - ends[0]);
+                }
+            }
+        }
+        slopes
+    }
+
     /// The slopes of the aims' values: one row per aim, one column per variable, per inner unit of the variable.
     pub fn value_slopes(&self, design: &Design) -> DMatrix<f64> {
+        if self.charge != Charge::Flat {
+            return self.charged_slopes(design);
+        }
         let mut slopes = DMatrix::zeros(self.aims.len(), self.variables.len());
         let knobs: Vec<Knob> = self.variables.iter().map(|v| v.knob).collect();
         let mut bands: Vec<BandSlopes> = (0..design.bands.count())

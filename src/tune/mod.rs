@@ -18,10 +18,11 @@ pub use limits::Limit;
 pub use search::{Stage, Watch};
 pub use snap::SnapError;
 
+use crate::charge::ChargeError;
 use crate::constants::HC_EV_UM;
-use crate::models::{Band, Unsuitable};
+use crate::models::Band;
 use crate::structure::{
-    self, BandName, Follow, Knob, Level, Stack, Structure, Target, Varied, Within,
+    self, BandName, Charge, Follow, Knob, Level, Stack, Structure, Target, Varied, Within,
 };
 use crate::subbands::Accuracy;
 use search::Found;
@@ -64,8 +65,8 @@ pub struct Outcome {
 pub enum TuneError {
     #[error("the file has no `tune` block")]
     NothingToTune,
-    #[error("layer {} {reason}", .layer + 1)]
-    Unsuitable { layer: usize, reason: Unsuitable },
+    #[error(transparent)]
+    Charge(ChargeError),
     #[error(transparent)]
     Snap(#[from] SnapError),
     #[error("no design inside the bounds can be solved")]
@@ -119,12 +120,13 @@ fn within_bounds(
     let mut searched = counts(false);
     // Holes that no aim names need not be solved on the way.
     let electrons_only = |aim: &Aim| [aim.from, aim.to].iter().all(is_electron);
-    if aims.iter().all(electrons_only) {
+    if aims.iter().all(electrons_only) && structure.charge == Charge::Flat {
         searched.truncate(1);
     }
     let task = Task {
         stack: stack.clone(),
         bands: counts(true),
+        charge: structure.charge.clone(),
         variables,
         aims,
         keeps: keep::keeps(structure, stack),
@@ -137,8 +139,9 @@ fn within_bounds(
         bands: searched,
         ..task.clone()
     };
-    let unsuitable = |(layer, reason)| TuneError::Unsuitable { layer, reason };
-    let before = task.design(stack.clone(), None).map_err(unsuitable)?;
+    let before = task
+        .design(stack.clone(), None)
+        .map_err(TuneError::Charge)?;
     let by_character = task.aims.iter().any(|aim| aim.by_character);
     let characters = by_character.then(|| evaluate::characters(&before));
     let started_outside = task

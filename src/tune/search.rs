@@ -59,7 +59,7 @@ impl Descent<'_> {
         let design = self
             .task
             .design(self.task.stack_at(at), characters.as_ref());
-        design.map_err(|(layer, reason)| Error::msg(format!("layer {}: {reason}", layer + 1)))
+        design.map_err(|error| Error::msg(error.to_string()))
     }
 }
 

@@ -48,6 +48,8 @@ pub struct BandDiagram {
     meanings: Vec<Vec<Run>>,
     transitions: Vec<Drawn>,
     width_nm: f64,
+    /// Of each panel, on the scale of the table of levels.
+    zeros_ev: [f64; 2],
 }
 
 /// A transition between two states, each the number of its panel and its own there, the lower in energy first.
@@ -84,6 +86,7 @@ impl BandDiagram {
             sign: 1.0,
             edges: Vec::new(),
             states: Vec::new(),
+            fermi_ev: None,
         }];
         if with_holes {
             panels.push(Content {
@@ -153,7 +156,22 @@ impl BandDiagram {
             transitions: chosen.into_iter().filter_map(drawn).collect(),
             panels,
             width_nm: stack.total_width_nm(),
+            zeros_ev,
         }
+    }
+
+    /// With a line at the Fermi level, given on the scale of the table of levels.
+    pub fn with_fermi_level(mut self, fermi_ev: Option<f64>) -> BandDiagram {
+        let Some(fermi_ev) = fermi_ev else {
+            return self;
+        };
+        let above_ev = self.zeros_ev.map(|zero_ev| fermi_ev - zero_ev);
+        // It is drawn where the carriers are.
+        let electrons = self.panels.len() == 1 || above_ev[0].abs() <= above_ev[1].abs();
+        let panel = usize::from(!electrons);
+        self.panels[panel].fermi_ev = Some(above_ev[panel]);
+        self.caption += " Long dashes: Fermi level.";
+        self
     }
 
     /// The picture.
@@ -222,6 +240,7 @@ impl BandDiagram {
             panel.horizontal = horizontal;
             panel.vertical.range = panel.vertical.range.map(|y| y + top);
             panel.draw_edges(&mut page, self.layers.len());
+            panel.draw_fermi_level(&mut page);
             panel.draw_states(&mut page, [ladder_left, ladder_right]);
         }
         ladder.draw(&mut page, ladder_left, top, bottom);
@@ -322,7 +341,15 @@ impl BandDiagram {
                     wavelength(t.energy_ev)
                 )
             });
-        let list: Vec<String> = states.chain(transitions).collect();
+        let fermi = self.panels.iter().filter_map(|panel| {
+            let unit = panel.unit();
+            let energy = unit.factor * panel.fermi_ev?;
+            Some(format!(
+                "Fermi level at {energy:.*} {}",
+                unit.decimals, unit.name
+            ))
+        });
+        let list: Vec<String> = states.chain(transitions).chain(fermi).collect();
         format!(
             "Band {} and squared envelopes along the growth direction. {}.",
             if self.panels.len() > 1 {
@@ -541,6 +568,7 @@ fn entries(items: &[Item], list: &mut Vec<usize>) {
     for item in items {
         match item {
             Item::Layer(entry) => list.push(*entry),
+            Item::Plane(_) => {}
             Item::Repeat { items, .. } => entries(items, list),
         }
     }

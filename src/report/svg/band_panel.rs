@@ -24,6 +24,11 @@ const DOTTED: Stroke = Stroke {
     width_pt: 0.4,
     dash: "0.8 1.6",
 };
+const FERMI: Stroke = Stroke {
+    colour: INK,
+    width_pt: 0.5,
+    dash: "6 2.5",
+};
 /// Distance of the labels of levels.
 pub(super) const LABEL_STEP_PT: f64 = 1.25 * LABEL_PT;
 
@@ -36,6 +41,7 @@ pub(super) struct Content {
     pub edges: Vec<Vec<[f64; 2]>>,
     /// Those nearest the gap first.
     pub states: Vec<DrawnState>,
+    pub fermi_ev: Option<f64>,
 }
 
 #[derive(Clone, Debug)]
@@ -92,7 +98,9 @@ impl Content {
         let edges = self.edges.iter().flatten().map(|p| self.sign * p[1]);
         let levels = self.states.iter();
         let levels = levels.map(|state| self.sign * state.energy_ev + beyond_ev);
-        edges.chain(levels).fold([0.0, 1e-3], |[low, high], e| {
+        let fermi = self.fermi_ev.map(|ev| self.sign * ev);
+        let all = edges.chain(levels).chain(fermi);
+        all.fold([0.0, 1e-3], |[low, high], e| {
             [f64::min(low, e), f64::max(high, e)]
         })
     }
@@ -227,6 +235,16 @@ impl Panel<'_> {
                 };
                 page.polyline(other, stroke);
             }
+        });
+    }
+
+    pub fn draw_fermi_level(&self, page: &mut Page) {
+        let Some(fermi_ev) = self.content.fermi_ev else {
+            return;
+        };
+        let ([left, right], y) = (self.horizontal.range, self.y(fermi_ev));
+        page.group("fermi-level", |page| {
+            page.line([left, y], [right, y], FERMI)
         });
     }
 
