@@ -17,7 +17,7 @@ tolerance:
   rate: 0.7 %
   field: 1 kV/cm
   samples: 500
-  window: {from: conduction 1, to: conduction 2, wavelength: [8 µm, 9 µm]}
+  window: {from: conduction 1, to: conduction 2, wavelength: [7.47 µm, 9 µm]}
 ";
 
 fn texts(svg: &str) -> Vec<String> {
