@@ -17,7 +17,7 @@ tolerance:
   rate: 0.7 %
   field: 1 kV/cm
   samples: 500
-  window: {from: conduction 1, to: conduction 2, wavelength: [8 µm, 9 µm]}
+  window: {from: conduction 1, to: conduction 2, wavelength: [7.47 µm, 9 µm]}
 ";
 
 fn texts(svg: &str) -> Vec<String> {
@@ -30,8 +30,25 @@ fn texts(svg: &str) -> Vec<String> {
 
 #[test]
 fn bars_carry_the_shifts_and_the_histogram_the_share() {
+    bars_and_histogram(FILE, "conduction 1", "conduction 2");
+}
+
+/// The same across the gap, the window written from the electron to the hole.
+#[test]
+fn pictures_between_bands_show_their_numbers() {
+    let file = FILE.replace(
+        "substrate: GaAs\n",
+        "substrate: GaAs\nbands: {conduction: {model: energy-dependent, states: 2}, valence: {model: decoupled, states: 3}}\n",
+    );
+    let window = "window: {from: conduction 1, to: light-hole 1, wavelength: [767.5 nm, 769 nm]}";
+    let at = file.find("window: {").unwrap();
+    let file = format!("{}{window}\n", &file[..at]);
+    bars_and_histogram(&file, "light-hole 1", "conduction 1");
+}
+
+fn bars_and_histogram(file: &str, from: &str, to: &str) {
     let bench = Bench::new();
-    bench.write("well.yaml", FILE);
+    bench.write("well.yaml", file);
     let report = bench
         .run(&["tolerance", "well.yaml", "--format", "json"])
         .code(0)
@@ -49,7 +66,7 @@ fn bars_carry_the_shifts_and_the_histogram_the_share() {
     let bars = texts(&bench.read("bars.svg"));
     let drawn = list(&report, "sensitivities")
         .iter()
-        .filter(|row| row["from"] == "conduction 1" && row["to"] == "conduction 2");
+        .filter(|row| row["from"] == from && row["to"] == to);
     let mut count = 0;
     for row in drawn {
         count += 1;
@@ -72,6 +89,7 @@ fn bars_carry_the_shifts_and_the_histogram_the_share() {
         .code(0);
     let histogram = texts(&bench.read("yield.svg"));
     let share = 100.0 * number(&list(&report, "windows")[0], "share");
+    assert!((1.0..99.9).contains(&share), "{share}");
     let said = format!("{share:.1} % inside");
     assert!(
         histogram.iter().any(|text| text.contains(&said)),
