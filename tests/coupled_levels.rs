@@ -327,6 +327,35 @@ fn states(text: &str) -> [Vec<State>; 2] {
     [0, 1].map(|band| bands.states(band))
 }
 
+/// Where a gap is broken, by layers or by a field, states that bear the name of the other band are named; in a gap that is
+/// whole none is.
+#[test]
+fn inverted_states_are_named() {
+    let bench = Bench::new();
+    let warned = |head: &str, layers: &str| {
+        let bands = "bands: {valence: {model: eight-band, states: 3}}\n";
+        bench.write("stack.yaml", format!("{bands}{head}layers:\n{layers}"));
+        let ran = bench.run(&["levels", "stack.yaml"]).code(0);
+        ran.stderr.contains("mostly of holes: the gap is broken")
+    };
+    let barrier = "  - {material: AlSb, width: 8 nm}\n";
+    let beside = |width: f64| {
+        format!(
+            "{barrier}  - {{material: InAs, width: {width} nm}}\n  - {{material: GaSb, width: 8 nm}}\n{barrier}"
+        )
+    };
+    // Thin InAs lifts its electron above the holes of GaSb; thick InAs does not: superlattices become
+    // semimetals at some 8.5 nm (Chang and others, Appl. Phys. Lett. 35, 939 (1979), from memory).
+    assert!(!warned("substrate: GaSb\n", &beside(4.0)));
+    assert!(warned("substrate: GaSb\n", &beside(15.0)));
+    let wide = "  - {material: GaAs, width: 60 nm}\n";
+    assert!(!warned("field: 100 kV/cm\n", wide));
+    assert!(
+        warned("field: 400 kV/cm\n", wide),
+        "2.4 eV are more than the gap"
+    );
+}
+
 /// What the walls are said to shift a level by is what it moves when the outer layers are made wider.
 #[test]
 fn the_walls_shift_levels_as_said() {

@@ -149,9 +149,39 @@ impl Input {
     /// Doubts about the solutions of all bands, of each about the states that are listed.
     pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
         for (band, shown) in shown.iter().enumerate() {
-            self.doubt_states(bands.band(band), &bands.states(band), *shown);
+            let states = bands.states(band);
+            self.doubt_states(bands.band(band), &states, *shown);
+            self.doubt_names(bands.band(band), &states[..states.len().min(*shown)]);
         }
         self.audited(&bands.audit());
+    }
+
+    /// Says which of the listed states of coupled bands bear the name of the other band.
+    fn doubt_names(&self, band: Band, states: &[State]) {
+        let other = |state: &State| {
+            let of_conduction = state.shares.map(|shares| shares.conduction > 0.5);
+            of_conduction.is_some_and(|of_conduction| of_conduction != (band.sign() > 0.0))
+        };
+        let names: Vec<String> = (1..)
+            .zip(states)
+            .filter(|(_, state)| other(state))
+            .map(|(number, _)| format!("{} {number}", band.name().word()))
+            .collect();
+        if let [first, ..] = &names[..] {
+            let (which, verb) = match names.len() {
+                1 => (first.clone(), "is"),
+                _ => (names.join(", "), "are"),
+            };
+            let kind = if band.sign() > 0.0 {
+                "holes"
+            } else {
+                "electrons"
+            };
+            let words = format!(
+                "{which} {verb} mostly of {kind}: the gap is broken, by the layers or by the field, and levels are counted from it by their number"
+            );
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
     }
 
     /// Doubts about whether the layers stay coherent.
