@@ -173,7 +173,7 @@ fn benches(criterion: &mut Criterion) {
         found.iterations
     );
     for (k, level) in levels.iter().enumerate() {
-        let conduction = solution.bands.conduction();
+        let conduction = solution.bands.conduction().unwrap();
         let found = conduction.energy_ev(k) - conduction.energy_ev(0);
         // The grid of the reference is off by its step squared.
         assert!(

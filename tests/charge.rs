@@ -71,7 +71,7 @@ layers:
         );
         let potential = solution.stack.potential.as_ref().unwrap();
         let middle = potential.electron_ev(2, 0.5);
-        let conduction = solution.bands.conduction();
+        let conduction = solution.bands.conduction().unwrap();
         for (k, level) in levels.iter().enumerate() {
             let found = 1e3 * (conduction.energy_ev(k) - middle);
             println!("  {found:.4} {level}");
@@ -116,9 +116,9 @@ layers:
     let found = solution.equilibrium.unwrap();
     assert!(found.densities_cm2[0][1] == 0.0);
     assert!((found.densities_cm2[0][0] / 5e11 - 1.0).abs() < 1e-10);
-    let fermi_mev = 1e3 * (found.fermi_ev - solution.bands.conduction().energy_ev(0));
+    let fermi_mev = 1e3 * (found.fermi_ev - solution.bands.conduction().unwrap().energy_ev(0));
     assert!((fermi_mev - 17.86479).abs() < 1e-4, "{fermi_mev}");
-    let conduction = solution.bands.conduction();
+    let conduction = solution.bands.conduction().unwrap();
     let state = &conduction.states()[0];
     let mesh = &conduction.pencil.mesh;
     let potential = solution.stack.potential.as_ref().unwrap();
@@ -232,7 +232,7 @@ layers:
         ));
         let found = solution.equilibrium.as_ref().unwrap();
         assert!(found.is_settled());
-        let conduction = solution.bands.conduction();
+        let conduction = solution.bands.conduction().unwrap();
         let answer = depolarisation(&solution.stack, conduction, &found.densities_cm2[0]);
         let main = answer
             .lines
@@ -260,7 +260,7 @@ fn zero_temperature_is_a_limit() {
     let at = |kelvin: f64| {
         let text = HETEROJUNCTION.replace("SHEET", "5e11");
         let solution = solved(&text.replace("KELVIN", &kelvin.to_string()));
-        let first_ev = solution.bands.conduction().energy_ev(0);
+        let first_ev = solution.bands.conduction().unwrap().energy_ev(0);
         solution.equilibrium.unwrap().fermi_ev - first_ev
     };
     let (cold, warmer) = (at(0.0), at(0.1));
@@ -272,7 +272,7 @@ fn zero_temperature_is_a_limit() {
 fn few_electrons_follow_boltzmann() {
     let solution = solved(&DOPED_WELL.replace("SHEET", "1e7").replace("KELVIN", "300"));
     let found = solution.equilibrium.unwrap();
-    let conduction = solution.bands.conduction();
+    let conduction = solution.bands.conduction().unwrap();
     let gap_ev = conduction.energy_ev(1) - conduction.energy_ev(0);
     let states = conduction.states();
     let masses = states[1].in_plane_mass_m0 / states[0].in_plane_mass_m0;
@@ -408,7 +408,7 @@ fn every_doping_settles_at_every_temperature() {
                     found.electrons_cm2,
                     start.elapsed()
                 );
-                let mut faults = solution.bands.conduction().audit().faults();
+                let mut faults = solution.bands.conduction().unwrap().audit().faults();
                 if !found.is_settled() {
                     faults.push(format!("not settled: {:e} eV", found.residual_ev));
                 }
@@ -501,7 +501,7 @@ fn an_independent_program_agrees() {
     for case in cases {
         let solution = solved(&case.structure);
         let found = solution.equilibrium.unwrap();
-        let conduction = solution.bands.conduction();
+        let conduction = solution.bands.conduction().unwrap();
         let first_ev = conduction.energy_ev(0);
         let mut worst = 0.0_f64;
         let mut near = |what: &str, found: f64, exact: f64, tolerance: f64| {
@@ -573,7 +573,7 @@ tolerance: {{jitter: 0.05 nm, samples: 400}}
             Accuracy::default(),
         )
         .unwrap();
-        [0, 1, 2].map(|k| solution.bands.conduction().energy_ev(k))
+        [0, 1, 2].map(|k| solution.bands.conduction().unwrap().energy_ev(k))
     };
     // Five points: what curves is left out to the fourth order.
     let step = 0.05;
@@ -733,7 +733,7 @@ layers:
     );
     let found = solution.equilibrium.as_ref().unwrap();
     assert!(found.is_settled());
-    let faults = solution.bands.conduction().audit().faults();
+    let faults = solution.bands.conduction().unwrap().audit().faults();
     assert!(faults.is_empty(), "{faults:?}");
     // Inner wells see the same on either side; of the outer ones each side's plane has a half.
     let inner = &found.densities_cm2[0][..10];
