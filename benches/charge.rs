@@ -43,23 +43,18 @@ fn damped_mixing() -> (Vec<f64>, usize) {
     let inner = (WIDTH_NM / STEP_NM).round() as usize - 1;
     let link = HBAR2_OVER_2M0 / MASS_M0 / (STEP_NM * STEP_NM);
     let z = |k: usize| (k + 1) as f64 * STEP_NM;
+    // A node on a face belongs to both sides by half.
+    let inside = |z: f64, lower: f64, upper: f64| {
+        0.5 + 0.5
+            * ((z - lower) / (0.5 * STEP_NM))
+                .clamp(-1.0, 1.0)
+                .min(((upper - z) / (0.5 * STEP_NM)).clamp(-1.0, 1.0))
+    };
     let edges: Vec<f64> = (0..inner)
-        .map(|k| {
-            if z(k) > FACES_NM[2] && z(k) < FACES_NM[3] {
-                0.0
-            } else {
-                0.25
-            }
-        })
+        .map(|k| 0.25 - 0.25 * inside(z(k), FACES_NM[2], FACES_NM[3]))
         .collect();
     let dopants: Vec<f64> = (0..inner)
-        .map(|k| {
-            if z(k) > FACES_NM[0] && z(k) <= FACES_NM[1] {
-                SHEET_PER_NM2 / 10.0
-            } else {
-                0.0
-            }
-        })
+        .map(|k| SHEET_PER_NM2 / 10.0 * inside(z(k), FACES_NM[0], FACES_NM[1]))
         .collect();
     let states_per_ev = MASS_M0 / (2.0 * std::f64::consts::PI * HBAR2_OVER_2M0);
     let mut u = vec![0.0; inner];
