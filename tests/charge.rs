@@ -175,6 +175,7 @@ layers:
     let centre_nm: f64 = solution
         .bands
         .conduction()
+        .unwrap()
         .states()
         .iter()
         .zip(&found.densities_cm2[0])
@@ -200,7 +201,7 @@ fn a_hard_wall_well_absorbs_at_its_depolarised_energy() {
     ));
     let answer = depolarisation(
         &solution.stack,
-        solution.bands.conduction(),
+        solution.bands.conduction().unwrap(),
         &[1e12, 0.0, 0.0, 0.0],
     );
     let first = answer.transitions[0];
