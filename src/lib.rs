@@ -21,6 +21,8 @@ pub mod models;
 
 pub mod subbands;
 
+pub mod superlattice;
+
 pub mod optics;
 
 pub mod tune;

@@ -11,5 +11,6 @@ pub mod nearest;
 pub mod pencil;
 pub mod polyline;
 pub mod quadrature;
+pub mod quasiperiodic;
 pub mod sensitivity;
 pub mod shared_points;

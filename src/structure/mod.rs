@@ -10,6 +10,7 @@ mod fields;
 mod file;
 mod grade;
 mod growth;
+mod period;
 mod read;
 mod read_aims;
 mod read_growth;
@@ -25,10 +26,11 @@ mod temperature;
 mod wafer;
 
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile,
+    Aim, BandName, ConductionBand, ConductionModel, Ends, Follow, Item, Keep, LayerEntry, Level, Profile,
     Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
+pub use period::{NoModule, Repeated};
 pub use read::read;
 pub use rewrite::{Edits, NewWidth, rewrite};
 pub use spreads::{Grading, Radial, Tolerance, Window};

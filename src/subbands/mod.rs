@@ -17,6 +17,7 @@ pub use change::change;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
 pub use nearby::{Nearby, lower_outer_edge_ev};
+pub use resolution::pieces_up_to;
 pub use state::{Hold, State, in_plane_mass_m0};
 
 use crate::models::{Band, BandOperator};
