@@ -3,14 +3,19 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver};
 use super::input::Input;
+use super::minibands;
 use crate::models::Band;
 use crate::report::Levels;
+use crate::structure::Ends;
 use crate::subbands::{Accuracy, Bands};
 use std::path::Path;
 
 pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    if input.structure.ends == Ends::Periodic {
+        return minibands::levels(&input, output, file);
+    }
     let bands = Bands::solve(
         &input.stack,
         &Band::of(&input.structure),

@@ -7,6 +7,7 @@ mod dispersion;
 mod input;
 mod levels;
 mod materials;
+mod minibands;
 mod output;
 mod plot;
 mod progress;

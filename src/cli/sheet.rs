@@ -3,12 +3,14 @@
 use super::arguments::{Format, SheetFormat};
 use super::deliver::{Exit, check_output, deliver, print, show, write};
 use super::input::Input;
+use super::minibands;
 use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
 use crate::growth;
 use crate::models::BandOperator;
 use crate::report::Sheet;
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
+use crate::structure::Ends;
 use crate::subbands::{self, Accuracy};
 use std::path::Path;
 
@@ -36,7 +38,12 @@ pub fn sheet(
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
     let highest = aims.map(|aim| aim.from.index.max(aim.to.index)).max();
-    let states = input.structure.conduction.states.max(highest.unwrap_or(0));
+    // A period repeated for ever has minibands, and no levels to list.
+    let periodic = input.structure.ends == Ends::Periodic;
+    let states = match periodic {
+        true => 0,
+        false => input.structure.conduction.states.max(highest.unwrap_or(0)),
+    };
     let subbands = subbands::solve(&operator, states, Accuracy::default());
     input.doubt(&subbands, states);
     let sheet = Sheet::new(
@@ -57,15 +64,24 @@ pub fn sheet(
         SheetFormat::Table
     }) {
         SheetFormat::Html => {
-            let curves = subbands::curves(&operator, &subbands, states, FINENESS);
-            let diagram =
-                BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
-            let mut pictures = vec![(
-                "Band edge and squared envelopes at their energies".to_owned(),
-                diagram.svg(Width::Page),
-            )];
+            let mut pictures = vec![if periodic {
+                (
+                    "Minibands along growth and their density of states".to_owned(),
+                    minibands::picture(&input)?,
+                )
+            } else {
+                let curves = subbands::curves(&operator, &subbands, states, FINENESS);
+                let diagram =
+                    BandDiagram::new(&input.structure, &input.stack, &subbands, curves, states);
+                (
+                    "Band edge and squared envelopes at their energies".to_owned(),
+                    diagram.svg(Width::Page),
+                )
+            }];
             let layers = input.stack.layers.len();
-            if input.structure.tolerance.is_some() && layers > MOST_SAMPLED_LAYERS {
+            if periodic {
+                // Tolerances are those of levels.
+            } else if input.structure.tolerance.is_some() && layers > MOST_SAMPLED_LAYERS {
                 let left_out = format!(
                     "the yield of {layers} layers is not sampled for the page: `plot --what yield` draws it in its own time"
                 );

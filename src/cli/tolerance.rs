@@ -3,6 +3,7 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, complain, deliver, show};
 use super::input::Input;
+use super::minibands::refuse_periodic;
 use super::progress::SearchProgress;
 use crate::diagnostics::Diagnostic;
 use crate::report::Tolerances;
@@ -18,6 +19,7 @@ pub fn tolerance(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    refuse_periodic(&input, "`tolerance`")?;
     input.without_holes("tolerances are those of");
     if input.structure.tolerance.is_none() {
         let doubt = Diagnostic::warning("there is no `tolerance` block, so nothing is sampled")

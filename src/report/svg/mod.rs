@@ -11,6 +11,7 @@ mod histogram;
 mod key;
 mod ladder;
 mod layer_strip;
+mod minizone;
 mod page;
 pub mod palette;
 mod spread;
@@ -21,6 +22,7 @@ pub use band_diagram::{BandDiagram, FINENESS};
 pub use bars::{SensitivityBar, SensitivityBars};
 pub use dispersion::DispersionCurves;
 pub use histogram::{Gaussian, Window, YieldHistogram};
+pub use minizone::{MinizoneCurves, MinizonePanel};
 pub use text::width_pt as text_width_pt;
 pub use tolerances::{sensitivity_bars, yield_histogram};
 
