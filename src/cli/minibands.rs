@@ -35,12 +35,7 @@ pub fn levels(input: &Input, output: &Output, file: &Path) -> Result<Exit, Exit>
     )
 }
 
-pub fn dispersion(
-    input: &Input,
-    points: u16,
-    output: &Output,
-    file: &Path,
-) -> Result<Exit, Exit> {
+pub fn dispersion(input: &Input, points: u16, output: &Output, file: &Path) -> Result<Exit, Exit> {
     let (period, bands) = solved(input)?;
     let report = Minizone::new(&input.structure, &period, &bands, usize::from(points));
     match output.output.as_deref() {

@@ -107,12 +107,7 @@ impl Condensed {
 }
 
 /// T times the unit vector of an end node, and the solution inside that is 1 there and 0 at the other end.
-fn solution(
-    pencil: &Pencil,
-    lambda: f64,
-    factored: &Factored,
-    end: usize,
-) -> (Vec<f64>, Vec<f64>) {
+fn solution(pencil: &Pencil, lambda: f64, factored: &Factored, end: usize) -> (Vec<f64>, Vec<f64>) {
     let count = pencil.mesh.node_count();
     let mut unit = vec![0.0; count];
     unit[end] = 1.0;

@@ -5,9 +5,7 @@ use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::models::model_name;
 use crate::structure::{Stack, Structure};
-use crate::superlattice::{
-    DensityPoint, Dispersed, Minibands, NO_GAP_EV, Zone, density_of_states,
-};
+use crate::superlattice::{DensityPoint, Dispersed, Minibands, NO_GAP_EV, Zone, density_of_states};
 use serde::Serialize;
 use std::f64::consts::PI;
 
@@ -323,7 +321,13 @@ impl Minizone {
         let head = Head::new(structure, period);
         let last = points.max(2) - 1;
         let phases: Vec<f64> = (0..=last)
-            .map(|k| if k == last { PI } else { PI * k as f64 / last as f64 })
+            .map(|k| {
+                if k == last {
+                    PI
+                } else {
+                    PI * k as f64 / last as f64
+                }
+            })
             .collect();
         let mut curves = MinizoneCurves {
             title: structure
@@ -344,7 +348,14 @@ impl Minizone {
         for solved in bands {
             let word = solved.band.name().word();
             let dispersed = solved.dispersed(&phases);
-            for (index, Dispersed { energies_ev, velocities_m_s }) in dispersed.iter().enumerate() {
+            for (
+                index,
+                Dispersed {
+                    energies_ev,
+                    velocities_m_s,
+                },
+            ) in dispersed.iter().enumerate()
+            {
                 for (k, phase) in phases.iter().enumerate() {
                     rows_of_points.push(PointRow {
                         band: word,
@@ -363,7 +374,9 @@ impl Minizone {
                 per_eV_cm2_and_period: point.per_period,
                 per_eV_cm3: point.per_volume,
             }));
-            curves.panels.push(panel(solved, &phases, &dispersed, &density));
+            curves
+                .panels
+                .push(panel(solved, &phases, &dispersed, &density));
         }
         Minizone {
             head,
@@ -404,7 +417,10 @@ fn panel(
         phases_over_pi: phases.iter().map(|p| p / PI).collect(),
         minibands_ev: dispersed.iter().map(|d| d.energies_ev.clone()).collect(),
         edge_ev: solved.edge_ev,
-        density: density.iter().map(|p| [p.energy_ev, p.per_period]).collect(),
+        density: density
+            .iter()
+            .map(|p| [p.energy_ev, p.per_period])
+            .collect(),
     }
 }
 
@@ -413,7 +429,11 @@ impl Report for Minizone {
         let names: Vec<String> = ["q d/π", "q 1/nm"]
             .into_iter()
             .map(str::to_owned)
-            .chain(self.minibands.iter().map(|m| format!("{} {}", m.band, m.index)))
+            .chain(
+                self.minibands
+                    .iter()
+                    .map(|m| format!("{} {}", m.band, m.index)),
+            )
             .collect();
         let header: Vec<&str> = names.iter().map(|name| &**name).collect();
         let bands = self.minibands.len().max(1);

@@ -79,7 +79,9 @@ impl Structure {
 fn laid_out(item: &Item) -> usize {
     match item {
         Item::Layer(_) => 1,
-        Item::Repeat { count, items } => *count as usize * items.iter().map(laid_out).sum::<usize>(),
+        Item::Repeat { count, items } => {
+            *count as usize * items.iter().map(laid_out).sum::<usize>()
+        }
     }
 }
 
@@ -101,8 +103,10 @@ pub(super) fn not_periodic(structure: &Structure) -> Vec<Diagnostic> {
     }
     if let Some(tune) = &structure.tune {
         found.extend(tune.vary.first().map(|variable| {
-            Diagnostic::warning("`tune` does not know minibands: with `ends: periodic` it is not used")
-                .at(variable.span.clone())
+            Diagnostic::warning(
+                "`tune` does not know minibands: with `ends: periodic` it is not used",
+            )
+            .at(variable.span.clone())
         }));
     }
     if structure.tolerance.is_some() {

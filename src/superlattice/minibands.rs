@@ -15,8 +15,8 @@ use crate::numerics::quasiperiodic::{Condensed, Wave, bracket, level};
 use crate::subbands::{Accuracy, pieces_up_to};
 use std::f64::consts::PI;
 
-/// A gap below this is none: it is what rounding leaves where two minibands touch.
-pub const NO_GAP_EV: f64 = 1e-9;
+/// A gap below this is none: no more is known of two energies that are each exact to a hundredth of a µeV.
+pub const NO_GAP_EV: f64 = 2e-8;
 /// Orders of the elements, each with the one that tells its error.
 const ORDERS: [[usize; 2]; 2] = [[8, 10], [12, 14]];
 /// Halvings of the elements after which the error that is reached is reported as it is.
@@ -112,7 +112,10 @@ impl ZoneAudit {
     pub fn faults(&self) -> Vec<String> {
         let mut faults = Vec::new();
         for (what, deviation) in [
-            ("velocity and slope of a miniband do not agree", self.velocity),
+            (
+                "velocity and slope of a miniband do not agree",
+                self.velocity,
+            ),
             ("the states are not orthonormal", self.orthonormality),
         ] {
             if deviation.is_nan() || deviation > FAULT {
@@ -187,7 +190,11 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
         });
         let [centre, border] = pair;
         let falls = solved.levels[band][0] > solved.levels[band][1];
-        edges.push(if falls { [border, centre] } else { [centre, border] });
+        edges.push(if falls {
+            [border, centre]
+        } else {
+            [centre, border]
+        });
     }
     let nearest = |band: usize| solved.levels[band][0].min(solved.levels[band][1]);
     let minibands = edges.iter().enumerate().map(|(band, edges)| {
@@ -359,7 +366,7 @@ impl Minibands {
             let (mean, size) = mean_velocity(&self.pencil, &wave);
             audit.velocity = audit.velocity.max((mean - slope).abs() / size);
             let miniband = &self.minibands[band];
-            if miniband.gap_ev > 1e2 * NO_GAP_EV {
+            if miniband.gap_ev > NO_GAP_EV {
                 let edge = self.band.sign() * miniband.edges[1].energy_ev;
                 let inside = Condensed::at(&self.pencil, edge + 0.5 * miniband.gap_ev);
                 audit.counted &= [0.0, PI].iter().all(|p| inside.count(*p) == band + 1);

@@ -31,7 +31,7 @@ const PANEL_PT: f64 = 215.0;
 const GAP_PT: f64 = 14.0;
 const LINE_PT: f64 = 1.1;
 /// Between the two panels.
-const APART_PT: f64 = 12.0;
+const APART_PT: f64 = 20.0;
 /// Of the width of both panels that of the dispersion.
 const DISPERSION_SHARE: f64 = 0.56;
 
@@ -45,17 +45,23 @@ impl MinizoneCurves {
         for panel in &self.panels {
             bottom = top + PANEL_PT;
             panel.draw(&mut page, [top, bottom]);
-            names.extend(panel.minibands_ev.iter().enumerate().map(|(index, energies)| {
-                let first = energies.first().copied().unwrap_or(0.0);
-                let last = energies.last().copied().unwrap_or(0.0);
-                format!(
-                    "{} {} from {:.5} eV at q = 0 to {:.5} eV at π/d",
-                    panel.word,
-                    index + 1,
-                    first,
-                    last
-                )
-            }));
+            names.extend(
+                panel
+                    .minibands_ev
+                    .iter()
+                    .enumerate()
+                    .map(|(index, energies)| {
+                        let first = energies.first().copied().unwrap_or(0.0);
+                        let last = energies.last().copied().unwrap_or(0.0);
+                        format!(
+                            "{} {} from {:.5} eV at q = 0 to {:.5} eV at π/d",
+                            panel.word,
+                            index + 1,
+                            first,
+                            last
+                        )
+                    }),
+            );
             top = bottom + BOTTOM_ROOM + GAP_PT;
         }
         let y = page.caption(&self.caption, bottom + BOTTOM_ROOM);
@@ -96,7 +102,11 @@ impl MinizonePanel {
                 let (upper, lower) = ys.fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), y| {
                     (a.min(y), b.max(y))
                 });
-                page.rectangle([left, upper], [right - left, (lower - upper).max(0.4)], BODY);
+                page.rectangle(
+                    [left, upper],
+                    [right - left, (lower - upper).max(0.4)],
+                    BODY,
+                );
             }
         });
         left_axis(
@@ -137,7 +147,10 @@ impl MinizonePanel {
             page.line([zero, bottom], [zero, top], Stroke::solid(GUIDE, 0.4));
         });
         bottom_axis(page, across, bottom, "q d/π");
-        let unit = format!("States (10{} /eV cm²)", superscript(power.log10().round() as i32));
+        let unit = format!(
+            "States (10{} /eV cm²)",
+            superscript(power.log10().round() as i32)
+        );
         bottom_axis(page, density, bottom, &unit);
     }
 }
