@@ -188,7 +188,7 @@ impl<'s> BandOperator<'s> {
 }
 
 /// The coefficients with the edge raised by `energy_ev`; the gap moves along.
-fn raised(mut own: Coefficient, energy_ev: f64) -> Coefficient {
+pub fn raised(mut own: Coefficient, energy_ev: f64) -> Coefficient {
     own.constant += energy_ev;
     for pole in own.poles.iter_mut().flatten() {
         pole.position += energy_ev;

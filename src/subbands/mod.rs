@@ -140,6 +140,22 @@ fn pencil_on(operator: &BandOperator, mesh: Mesh) -> Pencil {
 }
 
 impl Subbands {
+    /// Solutions of the conduction band that were found on a pencil of the caller's, with their errors.
+    pub fn of_conduction(
+        band: Band,
+        pencil: Pencil,
+        pairs: Vec<Eigenpair>,
+        errors_ev: Vec<f64>,
+    ) -> Subbands {
+        Subbands {
+            band,
+            pencil,
+            pairs,
+            errors_ev,
+            in_plane_stiffness: None,
+        }
+    }
+
     /// The energy of a state, on the absolute scale, in eV.
     pub fn energy_ev(&self, index: usize) -> f64 {
         self.band.sign() * self.pairs[index].value

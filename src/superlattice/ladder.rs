@@ -1,0 +1,399 @@
+//! The ladder of levels of a cascade: states come in families, one of each in every module, and a period along growth
+//! changes the energy by e F d exactly (Wannier, Phys. Rev. 117, 432 (1960)).
+//!
+//! One module in the middle of a window of modules stands for all. A state belongs to the module that its centre lies in.
+//! It is taken for a state of the ladder when the next module downstream holds the same envelope at the energy that the
+//! ladder demands; what the window's ends make, and what spreads over the continuum, has no such partner.
+
+use super::anticrossing::{Anticrossing, anticrossing};
+use super::window::Window;
+use crate::models::BandOperator;
+use crate::numerics::eigenpairs::{Eigenpair, improvements};
+use crate::optics::transitions;
+use crate::subbands::{Accuracy, Subbands, amplitudes};
+use std::collections::BTreeMap;
+
+/// Orders of the elements, and by how much the order is raised to tell the error.
+const ORDERS: [usize; 2] = [8, 12];
+const ORDER_STEP: usize = 2;
+const MOST_HALVINGS: usize = 2;
+/// Modules on either side of the middle one: first, and at most.
+const EACH_SIDE: [usize; 2] = [1, 4];
+/// The window is wide enough when one more module at either end moves no listed level by more than this, in eV.
+const SETTLED_EV: f64 = 1e-7;
+/// A state of the ladder finds itself in the next module with at least this overlap …
+const SAME: f64 = 0.9;
+/// … and at most this far from e F d lower, in eV.
+const OFF_LADDER_EV: f64 = 1e-3;
+/// Levels nearer than this are followed to where they come nearest, in eV.
+const ALIGNED_EV: f64 = 1e-2;
+
+/// A module's stack in the field.
+#[derive(Clone, Copy, Debug)]
+pub struct Module<'s> {
+    /// Of the layers of one module.
+    pub operator: &'s BandOperator<'s>,
+    pub field_v_per_nm: f64,
+}
+
+/// One state of a module.
+#[derive(Clone, Debug, PartialEq)]
+pub struct LadderState {
+    /// The field's energy is zero at the lower face of the module.
+    pub energy_ev: f64,
+    pub from_edge_ev: f64,
+    pub error_ev: f64,
+    pub in_plane_mass_m0: f64,
+    /// Above the lower face of the module.
+    pub centre_nm: f64,
+    pub extent_nm: f64,
+    /// The layer of the module, or of a neighbour, that holds most of the state.
+    pub layer: usize,
+    pub layer_share: f64,
+    /// The part of the state inside of its module.
+    pub module_share: f64,
+    /// How far the same state of the next module is from where the ladder demands.
+    pub ladder_residual_ev: f64,
+    /// How far the last widening of the window moved the level; `None` when it was not in the narrower one.
+    pub window_shift_ev: Option<f64>,
+}
+
+/// Light between two states, in one module or from one module down to the next.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LadderTransition {
+    /// Numbers of the states, from 0: the lower level first.
+    pub from: usize,
+    pub to: usize,
+    /// Whether `from` belongs to the next module downstream.
+    pub to_next_module: bool,
+    pub energy_ev: f64,
+    pub dipole_nm: f64,
+    pub oscillator_strength: f64,
+    pub overlap: f64,
+}
+
+impl LadderTransition {
+    pub fn wavelength_um(&self) -> f64 {
+        crate::constants::HC_EV_UM / self.energy_ev
+    }
+}
+
+/// Two levels of the ladder that come near each other.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Alignment {
+    /// A state of a module, and one of the same or of the next module downstream; from 0.
+    pub upstream: usize,
+    pub downstream: usize,
+    pub next_module: bool,
+    /// The first level less the second, in the field of the file.
+    pub detuning_ev: f64,
+    pub overlap: f64,
+    /// `None` where they come nearest too far from the field of the file.
+    pub anticrossing: Option<Anticrossing>,
+}
+
+/// The levels of a cascade's module.
+#[derive(Clone, Debug)]
+pub struct Ladder {
+    pub period_nm: f64,
+    pub field_v_per_nm: f64,
+    /// What an electron loses from module to module: positive.
+    pub drop_ev: f64,
+    /// Whether electrons lose it along the growth direction.
+    pub along_growth: bool,
+    pub states: Vec<LadderState>,
+    pub transitions: Vec<LadderTransition>,
+    pub alignments: Vec<Alignment>,
+    /// States centred in the module, below its highest edge, that are not on the ladder.
+    pub left_out: usize,
+    /// Modules in the window.
+    pub modules: usize,
+    /// Whether the window was wide enough.
+    pub settled: bool,
+    /// Squared envelopes of the states and the band edge: height above the module's lower face in nm, 1/nm or eV.
+    pub envelopes: Vec<Vec<[f64; 2]>>,
+    pub edge: Vec<[f64; 2]>,
+}
+
+/// What a window says of its middle module.
+struct Solved {
+    subbands: Subbands,
+    /// States of the middle module, and the same in the next one downstream: numbers of pairs of `subbands`.
+    families: Vec<[usize; 2]>,
+    left_out: usize,
+}
+
+/// The `count` lowest states of a module, or as many as there are on the ladder.
+pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
+    let mut known: Option<Vec<f64>> = None;
+    let mut each_side = EACH_SIDE[0];
+    loop {
+        let mut window = Window::new(module.operator, each_side, module.field_v_per_nm);
+        let (solved, order) = accurate(module, &mut window, count, accuracy);
+        let energies: Vec<f64> = solved
+            .families
+            .iter()
+            .map(|[own, _]| solved.subbands.pairs[*own].value)
+            .collect();
+        let shifts: Vec<Option<f64>> = energies
+            .iter()
+            .enumerate()
+            .map(|(k, energy)| Some((energy - known.as_ref()?.get(k)?).abs()))
+            .collect();
+        let same_number = known.as_ref().is_some_and(|k| k.len() == energies.len());
+        let still = |shift: &Option<f64>| shift.is_some_and(|shift| shift < SETTLED_EV);
+        let settled = same_number && shifts.iter().all(still);
+        if settled || each_side == EACH_SIDE[1] {
+            return described(module, &window, order, &solved, &shifts, settled);
+        }
+        known = Some(energies);
+        each_side += 1;
+    }
+}
+
+/// Solves a window on elements that are fine enough, and says their order.
+fn accurate(
+    module: Module,
+    window: &mut Window,
+    count: usize,
+    accuracy: Accuracy,
+) -> (Solved, usize) {
+    let mut halvings = 0;
+    loop {
+        for order in ORDERS {
+            let solved = solve(module, window, count, order);
+            let worst = solved.subbands.errors_ev.iter().copied().fold(0.0, f64::max);
+            let last = halvings == MOST_HALVINGS && order == ORDERS[1];
+            if worst <= accuracy.tolerance_ev || last {
+                return (solved, order);
+            }
+        }
+        window.halve();
+        halvings += 1;
+    }
+}
+
+/// One period downstream, in periods along growth.
+fn downstream(field_v_per_nm: f64) -> isize {
+    if field_v_per_nm < 0.0 { 1 } else { -1 }
+}
+
+fn solve(module: Module, window: &Window, count: usize, order: usize) -> Solved {
+    let field = module.field_v_per_nm;
+    let drop_ev = field.abs() * window.period_nm;
+    let pencil = window.pencil(field, order);
+    let [low_ev, high_ev] = window.middle_edges_ev(&pencil);
+    let states = window.states(&pencil, [low_ev - drop_ev, high_ev]);
+    let all = Subbands::of_conduction(
+        module.operator.band(),
+        pencil,
+        states,
+        Vec::new(),
+    );
+    let mut chosen: Vec<[usize; 2]> = Vec::new();
+    let mut left_out = 0;
+    for (index, state) in all.pairs.iter().enumerate() {
+        if chosen.len() == count {
+            break;
+        }
+        if state.value < low_ev || !centred(window, &all, index) {
+            continue;
+        }
+        match partner(window, &all, index, drop_ev, downstream(field)) {
+            Some(other) => chosen.push([index, other]),
+            None => left_out += 1,
+        }
+    }
+    // Only what counts is kept.
+    let mut numbers: BTreeMap<usize, usize> = BTreeMap::new();
+    for index in chosen.iter().flatten() {
+        numbers.insert(*index, 0);
+    }
+    for (place, number) in numbers.values_mut().enumerate() {
+        *number = place;
+    }
+    let pairs: Vec<Eigenpair> = numbers.keys().map(|k| all.pairs[*k].clone()).collect();
+    let finer = window.pencil(field, order + ORDER_STEP);
+    let errors = improvements(&all.pencil, &pairs, &finer);
+    let errors_ev = errors.into_iter().map(f64::abs).collect();
+    Solved {
+        subbands: Subbands::of_conduction(all.band, all.pencil, pairs, errors_ev),
+        families: chosen.iter().map(|f| f.map(|k| numbers[&k])).collect(),
+        left_out,
+    }
+}
+
+/// Whether a state's centre lies in the middle module. A border belongs to the module upstream of it.
+fn centred(window: &Window, all: &Subbands, index: usize) -> bool {
+    let pair = &all.pairs[index];
+    let z_nm = crate::numerics::sensitivity::moment(&all.pencil, pair, pair) + window.bottom_nm();
+    (0.0..window.period_nm).contains(&z_nm)
+}
+
+/// The same state one module downstream.
+fn partner(
+    window: &Window,
+    all: &Subbands,
+    index: usize,
+    drop_ev: f64,
+    downstream: isize,
+) -> Option<usize> {
+    let wanted_ev = all.pairs[index].value - drop_ev;
+    let near = |k: &usize| (all.pairs[*k].value - wanted_ev).abs() < OFF_LADDER_EV;
+    let overlap = |k: usize| {
+        let (state, other) = (&all.pairs[index], &all.pairs[k]);
+        window.overlap_moved(&all.pencil, state, other, downstream).abs()
+    };
+    (0..all.pairs.len())
+        .filter(near)
+        .map(|k| (k, overlap(k)))
+        .filter(|(_, overlap)| *overlap > SAME)
+        .max_by(|a, b| a.1.total_cmp(&b.1))
+        .map(|(k, _)| k)
+}
+
+fn described(
+    module: Module,
+    window: &Window,
+    order: usize,
+    solved: &Solved,
+    shifts: &[Option<f64>],
+    settled: bool,
+) -> Ladder {
+    let Solved {
+        subbands,
+        families,
+        left_out,
+    } = solved;
+    let field = module.field_v_per_nm;
+    let drop_ev = field.abs() * window.period_nm;
+    let bottom_nm = window.bottom_nm();
+    let [low_ev, _] = window.middle_edges_ev(&subbands.pencil);
+    let known = subbands.states();
+    let amplitudes = amplitudes(subbands);
+    let nodes = order + 1;
+    let states = families.iter().zip(shifts).map(|([own, next], shift)| {
+        let state = &known[*own];
+        let inside = subbands.pencil.mesh.elements.iter().enumerate();
+        let module_share = inside
+            .filter(|(_, element)| window.module_of(element.segment) == Some(0))
+            .flat_map(|(e, _)| &amplitudes[*own][e * nodes..(e + 1) * nodes])
+            .map(|a| a * a)
+            .sum();
+        LadderState {
+            energy_ev: state.energy_ev,
+            from_edge_ev: state.energy_ev - low_ev,
+            error_ev: state.error_ev,
+            in_plane_mass_m0: state.in_plane_mass_m0,
+            centre_nm: state.centre_nm + bottom_nm,
+            extent_nm: state.extent_nm,
+            layer: window.layer_of(state.layer),
+            layer_share: state.layer_share,
+            module_share,
+            ladder_residual_ev: state.energy_ev - known[*next].energy_ev - drop_ev,
+            window_shift_ev: *shift,
+        }
+    });
+    let states: Vec<LadderState> = states.collect();
+    let transitions = transitions(subbands);
+    let between = |a: usize, b: usize| {
+        let ends = [a.min(b), a.max(b)];
+        transitions.iter().find(|t| [t.from, t.to] == ends)
+    };
+    let mut list = Vec::new();
+    let mut alignments = Vec::new();
+    let start = (&subbands.pencil, field);
+    let mut align = |upstream: usize, downstream: usize, next_module: bool| {
+        let [a, b] = [families[upstream][0], families[downstream][usize::from(next_module)]];
+        let (first, second) = (&subbands.pairs[a], &subbands.pairs[b]);
+        let detuning_ev = first.value - second.value;
+        if detuning_ev.abs() < ALIGNED_EV && a != b {
+            alignments.push(Alignment {
+                upstream,
+                downstream,
+                next_module,
+                detuning_ev,
+                overlap: between(a, b).map_or(0.0, |t| t.overlap),
+                anticrossing: anticrossing(window, order, start, [first, second]),
+            });
+        }
+    };
+    for upper in 0..families.len() {
+        for lower in 0..families.len() {
+            if lower > upper {
+                align(upper, lower, false);
+            }
+            if lower != upper {
+                align(upper, lower, true);
+            }
+            for next in [false, true] {
+                let [a, b] = [families[upper][0], families[lower][usize::from(next)]];
+                let falls = subbands.pairs[a].value > subbands.pairs[b].value;
+                if let Some(t) = between(a, b).filter(|_| falls) {
+                    list.push(LadderTransition {
+                        from: lower,
+                        to: upper,
+                        to_next_module: next,
+                        energy_ev: t.energy_ev,
+                        dipole_nm: t.dipole_nm,
+                        oscillator_strength: t.oscillator_strength,
+                        overlap: t.overlap,
+                    });
+                }
+            }
+        }
+    }
+    list.sort_by_key(|t| (t.to_next_module, t.from, t.to));
+    Ladder {
+        period_nm: window.period_nm,
+        field_v_per_nm: field,
+        drop_ev,
+        along_growth: downstream(field) > 0,
+        states,
+        transitions: list,
+        alignments,
+        left_out: *left_out,
+        modules: window.modules,
+        settled,
+        envelopes: families
+            .iter()
+            .map(|[own, _]| envelope(subbands, *own, bottom_nm))
+            .collect(),
+        edge: edge(window, subbands, bottom_nm),
+    }
+}
+
+/// Points at which an element is sampled, per polynomial order.
+const SAMPLES_PER_ORDER: usize = 3;
+
+/// The squared envelope of the conduction band, in 1/nm.
+fn envelope(subbands: &Subbands, index: usize, bottom_nm: f64) -> Vec<[f64; 2]> {
+    let mesh = &subbands.pencil.mesh;
+    let samples = SAMPLES_PER_ORDER * mesh.order();
+    let shares: Vec<f64> = (0..=samples).map(|k| k as f64 / samples as f64).collect();
+    let places: Vec<f64> = shares.iter().map(|share| 2.0 * share - 1.0).collect();
+    let matrix = mesh.reference.interpolation(&places);
+    let mut points = Vec::new();
+    for (e, element) in mesh.elements.iter().enumerate() {
+        let values = mesh.local(e, &subbands.pairs[index].vector);
+        for (row, share) in matrix.chunks_exact(values.len()).zip(&shares) {
+            let value: f64 = row.iter().zip(values).map(|(m, v)| m * v).sum();
+            let z_nm = bottom_nm + element.start + share * element.length;
+            points.push([z_nm, value * value]);
+        }
+    }
+    points
+}
+
+/// The band edge of the middle module, in eV.
+fn edge(window: &Window, subbands: &Subbands, bottom_nm: f64) -> Vec<[f64; 2]> {
+    let pencil = &subbands.pencil;
+    let middle = window.middle();
+    let own = pencil.mesh.elements.iter().enumerate();
+    own.filter(|(_, element)| middle.contains(&element.segment))
+        .flat_map(|(e, element)| {
+            let nodes = pencil.at(e).iter().enumerate();
+            nodes.map(move |(q, c)| [bottom_nm + pencil.mesh.position(element, q), c.constant])
+        })
+        .collect()
+}
