@@ -1,6 +1,7 @@
 //! `levels`: solve a stack.
 
 use super::arguments::Output;
+use super::cascade;
 use super::deliver::{Exit, check_output, deliver};
 use super::input::Input;
 use super::minibands;
@@ -25,6 +26,7 @@ pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let shown = bands.asked_for(&input.structure);
     input.doubt_all(&bands, &shown);
     input.doubt_growth();
+    cascade::hint(&input);
     deliver(
         &Levels::new(&input.structure, &input.stack, &bands, &shown),
         output.format,

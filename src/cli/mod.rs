@@ -1,6 +1,7 @@
 //! The command line. Only this module touches files, the terminal and the environment.
 
 mod arguments;
+mod cascade;
 mod check;
 mod deliver;
 mod dispersion;

@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, dispersion, levels, materials, plot, sheet, tolerance, tune};
+use super::{cascade, check, dispersion, levels, materials, plot, sheet, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -40,6 +40,7 @@ pub fn run(arguments: Arguments) -> Exit {
             points,
             output,
         } => dispersion::dispersion(&file, (model, states), (along, &to, points), &output),
+        Command::Cascade { file, output } => cascade::cascade(&file, &output),
         Command::Materials {
             formula,
             temperature,

@@ -1,5 +1,6 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod cascade;
 mod check;
 mod dispersion;
 mod interband;
@@ -17,6 +18,7 @@ mod table;
 mod tolerance;
 mod tuning;
 
+pub use cascade::Cascade;
 pub use check::Check;
 pub use dispersion::Dispersion;
 pub use levels::Levels;

@@ -66,8 +66,8 @@ pub(super) fn anticrossing(
             return None;
         }
         pencil = window.pencil(field, order);
-        let middle_ev = 0.5 * (pair[0].value + pair[1].value)
-            + 0.5 * step * (heights_nm[0] + heights_nm[1]);
+        let middle_ev =
+            0.5 * (pair[0].value + pair[1].value) + 0.5 * step * (heights_nm[0] + heights_nm[1]);
         let half_ev = 0.5 * gap_ev.abs() + 0.5 * (step * apart_nm).abs() + ROOM_EV;
         pair = [1.0, 4.0].iter().find_map(|wider| {
             let half_ev = wider * half_ev;
@@ -88,7 +88,9 @@ fn likest(
     let mut held: Vec<(f64, Eigenpair)> = found
         .into_iter()
         .map(|state| {
-            let parts = pair.iter().map(|p| window.overlap_moved(pencil, p, &state, 0));
+            let parts = pair
+                .iter()
+                .map(|p| window.overlap_moved(pencil, p, &state, 0));
             (parts.map(|part| part * part).sum(), state)
         })
         .collect();

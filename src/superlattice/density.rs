@@ -23,22 +23,21 @@ pub struct DensityPoint {
 pub fn density_of_states(minibands: &Minibands, energies_ev: &[f64]) -> Vec<DensityPoint> {
     let sign = minibands.band.sign();
     // For each miniband ∫ m∥ dφ from the centre of the minizone up to each of the phases.
-    let step = PI / (SAMPLES - 1) as f64;
+    let step = PI / SAMPLES as f64;
     let sums: Vec<Vec<f64>> = (0..minibands.minibands.len())
         .map(|band| {
-            let masses: Vec<f64> = (0..SAMPLES)
-                .map(|k| minibands.in_plane_mass_m0(band, step * k as f64))
-                .collect();
             let mut sum = vec![0.0];
-            for pair in masses.windows(2) {
-                sum.push(sum[sum.len() - 1] + 0.5 * step * (pair[0] + pair[1]));
+            for k in 0..SAMPLES {
+                // Half-way: at the ends minibands may touch, and have no state of their own.
+                let mass = minibands.in_plane_mass_m0(band, step * (k as f64 + 0.5));
+                sum.push(sum[k] + step * mass);
             }
             sum
         })
         .collect();
     let up_to = |band: usize, phase: f64| {
-        let place = (phase / step).clamp(0.0, (SAMPLES - 1) as f64);
-        let below = (place as usize).min(SAMPLES - 2);
+        let place = (phase / step).clamp(0.0, SAMPLES as f64);
+        let below = (place as usize).min(SAMPLES - 1);
         let share = place - below as f64;
         sums[band][below] * (1.0 - share) + sums[band][below + 1] * share
     };
@@ -50,7 +49,7 @@ pub fn density_of_states(minibands: &Minibands, energies_ev: &[f64]) -> Vec<Dens
             for (band, sum) in sums.iter().enumerate() {
                 let [centre, border] = minibands.levels[band];
                 if level >= centre.max(border) {
-                    mass += sum[SAMPLES - 1] / PI;
+                    mass += sum[SAMPLES] / PI;
                 } else if level > centre.min(border)
                     && let Some(phase) = Condensed::at(&minibands.pencil, level).phase()
                 {
@@ -58,7 +57,7 @@ pub fn density_of_states(minibands: &Minibands, energies_ev: &[f64]) -> Vec<Dens
                     mass += if centre < border {
                         inside / PI
                     } else {
-                        (sum[SAMPLES - 1] - inside) / PI
+                        (sum[SAMPLES] - inside) / PI
                     };
                 }
             }

@@ -162,7 +162,12 @@ fn accurate(
     loop {
         for order in ORDERS {
             let solved = solve(module, window, count, order);
-            let worst = solved.subbands.errors_ev.iter().copied().fold(0.0, f64::max);
+            let worst = solved
+                .subbands
+                .errors_ev
+                .iter()
+                .copied()
+                .fold(0.0, f64::max);
             let last = halvings == MOST_HALVINGS && order == ORDERS[1];
             if worst <= accuracy.tolerance_ev || last {
                 return (solved, order);
@@ -184,12 +189,7 @@ fn solve(module: Module, window: &Window, count: usize, order: usize) -> Solved 
     let pencil = window.pencil(field, order);
     let [low_ev, high_ev] = window.middle_edges_ev(&pencil);
     let states = window.states(&pencil, [low_ev - drop_ev, high_ev]);
-    let all = Subbands::of_conduction(
-        module.operator.band(),
-        pencil,
-        states,
-        Vec::new(),
-    );
+    let all = Subbands::of_conduction(module.operator.band(), pencil, states, Vec::new());
     let mut chosen: Vec<[usize; 2]> = Vec::new();
     let mut left_out = 0;
     for (index, state) in all.pairs.iter().enumerate() {
@@ -242,7 +242,9 @@ fn partner(
     let near = |k: &usize| (all.pairs[*k].value - wanted_ev).abs() < OFF_LADDER_EV;
     let overlap = |k: usize| {
         let (state, other) = (&all.pairs[index], &all.pairs[k]);
-        window.overlap_moved(&all.pencil, state, other, downstream).abs()
+        window
+            .overlap_moved(&all.pencil, state, other, downstream)
+            .abs()
     };
     (0..all.pairs.len())
         .filter(near)
@@ -304,7 +306,10 @@ fn described(
     let mut alignments = Vec::new();
     let start = (&subbands.pencil, field);
     let mut align = |upstream: usize, downstream: usize, next_module: bool| {
-        let [a, b] = [families[upstream][0], families[downstream][usize::from(next_module)]];
+        let [a, b] = [
+            families[upstream][0],
+            families[downstream][usize::from(next_module)],
+        ];
         let (first, second) = (&subbands.pairs[a], &subbands.pairs[b]);
         let detuning_ev = first.value - second.value;
         if detuning_ev.abs() < ALIGNED_EV && a != b {

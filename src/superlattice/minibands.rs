@@ -21,8 +21,10 @@ pub const NO_GAP_EV: f64 = 2e-8;
 const ORDERS: [[usize; 2]; 2] = [[8, 10], [12, 14]];
 /// Halvings of the elements after which the error that is reached is reported as it is.
 const MOST_HALVINGS: usize = 4;
+/// Where states are taken of minibands that touch: this phase off the touching point.
+const INSIDE: f64 = 1e-2;
 /// Phases from the centre to the border of the minizone at which in-plane masses are taken for the density of states.
-pub(super) const SAMPLES: usize = 65;
+pub(super) const SAMPLES: usize = 64;
 
 /// A place of the minizone.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -171,11 +173,18 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
         let pair = [0, 1].map(|at| {
             let zone = [Zone::Centre, Zone::Border][at];
             let value = solved.levels[band][at];
-            let condensed = Condensed::at(&solved.pencil, value);
-            let wave = condensed.wave(value, zone.phase());
             let below = band.checked_sub(1).map(|b| value - solved.levels[b][at]);
             let above = solved.levels[band + 1][at] - value;
             let touching = below.is_some_and(|gap| gap < NO_GAP_EV) || above < NO_GAP_EV;
+            let condensed = Condensed::at(&solved.pencil, value);
+            let wave = if touching {
+                // The two states are not told apart here, but are a little inside.
+                let phase = (zone.phase() - INSIDE).abs();
+                let near = level(&solved.pencil, band + 1, phase, solved.range);
+                Condensed::at(&solved.pencil, near).wave(near, phase)
+            } else {
+                condensed.wave(value, zone.phase())
+            };
             let curvature = condensed.curvature(zone.phase()) * period_nm * period_nm;
             let mass = 2.0 * HBAR2_OVER_2M0 / curvature;
             let edge = Edge {
@@ -259,6 +268,8 @@ struct Solved {
     pencil: Pencil,
     levels: Vec<[f64; 2]>,
     errors_ev: Vec<[f64; 2]>,
+    /// Holds all of these levels.
+    range: [f64; 2],
 }
 
 /// The levels at the centre and the border, of one miniband more than asked for, on a mesh that is fine enough.
@@ -278,7 +289,7 @@ fn solve(cell: &Cell, count: usize, accuracy: Accuracy) -> Solved {
                             .map(|zone| level(&pencil, k, zone.phase(), range))
                     })
                     .collect();
-                (pencil, levels)
+                (pencil, levels, range)
             });
             let errors_ev: Vec<[f64; 2]> = coarse
                 .1
@@ -293,6 +304,7 @@ fn solve(cell: &Cell, count: usize, accuracy: Accuracy) -> Solved {
                     pencil: fine.0,
                     levels: fine.1,
                     errors_ev,
+                    range: fine.2,
                 };
             }
         }

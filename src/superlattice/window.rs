@@ -27,7 +27,11 @@ pub(super) struct Window<'s> {
 impl<'s> Window<'s> {
     /// `each_side` modules on either side of the middle one. The operator is that of one module, whose bottom and top
     /// layers follow one another in the cascade.
-    pub fn new(operator: &'s BandOperator<'s>, each_side: usize, field_v_per_nm: f64) -> Window<'s> {
+    pub fn new(
+        operator: &'s BandOperator<'s>,
+        each_side: usize,
+        field_v_per_nm: f64,
+    ) -> Window<'s> {
         let module = operator.stack();
         let highest = (0..module.layers.len())
             .map(|layer| (layer, operator.at(layer, 0.5, 0.0).constant))
@@ -129,7 +133,10 @@ impl<'s> Window<'s> {
 
     /// How many nodes a period is.
     fn period_nodes(&self, order: usize) -> usize {
-        self.middle().map(|segment| self.pieces[segment]).sum::<usize>() * order
+        self.middle()
+            .map(|segment| self.pieces[segment])
+            .sum::<usize>()
+            * order
     }
 
     /// The overlap of the conduction band's envelopes of one state with another, moved by whole periods first.

@@ -6,6 +6,7 @@
 mod axes;
 mod band_diagram;
 mod bars;
+mod cascade;
 mod dispersion;
 mod histogram;
 mod key;
@@ -20,6 +21,7 @@ mod tolerances;
 
 pub use band_diagram::{BandDiagram, FINENESS};
 pub use bars::{SensitivityBar, SensitivityBars};
+pub use cascade::{CascadePicture, CascadeState};
 pub use dispersion::DispersionCurves;
 pub use histogram::{Gaussian, Window, YieldHistogram};
 pub use minizone::{MinizoneCurves, MinizonePanel};
