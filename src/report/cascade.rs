@@ -31,7 +31,6 @@ pub struct Cascade {
     alignments: Vec<AlignmentRow>,
     states_left_out: usize,
     window_modules: usize,
-    window_settled: bool,
     gap_definition: &'static str,
     #[serde(skip)]
     picture: CascadePicture,
@@ -56,7 +55,7 @@ struct StateRow {
     layer_share: f64,
     module_share: f64,
     ladder_residual_meV: f64,
-    window_shift_meV: Option<f64>,
+    window_shift_meV: f64,
 }
 
 #[derive(Debug, Serialize)]
@@ -109,7 +108,7 @@ impl Cascade {
             layer_share: s.layer_share,
             module_share: s.module_share,
             ladder_residual_meV: 1e3 * s.ladder_residual_ev,
-            window_shift_meV: s.window_shift_ev.map(|shift| 1e3 * shift),
+            window_shift_meV: 1e3 * s.window_shift_ev,
         });
         let transitions = ladder.transitions.iter().map(|t| TransitionRow {
             upper: t.to + 1,
@@ -150,7 +149,6 @@ impl Cascade {
             alignments: ladder.alignments.iter().map(alignment).collect(),
             states_left_out: ladder.left_out,
             window_modules: ladder.modules,
-            window_settled: ladder.settled,
             gap_definition: GAP,
             picture: picture(structure, ladder),
         }
@@ -253,8 +251,7 @@ impl Report for Cascade {
                         format!("{} ({:.0} %)", s.layer, 100.0 * s.layer_share),
                         format!("{:.0}", 100.0 * s.module_share),
                         error_mev(1e-3 * s.ladder_residual_meV.abs()),
-                        s.window_shift_meV
-                            .map_or("-".to_owned(), |shift| error_mev(1e-3 * shift)),
+                        error_mev(1e-3 * s.window_shift_meV),
                     ]
                 })
                 .collect(),
@@ -336,7 +333,7 @@ impl Report for Cascade {
         format!(
             "{}{} K, field {} kV/cm, {} mass; {} modules of {:.2} nm and {} layers\n\
              An electron loses {} meV from module to module, {}.\n\n{states}\n\
-             Solved as the middle one of {} modules.{left_out}\n\n{transitions}\n\
+             Solved among {} modules; `window` is what two more would change.{left_out}\n\n{transitions}\n\
              Strength: 2 m0 E |z|²/ħ² with the free-electron mass. Pairs of neighbouring modules with an overlap below {LEAST_OVERLAP} are left to CSV and JSON.\n{alignments}",
             title.unwrap_or_default(),
             given(self.temperature_k, 4),

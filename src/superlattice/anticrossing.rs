@@ -18,29 +18,40 @@ pub struct Anticrossing {
     pub gap_ev: f64,
 }
 
-const MOST_STEPS: usize = 30;
+const MOST_STEPS: usize = 40;
 /// A step that moves the levels against one another by less than this, in eV, ends the search.
 const LAST_STEP_EV: f64 = 1e-9;
-/// The field is followed as far as this part of the design's.
-const FURTHEST: f64 = 0.4;
+/// Levels that come nearest further away than this part of the design's field are not followed.
+const FURTHEST: f64 = 0.2;
 /// A single step goes no further than this part of the design's field.
-const LONGEST_STEP: f64 = 0.1;
+const LONGEST_STEP: f64 = 0.05;
 /// Room above and below the two levels in which they are looked for again, in eV.
 const ROOM_EV: f64 = 2e-3;
-/// Two states are taken for those of the step before when they hold this much of them, of 2.
+/// Two states are taken for two others when they hold this much of them, of 2.
 const SAME: f64 = 1.2;
+
+/// A field with the slope of half the squared distance, which rises through zero where the levels are nearest.
+#[derive(Clone, Copy)]
+struct Tried {
+    field: f64,
+    slope: f64,
+}
 
 /// Follows two states of a window from a field; `None` where they come nearest too far from it, or are lost.
 pub(super) fn anticrossing(
     window: &Window,
     order: usize,
     start: (&Pencil, f64),
-    pair: [&Eigenpair; 2],
+    design_pair: [&Eigenpair; 2],
 ) -> Option<Anticrossing> {
     let design = start.1;
+    let furthest = FURTHEST * design.abs();
     let mut field = design;
     let mut pencil = start.0.clone();
-    let mut pair = pair.map(Clone::clone);
+    let mut pair = design_pair.map(Clone::clone);
+    // The nearest fields on either side, and the one before.
+    let (mut below, mut above): (Option<Tried>, Option<Tried>) = (None, None);
+    let mut last: Option<Tried> = None;
     for _ in 0..MOST_STEPS {
         let z = |i: usize, j: usize| moment(&pencil, &pair[i], &pair[j]);
         let bottom_nm = window.bottom_nm();
@@ -49,12 +60,35 @@ pub(super) fn anticrossing(
         let mixed_nm = 2.0 * z(0, 1);
         let gap_ev = pair[0].value - pair[1].value;
         let reach_nm2 = apart_nm * apart_nm + mixed_nm * mixed_nm;
-        let step = -gap_ev * apart_nm / reach_nm2;
-        if !step.is_finite() {
+        let here = Tried {
+            field,
+            slope: gap_ev * apart_nm,
+        };
+        let two_levels = -here.slope / reach_nm2;
+        if here.slope < 0.0 {
+            below = Some(here);
+        } else {
+            above = Some(here);
+        }
+        let step = match (below, above, last) {
+            (Some(low), Some(high), Some(last)) => {
+                let secant =
+                    here.field - here.slope * (here.field - last.field) / (here.slope - last.slope);
+                let inside = secant > low.field && secant < high.field;
+                let next = match inside {
+                    true => secant,
+                    false => 0.5 * (low.field + high.field),
+                };
+                next - field
+            }
+            _ => two_levels,
+        };
+        last = Some(here);
+        if !step.is_finite() || (field + step - design).abs() > furthest {
             return None;
         }
-        if step.abs() * reach_nm2.sqrt() < LAST_STEP_EV {
-            return Some(Anticrossing {
+        if two_levels.abs().min(step.abs()) * reach_nm2.sqrt() < LAST_STEP_EV {
+            return same(window, &pencil, design_pair, &pair).then_some(Anticrossing {
                 field_v_per_nm: field,
                 gap_ev: gap_ev.abs(),
             });
@@ -62,9 +96,6 @@ pub(super) fn anticrossing(
         let longest = LONGEST_STEP * design.abs();
         let step = step.clamp(-longest, longest);
         field += step;
-        if (field - design).abs() > FURTHEST * design.abs() {
-            return None;
-        }
         pencil = window.pencil(field, order);
         let middle_ev =
             0.5 * (pair[0].value + pair[1].value) + 0.5 * step * (heights_nm[0] + heights_nm[1]);
@@ -76,6 +107,14 @@ pub(super) fn anticrossing(
         })?;
     }
     None
+}
+
+/// Whether two states still hold most of two others.
+fn same(window: &Window, pencil: &Pencil, design: [&Eigenpair; 2], pair: &[Eigenpair; 2]) -> bool {
+    let parts = pair.iter().flat_map(|state| {
+        design.map(|other| window.overlap_moved(pencil, other, state, 0).powi(2))
+    });
+    parts.sum::<f64>() > SAME
 }
 
 /// The two states that hold most of the space of two others.

@@ -1,12 +1,12 @@
 //! The ladder of levels of a cascade: states come in families, one of each in every module, and a period along growth
 //! changes the energy by e F d exactly (Wannier, Phys. Rev. 117, 432 (1960)).
 //!
-//! One module in the middle of a window of modules stands for all. A state belongs to the module that its centre lies in.
-//! It is taken for a state of the ladder when the next module downstream holds the same envelope at the energy that the
-//! ladder demands; what the window's ends make, and what spreads over the continuum, has no such partner.
+//! One module in a window of modules stands for all. A state belongs to the module that its centre lies in. It is taken
+//! for a state of the ladder when the module before holds the same envelope at the energy that the ladder demands; what
+//! the window's ends make, and what spreads over the continuum, has no such partner.
 
 use super::anticrossing::{Anticrossing, anticrossing};
-use super::window::Window;
+use super::window::{Neighbours, Window};
 use crate::models::BandOperator;
 use crate::numerics::eigenpairs::{Eigenpair, improvements};
 use crate::optics::transitions;
@@ -17,13 +17,19 @@ use std::collections::BTreeMap;
 const ORDERS: [usize; 2] = [8, 12];
 const ORDER_STEP: usize = 2;
 const MOST_HALVINGS: usize = 2;
-/// Modules on either side of the middle one: first, and at most.
-const EACH_SIDE: [usize; 2] = [1, 4];
-/// The window is wide enough when one more module at either end moves no listed level by more than this, in eV.
-const SETTLED_EV: f64 = 1e-7;
-/// A state of the ladder finds itself in the next module with at least this overlap …
+/// The module before needs a neighbour on either side as well.
+const NARROW: Neighbours = Neighbours {
+    upstream: 2,
+    downstream: 1,
+};
+/// What tells how much the ends of the narrow window matter.
+const WIDE: Neighbours = Neighbours {
+    upstream: 3,
+    downstream: 2,
+};
+/// A state of the ladder finds itself in the module before with at least this overlap …
 const SAME: f64 = 0.9;
-/// … and at most this far from e F d lower, in eV.
+/// … and at most this far from e F d higher, in eV.
 const OFF_LADDER_EV: f64 = 1e-3;
 /// Levels nearer than this are followed to where they come nearest, in eV.
 const ALIGNED_EV: f64 = 1e-2;
@@ -52,10 +58,10 @@ pub struct LadderState {
     pub layer_share: f64,
     /// The part of the state inside of its module.
     pub module_share: f64,
-    /// How far the same state of the next module is from where the ladder demands.
+    /// How far the same state of the module before is from where the ladder demands.
     pub ladder_residual_ev: f64,
-    /// How far the last widening of the window moved the level; `None` when it was not in the narrower one.
-    pub window_shift_ev: Option<f64>,
+    /// How far two more modules in the window move the level: what leaves downstream makes it depend on them.
+    pub window_shift_ev: f64,
 }
 
 /// Light between two states, in one module or from one module down to the next.
@@ -108,48 +114,51 @@ pub struct Ladder {
     pub left_out: usize,
     /// Modules in the window.
     pub modules: usize,
-    /// Whether the window was wide enough.
-    pub settled: bool,
     /// Squared envelopes of the states and the band edge: height above the module's lower face in nm, 1/nm or eV.
     pub envelopes: Vec<Vec<[f64; 2]>>,
     pub edge: Vec<[f64; 2]>,
 }
 
-/// What a window says of its middle module.
+/// What a window says of its module.
 struct Solved {
     subbands: Subbands,
-    /// States of the middle module, and the same in the next one downstream: numbers of pairs of `subbands`.
+    /// States of the module, and the same in the one before: numbers of pairs of `subbands`.
     families: Vec<[usize; 2]>,
     left_out: usize,
 }
 
 /// The `count` lowest states of a module, or as many as there are on the ladder.
 pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
-    let mut known: Option<Vec<f64>> = None;
-    let mut each_side = EACH_SIDE[0];
-    loop {
-        let mut window = Window::new(module.operator, each_side, module.field_v_per_nm);
-        let (solved, order) = accurate(module, &mut window, count, accuracy);
-        let energies: Vec<f64> = solved
-            .families
-            .iter()
-            .map(|[own, _]| solved.subbands.pairs[*own].value)
-            .collect();
-        let shifts: Vec<Option<f64>> = energies
-            .iter()
-            .enumerate()
-            .map(|(k, energy)| Some((energy - known.as_ref()?.get(k)?).abs()))
-            .collect();
-        let same_number = known.as_ref().is_some_and(|k| k.len() == energies.len());
-        let still = |shift: &Option<f64>| shift.is_some_and(|shift| shift < SETTLED_EV);
-        let settled = same_number && shifts.iter().all(still);
-        if settled || each_side == EACH_SIDE[1] {
-            return described(module, &window, order, &solved, &shifts, settled);
-        }
-        known = Some(energies);
-        each_side += 1;
-    }
+    ladder_in(module, NARROW, count, accuracy)
 }
+
+/// As [`ladder`], with so many neighbours in the window; at least two before the module and one behind it.
+pub fn ladder_in(
+    module: Module,
+    neighbours: Neighbours,
+    count: usize,
+    accuracy: Accuracy,
+) -> Ladder {
+    let field = module.field_v_per_nm;
+    let mut window = Window::new(module.operator, neighbours, field);
+    let (solved, order) = accurate(module, &mut window, count, accuracy);
+    let wide = Window::new(module.operator, WIDE, field);
+    let pencil = wide.pencil(field, order);
+    let shifts: Vec<f64> = solved
+        .families
+        .iter()
+        .map(|[own, _]| {
+            let level_ev = solved.subbands.pairs[*own].value;
+            let near = wide.states(&pencil, [level_ev - SEARCHED_EV, level_ev + SEARCHED_EV]);
+            let distances = near.iter().map(|pair| (pair.value - level_ev).abs());
+            distances.fold(SEARCHED_EV, f64::min)
+        })
+        .collect();
+    described(module, &window, order, &solved, &shifts)
+}
+
+/// How far a level is looked for in the wide window, in eV.
+const SEARCHED_EV: f64 = 3e-3;
 
 /// Solves a window on elements that are fine enough, and says their order.
 fn accurate(
@@ -188,7 +197,7 @@ fn solve(module: Module, window: &Window, count: usize, order: usize) -> Solved 
     let drop_ev = field.abs() * window.period_nm;
     let pencil = window.pencil(field, order);
     let [low_ev, high_ev] = window.middle_edges_ev(&pencil);
-    let states = window.states(&pencil, [low_ev - drop_ev, high_ev]);
+    let states = window.states(&pencil, [low_ev, high_ev + drop_ev]);
     let all = Subbands::of_conduction(module.operator.band(), pencil, states, Vec::new());
     let mut chosen: Vec<[usize; 2]> = Vec::new();
     let mut left_out = 0;
@@ -196,10 +205,10 @@ fn solve(module: Module, window: &Window, count: usize, order: usize) -> Solved 
         if chosen.len() == count {
             break;
         }
-        if state.value < low_ev || !centred(window, &all, index) {
+        if state.value > high_ev || !centred(window, &all, index) {
             continue;
         }
-        match partner(window, &all, index, drop_ev, downstream(field)) {
+        match partner(window, &all, index, drop_ev, -downstream(field)) {
             Some(other) => chosen.push([index, other]),
             None => left_out += 1,
         }
@@ -223,27 +232,27 @@ fn solve(module: Module, window: &Window, count: usize, order: usize) -> Solved 
     }
 }
 
-/// Whether a state's centre lies in the middle module. A border belongs to the module upstream of it.
+/// Whether a state's centre lies in the module. A border belongs to the module above it.
 fn centred(window: &Window, all: &Subbands, index: usize) -> bool {
     let pair = &all.pairs[index];
     let z_nm = crate::numerics::sensitivity::moment(&all.pencil, pair, pair) + window.bottom_nm();
     (0.0..window.period_nm).contains(&z_nm)
 }
 
-/// The same state one module downstream.
+/// The same state one module before, `upstream` periods along growth.
 fn partner(
     window: &Window,
     all: &Subbands,
     index: usize,
     drop_ev: f64,
-    downstream: isize,
+    upstream: isize,
 ) -> Option<usize> {
-    let wanted_ev = all.pairs[index].value - drop_ev;
+    let wanted_ev = all.pairs[index].value + drop_ev;
     let near = |k: &usize| (all.pairs[*k].value - wanted_ev).abs() < OFF_LADDER_EV;
     let overlap = |k: usize| {
         let (state, other) = (&all.pairs[index], &all.pairs[k]);
         window
-            .overlap_moved(&all.pencil, state, other, downstream)
+            .overlap_moved(&all.pencil, state, other, upstream)
             .abs()
     };
     (0..all.pairs.len())
@@ -259,8 +268,7 @@ fn described(
     window: &Window,
     order: usize,
     solved: &Solved,
-    shifts: &[Option<f64>],
-    settled: bool,
+    shifts: &[f64],
 ) -> Ladder {
     let Solved {
         subbands,
@@ -274,7 +282,7 @@ fn described(
     let known = subbands.states();
     let amplitudes = amplitudes(subbands);
     let nodes = order + 1;
-    let states = families.iter().zip(shifts).map(|([own, next], shift)| {
+    let states = families.iter().zip(shifts).map(|([own, before], shift)| {
         let state = &known[*own];
         let inside = subbands.pencil.mesh.elements.iter().enumerate();
         let module_share = inside
@@ -292,7 +300,7 @@ fn described(
             layer: window.layer_of(state.layer),
             layer_share: state.layer_share,
             module_share,
-            ladder_residual_ev: state.energy_ev - known[*next].energy_ev - drop_ev,
+            ladder_residual_ev: known[*before].energy_ev - state.energy_ev - drop_ev,
             window_shift_ev: *shift,
         }
     });
@@ -307,8 +315,8 @@ fn described(
     let start = (&subbands.pencil, field);
     let mut align = |upstream: usize, downstream: usize, next_module: bool| {
         let [a, b] = [
-            families[upstream][0],
-            families[downstream][usize::from(next_module)],
+            families[upstream][usize::from(next_module)],
+            families[downstream][0],
         ];
         let (first, second) = (&subbands.pairs[a], &subbands.pairs[b]);
         let detuning_ev = first.value - second.value;
@@ -332,7 +340,7 @@ fn described(
                 align(upper, lower, true);
             }
             for next in [false, true] {
-                let [a, b] = [families[upper][0], families[lower][usize::from(next)]];
+                let [a, b] = [families[upper][usize::from(next)], families[lower][0]];
                 let falls = subbands.pairs[a].value > subbands.pairs[b].value;
                 if let Some(t) = between(a, b).filter(|_| falls) {
                     list.push(LadderTransition {
@@ -359,7 +367,6 @@ fn described(
         alignments,
         left_out: *left_out,
         modules: window.modules,
-        settled,
         envelopes: families
             .iter()
             .map(|[own, _]| envelope(subbands, *own, bottom_nm))
@@ -390,7 +397,7 @@ fn envelope(subbands: &Subbands, index: usize, bottom_nm: f64) -> Vec<[f64; 2]> 
     points
 }
 
-/// The band edge of the middle module, in eV.
+/// The band edge of the module, in eV.
 fn edge(window: &Window, subbands: &Subbands, bottom_nm: f64) -> Vec<[f64; 2]> {
     let pencil = &subbands.pencil;
     let middle = window.middle();

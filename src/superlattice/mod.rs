@@ -9,7 +9,8 @@ mod window;
 
 pub use anticrossing::Anticrossing;
 pub use density::{DensityPoint, density_of_states};
-pub use ladder::{Alignment, Ladder, LadderState, LadderTransition, Module, ladder};
+pub use ladder::{Alignment, Ladder, LadderState, LadderTransition, Module, ladder, ladder_in};
 pub use minibands::{
     Dispersed, Miniband, MinibandTransition, Minibands, NO_GAP_EV, Zone, minibands,
 };
+pub use window::Neighbours;

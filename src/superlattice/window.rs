@@ -1,5 +1,9 @@
-//! A few modules of a cascade in a field, between pads of their highest barrier in which the edge is level: the least of
-//! the cascade that a module in its middle does not feel the end of.
+//! A few modules of a cascade in a field, between pads of their highest barrier: the least of the cascade in which a module
+//! does not feel the ends.
+//!
+//! Upstream every barrier stands higher than the one before, so nothing is lost by ending there. Downstream they fall until
+//! a state of the module lies above them: it can leave, and no stationary state is exactly its own. The pad there is level
+//! and as high as the module's own highest edge, so that the window adds no states to those of its modules.
 
 use crate::models::{BandOperator, raised};
 use crate::numerics::eigenpairs::{Eigenpair, between};
@@ -11,7 +15,14 @@ use crate::subbands::pieces_up_to;
 /// Width of each pad: envelopes that reach an end of the window have died out long before.
 const PAD_NM: f64 = 20.0;
 
-/// A window of modules; the one in the middle counts.
+/// How many modules stand before and behind the one that counts, in the direction in which electrons lose energy.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Neighbours {
+    pub upstream: usize,
+    pub downstream: usize,
+}
+
+/// A window of modules, one of which counts.
 #[derive(Clone, Debug)]
 pub(super) struct Window<'s> {
     /// Of the stack of one module.
@@ -21,15 +32,16 @@ pub(super) struct Window<'s> {
     lengths_nm: Vec<f64>,
     pieces: Vec<usize>,
     pub modules: usize,
+    /// Modules below the one that counts.
+    below: usize,
     pub period_nm: f64,
 }
 
 impl<'s> Window<'s> {
-    /// `each_side` modules on either side of the middle one. The operator is that of one module, whose bottom and top
-    /// layers follow one another in the cascade.
+    /// The operator is that of one module, whose top and bottom layers follow one another in the cascade.
     pub fn new(
         operator: &'s BandOperator<'s>,
-        each_side: usize,
+        neighbours: Neighbours,
         field_v_per_nm: f64,
     ) -> Window<'s> {
         let module = operator.stack();
@@ -37,7 +49,12 @@ impl<'s> Window<'s> {
             .map(|layer| (layer, operator.at(layer, 0.5, 0.0).constant))
             .max_by(|a, b| a.1.total_cmp(&b.1).then(b.0.cmp(&a.0)))
             .map_or(0, |(layer, _)| layer);
-        let modules = 2 * each_side + 1;
+        let modules = neighbours.upstream + 1 + neighbours.downstream;
+        let below = if field_v_per_nm < 0.0 {
+            neighbours.upstream
+        } else {
+            neighbours.downstream
+        };
         let mut layers = vec![highest];
         let mut lengths_nm = vec![PAD_NM];
         for _ in 0..modules {
@@ -52,6 +69,7 @@ impl<'s> Window<'s> {
             layers,
             lengths_nm,
             modules,
+            below,
             period_nm: module.total_width_nm(),
         };
         let sample = window.pencil(field_v_per_nm, 2);
@@ -78,39 +96,61 @@ impl<'s> Window<'s> {
         self.pieces.iter_mut().for_each(|n| *n *= 2);
     }
 
-    /// The height of the window's bottom above the lower face of the middle module: negative.
+    /// The height of the window's bottom above the lower face of the module: negative.
     pub fn bottom_nm(&self) -> f64 {
-        -(PAD_NM + (self.modules / 2) as f64 * self.period_nm)
+        -(PAD_NM + self.below as f64 * self.period_nm)
     }
 
-    /// The problem in a field. The field's energy is zero at the lower face of the middle module.
+    /// The highest edge of the module in a field, in eV.
+    fn top_ev(&self, field_v_per_nm: f64) -> f64 {
+        let mut top_ev = f64::NEG_INFINITY;
+        let mut z_nm = 0.0;
+        for (layer, own) in self.module().layers.iter().enumerate() {
+            for t in [0.0, 1.0] {
+                let edge_ev = self.operator.at(layer, t, 0.0).constant;
+                top_ev = top_ev.max(edge_ev + field_v_per_nm * (z_nm + t * own.width_nm));
+            }
+            z_nm += own.width_nm;
+        }
+        top_ev
+    }
+
+    /// The problem in a field. The field's energy is zero at the lower face of the module.
     pub fn pencil(&self, field_v_per_nm: f64, order: usize) -> Pencil {
         let bottom_nm = self.bottom_nm();
-        let ends = [
-            bottom_nm + PAD_NM,
-            bottom_nm + PAD_NM + self.modules as f64 * self.period_nm,
-        ];
+        let last = self.layers.len() - 1;
+        let first_face_nm = bottom_nm + PAD_NM;
+        let last_face_nm = first_face_nm + self.modules as f64 * self.period_nm;
+        let top_ev = self.top_ev(field_v_per_nm);
         let mesh = Mesh::new(&self.lengths_nm, &self.pieces, order);
         Pencil::new(mesh, |mesh, element, q| {
-            let z_nm = (bottom_nm + mesh.position(element, q)).clamp(ends[0], ends[1]);
             let layer = self.layers[element.segment];
             let own = self.operator.at(layer, mesh.fraction(element, q), 0.0);
-            raised(own, field_v_per_nm * z_nm)
+            let face_nm = match element.segment {
+                0 => first_face_nm,
+                segment if segment == last => last_face_nm,
+                _ => {
+                    let z_nm = bottom_nm + mesh.position(element, q);
+                    return raised(own, field_v_per_nm * z_nm);
+                }
+            };
+            let level_ev = (own.constant + field_v_per_nm * face_nm).max(top_ev);
+            raised(own, level_ev - own.constant)
         })
     }
 
-    /// The segments of the middle module.
+    /// The segments of the module.
     pub fn middle(&self) -> std::ops::Range<usize> {
         let count = self.module().layers.len();
-        let first = 1 + (self.modules / 2) * count;
+        let first = 1 + self.below * count;
         first..first + count
     }
 
-    /// The module of a segment, counted from the middle one; `None` for a pad.
+    /// The module of a segment, counted from the one that counts; `None` for a pad.
     pub fn module_of(&self, segment: usize) -> Option<isize> {
         let count = self.module().layers.len();
         let copy = (segment.checked_sub(1)?) / count;
-        (copy < self.modules).then(|| copy as isize - (self.modules / 2) as isize)
+        (copy < self.modules).then(|| copy as isize - self.below as isize)
     }
 
     /// The layer of the module that a segment is.
@@ -118,7 +158,7 @@ impl<'s> Window<'s> {
         self.layers[segment]
     }
 
-    /// The lowest and the highest band edge of the middle module, the field included, in eV.
+    /// The lowest and the highest band edge of the module, the field included, in eV.
     pub fn middle_edges_ev(&self, pencil: &Pencil) -> [f64; 2] {
         let middle = self.middle();
         let own = pencil.mesh.elements.iter().enumerate();
