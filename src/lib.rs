@@ -21,9 +21,9 @@ pub mod models;
 
 pub mod subbands;
 
-pub mod superlattice;
-
 pub mod optics;
+
+pub mod superlattice;
 
 pub mod tune;
 

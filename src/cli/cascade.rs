@@ -12,6 +12,9 @@ use crate::subbands::Accuracy;
 use crate::superlattice::{Ladder, Module, ladder};
 use std::path::Path;
 
+/// Bounds of what is a cascade's module; common practice is a tenth of either.
+const LONGEST_NM: f64 = 1000.0;
+const DEEPEST_EV: f64 = 3.0;
 /// Shifts below this change no printed digit of an energy.
 const NOTICED_EV: f64 = 1e-5;
 
@@ -49,6 +52,18 @@ pub fn cascade(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let band = Band::Conduction(input.structure.conduction.model);
     let operator = BandOperator::new(&module, band)
         .map_err(|(layer, reason)| input.unsuitable(repeated.first + layer, &reason))?;
+    let period_nm = module.total_width_nm();
+    let drop_ev = input.stack.field_v_per_nm.abs() * period_nm;
+    if period_nm > LONGEST_NM || drop_ev > DEEPEST_EV {
+        return Err(refuse(
+            Diagnostic::error(format!(
+                "the repeat is {period_nm:.0} nm thick, and an electron loses {drop_ev:.2} eV in it"
+            ))
+            .expected(format!(
+                "a module of at most {LONGEST_NM} nm that takes at most {DEEPEST_EV} eV"
+            )),
+        ));
+    }
     let asked = input.structure.conduction.states;
     let found = ladder(
         Module {

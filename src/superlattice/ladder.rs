@@ -17,18 +17,15 @@ use std::collections::BTreeMap;
 const ORDERS: [usize; 2] = [8, 12];
 const ORDER_STEP: usize = 2;
 const MOST_HALVINGS: usize = 2;
-/// The module before needs a neighbour on either side as well.
-const NARROW: Neighbours = Neighbours {
-    upstream: 2,
-    downstream: 1,
-};
-/// What tells how much the ends of the narrow window matter.
-const WIDE: Neighbours = Neighbours {
-    upstream: 3,
-    downstream: 2,
-};
+/// Modules before the one that counts: the one before needs a neighbour on either side as well.
+const UPSTREAM: usize = 2;
+/// Modules behind it that are tried. A state that can leave meets states there that depend on where the window ends; where
+/// it happens to meet one at its own energy it is split in two, and missed. Another end moves them.
+const DOWNSTREAM: [usize; 3] = [1, 2, 3];
+/// Sums of energies differ by more than this, in eV, where a state is missed.
+const MISSED_EV: f64 = 1e-3;
 /// A state of the ladder finds itself in the module before with at least this overlap …
-const SAME: f64 = 0.9;
+const SAME: f64 = 0.8;
 /// … and at most this far from e F d higher, in eV.
 const OFF_LADDER_EV: f64 = 1e-3;
 /// Levels nearer than this are followed to where they come nearest, in eV.
@@ -127,9 +124,31 @@ struct Solved {
     left_out: usize,
 }
 
-/// The `count` lowest states of a module, or as many as there are on the ladder.
+/// The `count` lowest states of a module, or as many as there are on the ladder: from the narrowest window that misses
+/// none that another one shows.
 pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
-    ladder_in(module, NARROW, count, accuracy)
+    let tried = DOWNSTREAM.map(|downstream| {
+        let neighbours = Neighbours {
+            upstream: UPSTREAM,
+            downstream,
+        };
+        (neighbours, accurate(module, neighbours, count, accuracy))
+    });
+    let most = tried.iter().map(|(_, t)| t.solved.families.len()).max();
+    let sum_ev = |tried: &Tried| {
+        let own = tried.solved.families.iter();
+        own.map(|[own, _]| tried.solved.subbands.pairs[*own].value)
+            .sum::<f64>()
+    };
+    let full = || {
+        let full = tried.iter();
+        full.filter(|(_, t)| Some(t.solved.families.len()) == most)
+    };
+    let least_ev = full().map(|(_, t)| sum_ev(t)).fold(f64::INFINITY, f64::min);
+    let best = full()
+        .find(|(_, t)| sum_ev(t) < least_ev + MISSED_EV)
+        .unwrap_or(&tried[0]);
+    described(module, best.0, &best.1)
 }
 
 /// As [`ladder`], with so many neighbours in the window; at least two before the module and one behind it.
@@ -139,47 +158,58 @@ pub fn ladder_in(
     count: usize,
     accuracy: Accuracy,
 ) -> Ladder {
-    let field = module.field_v_per_nm;
-    let mut window = Window::new(module.operator, neighbours, field);
-    let (solved, order) = accurate(module, &mut window, count, accuracy);
-    let wide = Window::new(module.operator, WIDE, field);
-    let pencil = wide.pencil(field, order);
-    let shifts: Vec<f64> = solved
-        .families
-        .iter()
+    let tried = accurate(module, neighbours, count, accuracy);
+    described(module, neighbours, &tried)
+}
+
+/// How far two more modules move each level.
+fn window_shifts(module: Module, neighbours: Neighbours, tried: &Tried) -> Vec<f64> {
+    let wider = Neighbours {
+        upstream: neighbours.upstream + 1,
+        downstream: neighbours.downstream + 1,
+    };
+    let wide = Window::new(module.operator, wider, module.field_v_per_nm);
+    let pencil = wide.pencil(module.field_v_per_nm, tried.order);
+    let families = tried.solved.families.iter();
+    families
         .map(|[own, _]| {
-            let level_ev = solved.subbands.pairs[*own].value;
+            let level_ev = tried.solved.subbands.pairs[*own].value;
             let near = wide.states(&pencil, [level_ev - SEARCHED_EV, level_ev + SEARCHED_EV]);
             let distances = near.iter().map(|pair| (pair.value - level_ev).abs());
             distances.fold(SEARCHED_EV, f64::min)
         })
-        .collect();
-    described(module, &window, order, &solved, &shifts)
+        .collect()
 }
 
 /// How far a level is looked for in the wide window, in eV.
 const SEARCHED_EV: f64 = 3e-3;
 
-/// Solves a window on elements that are fine enough, and says their order.
-fn accurate(
-    module: Module,
-    window: &mut Window,
+/// A window that was solved on elements that are fine enough.
+struct Tried<'s> {
+    window: Window<'s>,
+    order: usize,
+    solved: Solved,
+}
+
+fn accurate<'s>(
+    module: Module<'s>,
+    neighbours: Neighbours,
     count: usize,
     accuracy: Accuracy,
-) -> (Solved, usize) {
+) -> Tried<'s> {
+    let mut window = Window::new(module.operator, neighbours, module.field_v_per_nm);
     let mut halvings = 0;
     loop {
         for order in ORDERS {
-            let solved = solve(module, window, count, order);
-            let worst = solved
-                .subbands
-                .errors_ev
-                .iter()
-                .copied()
-                .fold(0.0, f64::max);
+            let solved = solve(module, &window, count, order);
+            let errors = solved.subbands.errors_ev.iter().copied();
             let last = halvings == MOST_HALVINGS && order == ORDERS[1];
-            if worst <= accuracy.tolerance_ev || last {
-                return (solved, order);
+            if errors.fold(0.0, f64::max) <= accuracy.tolerance_ev || last {
+                return Tried {
+                    window,
+                    order,
+                    solved,
+                };
             }
         }
         window.halve();
@@ -263,13 +293,14 @@ fn partner(
         .map(|(k, _)| k)
 }
 
-fn described(
-    module: Module,
-    window: &Window,
-    order: usize,
-    solved: &Solved,
-    shifts: &[f64],
-) -> Ladder {
+fn described(module: Module, neighbours: Neighbours, tried: &Tried) -> Ladder {
+    let Tried {
+        window,
+        order,
+        solved,
+    } = tried;
+    let order = *order;
+    let shifts = window_shifts(module, neighbours, tried);
     let Solved {
         subbands,
         families,
@@ -282,7 +313,7 @@ fn described(
     let known = subbands.states();
     let amplitudes = amplitudes(subbands);
     let nodes = order + 1;
-    let states = families.iter().zip(shifts).map(|([own, before], shift)| {
+    let states = families.iter().zip(&shifts).map(|([own, before], shift)| {
         let state = &known[*own];
         let inside = subbands.pencil.mesh.elements.iter().enumerate();
         let module_share = inside
