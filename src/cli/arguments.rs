@@ -89,7 +89,7 @@ pub enum Command {
         #[command(flatten)]
         output: Output,
     },
-    /// Follow the subbands of coupled bands along an in-plane wave vector
+    /// Follow the subbands of coupled bands along an in-plane wave vector; with `ends: periodic` the minibands along growth
     Dispersion {
         /// Structure file
         file: PathBuf,

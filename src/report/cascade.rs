@@ -198,7 +198,7 @@ fn picture(structure: &Structure, ladder: &Ladder) -> CascadePicture {
              envelopes of the conduction band, each standing on its energy; the numbers are those of the table of states. \
              The zero is the lowest band edge of the middle module.",
             given(ladder.period_nm, 5),
-            given(1e4 * ladder.field_v_per_nm, 4),
+            given(1e4 * ladder.field_v_per_nm, 4).replace('-', "−"),
             given(structure.temperature_k, 4),
             model_name(structure.conduction.model),
             given(1e3 * ladder.drop_ev, 4),

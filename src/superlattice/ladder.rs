@@ -24,10 +24,10 @@ const UPSTREAM: usize = 2;
 const DOWNSTREAM: [usize; 3] = [1, 2, 3];
 /// Sums of energies differ by more than this, in eV, where a state is missed.
 const MISSED_EV: f64 = 1e-3;
-/// A state of the ladder finds itself in the module before with at least this overlap …
-const SAME: f64 = 0.8;
+/// A state of the ladder finds itself in the module before with more than this overlap, as more than half of it …
+const SAME: f64 = 0.707;
 /// … and at most this far from e F d higher, in eV.
-const OFF_LADDER_EV: f64 = 1e-3;
+const OFF_LADDER_EV: f64 = 3e-3;
 /// Levels nearer than this are followed to where they come nearest, in eV.
 const ALIGNED_EV: f64 = 1e-2;
 
@@ -229,20 +229,13 @@ fn solve(module: Module, window: &Window, count: usize, order: usize) -> Solved 
     let [low_ev, high_ev] = window.middle_edges_ev(&pencil);
     let states = window.states(&pencil, [low_ev, high_ev + drop_ev]);
     let all = Subbands::of_conduction(module.operator.band(), pencil, states, Vec::new());
-    let mut chosen: Vec<[usize; 2]> = Vec::new();
-    let mut left_out = 0;
-    for (index, state) in all.pairs.iter().enumerate() {
-        if chosen.len() == count {
-            break;
-        }
-        if state.value > high_ev || !centred(window, &all, index) {
-            continue;
-        }
-        match partner(window, &all, index, drop_ev, -downstream(field)) {
-            Some(other) => chosen.push([index, other]),
-            None => left_out += 1,
-        }
-    }
+    let own: Vec<usize> = (0..all.pairs.len())
+        .filter(|index| all.pairs[*index].value <= high_ev && centred(window, &all, *index))
+        .collect();
+    let mut chosen = matched(window, &all, &own, drop_ev, -downstream(field));
+    chosen.truncate(count);
+    let top = chosen.last().map_or(0, |family| family[0]);
+    let left_out = own.iter().filter(|index| **index < top).count() + 1 - chosen.len().max(1);
     // Only what counts is kept.
     let mut numbers: BTreeMap<usize, usize> = BTreeMap::new();
     for index in chosen.iter().flatten() {
@@ -269,28 +262,36 @@ fn centred(window: &Window, all: &Subbands, index: usize) -> bool {
     (0.0..window.period_nm).contains(&z_nm)
 }
 
-/// The same state one module before, `upstream` periods along growth.
-fn partner(
+/// The states of a module with the same ones of the module before, `upstream` periods along growth, in the order of energy.
+/// The likest find each other first, and none is taken twice: of a state that is split in two only one half counts.
+fn matched(
     window: &Window,
     all: &Subbands,
-    index: usize,
+    own: &[usize],
     drop_ev: f64,
     upstream: isize,
-) -> Option<usize> {
-    let wanted_ev = all.pairs[index].value + drop_ev;
-    let near = |k: &usize| (all.pairs[*k].value - wanted_ev).abs() < OFF_LADDER_EV;
-    let overlap = |k: usize| {
-        let (state, other) = (&all.pairs[index], &all.pairs[k]);
-        window
-            .overlap_moved(&all.pencil, state, other, upstream)
-            .abs()
-    };
-    (0..all.pairs.len())
-        .filter(near)
-        .map(|k| (k, overlap(k)))
-        .filter(|(_, overlap)| *overlap > SAME)
-        .max_by(|a, b| a.1.total_cmp(&b.1))
-        .map(|(k, _)| k)
+) -> Vec<[usize; 2]> {
+    let mut likenesses: Vec<(f64, [usize; 2])> = Vec::new();
+    for &index in own {
+        let wanted_ev = all.pairs[index].value + drop_ev;
+        for (before, pair) in all.pairs.iter().enumerate() {
+            if (pair.value - wanted_ev).abs() < OFF_LADDER_EV {
+                let state = &all.pairs[index];
+                let overlap = window.overlap_moved(&all.pencil, state, pair, upstream);
+                likenesses.push((overlap.abs(), [index, before]));
+            }
+        }
+    }
+    likenesses.retain(|(overlap, _)| *overlap > SAME);
+    likenesses.sort_by(|a, b| b.0.total_cmp(&a.0));
+    let mut found: Vec<[usize; 2]> = Vec::new();
+    for (_, family) in likenesses {
+        if found.iter().all(|f| f[0] != family[0] && f[1] != family[1]) {
+            found.push(family);
+        }
+    }
+    found.sort();
+    found
 }
 
 fn described(module: Module, neighbours: Neighbours, tried: &Tried) -> Ladder {

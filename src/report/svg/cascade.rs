@@ -132,7 +132,12 @@ impl CascadePicture {
                         .collect();
                     let weight = if shift == 0.0 { 0.9 } else { 0.6 };
                     let stroke = palette::state(index, weight);
-                    let line = simplified(&points, INVISIBLE_PT);
+                    let mut line = simplified(&points, INVISIBLE_PT);
+                    // What the panel's side cuts off ends on its level.
+                    if let (Some(first), Some(last)) = (points.first(), points.last()) {
+                        line.insert(0, [first[0], level]);
+                        line.push([last[0], level]);
+                    }
                     page.tinted(&line, if shift == 0.0 { TINT } else { 0.5 * TINT }, stroke);
                 }
             }
@@ -143,7 +148,7 @@ impl CascadePicture {
             &mut page,
             horizontal,
             bottom,
-            "z from the middle module (nm)",
+            "z from the module's lower face (nm)",
         );
         page.group("names", |page| {
             let style = Style {
