@@ -215,7 +215,8 @@ fn anticrossings_are_where_a_scan_of_the_field_finds_them() {
         (least - crossing.gap_ev).abs() < 1e-7,
         "{least} {crossing:?}"
     );
-    for step in [-2e-2, -1e-2, 1e-2, 2e-2] {
+    // Further off other levels come near the two.
+    for step in [-4e-3, -2e-3, 2e-3, 4e-3] {
         assert!(distance(crossing.field_v_per_nm * (1.0 + step)) > least);
     }
 }
