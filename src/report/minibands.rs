@@ -50,11 +50,12 @@ struct MinibandRow {
     index: usize,
     bottom_eV: f64,
     top_eV: f64,
-    bottom_from_edge_meV: f64,
+    /// Of the edge nearer to the band gap.
+    from_edge_meV: f64,
     width_meV: f64,
     gap_to_next_meV: f64,
     error_meV: f64,
-    /// Of the edges along growth: negative where the energy bends away from the band's own sense.
+    /// Along growth; for holes that of the hole.
     bottom_mass: Option<f64>,
     top_mass: Option<f64>,
     bottom_at: &'static str,
@@ -113,7 +114,7 @@ fn rows(period: &Stack, bands: &[Minibands]) -> Vec<MinibandRow> {
                 index: index + 1,
                 bottom_eV: bottom.energy_ev,
                 top_eV: top.energy_ev,
-                bottom_from_edge_meV: 1e3 * (bottom.energy_ev - solved.edge_ev),
+                from_edge_meV: 1e3 * (near.energy_ev - solved.edge_ev).abs(),
                 width_meV: 1e3 * miniband.width_ev(),
                 gap_to_next_meV: 1e3 * miniband.gap_ev,
                 error_meV: 1e3 * near.error_ev.max(far.error_ev),
@@ -167,7 +168,7 @@ fn miniband_table(rows: &[MinibandRow]) -> String {
             format!("{} {}", row.band, row.index),
             format!("{:.5}", row.bottom_eV),
             format!("{:.5}", row.top_eV),
-            format!("{:.2}", row.bottom_from_edge_meV),
+            format!("{:.2}", row.from_edge_meV),
             width_text(row.width_meV),
             if row.gap_to_next_meV < 1e3 * NO_GAP_EV {
                 "none".to_owned()
@@ -248,7 +249,7 @@ impl Report for MinibandLevels {
             .collect();
         let worst = |of: fn(&AuditRow) -> f64| self.audit.iter().map(of).fold(0.0, f64::max);
         format!(
-            "{}{}\nMasses along growth in m0, from ∂²E/∂q² at the edge; negative where the energy falls from it.\n\n{transitions}\n\
+            "{}{}\nMasses along growth in m0, from ∂²E/∂q² at the edge; negative where an electron's energy falls from it, or a hole's rises.\n\n{transitions}\n\
              Dipole: |<from|v|to>|ħ/energy from the velocity. Strength: 2 m0 E |z|²/ħ² with the free-electron mass.\n\
              Audit {}: velocity and slope {:.0e}, overlaps {:.0e}, levels counted in every gap.\n",
             self.head.text(),
