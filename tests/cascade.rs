@@ -9,7 +9,9 @@ use serde_json::Value;
 use wellwright::models::BandOperator;
 use wellwright::structure;
 use wellwright::subbands::{Accuracy, solve};
-use wellwright::superlattice::{Alignment, Ladder, Module, Neighbours, ladder, ladder_in};
+use wellwright::superlattice::{
+    Alignment, Ladder, Module, Neighbours, ladder, ladder_in, minibands,
+};
 
 /// Alternating barriers and wells in Å, the first a barrier, as a module that is repeated.
 struct Cascade<'s> {
@@ -220,6 +222,53 @@ fn anticrossings_are_where_a_scan_of_the_field_finds_them() {
         assert!(distance(crossing.field_v_per_nm * (1.0 + step)) > least);
     }
 }
+
+/// A superlattice in a field: the levels of a miniband of width Δ in the tight-binding limit are the ladder E₀ + n e F d,
+/// with E₀ the middle of the miniband, and spread over Δ/e F (Wannier 1960; Bleuse, Bastard and Voisin, Phys. Rev. Lett. 60,
+/// 220 (1988), from memory).
+#[test]
+fn a_superlattice_in_a_field_has_the_ladder_of_its_miniband() {
+    let superlattice = Cascade {
+        sequence: &[60.0, 60.0],
+        barrier_ev: 0.25,
+        masses: [0.067, 0.067],
+        field_kv_cm: 1.0,
+        states: 1,
+        ..HELD
+    };
+    let found = superlattice.ladder();
+    let state = &found.states[0];
+    assert!(state.ladder_residual_ev.abs() < 1e-8, "{state:?}");
+    assert!(state.window_shift_ev < 1e-8, "{state:?}");
+    let text = superlattice
+        .file(2)
+        .replace("field: 1 kV/cm", "ends: periodic");
+    let (structure, problems) = structure::read(&text);
+    let structure = structure.unwrap_or_else(|| panic!("{problems:?}"));
+    let period = structure.period(&structure.stack().unwrap());
+    let operator = BandOperator::conduction(&period, structure.conduction.model).unwrap();
+    let miniband = minibands(&operator, 1, Accuracy::default())
+        .minibands
+        .remove(0);
+    let [low, high] = miniband.edges.map(|edge| edge.energy_ev);
+    // The well's middle lies 9 nm above the lower face.
+    let expected = 0.5 * (low + high) + 1e-4 * 9.0;
+    let apart = (state.energy_ev - expected).rem_euclid(found.drop_ev);
+    let apart = apart.min(found.drop_ev - apart);
+    assert!(apart < 0.01 * (high - low), "{apart} {}", high - low);
+    // ⟨(z − z₀)²⟩ = 2 (t/e F)² beside the spread of the envelope in one well, with Δ = 4 t.
+    let hopping_nm = (0.25 * (high - low) / 1e-4) * 2f64.sqrt();
+    let one_well_nm = HELD_SPREAD_NM;
+    let spread_nm = hopping_nm.hypot(one_well_nm);
+    assert!(
+        (state.extent_nm / spread_nm - 1.0).abs() < 0.05,
+        "{} {spread_nm}",
+        state.extent_nm
+    );
+}
+
+/// Standard deviation of the ground state of a 6 nm well, about: that of a box 7.6 nm wide, L √(1/12 − 1/2π²).
+const HELD_SPREAD_NM: f64 = 7.6 * 0.1808;
 
 struct Row {
     device: &'static str,

@@ -59,6 +59,11 @@ pub fn cascade(file: &Path, output: &Output) -> Result<Exit, Exit> {
             Diagnostic::error(format!(
                 "the repeat is {period_nm:.0} nm thick, and an electron loses {drop_ev:.2} eV in it"
             ))
+            .at(input
+                .structure
+                .field
+                .as_ref()
+                .map_or(0..0, |field| field.span.clone()))
             .expected(format!(
                 "a module of at most {LONGEST_NM} nm that takes at most {DEEPEST_EV} eV"
             )),
@@ -100,6 +105,14 @@ fn doubts(found: &Ladder, asked: usize) -> Vec<String> {
     }
     for (k, state) in found.states.iter().enumerate() {
         if state.window_shift_ev > NOTICED_EV {
+            if state.extent_nm > 0.5 * found.period_nm {
+                doubts.push(format!(
+                    "state {} spreads over more modules than are solved together, or leaves them: its energy is known to about {:.2} meV",
+                    k + 1,
+                    1e3 * state.window_shift_ev
+                ));
+                continue;
+            }
             doubts.push(format!(
                 "state {} can leave downstream: its energy depends on what lies there by about {:.2} meV",
                 k + 1,

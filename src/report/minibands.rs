@@ -5,7 +5,9 @@ use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::models::model_name;
 use crate::structure::{Stack, Structure};
-use crate::superlattice::{DensityPoint, Dispersed, Minibands, NO_GAP_EV, Zone, density_of_states};
+use crate::superlattice::{
+    DensityPoint, Dispersed, FLAT_EV, Minibands, NO_GAP_EV, Zone, density_of_states,
+};
 use serde::Serialize;
 use std::f64::consts::PI;
 
@@ -169,7 +171,11 @@ fn miniband_table(rows: &[MinibandRow]) -> String {
             format!("{:.5}", row.bottom_eV),
             format!("{:.5}", row.top_eV),
             format!("{:.2}", row.from_edge_meV),
-            width_text(row.width_meV),
+            if row.width_meV < 1e3 * FLAT_EV {
+                "flat".to_owned()
+            } else {
+                width_text(row.width_meV)
+            },
             if row.gap_to_next_meV < 1e3 * NO_GAP_EV {
                 "none".to_owned()
             } else {
@@ -237,7 +243,11 @@ impl Report for MinibandLevels {
                         significant(t.wavelength_um, 4),
                         format!("{:.3}", t.dipole_nm),
                         format!("{:.3}", t.oscillator_strength),
-                        significant(t.momentum_eV, 4),
+                        if t.momentum_eV < 1e-6 {
+                            "0".to_owned()
+                        } else {
+                            significant(t.momentum_eV, 4)
+                        },
                     ]
                 })
                 .collect(),

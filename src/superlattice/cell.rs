@@ -58,6 +58,10 @@ impl<'s> Cell<'s> {
         }
     }
 
+    pub fn layers(&self) -> usize {
+        self.operator.stack().layers.len()
+    }
+
     pub fn pencil(&self, mesh: Mesh) -> Pencil {
         Pencil::new(mesh, |mesh, element, q| self.at(mesh, element, q))
     }

@@ -22,6 +22,14 @@ const UPSTREAM: usize = 2;
 /// Modules behind it that are tried. A state that can leave meets states there that depend on where the window ends; where
 /// it happens to meet one at its own energy it is split in two, and missed. Another end moves them.
 const DOWNSTREAM: [usize; 3] = [1, 2, 3];
+/// Neighbours on either side that are tried where the states spread beyond a window: in a weak field, or a superlattice.
+const SPREAD: [usize; 3] = [5, 10, 20];
+/// States that spread over more than this part of a module may need them …
+const WIDE_STATE: f64 = 0.5;
+/// … when two more modules move a level by more than this, in eV …
+const UNSETTLED_EV: f64 = 1e-8;
+/// … and are of use when they bring that down to this part.
+const BETTER: f64 = 0.1;
 /// Sums of energies differ by more than this, in eV, where a state is missed.
 const MISSED_EV: f64 = 1e-3;
 /// A state of the ladder finds itself in the module before with more than this overlap, as more than half of it …
@@ -148,7 +156,34 @@ pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
     let best = full()
         .find(|(_, t)| sum_ev(t) < least_ev + MISSED_EV)
         .unwrap_or(&tried[0]);
-    described(module, best.0, &best.1)
+    let mut found = described(module, best.0, &best.1);
+    for each_side in SPREAD {
+        let spread = |s: &LadderState| s.extent_nm > WIDE_STATE * found.period_nm;
+        let none = found.states.is_empty();
+        let settled = found.worst_shift_ev() < UNSETTLED_EV;
+        if !none && (settled || !found.states.iter().any(spread)) {
+            break;
+        }
+        let neighbours = Neighbours {
+            upstream: each_side,
+            downstream: each_side,
+        };
+        let wider = ladder_in(module, neighbours, count, accuracy);
+        let complete = wider.states.len() >= found.states.len();
+        if !none && (!complete || wider.worst_shift_ev() > BETTER * found.worst_shift_ev()) {
+            break;
+        }
+        found = wider;
+    }
+    found
+}
+
+impl Ladder {
+    /// The most that two more modules in the window move a level.
+    fn worst_shift_ev(&self) -> f64 {
+        let shifts = self.states.iter().map(|s| s.window_shift_ev);
+        shifts.fold(0.0, f64::max)
+    }
 }
 
 /// As [`ladder`], with so many neighbours in the window; at least two before the module and one behind it.

@@ -17,6 +17,8 @@ use std::f64::consts::PI;
 
 /// A gap below this is none: no more is known of two energies that are each exact to a hundredth of a µeV.
 pub const NO_GAP_EV: f64 = 2e-8;
+/// A miniband narrower than this is flat: rounding leaves nothing of its masses.
+pub const FLAT_EV: f64 = 1e-11;
 /// Orders of the elements, each with the one that tells its error.
 const ORDERS: [[usize; 2]; 2] = [[8, 10], [12, 14]];
 /// Halvings of the elements after which the error that is reached is reported as it is.
@@ -50,8 +52,10 @@ pub struct Edge {
     pub error_ev: f64,
     pub zone: Zone,
     /// ħ²/(∂²E/∂q²) in free-electron masses, for holes that of the hole: negative at the edge far from the band gap.
-    /// `None` where the miniband touches its neighbour, or nothing moves along growth.
+    /// `None` where the miniband touches its neighbour, or is flat.
     pub mass_m0: Option<f64>,
+    /// Whether the miniband touches its neighbour here.
+    pub touching: bool,
     /// 1/m∥ is the mean of 1/m(E, z) in the state.
     pub in_plane_mass_m0: f64,
 }
@@ -185,13 +189,15 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
             } else {
                 condensed.wave(value, zone.phase())
             };
+            let flat = (solved.levels[band][0] - solved.levels[band][1]).abs() < FLAT_EV;
             let curvature = condensed.curvature(zone.phase()) * period_nm * period_nm;
             let mass = 2.0 * HBAR2_OVER_2M0 / curvature;
             let edge = Edge {
                 energy_ev: sign * value,
                 error_ev: solved.errors_ev[band][at],
                 zone,
-                mass_m0: (!touching && mass.is_finite()).then_some(mass),
+                touching,
+                mass_m0: (!touching && !flat && mass.is_finite()).then_some(mass),
                 in_plane_mass_m0: in_plane(&wave),
             };
             waves[at].push(wave);
@@ -222,7 +228,7 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
         let touches = |band: usize| {
             edges[band]
                 .iter()
-                .any(|edge| edge.zone == zone && edge.mass_m0.is_none())
+                .any(|edge| edge.zone == zone && edge.touching)
         };
         for from in 0..count {
             for to in from + 1..count {
@@ -385,7 +391,7 @@ impl Minibands {
             }
             let touches = |band: usize| {
                 let edges = &self.minibands[band].edges;
-                edges.iter().any(|edge| edge.mass_m0.is_none())
+                edges.iter().any(|edge| edge.touching)
             };
             for other in 0..band {
                 if !touches(band) && !touches(other) {
@@ -465,7 +471,7 @@ fn in_plane_stiffness(operator: &BandOperator, cell: &Cell, mesh: &Mesh) -> Opti
 
 /// The layer with the largest share of a wave, all components together.
 fn fullest_layer(cell: &Cell, pencil: &Pencil, wave: &Wave) -> (usize, f64) {
-    let mut shares = vec![0.0; cell.lengths_nm.len()];
+    let mut shares = vec![0.0; cell.layers()];
     for_each_node(pencil, [&wave.real, &wave.imaginary], |w, e, q, v, s| {
         let element = &pencil.mesh.elements[e];
         let (layer, _) = cell.place(&pencil.mesh, element, q);

@@ -11,6 +11,6 @@ pub use anticrossing::Anticrossing;
 pub use density::{DensityPoint, density_of_states};
 pub use ladder::{Alignment, Ladder, LadderState, LadderTransition, Module, ladder, ladder_in};
 pub use minibands::{
-    Dispersed, Miniband, MinibandTransition, Minibands, NO_GAP_EV, Zone, minibands,
+    Dispersed, FLAT_EV, Miniband, MinibandTransition, Minibands, NO_GAP_EV, Zone, minibands,
 };
 pub use window::Neighbours;
