@@ -261,7 +261,7 @@ impl Report for MinibandLevels {
         format!(
             "{}{}\nMasses along growth in m0, from ∂²E/∂q² at the edge; negative where an electron's energy falls from it, or a hole's rises.\n\n{transitions}\n\
              Dipole: |<from|v|to>|ħ/energy from the velocity. Strength: 2 m0 E |z|²/ħ² with the free-electron mass.\n\
-             Audit {}: velocity and slope {:.0e}, overlaps {:.0e}, levels counted in every gap.\n",
+             Audit {}: velocity and slope {:.0e}, overlaps {:.0e}{}.\n",
             self.head.text(),
             miniband_table(&self.minibands),
             if verdicts.is_empty() {
@@ -271,6 +271,11 @@ impl Report for MinibandLevels {
             },
             worst(|a| a.velocity_slope),
             worst(|a| a.orthonormality),
+            if self.audit.iter().all(|a| a.counts_match) {
+                ", levels counted in every gap"
+            } else {
+                ""
+            },
         )
     }
 

@@ -34,8 +34,10 @@ const BETTER: f64 = 0.1;
 const MISSED_EV: f64 = 1e-3;
 /// A state of the ladder finds itself in the module before with more than this overlap, as more than half of it …
 const SAME: f64 = 0.707;
-/// … and at most this far from e F d higher, in eV.
+/// … and at most this far from e F d higher, in eV …
 const OFF_LADDER_EV: f64 = 3e-3;
+/// … and in parts of e F d, so that no state is taken for its own partner.
+const OFF_LADDER: f64 = 0.3;
 /// Levels nearer than this are followed to where they come nearest, in eV.
 const ALIGNED_EV: f64 = 1e-2;
 
@@ -160,7 +162,7 @@ pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
     for each_side in SPREAD {
         let spread = |s: &LadderState| s.extent_nm > WIDE_STATE * found.period_nm;
         let none = found.states.is_empty();
-        let settled = found.worst_shift_ev() < UNSETTLED_EV;
+        let settled = found.worst_shift_ev(count) < UNSETTLED_EV;
         if !none && (settled || !found.states.iter().any(spread)) {
             break;
         }
@@ -170,7 +172,9 @@ pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
         };
         let wider = ladder_in(module, neighbours, count, accuracy);
         let complete = wider.states.len() >= found.states.len();
-        if !none && (!complete || wider.worst_shift_ev() > BETTER * found.worst_shift_ev()) {
+        let better = wider.worst_shift_ev(found.states.len())
+            <= BETTER * found.worst_shift_ev(found.states.len());
+        if !none && !(complete && better) {
             break;
         }
         found = wider;
@@ -179,10 +183,10 @@ pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
 }
 
 impl Ladder {
-    /// The most that two more modules in the window move a level.
-    fn worst_shift_ev(&self) -> f64 {
-        let shifts = self.states.iter().map(|s| s.window_shift_ev);
-        shifts.fold(0.0, f64::max)
+    /// The most that two more modules in the window move one of the lowest levels.
+    fn worst_shift_ev(&self, lowest: usize) -> f64 {
+        let lowest = self.states.iter().take(lowest);
+        lowest.map(|s| s.window_shift_ev).fold(0.0, f64::max)
     }
 }
 
@@ -307,10 +311,11 @@ fn matched(
     upstream: isize,
 ) -> Vec<[usize; 2]> {
     let mut likenesses: Vec<(f64, [usize; 2])> = Vec::new();
+    let furthest_ev = OFF_LADDER_EV.min(OFF_LADDER * drop_ev);
     for &index in own {
         let wanted_ev = all.pairs[index].value + drop_ev;
         for (before, pair) in all.pairs.iter().enumerate() {
-            if (pair.value - wanted_ev).abs() < OFF_LADDER_EV {
+            if (pair.value - wanted_ev).abs() < furthest_ev {
                 let state = &all.pairs[index];
                 let overlap = window.overlap_moved(&all.pencil, state, pair, upstream);
                 likenesses.push((overlap.abs(), [index, before]));

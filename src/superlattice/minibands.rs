@@ -17,6 +17,11 @@ use std::f64::consts::PI;
 
 /// A gap below this is none: no more is known of two energies that are each exact to a hundredth of a µeV.
 pub const NO_GAP_EV: f64 = 2e-8;
+/// The same for levels so high above the floor that rounding is more.
+fn smallest_gap_ev(above_floor_ev: f64) -> f64 {
+    NO_GAP_EV.max(1e-11 * above_floor_ev)
+}
+
 /// A miniband narrower than this is flat: rounding leaves nothing of its masses.
 pub const FLAT_EV: f64 = 1e-11;
 /// Orders of the elements, each with the one that tells its error.
@@ -179,7 +184,8 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
             let value = solved.levels[band][at];
             let below = band.checked_sub(1).map(|b| value - solved.levels[b][at]);
             let above = solved.levels[band + 1][at] - value;
-            let touching = below.is_some_and(|gap| gap < NO_GAP_EV) || above < NO_GAP_EV;
+            let smallest_ev = smallest_gap_ev(value - solved.pencil.floor());
+            let touching = below.is_some_and(|gap| gap < smallest_ev) || above < smallest_ev;
             let condensed = Condensed::at(&solved.pencil, value);
             let wave = if touching {
                 // The two states are not told apart here, but are a little inside.
@@ -214,10 +220,13 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
     let nearest = |band: usize| solved.levels[band][0].min(solved.levels[band][1]);
     let minibands = edges.iter().enumerate().map(|(band, edges)| {
         let at = usize::from(edges[0].zone == Zone::Border);
+        let far = sign * edges[1].energy_ev;
+        let gap_ev = nearest(band + 1) - far;
+        let smallest_ev = smallest_gap_ev(far - solved.pencil.floor());
         let (layer, layer_share) = fullest_layer(&cell, &solved.pencil, &waves[at][band]);
         Miniband {
             edges: *edges,
-            gap_ev: (nearest(band + 1) - sign * edges[1].energy_ev).max(0.0),
+            gap_ev: if gap_ev < smallest_ev { 0.0 } else { gap_ev },
             layer,
             layer_share,
         }
@@ -384,7 +393,7 @@ impl Minibands {
             let (mean, size) = mean_velocity(&self.pencil, &wave);
             audit.velocity = audit.velocity.max((mean - slope).abs() / size);
             let miniband = &self.minibands[band];
-            if miniband.gap_ev > NO_GAP_EV {
+            if miniband.gap_ev > 0.0 {
                 let edge = self.band.sign() * miniband.edges[1].energy_ev;
                 let inside = Condensed::at(&self.pencil, edge + 0.5 * miniband.gap_ev);
                 audit.counted &= [0.0, PI].iter().all(|p| inside.count(*p) == band + 1);
