@@ -25,6 +25,8 @@ pub mod charge;
 
 pub mod optics;
 
+pub mod superlattice;
+
 pub mod tune;
 
 pub mod tolerance;

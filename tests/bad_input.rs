@@ -787,7 +787,7 @@ fn parts_that_are_not_there_yet_are_said_to_be_so() {
         &with_head("ends: open"),
         1,
         7,
-        &["not available yet", "`walls`"],
+        &["not available yet", "`walls` or `periodic`"],
     );
 }
 

@@ -281,7 +281,7 @@ fn parts_that_are_not_available() {
     let with = |head: &str| format!("{head}\n{LAYERS}");
     mistakes(
         &with("ends: open"),
-        &[(1, 7, &["not available yet", "`walls`"])],
+        &[(1, 7, &["not available yet", "`walls` or `periodic`"])],
     );
     mistakes(
         &with("ends: wals"),

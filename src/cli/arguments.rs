@@ -106,7 +106,16 @@ pub enum Command {
         #[arg(short, long, value_name = "FILE")]
         output: Option<PathBuf>,
     },
-    /// Follow the subbands of coupled bands along an in-plane wave vector
+    /// The ladder of levels of a module that is repeated in a field: states, transitions inside and to the next module,
+    /// alignments and anticrossing gaps
+    Cascade {
+        /// Structure file with a `repeat` and a field
+        file: PathBuf,
+        /// A file name ending in .svg receives the picture
+        #[command(flatten)]
+        output: Output,
+    },
+    /// Follow the subbands of coupled bands along an in-plane wave vector; with `ends: periodic` the minibands along growth
     Dispersion {
         /// Structure file
         file: PathBuf,

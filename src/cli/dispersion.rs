@@ -3,12 +3,13 @@
 use super::arguments::{Along, Coupled, Output};
 use super::deliver::{Exit, check_output, complain, deliver, show, write};
 use super::input::Input;
+use super::minibands;
 use crate::diagnostics::Diagnostic;
 use crate::models::Band;
 use crate::models::multiband::{Direction, MultibandModel, MultibandOperator};
 use crate::report::Dispersion;
 use crate::report::svg::Width;
-use crate::structure::{Charge, Structure};
+use crate::structure::{Charge, Ends, Structure};
 use crate::subbands::multiband::{Wanted, follow_multiband, solve_multiband, zone_centre_masses};
 use crate::units::{self, Dimension};
 use std::path::Path;
@@ -29,6 +30,9 @@ pub fn dispersion(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    if input.structure.ends == Ends::Periodic {
+        return minibands::dispersion(&input, points, output, file);
+    }
     let furthest = match units::parse(to, &[Dimension::WaveVector]) {
         Ok(quantity) if quantity.value() > 0.0 && quantity.value() <= LARGEST_PER_NM => {
             quantity.value()

@@ -1,12 +1,14 @@
 //! The command line. Only this module touches files, the terminal and the environment.
 
 mod arguments;
+mod cascade;
 mod check;
 mod deliver;
 mod dispersion;
 mod input;
 mod levels;
 mod materials;
+mod minibands;
 mod output;
 mod plot;
 mod progress;

@@ -2,7 +2,7 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, dispersion, levels, materials, plot, sheet, sweep, tolerance, tune};
+use super::{cascade, check, dispersion, levels, materials, plot, sheet, sweep, tolerance, tune};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -49,6 +49,7 @@ pub fn run(arguments: Arguments) -> Exit {
             points,
             output,
         } => dispersion::dispersion(&file, (model, states), (along, &to, points), &output),
+        Command::Cascade { file, output } => cascade::cascade(&file, &output),
         Command::Materials {
             formula,
             temperature,

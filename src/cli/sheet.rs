@@ -3,6 +3,7 @@
 use super::arguments::{Format, SheetFormat};
 use super::deliver::{Exit, check_output, deliver, print, show, write};
 use super::input::Input;
+use super::minibands;
 use super::plot::diagram;
 use super::tolerance::worked_out;
 use crate::diagnostics::Diagnostic;
@@ -11,7 +12,7 @@ use crate::models::Band;
 use crate::optics::photoluminescence;
 use crate::report::Sheet;
 use crate::report::svg::{Width, sensitivity_bars, yield_histogram};
-use crate::structure::Level;
+use crate::structure::{Ends, Level};
 use crate::subbands::Accuracy;
 use std::path::Path;
 
@@ -40,7 +41,13 @@ pub fn sheet(
     };
     let aims = input.structure.tune.iter().flat_map(|tune| &tune.aims);
     let named: Vec<Level> = aims.flat_map(|aim| [aim.from, aim.to]).collect();
-    let asked = Band::holding(&input.structure, &named);
+    let mut asked = Band::holding(&input.structure, &named);
+    // A period repeated for ever has minibands, and no levels to list.
+    let periodic = input.structure.ends == Ends::Periodic;
+    if periodic {
+        asked.truncate(1);
+        asked[0].1 = 0;
+    }
     let solution = input.solved(&asked)?;
     let bands = &solution.bands;
     let mut shown = bands.asked_for(&input.structure);
@@ -52,7 +59,7 @@ pub fn sheet(
     input.doubt_all(bands, &shown);
     input.doubt_charge(solution.equilibrium.as_ref());
     let mut peaks = Vec::new();
-    for temperature_k in BENCH_K {
+    for temperature_k in BENCH_K.into_iter().filter(|_| !periodic) {
         let charge = &input.structure.charge;
         let accuracy = Accuracy::default();
         let peak = photoluminescence(&input.stack, charge, &asked, temperature_k, accuracy);
@@ -78,7 +85,12 @@ pub fn sheet(
         SheetFormat::Html => {
             let alone = bands.conduction();
             let mut pictures = Vec::new();
-            if alone.is_some() {
+            if periodic {
+                pictures.push((
+                    "Minibands along growth and their density of states".to_owned(),
+                    minibands::picture(&input)?,
+                ));
+            } else if alone.is_some() {
                 pictures.push((
                     "Band edges and squared envelopes at their energies".to_owned(),
                     diagram(&input, &solution, &shown).svg(Width::Page),
@@ -89,7 +101,8 @@ pub fn sheet(
                 show(&Diagnostic::warning(left_out), &input.name, &input.text);
             }
             let layers = input.stack.layers.len();
-            let sampled = input.structure.tolerance.is_some() && alone.is_some();
+            // Tolerances are those of levels.
+            let sampled = input.structure.tolerance.is_some() && alone.is_some() && !periodic;
             if sampled && layers > MOST_SAMPLED_LAYERS {
                 let left_out = format!(
                     "the yield of {layers} layers is not sampled for the page: `plot --what yield` draws it in its own time"

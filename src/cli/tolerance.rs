@@ -3,6 +3,7 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver, show};
 use super::input::Input;
+use super::minibands::refuse_periodic;
 use super::progress::SearchProgress;
 use super::threads::pool;
 use crate::diagnostics::Diagnostic;
@@ -19,6 +20,7 @@ pub fn tolerance(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    refuse_periodic(&input, "`tolerance`")?;
     input.without_coupled("tolerances are those of")?;
     if input.structure.tolerance.is_none() {
         let doubt = Diagnostic::warning("there is no `tolerance` block, so nothing is sampled")

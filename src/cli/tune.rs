@@ -3,6 +3,7 @@
 use super::arguments::Format;
 use super::deliver::{Exit, check_output, complain, deliver, show, write};
 use super::input::Input;
+use super::minibands::refuse_periodic;
 use super::progress::SearchProgress;
 use crate::diagnostics::Diagnostic;
 use crate::report::Tuning;
@@ -13,6 +14,7 @@ use std::path::{Path, PathBuf};
 
 pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
+    refuse_periodic(&input, "`tune`")?;
     for output in outputs {
         check_output(Some(output), file)?;
     }

@@ -225,14 +225,7 @@ impl<'s> BandOperator<'s> {
     /// A and C at fraction `t` of a layer, `z_nm` above the bottom of the stack, with the energy of field and charge:
     /// eV nm² and eV.
     pub fn at(&self, layer: usize, t: f64, z_nm: f64) -> Coefficient {
-        let own = if self.stack.is_uniform(layer) || t <= 0.0 {
-            self.bottoms[layer]
-        } else {
-            // A grade runs between materials that were checked; should a point in between fail, the face stands in.
-            let material = self.stack.material_at(layer, t);
-            coefficient(self.band, &material, self.stack.substrate_lattice_nm())
-                .unwrap_or(self.bottoms[layer])
-        };
+        let own = self.flat(layer, t);
         let charge_ev = self
             .stack
             .potential
@@ -243,6 +236,17 @@ impl<'s> BandOperator<'s> {
             });
         let energy_ev = self.stack.field_v_per_nm * z_nm + charge_ev;
         raised(own, self.band.sign() * energy_ev)
+    }
+
+    /// A and C at fraction `t` of a layer without field and charge.
+    pub fn flat(&self, layer: usize, t: f64) -> Coefficient {
+        if self.stack.is_uniform(layer) || t <= 0.0 {
+            return self.bottoms[layer];
+        }
+        // A grade runs between materials that were checked; should a point in between fail, the face stands in.
+        let material = self.stack.material_at(layer, t);
+        coefficient(self.band, &material, self.stack.substrate_lattice_nm())
+            .unwrap_or(self.bottoms[layer])
     }
 
     /// The band's edge at the bottom face of a layer without the field, in eV.
@@ -293,7 +297,7 @@ impl<'s> BandOperator<'s> {
 }
 
 /// The coefficients with the edge raised by `energy_ev`; the gap moves along.
-fn raised(mut own: Coefficient, energy_ev: f64) -> Coefficient {
+pub fn raised(mut own: Coefficient, energy_ev: f64) -> Coefficient {
     own.constant += energy_ev;
     for pole in own.poles.iter_mut().flatten() {
         pole.position += energy_ev;

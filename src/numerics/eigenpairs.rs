@@ -45,6 +45,36 @@ pub fn lowest(pencil: &Pencil, count: usize) -> Vec<Eigenpair> {
     pairs
 }
 
+/// All eigenpairs from `low` up to `high`, in ascending order.
+pub fn between(pencil: &Pencil, low: f64, high: f64) -> Vec<Eigenpair> {
+    let floor = pencil.floor();
+    let mut search = Search {
+        pencil,
+        known: vec![(floor, 0)],
+        range: (high - floor).max(f64::MIN_POSITIVE),
+        spare: None,
+    };
+    let mut below = 0;
+    let mut all = 0;
+    for (lambda, count) in [(low, &mut below), (high, &mut all)] {
+        if lambda > floor {
+            let factored = search.factor(lambda);
+            *count = search.note(lambda, factored);
+        }
+    }
+    let mut pairs: Vec<Eigenpair> = Vec::new();
+    while below + pairs.len() < all {
+        let found = search.next_pairs(below + pairs.len() + 1);
+        pairs.extend(found);
+    }
+    pairs.truncate(all - below);
+    orthonormalise(pencil, &mut pairs, NEIGHBOURS * search.range);
+    for pair in &mut pairs {
+        fix_sign(&mut pair.vector);
+    }
+    pairs
+}
+
 /// Number of levels below λ.
 pub fn count_below(pencil: &Pencil, lambda: f64) -> usize {
     let mut matrix = pencil.storage();

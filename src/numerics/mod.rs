@@ -14,5 +14,6 @@ pub mod nearest;
 pub mod pencil;
 pub mod polyline;
 pub mod quadrature;
+pub mod quasiperiodic;
 pub mod sensitivity;
 pub mod shared_points;

@@ -208,6 +208,15 @@ impl Pencil {
 
     /// T(λ) x for a nodal vector x that vanishes at both ends; the result is set to zero there as well.
     pub fn times(&self, lambda: f64, x: &[f64]) -> Vec<f64> {
+        let mut out = self.times_with_ends(lambda, x);
+        out[0] = 0.0;
+        out[x.len() - 1] = 0.0;
+        out
+    }
+
+    /// T(λ) x with the end nodes taken in: where x solves the equation inside, the result is −A x′ at the start, A x′ at
+    /// the end and zero between.
+    pub fn times_with_ends(&self, lambda: f64, x: &[f64]) -> Vec<f64> {
         let reference = self.mesh.reference;
         let p = reference.order;
         let mut out = vec![0.0; x.len()];
@@ -223,8 +232,6 @@ impl Pencil {
             }
             reference.add_slopes_transposed(&slopes[..=p], target);
         }
-        out[0] = 0.0;
-        out[x.len() - 1] = 0.0;
         out
     }
 

@@ -1,5 +1,6 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod cascade;
 mod charge;
 mod check;
 mod dispersion;
@@ -7,6 +8,7 @@ mod interband;
 mod layer_edges;
 mod levels;
 mod materials;
+mod minibands;
 mod sheet;
 mod sheet_csv;
 mod sheet_html;
@@ -21,11 +23,13 @@ mod table;
 mod tolerance;
 mod tuning;
 
+pub use cascade::Cascade;
 pub use charge::ChargeReport;
 pub use check::Check;
 pub use dispersion::Dispersion;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
+pub use minibands::{MinibandLevels, Minizone};
 pub use sheet::Sheet;
 pub use sweep::Sweeps;
 pub use tolerance::Tolerances;

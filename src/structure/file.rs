@@ -40,6 +40,7 @@ pub struct Structure {
     pub temperature_k: f64,
     /// The field along the growth direction; `None` when the file has no such key.
     pub field: Option<Spanned<Quantity>>,
+    pub ends: Ends,
     pub conduction: ConductionBand,
     /// The valence bands, if they are to be solved.
     pub valence: Option<ValenceBand>,
@@ -68,6 +69,15 @@ impl Structure {
         self.conduction.model == ConductionModel::EightBand
             || holes.is_some_and(|model| model != ValenceModel::Decoupled)
     }
+}
+
+/// What lies beyond the two ends of the stack.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ends {
+    /// Walls, at which the envelopes vanish.
+    Walls,
+    /// The same layers again, for ever.
+    Periodic,
 }
 
 /// The conduction band that is to be solved.

@@ -11,6 +11,7 @@ mod fields;
 mod file;
 mod grade;
 mod growth;
+mod period;
 mod potential;
 mod read;
 mod read_aims;
@@ -31,11 +32,12 @@ mod wafer;
 
 pub use charge::{Bending, Charge, Ionisation};
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level,
+    Aim, BandName, ConductionBand, ConductionModel, Ends, Follow, Item, Keep, LayerEntry, Level,
     PlaneEntry, Profile, Spanned, StrainBound, Structure, Target, Tune, ValenceBand, ValenceModel,
     Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
+pub use period::{NoModule, Repeated};
 pub use potential::Potential;
 pub use read::read;
 pub use read_sweep::MOST_POINTS;

@@ -4,7 +4,7 @@ use super::charge::Charge;
 use super::document::{self, Node, Value};
 use super::fields::{Checker, Fields, Limits};
 use super::file::{
-    BandName, ConductionBand, ConductionModel, Spanned, Structure, ValenceBand, ValenceModel,
+    BandName, ConductionBand, ConductionModel, Ends, Spanned, Structure, ValenceBand, ValenceModel,
 };
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
@@ -60,6 +60,7 @@ pub fn read(text: &str) -> (Option<Structure>, Vec<Diagnostic>) {
             Ok(stack) => {
                 problems.extend(super::doubts::doubts(structure, &stack));
                 problems.extend(read_charge::unfitting(structure, &stack));
+                problems.extend(super::period::not_periodic(structure));
                 if let Some(growth) = &structure.growth {
                     problems.extend(read_growth::of_stack(growth, structure, &stack));
                 }
@@ -115,9 +116,9 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let field = fields
         .get("field")
         .map(|node| checker.quantity(node, &[Dimension::Field], FIELD_LIMITS));
-    if let Some(node) = fields.get("ends") {
-        ends(checker, node);
-    }
+    let ends = fields
+        .get("ends")
+        .map_or(Ends::Walls, |node| ends(checker, node));
     let (conduction, valence) = match fields.get("bands") {
         Some(node) => bands(checker, node),
         None => (conduction_default(), None),
@@ -179,6 +180,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         temperature_k: settled(temperature)?
             .map_or(DEFAULT_TEMPERATURE_K, |found| found.value.value()),
         field: settled(field)?,
+        ends,
         conduction,
         valence,
         library: materials.library,
@@ -225,13 +227,18 @@ fn key_span(root: &Node, name: &str) -> Option<std::ops::Range<usize>> {
         .map(|(key, _)| key.span.clone())
 }
 
-fn ends(checker: &mut Checker, node: &Node) {
-    if let Some(word @ ("open" | "periodic")) = checker.word(node, &["walls", "open", "periodic"]) {
-        checker.report(
-            Diagnostic::error(format!("`ends: {word}` is not available yet"))
-                .at(node.span.clone())
-                .expected("`walls`"),
-        );
+fn ends(checker: &mut Checker, node: &Node) -> Ends {
+    match checker.word(node, &["walls", "open", "periodic"]) {
+        Some("periodic") => Ends::Periodic,
+        Some("open") => {
+            checker.report(
+                Diagnostic::error("`ends: open` is not available yet")
+                    .at(node.span.clone())
+                    .expected("`walls` or `periodic`"),
+            );
+            Ends::Walls
+        }
+        _ => Ends::Walls,
     }
 }
 

@@ -6,6 +6,7 @@ mod change;
 mod coupled;
 mod curves;
 mod envelope;
+mod in_plane;
 pub mod multiband;
 mod nearby;
 mod resolution;
@@ -18,10 +19,12 @@ pub use change::{change, coupled_change};
 pub use coupled::Coupled;
 pub use curves::{Curves, StateCurves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
+pub use in_plane::{InPlaneNodes, in_plane};
 pub use nearby::{Nearby, lower_outer_edge_ev};
+pub use resolution::pieces_up_to;
 pub use state::{Hold, State, in_plane_mass_m0};
 
-use crate::models::{Band, BandOperator, InPlane};
+use crate::models::{Band, BandOperator};
 use crate::numerics::eigenpairs::{self, Eigenpair};
 use crate::numerics::mesh::Mesh;
 use crate::numerics::pencil::Pencil;
@@ -62,7 +65,7 @@ pub struct Subbands {
     /// Estimated discretisation error of each energy, eV.
     pub errors_ev: Vec<f64>,
     /// ħ²/2m∥ at the nodes of each element, where it is not the pencil's A.
-    in_plane: Option<Vec<Option<InPlane>>>,
+    in_plane: InPlaneNodes,
 }
 
 /// Solves for the `count` lowest states; fewer come back only when the stack is too small a box to hold them on the
@@ -109,29 +112,13 @@ pub fn on_mesh(operator: &BandOperator, mesh: Mesh, count: usize) -> Subbands {
     let errors_ev = eigenpairs::improvements(&pencil, &pairs, &finer);
     Subbands {
         band: operator.band(),
-        in_plane: in_plane(operator, &pencil.mesh),
+        in_plane: in_plane(operator, &pencil, |element, q| {
+            (element.segment, pencil.mesh.fraction(element, q))
+        }),
         pencil,
         pairs,
         errors_ev: errors_ev.into_iter().map(f64::abs).collect(),
     }
-}
-
-/// Where no node has a mass in the plane of its own, none is kept.
-fn in_plane(operator: &BandOperator, mesh: &Mesh) -> Option<Vec<Option<InPlane>>> {
-    let mut list = Vec::new();
-    for element in &mesh.elements {
-        let uniform = operator.stack().is_uniform(element.segment);
-        let first = operator.in_plane(element.segment, 0.0);
-        for q in 0..=mesh.order() {
-            let here = match uniform {
-                true => first.clone(),
-                false => operator.in_plane(element.segment, mesh.fraction(element, q)),
-            };
-            let raised_ev = operator.stack().field_v_per_nm * mesh.position(element, q);
-            list.push(here.map(|in_plane| in_plane.raised(raised_ev)));
-        }
-    }
-    list.iter().any(Option::is_some).then_some(list)
 }
 
 fn pencil_on(operator: &BandOperator, mesh: Mesh) -> Pencil {
@@ -145,6 +132,23 @@ fn pencil_on(operator: &BandOperator, mesh: Mesh) -> Pencil {
 }
 
 impl Subbands {
+    /// Solutions of the conduction band that were found on a pencil of the caller's, with their errors.
+    pub fn of_conduction(
+        band: Band,
+        pencil: Pencil,
+        pairs: Vec<Eigenpair>,
+        errors_ev: Vec<f64>,
+        in_plane: InPlaneNodes,
+    ) -> Subbands {
+        Subbands {
+            band,
+            pencil,
+            pairs,
+            errors_ev,
+            in_plane,
+        }
+    }
+
     /// The energy of a state, on the absolute scale, in eV.
     pub fn energy_ev(&self, index: usize) -> f64 {
         self.band.sign() * self.pairs[index].value

@@ -90,8 +90,14 @@ impl Ran {
     }
 }
 
-/// All structure files that come with the program, by name.
+/// The structure files that come with the program and can be tuned, by name.
 pub fn shipped_structures() -> Vec<PathBuf> {
+    let tuned = |file: &PathBuf| std::fs::read_to_string(file).unwrap().contains("\ntune:");
+    shipped_files().into_iter().filter(tuned).collect()
+}
+
+/// All structure files that come with the program, by name.
+pub fn shipped_files() -> Vec<PathBuf> {
     let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("structures");
     let mut files: Vec<PathBuf> = std::fs::read_dir(folder)
         .unwrap()
