@@ -26,7 +26,7 @@ use nalgebra::{DMatrix, Matrix3};
 /// rounding over it.
 const SLOPE_STEP: f64 = 1e-3;
 
-/// The thickest stack in nm: twice it would take a minute, and its levels lie closer than they can be told apart.
+/// The thickest stack in nm: a superlattice of this takes some ten seconds, and more holds no further design.
 const MOST_NM: f64 = 2000.0;
 
 /// Which bands are coupled.
