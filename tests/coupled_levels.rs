@@ -555,6 +555,11 @@ fn what_does_not_fit_is_told() {
     );
     refused(
         "tune",
+        &tune("from: valence 51, to: conduction 1, energy: 1 eV"),
+        &["beyond the 50"],
+    );
+    refused(
+        "tune",
         &tune("from: valence 1, to: conduction 1, dipole: 1 nm"),
         &["a dipole along growth is between levels of one band"],
     );

@@ -26,6 +26,9 @@ use nalgebra::{DMatrix, Matrix3};
 /// rounding over it.
 const SLOPE_STEP: f64 = 1e-3;
 
+/// The thickest stack in nm: a superlattice of this takes some ten seconds, and more holds no further design.
+const MOST_NM: f64 = 2000.0;
+
 /// Which bands are coupled.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum MultibandModel {
@@ -53,6 +56,10 @@ pub enum MultibandUnsuitable {
     HeavyElectron { mass_m0: f64 },
     #[error("has a gap of {gap_ev:.3} eV: the coupling of the bands needs a positive one")]
     NoGap { gap_ev: f64 },
+    #[error(
+        "belongs to a stack of {total_nm:.0} nm, and coupled bands are solved in at most {MOST_NM} nm: leave out of the layers what holds no state"
+    )]
+    TooThick { total_nm: f64 },
 }
 
 /// A direction of k∥, or the mean over all of them.
@@ -343,12 +350,20 @@ pub struct MultibandOperator<'s> {
 }
 
 impl<'s> MultibandOperator<'s> {
-    /// Checks that every layer has what the model needs. The error carries the number of the first layer that has not.
+    /// Checks that every layer has what the model needs. The error carries the number of the first layer that has not, or
+    /// of the thickest one where all together are too thick.
     pub fn new(
         stack: &'s Stack,
         model: MultibandModel,
         direction: Direction,
     ) -> Result<Self, (usize, MultibandUnsuitable)> {
+        let total_nm = stack.total_width_nm();
+        if total_nm > MOST_NM {
+            let layers = stack.layers.iter().enumerate();
+            let thickest = layers.max_by(|a, b| a.1.width_nm.total_cmp(&b.1.width_nm));
+            let layer = thickest.map_or(0, |(layer, _)| layer);
+            return Err((layer, MultibandUnsuitable::TooThick { total_nm }));
+        }
         let mut operator = Self {
             stack,
             model,

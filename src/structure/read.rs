@@ -284,6 +284,24 @@ fn bands(checker: &mut Checker, node: &Node) -> (ConductionBand, Option<ValenceB
             );
         }
     }
+    for (side, model) in [&conduction, &valence].into_iter().zip(&sides) {
+        let coupled = eight_band || model.as_ref().is_some_and(|model| model.value == SIX_BAND);
+        if let Some(side) = side
+            && let Some(span) = &side.states_span
+            && coupled
+            && side.states > read_tune::MAX_COUPLED_LEVELS as usize
+        {
+            let most = read_tune::MAX_COUPLED_LEVELS;
+            checker.report(
+                Diagnostic::error(format!(
+                    "{} levels are too many for coupled bands",
+                    side.states
+                ))
+                .at(span.clone())
+                .expected(format!("at most {most}")),
+            );
+        }
+    }
     let default = conduction_default();
     let [conduction_model, valence_model] = sides.map(|model| model.map(|model| model.value));
     let conduction = ConductionBand {
@@ -297,7 +315,7 @@ fn bands(checker: &mut Checker, node: &Node) -> (ConductionBand, Option<ValenceB
     let valence = valence.map(|side| ValenceBand {
         model: match valence_model {
             _ if eight_band => ValenceModel::EightBand,
-            Some("six-band") => ValenceModel::SixBand,
+            Some(SIX_BAND) => ValenceModel::SixBand,
             _ => ValenceModel::Decoupled,
         },
         states: side.states,
@@ -305,14 +323,16 @@ fn bands(checker: &mut Checker, node: &Node) -> (ConductionBand, Option<ValenceB
     (conduction, valence)
 }
 
+const SIX_BAND: &str = "six-band";
 const EIGHT_BAND: &str = "eight-band";
 const CONDUCTION_MODELS: &[&str] = &["parabolic", "energy-dependent", EIGHT_BAND];
-const VALENCE_MODELS: &[&str] = &["decoupled", "six-band", EIGHT_BAND];
+const VALENCE_MODELS: &[&str] = &["decoupled", SIX_BAND, EIGHT_BAND];
 
 /// One side of the gap as it is written.
 struct WrittenBand {
     model: Option<Spanned<&'static str>>,
     states: usize,
+    states_span: Option<std::ops::Range<usize>>,
 }
 
 fn band(
@@ -325,6 +345,7 @@ fn band(
         return WrittenBand {
             model: None,
             states: DEFAULT_STATES as usize,
+            states_span: None,
         };
     };
     let model = fields.get("model").and_then(|node| {
@@ -334,6 +355,7 @@ fn band(
     WrittenBand {
         model,
         states: states(checker, &fields),
+        states_span: fields.get("states").map(|node| node.span.clone()),
     }
 }
 

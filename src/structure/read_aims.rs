@@ -3,7 +3,7 @@
 use super::document::{Node, line_of};
 use super::fields::{Checker, Fields, Limits, above};
 use super::file::{Aim, BandName, Follow, Level, Target, Within};
-use super::read_tune::MAX_LEVELS;
+use super::read_tune::{MAX_COUPLED_LEVELS, MAX_LEVELS};
 use crate::diagnostics::{Diagnostic, probably_meant};
 use crate::units::{self, Dimension};
 
@@ -170,6 +170,12 @@ pub(super) fn level(checker: &mut Checker, node: &Node, solved: &[BandName]) -> 
     let mut words = text.split_whitespace();
     let (word, index, rest) = (words.next().unwrap_or_default(), words.next(), words.next());
     let known = BandName::ALL.into_iter().find(|band| band.word() == word);
+    let coupled = known == Some(BandName::Valence) && !solved.contains(&BandName::HeavyHole);
+    let most = if coupled {
+        MAX_COUPLED_LEVELS
+    } else {
+        MAX_LEVELS
+    };
     let problem = match known {
         None => {
             let problem = Diagnostic::error(format!("`{word}` is no band"));
@@ -187,7 +193,7 @@ pub(super) fn level(checker: &mut Checker, node: &Node, solved: &[BandName]) -> 
             }
         }
         Some(band) => match (index.map(str::parse::<u32>), rest) {
-            (Some(Ok(index)), None) if (1..=MAX_LEVELS).contains(&index) => {
+            (Some(Ok(index)), None) if (1..=most).contains(&index) => {
                 return Some(Level {
                     band,
                     index: index as usize,
@@ -195,7 +201,7 @@ pub(super) fn level(checker: &mut Checker, node: &Node, solved: &[BandName]) -> 
             }
             (Some(Ok(0)), None) => Diagnostic::error("levels are counted from 1"),
             (Some(Ok(index)), None) => Diagnostic::error(format!(
-                "level {index} is beyond the {MAX_LEVELS} that can be solved"
+                "level {index} is beyond the {most} that can be solved"
             )),
             (None, _) => Diagnostic::error("the number of the level is missing"),
             _ => Diagnostic::error(format!("`{text}` is no level")),

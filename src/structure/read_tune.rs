@@ -12,6 +12,8 @@ use crate::units::{self, Dimension, Quantity};
 
 /// The highest level that can be asked for; far more than any well holds.
 pub(super) const MAX_LEVELS: u32 = 200;
+/// The same for coupled bands, whose levels lie amid all others.
+pub(super) const MAX_COUPLED_LEVELS: u32 = 50;
 
 /// More variables or aims are no design task.
 const MAX_ITEMS: usize = 100;
