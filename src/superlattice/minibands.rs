@@ -19,7 +19,7 @@ use std::f64::consts::PI;
 pub const NO_GAP_EV: f64 = 2e-8;
 /// The same for levels so high above the floor that rounding is more.
 fn smallest_gap_ev(above_floor_ev: f64) -> f64 {
-    NO_GAP_EV.max(1e-11 * above_floor_ev)
+    NO_GAP_EV.max(1e-9 * above_floor_ev)
 }
 
 /// A miniband narrower than this is flat: rounding leaves nothing of its masses.
