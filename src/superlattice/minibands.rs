@@ -247,6 +247,10 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
                 let (lower, upper) = (&waves[at][from], &waves[at][to]);
                 let energy_ev = upper.value - lower.value;
                 let velocity = velocity(&solved.pencil, lower, upper);
+                if !velocity.is_finite() {
+                    // A period far below an atom's size: its waves are lost in rounding.
+                    continue;
+                }
                 let dipole_nm = velocity.abs() / energy_ev;
                 transitions.push(MinibandTransition {
                     from,
