@@ -12,9 +12,9 @@ use crate::subbands::Accuracy;
 use crate::superlattice::{Ladder, Module, ladder};
 use std::path::Path;
 
-/// Bounds of what is a cascade's module; common practice is a tenth of either.
-const LONGEST_NM: f64 = 1000.0;
-const DEEPEST_EV: f64 = 3.0;
+/// Bounds of what is a cascade's module; common practice is a third of either.
+const LONGEST_NM: f64 = 500.0;
+const DEEPEST_EV: f64 = 1.5;
 /// Shifts below this change no printed digit of an energy.
 const NOTICED_EV: f64 = 1e-5;
 
@@ -101,7 +101,12 @@ pub fn cascade(file: &Path, output: &Output) -> Result<Exit, Exit> {
 
 fn doubts(found: &Ladder, asked: usize) -> Vec<String> {
     let mut doubts = Vec::new();
-    if found.states.len() < asked {
+    if found.states.is_empty() {
+        doubts.push(
+            "no state is on the ladder: the field is too weak, or too strong, for the states to be those of modules"
+                .to_owned(),
+        );
+    } else if found.states.len() < asked {
         doubts.push(format!(
             "of {asked} states asked for {} are on the ladder; those above are not held by the module",
             found.states.len()

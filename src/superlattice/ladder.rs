@@ -24,6 +24,9 @@ const UPSTREAM: usize = 2;
 const DOWNSTREAM: [usize; 3] = [1, 2, 3];
 /// Neighbours on either side that are tried where the states spread beyond a window: in a weak field, or a superlattice.
 const SPREAD: [usize; 3] = [5, 10, 20];
+/// They reach no further than this: beyond, the time goes into states that nobody asked for.
+const FARTHEST_EV: f64 = 1.0;
+const FARTHEST_NM: f64 = 1000.0;
 /// States that spread over more than this part of a module may need them …
 const WIDE_STATE: f64 = 0.5;
 /// … when two more modules move a level by more than this, in eV …
@@ -161,9 +164,13 @@ pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
     let mut found = described(module, best.0, &best.1);
     for each_side in SPREAD {
         let spread = |s: &LadderState| s.extent_nm > WIDE_STATE * found.period_nm;
-        let none = found.states.is_empty();
-        let settled = found.worst_shift_ev(count) < UNSETTLED_EV;
-        if !none && (settled || !found.states.iter().any(spread)) {
+        // In a weak field; else there is a state or two that leave.
+        let all_spread = found.states.iter().all(spread);
+        let settled = found.worst_shift_ev(count) < UNSETTLED_EV && !found.states.is_empty();
+        let away = each_side as f64;
+        let in_reach = away * found.drop_ev < FARTHEST_EV && away * found.period_nm < FARTHEST_NM;
+        let needed = all_spread || found.states.iter().any(spread);
+        if settled || !needed || !in_reach {
             break;
         }
         let neighbours = Neighbours {
@@ -171,13 +178,15 @@ pub fn ladder(module: Module, count: usize, accuracy: Accuracy) -> Ladder {
             downstream: each_side,
         };
         let wider = ladder_in(module, neighbours, count, accuracy);
-        let complete = wider.states.len() >= found.states.len();
-        let better = wider.worst_shift_ev(found.states.len())
-            <= BETTER * found.worst_shift_ev(found.states.len());
-        if !none && !(complete && better) {
+        let common = found.states.len().min(wider.states.len());
+        let better =
+            common > 0 && wider.worst_shift_ev(common) <= BETTER * found.worst_shift_ev(common);
+        let complete = all_spread || common == found.states.len();
+        if found.states.is_empty() || (better && complete) {
+            found = wider;
+        } else if !all_spread {
             break;
         }
-        found = wider;
     }
     found
 }

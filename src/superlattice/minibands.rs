@@ -19,7 +19,7 @@ use std::f64::consts::PI;
 pub const NO_GAP_EV: f64 = 2e-8;
 /// The same for levels so high above the floor that rounding is more.
 fn smallest_gap_ev(above_floor_ev: f64) -> f64 {
-    NO_GAP_EV.max(1e-11 * above_floor_ev)
+    NO_GAP_EV.max(1e-9 * above_floor_ev)
 }
 
 /// A miniband narrower than this is flat: rounding leaves nothing of its masses.
@@ -250,6 +250,10 @@ pub fn minibands(operator: &BandOperator, count: usize, accuracy: Accuracy) -> M
                 let (lower, upper) = (&waves[at][from], &waves[at][to]);
                 let energy_ev = upper.value - lower.value;
                 let velocity = velocity(&solved.pencil, lower, upper);
+                if !velocity.is_finite() {
+                    // A period far below an atom's size: its waves are lost in rounding.
+                    continue;
+                }
                 let dipole_nm = velocity.abs() / energy_ev;
                 transitions.push(MinibandTransition {
                     from,
