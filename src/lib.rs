@@ -21,6 +21,8 @@ pub mod models;
 
 pub mod subbands;
 
+pub mod open_ends;
+
 pub mod optics;
 
 pub mod tune;

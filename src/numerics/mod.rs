@@ -2,12 +2,15 @@
 //! here.
 
 pub mod banded;
+pub mod complex_banded;
 pub mod curvature;
 pub mod eigenpairs;
 pub mod matrix_pencil;
 pub mod mesh;
 pub mod nearby;
 pub mod nearest;
+pub mod open_pencil;
+pub mod outgoing;
 pub mod pencil;
 pub mod polyline;
 pub mod quadrature;

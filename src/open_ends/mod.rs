@@ -1,0 +1,11 @@
+//! Stacks whose ends let electrons out: quasi-bound states, transmission, absorption into the continuum.
+
+mod line;
+mod moment;
+mod quasi_bound;
+
+pub use line::{Line, Outside, PATH_ANGLE};
+pub use moment::moment;
+pub use quasi_bound::{
+    NARROWEST_EV, QuasiBound, QuasiBoundStates, WIDEST_EV, edges_ev, on_path, quasi_bound,
+};
