@@ -265,11 +265,8 @@ fn on_path(z_nm: f64, turned: bool, turns_nm: [f64; 2], turn: C64) -> C64 {
     if !turned {
         return C64::from(z_nm);
     }
-    let from = if z_nm < turns_nm[0] {
-        turns_nm[0]
-    } else {
-        turns_nm[1]
-    };
+    // The turning place itself may lie on either side of it by rounding.
+    let from = turns_nm[usize::from(2.0 * z_nm > turns_nm[0] + turns_nm[1])];
     from + (z_nm - from) * turn
 }
 
