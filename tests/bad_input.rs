@@ -784,7 +784,7 @@ fn carriage_returns_and_byte_order_marks_do_not_move_the_place() {
 #[test]
 fn parts_that_are_not_there_yet_are_said_to_be_so() {
     one_mistake(
-        &with_head("ends: open"),
+        &with_head("ends: periodic"),
         1,
         7,
         &["not available yet", "`walls`"],

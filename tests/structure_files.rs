@@ -280,7 +280,7 @@ fn quantities_of_the_file() {
 fn parts_that_are_not_available() {
     let with = |head: &str| format!("{head}\n{LAYERS}");
     mistakes(
-        &with("ends: open"),
+        &with("ends: periodic"),
         &[(1, 7, &["not available yet", "`walls`"])],
     );
     mistakes(

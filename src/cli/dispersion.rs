@@ -24,6 +24,7 @@ pub fn dispersion(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    input.with_walls("subbands are followed");
     let furthest = match units::parse(to, &[Dimension::WaveVector]) {
         Ok(quantity) if quantity.value() > 0.0 && quantity.value() <= LARGEST_PER_NM => {
             quantity.value()

@@ -4,7 +4,7 @@ use super::deliver::{Exit, complain, show};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::Unsuitable;
-use crate::structure::{self, Stack, Structure};
+use crate::structure::{self, Ends, Stack, Structure};
 use crate::subbands::{Bands, Hold, State, Subbands};
 use std::collections::BTreeSet;
 use std::fs::File;
@@ -84,6 +84,16 @@ impl Input {
         }
     }
 
+    /// Says that a command takes walls where the file has open ends.
+    pub fn with_walls(&self, what: &str) {
+        if self.structure.ends == Ends::Open {
+            let words = format!(
+                "{what} between walls at both ends: escape widths and lifetimes are left out; `levels`, `transmission` and `absorption` let electrons out"
+            );
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
+    }
+
     /// Doubts about the solutions of all bands, of each about the states that are listed.
     pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
         for (band, shown) in bands.all().iter().zip(shown) {
@@ -144,7 +154,7 @@ impl Input {
                     verb("it is", "they are"),
                 ),
                 Hold::Leaky => format!(
-                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result"
+                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result, `ends: open` gives it"
                 ),
                 Hold::Bound if shift_ev > WALL_SHIFT_EV => format!(
                     "the walls {raise} {which} ({place}) by {} {:.2} meV: make the outer layers wider",

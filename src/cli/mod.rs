@@ -1,5 +1,6 @@
 //! The command line. Only this module touches files, the terminal and the environment.
 
+mod absorption;
 mod arguments;
 mod check;
 mod deliver;
@@ -13,6 +14,7 @@ mod progress;
 mod run;
 mod sheet;
 mod tolerance;
+mod transmission;
 mod tune;
 
 pub use arguments::Arguments;

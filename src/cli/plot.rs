@@ -16,6 +16,7 @@ const LEAST_SAMPLES: u32 = 2;
 pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
+    input.with_walls("the picture shows levels");
     input.without_holes("the picture shows");
     let picture = match what {
         Picture::Bands => Some(bands(&input, width)?),

@@ -2,7 +2,9 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{check, dispersion, levels, materials, plot, sheet, tolerance, tune};
+use super::{
+    absorption, check, dispersion, levels, materials, plot, sheet, tolerance, transmission, tune,
+};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -40,6 +42,34 @@ pub fn run(arguments: Arguments) -> Exit {
             points,
             output,
         } => dispersion::dispersion(&file, (model, states), (along, &to, points), &output),
+        Command::Transmission {
+            file,
+            from,
+            to,
+            points,
+            output,
+        } => {
+            let range = (from.as_deref(), to.as_deref(), points);
+            transmission::transmission(&file, range, &output)
+        }
+        Command::Absorption {
+            file,
+            level,
+            broadening,
+            from,
+            to,
+            points,
+            output,
+        } => {
+            let range = absorption::Range {
+                level,
+                broadening: &broadening,
+                from: from.as_deref(),
+                to: to.as_deref(),
+                points,
+            };
+            absorption::absorption(&file, &range, &output)
+        }
         Command::Materials {
             formula,
             temperature,

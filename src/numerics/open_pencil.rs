@@ -82,7 +82,7 @@ pub fn conductance(lead: &Coefficient, lambda: C64) -> (C64, C64) {
     let a = flat.a(lambda);
     let above = lambda - lead.constant;
     let square = a * above;
-    let root = if square.re > 0.0 {
+    let root = if above.re > 0.0 {
         square.sqrt()
     } else {
         I * (-square).sqrt()

@@ -5,7 +5,7 @@
 //! one without a guess shows. The part is then halved until the missing one is alone; the first moment of d ln det along
 //! the border tells where it is (Delves & Lyness, Math. Comp. 21, 543 (1967)).
 
-use super::complex_banded::{C64, Determinant, I, ZERO};
+use super::complex_banded::{C64, I, ZERO};
 use super::open_pencil::{OpenPencil, product};
 
 /// An outgoing state; the bilinear norm x · N(λ, λ) x is 1.
@@ -124,14 +124,13 @@ pub fn refine(
         if !residual.is_finite() || residual > 10.0 {
             return None;
         }
-        // The first two steps turn the vector; a value taken from an unripe one may jump to a far state.
-        if step >= 2 || vector.is_some() {
-            value += change;
-        } else if step == 1 {
+        // The first step from an irregular vector turns it; a value taken from it may jump to a far state.
+        if step >= 1 || vector.is_some() {
             value += change;
         }
         let scale = value.norm() + 1.0;
-        if step >= 3 && (residual < ROUNDING * scale || residual >= before && before < SETTLED * scale) {
+        let stalled = residual >= before && before < SETTLED * scale;
+        if step >= 3 && (residual < ROUNDING * scale || stalled) {
             break;
         }
     }
@@ -257,10 +256,10 @@ fn count(pencil: &OpenPencil, region: &Region) -> (usize, C64) {
                 let middle = 0.5 * (a + b);
                 let at_middle = determinant(middle);
                 let (one, two) = (at_a.step_to(&at_middle), at_middle.step_to(&at_b));
-                let whole: C64 = Determinant::step_to(&at_a, &at_b);
+                let whole = at_a.step_to(&at_b);
                 let seen = one.norm() < LONGEST
                     && two.norm() < LONGEST
-                    && (one + two - whole).norm() < 1e-6 + LONGEST
+                    && (one + two - whole).norm() < LONGEST
                     && (one - two).norm() < LONGEST;
                 if seen || depth == MAX_DEPTH {
                     turns += one.im + two.im;

@@ -72,7 +72,12 @@ pub fn lead(operator: &BandOperator, upper: bool) -> Coefficient {
     }
 }
 
-/// The same at zero potential.
+/// The band edges just outside the lower and the upper end, in eV.
+pub fn leads_ev(operator: &BandOperator) -> [f64; 2] {
+    [false, true].map(|upper| lead(operator, upper).constant)
+}
+
+/// The coefficients of the two outermost faces at zero potential.
 fn bare(operator: &BandOperator, upper: bool) -> Coefficient {
     let last = operator.stack().layers.len() - 1;
     if upper {

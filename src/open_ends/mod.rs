@@ -7,7 +7,7 @@ mod quasi_bound;
 mod transmission;
 
 pub use absorption::{Absorption, AbsorptionLine, NoSpectrum, SUM_TO_EV, absorption};
-pub use line::{Line, Outside, PATH_ANGLE};
+pub use line::{Line, Outside, PATH_ANGLE, leads_ev};
 pub use moment::moment;
 pub use quasi_bound::{
     NARROWEST_EV, QuasiBound, QuasiBoundStates, WIDEST_EV, edges_ev, on_path, quasi_bound,

@@ -1,6 +1,8 @@
 //! Quasi-bound states: complex energies E − iΓ/2 of outgoing waves (Gamow 1928, Siegert 1939).
 
-use super::line::{Line, MAX_HALVINGS, Outside, PATH_ANGLE, Plan, falling_is_upper, lead};
+use super::line::{
+    Line, MAX_HALVINGS, Outside, PATH_ANGLE, Plan, falling_is_upper, lead, leads_ev,
+};
 use super::moment::integrate;
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0};
 use crate::models::BandOperator;
@@ -89,7 +91,7 @@ pub fn on_path(operator: &BandOperator, outside: Outside, angle: f64) -> QuasiBo
     let field = operator.stack().field_v_per_nm;
     let tilted = outside == Outside::Field && field != 0.0;
     let [floor_ev, ceiling_ev] = edges_ev(operator);
-    let ends_ev = [lead(operator, false).constant, lead(operator, true).constant];
+    let ends_ev = leads_ev(operator);
     let mut top_ev = ceiling_ev + ABOVE_EDGES_EV;
     if tilted {
         // Above the raised end a wave runs up the slope outside and comes back: no state of the stack.

@@ -4,11 +4,12 @@
 //! and the part that crosses is |ψ(top)|² (A k)_top/(A k)_bottom, that which comes back |ψ(bottom) − 1|² (quantum
 //! transmitting boundaries: Lent & Kirkner, J. Appl. Phys. 67, 6353 (1990)). Both directions give the same.
 
-use super::line::{MAX_HALVINGS, Outside, PATH_ANGLE, Plan, lead};
-use super::quasi_bound::{QuasiBound, QuasiBoundStates, quasi_bound};
+use super::line::{Line, MAX_HALVINGS, Outside, PATH_ANGLE, Plan, lead, leads_ev};
+use super::quasi_bound::{QuasiBound, QuasiBoundStates, edges_ev, quasi_bound};
 use crate::models::BandOperator;
 use crate::numerics::complex_banded::{C64, I, ONE, ZERO};
 use crate::numerics::open_pencil::conductance;
+use crate::numerics::pencil::Coefficient;
 
 /// What happens to a stream of one energy.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -70,7 +71,7 @@ pub fn transmission(operator: &BandOperator, [low_ev, high_ev]: [f64; 2], count:
         found,
         ..
     } = quasi_bound(operator, Outside::Flat);
-    let leads_ev = [false, true].map(|upper| lead(operator, upper).constant);
+    let leads_ev = leads_ev(operator);
     let open_ev = leads_ev[0].max(leads_ev[1]);
     let stream = Stream::settled(operator, [low_ev, high_ev]);
     let inside: Vec<QuasiBound> = states
@@ -121,8 +122,8 @@ fn range(energies_ev: &[f64]) -> [f64; 2] {
 
 /// A stack between its leads, on elements that suit a range of energies.
 struct Stream {
-    line: super::line::Line,
-    leads: [crate::numerics::pencil::Coefficient; 2],
+    line: Line,
+    leads: [Coefficient; 2],
     error: f64,
 }
 
@@ -130,7 +131,7 @@ impl Stream {
     fn settled(operator: &BandOperator, [low_ev, high_ev]: [f64; 2]) -> Stream {
         let leads = [false, true].map(|upper| lead(operator, upper));
         let open_ev = low_ev.max(leads[0].constant).max(leads[1].constant);
-        let [floor_ev, _] = super::quasi_bound::edges_ev(operator);
+        let [floor_ev, _] = edges_ev(operator);
         let energies_ev = [floor_ev, high_ev];
         let mut plan = Plan::new(operator, Outside::Flat, energies_ev, [0.0; 2], PATH_ANGLE);
         let mut halvings = 0;

@@ -1,11 +1,14 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod absorption;
 mod check;
 mod dispersion;
 mod interband;
 mod layer_edges;
 mod levels;
+mod lifetime;
 mod materials;
+mod open_levels;
 mod sheet;
 mod sheet_csv;
 mod sheet_html;
@@ -14,14 +17,18 @@ mod strain;
 pub mod svg;
 mod table;
 mod tolerance;
+mod transmission;
 mod tuning;
 
+pub use absorption::Absorption;
 pub use check::Check;
 pub use dispersion::Dispersion;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
+pub use open_levels::OpenLevels;
 pub use sheet::Sheet;
 pub use tolerance::Tolerances;
+pub use transmission::Transmission;
 pub use tuning::Tuning;
 
 use serde::Serialize;

@@ -38,6 +38,7 @@ pub struct Structure {
     pub temperature_k: f64,
     /// The field along the growth direction; `None` when the file has no such key.
     pub field: Option<Spanned<Quantity>>,
+    pub ends: Ends,
     pub conduction: ConductionBand,
     /// The valence bands, if they are to be solved.
     pub valence: Option<ValenceBand>,
@@ -52,6 +53,15 @@ pub struct Structure {
     pub tolerance: Option<Tolerance>,
     /// Where a top-level `field:` line can be added.
     pub(super) field_line: Option<FreeLine>,
+}
+
+/// What is at the two ends of the stack.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ends {
+    /// The envelopes vanish.
+    Walls,
+    /// The outermost materials go on, and electrons may leave.
+    Open,
 }
 
 /// The conduction band that is to be solved.

@@ -25,7 +25,7 @@ mod temperature;
 mod wafer;
 
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Follow, Item, Keep, LayerEntry, Level, Profile,
+    Aim, BandName, ConductionBand, ConductionModel, Ends, Follow, Item, Keep, LayerEntry, Level, Profile,
     Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};

@@ -2,7 +2,7 @@
 
 use super::document::{self, Node, Value};
 use super::fields::{Checker, Fields, Limits};
-use super::file::{BandName, ConductionBand, ConductionModel, Structure, ValenceBand};
+use super::file::{BandName, ConductionBand, ConductionModel, Ends, Structure, ValenceBand};
 use super::read_layers::{self, FIELD_LIMITS, Known};
 use super::rewrite::FreeLine;
 use super::{read_growth, read_materials, read_tolerance, read_tune};
@@ -109,13 +109,20 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
     let field = fields
         .get("field")
         .map(|node| checker.quantity(node, &[Dimension::Field], FIELD_LIMITS));
-    if let Some(node) = fields.get("ends") {
-        ends(checker, node);
-    }
+    let ends = fields
+        .get("ends")
+        .map_or(Ends::Walls, |node| ends(checker, node));
     let (conduction, valence) = match fields.get("bands") {
         Some(node) => bands(checker, node),
         None => (conduction_default(), None),
     };
+    if let (Ends::Open, Some(_), Some(node)) = (ends, valence, fields.get("ends")) {
+        checker.report(
+            Diagnostic::error("`ends: open` is available for the conduction band only")
+                .at(node.span.clone())
+                .expected("`walls`, or no `valence` under `bands`"),
+        );
+    }
     let solved = match valence {
         Some(_) => &BandName::ALL[..],
         None => &[BandName::Conduction],
@@ -164,6 +171,7 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         temperature_k: settled(temperature)?
             .map_or(DEFAULT_TEMPERATURE_K, |found| found.value.value()),
         field: settled(field)?,
+        ends,
         conduction,
         valence,
         library: materials.library,
@@ -199,14 +207,17 @@ fn key_span(root: &Node, name: &str) -> Option<std::ops::Range<usize>> {
         .map(|(key, _)| key.span.clone())
 }
 
-fn ends(checker: &mut Checker, node: &Node) {
-    if let Some(word @ ("open" | "periodic")) = checker.word(node, &["walls", "open", "periodic"]) {
-        checker.report(
+fn ends(checker: &mut Checker, node: &Node) -> Ends {
+    match checker.word(node, &["walls", "open", "periodic"]) {
+        Some("open") => return Ends::Open,
+        Some(word @ "periodic") => checker.report(
             Diagnostic::error(format!("`ends: {word}` is not available yet"))
                 .at(node.span.clone())
-                .expected("`walls`"),
-        );
+                .expected("`walls` or `open`"),
+        ),
+        _ => {}
     }
+    Ends::Walls
 }
 
 fn conduction_default() -> ConductionBand {

@@ -156,9 +156,9 @@ def states(layers, field, search):
     for depth in depths:
         for step in range(starts):
             guess = mpc(low + (high - low) * (step + 0.5) / starts, -depth)
-            mp.dps = 16
+            mp.dps = 16 if field else 24
             try:
-                value = mp.findroot(lambda e: mismatch(layers, field, e), (guess, guess + mpf("1e-4")), tol=1e-16, maxsteps=12)
+                value = mp.findroot(lambda e: mismatch(layers, field, e), (guess, guess + mpf("1e-4")), tol=1e-16 if field else 1e-30, maxsteps=12)
             except (ValueError, ZeroDivisionError):
                 continue
             if not (low < value.real < high and -WIDEST_EV / 2 < value.imag < 1e-12):
@@ -205,7 +205,7 @@ def cases():
         0.01, 0.6, 24, (0.0, 0.02)), [0.05, 0.12, 0.3, 0.6]
     kane_well, kane_barrier = (0.0, 0.067, 1.519, 0.341, 28.8, -1.94), (0.25, 0.09, 1.9, 0.33, 26.0, -1.6)
     yield "detector well, Kane's law", [Layer(20, *kane_barrier), Layer(5, *kane_well), Layer(20, *kane_barrier)], 0, (
-        0.01, 0.345, 16, (0.0, 0.01, 0.04)), [0.26, 0.28, 0.33]
+        0.01, 0.345, 8, (0.0, 0.03)), [0.26, 0.28, 0.33]
     yield "well in a field", [Layer(8, *algaas), Layer(6, *gaas), Layer(8, *algaas)], 150, (
         0.15, 0.45, 3, (0.0, 0.02)), [0.6, 0.7]
     yield "well in a weak field", [Layer(10, 0.15, 0.08), Layer(5, *gaas), Layer(10, 0.15, 0.08)], -20, (

@@ -13,6 +13,7 @@ mod ladder;
 mod layer_strip;
 mod page;
 pub mod palette;
+mod spectrum;
 mod spread;
 mod text;
 mod tolerances;
@@ -21,6 +22,7 @@ pub use band_diagram::{BandDiagram, FINENESS};
 pub use bars::{SensitivityBar, SensitivityBars};
 pub use dispersion::DispersionCurves;
 pub use histogram::{Gaussian, Window, YieldHistogram};
+pub use spectrum::{Spectrum, SpectrumMark};
 pub use text::width_pt as text_width_pt;
 pub use tolerances::{sensitivity_bars, yield_histogram};
 
