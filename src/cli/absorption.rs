@@ -54,16 +54,15 @@ pub fn absorption(file: &Path, range: &Range, output: &Output) -> Result<Exit, E
         .map(|k| low_ev + (high_ev - low_ev) * f64::from(k) / last)
         .collect();
     let level = usize::from(range.level);
-    let solved = open_ends::absorption(&operator, level, &energies_ev, broadening_ev).map_err(
-        |reason| {
+    let solved =
+        open_ends::absorption(&operator, level, &energies_ev, broadening_ev).map_err(|reason| {
             show(
                 &Diagnostic::error(reason.to_string()),
                 &input.name,
                 &input.text,
             );
             Exit::NotPossible
-        },
-    )?;
+        })?;
     let report = Absorption::new(
         &input.structure,
         &input.stack,

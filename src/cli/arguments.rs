@@ -133,7 +133,12 @@ pub enum Command {
         #[arg(long, value_name = "N", default_value_t = 1, value_parser = clap::value_parser!(u8).range(1..=50))]
         level: u8,
         /// Full width at half maximum of the lines
-        #[arg(long, value_name = "ENERGY", default_value = "6 meV", allow_hyphen_values = true)]
+        #[arg(
+            long,
+            value_name = "ENERGY",
+            default_value = "6 meV",
+            allow_hyphen_values = true
+        )]
         broadening: String,
         /// Lowest photon energy; 10 meV when left out
         #[arg(long, value_name = "ENERGY", allow_hyphen_values = true)]

@@ -3,8 +3,8 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver, show};
 use super::input::Input;
-use crate::models::{Band, BandOperator};
 use crate::diagnostics::Diagnostic;
+use crate::models::{Band, BandOperator};
 use crate::open_ends::{self, Outside};
 use crate::report::{Levels, OpenLevels};
 use crate::structure::Ends;
@@ -41,9 +41,12 @@ fn open(input: &Input, file: &Path, output: &Output) -> Result<Exit, Exit> {
     let solved = open_ends::quasi_bound(&operator, Outside::Field);
     let warn = |words: String| show(&Diagnostic::warning(words), &input.name, &input.text);
     let asked = input.structure.conduction.states;
+    let widest_mev = 1e3 * solved.widest_ev;
     let shown = &solved.states[..asked.min(solved.states.len())];
     if shown.is_empty() {
-        let words = "nothing holds an electron: no level up to the highest band edge is narrower than 100 meV";
+        let words = format!(
+            "nothing holds an electron: no level up to the highest band edge is narrower than {widest_mev:.0} meV"
+        );
         show(&Diagnostic::error(words), &input.name, &input.text);
         return Err(Exit::NotPossible);
     }
@@ -54,13 +57,13 @@ fn open(input: &Input, file: &Path, output: &Output) -> Result<Exit, Exit> {
         );
     } else if shown.len() < asked {
         let why = match solved.leads_ev {
-            Some(_) => "others are wider than 100 meV, or higher",
+            Some(_) => "higher",
             None => {
-                "others are wider than 100 meV, or lie above the end that the field raises, where a wave runs up the slope outside and comes back"
+                "above the end that the field raises, where a wave runs up the slope outside and comes back"
             }
         };
         warn(format!(
-            "{} of the {asked} levels asked for are there; {why}",
+            "{} of the {asked} levels asked for are there; others are wider than {widest_mev:.0} meV, or {why}",
             shown.len()
         ));
     }

@@ -177,8 +177,7 @@ impl OpenPencil {
                 for (target, value) in column.iter_mut().zip(&local[start..start + p + 1 - j]) {
                     *target += value;
                 }
-                let weight =
-                    self.stretches[index] * (0.5 * element.length * reference.weights[j]);
+                let weight = self.stretches[index] * (0.5 * element.length * reference.weights[j]);
                 column[0] += weight * (self.at(index)[j].constant() - lambda);
                 start += p + 1 - j;
             }
@@ -232,8 +231,7 @@ impl OpenPencil {
                 }
                 let row = &reference.derivative[q * (p + 1)..(q + 1) * (p + 1)];
                 let slope: C64 = row.iter().zip(local).map(|(d, v)| v * d).sum();
-                let along =
-                    slope / half * reference.weights[q] * times * node.divided(lambda, mu);
+                let along = slope / half * reference.weights[q] * times * node.divided(lambda, mu);
                 for (sum, d) in target.iter_mut().zip(row) {
                     *sum += along * d;
                 }
@@ -273,12 +271,7 @@ impl OpenPencil {
     /// Im(ψ̄ A ψ′) of what flows out at the lower end of element `from` and at the upper end of element `to − 1`, over
     /// ∫ (|ψ|² + …) between: by the equation itself these are the parts of −Im λ (Siegert 1939), to as many digits as ψ
     /// has at the ends, however small they are.
-    pub fn escape_rates(
-        &self,
-        lambda: C64,
-        x: &[C64],
-        [from, to]: [usize; 2],
-    ) -> [f64; 2] {
+    pub fn escape_rates(&self, lambda: C64, x: &[C64], [from, to]: [usize; 2]) -> [f64; 2] {
         let reference = self.mesh.reference;
         let p = reference.order;
         let mut norm = 0.0;

@@ -50,6 +50,8 @@ const PIECES: usize = 8;
 const MAX_DEPTH: usize = 40;
 /// The longest step of ln det that is taken as seen, in radians; two halves must agree with the whole to the same.
 const LONGEST: f64 = 1.0;
+/// Parts of one region that are looked at; what is then still missing is said to be.
+const MOST_PARTS: usize = 200;
 /// A part is not halved below this size: two states that near are told apart by their vectors only.
 const SMALLEST: f64 = 1e-9;
 
@@ -62,10 +64,7 @@ impl Region {
     }
 
     fn middle(&self) -> C64 {
-        C64::new(
-            0.5 * (self.low + self.high),
-            0.5 * (self.bottom + self.top),
-        )
+        C64::new(0.5 * (self.low + self.high), 0.5 * (self.bottom + self.top))
     }
 
     /// Two halves along the longer side, parted where no known state is near.
@@ -78,7 +77,11 @@ impl Region {
         };
         let clear = |at: f64| {
             let distances = known.iter().map(|state| {
-                let part = if upright { state.value.im } else { state.value.re };
+                let part = if upright {
+                    state.value.im
+                } else {
+                    state.value.re
+                };
                 (part - at).abs()
             });
             distances.fold(f64::INFINITY, f64::min)
@@ -86,10 +89,20 @@ impl Region {
         let at = [0.5, 0.45, 0.55, 0.4, 0.6, 0.35, 0.65]
             .map(|part| a + part * (b - a))
             .into_iter()
-            .max_by(|x, y| clear(*x).min(0.02 * (b - a)).total_cmp(&clear(*y).min(0.02 * (b - a))))
+            .max_by(|x, y| {
+                clear(*x)
+                    .min(0.02 * (b - a))
+                    .total_cmp(&clear(*y).min(0.02 * (b - a)))
+            })
             .unwrap_or(0.5 * (a + b));
         if upright {
-            [Region { top: at, ..*self }, Region { bottom: at, ..*self }]
+            [
+                Region { top: at, ..*self },
+                Region {
+                    bottom: at,
+                    ..*self
+                },
+            ]
         } else {
             [Region { high: at, ..*self }, Region { low: at, ..*self }]
         }
@@ -97,11 +110,7 @@ impl Region {
 }
 
 /// Refines a guess. `None` when it does not settle.
-pub fn refine(
-    pencil: &OpenPencil,
-    guess: C64,
-    vector: Option<&[C64]>,
-) -> Option<Outgoing> {
+pub fn refine(pencil: &OpenPencil, guess: C64, vector: Option<&[C64]>) -> Option<Outgoing> {
     let mut value = guess;
     let mut x = match vector {
         Some(vector) => vector.to_vec(),
@@ -160,11 +169,7 @@ fn irregular(size: usize) -> Vec<C64> {
 
 /// All states of adjoining regions, from guesses that may be incomplete. Of two regions that share a side the states may
 /// lie on either.
-pub fn all_in(
-    pencil: &OpenPencil,
-    regions: &[Region],
-    guesses: &[(C64, Vec<C64>)],
-) -> Found {
+pub fn all_in(pencil: &OpenPencil, regions: &[Region], guesses: &[(C64, Vec<C64>)]) -> Found {
     let mut states: Vec<Outgoing> = Vec::new();
     for (value, vector) in guesses {
         if let Some(state) = refine(pencil, *value, Some(vector))
@@ -177,7 +182,8 @@ pub fn all_in(
     for region in regions {
         let (count, sum) = count(pencil, region);
         counted += count;
-        complete(pencil, region, count, sum, &mut states);
+        let mut parts = MOST_PARTS;
+        complete(pencil, region, (count, sum), &mut states, &mut parts);
     }
     states.sort_by(|a, b| a.value.re.total_cmp(&b.value.re));
     Found { states, counted }
@@ -201,9 +207,9 @@ fn add(pencil: &OpenPencil, states: &mut Vec<Outgoing>, state: Outgoing) -> bool
 fn complete(
     pencil: &OpenPencil,
     region: &Region,
-    count: usize,
-    sum: C64,
+    (count, sum): (usize, C64),
     states: &mut Vec<Outgoing>,
+    parts: &mut usize,
 ) {
     let inside: Vec<C64> = states
         .iter()
@@ -228,8 +234,12 @@ fn complete(
         return;
     }
     for half in region.halves(states) {
-        let (count, sum) = self::count(pencil, &half);
-        complete(pencil, &half, count, sum, states);
+        if *parts == 0 {
+            return;
+        }
+        *parts -= 1;
+        let counted = self::count(pencil, &half);
+        complete(pencil, &half, counted, states, parts);
     }
 }
 

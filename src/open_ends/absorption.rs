@@ -167,7 +167,9 @@ fn peak_of(points: &[[f64; 2]]) -> (Option<[f64; 2]>, [Option<f64>; 2]) {
         ((a[1] - half) * (b[1] - half) <= 0.0 && a[1] != b[1])
             .then(|| a[0] + (half - a[1]) / (b[1] - a[1]) * (b[0] - a[0]))
     };
-    let below = (0..k).rev().find_map(|j| crossing([points[j], points[j + 1]]));
+    let below = (0..k)
+        .rev()
+        .find_map(|j| crossing([points[j], points[j + 1]]));
     let above = (k..points.len() - 1).find_map(|j| crossing([points[j], points[j + 1]]));
     (Some(peak), [below, above])
 }
@@ -197,7 +199,11 @@ impl Response {
                 return 0.0;
             }
             let fall = wave_number(&end, C64::from(energy_ev)).im;
-            if fall > 0.0 { (TAIL / fall).min(FURTHEST_NM) } else { 0.0 }
+            if fall > 0.0 {
+                (TAIL / fall).min(FURTHEST_NM)
+            } else {
+                0.0
+            }
         });
         let energies_ev = [states.floor_ev, energy_ev + furthest_ev];
         let plan = Plan::new(operator, Outside::Field, energies_ev, reach_nm, PATH_ANGLE);

@@ -25,14 +25,17 @@ const FALL: f64 = 40.0;
 const MAX_PHASE: f64 = 5.0;
 const MAX_PIECES: usize = 4000;
 /// Elements are cut finer by this many halvings at most.
-pub(super) const MAX_HALVINGS: u32 = 3;
+pub(super) const MAX_HALVINGS: u32 = 2;
 
 /// A part of the line.
 #[derive(Clone, Copy, Debug, PartialEq)]
 enum Part {
     Layer(usize),
     /// The material of the lowest or the highest face going on, along the real line or on the path that leaves it.
-    Beyond { upper: bool, turned: bool },
+    Beyond {
+        upper: bool,
+        turned: bool,
+    },
 }
 
 /// The parts with their lengths and numbers of elements, from which pencils of any order are made.
@@ -199,24 +202,35 @@ impl<'o> Plan<'o> {
             let first = self.parts.iter().position(|(part, _)| test(part));
             let last = self.parts.iter().rposition(|(part, _)| test(part));
             let before = |part: usize| self.pieces[..part].iter().sum();
-            [before(first.unwrap_or(0)), before(last.map_or(0, |l| l + 1))]
+            [
+                before(first.unwrap_or(0)),
+                before(last.map_or(0, |l| l + 1)),
+            ]
         };
         let stack = is(|part| matches!(part, Part::Layer(_)));
         let real = is(|part| !matches!(part, Part::Beyond { turned: true, .. }));
-        let outer: f64 = self.lengths_where(|part| {
-            matches!(part, Part::Beyond { upper: false, .. })
-        });
+        let outer: f64 =
+            self.lengths_where(|part| matches!(part, Part::Beyond { upper: false, .. }));
         let real_below = self.lengths_where(|part| {
-            matches!(part, Part::Beyond { upper: false, turned: false })
+            matches!(
+                part,
+                Part::Beyond {
+                    upper: false,
+                    turned: false
+                }
+            )
         });
         let real_above = self.lengths_where(|part| {
-            matches!(part, Part::Beyond { upper: true, turned: false })
+            matches!(
+                part,
+                Part::Beyond {
+                    upper: true,
+                    turned: false
+                }
+            )
         });
         let turn = C64::from_polar(1.0, self.angle);
-        let turns_nm = [
-            -real_below,
-            operator.stack().total_width_nm() + real_above,
-        ];
+        let turns_nm = [-real_below, operator.stack().total_width_nm() + real_above];
         let faces = [bare(operator, false), bare(operator, true)];
         let leads = [lead(operator, false), lead(operator, true)];
         let flat = self.outside == Outside::Flat || field == 0.0;

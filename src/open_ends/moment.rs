@@ -14,7 +14,10 @@ pub fn moment(line: &Line, i: &Outgoing, j: &Outgoing, origin_nm: f64) -> C64 {
     let mut sum = product(&i.vector, &image);
     let last = line.pencil.size() - 1;
     let p = line.pencil.mesh.order();
-    let ends = [(0, line.position_nm(0, 0), -1.0), (last, line.position_nm(last / p - 1, p), 1.0)];
+    let ends = [
+        (0, line.position_nm(0, 0), -1.0),
+        (last, line.position_nm(last / p - 1, p), 1.0),
+    ];
     for (end, (node, z_nm, outwards)) in line.pencil.ends.iter().zip(ends) {
         let End::Flat(lead) = end else { continue };
         let (k_i, k_j) = (wave_number(lead, i.value), wave_number(lead, j.value));
@@ -41,7 +44,11 @@ pub fn wave_number(lead: &Coefficient, energy: C64) -> C64 {
 }
 
 /// ∫ over the elements of a range, of f(element, local node) on the real line.
-pub fn integrate(pencil: &OpenPencil, [from, to]: [usize; 2], mut f: impl FnMut(usize, usize) -> f64) -> f64 {
+pub fn integrate(
+    pencil: &OpenPencil,
+    [from, to]: [usize; 2],
+    mut f: impl FnMut(usize, usize) -> f64,
+) -> f64 {
     let mut sum = 0.0;
     for e in from..to {
         let half = 0.5 * pencil.mesh.elements[e].length;

@@ -12,8 +12,12 @@ use crate::numerics::mesh::Mesh;
 use crate::numerics::outgoing::{Outgoing, Region, all_in, refine};
 use crate::subbands;
 
-/// A wave that leaves faster than within ħ over this, 7 fs, has crossed the stack a few times only: no level.
+/// A wave that leaves within ħ over this, 7 fs, was never held: no level.
 pub const WIDEST_EV: f64 = 0.1;
+/// Nor is one that leaves this many times within the time in which an electron of the highest edge's energy crosses the
+/// stack. Inside such a wave grows towards the ends by e to half of this power, and more where it is slow: for much more
+/// there are no digits.
+const FASTEST_OF_CROSSING: f64 = 6.0;
 /// Levels are looked for up to this far above the highest band edge of the stack.
 const ABOVE_EDGES_EV: f64 = 0.1;
 /// A narrower width is not told from none.
@@ -26,6 +30,8 @@ const FROM_EDGE_EV: f64 = 1e-9;
 const ORDERS: [usize; 2] = [12, 14];
 /// The path leaves the real line where a wave has fallen by e to this power, at the latest.
 const DEEPEST: f64 = 350.0;
+/// An energy is exact to this, a tenth of the last digit that is printed of walls' levels.
+const ENERGY_TOLERANCE_EV: f64 = 1e-9;
 /// A width is exact to this part of it.
 const WIDTH_TOLERANCE: f64 = 1e-6;
 
@@ -71,6 +77,8 @@ pub struct QuasiBoundStates {
     pub floor_ev: f64,
     /// The energy up to which states were looked for.
     pub top_ev: f64,
+    /// States up to this width were looked for.
+    pub widest_ev: f64,
     /// The edges of flat leads below and above; `None` where the field goes on.
     pub leads_ev: Option<[f64; 2]>,
     /// States that the argument principle counts, and those found.
@@ -80,7 +88,7 @@ pub struct QuasiBoundStates {
     pub width_deviation: f64,
 }
 
-/// All states narrower than [`WIDEST_EV`], up to a little above the highest band edge; in a field up to the edge of the
+/// All states that are no wider than [`QuasiBoundStates::widest_ev`], up to a little above the highest band edge; in a field up to the edge of the
 /// end that it raises.
 pub fn quasi_bound(operator: &BandOperator, outside: Outside) -> QuasiBoundStates {
     on_path(operator, outside, PATH_ANGLE)
@@ -98,8 +106,10 @@ pub fn on_path(operator: &BandOperator, outside: Outside, angle: f64) -> QuasiBo
         top_ev = top_ev.min(ends_ev[usize::from(!falling_is_upper(operator))]);
     }
     let mut plan = Plan::new(operator, outside, [floor_ev, top_ev], [0.0; 2], angle);
-    let regions = regions([floor_ev, top_ev], (!tilted).then_some(ends_ev));
+    let widest_ev = widest_ev(operator, [floor_ev, ceiling_ev]);
+    let regions = regions([floor_ev, top_ev], widest_ev, (!tilted).then_some(ends_ev));
     let mut halvings = 0;
+    let mut worst_before = f64::INFINITY;
     loop {
         let line = plan.line(ORDERS[0]);
         let guesses = between_walls(operator, &plan, &line, top_ev);
@@ -109,10 +119,15 @@ pub fn on_path(operator: &BandOperator, outside: Outside, angle: f64) -> QuasiBo
             one(operator, (&plan, &line), outgoing, bound, (outside, angle))
         };
         let described: Vec<(QuasiBound, f64)> = found.states.iter().map(describe).collect();
-        let exact = described.iter().all(|(state, _)| {
-            state.error_ev < 1e-9 && (state.width_error < WIDTH_TOLERANCE || state.bound)
-        });
-        if exact || halvings == MAX_HALVINGS {
+        // How far the worst state is from what is asked of it.
+        let worst = described
+            .iter()
+            .map(|(state, _)| {
+                (state.error_ev / ENERGY_TOLERANCE_EV).max(state.width_error / WIDTH_TOLERANCE)
+            })
+            .fold(0.0, f64::max);
+        // What more elements do not mend is rounding.
+        if worst < 1.0 || worst > 0.5 * worst_before || halvings == MAX_HALVINGS {
             let deviations = described.iter().map(|(_, deviation)| *deviation);
             return QuasiBoundStates {
                 width_deviation: deviations.fold(0.0, f64::max),
@@ -122,10 +137,12 @@ pub fn on_path(operator: &BandOperator, outside: Outside, angle: f64) -> QuasiBo
                 line,
                 floor_ev,
                 top_ev,
+                widest_ev,
                 leads_ev: (!tilted).then_some(ends_ev),
                 counted: found.counted,
             };
         }
+        worst_before = worst;
         plan = plan.finer();
         halvings += 1;
     }
@@ -148,8 +165,25 @@ pub fn edges_ev(operator: &BandOperator) -> [f64; 2] {
     [low, high]
 }
 
+/// The width beyond which a state is none.
+fn widest_ev(operator: &BandOperator, [floor_ev, ceiling_ev]: [f64; 2]) -> f64 {
+    let a = operator.at(0, 0.0, 0.0).a(ceiling_ev);
+    let speed_ev_nm = 2.0 * (a * (ceiling_ev - floor_ev)).sqrt();
+    let crossing_ev = FASTEST_OF_CROSSING * speed_ev_nm / operator.stack().total_width_nm();
+    // Where all is flat nothing is held, whatever the limit.
+    if crossing_ev > 0.0 {
+        WIDEST_EV.min(crossing_ev)
+    } else {
+        WIDEST_EV
+    }
+}
+
 /// The parts of the complex plane to search: between the edges of the leads, where other ends are open.
-fn regions([floor_ev, top_ev]: [f64; 2], leads_ev: Option<[f64; 2]>) -> Vec<Region> {
+fn regions(
+    [floor_ev, top_ev]: [f64; 2],
+    widest_ev: f64,
+    leads_ev: Option<[f64; 2]>,
+) -> Vec<Region> {
     let part = |low: f64, high: f64, depth: f64| Region {
         low,
         high,
@@ -158,14 +192,14 @@ fn regions([floor_ev, top_ev]: [f64; 2], leads_ev: Option<[f64; 2]>) -> Vec<Regi
     };
     let bottom_ev = floor_ev - CLEAR_EV;
     let Some([a, b]) = leads_ev else {
-        return vec![part(bottom_ev, top_ev, 0.5 * WIDEST_EV)];
+        return vec![part(bottom_ev, top_ev, 0.5 * widest_ev)];
     };
     let (first, second) = (a.min(b), a.max(b));
     let mut list = Vec::new();
     let borders = [
         (bottom_ev, first, CLEAR_EV),
-        (first, second, 0.5 * WIDEST_EV),
-        (second, top_ev, 0.5 * WIDEST_EV),
+        (first, second, 0.5 * widest_ev),
+        (second, top_ev, 0.5 * widest_ev),
     ];
     for (low, high, depth) in borders {
         if high - low > 4.0 * FROM_EDGE_EV {
@@ -205,7 +239,11 @@ fn free_from_nm(operator: &BandOperator, energy_ev: f64) -> f64 {
         return 0.0;
     }
     let cube = square.powf(1.5) - 1.5 * DEEPEST * slope;
-    let left = if cube > 0.0 { cube.powf(2.0 / 3.0) } else { -slope.powf(2.0 / 3.0) };
+    let left = if cube > 0.0 {
+        cube.powf(2.0 / 3.0)
+    } else {
+        -slope.powf(2.0 / 3.0)
+    };
     (square - left) / slope
 }
 
@@ -247,9 +285,16 @@ fn one(
         })
     });
     let [Some((own_line, state, partial)), finer] = solved else {
-        let fallback = line.pencil.escape_rates(outgoing.value, &outgoing.vector, line.real);
+        let fallback = line
+            .pencil
+            .escape_rates(outgoing.value, &outgoing.vector, line.real);
         let partial = fallback.map(|rate| (2.0 * rate).max(0.0));
-        let described = describe(line, outgoing, (bound, partial), (f64::INFINITY, f64::INFINITY));
+        let described = describe(
+            line,
+            outgoing,
+            (bound, partial),
+            (f64::INFINITY, f64::INFINITY),
+        );
         return (described, 0.0);
     };
     let width = |partial: [f64; 2]| partial[0] + partial[1];

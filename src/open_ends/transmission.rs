@@ -64,7 +64,11 @@ pub fn crossing(operator: &BandOperator, energies_ev: &[f64]) -> Vec<Point> {
 }
 
 /// The curve from `low_ev` to `high_ev` at `count` equal steps and more around each resonance.
-pub fn transmission(operator: &BandOperator, [low_ev, high_ev]: [f64; 2], count: usize) -> Transmission {
+pub fn transmission(
+    operator: &BandOperator,
+    [low_ev, high_ev]: [f64; 2],
+    count: usize,
+) -> Transmission {
     let QuasiBoundStates {
         states,
         counted,
@@ -116,7 +120,10 @@ pub fn transmission(operator: &BandOperator, [low_ev, high_ev]: [f64; 2], count:
 
 fn range(energies_ev: &[f64]) -> [f64; 2] {
     let low = energies_ev.iter().copied().fold(f64::INFINITY, f64::min);
-    let high = energies_ev.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+    let high = energies_ev
+        .iter()
+        .copied()
+        .fold(f64::NEG_INFINITY, f64::max);
     [low, high]
 }
 

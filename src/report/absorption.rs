@@ -10,7 +10,8 @@ use crate::open_ends::{self, SUM_TO_EV};
 use crate::structure::{ConductionModel, Stack, Structure};
 use serde::Serialize;
 
-const DEFINITION: &str = "df/d(ħω) with f = 2 m0 ħω |z|²/ħ², the free-electron mass, light polarised along growth";
+const DEFINITION: &str =
+    "df/d(ħω) with f = 2 m0 ħω |z|²/ħ², the free-electron mass, light polarised along growth";
 /// Rows of the text table of the spectrum.
 const MOST_ROWS: usize = 26;
 /// The strengths of a parabolic band add up to the sum rule within this.

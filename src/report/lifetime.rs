@@ -45,7 +45,11 @@ pub fn leaves_through([bottom, top]: [f64; 2], bound: bool) -> String {
     } else if share < 0.005 {
         "top".to_owned()
     } else {
-        format!("bottom {:.0} %, top {:.0} %", 100.0 * share, 100.0 * (1.0 - share))
+        format!(
+            "bottom {:.0} %, top {:.0} %",
+            100.0 * share,
+            100.0 * (1.0 - share)
+        )
     }
 }
 

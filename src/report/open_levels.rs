@@ -5,7 +5,7 @@ use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0, HC_EV_UM};
 use crate::models::model_name;
-use crate::open_ends::{QuasiBoundStates, WIDEST_EV, moment};
+use crate::open_ends::{QuasiBoundStates, moment};
 use crate::structure::{Stack, Structure};
 use serde::Serialize;
 
@@ -28,6 +28,8 @@ pub struct OpenLevels {
     bound_states: usize,
     #[serde(rename = "searched_to_meV")]
     searched_to_mev: f64,
+    #[serde(rename = "searched_width_meV")]
+    searched_width_mev: f64,
     subbands: Vec<StateRow>,
     transitions: Vec<TransitionRow>,
     oscillator_strength_definition: &'static str,
@@ -138,6 +140,7 @@ impl OpenLevels {
             width_nm: stack.total_width_nm(),
             bound_states: solved.states.iter().filter(|state| state.bound).count(),
             searched_to_mev: 1e3 * (solved.top_ev - solved.floor_ev),
+            searched_width_mev: 1e3 * solved.widest_ev,
             subbands: subbands.collect(),
             transitions,
             oscillator_strength_definition: STRENGTH_DEFINITION,
@@ -258,11 +261,7 @@ impl Report for OpenLevels {
             transitions.collect(),
         );
         let fewer = if self.subbands.len() < self.asked {
-            format!(
-                " {} asked for, {} there.",
-                self.asked,
-                self.subbands.len()
-            )
+            format!(" {} asked for, {} there.", self.asked, self.subbands.len())
         } else {
             String::new()
         };
@@ -283,7 +282,7 @@ impl Report for OpenLevels {
             self.width_nm,
             self.ends,
             self.searched_to_mev,
-            1e3 * WIDEST_EV,
+            self.searched_width_mev,
             a.width_as_outflow,
             a.states_returned,
             a.states_counted,

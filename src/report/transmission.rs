@@ -105,7 +105,10 @@ impl Transmission {
         });
         let mut faults = Vec::new();
         if solved.lost.is_nan() || solved.lost > LOSS {
-            faults.push(format!("current is lost: |T + R - 1| = {:.1e}", solved.lost));
+            faults.push(format!(
+                "current is lost: |T + R - 1| = {:.1e}",
+                solved.lost
+            ));
         }
         if solved.error.is_nan() || solved.error > LOSS {
             faults.push(format!("T did not settle (relative {:.1e})", solved.error));
@@ -197,10 +200,7 @@ impl Report for Transmission {
                 width_mev(1e-3 * r.width_meV, r.width_relative_error),
                 lifetime(r.lifetime_ps),
                 significant(r.peak_transmission, 3),
-                leaves_through(
-                    [r.width_through_bottom_meV, r.width_through_top_meV],
-                    false,
-                ),
+                leaves_through([r.width_through_bottom_meV, r.width_through_top_meV], false),
                 format!("{} ({:.0} %)", r.layer, 100.0 * r.layer_share),
             ]
         });

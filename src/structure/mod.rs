@@ -25,8 +25,8 @@ mod temperature;
 mod wafer;
 
 pub use file::{
-    Aim, BandName, ConductionBand, ConductionModel, Ends, Follow, Item, Keep, LayerEntry, Level, Profile,
-    Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
+    Aim, BandName, ConductionBand, ConductionModel, Ends, Follow, Item, Keep, LayerEntry, Level,
+    Profile, Spanned, StrainBound, Structure, Target, Tune, ValenceBand, Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
 pub use read::read;

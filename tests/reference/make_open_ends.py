@@ -12,7 +12,8 @@ Bi + i Ai of an argument that falls outwards, that which dies out uphill is Ai (
 `transmission` lists [E, T] between flat leads at the potential of each end.
 
 Each stack is an object with `name`, `structure` (a Wellwright structure file), `states` as [E eV, Gamma eV] and
-`transmission`. States wider than 100 meV, and such above the range searched, are left out.
+`transmission`. States wider than 100 meV, and such above the range searched, are left out. `wells` are symmetric wells with
+`strengths`, [photon energy in eV, oscillator strength per eV] from the ground state into the continuum.
 """
 
 import json
@@ -173,6 +174,58 @@ def states(layers, field, search):
     return [[float(value.real), max(0.0, float(-2 * value.imag))] for value in found]
 
 
+def strength(layers, photon):
+    """df/d(photon energy) in 1/eV from the ground state of a symmetric well into the odd states of the continuum.
+
+    By quadrature over standing waves N sin(k |z| + d) outside, with N^2 = 1/(2 pi A k): one per unit of energy, in all
+    components together. The barriers go on outside.
+    """
+    outer, well, _ = layers
+    half = well.width() / 2
+    barrier = outer.edge()
+
+    def bound(energy):
+        q, kappa = mp.sqrt((energy - well.edge()) / well.a(energy)), mp.sqrt((barrier - energy) / outer.a(energy))
+        return q, kappa, well.a(energy) * q * mp.sin(q * half) - outer.a(energy) * kappa * mp.cos(q * half)
+
+    low, high = well.edge() + mpf("1e-6"), barrier - mpf("1e-6")
+    top = well.edge() + well.a(low) * (mp.pi / (2 * half)) ** 2
+    ground = mp.findroot(lambda e: bound(e)[2], (low, min(high, top)), solver="anderson", tol=1e-30, verify=False)
+    q0, kappa, _ = bound(ground)
+    energy = ground + photon
+    q, k = mp.sqrt((energy - well.edge()) / well.a(energy)), mp.sqrt((energy - barrier) / outer.a(energy))
+    # (psi, A psi') at the border of the well: sin inside is matched to c sin(k s) + d cos(k s) outside.
+    d = mp.sin(q * half)
+    c = well.a(energy) * q * mp.cos(q * half) / (outer.a(energy) * k)
+    unit = 1 / mp.sqrt(2 * mp.pi * outer.a(energy) * k * (c * c + d * d))
+
+    def divided(layer, e, f):
+        return -mp.diff(layer.a, e) if e == f else -(layer.a(e) - layer.a(f)) / (e - f)
+
+    def inside(f, g, e):
+        return f[0] * g[0] + divided(well, ground, e) * f[1] * g[1]
+
+    def outside(f, g, e):
+        return f[0] * g[0] + divided(outer, ground, e) * f[1] * g[1]
+
+    ground_in = lambda z: (mp.cos(q0 * z), -q0 * mp.sin(q0 * z))
+    tail = mp.cos(q0 * half)
+    ground_out = lambda s: (tail * mp.exp(-kappa * s), -kappa * tail * mp.exp(-kappa * s))
+    free_in = lambda z: (mp.sin(q * z), q * mp.cos(q * z))
+    free_out = lambda s: (c * mp.sin(k * s) + d * mp.cos(k * s), k * (c * mp.cos(k * s) - d * mp.sin(k * s)))
+    end = 60 / kappa
+    pieces = [end * n / 24 for n in range(25)]
+    norm = 2 * (
+        mp.quad(lambda z: inside(ground_in(z), ground_in(z), ground), [0, half])
+        + mp.quad(lambda s: outside(ground_out(s), ground_out(s), ground), pieces)
+    )
+    element = 2 * unit * (
+        mp.quad(lambda z: z * inside(ground_in(z), free_in(z), energy), [0, half])
+        + mp.quad(lambda s: (half + s) * outside(ground_out(s), free_out(s), energy), pieces)
+    )
+    return photon * element**2 / norm / mpf(K)
+
+
 def structure(name, layers, field_kv_per_cm):
     model = "energy-dependent" if len(layers[0].given) > 3 else "parabolic"
     materials = list(dict.fromkeys(layer.material() for layer in layers))
@@ -212,7 +265,15 @@ def cases():
         0.02, 0.06, 2, (0.0,)), [0.2, 0.3]
     yield "double well in a field", [
         Layer(6, *algaas), Layer(4, *gaas), Layer(2, *algaas), Layer(6, *gaas), Layer(6, *algaas)], 80, (
-        0.1, 0.36, 4, (0.0, 0.015)), [0.45, 0.5]
+        0.1, 0.36, 5, (0.0,)), [0.45, 0.5]
+
+
+def detector_wells():
+    """Name, layers and photon energies above the edge of the continuum."""
+    barrier, well = (0.21, 0.089), (0.0, 0.067)
+    yield "detector well", [Layer(15, *barrier), Layer(4, *well), Layer(15, *barrier)], [0.14, 0.2, 0.4]
+    barrier, well = (0.3, 0.08, 1.5), (0.0, 0.05, 1.1)
+    yield "detector well, two-band law", [Layer(15, *barrier), Layer(4.5, *well), Layer(15, *barrier)], [0.25, 0.4]
 
 
 def main():
@@ -227,8 +288,16 @@ def main():
             "states": states(layers, field, search),
             "transmission": [[e, float(transmission(layers, field, mpf(str(e))))] for e in energies],
         })
+    wells = []
+    mp.dps = 20
+    for name, layers, photons in detector_wells():
+        wells.append({
+            "name": name,
+            "structure": structure(name, layers, 0),
+            "strengths": [[e, float(strength(layers, mpf(str(e))))] for e in photons],
+        })
     about = "Complex levels and transmission of stacks with open ends; made by make_open_ends.py"
-    output.write_text(json.dumps({"about": about, "stacks": stacks}, indent=1) + "\n", encoding="utf-8")
+    output.write_text(json.dumps({"about": about, "stacks": stacks, "wells": wells}, indent=1) + "\n", encoding="utf-8")
 
 
 if __name__ == "__main__":

@@ -144,7 +144,10 @@ fn decade(power: i32) -> String {
         '0' => '⁰',
         digit => char::from_u32(0x2070 + digit.to_digit(10).unwrap_or(0)).unwrap_or(digit),
     };
-    format!("10{}", power.to_string().chars().map(raised).collect::<String>())
+    format!(
+        "10{}",
+        power.to_string().chars().map(raised).collect::<String>()
+    )
 }
 
 fn decade_room([low, _]: [f64; 2]) -> f64 {
@@ -178,7 +181,10 @@ fn decade_axis(page: &mut Page, scale: Scale, x: f64, name: &str) {
         };
         let middle = 0.5 * (scale.range[0] + scale.range[1]);
         page.text(
-            [x - decade_room(scale.domain) + ASCENT * LABEL_PT + 1.0, middle],
+            [
+                x - decade_room(scale.domain) + ASCENT * LABEL_PT + 1.0,
+                middle,
+            ],
             style,
             name,
         );
