@@ -14,7 +14,7 @@ use std::path::Path;
 /// The spectrum begins at a photon energy where no detector works any more.
 const LOWEST_EV: f64 = 0.01;
 /// It ends at this multiple of the height of the highest edge above the lowest.
-const BEYOND_EDGES: f64 = 2.0;
+const BEYOND_EDGES: f64 = 1.5;
 /// A broadening wider than this is none of a well.
 const WIDEST_EV: f64 = 0.2;
 

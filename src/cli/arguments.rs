@@ -143,7 +143,7 @@ pub enum Command {
         /// Lowest photon energy; 10 meV when left out
         #[arg(long, value_name = "ENERGY", allow_hyphen_values = true)]
         from: Option<String>,
-        /// Highest photon energy; twice the height of the highest band edge when left out
+        /// Highest photon energy; one and a half times the height of the highest band edge when left out
         #[arg(long, value_name = "ENERGY", allow_hyphen_values = true)]
         to: Option<String>,
         /// Photon energies

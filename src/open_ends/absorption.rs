@@ -122,7 +122,13 @@ pub fn absorption(
     let (peak, half_ev) = peak_of(&points);
     let start_ev = lines.first().map_or(0.01, |line| 0.5 * line.energy_ev);
     Ok(Absorption {
-        to_bound: lines.iter().filter(|l| l.bound).map(|l| l.strength).sum(),
+        // An empty sum is -0.
+        to_bound: 0.0
+            + lines
+                .iter()
+                .filter(|l| l.bound)
+                .map(|l| l.strength)
+                .sum::<f64>(),
         total: response.between(start_ev, SUM_TO_EV),
         sum_rule: response.sum_rule(),
         from_energy_ev: initial.energy_ev,
@@ -249,17 +255,15 @@ impl Response {
         pencil.factor(energy).solve(&mut answer);
         let mut sum = product(&source, &answer);
         // What the eliminated components give by themselves.
-        let p = pencil.mesh.order();
         for e in 0..pencil.mesh.elements.len() {
             if !pencil.at(e)[0].own.has_poles() {
                 continue;
             }
             let half = pencil.stretches[e] * (0.5 * pencil.mesh.elements[e].length);
             let slopes = pencil.slopes(e, &self.state.vector);
-            for q in 0..=p {
-                let node = &pencil.at(e)[q];
+            for (q, (node, slope)) in pencil.at(e).iter().zip(&slopes).enumerate() {
                 let own = (node.divided(value, value) - node.divided(value, energy)) / photon;
-                let lifted = from_origin(e, q) * slopes[q];
+                let lifted = from_origin(e, q) * slope;
                 sum -= half * pencil.mesh.reference.weights[q] * lifted * lifted * own;
             }
         }

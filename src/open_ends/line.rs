@@ -9,7 +9,7 @@ use crate::numerics::pencil::Coefficient;
 /// What lies outside. The materials of the two outermost faces go on in either case.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Outside {
-    /// The field goes on: a Stark resonance. Without a field this is the same as flat.
+    /// The field goes on: a Stark resonance. With no field to speak of this is the same as flat.
     Field,
     /// No field outside: leads at the potential of each end, as contacts are taken; common practice.
     Flat,
@@ -19,6 +19,8 @@ pub enum Outside {
 /// states; this one is the middle of the range in which they change by rounding only.
 pub const PATH_ANGLE: f64 = std::f64::consts::FRAC_PI_4;
 
+/// Below 0.1 kV/cm an electron 10 meV under an edge would have a micrometre to tunnel: the outside is taken as flat.
+const WEAKEST_V_PER_NM: f64 = 1e-5;
 /// An outgoing wave is followed until it has fallen by e to this power.
 const FALL: f64 = 40.0;
 /// Largest phase, or decay exponent, that one element follows.
@@ -90,6 +92,11 @@ fn bare(operator: &BandOperator, upper: bool) -> Coefficient {
     }
 }
 
+/// Whether the field goes on outside, being strong enough to matter there.
+pub fn is_tilted(operator: &BandOperator, outside: Outside) -> bool {
+    outside == Outside::Field && operator.stack().field_v_per_nm.abs() >= WEAKEST_V_PER_NM
+}
+
 /// The end that the field lowers.
 pub fn falling_is_upper(operator: &BandOperator) -> bool {
     operator.stack().field_v_per_nm < 0.0
@@ -105,7 +112,7 @@ impl<'o> Plan<'o> {
         angle: f64,
     ) -> Plan<'o> {
         let field = operator.stack().field_v_per_nm;
-        let tilted = outside == Outside::Field && field != 0.0;
+        let tilted = is_tilted(operator, outside);
         let mut parts = Vec::new();
         let layers = operator.stack().layers.iter().enumerate();
         let layers = layers.map(|(index, layer)| (Part::Layer(index), layer.width_nm));
@@ -233,7 +240,7 @@ impl<'o> Plan<'o> {
         let turns_nm = [-real_below, operator.stack().total_width_nm() + real_above];
         let faces = [bare(operator, false), bare(operator, true)];
         let leads = [lead(operator, false), lead(operator, true)];
-        let flat = self.outside == Outside::Flat || field == 0.0;
+        let flat = !is_tilted(operator, self.outside);
         let stretches = mesh
             .elements
             .iter()

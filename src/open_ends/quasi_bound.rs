@@ -1,7 +1,7 @@
 //! Quasi-bound states: complex energies E − iΓ/2 of outgoing waves (Gamow 1928, Siegert 1939).
 
 use super::line::{
-    Line, MAX_HALVINGS, Outside, PATH_ANGLE, Plan, falling_is_upper, lead, leads_ev,
+    Line, MAX_HALVINGS, Outside, PATH_ANGLE, Plan, falling_is_upper, is_tilted, lead, leads_ev,
 };
 use super::moment::integrate;
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0};
@@ -17,7 +17,7 @@ pub const WIDEST_EV: f64 = 0.1;
 /// Nor is one that leaves this many times within the time in which an electron of the highest edge's energy crosses the
 /// stack. Inside such a wave grows towards the ends by e to half of this power, and more where it is slow: for much more
 /// there are no digits.
-const FASTEST_OF_CROSSING: f64 = 6.0;
+const FASTEST_OF_CROSSING: f64 = 3.0;
 /// Levels are looked for up to this far above the highest band edge of the stack.
 const ABOVE_EDGES_EV: f64 = 0.1;
 /// A narrower width is not told from none.
@@ -96,8 +96,7 @@ pub fn quasi_bound(operator: &BandOperator, outside: Outside) -> QuasiBoundState
 
 /// As [`quasi_bound`], with the angle by which the path outside leaves the real line.
 pub fn on_path(operator: &BandOperator, outside: Outside, angle: f64) -> QuasiBoundStates {
-    let field = operator.stack().field_v_per_nm;
-    let tilted = outside == Outside::Field && field != 0.0;
+    let tilted = is_tilted(operator, outside);
     let [floor_ev, ceiling_ev] = edges_ev(operator);
     let ends_ev = leads_ev(operator);
     let mut top_ev = ceiling_ev + ABOVE_EDGES_EV;
@@ -256,8 +255,7 @@ fn one(
     (outside, angle): (Outside, f64),
 ) -> (QuasiBound, f64) {
     let energy_ev = outgoing.value.re;
-    let tilted = outside == Outside::Field && operator.stack().field_v_per_nm != 0.0;
-    let reach_nm = if tilted && outgoing.value.im > -1e-3 {
+    let reach_nm = if is_tilted(operator, outside) && outgoing.value.im > -1e-3 {
         free_from_nm(operator, energy_ev)
     } else {
         0.0

@@ -34,7 +34,7 @@ pub struct Resonance {
 pub struct Transmission {
     /// Ascending in energy.
     pub points: Vec<Point>,
-    /// Quasi-bound states inside the range, ascending in energy.
+    /// Quasi-bound states inside the range that show as a peak, ascending in energy.
     pub resonances: Vec<Resonance>,
     /// Edges of the lower and of the upper lead.
     pub leads_ev: [f64; 2],
@@ -55,6 +55,9 @@ const ORDERS: [usize; 2] = [12, 14];
 const TOLERANCE: f64 = 1e-9;
 /// A peak narrower than this has its height from its two partial widths (Breit & Wigner, Phys. Rev. 49, 519 (1936)).
 const NARROW_EV: f64 = 1e-9;
+
+/// A peak rises by this part at least over the ends of its width; one that stands alone rises to twice them.
+const PEAK: f64 = 0.01;
 
 /// What crosses at given energies.
 pub fn crossing(operator: &BandOperator, energies_ev: &[f64]) -> Vec<Point> {
@@ -102,9 +105,9 @@ pub fn transmission(
         .fold(0.0, f64::max);
     let resonances = inside
         .into_iter()
-        .map(|state| Resonance {
-            peak: stream.peak(&state),
-            state,
+        .filter_map(|state| {
+            let peak = stream.peak(&state)?;
+            Some(Resonance { state, peak })
         })
         .collect();
     Transmission {
@@ -182,17 +185,16 @@ impl Stream {
         }
     }
 
-    /// The highest part that crosses within a width, by golden section.
-    fn peak(&self, state: &QuasiBound) -> f64 {
+    /// The highest part that crosses within a width, by golden section. `None` when T only rises or falls there: a wide
+    /// state that couples to one lead alone is background.
+    fn peak(&self, state: &QuasiBound) -> Option<f64> {
         let [down, up] = state.partial_widths_ev;
         if state.width_ev < NARROW_EV {
-            return 4.0 * down * up / state.width_ev.powi(2);
+            return Some(4.0 * down * up / state.width_ev.powi(2));
         }
         let golden = 0.5 * (5.0_f64.sqrt() - 1.0);
-        let (mut low, mut high) = (
-            state.energy_ev - 0.5 * state.width_ev,
-            state.energy_ev + 0.5 * state.width_ev,
-        );
+        let ends = [-0.5, 0.5].map(|part| state.energy_ev + part * state.width_ev);
+        let [mut low, mut high] = ends;
         let mut best = self.at(state.energy_ev).crossing;
         for _ in 0..32 {
             let step = golden * (high - low);
@@ -204,6 +206,10 @@ impl Stream {
                 low = high - step;
             }
         }
-        best
+        let highest_end = ends
+            .map(|e| self.at(e).crossing)
+            .into_iter()
+            .fold(0.0, f64::max);
+        (best > highest_end * (1.0 + PEAK)).then_some(best)
     }
 }

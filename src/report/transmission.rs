@@ -67,8 +67,8 @@ struct PointRow {
 struct AuditRow {
     current_lost: f64,
     relative_error: f64,
-    resonances_returned: usize,
-    resonances_counted: usize,
+    levels_returned: usize,
+    levels_counted: usize,
     faults: Vec<String>,
 }
 
@@ -115,7 +115,7 @@ impl Transmission {
         }
         if solved.found != solved.counted {
             faults.push(format!(
-                "{} resonances were found where {} are counted",
+                "{} levels were found where {} are counted",
                 solved.found, solved.counted
             ));
         }
@@ -133,8 +133,8 @@ impl Transmission {
             audit: AuditRow {
                 current_lost: solved.lost,
                 relative_error: solved.error,
-                resonances_returned: solved.found,
-                resonances_counted: solved.counted,
+                levels_returned: solved.found,
+                levels_counted: solved.counted,
                 faults,
             },
             count,
@@ -249,7 +249,7 @@ impl Report for Transmission {
         format!(
             "{title}{} K, field {} kV/cm, {} mass; flat leads with their edges at {:.2} meV (bottom) and {:.2} meV (top); {}, {:.5} eV\n\n\
              {resonances}\n{}All {} points, with more around each resonance, are in CSV and JSON.\n\
-             Audit {verdict}: |T + R − 1| {:.0e}, T to a finer solution {:.0e}; {} resonances found, {} counted.\n",
+             Audit {verdict}: |T + R − 1| {:.0e}, T to a finer solution {:.0e}; {} levels found, {} counted; those without a peak are not listed.\n",
             given(self.temperature_k, 4),
             given(self.field_kv_cm, 4),
             self.model,
@@ -265,8 +265,8 @@ impl Report for Transmission {
             self.points.len(),
             a.current_lost,
             a.relative_error,
-            a.resonances_returned,
-            a.resonances_counted,
+            a.levels_returned,
+            a.levels_counted,
         )
     }
 
