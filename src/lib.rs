@@ -23,6 +23,8 @@ pub mod subbands;
 
 pub mod charge;
 
+pub mod open_ends;
+
 pub mod optics;
 
 pub mod superlattice;

@@ -782,16 +782,6 @@ fn carriage_returns_and_byte_order_marks_do_not_move_the_place() {
 }
 
 #[test]
-fn parts_that_are_not_there_yet_are_said_to_be_so() {
-    one_mistake(
-        &with_head("ends: open"),
-        1,
-        7,
-        &["not available yet", "`walls` or `periodic`"],
-    );
-}
-
-#[test]
 fn tuning_needs_to_be_told_what() {
     let bench = Bench::new();
     bench.write("plain.yaml", LAYERS);

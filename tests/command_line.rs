@@ -467,6 +467,10 @@ fn help_and_version_are_results() {
 #[test]
 fn the_same_input_gives_the_same_bytes_on_any_number_of_threads() {
     for file in shipped_structures() {
+        // A stack with open ends need not have anything to tune.
+        if !std::fs::read_to_string(&file).unwrap().contains("\ntune:") {
+            continue;
+        }
         let bench = Bench::new();
         let on = |threads: &str| {
             let output = bench

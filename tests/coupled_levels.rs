@@ -539,7 +539,7 @@ fn what_does_not_fit_is_told() {
         refused(
             command,
             &eight,
-            &["on its own", "`eight-band`", "`levels`, `tune`"],
+            &["on their own", "`eight-band`", "`levels`, `tune`"],
         );
     }
     let tune = |aim: &str| {

@@ -110,6 +110,10 @@ fn every_one_is_checked_solved_tuned_and_solved_again() {
                 .json(),
         );
 
+        // A stack with open ends need not have anything to tune.
+        if !std::fs::read_to_string(&file).unwrap().contains("\ntune:") {
+            continue;
+        }
         let tuned = bench
             .run(&["tune", name, "--format", "json", "-o", "tuned.yaml"])
             .code(0)

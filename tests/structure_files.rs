@@ -280,10 +280,6 @@ fn quantities_of_the_file() {
 fn parts_that_are_not_available() {
     let with = |head: &str| format!("{head}\n{LAYERS}");
     mistakes(
-        &with("ends: open"),
-        &[(1, 7, &["not available yet", "`walls` or `periodic`"])],
-    );
-    mistakes(
         &with("ends: wals"),
         &[(1, 7, &["`wals`", "did you mean `walls`?"])],
     );

@@ -144,6 +144,51 @@ pub enum Command {
         #[command(flatten)]
         output: Output,
     },
+    /// What part of an electron stream crosses the stack between flat leads, and at which resonances
+    Transmission {
+        /// Structure file
+        file: PathBuf,
+        /// Lowest energy, counted from the lowest band edge of the stack; the edge of the higher lead when left out
+        #[arg(long, value_name = "ENERGY", allow_hyphen_values = true)]
+        from: Option<String>,
+        /// Highest energy; above the highest band edge when left out
+        #[arg(long, value_name = "ENERGY", allow_hyphen_values = true)]
+        to: Option<String>,
+        /// Equal steps of energy; more points are laid around each resonance
+        #[arg(long, value_name = "N", default_value_t = 400, value_parser = clap::value_parser!(u16).range(2..=20_000))]
+        points: u16,
+        /// A file name ending in .svg receives the picture
+        #[command(flatten)]
+        output: Output,
+    },
+    /// Absorption from one level into all others and into the continuum, for light polarised along growth
+    Absorption {
+        /// Structure file
+        file: PathBuf,
+        /// The level that holds the electrons
+        #[arg(long, value_name = "N", default_value_t = 1, value_parser = clap::value_parser!(u8).range(1..=50))]
+        level: u8,
+        /// Full width at half maximum of the lines
+        #[arg(
+            long,
+            value_name = "ENERGY",
+            default_value = "6 meV",
+            allow_hyphen_values = true
+        )]
+        broadening: String,
+        /// Lowest photon energy; 10 meV when left out
+        #[arg(long, value_name = "ENERGY", allow_hyphen_values = true)]
+        from: Option<String>,
+        /// Highest photon energy; one and a half times the height of the highest band edge when left out
+        #[arg(long, value_name = "ENERGY", allow_hyphen_values = true)]
+        to: Option<String>,
+        /// Photon energies
+        #[arg(long, value_name = "N", default_value_t = 600, value_parser = clap::value_parser!(u16).range(3..=20_000))]
+        points: u16,
+        /// A file name ending in .svg receives the picture
+        #[command(flatten)]
+        output: Output,
+    },
     /// List the material library, or print one material's parameters
     Materials {
         /// Chemical formula, such as GaAs or Al0.3Ga0.7As

@@ -47,11 +47,7 @@ pub fn cascade(file: &Path, output: &Output) -> Result<Exit, Exit> {
                 .hint("without a field `ends: periodic` gives the minibands"),
         ));
     }
-    input.without_coupled("`cascade` solves")?;
-    if input.structure.valence.is_some() && !input.structure.couples_bands() {
-        let words = "`cascade` solves the conduction band only";
-        show(&Diagnostic::warning(words), &input.name, &input.text);
-    }
+    input.conduction_only("`cascade` solves")?;
     let module = input.structure.one_copy(&input.stack, repeated);
     let band = Band::Conduction(input.structure.conduction.model);
     let operator = BandOperator::new(&module, band)

@@ -33,6 +33,7 @@ pub fn dispersion(
     if input.structure.ends == Ends::Periodic {
         return minibands::dispersion(&input, points, output, file);
     }
+    input.with_walls("subbands are followed");
     let furthest = match units::parse(to, &[Dimension::WaveVector]) {
         Ok(quantity) if quantity.value() > 0.0 && quantity.value() <= LARGEST_PER_NM => {
             quantity.value()

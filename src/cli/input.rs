@@ -5,7 +5,7 @@ use crate::charge::{self, ChargeError, Equilibrium, Solution};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::{Band, Unsuitable};
-use crate::structure::{self, ConductionModel, Stack, Structure};
+use crate::structure::{self, ConductionModel, Ends, Stack, Structure};
 use crate::subbands::{Accuracy, Audit, Bands, Hold, State};
 use std::collections::BTreeSet;
 use std::fs::File;
@@ -123,6 +123,18 @@ impl Input {
         Exit::NotPossible
     }
 
+    /// Tells a file with holes from what a command takes, the conduction band.
+    ///
+    /// # Errors
+    /// When electrons and holes are one problem, of which the command takes no part.
+    pub fn conduction_only(&self, what: &str) -> Result<(), Exit> {
+        if self.structure.valence.is_some() && !self.structure.couples_bands() {
+            let words = format!("{what} the conduction band only");
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
+        self.without_coupled(what)
+    }
+
     /// Tells a file whose bands are coupled from what a command takes, bands that are solved on their own.
     ///
     /// # Errors
@@ -144,6 +156,16 @@ impl Input {
             show(&Diagnostic::warning(words), &self.name, &self.text);
         }
         Ok(())
+    }
+
+    /// Says that a command takes walls where the file has open ends.
+    pub fn with_walls(&self, what: &str) {
+        if self.structure.ends == Ends::Open {
+            let words = format!(
+                "{what} between walls at both ends: escape widths and lifetimes are left out; `levels`, `transmission` and `absorption` let electrons out"
+            );
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
     }
 
     /// Doubts about the solutions of all bands, of each about the states that are listed.
@@ -236,7 +258,7 @@ impl Input {
                     verb("it is", "they are"),
                 ),
                 Hold::Leaky => format!(
-                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result"
+                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result, `ends: open` gives it"
                 ),
                 Hold::Bound if shift_ev > WALL_SHIFT_EV => format!(
                     "the walls {raise} {which} ({place}) by {} {:.2} meV: make the outer layers wider",

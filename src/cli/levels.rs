@@ -2,19 +2,23 @@
 
 use super::arguments::Output;
 use super::cascade;
-use super::deliver::{Exit, check_output, deliver};
+use super::deliver::{Exit, check_output, deliver, show};
 use super::input::Input;
 use super::minibands;
-use crate::models::Band;
-use crate::report::{ChargeReport, Levels};
+use crate::diagnostics::Diagnostic;
+use crate::models::{Band, BandOperator};
+use crate::open_ends::{self, Outside};
+use crate::report::{ChargeReport, Levels, OpenLevels};
 use crate::structure::Ends;
 use std::path::Path;
 
 pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
-    if input.structure.ends == Ends::Periodic {
-        return minibands::levels(&input, output, file);
+    match input.structure.ends {
+        Ends::Walls => {}
+        Ends::Open => return open(&input, file, output),
+        Ends::Periodic => return minibands::levels(&input, output, file),
     }
     let solution = input.solved(&Band::of(&input.structure))?;
     let shown = solution.bands.asked_for(&input.structure);
@@ -34,4 +38,45 @@ pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
         file,
     )?;
     Ok(exit)
+}
+
+/// The levels of a stack that lets electrons out.
+fn open(input: &Input, file: &Path, output: &Output) -> Result<Exit, Exit> {
+    let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
+        .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
+    let solved = open_ends::quasi_bound(&operator, Outside::Field);
+    let warn = |words: String| show(&Diagnostic::warning(words), &input.name, &input.text);
+    let asked = input.structure.conduction.states;
+    let widest_mev = 1e3 * solved.widest_ev;
+    let shown = &solved.states[..asked.min(solved.states.len())];
+    if shown.is_empty() {
+        let words = format!(
+            "nothing holds an electron: no level up to the highest band edge is narrower than {widest_mev:.0} meV"
+        );
+        show(&Diagnostic::error(words), &input.name, &input.text);
+        return Err(Exit::NotPossible);
+    }
+    if shown.iter().all(|state| state.bound) {
+        warn(
+            "all levels listed lie below the edges outside, and there is no field: nothing can leave, and open ends say no more than walls do"
+                .to_owned(),
+        );
+    } else if shown.len() < asked {
+        let why = match solved.leads_ev {
+            Some(_) => "higher",
+            None => {
+                "above the end that the field raises, where a wave runs up the slope outside and comes back"
+            }
+        };
+        warn(format!(
+            "{} of the {asked} levels asked for are there; others are wider than {widest_mev:.0} meV, or {why}",
+            shown.len()
+        ));
+    }
+    let report = OpenLevels::new(&input.structure, &input.stack, &solved);
+    for fault in report.faults() {
+        warn(format!("audit: {fault}"));
+    }
+    input.doubt_growth();
+    deliver(&report, output.format, output.output.as_deref(), file)
 }

@@ -1,5 +1,6 @@
 //! The command line. Only this module touches files, the terminal and the environment.
 
+mod absorption;
 mod arguments;
 mod cascade;
 mod check;
@@ -17,6 +18,7 @@ mod sheet;
 mod sweep;
 mod threads;
 mod tolerance;
+mod transmission;
 mod tune;
 
 pub use arguments::Arguments;

@@ -19,6 +19,7 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
     let input = Input::read(file)?;
     check_output(output, file)?;
     refuse_periodic(&input, "`plot`")?;
+    input.with_walls("the picture shows levels");
     input.without_coupled("the picture shows")?;
     let picture = match what {
         Picture::Bands => Some(bands(&input, width)?),

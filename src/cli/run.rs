@@ -2,7 +2,10 @@
 
 use super::arguments::{Arguments, Command};
 use super::deliver::Exit;
-use super::{cascade, check, dispersion, levels, materials, plot, sheet, sweep, tolerance, tune};
+use super::{
+    absorption, cascade, check, dispersion, levels, materials, plot, sheet, sweep, tolerance,
+    transmission, tune,
+};
 
 /// Runs one command.
 pub fn run(arguments: Arguments) -> Exit {
@@ -50,6 +53,34 @@ pub fn run(arguments: Arguments) -> Exit {
             output,
         } => dispersion::dispersion(&file, (model, states), (along, &to, points), &output),
         Command::Cascade { file, output } => cascade::cascade(&file, &output),
+        Command::Transmission {
+            file,
+            from,
+            to,
+            points,
+            output,
+        } => {
+            let range = (from.as_deref(), to.as_deref(), points);
+            transmission::transmission(&file, range, &output)
+        }
+        Command::Absorption {
+            file,
+            level,
+            broadening,
+            from,
+            to,
+            points,
+            output,
+        } => {
+            let range = absorption::Range {
+                level,
+                broadening: &broadening,
+                from: from.as_deref(),
+                to: to.as_deref(),
+                points,
+            };
+            absorption::absorption(&file, &range, &output)
+        }
         Command::Materials {
             formula,
             temperature,

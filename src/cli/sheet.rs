@@ -29,6 +29,7 @@ pub fn sheet(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
+    input.with_walls("the levels of the sheet are solved");
     let plan = growth::plan(&input.structure, &input.stack);
     let (plan, growth) = match (plan, &input.structure.growth) {
         (Ok(plan), Some(growth)) => (plan, growth),

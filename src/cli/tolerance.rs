@@ -21,6 +21,7 @@ pub fn tolerance(
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
     refuse_periodic(&input, "`tolerance`")?;
+    input.with_walls("tolerances are those of levels");
     input.without_coupled("tolerances are those of")?;
     if input.structure.tolerance.is_none() {
         let doubt = Diagnostic::warning("there is no `tolerance` block, so nothing is sampled")

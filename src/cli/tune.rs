@@ -18,6 +18,7 @@ pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Ex
     for output in outputs {
         check_output(Some(output), file)?;
     }
+    input.with_walls("tuning solves");
     let is_structure =
         |path: &&PathBuf| path.extension().is_some_and(|e| e == "yaml" || e == "yml");
     let (structures, reports): (Vec<&PathBuf>, Vec<&PathBuf>) =

@@ -3,6 +3,7 @@
 
 pub mod banded;
 pub mod boundary_value;
+pub mod complex_banded;
 pub mod curvature;
 pub mod decay;
 pub mod eigenpairs;
@@ -11,6 +12,8 @@ pub mod matrix_sensitivity;
 pub mod mesh;
 pub mod nearby;
 pub mod nearest;
+pub mod open_pencil;
+pub mod outgoing;
 pub mod pencil;
 pub mod polyline;
 pub mod quadrature;

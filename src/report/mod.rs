@@ -1,5 +1,6 @@
 //! Results as text tables, CSV and JSON: read-only views.
 
+mod absorption;
 mod cascade;
 mod charge;
 mod check;
@@ -7,8 +8,10 @@ mod dispersion;
 mod interband;
 mod layer_edges;
 mod levels;
+mod lifetime;
 mod materials;
 mod minibands;
+mod open_levels;
 mod sheet;
 mod sheet_csv;
 mod sheet_html;
@@ -21,8 +24,10 @@ mod sweep_picture;
 mod sweep_text;
 mod table;
 mod tolerance;
+mod transmission;
 mod tuning;
 
+pub use absorption::Absorption;
 pub use cascade::Cascade;
 pub use charge::ChargeReport;
 pub use check::Check;
@@ -30,9 +35,11 @@ pub use dispersion::Dispersion;
 pub use levels::Levels;
 pub use materials::{MaterialList, MaterialSheet};
 pub use minibands::{MinibandLevels, Minizone};
+pub use open_levels::OpenLevels;
 pub use sheet::Sheet;
 pub use sweep::Sweeps;
 pub use tolerance::Tolerances;
+pub use transmission::Transmission;
 pub use tuning::Tuning;
 
 use serde::Serialize;

@@ -76,6 +76,8 @@ impl Structure {
 pub enum Ends {
     /// Walls, at which the envelopes vanish.
     Walls,
+    /// The outermost materials, which go on: electrons may leave.
+    Open,
     /// The same layers again, for ever.
     Periodic,
 }

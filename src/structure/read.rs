@@ -123,6 +123,14 @@ fn structure(checker: &mut Checker, root: &Node) -> Option<Structure> {
         Some(node) => bands(checker, node),
         None => (conduction_default(), None),
     };
+    let more_bands = valence.is_some() || conduction.model == ConductionModel::EightBand;
+    if let (Ends::Open, true, Some(node)) = (ends, more_bands, fields.get("ends")) {
+        checker.report(
+            Diagnostic::error("`ends: open` is available for a conduction band on its own only")
+                .at(node.span.clone())
+                .expected("`walls`, or no `valence` under `bands`"),
+        );
+    }
     let solved = match valence.map(|valence| valence.model) {
         Some(ValenceModel::Decoupled) => &BandName::ALL[..],
         Some(ValenceModel::SixBand | ValenceModel::EightBand) => {
@@ -229,15 +237,8 @@ fn key_span(root: &Node, name: &str) -> Option<std::ops::Range<usize>> {
 
 fn ends(checker: &mut Checker, node: &Node) -> Ends {
     match checker.word(node, &["walls", "open", "periodic"]) {
+        Some("open") => Ends::Open,
         Some("periodic") => Ends::Periodic,
-        Some("open") => {
-            checker.report(
-                Diagnostic::error("`ends: open` is not available yet")
-                    .at(node.span.clone())
-                    .expected("`walls` or `periodic`"),
-            );
-            Ends::Walls
-        }
         _ => Ends::Walls,
     }
 }
