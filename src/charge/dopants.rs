@@ -66,8 +66,9 @@ pub fn levels_of_dopants(
     let acceptor = bending.acceptors.map_or(conduction_ev, |level| {
         let edges = hole_edges(material, stack.substrate_lattice_nm());
         let gap_ev = edges.zip(material.conduction_edge_ev);
-        // The edge with the field is as far below the conduction edge as without.
-        gap_ev.map_or(conduction_ev, |(edges, edge_ev)| {
+        // The edge with the field is as far below the conduction edge as without. Where it is not known no holes are solved,
+        // and acceptors are ionised: their level lies far below any Fermi level of electrons.
+        gap_ev.map_or(f64::NEG_INFINITY, |(edges, edge_ev)| {
             conduction_ev - edge_ev + edges.heavy_ev.max(edges.light_ev) + level.binding_ev
         })
     });
