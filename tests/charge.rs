@@ -584,9 +584,10 @@ tolerance: {{jitter: 0.05 nm, samples: 400}}
         .iter()
         .find(|s| s.name == "width of well")
         .unwrap();
-    for k in 0..3 {
-        let exact = (at[0][k] - 8.0 * at[1][k] + 8.0 * at[2][k] - at[3][k]) / (12.0 * step);
-        let slope = found.level_shifts_ev[k] / found.amount;
+    for (k, shift_ev) in found.level_shifts_ev.iter().enumerate() {
+        let [a, b, c, d] = at.map(|levels| levels[k]);
+        let exact = (a - 8.0 * b + 8.0 * c - d) / (12.0 * step);
+        let slope = shift_ev / found.amount;
         println!("slope {slope} eV/nm, off by {:.1e}", slope - exact);
         assert!(
             (slope - exact).abs() < 1e-5 * exact.abs() + 1e-7,
@@ -805,10 +806,8 @@ fn planes_of_dopants_are_grown() {
         .unwrap();
     assert!((silicon.atoms_per_cm2 / 1.5e12 - 1.0).abs() < 1e-12);
     let bench = common::Bench::new();
-    let text = format!(
-        "substrate: GaAs\nlayers:\n  - {{material: GaAs, width: 10 nm}}\n  - {{name: spike, sheet_donors: 5e11 cm^-2}}\n  - {{material: GaAs, width: 10 nm}}\ngrowth: {{rates: {{Ga: 0.7 ML/s}}, dopants: {{donors: Si}}}}\n"
-    );
-    bench.write("delta.yaml", &text);
+    let text = "substrate: GaAs\nlayers:\n  - {material: GaAs, width: 10 nm}\n  - {name: spike, sheet_donors: 5e11 cm^-2}\n  - {material: GaAs, width: 10 nm}\ngrowth: {rates: {Ga: 0.7 ML/s}, dopants: {donors: Si}}\n";
+    bench.write("delta.yaml", text);
     let ran = bench.run(&["sheet", "delta.yaml"]).code(0);
     assert!(
         ran.stdout.contains("growth stops") && ran.stdout.contains("Si 5e11 cm^-2"),

@@ -1,7 +1,8 @@
 //! Donors and acceptors on the nodes of a mesh.
 
 use super::fermi::BOLTZMANN_EV_PER_K;
-use crate::structure::Ionisation;
+use crate::materials::{Material, hole_edges};
+use crate::structure::{Bending, Ionisation, Stack};
 
 /// Levels of dopants are full or empty over at least this temperature, in K: without any, their filling would be a jump.
 const LEAST_TEMPERATURE_K: f64 = 1.0;
@@ -52,4 +53,24 @@ impl Dopants {
             f(site.node, self.charge * ionised, slope);
         }
     }
+}
+
+/// The levels of donors and acceptors in a material, in eV.
+pub fn levels_of_dopants(
+    bending: &Bending,
+    material: &Material,
+    stack: &Stack,
+    conduction_ev: f64,
+) -> [f64; 2] {
+    let donor = conduction_ev - bending.donors.map_or(0.0, |level| level.binding_ev);
+    let acceptor = bending.acceptors.map_or(conduction_ev, |level| {
+        let edges = hole_edges(material, stack.substrate_lattice_nm());
+        let gap_ev = edges.zip(material.conduction_edge_ev);
+        // The edge with the field is as far below the conduction edge as without. Where it is not known no holes are solved,
+        // and acceptors are ionised: their level lies far below any Fermi level of electrons.
+        gap_ev.map_or(f64::NEG_INFINITY, |(edges, edge_ev)| {
+            conduction_ev - edge_ev + edges.heavy_ev.max(edges.light_ev) + level.binding_ev
+        })
+    });
+    [donor, acceptor]
 }

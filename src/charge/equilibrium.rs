@@ -2,14 +2,12 @@
 
 use super::ChargeError;
 use super::anderson::Anderson;
-use super::dopants::{Dopants, Site};
+use super::contact::contact_fermi_ev;
+use super::dopants::{Dopants, Site, levels_of_dopants};
 use super::exchange::exchange_ev;
-use super::fermi::{
-    BOLTZMANN_EV_PER_K, BulkBand, bulk_fermi_ev, density_of_states, root_of_falling,
-};
+use super::fermi::{BOLTZMANN_EV_PER_K, density_of_states, root_of_falling};
 use super::poisson::{Filled, Poisson};
 use crate::constants::COULOMB_EV_NM;
-use crate::materials::{Material, hole_edges};
 use crate::models::{Band, BandOperator};
 use crate::numerics::boundary_value::BoundaryValue;
 use crate::numerics::eigenpairs::count_below;
@@ -371,15 +369,14 @@ impl<'s> Problem<'s> {
                 exchange.push(electron - hole);
             }
         }
-        let [lower, upper] = self.poisson.held;
-        // The held ends have their energies, and what lies between moves along.
-        let bottom_off = if lower || !upper { state[0] } else { 0.0 };
-        let top_off = if upper {
-            state[nodes - 1] - self.top_ev
-        } else {
-            bottom_off
+        // Held ends have their energies, and what lies between moves along; else energies count from the bottom.
+        let bottom_off = state[0];
+        let top_off = state[nodes - 1] - self.top_ev;
+        let (bottom_off, top_off) = match self.poisson.held {
+            [true, true] => (bottom_off, top_off),
+            [false, true] => (top_off, top_off),
+            [_, false] => (bottom_off, bottom_off),
         };
-        let bottom_off = if upper && !lower { top_off } else { bottom_off };
         let total_nm = self.stack.total_width_nm();
         for (e, element) in self.mesh.elements.iter().enumerate() {
             // A border belongs to the element above it.
@@ -626,80 +623,6 @@ fn plane_node(mesh: &Mesh, layer: usize, fraction: f64) -> usize {
         0 => first * (ORDER + 1),
         below => (first + below - 1) * (ORDER + 1) + ORDER,
     }
-}
-
-/// The levels of donors and acceptors in a material, in eV.
-fn levels_of_dopants(
-    bending: &Bending,
-    material: &Material,
-    stack: &Stack,
-    conduction_ev: f64,
-) -> [f64; 2] {
-    let donor = conduction_ev - bending.donors.map_or(0.0, |level| level.binding_ev);
-    let acceptor = bending.acceptors.map_or(conduction_ev, |level| {
-        let edges = hole_edges(material, stack.substrate_lattice_nm());
-        let gap_ev = edges.zip(material.conduction_edge_ev);
-        // The edge with the field is as far below the conduction edge as without.
-        gap_ev.map_or(conduction_ev, |(edges, edge_ev)| {
-            conduction_ev - edge_ev + edges.heavy_ev.max(edges.light_ev) + level.binding_ev
-        })
-    });
-    [donor, acceptor]
-}
-
-/// The Fermi level of the lowest layer's bulk, in eV.
-fn contact_fermi_ev(
-    stack: &Stack,
-    bending: &Bending,
-    asked: &[(Band, usize)],
-    edge_ev: f64,
-) -> Result<f64, ChargeError> {
-    let (Some(layer), material) = (stack.layers.first(), stack.material_at(0, 0.0)) else {
-        return Err(ChargeError::NoContact);
-    };
-    let holes = asked.iter().any(|(band, _)| band.sign() < 0.0);
-    let valence = hole_edges(&material, stack.substrate_lattice_nm()).filter(|_| holes);
-    let valence = valence.map(|edges| {
-        let mass = |mass: Option<f64>| mass.unwrap_or(0.0).powf(1.5);
-        let both = mass(material.heavy_hole_mass_m0) + mass(material.light_hole_mass_m0);
-        BulkBand {
-            edge_ev: edges.heavy_ev.max(edges.light_ev),
-            mass_m0: both.powf(2.0 / 3.0),
-        }
-    });
-    let conduction = BulkBand {
-        edge_ev,
-        mass_m0: material.electron_mass_m0.unwrap_or(1.0),
-    };
-    let levels_ev = levels_of_dopants(bending, &material, stack, edge_ev);
-    let temperature_k = stack.temperature_k();
-    let kinds = [
-        (layer.all_donors_cm3(), 1.0, bending.donors, levels_ev[0]),
-        (
-            layer.all_acceptors_cm3(),
-            -1.0,
-            bending.acceptors,
-            levels_ev[1],
-        ),
-    ]
-    .map(|(density, charge, ionisation, level_ev)| Dopants {
-        sites: vec![Site {
-            node: 0,
-            load: density / NM3_PER_CM3,
-            level_ev,
-        }],
-        charge,
-        ionisation,
-        temperature_k,
-    });
-    let excess = |fermi_ev: f64| {
-        let mut sum = 0.0;
-        for kind in &kinds {
-            kind.each(|_| 0.0, fermi_ev, |_, charge, _| sum += charge);
-        }
-        sum
-    };
-    bulk_fermi_ev(conduction, valence, excess, temperature_k).ok_or(ChargeError::NoContact)
 }
 
 /// The states of a band as they can be filled, with their parts at the nodes of the mesh.

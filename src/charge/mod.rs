@@ -2,6 +2,7 @@
 //! bends, solved together. The solve itself is handed in as bands and accuracy; no band model is picked here.
 
 mod anderson;
+mod contact;
 mod dopants;
 mod equilibrium;
 mod exchange;
