@@ -116,7 +116,7 @@ pub fn solve_multiband(
 }
 
 /// Solves on a given mesh, with the errors estimated on a higher order.
-pub fn multiband_on_mesh(
+fn multiband_on_mesh(
     operator: &MultibandOperator,
     mesh: Mesh,
     k_per_nm: f64,
