@@ -32,6 +32,8 @@ pub fn sweep(
     }
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    input.without_minibands("`sweep`")?;
+    input.with_walls("the sweep solves levels");
     let part = part.unwrap_or(Part::WHOLE);
     let pool = pool(threads)?;
     let progress = SearchProgress::new();
