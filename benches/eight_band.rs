@@ -11,7 +11,8 @@ use wellwright::models::multiband::{Direction, MultibandModel, MultibandOperator
 use wellwright::numerics::mesh::Mesh;
 use wellwright::numerics::nearest::{NearPair, around};
 use wellwright::structure::{self, Stack};
-use wellwright::subbands::multiband::{Wanted, follow_on_mesh, pencil};
+use wellwright::subbands::follow::follow_on_mesh;
+use wellwright::subbands::multiband::{Wanted, pencil};
 
 const WELL: &str = "bands: {conduction: {model: parabolic, states: 1}}\nlayers:\n  - {material: Al0.3Ga0.7As, width: 9 nm}\n  \
                     - {material: GaAs, width: 10 nm}\n  - {material: Al0.3Ga0.7As, width: 9 nm}\n";

@@ -13,3 +13,15 @@ pub const H_EV_PER_THZ: f64 = 4.135_667_696_923_859e-3;
 
 /// e²/4πε₀ in eV nm: α ħc with α = 7.297 352 564 3e-3 and ħc = 197.326 980 459 3 eV nm.
 pub const COULOMB_EV_NM: f64 = 1.439_964_546_9;
+
+/// e²/ε₀ in eV nm.
+pub const E2_OVER_EPSILON_0: f64 = 4.0 * std::f64::consts::PI * COULOMB_EV_NM;
+
+/// k_B in eV/K (exact).
+pub const BOLTZMANN_EV_PER_K: f64 = 8.617_333_262e-5;
+
+/// Densities per area are stated per cm² and used per nm².
+pub const NM2_PER_CM2: f64 = 1e14;
+
+/// Densities per volume are stated per cm³ and used per nm³.
+pub const NM3_PER_CM3: f64 = 1e21;

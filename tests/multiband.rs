@@ -13,8 +13,9 @@ use wellwright::numerics::matrix_pencil::{MatrixCoefficient, MatrixPencil};
 use wellwright::numerics::mesh::Mesh;
 use wellwright::numerics::nearest::{NearPair, numbered};
 use wellwright::structure;
+use wellwright::subbands::follow::follow_multiband;
 use wellwright::subbands::multiband::{
-    Band, MultibandSubbands, Wanted, follow_multiband, solve_multiband, zone_centre_masses,
+    Band, MultibandSubbands, Wanted, solve_multiband, zone_centre_masses,
 };
 use wellwright::subbands::strengths::interband_strengths;
 use wellwright::subbands::{Accuracy, solve};

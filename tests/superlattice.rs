@@ -367,7 +367,7 @@ fn what_a_period_cannot_be_is_told() {
         "{told}"
     );
     bench.write("a.yaml", format!("ends: periodic\n{layers}"));
-    for command in ["tune", "tolerance", "plot"] {
+    for command in ["tune", "tolerance", "sweep", "plot"] {
         let told = bench.run(&[command, "a.yaml"]).code(2).stderr;
         assert!(told.contains("does not know minibands"), "{told}");
     }

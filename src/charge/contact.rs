@@ -3,11 +3,10 @@
 use super::ChargeError;
 use super::dopants::{Dopants, Site, levels_of_dopants};
 use super::fermi::{BulkBand, bulk_fermi_ev};
+use crate::constants::NM3_PER_CM3;
 use crate::materials::hole_edges;
 use crate::models::Band;
 use crate::structure::{Bending, Stack};
-
-const NM3_PER_CM3: f64 = 1e21;
 
 /// The Fermi level of the lowest layer's bulk, in eV: parabolic bands of its own masses. `edge_ev` is its conduction edge.
 pub fn contact_fermi_ev(

@@ -1,6 +1,6 @@
 //! Donors and acceptors on the nodes of a mesh.
 
-use super::fermi::BOLTZMANN_EV_PER_K;
+use crate::constants::BOLTZMANN_EV_PER_K;
 use crate::materials::{Material, hole_edges};
 use crate::structure::{Bending, Ionisation, Stack};
 

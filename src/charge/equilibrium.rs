@@ -5,9 +5,9 @@ use super::anderson::Anderson;
 use super::contact::contact_fermi_ev;
 use super::dopants::{Dopants, Site, levels_of_dopants};
 use super::exchange::exchange_ev;
-use super::fermi::{BOLTZMANN_EV_PER_K, density_of_states, root_of_falling};
+use super::fermi::{density_of_states, root_of_falling};
 use super::poisson::{Filled, Poisson};
-use crate::constants::COULOMB_EV_NM;
+use crate::constants::{BOLTZMANN_EV_PER_K, E2_OVER_EPSILON_0, NM2_PER_CM2, NM3_PER_CM3};
 use crate::models::{Band, BandOperator};
 use crate::numerics::boundary_value::BoundaryValue;
 use crate::numerics::eigenpairs::count_below;
@@ -16,10 +16,6 @@ use crate::structure::{Bending, Charge, Potential, Stack};
 use crate::subbands::{self, Accuracy, Bands, Subbands, amplitudes, in_plane_mass_m0, on_mesh};
 use std::sync::Arc;
 
-/// e²/ε₀ in eV nm.
-const E2_OVER_EPSILON_0: f64 = 4.0 * std::f64::consts::PI * COULOMB_EV_NM;
-const NM3_PER_CM3: f64 = 1e21;
-const NM2_PER_CM2: f64 = 1e14;
 /// Potentials that change by less have settled, in eV.
 const SETTLED_EV: f64 = 1e-9;
 const MAX_ITERATIONS: usize = 120;

@@ -1,9 +1,6 @@
 //! Fermi statistics in two and three dimensions.
 
-use crate::constants::HBAR2_OVER_2M0;
-
-/// k_B in eV/K (CODATA 2022, exact).
-pub const BOLTZMANN_EV_PER_K: f64 = 8.617_333_262e-5;
+use crate::constants::{BOLTZMANN_EV_PER_K, HBAR2_OVER_2M0};
 
 /// kT ln(1 + exp(x/kT)) and its slope 1/(1 + exp(−x/kT)): by how much a subband is filled whose bottom lies x below the
 /// Fermi level. At kT = 0 the limits, max(0, x) and the step.

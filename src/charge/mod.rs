@@ -8,8 +8,10 @@ mod equilibrium;
 mod exchange;
 mod fermi;
 mod poisson;
+mod settled;
 
 pub use equilibrium::{Equilibrium, Solution, solve};
+pub use settled::settled;
 
 use crate::models::Unsuitable;
 
@@ -34,4 +36,8 @@ pub enum ChargeError {
         "more than {most} subbands are filled: the doped layers are too thick or hold too many carriers for subbands"
     )]
     TooManySubbands { most: usize },
+    #[error(
+        "charge and potential did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV"
+    )]
+    Unsettled { residual_ev: f64 },
 }

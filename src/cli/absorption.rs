@@ -1,7 +1,7 @@
 //! `absorption`: the spectrum from one level into all others and the continuum.
 
 use super::arguments::Output;
-use super::deliver::{Exit, check_output, complain, deliver, show, write};
+use super::deliver::{Exit, check_output, complain, deliver_or_draw, show};
 use super::input::Input;
 use super::transmission::energy;
 use crate::diagnostics::Diagnostic;
@@ -74,14 +74,5 @@ pub fn absorption(file: &Path, range: &Range, output: &Output) -> Result<Exit, E
         let words = format!("audit: {fault}");
         show(&Diagnostic::warning(words), &input.name, &input.text);
     }
-    match output.output.as_deref() {
-        Some(path)
-            if path
-                .extension()
-                .is_some_and(|e| e.eq_ignore_ascii_case("svg")) =>
-        {
-            write(path, &report.svg(Width::Page), file)
-        }
-        path => deliver(&report, output.format, path, file),
-    }
+    deliver_or_draw(&report, || report.svg(Width::Page), output, file)
 }

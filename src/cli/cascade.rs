@@ -1,7 +1,7 @@
 //! `cascade`: the ladder of levels of a module that is repeated in a field.
 
 use super::arguments::Output;
-use super::deliver::{Exit, check_output, deliver, show, write};
+use super::deliver::{Exit, check_output, deliver_or_draw, show};
 use super::input::Input;
 use crate::diagnostics::Diagnostic;
 use crate::models::{Band, BandOperator};
@@ -83,16 +83,7 @@ pub fn cascade(file: &Path, output: &Output) -> Result<Exit, Exit> {
     }
     input.doubt_growth();
     let report = Cascade::new(&input.structure, &module, repeated.copies, &found);
-    match output.output.as_deref() {
-        Some(path)
-            if path
-                .extension()
-                .is_some_and(|e| e.eq_ignore_ascii_case("svg")) =>
-        {
-            write(path, &report.svg(Width::Page), file)
-        }
-        path => deliver(&report, output.format, path, file),
-    }
+    deliver_or_draw(&report, || report.svg(Width::Page), output, file)
 }
 
 fn doubts(found: &Ladder, asked: usize) -> Vec<String> {

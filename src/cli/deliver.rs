@@ -1,6 +1,6 @@
 //! How results and messages leave the program.
 
-use super::arguments::Format;
+use super::arguments::{Format, Output};
 use super::output::{refuse, write_whole};
 use crate::diagnostics::Diagnostic;
 use crate::report::Report;
@@ -48,6 +48,25 @@ pub fn deliver(
         Some(path) => write(path, &text, input),
         None => print(&text),
     }
+}
+
+/// Writes the picture where the output's name ends in .svg, and the report otherwise.
+pub fn deliver_or_draw(
+    report: &impl Report,
+    svg: impl FnOnce() -> String,
+    output: &Output,
+    input: &Path,
+) -> Result<Exit, Exit> {
+    match output.output.as_deref() {
+        Some(path) if ends_in(path, "svg") => write(path, &svg(), input),
+        path => deliver(report, output.format, path, input),
+    }
+}
+
+/// Whether a file's name has this ending, in letters of either case.
+pub fn ends_in(path: &Path, ending: &str) -> bool {
+    path.extension()
+        .is_some_and(|own| own.eq_ignore_ascii_case(ending))
 }
 
 /// Writes a file whole, never over the input.

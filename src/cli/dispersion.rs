@@ -1,7 +1,7 @@
 //! `dispersion`: subbands of coupled bands along an in-plane wave vector.
 
 use super::arguments::{Along, Coupled, Output};
-use super::deliver::{Exit, check_output, complain, deliver, show, write};
+use super::deliver::{Exit, check_output, complain, deliver_or_draw, show};
 use super::input::Input;
 use super::minibands;
 use crate::diagnostics::Diagnostic;
@@ -10,7 +10,8 @@ use crate::models::multiband::{Direction, MultibandModel, MultibandOperator};
 use crate::report::Dispersion;
 use crate::report::svg::Width;
 use crate::structure::{Charge, Ends, Structure};
-use crate::subbands::multiband::{Wanted, follow_multiband, solve_multiband, zone_centre_masses};
+use crate::subbands::follow::follow_multiband;
+use crate::subbands::multiband::{Wanted, solve_multiband, zone_centre_masses};
 use crate::units::{self, Dimension};
 use std::path::Path;
 
@@ -94,16 +95,7 @@ pub fn dispersion(
         &k_per_nm,
         &followed,
     );
-    match output.output.as_deref() {
-        Some(path)
-            if path
-                .extension()
-                .is_some_and(|e| e.eq_ignore_ascii_case("svg")) =>
-        {
-            write(path, &report.svg(Width::Page), file)
-        }
-        path => deliver(&report, output.format, path, file),
-    }
+    deliver_or_draw(&report, || report.svg(Width::Page), output, file)
 }
 
 /// How many subbands of each band: those that the command line asks for, or the file for this model.

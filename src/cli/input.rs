@@ -5,7 +5,7 @@ use crate::charge::{self, ChargeError, Equilibrium, Solution};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::{Band, Unsuitable};
-use crate::structure::{self, ConductionModel, Ends, Stack, Structure};
+use crate::structure::{self, Stack, Structure};
 use crate::subbands::{Accuracy, Audit, Bands, Hold, State};
 use std::collections::BTreeSet;
 use std::fs::File;
@@ -121,51 +121,6 @@ impl Input {
         );
         show(&Diagnostic::warning(words), &self.name, &self.text);
         Exit::NotPossible
-    }
-
-    /// Tells a file with holes from what a command takes, the conduction band.
-    ///
-    /// # Errors
-    /// When electrons and holes are one problem, of which the command takes no part.
-    pub fn conduction_only(&self, what: &str) -> Result<(), Exit> {
-        if self.structure.valence.is_some() && !self.structure.couples_bands() {
-            let words = format!("{what} the conduction band only");
-            show(&Diagnostic::warning(words), &self.name, &self.text);
-        }
-        self.without_coupled(what)
-    }
-
-    /// Tells a file whose bands are coupled from what a command takes, bands that are solved on their own.
-    ///
-    /// # Errors
-    /// When electrons and holes are one problem, of which the command takes no part.
-    pub fn without_coupled(&self, what: &str) -> Result<(), Exit> {
-        if self.structure.conduction.model == ConductionModel::EightBand {
-            let problem = Diagnostic::error(format!(
-                "{what} bands that are solved on their own, and this file's are `eight-band`"
-            ))
-            .expected("`parabolic` or `energy-dependent` for `conduction`")
-            .hint("`levels`, `tune` and `dispersion` take eight bands");
-            show(&problem, &self.name, &self.text);
-            return Err(Exit::WrongInput);
-        }
-        if Band::alone(&self.structure).len() < Band::of(&self.structure).len() {
-            let words = format!(
-                "{what} the conduction band only, since the holes are coupled; `levels` and `tune` solve them too"
-            );
-            show(&Diagnostic::warning(words), &self.name, &self.text);
-        }
-        Ok(())
-    }
-
-    /// Says that a command takes walls where the file has open ends.
-    pub fn with_walls(&self, what: &str) {
-        if self.structure.ends == Ends::Open {
-            let words = format!(
-                "{what} between walls at both ends: escape widths and lifetimes are left out; `levels`, `transmission` and `absorption` let electrons out"
-            );
-            show(&Diagnostic::warning(words), &self.name, &self.text);
-        }
     }
 
     /// Doubts about the solutions of all bands, of each about the states that are listed.

@@ -8,6 +8,7 @@ mod deliver;
 mod dispersion;
 mod input;
 mod levels;
+mod limits;
 mod materials;
 mod minibands;
 mod output;

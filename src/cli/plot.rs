@@ -3,7 +3,6 @@
 use super::arguments::Picture;
 use super::deliver::{Exit, check_output, print, show, write};
 use super::input::Input;
-use super::minibands::refuse_periodic;
 use super::tolerance::worked_out;
 use crate::charge::Solution;
 use crate::diagnostics::Diagnostic;
@@ -18,7 +17,7 @@ const LEAST_SAMPLES: u32 = 2;
 pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output, file)?;
-    refuse_periodic(&input, "`plot`")?;
+    input.without_minibands("`plot`")?;
     input.with_walls("the picture shows levels");
     input.without_coupled("the picture shows")?;
     let picture = match what {

@@ -1,7 +1,7 @@
 //! `sheet`: the growth sheet of a stack.
 
 use super::arguments::{Format, SheetFormat};
-use super::deliver::{Exit, check_output, deliver, print, show, write};
+use super::deliver::{Exit, check_output, deliver, ends_in, print, show, write};
 use super::input::Input;
 use super::minibands;
 use super::plot::diagram;
@@ -74,10 +74,7 @@ pub fn sheet(
         (bands, &shown),
         &peaks,
     );
-    let page = output.is_some_and(|path| {
-        path.extension()
-            .is_some_and(|e| e.eq_ignore_ascii_case("html"))
-    });
+    let page = output.is_some_and(|path| ends_in(path, "html"));
     let text = match format.unwrap_or(if page {
         SheetFormat::Html
     } else {

@@ -1,7 +1,7 @@
 //! `sweep`: levels and transitions while one number of the stack goes through a range.
 
 use super::arguments::{Format, Output, PlotWidth, SweepWhat};
-use super::deliver::{Exit, check_output, complain, deliver, show, write};
+use super::deliver::{Exit, check_output, complain, deliver, ends_in, show, write};
 use super::input::Input;
 use super::progress::SearchProgress;
 use super::threads::pool;
@@ -18,10 +18,8 @@ pub fn sweep(
     (what, width): (Option<SweepWhat>, Option<PlotWidth>),
     output: &Output,
 ) -> Result<Exit, Exit> {
-    let picture = output.output.as_deref().filter(|path| {
-        path.extension()
-            .is_some_and(|e| e.eq_ignore_ascii_case("svg"))
-    });
+    let picture = output.output.as_deref();
+    let picture = picture.filter(|path| ends_in(path, "svg"));
     if part.is_some() && (output.format != Format::Csv || picture.is_some()) {
         complain("error: slices join as CSV only: --part needs --format csv, and no picture");
         return Err(Exit::WrongInput);
@@ -34,6 +32,8 @@ pub fn sweep(
     }
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    input.without_minibands("`sweep`")?;
+    input.with_walls("the sweep solves levels");
     let part = part.unwrap_or(Part::WHOLE);
     let pool = pool(threads)?;
     let progress = SearchProgress::new();

@@ -3,7 +3,6 @@
 use super::arguments::Output;
 use super::deliver::{Exit, check_output, deliver, show};
 use super::input::Input;
-use super::minibands::refuse_periodic;
 use super::progress::SearchProgress;
 use super::threads::pool;
 use crate::diagnostics::Diagnostic;
@@ -20,7 +19,7 @@ pub fn tolerance(
 ) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
-    refuse_periodic(&input, "`tolerance`")?;
+    input.without_minibands("`tolerance`")?;
     input.with_walls("tolerances are those of levels");
     input.without_coupled("tolerances are those of")?;
     if input.structure.tolerance.is_none() {
@@ -75,7 +74,7 @@ pub fn worked_out(
             show(&problem, &input.name, &input.text);
             Exit::WrongInput
         }
-        ToleranceError::NoLevel { .. } | ToleranceError::Unsettled { .. } => {
+        ToleranceError::NoLevel { .. } => {
             show(
                 &Diagnostic::error(error.to_string()),
                 &input.name,

@@ -1,7 +1,7 @@
 //! `transmission`: the part of an electron stream that crosses a stack.
 
 use super::arguments::Output;
-use super::deliver::{Exit, check_output, complain, deliver, show, write};
+use super::deliver::{Exit, check_output, complain, deliver_or_draw, show};
 use super::input::Input;
 use crate::diagnostics::Diagnostic;
 use crate::models::BandOperator;
@@ -53,16 +53,7 @@ pub fn transmission(
         let words = format!("audit: {fault}");
         show(&Diagnostic::warning(words), &input.name, &input.text);
     }
-    match output.output.as_deref() {
-        Some(path)
-            if path
-                .extension()
-                .is_some_and(|e| e.eq_ignore_ascii_case("svg")) =>
-        {
-            write(path, &report.svg(Width::Page), file)
-        }
-        path => deliver(&report, output.format, path, file),
-    }
+    deliver_or_draw(&report, || report.svg(Width::Page), output, file)
 }
 
 /// An energy given on the command line, in eV.

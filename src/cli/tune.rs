@@ -3,7 +3,6 @@
 use super::arguments::Format;
 use super::deliver::{Exit, check_output, complain, deliver, show, write};
 use super::input::Input;
-use super::minibands::refuse_periodic;
 use super::progress::SearchProgress;
 use crate::diagnostics::Diagnostic;
 use crate::report::Tuning;
@@ -14,7 +13,7 @@ use std::path::{Path, PathBuf};
 
 pub fn tune(file: &Path, format: Format, outputs: &[PathBuf]) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
-    refuse_periodic(&input, "`tune`")?;
+    input.without_minibands("`tune`")?;
     for output in outputs {
         check_output(Some(output), file)?;
     }

@@ -1,6 +1,7 @@
 //! What a growth uses up, and how often its shutters move.
 
 use super::rows::{LayerRow, Row};
+use crate::constants::NM2_PER_CM2;
 use crate::materials::Element;
 use crate::structure::{Growth, Stack};
 
@@ -26,7 +27,6 @@ pub struct MaterialTotal {
     pub atoms_per_cm2: f64,
 }
 
-const NM2_PER_CM2: f64 = 1e14;
 const CM_PER_NM: f64 = 1e-7;
 
 /// The layers of the rows, one per entry of the file.

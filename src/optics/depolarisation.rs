@@ -7,15 +7,12 @@
 //! (1982), section IV.B; exchange, which counteracts, is left out). In a parabolic well one line is left, at the bare
 //! energy, however many electrons there are (Brey, Johnson and Halperin, Phys. Rev. B 40, 10647 (1989)).
 
-use crate::constants::COULOMB_EV_NM;
+use crate::constants::{E2_OVER_EPSILON_0, NM2_PER_CM2};
 use crate::numerics::quadrature::MAX_ORDER;
 use crate::structure::Stack;
 use crate::subbands::Subbands;
 use nalgebra::{DMatrix, SymmetricEigen};
 
-/// e²/ε₀ in eV nm.
-const E2_OVER_EPSILON_0: f64 = 4.0 * std::f64::consts::PI * COULOMB_EV_NM;
-const NM2_PER_CM2: f64 = 1e14;
 /// Transitions between fillings that differ by less than this part of all electrons move nothing.
 const EMPTY: f64 = 1e-6;
 /// As many transitions are coupled at most, those with the largest strength times electrons.

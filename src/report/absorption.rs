@@ -3,7 +3,7 @@
 use super::lifetime::width_mev;
 use super::svg::{Spectrum, SpectrumMark, Width};
 use super::table::{given, significant, table};
-use super::{Report, csv_table};
+use super::{Report, csv_table, verdict};
 use crate::constants::HC_EV_UM;
 use crate::models::model_name;
 use crate::open_ends::{self, SUM_TO_EV};
@@ -254,11 +254,7 @@ impl Report for Absorption {
             ]
         });
         let a = &self.audit;
-        let verdict = if a.faults.is_empty() {
-            "passed".to_owned()
-        } else {
-            a.faults.join("; ")
-        };
+        let verdict = verdict(&a.faults);
         format!(
             "{title}{} K, field {} kV/cm, {} mass; from {} at {:.5} eV, {}; lines {} meV wide\n\n{}\n\n{lines}\n{}\
              Spectrum: {DEFINITION}.\n\

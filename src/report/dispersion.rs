@@ -5,7 +5,8 @@ use super::table::{error_mev, given, significant, table};
 use super::{Report, csv_table};
 use crate::models::multiband::MultibandModel;
 use crate::structure::{Stack, Structure};
-use crate::subbands::multiband::{Band, FollowedBand, MultibandSubbands};
+use crate::subbands::follow::FollowedBand;
+use crate::subbands::multiband::{Band, MultibandSubbands};
 use serde::Serialize;
 
 /// The zone centre and the way from it.

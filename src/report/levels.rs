@@ -4,7 +4,7 @@ use super::charge::ChargeReport;
 use super::interband::Interbands;
 use super::layer_edges::LayerEdges;
 use super::table::{error_mev, given, significant, table};
-use super::{Report, csv_table};
+use super::{Report, csv_table, verdict};
 use crate::models::{model_name, valence_model_name};
 use crate::optics::{Transition, band_transitions};
 use crate::structure::{BandName, ConductionModel, Stack, Structure, ValenceModel};
@@ -365,11 +365,7 @@ impl Levels {
                 .collect(),
         );
         let a = &self.audit;
-        let verdict = if a.faults.is_empty() {
-            "passed".to_owned()
-        } else {
-            a.faults.join("; ")
-        };
+        let verdict = verdict(&a.faults);
         let interband = self
             .interband
             .as_ref()

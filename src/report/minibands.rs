@@ -2,7 +2,7 @@
 
 use super::svg::{MinizoneCurves, Width};
 use super::table::{error_mev, given, significant, table};
-use super::{Report, csv_table};
+use super::{Report, csv_table, verdict};
 use crate::models::model_name;
 use crate::structure::{Stack, Structure};
 use crate::superlattice::{
@@ -252,7 +252,7 @@ impl Report for MinibandLevels {
                 })
                 .collect(),
         );
-        let verdicts: Vec<String> = self
+        let faults: Vec<String> = self
             .audit
             .iter()
             .flat_map(|a| a.faults.iter().cloned())
@@ -264,11 +264,7 @@ impl Report for MinibandLevels {
              Audit {}: velocity and slope {:.0e}, overlaps {:.0e}{}.\n",
             self.head.text(),
             miniband_table(&self.minibands),
-            if verdicts.is_empty() {
-                "passed".to_owned()
-            } else {
-                verdicts.join("; ")
-            },
+            verdict(&faults),
             worst(|a| a.velocity_slope),
             worst(|a| a.orthonormality),
             if self.audit.iter().all(|a| a.counts_match) {

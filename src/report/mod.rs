@@ -60,6 +60,14 @@ pub trait Report: Serialize {
     }
 }
 
+/// What an audit says.
+fn verdict(faults: &[String]) -> String {
+    match faults {
+        [] => "passed".to_owned(),
+        faults => faults.join("; "),
+    }
+}
+
 /// Enough for any use, and free of the last bits of arithmetic: 12, never 12.000000000000002.
 const JSON_DIGITS: usize = 12;
 

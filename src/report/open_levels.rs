@@ -2,7 +2,7 @@
 
 use super::lifetime::{leaves_through, lifetime, width_mev};
 use super::table::{error_mev, given, significant, table};
-use super::{Report, csv_table};
+use super::{Report, csv_table, verdict};
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0, HC_EV_UM};
 use crate::models::model_name;
 use crate::open_ends::{QuasiBoundStates, moment};
@@ -266,11 +266,7 @@ impl Report for OpenLevels {
             String::new()
         };
         let a = &self.audit;
-        let verdict = if a.faults.is_empty() {
-            "passed".to_owned()
-        } else {
-            a.faults.join("; ")
-        };
+        let verdict = verdict(&a.faults);
         format!(
             "{title}{} K, field {} kV/cm, {} mass, {:.2} nm, ends {}\n\n{states}\n\
              Levels up to {:.0} meV from the edge, narrower than {:.0} meV.{fewer} Lifetime: ħ over the width, of escape alone.\n\n\

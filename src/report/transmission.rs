@@ -3,7 +3,7 @@
 use super::lifetime::{leaves_through, lifetime, width_mev};
 use super::svg::{Spectrum, SpectrumMark, Width};
 use super::table::{given, significant, table};
-use super::{Report, csv_table};
+use super::{Report, csv_table, verdict};
 use crate::models::model_name;
 use crate::open_ends;
 use crate::structure::{Stack, Structure};
@@ -241,11 +241,7 @@ impl Report for Transmission {
             ]
         });
         let a = &self.audit;
-        let verdict = if a.faults.is_empty() {
-            "passed".to_owned()
-        } else {
-            a.faults.join("; ")
-        };
+        let verdict = verdict(&a.faults);
         format!(
             "{title}{} K, field {} kV/cm, {} mass; flat leads with their edges at {:.2} meV (bottom) and {:.2} meV (top); {}, {:.5} eV\n\n\
              {resonances}\n{}All {} points, with more around each resonance, are in CSV and JSON.\n\

@@ -1,8 +1,9 @@
 //! What only shows once materials are resolved: doubts about the physics, and bounds of tuning that do not fit.
 
 use super::file::{ConductionModel, LayerEntry, Structure, Variable, Varied};
+use super::lay_out::no_monolayer;
 use super::read_tolerance;
-use super::stack::{Stack, no_monolayer};
+use super::stack::Stack;
 use super::sweeps;
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Material, Valley, hole_edges, strain};

@@ -11,6 +11,8 @@ mod fields;
 mod file;
 mod grade;
 mod growth;
+mod knob;
+mod lay_out;
 mod period;
 mod potential;
 mod read;
@@ -31,12 +33,14 @@ mod temperature;
 mod wafer;
 
 pub use charge::{Bending, Charge, Ionisation};
+pub use document::{MAX_BYTES, decode};
 pub use file::{
     Aim, BandName, ConductionBand, ConductionModel, Ends, Follow, Item, Keep, LayerEntry, Level,
     PlaneEntry, Profile, Spanned, StrainBound, Structure, Target, Tune, ValenceBand, ValenceModel,
     Variable, Varied, Within,
 };
 pub use growth::{Cell, DOPANTS, Dopant, Growth};
+pub use knob::Knob;
 pub use period::{NoModule, Repeated};
 pub use potential::Potential;
 pub use read::read;
@@ -46,7 +50,3 @@ pub use spreads::{Grading, Radial, Tolerance, Window};
 pub use stack::{Layer, MAX_TOTAL_NM, Plane, Stack};
 pub use sweeps::{Doping, Steps, Sweep, Swept};
 pub use wafer::{Cause, Design, NotGrown};
-
-mod knob;
-pub use document::{MAX_BYTES, decode};
-pub use knob::Knob;

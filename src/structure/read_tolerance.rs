@@ -3,10 +3,11 @@
 use super::document::{Node, Value, line_of};
 use super::fields::{Checker, Fields, Limits, above, between, one_of};
 use super::file::{BandName, Spanned, Structure};
+use super::lay_out::no_monolayer;
 use super::read_aims::{ENERGY_LIMITS, WAVELENGTH_LIMITS, is_lower_first, level};
 use super::read_tune::element;
 use super::spreads::{Grading, Radial, Tolerance, Window};
-use super::stack::{Stack, no_monolayer};
+use super::stack::Stack;
 use super::wafer::Design;
 use crate::constants::HC_EV_UM;
 use crate::diagnostics::Diagnostic;

@@ -3,7 +3,8 @@
 
 use super::charge::Charge;
 use super::file::{Level, Structure, Varied};
-use super::stack::{Stack, no_monolayer};
+use super::lay_out::no_monolayer;
+use super::stack::Stack;
 use crate::diagnostics::Diagnostic;
 use std::ops::Range;
 

@@ -6,6 +6,7 @@ mod change;
 mod coupled;
 mod curves;
 mod envelope;
+pub mod follow;
 mod in_plane;
 pub mod multiband;
 mod nearby;

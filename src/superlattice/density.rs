@@ -5,7 +5,7 @@
 //! the same in the whole miniband; else the mass is taken at evenly spread phases.
 
 use super::minibands::{Minibands, SAMPLES};
-use crate::constants::HBAR2_OVER_2M0;
+use crate::constants::{HBAR2_OVER_2M0, NM2_PER_CM2};
 use crate::numerics::quasiperiodic::Condensed;
 use std::f64::consts::PI;
 
@@ -61,8 +61,8 @@ pub fn density_of_states(minibands: &Minibands, energies_ev: &[f64]) -> Vec<Dens
                     };
                 }
             }
-            // m/πħ² with ħ²/2m₀ at hand; 1 nm² is 1e-14 cm².
-            let per_period = 1e14 * mass / (2.0 * PI * HBAR2_OVER_2M0);
+            // m/πħ² with ħ²/2m₀ at hand.
+            let per_period = NM2_PER_CM2 * mass / (2.0 * PI * HBAR2_OVER_2M0);
             DensityPoint {
                 energy_ev,
                 per_period,

@@ -25,10 +25,6 @@ impl Part {
     pub fn is_first(self) -> bool {
         self.index == 1
     }
-
-    pub fn is_whole(self) -> bool {
-        self.of == 1
-    }
 }
 
 impl FromStr for Part {

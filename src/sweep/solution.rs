@@ -18,10 +18,6 @@ pub enum NotSolved {
     Unsuitable { layer: usize, reason: Unsuitable },
     #[error(transparent)]
     Charge(ChargeError),
-    #[error(
-        "charge and potential did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV"
-    )]
-    Unsettled { residual_ev: f64 },
 }
 
 /// Solves each band for a number of levels, bent by charge where the file says so.
@@ -31,19 +27,13 @@ pub fn solved(
     bands: &[(Band, usize)],
     accuracy: Accuracy,
 ) -> Result<Bands, NotSolved> {
-    let solution = charge::solve(stack, charge, bands, accuracy).map_err(|error| match error {
-        ChargeError::Unsuitable { layer, reason } => NotSolved::Unsuitable { layer, reason },
-        other => NotSolved::Charge(other),
-    })?;
-    if let Some(found) = &solution.equilibrium
-        && !found.is_settled()
-    {
-        let residual_ev = found.residual_ev;
-        return Err(NotSolved::Unsettled { residual_ev });
-    }
-    // More may have been solved because they are filled.
-    let counts: Vec<usize> = bands.iter().map(|(_, count)| *count).collect();
-    Ok(solution.bands.truncated(&counts))
+    let solution = charge::settled(stack, charge, bands, accuracy);
+    solution
+        .map(|found| found.bands)
+        .map_err(|error| match error {
+            ChargeError::Unsuitable { layer, reason } => NotSolved::Unsuitable { layer, reason },
+            other => NotSolved::Charge(other),
+        })
 }
 
 /// The levels of a band counted away from the gap, ascending, in eV.

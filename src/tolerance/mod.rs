@@ -58,10 +58,6 @@ pub enum ToleranceError {
     NoLevel { wanted: Level },
     #[error(transparent)]
     Charge(ChargeError),
-    #[error(
-        "charge and potential of a wafer did not settle: the last iteration still moved the bands by {residual_ev:.0e} eV"
-    )]
-    Unsettled { residual_ev: f64 },
 }
 
 impl ToleranceError {
@@ -84,19 +80,15 @@ fn solved(
     asked: &[(Band, usize)],
     accuracy: Accuracy,
 ) -> Result<(Stack, Bands), ToleranceError> {
-    let solution = charge::solve(stack, charge, asked, accuracy).map_err(|error| match error {
-        ChargeError::Unsuitable { layer, reason } => ToleranceError::Unsuitable { layer, reason },
-        other => ToleranceError::Charge(other),
-    })?;
-    if let Some(found) = &solution.equilibrium
-        && !found.is_settled()
-    {
-        let residual_ev = found.residual_ev;
-        return Err(ToleranceError::Unsettled { residual_ev });
-    }
-    // More may have been solved because they are filled.
-    let counts: Vec<usize> = asked.iter().map(|(_, count)| *count).collect();
-    Ok((solution.stack, solution.bands.truncated(&counts)))
+    let solution = charge::settled(stack, charge, asked, accuracy);
+    solution
+        .map(|found| (found.stack, found.bands))
+        .map_err(|error| match error {
+            ChargeError::Unsuitable { layer, reason } => {
+                ToleranceError::Unsuitable { layer, reason }
+            }
+            other => ToleranceError::Charge(other),
+        })
 }
 
 /// The mesh of sampled wafers is this exact, in eV: far less than any spread that can be grown.
