@@ -187,6 +187,58 @@ fn a_mirrored_module_in_the_opposite_field_has_the_same_levels() {
     }
 }
 
+/// Where a module is said to begin changes neither its levels, counted round e F d, nor their dipoles, nor which of them
+/// align: a level that is called one of the next module there is one of the same here.
+#[test]
+fn a_module_may_begin_at_any_barrier() {
+    let round = |l: &Ladder, offset_ev: f64| -> Vec<f64> {
+        let energies = l.states.iter();
+        energies
+            .map(|s| (s.energy_ev + offset_ev).rem_euclid(l.drop_ev))
+            .collect()
+    };
+    for law_ev in [None, Some([1.519, 1.93])] {
+        let one = Cascade { law_ev, ..HELD }.ladder();
+        let other = Cascade {
+            law_ev,
+            sequence: &[30.0, 50.0, 60.0, 70.0],
+            ..HELD
+        }
+        .ladder();
+        // The field's energy is zero 13 nm higher: −20 kV/cm.
+        let energies = [round(&one, 0.0), round(&other, -0.026)];
+        let partner = |a: f64| {
+            let apart = |b: f64| {
+                let apart = (a - b).abs();
+                apart.min(one.drop_ev - apart)
+            };
+            let places = (0..3).map(|k| (k, apart(energies[1][k])));
+            places.min_by(|a, b| a.1.total_cmp(&b.1)).unwrap()
+        };
+        let partners: Vec<usize> = energies[0]
+            .iter()
+            .map(|a| {
+                let (place, apart_ev) = partner(*a);
+                assert!(apart_ev < 1e-9, "{apart_ev}");
+                place
+            })
+            .collect();
+        let mut compared = 0;
+        for t in &one.transitions {
+            let names = [partners[t.from], partners[t.to]];
+            let same = other.transitions.iter().find(|u| {
+                let own = [u.from, u.to];
+                own == names && (u.energy_ev - t.energy_ev).abs() < 1e-8
+            });
+            let Some(same) = same else { continue };
+            compared += 1;
+            assert!((same.dipole_nm - t.dipole_nm).abs() < 1e-7);
+            assert!((same.overlap - t.overlap).abs() < 1e-7);
+        }
+        assert!(compared >= 4, "{compared}");
+    }
+}
+
 /// Injection through its resonance: the gap is the least distance over a scan of the field, and its field the scan's.
 #[test]
 fn anticrossings_are_where_a_scan_of_the_field_finds_them() {

@@ -313,6 +313,61 @@ fn standing_waves_of_a_finite_stack_lie_on_the_dispersion() {
     }
 }
 
+/// A crystal has no first layer: where its period is cut, in a layer, in a grade or at a border, changes nothing. And a
+/// period that holds another one twice folds its minibands (Brillouin): bands 2n − 1 and 2n touch, and their outer edges
+/// are those of band n, masses too.
+#[test]
+fn where_a_period_is_cut_changes_nothing_and_two_of_them_fold() {
+    let head = "ends: periodic
+bands: {conduction: {model: energy-dependent, states: STATES}}
+materials:
+  W: {conduction_edge: 0.0 eV, electron_mass: 0.05, nonparabolicity_energy: 1.0 eV}
+  M: {conduction_edge: 0.15 eV, electron_mass: 0.065, nonparabolicity_energy: 1.25 eV}
+  B: {conduction_edge: 0.3 eV, electron_mass: 0.08, nonparabolicity_energy: 1.5 eV}
+layers:
+";
+    let of = |layers: &[&str], states: usize| {
+        let lines = layers
+            .iter()
+            .map(|layer| format!("  - {{material: {layer}}}\n"));
+        let lines: String = lines.collect();
+        solved(&format!("{head}{lines}").replace("STATES", &states.to_string()))
+    };
+    let whole = ["W, width: 6 nm", "W, to: B, width: 4 nm", "B, width: 2 nm"];
+    let one = of(&whole, 4);
+    let cuts: [&[&str]; 3] = [
+        &["B, width: 2 nm", "W, width: 6 nm", "W, to: B, width: 4 nm"],
+        &["W, width: 1.7 nm", whole[1], whole[2], "W, width: 4.3 nm"],
+        &[
+            "M, to: B, width: 2 nm",
+            whole[2],
+            whole[0],
+            "W, to: M, width: 2 nm",
+        ],
+    ];
+    for cut in cuts {
+        let other = of(cut, 4);
+        for (a, b) in one.minibands.iter().zip(&other.minibands) {
+            for (a, b) in a.edges.iter().zip(&b.edges) {
+                assert!((a.energy_ev - b.energy_ev).abs() < 1e-10);
+                assert!((a.mass_m0.unwrap() / b.mass_m0.unwrap() - 1.0).abs() < 1e-8);
+                assert!((a.in_plane_mass_m0 - b.in_plane_mass_m0).abs() < 1e-10);
+                assert_eq!(a.zone, b.zone);
+            }
+        }
+    }
+    let twice = of(&[whole, whole].concat(), 8);
+    for (n, band) in one.minibands.iter().enumerate() {
+        let [lower, upper] = [&twice.minibands[2 * n], &twice.minibands[2 * n + 1]];
+        let (touching, above) = (lower.edges[1].energy_ev, upper.edges[0].energy_ev);
+        assert!((above - touching).abs() < 1e-9);
+        for (found, expected) in [lower.edges[0], upper.edges[1]].iter().zip(&band.edges) {
+            assert!((found.energy_ev - expected.energy_ev).abs() < 1e-10);
+            assert!((found.mass_m0.unwrap() / expected.mass_m0.unwrap() - 1.0).abs() < 1e-8);
+        }
+    }
+}
+
 /// Holes are the other way up, and the group velocity is the slope of the energy.
 #[test]
 fn holes_have_minibands_too() {

@@ -70,7 +70,6 @@ impl Band {
         own.map(|level| level.index).max().unwrap_or(0)
     }
 
-    /// What the solver's eigenvalues are multiplied with to give the electron's energy: −1 for holes.
     /// The model of coupled bands that this one is part of.
     pub fn coupled(self) -> Option<MultibandModel> {
         match self {

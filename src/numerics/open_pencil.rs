@@ -91,6 +91,17 @@ pub fn conductance(lead: &Coefficient, lambda: C64) -> (C64, C64) {
     (root, slope)
 }
 
+/// ∫ (|ψ|² + …) from a flat end outwards over |ψ|² at the end: where the wave dies out.
+fn tail_nm(lead: &Coefficient, lambda: C64) -> Option<f64> {
+    let flat = Raised {
+        own: *lead,
+        raise: ZERO,
+    };
+    let k = conductance(lead, lambda).0 / flat.a(lambda);
+    let components = 1.0 + flat.divided(lambda, lambda.conj()).re * k.norm_sqr();
+    (k.im > 0.0).then(|| components / (2.0 * k.im))
+}
+
 /// The discretised problem.
 #[derive(Clone, Debug)]
 pub struct OpenPencil {
@@ -270,7 +281,8 @@ impl OpenPencil {
 
     /// Im(ψ̄ A ψ′) of what flows out at the lower end of element `from` and at the upper end of element `to − 1`, over
     /// ∫ (|ψ|² + …) between: by the equation itself these are the parts of −Im λ (Siegert 1939), to as many digits as ψ
-    /// has at the ends, however small they are.
+    /// has at the ends, however small they are. Nothing flows through a flat end in which the state dies out; what it has
+    /// there is part of the integral.
     pub fn escape_rates(&self, lambda: C64, x: &[C64], [from, to]: [usize; 2]) -> [f64; 2] {
         let reference = self.mesh.reference;
         let p = reference.order;
@@ -285,9 +297,10 @@ impl OpenPencil {
             }
         }
         let outflow = |end: &End, border: usize, outside: Option<usize>, up: bool| match end {
-            End::Flat(lead) if outside.is_none() => {
-                x[border].norm_sqr() * conductance(lead, lambda).0.re
-            }
+            End::Flat(lead) if outside.is_none() => match tail_nm(lead, lambda) {
+                Some(_) => 0.0,
+                None => x[border].norm_sqr() * conductance(lead, lambda).0.re,
+            },
             _ => outside.map_or(0.0, |index| {
                 // The flux from the equation of the element outside, tested with the border's own polynomial.
                 let slopes = self.slopes(index, x);
@@ -308,6 +321,12 @@ impl OpenPencil {
         let lower = outflow(&self.ends[0], from * p, from.checked_sub(1), false);
         let above = (to < self.mesh.elements.len()).then_some(to);
         let upper = outflow(&self.ends[1], to * p, above, true);
+        let beyond = [from.checked_sub(1), above];
+        for ((end, outside), border) in self.ends.iter().zip(beyond).zip([from * p, to * p]) {
+            if let (End::Flat(lead), None) = (end, outside) {
+                norm += x[border].norm_sqr() * tail_nm(lead, lambda).unwrap_or(0.0);
+            }
+        }
         [lower / norm, upper / norm]
     }
 }

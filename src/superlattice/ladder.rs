@@ -103,6 +103,7 @@ pub struct Alignment {
     pub next_module: bool,
     /// The first level less the second, in the field of the file.
     pub detuning_ev: f64,
+    pub dipole_nm: f64,
     pub overlap: f64,
     /// `None` where they come nearest too far from the field of the file.
     pub anticrossing: Option<Anticrossing>,
@@ -404,12 +405,14 @@ fn described(module: Module, neighbours: Neighbours, tried: &Tried) -> Ladder {
         let (first, second) = (&subbands.pairs[a], &subbands.pairs[b]);
         let detuning_ev = first.value - second.value;
         if detuning_ev.abs() < ALIGNED_EV && a != b {
+            let joint = between(a, b);
             alignments.push(Alignment {
                 upstream,
                 downstream,
                 next_module,
                 detuning_ev,
-                overlap: between(a, b).map_or(0.0, |t| t.overlap),
+                dipole_nm: joint.map_or(0.0, |t| t.dipole_nm),
+                overlap: joint.map_or(0.0, |t| t.overlap),
                 anticrossing: anticrossing(window, order, start, [first, second]),
             });
         }

@@ -256,6 +256,10 @@ def cases():
     yield "double barrier, two-band law", [
         Layer(3, *well), Layer(2.5, *barrier), Layer(5, *well), Layer(2, *barrier), Layer(3, *well)], 0, (
         0.01, 0.6, 24, (0.0, 0.02)), [0.05, 0.12, 0.3, 0.6]
+    high = (0.35, 0.065, 1.3)
+    yield "double barrier, one lead above the levels", [
+        Layer(1.5, *high), Layer(1, *barrier), Layer(7, *well), Layer(2, *barrier), Layer(3, *well)], 0, (
+        0.01, 0.6, 9, (0.0, 0.01)), [0.4, 0.5]
     kane_well, kane_barrier = (0.0, 0.067, 1.519, 0.341, 28.8, -1.94), (0.25, 0.09, 1.9, 0.33, 26.0, -1.6)
     yield "detector well, Kane's law", [Layer(20, *kane_barrier), Layer(5, *kane_well), Layer(20, *kane_barrier)], 0, (
         0.01, 0.345, 8, (0.0, 0.03)), [0.26, 0.28, 0.33]
