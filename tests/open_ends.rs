@@ -7,7 +7,7 @@ use common::{Bench, list, number};
 use serde::Deserialize;
 use wellwright::constants::HBAR2_OVER_2M0;
 use wellwright::models::BandOperator;
-use wellwright::open_ends::{Absorption, Outside, absorption, crossing, on_path, quasi_bound};
+use wellwright::open_ends::{Absorption, Outside, Wanted, absorption, crossing, on_path, quasi_bound};
 use wellwright::optics::transitions;
 use wellwright::structure::{self, ConductionModel, Stack};
 use wellwright::subbands::{Accuracy, solve};
@@ -33,6 +33,9 @@ struct Well {
     strengths: Vec<[f64; 2]>,
 }
 
+/// More than any of the stacks here has.
+const ALL: usize = 1000;
+
 fn reference() -> Reference {
     serde_json::from_str(include_str!("reference/open_ends.json")).unwrap()
 }
@@ -52,7 +55,7 @@ fn energies_and_widths_are_those_of_the_independent_pole_search() {
     for case in reference().stacks {
         let (stack, model) = stack(&case.structure);
         let operator = BandOperator::conduction(&stack, model).unwrap();
-        let found = quasi_bound(&operator, Outside::Field);
+        let found = quasi_bound(&operator, Outside::Field, &Wanted::lowest(ALL));
         assert_eq!(found.counted, found.found, "{}", case.name);
         assert!(found.width_deviation < 1e-9, "{}", case.name);
         assert!(!case.states.is_empty(), "{}", case.name);
@@ -163,10 +166,10 @@ fn widths_do_not_depend_on_the_angle_of_the_path() {
         );
         let (stack, model) = stack(&text);
         let operator = BandOperator::conduction(&stack, model).unwrap();
-        let reference = quasi_bound(&operator, Outside::Field);
+        let reference = quasi_bound(&operator, Outside::Field, &Wanted::lowest(ALL));
         assert!(reference.states.len() >= 2);
         for angle in [0.35, 0.6, 0.95] {
-            let turned = on_path(&operator, Outside::Field, angle);
+            let turned = on_path(&operator, Outside::Field, &Wanted::lowest(ALL), angle);
             assert_eq!(turned.states.len(), reference.states.len(), "{angle}");
             for (own, other) in turned.states.iter().zip(&reference.states) {
                 assert!((own.energy_ev - other.energy_ev).abs() < 1e-9, "{angle}");
@@ -219,7 +222,7 @@ fn bound_levels_are_those_between_far_walls() {
     );
     let (stack, model) = stack(&text);
     let operator = BandOperator::conduction(&stack, model).unwrap();
-    let open = quasi_bound(&operator, Outside::Field);
+    let open = quasi_bound(&operator, Outside::Field, &Wanted::lowest(ALL));
     let walls = solve(&operator, 2, Accuracy::default());
     for (own, pair) in open.states.iter().zip(&walls.pairs) {
         assert!(own.bound);

@@ -7,7 +7,7 @@ use super::input::Input;
 use super::minibands;
 use crate::diagnostics::Diagnostic;
 use crate::models::{Band, BandOperator};
-use crate::open_ends::{self, Outside};
+use crate::open_ends::{self, Outside, Wanted};
 use crate::report::{ChargeReport, Levels, OpenLevels};
 use crate::structure::Ends;
 use std::path::Path;
@@ -44,15 +44,20 @@ pub fn levels(file: &Path, output: &Output) -> Result<Exit, Exit> {
 fn open(input: &Input, file: &Path, output: &Output) -> Result<Exit, Exit> {
     let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
-    let solved = open_ends::quasi_bound(&operator, Outside::Field);
-    let warn = |words: String| show(&Diagnostic::warning(words), &input.name, &input.text);
     let asked = input.structure.conduction.states;
+    let solved = open_ends::quasi_bound(&operator, Outside::Field, &Wanted::lowest(asked));
+    let warn = |words: String| show(&Diagnostic::warning(words), &input.name, &input.text);
+    let report = OpenLevels::new(&input.structure, &input.stack, &solved);
     let widest_mev = 1e3 * solved.widest_ev;
     let shown = &solved.states[..asked.min(solved.states.len())];
     if shown.is_empty() {
-        let words = format!(
-            "nothing holds an electron: no level up to the highest band edge is narrower than {widest_mev:.0} meV"
-        );
+        let words = if solved.complete {
+            format!(
+                "nothing holds an electron: no level up to the highest band edge is narrower than {widest_mev:.0} meV"
+            )
+        } else {
+            report.faults().join("; ")
+        };
         show(&Diagnostic::error(words), &input.name, &input.text);
         return Err(Exit::NotPossible);
     }
@@ -61,7 +66,8 @@ fn open(input: &Input, file: &Path, output: &Output) -> Result<Exit, Exit> {
             "all levels listed lie below the edges outside, and there is no field: nothing can leave, and open ends say no more than walls do"
                 .to_owned(),
         );
-    } else if shown.len() < asked {
+    }
+    if shown.len() < asked && solved.complete && !shown.iter().all(|state| state.bound) {
         let why = match solved.leads_ev {
             Some(_) => "higher",
             None => {
@@ -73,7 +79,6 @@ fn open(input: &Input, file: &Path, output: &Output) -> Result<Exit, Exit> {
             shown.len()
         ));
     }
-    let report = OpenLevels::new(&input.structure, &input.stack, &solved);
     for fault in report.faults() {
         warn(format!("audit: {fault}"));
     }

@@ -36,6 +36,23 @@ pub struct Found {
     pub counted: usize,
 }
 
+/// What a search may still cost, in rows of matrices to factor: counted, not timed, so that the same search ends at the
+/// same place everywhere.
+#[derive(Clone, Copy, Debug)]
+pub struct Work {
+    pub left: usize,
+}
+
+impl Work {
+    /// Takes the cost of some factorisations; false, and nothing left, when there is not enough.
+    pub fn spend(&mut self, pencil: &OpenPencil, factorisations: usize) -> bool {
+        let cost = factorisations * pencil.size();
+        let enough = cost <= self.left;
+        self.left = self.left.saturating_sub(cost);
+        enough
+    }
+}
+
 /// Steps of refinement; from a fair guess some five are needed.
 const MAX_STEPS: usize = 40;
 /// A step smaller than this part of |λ| + 1 is rounding.
@@ -44,8 +61,10 @@ const ROUNDING: f64 = 1e-15;
 const SETTLED: f64 = 1e-10;
 /// Two states nearer than this part of |λ| + 1 are one when their vectors agree.
 const SAME: f64 = 1e-9;
-/// Pieces into which each side of a rectangle is cut to begin with.
+/// Pieces into which each side of a rectangle is cut to begin with, and pieces of the long sides per guess: the phase
+/// turns by some π from one level between walls to the next, and a piece must not hide a whole turn.
 const PIECES: usize = 8;
+const PIECES_PER_GUESS: usize = 2;
 /// Halvings of a piece along which the phase turns fast.
 const MAX_DEPTH: usize = 40;
 /// The longest step of ln det that is taken as seen, in radians; two halves must agree with the whole to the same.
@@ -61,6 +80,15 @@ impl Region {
             && value.re <= self.high
             && value.im >= self.bottom
             && value.im <= self.top
+    }
+
+    /// Whether a value lies in here or no further away than the region is large.
+    fn is_near(&self, value: C64) -> bool {
+        let (width, height) = (self.high - self.low, self.top - self.bottom);
+        value.re > self.low - width
+            && value.re < self.high + width
+            && value.im > self.bottom - height
+            && value.im < self.top + height
     }
 
     fn middle(&self) -> C64 {
@@ -111,6 +139,18 @@ impl Region {
 
 /// Refines a guess. `None` when it does not settle.
 pub fn refine(pencil: &OpenPencil, guess: C64, vector: Option<&[C64]>) -> Option<Outgoing> {
+    let mut unlimited = Work { left: usize::MAX };
+    refine_while(pencil, guess, vector, &mut unlimited, |_| true)
+}
+
+/// As [`refine`]; given up where `holds` is false of a value.
+fn refine_while(
+    pencil: &OpenPencil,
+    guess: C64,
+    vector: Option<&[C64]>,
+    work: &mut Work,
+    holds: impl Fn(C64) -> bool,
+) -> Option<Outgoing> {
     let mut value = guess;
     let mut x = match vector {
         Some(vector) => vector.to_vec(),
@@ -118,6 +158,9 @@ pub fn refine(pencil: &OpenPencil, guess: C64, vector: Option<&[C64]>) -> Option
     };
     let mut residual = f64::INFINITY;
     for step in 0..MAX_STEPS {
+        if !work.spend(pencil, 1) {
+            return None;
+        }
         let right = pencil.weight(value, &x);
         let mut next = right.clone();
         pencil.factor(value).solve(&mut next);
@@ -136,6 +179,9 @@ pub fn refine(pencil: &OpenPencil, guess: C64, vector: Option<&[C64]>) -> Option
         // The first step from an irregular vector turns it; a value taken from it may jump to a far state.
         if step >= 1 || vector.is_some() {
             value += change;
+        }
+        if !holds(value) {
+            return None;
         }
         let scale = value.norm() + 1.0;
         let stalled = residual >= before && before < SETTLED * scale;
@@ -167,26 +213,33 @@ fn irregular(size: usize) -> Vec<C64> {
         .collect()
 }
 
-/// All states of adjoining regions, from guesses that may be incomplete. Of two regions that share a side the states may
-/// lie on either.
-pub fn all_in(pencil: &OpenPencil, regions: &[Region], guesses: &[(C64, Vec<C64>)]) -> Found {
+/// All states of a region, from guesses that may be incomplete. `None` when the work does not suffice.
+pub fn all_in(
+    pencil: &OpenPencil,
+    region: &Region,
+    guesses: &[(C64, Vec<C64>)],
+    work: &mut Work,
+) -> Option<Found> {
     let mut states: Vec<Outgoing> = Vec::new();
     for (value, vector) in guesses {
-        if let Some(state) = refine(pencil, *value, Some(vector))
-            && regions.iter().any(|region| region.holds(state.value))
-        {
+        let state = refine_while(pencil, *value, Some(vector), work, |v| region.is_near(v));
+        if let Some(state) = state.filter(|state| region.holds(state.value)) {
             add(pencil, &mut states, state);
         }
     }
-    let mut counted = 0;
-    for region in regions {
-        let (count, sum) = count(pencil, region);
-        counted += count;
-        let mut parts = MOST_PARTS;
-        complete(pencil, region, (count, sum), &mut states, &mut parts);
-    }
+    let pieces = PIECES.max(PIECES_PER_GUESS * guesses.len());
+    let (counted, sum) = count(pencil, region, pieces, work)?;
+    let mut parts = MOST_PARTS;
+    complete(
+        pencil,
+        region,
+        (counted, sum, pieces),
+        &mut states,
+        &mut parts,
+        work,
+    )?;
     states.sort_by(|a, b| a.value.re.total_cmp(&b.value.re));
-    Found { states, counted }
+    Some(Found { states, counted })
 }
 
 /// Adds a state unless it is known; says whether it was new.
@@ -203,72 +256,85 @@ fn add(pencil: &OpenPencil, states: &mut Vec<Outgoing>, state: Outgoing) -> bool
     !known
 }
 
-/// Looks for the states that are counted in a region and not known.
+/// Looks for the states that are counted in a region and not known. `None` when the work does not suffice.
 fn complete(
     pencil: &OpenPencil,
     region: &Region,
-    (count, sum): (usize, C64),
+    (count, sum, pieces): (usize, C64, usize),
     states: &mut Vec<Outgoing>,
     parts: &mut usize,
-) {
+    work: &mut Work,
+) -> Option<()> {
     let inside: Vec<C64> = states
         .iter()
         .map(|state| state.value)
         .filter(|value| region.holds(*value))
         .collect();
     if count <= inside.len() {
-        return;
+        return Some(());
     }
     if count == inside.len() + 1 {
         let known: C64 = inside.iter().sum();
         for guess in [sum - known, region.middle()] {
-            if let Some(state) = refine(pencil, guess, None)
+            if let Some(state) = refine_while(pencil, guess, None, work, |_| true)
                 && region.holds(state.value)
                 && add(pencil, states, state)
             {
-                return;
+                return Some(());
             }
         }
     }
     if (region.high - region.low).max(region.top - region.bottom) < SMALLEST {
-        return;
+        return Some(());
     }
     for half in region.halves(states) {
         if *parts == 0 {
-            return;
+            return Some(());
         }
         *parts -= 1;
-        let counted = self::count(pencil, &half);
-        complete(pencil, &half, counted, states, parts);
+        let (count, sum) = self::count(pencil, &half, pieces, work)?;
+        complete(pencil, &half, (count, sum, pieces), states, parts, work)?;
     }
+    Some(())
 }
 
-/// How many states lie in a region, and the sum of their values.
-fn count(pencil: &OpenPencil, region: &Region) -> (usize, C64) {
+/// How many states lie in a region, and the sum of their values. The lower and the upper side are cut into `pieces` to
+/// begin with. `None` when the work does not suffice.
+fn count(
+    pencil: &OpenPencil,
+    region: &Region,
+    pieces: usize,
+    work: &mut Work,
+) -> Option<(usize, C64)> {
     let corners = [
         C64::new(region.low, region.bottom),
         C64::new(region.high, region.bottom),
         C64::new(region.high, region.top),
         C64::new(region.low, region.top),
     ];
-    let determinant = |at: C64| pencil.factor(at).determinant;
+    let mut determinant = |at: C64| {
+        work.spend(pencil, 1)
+            .then(|| pencil.factor(at).determinant)
+    };
     let mut turns = 0.0;
     let mut moment = ZERO;
-    let mut known = determinant(corners[0]);
+    let mut known = determinant(corners[0])?;
     for side in 0..4 {
         let (from, to) = (corners[side], corners[(side + 1) % 4]);
+        let pieces = if side % 2 == 0 { pieces } else { PIECES };
         let mut start = from;
-        for piece in 1..=PIECES {
-            let end = from + (to - from) * (piece as f64 / PIECES as f64);
-            let last = determinant(end);
+        for piece in 1..=pieces {
+            let end = from + (to - from) * (piece as f64 / pieces as f64);
+            let last = determinant(end)?;
             let mut stack = vec![(start, known, end, last, 0)];
             while let Some((a, at_a, b, at_b, depth)) = stack.pop() {
                 let middle = 0.5 * (a + b);
-                let at_middle = determinant(middle);
+                let at_middle = determinant(middle)?;
                 let (one, two) = (at_a.step_to(&at_middle), at_middle.step_to(&at_b));
                 let whole = at_a.step_to(&at_b);
-                let seen = one.norm() < LONGEST
-                    && two.norm() < LONGEST
+                // A size that grows evenly hides no turn; one that grows unevenly may.
+                let seen = one.im.abs() < LONGEST
+                    && two.im.abs() < LONGEST
                     && (one + two - whole).norm() < LONGEST
                     && (one - two).norm() < LONGEST;
                 if seen || depth == MAX_DEPTH {
@@ -284,5 +350,5 @@ fn count(pencil: &OpenPencil, region: &Region) -> (usize, C64) {
     }
     let full = 2.0 * std::f64::consts::PI;
     let count = (turns / full).round().max(0.0) as usize;
-    (count, moment / (I * full))
+    Some((count, moment / (I * full)))
 }

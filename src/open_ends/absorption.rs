@@ -10,6 +10,7 @@
 use super::line::{Line, Outside, PATH_ANGLE, Plan, falling_is_upper, lead};
 use super::moment::{integrate, moment, wave_number};
 use super::quasi_bound::{NARROWEST_EV, QuasiBoundStates, WIDEST_EV, quasi_bound};
+use super::search::Wanted;
 use crate::constants::{HBAR2_OVER_2M0, HC_EV_UM};
 use crate::models::BandOperator;
 use crate::numerics::complex_banded::{C64, ZERO};
@@ -71,6 +72,8 @@ pub enum NoSpectrum {
     TooWide { asked: usize, width_mev: f64 },
 }
 
+/// No more lines are told one by one; the spectrum holds them all.
+pub const MOST_LINES: usize = 40;
 /// A level wider than this holds no electrons that could absorb.
 const WIDEST_FROM_EV: f64 = 0.1 * WIDEST_EV;
 
@@ -81,7 +84,8 @@ pub fn absorption(
     energies_ev: &[f64],
     broadening_ev: f64,
 ) -> Result<Absorption, NoSpectrum> {
-    let states = quasi_bound(operator, Outside::Field);
+    let wanted = Wanted::lowest(from + MOST_LINES);
+    let states = quasi_bound(operator, Outside::Field, &wanted);
     let Some(initial) = from.checked_sub(1).and_then(|k| states.states.get(k)) else {
         return Err(NoSpectrum::NoState {
             asked: from,

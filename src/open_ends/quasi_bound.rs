@@ -4,12 +4,13 @@ use super::line::{
     Line, MAX_HALVINGS, Outside, PATH_ANGLE, Plan, falling_is_upper, is_tilted, lead, leads_ev,
 };
 use super::moment::integrate;
+use super::search::{Wanted, upward};
 use crate::constants::{H_EV_PER_THZ, HBAR2_OVER_2M0};
 use crate::models::BandOperator;
 use crate::numerics::complex_banded::C64;
-use crate::numerics::eigenpairs;
 use crate::numerics::mesh::Mesh;
-use crate::numerics::outgoing::{Outgoing, Region, all_in, refine};
+use crate::numerics::outgoing::{Outgoing, Region, Work, refine};
+use crate::numerics::pencil::Pencil;
 use crate::subbands;
 
 /// A wave that leaves within ħ over this, 7 fs, was never held: no level.
@@ -34,6 +35,11 @@ const DEEPEST: f64 = 350.0;
 const ENERGY_TOLERANCE_EV: f64 = 1e-9;
 /// A width is exact to this part of it.
 const WIDTH_TOLERANCE: f64 = 1e-6;
+
+/// A search ends when it has factored this many rows: some ten seconds.
+const MOST_ROWS: usize = 30_000_000;
+/// Elements half as long take this many times the work, with a margin.
+const FINER: usize = 3;
 
 /// One state that may leave.
 #[derive(Clone, Debug)]
@@ -81,43 +87,59 @@ pub struct QuasiBoundStates {
     pub widest_ev: f64,
     /// The edges of flat leads below and above; `None` where the field goes on.
     pub leads_ev: Option<[f64; 2]>,
-    /// States that the argument principle counts, and those found.
+    /// States that the argument principle counts, and those found; with some above those listed.
     pub counted: usize,
     pub found: usize,
+    /// False when the search ended early, at `top_ev`, because it would have taken too long.
+    pub complete: bool,
     /// The worst disagreement of the widths as flux and as −2 Im E, relative, where both have digits.
     pub width_deviation: f64,
 }
 
-/// All states that are no wider than [`QuasiBoundStates::widest_ev`], up to a little above the highest band edge; in a field up to the edge of the
-/// end that it raises.
-pub fn quasi_bound(operator: &BandOperator, outside: Outside) -> QuasiBoundStates {
-    on_path(operator, outside, PATH_ANGLE)
+/// The states wanted that are no wider than [`QuasiBoundStates::widest_ev`], up to a little above the highest band edge;
+/// in a field up to the edge of the end that it raises.
+pub fn quasi_bound(
+    operator: &BandOperator,
+    outside: Outside,
+    wanted: &Wanted,
+) -> QuasiBoundStates {
+    on_path(operator, outside, wanted, PATH_ANGLE)
 }
 
 /// As [`quasi_bound`], with the angle by which the path outside leaves the real line.
-pub fn on_path(operator: &BandOperator, outside: Outside, angle: f64) -> QuasiBoundStates {
+pub fn on_path(
+    operator: &BandOperator,
+    outside: Outside,
+    wanted: &Wanted,
+    angle: f64,
+) -> QuasiBoundStates {
     let tilted = is_tilted(operator, outside);
     let [floor_ev, ceiling_ev] = edges_ev(operator);
     let ends_ev = leads_ev(operator);
-    let mut top_ev = ceiling_ev + ABOVE_EDGES_EV;
+    let mut top_ev = (ceiling_ev + ABOVE_EDGES_EV).min(wanted.range_ev[1]);
     if tilted {
         // Above the raised end a wave runs up the slope outside and comes back: no state of the stack.
         top_ev = top_ev.min(ends_ev[usize::from(!falling_is_upper(operator))]);
     }
     let mut plan = Plan::new(operator, outside, [floor_ev, top_ev], [0.0; 2], angle);
     let widest_ev = widest_ev(operator, [floor_ev, ceiling_ev]);
-    let regions = regions([floor_ev, top_ev], widest_ev, (!tilted).then_some(ends_ev));
+    let bottom_ev = (floor_ev - CLEAR_EV).max(wanted.range_ev[0]);
+    let regions = regions([bottom_ev, top_ev], widest_ev, (!tilted).then_some(ends_ev));
     let mut halvings = 0;
     let mut worst_before = f64::INFINITY;
+    let mut work = Work { left: MOST_ROWS };
     loop {
+        let before = work.left;
         let line = plan.line(ORDERS[0]);
-        let guesses = between_walls(operator, &plan, &line, top_ev);
-        let found = all_in(&line.pencil, &regions, &guesses);
+        let walls = between_walls(operator, &plan);
+        let mut searched = upward(&line, &walls, &regions, wanted.states, &mut work);
+        let found = searched.states.len();
+        searched.states.truncate(wanted.states);
         let describe = |outgoing: &Outgoing| {
             let bound = !tilted && outgoing.value.re < ends_ev[0].min(ends_ev[1]);
             one(operator, (&plan, &line), outgoing, bound, (outside, angle))
         };
-        let described: Vec<(QuasiBound, f64)> = found.states.iter().map(describe).collect();
+        let described: Vec<(QuasiBound, f64)> = searched.states.iter().map(describe).collect();
         // How far the worst state is from what is asked of it.
         let worst = described
             .iter()
@@ -125,20 +147,22 @@ pub fn on_path(operator: &BandOperator, outside: Outside, angle: f64) -> QuasiBo
                 (state.error_ev / ENERGY_TOLERANCE_EV).max(state.width_error / WIDTH_TOLERANCE)
             })
             .fold(0.0, f64::max);
+        let affordable = work.left > FINER * (before - work.left);
         // What more elements do not mend is rounding.
-        if worst < 1.0 || worst > 0.5 * worst_before || halvings == MAX_HALVINGS {
+        if worst < 1.0 || worst > 0.5 * worst_before || halvings == MAX_HALVINGS || !affordable {
             let deviations = described.iter().map(|(_, deviation)| *deviation);
             return QuasiBoundStates {
                 width_deviation: deviations.fold(0.0, f64::max),
                 states: described.into_iter().map(|(state, _)| state).collect(),
-                found: found.states.len(),
-                outgoing: found.states,
+                found,
+                outgoing: searched.states,
                 line,
                 floor_ev,
-                top_ev,
+                top_ev: searched.top_ev,
                 widest_ev,
                 leads_ev: (!tilted).then_some(ends_ev),
-                counted: found.counted,
+                counted: searched.counted,
+                complete: searched.complete,
             };
         }
         worst_before = worst;
@@ -179,7 +203,7 @@ fn widest_ev(operator: &BandOperator, [floor_ev, ceiling_ev]: [f64; 2]) -> f64 {
 
 /// The parts of the complex plane to search: between the edges of the leads, where other ends are open.
 fn regions(
-    [floor_ev, top_ev]: [f64; 2],
+    [bottom_ev, top_ev]: [f64; 2],
     widest_ev: f64,
     leads_ev: Option<[f64; 2]>,
 ) -> Vec<Region> {
@@ -189,7 +213,6 @@ fn regions(
         bottom: -depth,
         top: CLEAR_EV,
     };
-    let bottom_ev = floor_ev - CLEAR_EV;
     let Some([a, b]) = leads_ev else {
         return vec![part(bottom_ev, top_ev, 0.5 * widest_ev)];
     };
@@ -201,6 +224,7 @@ fn regions(
         (second, top_ev, 0.5 * widest_ev),
     ];
     for (low, high, depth) in borders {
+        let (low, high) = (low.max(bottom_ev), high.min(top_ev));
         if high - low > 4.0 * FROM_EDGE_EV {
             list.push(part(low + FROM_EDGE_EV, high - FROM_EDGE_EV, depth));
         }
@@ -208,24 +232,12 @@ fn regions(
     list
 }
 
-/// The states between walls at the ends of the stack, as first guesses.
-fn between_walls(
-    operator: &BandOperator,
-    plan: &Plan,
-    line: &Line,
-    top_ev: f64,
-) -> Vec<(C64, Vec<C64>)> {
+/// The stack between walls at its ends, whose levels are the first guesses.
+fn between_walls(operator: &BandOperator, plan: &Plan) -> Pencil {
     let layers = &operator.stack().layers;
     let lengths: Vec<f64> = layers.iter().map(|layer| layer.width_nm).collect();
     let mesh = Mesh::new(&lengths, &plan.layer_pieces(), ORDERS[0]);
-    let coarse = subbands::on_mesh(operator, mesh, 1);
-    let count = eigenpairs::count_below(&coarse.pencil, top_ev);
-    let pairs = eigenpairs::lowest(&coarse.pencil, count.max(1));
-    pairs
-        .iter()
-        .filter(|pair| pair.value < top_ev)
-        .map(|pair| (C64::from(pair.value), line.embed(&pair.vector)))
-        .collect()
+    subbands::on_mesh(operator, mesh, 1).pencil
 }
 
 /// How far the real line must go on at the end that the field lowers for a state to run free there.

@@ -6,6 +6,7 @@
 
 use super::line::{Line, MAX_HALVINGS, Outside, PATH_ANGLE, Plan, lead, leads_ev};
 use super::quasi_bound::{QuasiBound, QuasiBoundStates, edges_ev, quasi_bound};
+use super::search::Wanted;
 use crate::models::BandOperator;
 use crate::numerics::complex_banded::{C64, I, ONE, ZERO};
 use crate::numerics::open_pencil::conductance;
@@ -44,8 +45,12 @@ pub struct Transmission {
     pub error: f64,
     pub counted: usize,
     pub found: usize,
+    /// The energy up to which resonances were looked for, where the range goes on above it.
+    pub searched_ev: Option<f64>,
 }
 
+/// No more resonances are looked for in one curve.
+const MOST_RESONANCES: usize = 100;
 /// Points laid around each resonance, at both sides together.
 const AROUND: i32 = 24;
 /// Energies at which the discretisation is compared with a finer one.
@@ -72,14 +77,20 @@ pub fn transmission(
     [low_ev, high_ev]: [f64; 2],
     count: usize,
 ) -> Transmission {
+    let leads_ev = leads_ev(operator);
+    let open_ev = leads_ev[0].max(leads_ev[1]);
+    let wanted = Wanted {
+        states: MOST_RESONANCES,
+        range_ev: [low_ev.max(open_ev), high_ev],
+    };
     let QuasiBoundStates {
         states,
         counted,
         found,
+        complete,
+        top_ev,
         ..
-    } = quasi_bound(operator, Outside::Flat);
-    let leads_ev = leads_ev(operator);
-    let open_ev = leads_ev[0].max(leads_ev[1]);
+    } = quasi_bound(operator, Outside::Flat, &wanted);
     let stream = Stream::settled(operator, [low_ev, high_ev]);
     let inside: Vec<QuasiBound> = states
         .into_iter()
@@ -118,6 +129,7 @@ pub fn transmission(
         error: stream.error,
         counted,
         found,
+        searched_ev: (!complete || found >= MOST_RESONANCES).then_some(top_ev),
     }
 }
 

@@ -176,6 +176,12 @@ pub fn faults(solved: &QuasiBoundStates) -> Vec<String> {
             solved.found, solved.counted
         ));
     }
+    if !solved.complete {
+        faults.push(format!(
+            "the search ended {:.0} meV above the lowest edge, before it would take too long: higher levels are not listed; fewer periods take less",
+            1e3 * (solved.top_ev - solved.floor_ev)
+        ));
+    }
     for (index, state) in solved.states.iter().enumerate() {
         if !(state.error_ev < 1e-6 && state.width_error < 1e-2) {
             faults.push(format!("conduction {} did not settle", index + 1));
@@ -269,7 +275,7 @@ impl Report for OpenLevels {
         let verdict = verdict(&a.faults);
         format!(
             "{title}{} K, field {} kV/cm, {} mass, {:.2} nm, ends {}\n\n{states}\n\
-             Levels up to {:.0} meV from the edge, narrower than {:.0} meV.{fewer} Lifetime: ħ over the width, of escape alone.\n\n\
+             Levels searched up to {:.0} meV from the edge, narrower than {:.0} meV.{fewer} Lifetime: ħ over the width, of escape alone.\n\n\
              {transitions}\nStrength: {STRENGTH_DEFINITION}.\nDipole: {DIPOLE_DEFINITION}.\n\
              Audit {verdict}: widths as outflow and as −2 Im E {:.0e}; {} states found, {} counted.\n",
             given(self.temperature_k, 4),

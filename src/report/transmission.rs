@@ -119,6 +119,12 @@ impl Transmission {
                 solved.found, solved.counted
             ));
         }
+        if let Some(top_ev) = solved.searched_ev {
+            faults.push(format!(
+                "resonances were looked for up to {:.1} meV only, before it would take too long: a narrower range of energies takes less",
+                mev(top_ev)
+            ));
+        }
         Transmission {
             title: structure.title.clone(),
             model: model_name(structure.conduction.model),
