@@ -560,13 +560,13 @@ fn caption(structure: &Structure, stack: &Stack, zeros_ev: [f64; 2], panels: &[C
         },
         match (structure.conduction.model, valence) {
             (ConductionModel::EightBand, _) =>
-                "; shaded: the sum over all components of each state, all of the same area, the line its largest",
+                "; shaded: the sum over all components of each state, all of the same area, the line the largest of them",
             (ConductionModel::EnergyDependent, Some(ValenceModel::SixBand)) =>
-                "; shaded: the sum over all components of each state, all of the same area, the line of a hole its largest",
+                "; shaded: the sum over all components of each state, all of the same area, the line of a hole the largest of them",
             (ConductionModel::EnergyDependent, _) =>
                 "; shaded: the sum over all components of each state, all of the same area",
             (ConductionModel::Parabolic, Some(ValenceModel::SixBand)) =>
-                ", all of the same area; shaded: the sum over all components of each hole, the line its largest",
+                ", all of the same area; shaded: the sum over all components of each hole, the line the largest of them",
             (ConductionModel::Parabolic, _) => ", all of the same area",
         },
         short(structure.temperature_k, 4),
@@ -602,7 +602,7 @@ fn caption(structure: &Structure, stack: &Stack, zeros_ev: [f64; 2], panels: &[C
             let highest = highest.fold(f64::NEG_INFINITY, |a, p| a.max(p[1]));
             format!(
                 "The gap is broken: one axis for both. The zero is the lowest conduction edge, {} eV in the table of levels; \
-                 the highest valence edge lies {:.0} meV above it. Shaded between the edges: the gap of each layer.",
+                 the highest valence edge lies {:.0} meV above it. Grey between the edges: the gap of each layer.",
                 minus(&format!("{:.4}", zeros_ev[0])),
                 1e3 * highest
             )
