@@ -7,7 +7,9 @@ use common::{Bench, list, number};
 use serde::Deserialize;
 use wellwright::constants::HBAR2_OVER_2M0;
 use wellwright::models::BandOperator;
-use wellwright::open_ends::{Absorption, Outside, Wanted, absorption, crossing, on_path, quasi_bound};
+use wellwright::open_ends::{
+    Absorption, Outside, Wanted, absorption, crossing, on_path, quasi_bound,
+};
 use wellwright::optics::transitions;
 use wellwright::structure::{self, ConductionModel, Stack};
 use wellwright::subbands::{Accuracy, solve};
@@ -199,7 +201,7 @@ layers:
         );
         let (stack, model) = stack(&text);
         let operator = BandOperator::conduction(&stack, model).unwrap();
-        let found = quasi_bound(&operator, Outside::Field);
+        let found = quasi_bound(&operator, Outside::Field, &Wanted::lowest(ALL));
         assert!(found.width_deviation < 1e-9, "{}", found.width_deviation);
         let lowest = found.states.into_iter().next().unwrap();
         assert!(lowest.energy_ev < 0.15 && lowest.width_ev > 1e-3);

@@ -404,7 +404,7 @@ fn a_well_between_hard_walls() {
 fn the_edge_jumps_at_interfaces_only() {
     let text = MATERIALS.to_owned()
         + "field: 10 kV/cm\nlayers:\n  - {material: B, width: 20 nm}\n  - {material: W, width: 8 nm}\n  - {material: B, width: 20 nm}\n";
-    let edge = solved(&text).curves[0].edge.clone();
+    let edge = solved(&text).curves[0].edges[0].clone();
     // 10 kV/cm is 1 meV/nm.
     let expected = [
         [0.0, 0.250],

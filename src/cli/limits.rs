@@ -44,13 +44,13 @@ impl Input {
                 "{what} bands that are solved on their own, and this file's are `eight-band`"
             ))
             .expected("`parabolic` or `energy-dependent` for `conduction`")
-            .hint("`levels`, `tune` and `dispersion` take eight bands");
+            .hint("`levels`, `tune`, `sweep`, `dispersion`, `plot --what bands` and `sheet` take eight bands");
             show(&problem, &self.name, &self.text);
             return Err(Exit::WrongInput);
         }
         if Band::alone(&self.structure).len() < Band::of(&self.structure).len() {
             let words = format!(
-                "{what} the conduction band only, since the holes are coupled; `levels` and `tune` solve them too"
+                "{what} the conduction band only, since the holes are coupled; `levels`, `tune`, `sweep` and `plot --what bands` solve them too"
             );
             show(&Diagnostic::warning(words), &self.name, &self.text);
         }

@@ -8,7 +8,7 @@ use crate::charge::Solution;
 use crate::diagnostics::Diagnostic;
 use crate::models::{Band, BandOperator};
 use crate::report::svg::{BandDiagram, FINENESS, Width, sensitivity_bars, yield_histogram};
-use crate::subbands;
+use crate::subbands::{self, Solution as Solved, coupled_curves};
 use std::path::Path;
 
 /// As few wafers as may be sampled.
@@ -19,7 +19,9 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
     check_output(output, file)?;
     input.without_minibands("`plot`")?;
     input.with_walls("the picture shows levels");
-    input.without_coupled("the picture shows")?;
+    if what != Picture::Bands {
+        input.without_coupled("tolerances are those of")?;
+    }
     let picture = match what {
         Picture::Bands => Some(bands(&input, width)?),
         Picture::Sensitivities => {
@@ -50,7 +52,7 @@ pub fn plot(file: &Path, what: Picture, width: Width, output: Option<&Path>) -> 
 }
 
 fn bands(input: &Input, width: Width) -> Result<String, Exit> {
-    let solution = input.solved(&Band::alone(&input.structure))?;
+    let solution = input.solved(&Band::of(&input.structure))?;
     let shown = solution.bands.asked_for(&input.structure);
     input.doubt_all(&solution.bands, &shown);
     input.doubt_charge(solution.equilibrium.as_ref());
@@ -60,10 +62,15 @@ fn bands(input: &Input, width: Width) -> Result<String, Exit> {
 /// The band diagram of solved bands.
 pub fn diagram(input: &Input, solution: &Solution, shown: &[usize]) -> BandDiagram {
     let Solution { stack, bands, .. } = solution;
-    let curves = bands.alone().zip(shown).filter_map(|(solved, shown)| {
-        // What was solved has its operator.
-        let operator = BandOperator::new(stack, solved.band).ok()?;
-        Some(subbands::curves(&operator, solved, *shown, FINENESS))
+    let curves = (0..bands.count()).filter_map(|band| match bands.solution(band) {
+        Solved::Alone(solved) => {
+            // What was solved has its operator.
+            let operator = BandOperator::new(stack, solved.band).ok()?;
+            Some(subbands::curves(&operator, solved, shown[band], FINENESS))
+        }
+        Solved::Coupled(coupled, side) => {
+            Some(coupled_curves(coupled, side, shown[band], FINENESS))
+        }
     });
     let curves = curves.collect();
     BandDiagram::new(&input.structure, stack, bands, curves, shown)

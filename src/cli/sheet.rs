@@ -81,27 +81,26 @@ pub fn sheet(
         SheetFormat::Table
     }) {
         SheetFormat::Html => {
-            let alone = bands.conduction();
             let mut pictures = Vec::new();
             if periodic {
                 pictures.push((
                     "Minibands along growth and their density of states".to_owned(),
                     minibands::picture(&input)?,
                 ));
-            } else if alone.is_some() {
+            } else {
                 pictures.push((
                     "Band edges and squared envelopes at their energies".to_owned(),
                     diagram(&input, &solution, &shown).svg(Width::Page),
                 ));
-            } else {
-                let left_out =
-                    "the page has no pictures: they show bands that are solved on their own";
-                show(&Diagnostic::warning(left_out), &input.name, &input.text);
             }
             let layers = input.stack.layers.len();
-            // Tolerances are those of levels.
-            let sampled = input.structure.tolerance.is_some() && alone.is_some() && !periodic;
-            if sampled && layers > MOST_SAMPLED_LAYERS {
+            // Tolerances are those of levels that were solved on their own.
+            let toleranced = input.structure.tolerance.is_some() && !periodic;
+            let sampled = toleranced && bands.coupled().is_none();
+            if toleranced && !sampled {
+                let left_out = "the page has no yield: bands are coupled, and tolerances are those of bands that are solved on their own";
+                show(&Diagnostic::warning(left_out), &input.name, &input.text);
+            } else if sampled && layers > MOST_SAMPLED_LAYERS {
                 let left_out = format!(
                     "the yield of {layers} layers is not sampled for the page: `plot --what yield` draws it in its own time"
                 );

@@ -312,10 +312,7 @@ fn count(
         C64::new(region.high, region.top),
         C64::new(region.low, region.top),
     ];
-    let mut determinant = |at: C64| {
-        work.spend(pencil, 1)
-            .then(|| pencil.factor(at).determinant)
-    };
+    let mut determinant = |at: C64| work.spend(pencil, 1).then(|| pencil.factor(at).determinant);
     let mut turns = 0.0;
     let mut moment = ZERO;
     let mut known = determinant(corners[0])?;

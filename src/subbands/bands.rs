@@ -144,6 +144,15 @@ impl Bands {
         }
     }
 
+    /// The edge of a band where it is nearest to the gap, with the field, in eV.
+    pub fn edge_ev(&self, band: usize) -> f64 {
+        match self.solution(band) {
+            // Floors of hole bands are those of minus the energy.
+            Solution::Alone(subbands) => subbands.band.sign() * subbands.pencil.floor(),
+            Solution::Coupled(coupled, side) => coupled.edge_ev(side),
+        }
+    }
+
     /// What is known of each state of a band, those nearest the band's edge first.
     pub fn states(&self, band: usize) -> Vec<State> {
         match self.solution(band) {

@@ -200,15 +200,12 @@ impl Coupled {
     /// What is known of each state of one side, those nearest the gap first.
     pub fn states(&self, side: Side) -> Vec<State> {
         let masses_m0 = self.masses_m0.get_or_init(|| self.in_plane_masses_m0());
-        let (offset, edges): (usize, &[Edge]) = match side {
-            Side::Conduction => (0, &[Edge::Conduction]),
-            Side::Valence => (self.part.conduction.len(), &[Edge::Heavy, Edge::Light]),
+        let offset = match side {
+            Side::Conduction => 0,
+            Side::Valence => self.part.conduction.len(),
         };
-        let floor_ev = edges
-            .iter()
-            .flat_map(|&edge| self.heights(edge))
-            .fold(f64::INFINITY, f64::min);
-        let sign = edges[0].sign();
+        let sign = own_edges(side)[0].sign();
+        let floor_ev = sign * self.edge_ev(side);
         let pairs = self.pairs(side).iter().enumerate();
         pairs
             .map(|(index, pair)| {
@@ -272,6 +269,30 @@ impl Coupled {
             );
         }
         density
+    }
+
+    /// The edge of one side where it is nearest to the other, with the field, in eV.
+    pub fn edge_ev(&self, side: Side) -> f64 {
+        let edges = own_edges(side);
+        let heights = edges.iter().flat_map(|&edge| self.heights(edge));
+        edges[0].sign() * heights.fold(f64::INFINITY, f64::min)
+    }
+
+    /// The edges of one side with the field at the nodes of each element, in eV: that of electrons, or those of heavy and
+    /// of light holes.
+    pub fn edge_lines_ev(&self, side: Side) -> Vec<Vec<f64>> {
+        let line = |&edge: &Edge| -> Vec<f64> {
+            let heights = self.heights(edge);
+            heights.map(|height| edge.sign() * height).collect()
+        };
+        own_edges(side).iter().map(line).collect()
+    }
+
+    /// What part of a state each of its [`functions`](Self::functions) holds.
+    pub fn shares(&self, side: Side, index: usize) -> Vec<f64> {
+        let own = shares(&self.part.pencil, &self.pairs(side)[index]);
+        let all = [own.conduction, own.heavy, own.light, own.split_off];
+        all[all.len() - self.model.components()..].to_vec()
     }
 
     /// The values of a state's functions at all nodes: (conduction,) heavy, light, split-off.
@@ -565,6 +586,14 @@ impl Coupled {
             }
         }
         list
+    }
+}
+
+/// The edges that belong to one side of the gap.
+fn own_edges(side: Side) -> &'static [Edge] {
+    match side {
+        Side::Conduction => &[Edge::Conduction],
+        Side::Valence => &[Edge::Heavy, Edge::Light],
     }
 }
 

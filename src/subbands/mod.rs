@@ -18,7 +18,7 @@ pub use audit::Audit;
 pub use bands::{Bands, Place, Solution};
 pub use change::{change, coupled_change};
 pub use coupled::Coupled;
-pub use curves::{Curves, StateCurves, curves};
+pub use curves::{Curves, StateCurves, coupled_curves, curves};
 pub use envelope::{amplitudes, layer_envelopes};
 pub use in_plane::{InPlaneNodes, in_plane};
 pub use nearby::{Nearby, lower_outer_edge_ev};

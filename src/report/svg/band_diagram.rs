@@ -1,9 +1,10 @@
 //! The band edges along the growth direction with the squared envelopes at their energies: electrons, and with holes two
-//! panels on one z axis, since the gap between them is many times as wide as what happens on either side.
+//! panels on one z axis, since the gap between them is many times as wide as what happens on either side. Where the gap is
+//! broken there is nothing to cut out, and both stand in one panel.
 
 use super::Width;
 use super::axes::{BOTTOM_ROOM, Scale, bottom_axis, break_marks, left_axis, left_room};
-use super::band_panel::{Content, DrawnState, LABEL_STEP_PT, Panel, StateLabels};
+use super::band_panel::{Content, DrawnEdge, DrawnState, LABEL_STEP_PT, Panel, StateLabels};
 use super::key;
 use super::ladder::{Ladder, Rung};
 use super::layer_strip::{LayerStrip, StripLayer};
@@ -12,11 +13,12 @@ use super::palette;
 use super::text::{Run, formula, minus, plain, short, shortened};
 use crate::constants::HC_EV_UM;
 use crate::materials::Substance;
-use crate::models::model_name;
+use crate::models::{model_name, valence_model_name};
 use crate::optics::{band_transitions, interband};
 use crate::report::table::significant;
-use crate::structure::{BandName, ConductionModel, Item, Stack, Structure};
-use crate::subbands::{Bands, Curves, Hold, Place, State, Subbands};
+use crate::structure::{BandName, ConductionModel, Item, Level, Stack, Structure, ValenceModel};
+use crate::subbands::multiband::Shares;
+use crate::subbands::{Bands, Curves, Hold, Place, State};
 
 /// How finely the curves of a diagram are to be sampled: well below a line's width.
 pub const FINENESS: f64 = 4e-4;
@@ -41,7 +43,7 @@ const ONE_EDGE_EV: f64 = 1e-4;
 pub struct BandDiagram {
     title: String,
     caption: String,
-    /// Electrons, then holes if they are solved.
+    /// Electrons, then holes if they are solved; both in one where the gap is broken.
     panels: Vec<Content>,
     layers: Vec<StripLayer>,
     /// What each number in the strip stands for.
@@ -61,8 +63,8 @@ struct Drawn {
 }
 
 impl BandDiagram {
-    /// Gathers the diagram of so many states of each band that was solved on its own. The transitions are those that the file's aims name, else
-    /// the strongest.
+    /// Gathers the diagram of so many states of each band. The transitions are those that the file's aims name, else the
+    /// strongest.
     pub fn new(
         structure: &Structure,
         stack: &Stack,
@@ -70,25 +72,23 @@ impl BandDiagram {
         curves: Vec<Curves>,
         shown: &[usize],
     ) -> BandDiagram {
-        let with_holes = bands.alone().count() > 1;
-        // Floors of hole bands are those of minus the energy.
-        let floor_ev = |b: &Subbands| b.band.sign() * b.pencil.floor();
-        let zeros_ev = [
-            bands.conduction().map_or(0.0, floor_ev),
-            bands
-                .alone()
-                .skip(1)
-                .map(floor_ev)
-                .fold(f64::NEG_INFINITY, f64::max),
-        ];
-        let panel_of = |place: Place| usize::from(place.band > 0);
+        let with_holes = bands.count() > 1;
+        let joined = with_holes && is_broken(stack, bands, &curves);
+        let highest_hole = (1..bands.count()).map(|band| bands.edge_ev(band));
+        let highest_hole = highest_hole.fold(f64::NEG_INFINITY, f64::max);
+        let lowest_electron = bands.edge_ev(0);
+        let zeros_ev = match joined {
+            true => [lowest_electron; 2],
+            false => [lowest_electron, highest_hole],
+        };
+        let panel_of = |place: Place| usize::from(place.band > 0 && !joined);
         let mut panels = vec![Content {
             sign: 1.0,
             edges: Vec::new(),
             states: Vec::new(),
             fermi_ev: None,
         }];
-        if with_holes {
+        if with_holes && !joined {
             panels.push(Content {
                 sign: -1.0,
                 ..panels[0].clone()
@@ -101,31 +101,45 @@ impl BandDiagram {
                 places[panel_of(place)].push(place);
             }
         }
+        // A state keeps its look when those of both bands are put in order.
+        let looks: Vec<Vec<Place>> = places.to_vec();
+        if joined {
+            places[0].sort_by(|a, b| bands.energy_ev(*a).total_cmp(&bands.energy_ev(*b)));
+        }
         let states: Vec<Vec<State>> = (0..curves.len()).map(|band| bands.states(band)).collect();
         for (panel, content) in panels.iter_mut().enumerate() {
             for (band, curves) in curves.iter().enumerate() {
                 if panel_of(Place { band, state: 0 }) == panel {
-                    let raised = |[z, ev]: &[f64; 2]| [*z, ev - zeros_ev[panel]];
-                    content.edges.push(curves.edge.iter().map(raised).collect());
+                    let sign = bands.band(band).sign();
+                    for edge in &curves.edges {
+                        let raised = |[z, ev]: &[f64; 2]| [*z, ev - zeros_ev[panel]];
+                        content.edges.push(DrawnEdge {
+                            sign,
+                            dashed: content.edges.last().is_some_and(|edge| edge.sign == sign),
+                            points: edge.iter().map(raised).collect(),
+                        });
+                    }
                 }
             }
             content.edges.dedup_by(|one, other| alike(one, other));
-            for (number, place) in places[panel].iter().enumerate() {
+            for place in &places[panel] {
                 let state = &states[place.band][place.state];
                 let level = bands.level(*place);
+                let number = looks[panel].iter().position(|look| look == place);
+                let number = number.unwrap_or(0);
+                let light = match state.shares {
+                    Some(shares) => shares.light > shares.heavy,
+                    None => level.band == BandName::LightHole,
+                };
                 content.states.push(DrawnState {
+                    sign: bands.band(place.band).sign(),
                     energy_ev: bands.energy_ev(*place) - zeros_ev[panel],
                     curves: curves[place.band].states[place.state].clone(),
-                    label: match level.band {
-                        _ if !with_holes => level.index.to_string(),
-                        BandName::HeavyHole => format!("hh {}", level.index),
-                        BandName::LightHole => format!("lh {}", level.index),
-                        _ => format!("c {}", level.index),
-                    },
+                    label: label(level, state.shares.as_ref(), with_holes),
                     name: level.to_string(),
                     stroke: match level.band {
                         BandName::Conduction => palette::state(number, 0.9),
-                        band => palette::hole(number, band == BandName::LightHole, 0.9),
+                        _ => palette::hole(number, light, 0.9),
                     },
                     mark: match state.hold {
                         Hold::Bound => "",
@@ -352,7 +366,13 @@ impl BandDiagram {
         let list: Vec<String> = states.chain(transitions).chain(fermi).collect();
         format!(
             "Band {} and squared envelopes along the growth direction. {}.",
-            if self.panels.len() > 1 {
+            if self
+                .panels
+                .iter()
+                .map(|panel| panel.edges.len())
+                .sum::<usize>()
+                > 1
+            {
                 "edges"
             } else {
                 "edge"
@@ -363,12 +383,52 @@ impl BandDiagram {
 }
 
 /// Whether two edges are one line.
-fn alike(one: &[[f64; 2]], other: &[[f64; 2]]) -> bool {
-    one.len() == other.len()
-        && one
-            .iter()
-            .zip(other)
-            .all(|(a, b)| (a[1] - b[1]).abs() < ONE_EDGE_EV)
+fn alike(one: &DrawnEdge, other: &DrawnEdge) -> bool {
+    let pairs = one.points.iter().zip(&other.points);
+    one.sign == other.sign
+        && one.points.len() == other.points.len()
+        && pairs.fold(true, |so_far, (a, b)| {
+            so_far && (a[1] - b[1]).abs() < ONE_EDGE_EV
+        })
+}
+
+/// Whether some layer has its conduction edge below the valence edge of another, the field left out.
+fn is_broken(stack: &Stack, bands: &Bands, curves: &[Curves]) -> bool {
+    let field = stack.field_v_per_nm;
+    let heights = |sign: f64| {
+        let own = curves.iter().enumerate();
+        own.filter(move |(band, _)| bands.band(*band).sign() == sign)
+            .flat_map(|(_, curves)| curves.edges.iter().flatten())
+            .map(move |[z, ev]| ev - field * z)
+    };
+    heights(1.0).fold(f64::INFINITY, f64::min) < heights(-1.0).fold(f64::NEG_INFINITY, f64::max)
+}
+
+/// What stands beside a level: of coupled states with what holds most of them, where that is not the band's own.
+fn label(level: Level, shares: Option<&Shares>, with_holes: bool) -> String {
+    let index = level.index;
+    let own = match level.band {
+        _ if !with_holes => index.to_string(),
+        BandName::HeavyHole => format!("hh {index}"),
+        BandName::LightHole => format!("lh {index}"),
+        BandName::Valence => format!("v {index}"),
+        BandName::Conduction => format!("c {index}"),
+    };
+    let Some(shares) = shares else {
+        return own;
+    };
+    let (_, most) = [
+        (shares.conduction, "c"),
+        (shares.heavy, "hh"),
+        (shares.light, "lh"),
+        (shares.split_off, "so"),
+    ]
+    .into_iter()
+    .fold((0.0, ""), |a, b| if b.0 > a.0 { b } else { a });
+    match (level.band, most) {
+        (BandName::Conduction, "c") => own,
+        _ => format!("{own} {most}"),
+    }
 }
 
 /// The vacuum wavelength in µm, or in mm from 1 mm on.
@@ -417,7 +477,7 @@ fn chosen(
     let electron = |state: usize| Place { band: 0, state };
     let inside = inside.iter().map(|t| (electron(t.from), electron(t.to)));
     let mut between = Vec::new();
-    if bands.alone().count() > 1 {
+    if bands.count() > 1 {
         between = interband(stack, bands);
         between.retain(|pair| is_shown(&pair.hole) && is_shown(&pair.electron));
         // The light of both TE directions and TM together.
@@ -489,41 +549,73 @@ fn substance(substance: &Substance) -> Vec<Run> {
 }
 
 fn caption(structure: &Structure, stack: &Stack, zeros_ev: [f64; 2], panels: &[Content]) -> String {
-    let with_holes = panels.len() > 1;
+    let valence = structure.valence.map(|valence| valence.model);
+    let eight_band = structure.conduction.model == ConductionModel::EightBand;
+    let dashed = panels.iter().any(|p| p.edges.iter().any(|e| e.dashed));
+    let joined = valence.is_some() && panels.len() == 1;
     let mut text = format!(
-        "Black: {}. Lines: squared envelopes, each {} on its energy{}. {} K, field {} kV/cm, {} mass{}. ",
-        match with_holes {
-            false => "conduction band edge",
-            true if panels[1].edges.len() > 1 => "band edges, dashed that of light holes",
-            true => "band edges",
+        "Black: {}. Lines: squared envelopes, each {} on its energy{}. {} K, field {} kV/cm, {} {}{}. ",
+        match valence {
+            None => "conduction band edge",
+            Some(_) if dashed => "band edges, dashed that of light holes",
+            Some(_) => "band edges",
         },
-        match with_holes {
-            true => "standing (electrons) or hanging (holes; light ones dashed)",
-            false => "standing",
+        match valence {
+            Some(_) => "standing (electrons) or hanging (holes; light ones dashed)",
+            None => "standing",
         },
-        match structure.conduction.model {
-            ConductionModel::Parabolic => ", all of the same area",
-            ConductionModel::EnergyDependent | ConductionModel::EightBand => {
-                "; shaded: the sum over all components of each state, all of the same area"
-            }
+        match (structure.conduction.model, valence) {
+            (ConductionModel::EightBand, _) =>
+                "; shaded: the sum over all components of each state, all of the same area, the line the largest of them",
+            (ConductionModel::EnergyDependent, Some(ValenceModel::SixBand)) =>
+                "; shaded: the sum over all components of each state, all of the same area, the line of a hole the largest of them",
+            (ConductionModel::EnergyDependent, _) =>
+                "; shaded: the sum over all components of each state, all of the same area",
+            (ConductionModel::Parabolic, Some(ValenceModel::SixBand)) =>
+                ", all of the same area; shaded: the sum over all components of each hole, the line the largest of them",
+            (ConductionModel::Parabolic, _) => ", all of the same area",
         },
         short(structure.temperature_k, 4),
         short(1e4 * stack.field_v_per_nm, 4),
         model_name(structure.conduction.model),
-        match with_holes {
-            true => ", decoupled holes",
-            false => "",
+        match (eight_band, valence) {
+            (true, None) => "electrons",
+            (true, Some(_)) => "electrons and holes",
+            _ => "mass",
+        },
+        match valence {
+            Some(model) if !eight_band => format!(", {} holes", valence_model_name(model)),
+            _ => String::new(),
         },
     );
-    text += &match with_holes {
-        false => format!(
+    if valence.is_some() {
+        text += match valence {
+            Some(ValenceModel::Decoupled) => "Levels: c conduction, hh heavy-hole, lh light-hole. ",
+            _ => {
+                "Levels: c conduction, v valence, counted from the gap, with what holds most of the state: hh heavy, lh \
+                 light, so split-off hole, c conduction band. "
+            }
+        };
+    }
+    text += &match (valence, joined) {
+        (None, _) => format!(
             "The zero is the lowest band edge, {} eV in the table of levels.",
             minus(&format!("{:.4}", zeros_ev[0]))
         ),
-        true => format!(
-            "Levels: c conduction, hh heavy-hole, lh light-hole. The axis is broken: zeros are the lowest conduction edge \
-             ({} eV in the table of levels) and the highest valence edge ({} eV), {:.1} meV {} it; the panels have scales of \
-             their own.",
+        (Some(_), true) => {
+            let holes = panels[0].edges.iter().filter(|edge| edge.sign < 0.0);
+            let highest = holes.flat_map(|edge| &edge.points);
+            let highest = highest.fold(f64::NEG_INFINITY, |a, p| a.max(p[1]));
+            format!(
+                "The gap is broken: one axis for both. The zero is the lowest conduction edge, {} eV in the table of levels; \
+                 the highest valence edge lies {:.0} meV above it. Grey between the edges: the gap of each layer.",
+                minus(&format!("{:.4}", zeros_ev[0])),
+                1e3 * highest
+            )
+        }
+        (Some(_), false) => format!(
+            "The axis is broken: zeros are the lowest conduction edge ({} eV in the table of levels) and the highest valence \
+             edge ({} eV), {:.1} meV {} it; the panels have scales of their own.",
             minus(&format!("{:.4}", zeros_ev[0])),
             minus(&format!("{:.4}", zeros_ev[1])),
             1e3 * (zeros_ev[0] - zeros_ev[1]).abs(),

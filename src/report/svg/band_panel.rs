@@ -1,4 +1,4 @@
-//! One panel of a band diagram: electrons above their edge, or holes, the other way up, below theirs.
+//! One panel of a band diagram: electrons above their edge, or holes, the other way up, below theirs; or both.
 
 use super::axes::Scale;
 use super::page::{ASCENT, Anchor, LABEL_PT, Page, Style};
@@ -35,20 +35,31 @@ pub(super) const LABEL_STEP_PT: f64 = 1.25 * LABEL_PT;
 /// What a panel shows; energies are the electron's, in eV above the panel's zero.
 #[derive(Clone, Debug)]
 pub(super) struct Content {
-    /// 1 for electrons, −1 for holes: which way is away from the gap.
+    /// 1 for electrons, −1 for holes: which way is away from the gap. 1 where both are in one panel.
     pub sign: f64,
-    /// The band edges in nm and eV: one, or that of heavy and that of light holes.
-    pub edges: Vec<Vec<[f64; 2]>>,
-    /// Those nearest the gap first.
+    /// The band edges in nm and eV: that of electrons where they are in the panel, that of heavy holes, that of light ones.
+    pub edges: Vec<DrawnEdge>,
+    /// Those nearest the gap first; those of both bands from the lowest.
     pub states: Vec<DrawnState>,
     pub fermi_ev: Option<f64>,
 }
 
 #[derive(Clone, Debug)]
+pub(super) struct DrawnEdge {
+    /// 1 for electrons, −1 for holes.
+    pub sign: f64,
+    /// Second lines of a band.
+    pub dashed: bool,
+    pub points: Vec<[f64; 2]>,
+}
+
+#[derive(Clone, Debug)]
 pub(super) struct DrawnState {
+    /// 1 where the squared envelope stands on the level, −1 where it hangs.
+    pub sign: f64,
     pub energy_ev: f64,
     pub curves: StateCurves,
-    /// What stands at the right: `1`, or `hh 1`.
+    /// What stands at the right: `1`, `hh 1`, or `v 1 hh`.
     pub label: String,
     /// The same in words: `heavy-hole 1`.
     pub name: String,
@@ -77,7 +88,7 @@ pub(super) struct Unit {
 
 impl Content {
     pub fn unit(&self) -> Unit {
-        let [low, high] = self.heights(0.0);
+        let [low, high] = self.range_ev(0.0);
         if high - low > EV_AXIS_FROM {
             Unit {
                 name: "eV",
@@ -93,21 +104,21 @@ impl Content {
         }
     }
 
-    /// The least and the greatest distance from the zero, away from the gap, with `beyond_ev` of room beyond every level.
-    fn heights(&self, beyond_ev: f64) -> [f64; 2] {
-        let edges = self.edges.iter().flatten().map(|p| self.sign * p[1]);
+    /// The lowest and the highest energy, with `beyond_ev` of room for every squared envelope.
+    fn range_ev(&self, beyond_ev: f64) -> [f64; 2] {
+        let edges = self.edges.iter().flat_map(|edge| &edge.points);
         let levels = self.states.iter();
-        let levels = levels.map(|state| self.sign * state.energy_ev + beyond_ev);
-        let fermi = self.fermi_ev.map(|ev| self.sign * ev);
-        let all = edges.chain(levels).chain(fermi);
-        all.fold([0.0, 1e-3], |[low, high], e| {
-            [f64::min(low, e), f64::max(high, e)]
-        })
+        let levels = levels.map(|state| state.energy_ev + state.sign * beyond_ev);
+        let all = edges.map(|p| p[1]).chain(levels).chain(self.fermi_ev);
+        all.chain([1e-3 * self.sign])
+            .fold([0.0, 0.0], |[low, high], e| {
+                [f64::min(low, e), f64::max(high, e)]
+            })
     }
 
     /// The height of the highest peak: about the distance of neighbouring levels, within limits.
     fn peak_pt(&self, height: f64) -> f64 {
-        let [low, high] = self.heights(0.0);
+        let [low, high] = self.range_ev(0.0);
         let mut gaps: Vec<f64> = self
             .states
             .windows(2)
@@ -121,20 +132,14 @@ impl Content {
     /// The scale of energy from a panel's top at 0, and points per 1/nm of the squared envelopes.
     pub fn vertical(&self, height: f64) -> (Scale, f64) {
         let peak_pt = self.peak_pt(height);
-        let [low, high] = self.heights(0.0);
+        let [low, high] = self.range_ev(0.0);
         // A peak on the outermost level must fit inside.
         let beyond_ev = peak_pt / height * (high - low);
-        let [low, high] = self.heights(1.15 * beyond_ev);
+        let [low, high] = self.range_ev(1.15 * beyond_ev);
         let room = 0.04 * (high - low);
         let factor = self.unit().factor;
-        let (near, far) = (factor * (low - room), factor * (high + room));
-        let domain = if self.sign > 0.0 {
-            [near, far]
-        } else {
-            [-far, -near]
-        };
         let scale = Scale {
-            domain,
+            domain: [factor * (low - room), factor * (high + room)],
             range: [height, 0.0],
         };
         let largest = self
@@ -195,10 +200,10 @@ impl Panel<'_> {
         self.vertical.at(self.unit.factor * energy_ev)
     }
 
-    /// The part of a squared envelope that stands out, on the line of its energy.
-    fn density(&self, energy_ev: f64, curve: &[[f64; 2]]) -> Vec<[f64; 2]> {
-        let level = self.y(energy_ev);
-        let upwards = self.content.sign * self.pt_per_density;
+    /// The part of a squared envelope of a state that stands out, on the line of its energy.
+    fn density(&self, state: &DrawnState, curve: &[[f64; 2]]) -> Vec<[f64; 2]> {
+        let level = self.y(state.energy_ev);
+        let upwards = state.sign * self.pt_per_density;
         let points: Vec<[f64; 2]> = standing_out(curve)
             .iter()
             .map(|[z, value]| [self.horizontal.at(*z), level - upwards * value])
@@ -206,34 +211,41 @@ impl Panel<'_> {
         simplified(&points, INVISIBLE_PT)
     }
 
-    /// The edges, with the gap beside the first one filled; `layers` is their number.
+    /// The edges, with the gap filled: that beside the first one, or that between those of electrons and of heavy holes.
+    /// `layers` is their number.
     pub fn draw_edges(&self, page: &mut Page, layers: usize) {
         let [left, right] = self.horizontal.range;
         let [bottom, top] = self.vertical.range;
         let gap = if self.content.sign > 0.0 { bottom } else { top };
         // Where the layers stand close, the line must leave room between its flanks.
         let width_pt = (0.25 * (right - left) / layers as f64).clamp(0.25, 1.1);
-        let line = |edge: &Vec<[f64; 2]>| -> Vec<[f64; 2]> {
-            let points = edge.iter();
+        let edges = &self.content.edges;
+        let line = |edge: &DrawnEdge| -> Vec<[f64; 2]> {
+            let points = edge.points.iter();
             points
                 .map(|[z, e]| [self.horizontal.at(*z), self.y(*e)])
                 .collect()
         };
-        let lines: Vec<Vec<[f64; 2]>> = self.content.edges.iter().map(line).collect();
-        let Some((edge, others)) = lines.split_first() else {
+        let lines: Vec<Vec<[f64; 2]>> = edges.iter().map(line).collect();
+        let Some(first) = lines.first() else {
             return;
         };
-        let mut body = edge.clone();
-        body.extend([[right, gap], [left, gap]]);
+        let mut body = first.clone();
+        match (1..lines.len()).find(|&other| edges[other].sign != edges[0].sign) {
+            Some(facing) => body.extend(lines[facing].iter().rev()),
+            None => body.extend([[right, gap], [left, gap]]),
+        }
         page.group("body", |page| page.area(&body, BODY));
         page.group("edge", |page| {
-            page.polyline(edge, Stroke::solid(INK, width_pt));
-            for other in others {
-                let stroke = Stroke {
-                    dash: palette::LIGHT_HOLES,
-                    ..Stroke::solid(INK, 0.8 * width_pt)
+            for (line, edge) in lines.iter().zip(edges) {
+                let stroke = match edge.dashed {
+                    false => Stroke::solid(INK, width_pt),
+                    true => Stroke {
+                        dash: palette::LIGHT_HOLES,
+                        ..Stroke::solid(INK, 0.8 * width_pt)
+                    },
                 };
-                page.polyline(other, stroke);
+                page.polyline(line, stroke);
             }
         });
     }
@@ -254,7 +266,7 @@ impl Panel<'_> {
             .content
             .states
             .iter()
-            .map(|state| self.density(state.energy_ev, state.curves.whole()))
+            .map(|state| self.density(state, state.curves.whole()))
             .collect();
         let states = || self.content.states.iter().zip(&wholes);
         page.group("guides", |page| {
@@ -271,7 +283,7 @@ impl Panel<'_> {
                 let stroke = state.line(0.9);
                 if state.curves.sum.is_some() {
                     page.tinted(whole, TINT, Stroke::solid(stroke.colour, 0.25));
-                    let envelope = self.density(state.energy_ev, &state.curves.envelope);
+                    let envelope = self.density(state, &state.curves.envelope);
                     page.polyline(&envelope, stroke);
                 } else {
                     page.tinted(whole, TINT, stroke);
