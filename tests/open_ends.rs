@@ -7,7 +7,9 @@ use common::{Bench, list, number};
 use serde::Deserialize;
 use wellwright::constants::HBAR2_OVER_2M0;
 use wellwright::models::BandOperator;
-use wellwright::open_ends::{Absorption, Outside, Wanted, absorption, crossing, on_path, quasi_bound};
+use wellwright::open_ends::{
+    Absorption, Outside, Wanted, absorption, crossing, on_path, quasi_bound,
+};
 use wellwright::optics::transitions;
 use wellwright::structure::{self, ConductionModel, Stack};
 use wellwright::subbands::{Accuracy, solve};

@@ -208,8 +208,8 @@ impl OpenPencil {
         matrix.factor()
     }
 
-    /// ∫ √((C − λ)/A) dz along the line, of the growing branch: about what ln det T(λ) changes by away from its zeros. By
-    /// Simpson's rule on each element.
+    /// ∫ √((C − λ)/A) dz along the line, of the growing branch, and ln A of every row: about what ln det T(λ) changes by
+    /// away from its zeros. By Simpson's rule on each element.
     pub fn growth(&self, lambda: C64) -> C64 {
         let p = self.mesh.order();
         let places = [(0, 1.0 / 6.0), (p / 2, 4.0 / 6.0), (p, 1.0 / 6.0)];
@@ -219,8 +219,12 @@ impl OpenPencil {
             let along = self.stretches[index] * element.length;
             for (q, weight) in places {
                 let node = &nodes[q];
-                let step = along * ((node.constant() - lambda) / node.a(lambda)).sqrt();
+                let a = node.a(lambda);
+                let step = along * ((node.constant() - lambda) / a).sqrt();
                 sum += weight * if step.re < 0.0 { -step } else { step };
+                if node.own.has_poles() {
+                    sum += weight * p as f64 * a.ln();
+                }
             }
         }
         sum

@@ -98,11 +98,7 @@ pub struct QuasiBoundStates {
 
 /// The states wanted that are no wider than [`QuasiBoundStates::widest_ev`], up to a little above the highest band edge;
 /// in a field up to the edge of the end that it raises.
-pub fn quasi_bound(
-    operator: &BandOperator,
-    outside: Outside,
-    wanted: &Wanted,
-) -> QuasiBoundStates {
+pub fn quasi_bound(operator: &BandOperator, outside: Outside, wanted: &Wanted) -> QuasiBoundStates {
     on_path(operator, outside, wanted, PATH_ANGLE)
 }
 
