@@ -219,6 +219,28 @@ impl OpenPencil {
         matrix.factor()
     }
 
+    /// ∫ √((C − λ)/A) dz along the line, of the growing branch, and ln A of every row: about what ln det T(λ) changes by
+    /// away from its zeros. By Simpson's rule on each element.
+    pub fn growth(&self, lambda: C64) -> C64 {
+        let p = self.mesh.order();
+        let places = [(0, 1.0 / 6.0), (p / 2, 4.0 / 6.0), (p, 1.0 / 6.0)];
+        let mut sum = ZERO;
+        for (index, element) in self.mesh.elements.iter().enumerate() {
+            let nodes = self.at(index);
+            let along = self.stretches[index] * element.length;
+            for (q, weight) in places {
+                let node = &nodes[q];
+                let a = node.a(lambda);
+                let step = along * ((node.constant() - lambda) / a).sqrt();
+                sum += weight * if step.re < 0.0 { -step } else { step };
+                if node.own.has_poles() {
+                    sum += weight * p as f64 * a.ln();
+                }
+            }
+        }
+        sum
+    }
+
     /// N(λ, μ) x inside the line, with every node's contribution multiplied by `factor(element, local node)`.
     pub fn weighted(
         &self,

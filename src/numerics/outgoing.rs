@@ -2,10 +2,11 @@
 //!
 //! Each is refined from a guess by inverse iteration with the bilinear quotient of the complex symmetric problem. Then
 //! det T(λ) is followed round the border: the turns of its phase count the λ inside (the argument principle), so that
-//! one without a guess shows. The part is then halved until the missing one is alone; the first moment of d ln det along
+//! one without a guess shows. From each step along the border the growth of a wave between turning points is taken off
+//! first (Wentzel, Z. Phys. 38, 518 (1926)), and put back: what is left turns little. The part is then halved until the missing one is alone; the first moment of d ln det along
 //! the border tells where it is (Delves & Lyness, Math. Comp. 21, 543 (1967)).
 
-use super::complex_banded::{C64, I, ZERO};
+use super::complex_banded::{C64, Determinant, I, ZERO};
 use super::open_pencil::{OpenPencil, product};
 
 /// An outgoing state; the bilinear norm x · N(λ, λ) x is 1.
@@ -61,10 +62,9 @@ const ROUNDING: f64 = 1e-15;
 const SETTLED: f64 = 1e-10;
 /// Two states nearer than this part of |λ| + 1 are one when their vectors agree.
 const SAME: f64 = 1e-9;
-/// Pieces into which each side of a rectangle is cut to begin with, and pieces of the long sides per guess: the phase
-/// turns by some π from one level between walls to the next, and a piece must not hide a whole turn.
+/// Pieces into which each side of a rectangle is cut to begin with, or as many as there are guesses: a piece of the lower
+/// and upper side must not hide a whole turn.
 const PIECES: usize = 8;
-const PIECES_PER_GUESS: usize = 2;
 /// Halvings of a piece along which the phase turns fast.
 const MAX_DEPTH: usize = 40;
 /// The longest step of ln det that is taken as seen, in radians; two halves must agree with the whole to the same.
@@ -227,7 +227,7 @@ pub fn all_in(
             add(pencil, &mut states, state);
         }
     }
-    let pieces = PIECES.max(PIECES_PER_GUESS * guesses.len());
+    let pieces = PIECES.max(guesses.len());
     let (counted, sum) = count(pencil, region, pieces, work)?;
     let mut parts = MOST_PARTS;
     complete(
@@ -312,29 +312,36 @@ fn count(
         C64::new(region.high, region.top),
         C64::new(region.low, region.top),
     ];
-    let mut determinant = |at: C64| work.spend(pencil, 1).then(|| pencil.factor(at).determinant);
     let mut turns = 0.0;
     let mut moment = ZERO;
-    let mut known = determinant(corners[0])?;
     for side in 0..4 {
         let (from, to) = (corners[side], corners[(side + 1) % 4]);
-        let pieces = if side % 2 == 0 { pieces } else { PIECES };
-        let mut start = from;
+        let along = side % 2 == 0;
+        let pieces = if along { pieces } else { PIECES };
+        let mut seen_at = |at: C64| {
+            let determinant = work
+                .spend(pencil, 1)
+                .then(|| pencil.factor(at).determinant)?;
+            // On the way across the real axis the growth jumps.
+            let growth = if along { pencil.growth(at) } else { ZERO };
+            Some((determinant, growth))
+        };
+        let (mut start, mut known) = (from, seen_at(from)?);
         for piece in 1..=pieces {
             let end = from + (to - from) * (piece as f64 / pieces as f64);
-            let last = determinant(end)?;
+            let last = seen_at(end)?;
             let mut stack = vec![(start, known, end, last, 0)];
             while let Some((a, at_a, b, at_b, depth)) = stack.pop() {
                 let middle = 0.5 * (a + b);
-                let at_middle = determinant(middle)?;
-                let (one, two) = (at_a.step_to(&at_middle), at_middle.step_to(&at_b));
-                let whole = at_a.step_to(&at_b);
-                // A size that grows evenly hides no turn; one that grows unevenly may.
-                let seen = one.im.abs() < LONGEST
-                    && two.im.abs() < LONGEST
+                let at_middle = seen_at(middle)?;
+                let (one, two) = (left_over(&at_a, &at_middle), left_over(&at_middle, &at_b));
+                let whole = left_over(&at_a, &at_b);
+                let seen = one.norm() < LONGEST
+                    && two.norm() < LONGEST
                     && (one + two - whole).norm() < LONGEST
                     && (one - two).norm() < LONGEST;
                 if seen || depth == MAX_DEPTH {
+                    let (one, two) = (one + at_middle.1 - at_a.1, two + at_b.1 - at_middle.1);
                     turns += one.im + two.im;
                     moment += one * 0.5 * (a + middle) + two * 0.5 * (middle + b);
                 } else {
@@ -348,4 +355,12 @@ fn count(
     let full = 2.0 * std::f64::consts::PI;
     let count = (turns / full).round().max(0.0) as usize;
     Some((count, moment / (I * full)))
+}
+
+/// The step of ln det beside the step of the growth, its phase between −π and π.
+fn left_over(from: &(Determinant, C64), to: &(Determinant, C64)) -> C64 {
+    let growth = to.1 - from.1;
+    let full = 2.0 * std::f64::consts::PI;
+    let step = from.0.step_to(&to.0) - growth;
+    C64::new(step.re, step.im - full * (step.im / full).round())
 }

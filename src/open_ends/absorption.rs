@@ -72,6 +72,8 @@ pub enum NoSpectrum {
     TooWide { asked: usize, width_mev: f64 },
 }
 
+/// Levels nearer than this, of wells far apart, are one: strength is added up from above them.
+const CLUSTER_EV: f64 = 1e-6;
 /// No more lines are told one by one; the spectrum holds them all.
 pub const MOST_LINES: usize = 40;
 /// A level wider than this holds no electrons that could absorb.
@@ -124,7 +126,8 @@ pub fn absorption(
         })
         .collect();
     let (peak, half_ev) = peak_of(&points);
-    let start_ev = lines.first().map_or(0.01, |line| 0.5 * line.energy_ev);
+    let first = lines.iter().find(|line| line.energy_ev > CLUSTER_EV);
+    let start_ev = first.map_or(0.01, |line| 0.5 * line.energy_ev);
     Ok(Absorption {
         // An empty sum is -0.
         to_bound: 0.0

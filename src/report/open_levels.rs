@@ -178,7 +178,7 @@ pub fn faults(solved: &QuasiBoundStates) -> Vec<String> {
     }
     if !solved.complete {
         faults.push(format!(
-            "the search ended {:.0} meV above the lowest edge, before it would take too long: higher levels are not listed; fewer periods take less",
+            "the search ended {:.0} meV above the lowest edge, before it would take too long: higher levels are not listed; shorter outer barriers or fewer periods take less",
             1e3 * (solved.top_ev - solved.floor_ev)
         ));
     }

@@ -159,7 +159,7 @@ def states(layers, field, search):
             guess = mpc(low + (high - low) * (step + 0.5) / starts, -depth)
             mp.dps = 16 if field else 24
             try:
-                value = mp.findroot(lambda e: mismatch(layers, field, e), (guess, guess + mpf("1e-4")), tol=1e-16 if field else 1e-30, maxsteps=12)
+                value = mp.findroot(lambda e: mismatch(layers, field, e), (guess, guess + mpf("1e-4")), tol=1e-16 if field else 1e-30, maxsteps=10)
             except (ValueError, ZeroDivisionError):
                 continue
             if not (low < value.real < high and -WIDEST_EV / 2 < value.imag < 1e-12):
@@ -167,7 +167,7 @@ def states(layers, field, search):
             if any(abs(value - other) < 1e-10 for other in found):
                 continue
             mp.dps = DIGITS
-            value = mp.findroot(lambda e: mismatch(layers, field, e), (value, value * (1 + mpf("1e-15"))), tol=mpf(10) ** (-80), maxsteps=40, verify=False)
+            value = mp.findroot(lambda e: mismatch(layers, field, e), (value, value * (1 + mpf("1e-15"))), tol=mpf(10) ** (-35), maxsteps=20, verify=False)
             found.append(value)
     mp.dps = DIGITS
     found.sort(key=lambda value: value.real)
@@ -214,7 +214,7 @@ def strength(layers, photon):
     free_in = lambda z: (mp.sin(q * z), q * mp.cos(q * z))
     free_out = lambda s: (c * mp.sin(k * s) + d * mp.cos(k * s), k * (c * mp.cos(k * s) - d * mp.sin(k * s)))
     end = 60 / kappa
-    pieces = [end * n / 24 for n in range(25)]
+    pieces = [end * n / 12 for n in range(13)]
     norm = 2 * (
         mp.quad(lambda z: inside(ground_in(z), ground_in(z), ground), [0, half])
         + mp.quad(lambda s: outside(ground_out(s), ground_out(s), ground), pieces)
@@ -245,17 +245,17 @@ def cases():
     """Name, layers, field in kV/cm, (low, high, starts, depths) of the search, energies for the transmission."""
     gaas, algaas = (0.0, 0.067), (0.23, 0.092)
     yield "double barrier", [Layer(3, *gaas), Layer(3, *algaas), Layer(5, *gaas), Layer(3, *algaas), Layer(3, *gaas)], 0, (
-        0.01, 0.33, 24, (0.0, 0.01)), [0.01, 0.05, 0.08, 0.15, 0.25, 0.4]
+        0.01, 0.33, 12, (0.0, 0.01)), [0.01, 0.05, 0.08, 0.15, 0.25, 0.4]
     lower, higher = (0.05, 0.075), (0.3, 0.1)
     yield "double barrier between unlike leads", [
         Layer(4, *gaas), Layer(4, *algaas), Layer(6, *gaas), Layer(2.5, *higher), Layer(4, *lower)], 0, (
-        0.01, 0.39, 24, (0.0, 0.01)), [0.06, 0.1, 0.2, 0.35]
+        0.01, 0.39, 12, (0.0, 0.01)), [0.06, 0.1, 0.2, 0.35]
     yield "thick barriers", [Layer(2, *gaas), Layer(25, *algaas), Layer(7, *gaas), Layer(30, *algaas), Layer(2, *gaas)], 0, (
-        0.01, 0.2, 16, (0.0,)), [0.02, 0.1, 0.2]
+        0.01, 0.2, 12, (0.0,)), [0.02, 0.1, 0.2]
     well, barrier = (0.0, 0.043, 0.79), (0.52, 0.075, 1.45)
     yield "double barrier, two-band law", [
         Layer(3, *well), Layer(2.5, *barrier), Layer(5, *well), Layer(2, *barrier), Layer(3, *well)], 0, (
-        0.01, 0.6, 24, (0.0, 0.02)), [0.05, 0.12, 0.3, 0.6]
+        0.01, 0.6, 12, (0.0, 0.02)), [0.05, 0.12, 0.3, 0.6]
     high = (0.35, 0.065, 1.3)
     yield "double barrier, one lead above the levels", [
         Layer(1.5, *high), Layer(1, *barrier), Layer(7, *well), Layer(2, *barrier), Layer(3, *well)], 0, (
@@ -293,7 +293,7 @@ def main():
             "transmission": [[e, float(transmission(layers, field, mpf(str(e))))] for e in energies],
         })
     wells = []
-    mp.dps = 20
+    mp.dps = 16
     for name, layers, photons in detector_wells():
         wells.append({
             "name": name,
