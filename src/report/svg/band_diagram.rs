@@ -366,7 +366,13 @@ impl BandDiagram {
         let list: Vec<String> = states.chain(transitions).chain(fermi).collect();
         format!(
             "Band {} and squared envelopes along the growth direction. {}.",
-            if self.panels.iter().map(|panel| panel.edges.len()).sum::<usize>() > 1 {
+            if self
+                .panels
+                .iter()
+                .map(|panel| panel.edges.len())
+                .sum::<usize>()
+                > 1
+            {
                 "edges"
             } else {
                 "edge"
