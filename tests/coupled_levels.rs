@@ -561,7 +561,9 @@ fn what_does_not_fit_is_told() {
     let bench = Bench::new();
     let refused = |command: &str, text: &str, words: &[&str]| {
         bench.write("bad.yaml", text);
-        let ran = bench.run(&[command, "bad.yaml"]).code(2);
+        let mut arguments: Vec<&str> = command.split(' ').collect();
+        arguments.push("bad.yaml");
+        let ran = bench.run(&arguments).code(2);
         for word in words {
             assert!(ran.stderr.contains(word), "{word}\n{}", ran.stderr);
         }
@@ -615,11 +617,24 @@ fn what_does_not_fit_is_told() {
         "bands: {{conduction: {{model: eight-band}}}}\n{}",
         material(&whole)
     );
-    for command in ["plot", "tolerance"] {
+    let window = format!(
+        "bands: {{valence: {{model: six-band}}}}\n{}tolerance:\n  field: 1 kV/cm\n  window: {{from: valence 1, to: conduction 1, energy: [1 eV, 2 eV]}}\n",
+        material(&whole)
+    );
+    for command in [
+        "plot --what yield",
+        "plot --what sensitivities",
+        "tolerance",
+    ] {
         refused(
             command,
             &eight,
             &["on their own", "`eight-band`", "`levels`, `tune`"],
+        );
+        refused(
+            command,
+            &window,
+            &["a window names valence 1", "coupled bands", "decoupled"],
         );
     }
     let tune = |aim: &str| {

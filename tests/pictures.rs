@@ -7,7 +7,7 @@ use wellwright::report::svg::{
     YieldHistogram, palette, text_width_pt,
 };
 use wellwright::structure::{self, Stack, Structure};
-use wellwright::subbands::{Accuracy, Bands, Curves, curves};
+use wellwright::subbands::{Accuracy, Bands, Curves, Place, Solution, coupled_curves, curves};
 
 const SHIPPED: [&str; 6] = [
     include_str!("../structures/coupled-well-emitter.yaml"),
@@ -42,9 +42,12 @@ fn solved(text: &str) -> Solved {
         .unwrap_or_else(|problems| panic!("{problems:?}\n{text}"));
     let bands = Bands::solve(&stack, &Band::of(&structure), Accuracy::default()).unwrap();
     let shown = bands.asked_for(&structure);
-    let curves = bands.alone().zip(&shown).map(|(solved, shown)| {
-        let operator = BandOperator::new(&stack, solved.band).unwrap();
-        curves(&operator, solved, *shown, FINENESS)
+    let curves = (0..bands.count()).map(|band| match bands.solution(band) {
+        Solution::Alone(solved) => {
+            let operator = BandOperator::new(&stack, solved.band).unwrap();
+            curves(&operator, solved, shown[band], FINENESS)
+        }
+        Solution::Coupled(coupled, side) => coupled_curves(coupled, side, shown[band], FINENESS),
     });
     Solved {
         curves: curves.collect(),
@@ -754,6 +757,134 @@ fn holes_hang_below_the_electrons() {
                 told.contains(&format!("{wavelength_um:.4} µm")),
                 "{name}: {told}"
             );
+        }
+    }
+}
+
+/// Electrons and holes of a broken gap, eight bands coupled.
+const BROKEN: &str = include_str!("../structures/carbon-dioxide-w-well-4p26um.yaml");
+
+/// Six-band holes below one band of electrons.
+fn six_band() -> String {
+    include_str!("../structures/strained-980nm-well.yaml")
+        .replace("decoupled", "six-band")
+        .replace("from: heavy-hole 1", "from: valence 1")
+}
+
+/// A state's norm is 1, whatever the number of its functions, and none of them holds more than all.
+#[test]
+fn sums_over_coupled_components_have_an_area_of_one() {
+    for text in [BROKEN, &six_band()] {
+        let solved = solved(text);
+        let states = solved.curves.iter().flat_map(|curves| &curves.states);
+        let mut coupled = 0;
+        for state in states {
+            let Some(sum) = &state.sum else { continue };
+            coupled += 1;
+            // Trapezes over lines that are off by 4e-4 of the peak.
+            assert!((area(sum) - 1.0).abs() < 3e-3, "{}", area(sum));
+            assert!(area(&state.envelope) <= area(sum) + 3e-3);
+        }
+        assert!(coupled >= 3);
+    }
+}
+
+/// Where the conduction edge of one layer lies below the valence edge of another, one axis has both bands: levels and edges
+/// stand where their energies are, and the ladder has the aim between them.
+#[test]
+fn a_broken_gap_is_one_panel() {
+    let solved = solved(BROKEN);
+    let bands = &solved.bands;
+    let edges = bands.coupled().unwrap().layer_edges_ev();
+    let zero_ev = edges.iter().fold(f64::INFINITY, |a, edge| a.min(edge[0]));
+    let mut expected: Vec<f64> = (0..2)
+        .flat_map(|band| (0..solved.shown[band]).map(move |state| Place { band, state }))
+        .map(|place| bands.energy_ev(place) - zero_ev)
+        .collect();
+    expected.sort_by(f64::total_cmp);
+    for width in WIDTHS {
+        let svg = diagram(&solved).svg(width);
+        assert_tidy(&format!("broken gap ({width:?})"), &svg);
+        let document = Document::parse(&svg).unwrap();
+        let count = |class: &str| {
+            let all = document.descendants();
+            all.filter(|node| node.attribute("class") == Some(class))
+                .count()
+        };
+        assert_eq!((count("axis-y"), count("edge"), count("body")), (1, 1, 1));
+        assert_eq!(children(group(&document, "edge"), "path").count(), 3);
+        assert!(svg.contains(">Energy (eV)<"));
+        let energy = axis(&document, "axis-y", "y1");
+        let per_point = (energy(0.0) - energy(1.0)).abs();
+        let drawn: Vec<f64> = children(group(&document, "levels"), "line")
+            .map(|line| energy(attribute(line, "y1")))
+            .collect();
+        assert_eq!(drawn.len(), 5);
+        for (drawn, expected) in drawn.iter().zip(&expected) {
+            assert!((drawn - expected).abs() <= 0.02 * per_point);
+        }
+        // Lines of the conduction, heavy-hole and light-hole edge, with every layer's value.
+        for (which, line) in children(group(&document, "edge"), "path").enumerate() {
+            // M x y l dx dy ...
+            let (start, steps) = line.attribute("d").unwrap()[1..].split_once('l').unwrap();
+            let mut y: f64 = start.split(' ').nth(1).unwrap().parse().unwrap();
+            let mut ys = vec![energy(y)];
+            let steps = steps.replace('-', " -");
+            for step in steps.split_whitespace().skip(1).step_by(2) {
+                y += step.parse::<f64>().unwrap();
+                ys.push(energy(y));
+            }
+            for edge in &edges {
+                let expected = edge[which] - zero_ev;
+                let near = |y: &f64| (y - expected).abs() <= 0.02 * per_point;
+                assert!(
+                    ys.iter().any(near),
+                    "edge {which}: {expected} not in {ys:?}"
+                );
+            }
+        }
+        let told: String = children(document.root_element(), "text")
+            .map(words)
+            .chain(children(group(&document, "energies"), "text").map(words))
+            .collect();
+        for words in ["4.463 µm", "The gap is broken", "v 1 hh", "v 2 lh", "c 2"] {
+            assert!(told.contains(words), "{words}: {told}");
+        }
+    }
+}
+
+/// Coupled holes of an ordinary gap have a panel of their own below the electrons', both zeros at their edges.
+#[test]
+fn six_band_holes_hang_below_the_electrons() {
+    let solved = solved(&six_band());
+    let bands = &solved.bands;
+    let edges = bands.coupled().unwrap().layer_edges_ev();
+    let zero_ev = edges
+        .iter()
+        .fold(f64::NEG_INFINITY, |a, edge| a.max(edge[1]).max(edge[2]));
+    for width in WIDTHS {
+        let svg = diagram(&solved).svg(width);
+        let name = format!("six bands ({width:?})");
+        assert_tidy(&name, &svg);
+        assert_levels_in_place(&name, &solved, &svg);
+        let document = Document::parse(&svg).unwrap();
+        let all = |class: &'static str| -> Vec<Node> {
+            let all = document.descendants();
+            all.filter(|node| node.attribute("class") == Some(class))
+                .collect()
+        };
+        let (axes, levels, lines) = (all("axis-y"), all("levels"), all("edge"));
+        assert_eq!((axes.len(), levels.len()), (2, 2), "{name}");
+        assert_eq!(children(lines[1], "path").count(), 2);
+        let energy = axis_of(axes[1], "axis-y", "y1");
+        let per_point = (energy(0.0) - energy(1.0)).abs();
+        let drawn = children(levels[1], "line").map(|line| energy(attribute(line, "y1")));
+        let drawn: Vec<f64> = drawn.collect();
+        assert_eq!(drawn.len(), 3);
+        for (state, drawn) in drawn.iter().enumerate() {
+            let level_ev = bands.energy_ev(Place { band: 1, state });
+            let expected = 1e3 * (level_ev - zero_ev);
+            assert!((drawn - expected).abs() <= 0.02 * per_point, "{name}");
         }
     }
 }

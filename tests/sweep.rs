@@ -714,3 +714,116 @@ sweep: {{vary: {{layer: well, width: [2 nm, 18 nm]}}, points: 41}}
     }
     assert!(told > 20, "{told}");
 }
+
+/// Holes between hard walls, six bands coupled: at k∥ = 0 heavy holes ħ²π²n²(γ₁ − 2γ₂)/2m₀L²; light holes the upper root of
+/// Luttinger and Kohn's block of light and split-off holes at k = nπ/L, which for a large splitting is
+/// ħ²π²n²(γ₁ + 2γ₂)/2m₀L² (Phys. Rev. 97, 869 (1955); γ of GaAs, Vurgaftman, Meyer and Ram-Mohan, J. Appl. Phys. 89, 5815
+/// (2001)). The second heavy hole stays behind the first light one: (γ₁ + 2γ₂)/(γ₁ − 2γ₂) = 3.88 of 4.
+#[test]
+fn coupled_holes_between_hard_walls_follow_the_square_of_the_width() {
+    let (g1, g2, split_ev) = (6.98, 2.06, 3.0);
+    let file = swept(&format!(
+        "bands:
+  conduction: {{model: parabolic, states: 1}}
+  valence: {{model: six-band, states: 3}}
+materials:
+  Box: {{like: GaAs, luttinger: [{g1}, {g2}, 2.93], spin_orbit: {split_ev} eV}}
+layers:
+  - {{name: box, material: Box, width: 10 nm}}
+sweep: {{vary: {{layer: box, width: [5 nm, 20 nm]}}, points: 7}}
+"
+    ));
+    assert_eq!(list(&file, "points").len(), 7);
+    for point in list(&file, "points") {
+        let width_nm = number(point, "at");
+        let square = |n: f64| HBAR2_OVER_2M0 * (n * std::f64::consts::PI / width_nm).powi(2);
+        // −(γ₁ + 2γ₂)k², −Δ − γ₁k² and 2√2 γ₂k² between them.
+        let light = |n: f64| {
+            let k2 = square(n);
+            let (light, split) = (-(g1 + 2.0 * g2) * k2, -split_ev - g1 * k2);
+            let half = 0.5 * (light - split);
+            -(0.5 * (light + split) + half.hypot(8f64.sqrt() * g2 * k2))
+        };
+        let heavy = |n: f64| (g1 - 2.0 * g2) * square(n);
+        let mut expected = [heavy(1.0), heavy(2.0), light(1.0)].map(|ev| 1e3 * ev);
+        expected.sort_by(f64::total_cmp);
+        let found = list(point, "levels").iter();
+        let found: Vec<f64> = found
+            .filter(|level| {
+                level["level"]
+                    .as_str()
+                    .is_some_and(|l| l.starts_with("valence"))
+            })
+            .map(|level| number(level, "from_edge_meV"))
+            .collect();
+        assert_eq!(found.len(), 3);
+        for (found, expected) in found.iter().zip(expected) {
+            near(*found, expected, 1e-3);
+        }
+        // ∝ 1/L², and 10.754 meV at 10 nm.
+        near(found[0] * (width_nm / 10.0).powi(2), 10.754, 2e-3);
+    }
+}
+
+/// At k∥ = 0 heavy holes are coupled to nothing, so that they cross light ones and electrons without a gap (Luttinger and
+/// Kohn 1955). TE light alone comes to them (Chuang 1995), and a field moves levels of a symmetric well the same way for
+/// both of its signs.
+#[test]
+fn eight_coupled_bands_are_swept() {
+    let well = "substrate: GaSb
+temperature: 300 K
+bands:
+  conduction: {model: eight-band, states: 2}
+  valence: {model: eight-band, states: 3}
+layers:
+  - {name: lower, material: AlSb, width: 6 nm}
+  - {name: first, material: InAs, width: 1.7 nm}
+  - {name: holes, material: In0.35Ga0.65Sb, width: 3 nm}
+  - {name: second, material: InAs, width: 1.7 nm}
+  - {name: upper, material: AlSb, width: 6 nm}
+";
+    let show =
+        "show: [{from: valence 1, to: conduction 1}, {from: conduction 1, to: conduction 2}]";
+    let file = swept(&format!(
+        "{well}sweep: {{vary: {{layer: holes, width: [2.5 nm, 4.5 nm]}}, points: 5, {show}}}\n"
+    ));
+    assert_eq!(list(&file, "points").len(), 5);
+    for point in list(&file, "points") {
+        let aim = &list(point, "transitions")[0];
+        assert!(number(aim, "te_Ep") > 0.05);
+        near(number(aim, "tm_Ep"), 0.0, 1e-9);
+    }
+    let crossings = list(&file, "anticrossings");
+    assert!(!crossings.is_empty());
+    for crossing in crossings {
+        near(number(crossing, "gap_meV"), 0.0, 1e-5);
+    }
+    let file = swept(&format!(
+        "{well}sweep: {{vary: {{field: [-100 kV/cm, 100 kV/cm]}}, points: 5, {show}}}\n"
+    ));
+    let points = list(&file, "points");
+    for (one, other) in points.iter().zip(points.iter().rev()) {
+        let of = |point| of_levels(point, "from_middle_meV");
+        for (a, b) in of(one).iter().zip(of(other)) {
+            near(*a, b, 1e-5);
+        }
+        for (a, b) in list(one, "transitions")
+            .iter()
+            .zip(list(other, "transitions"))
+        {
+            near(number(a, "energy_meV"), number(b, "energy_meV"), 1e-5);
+        }
+    }
+    // A state across the gap bears the other band's name, which is said.
+    let inverted = format!(
+        "{}sweep: {{vary: {{layer: first, width: [5 nm, 15 nm]}}, points: 3}}\n",
+        well.replace("width: 1.7", "width: 10")
+            .replace("width: 3 ", "width: 8 ")
+    );
+    let ran = sweep(&bench(&inverted), &[]);
+    assert!(
+        ran.stderr.contains("conduction 1 is mostly of holes at"),
+        "{}",
+        ran.stderr
+    );
+}

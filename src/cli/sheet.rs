@@ -14,6 +14,7 @@ use crate::report::Sheet;
 use crate::report::svg::{Width, sensitivity_bars, yield_histogram};
 use crate::structure::{Ends, Level};
 use crate::subbands::Accuracy;
+use crate::tolerance;
 use std::path::Path;
 
 /// The page samples wafers of stacks up to this size: larger ones would keep the reader waiting.
@@ -96,7 +97,10 @@ pub fn sheet(
             let layers = input.stack.layers.len();
             // Tolerances are those of levels that were solved on their own.
             let toleranced = input.structure.tolerance.is_some() && !periodic;
-            let sampled = toleranced && bands.coupled().is_none();
+            let names_coupled = input.structure.tolerance.iter().any(|tolerance| {
+                tolerance::coupled_level(&input.structure, &tolerance.windows).is_some()
+            });
+            let sampled = toleranced && bands.conduction().is_some() && !names_coupled;
             if toleranced && !sampled {
                 let left_out = "the page has no yield: bands are coupled, and tolerances are those of bands that are solved on their own";
                 show(&Diagnostic::warning(left_out), &input.name, &input.text);

@@ -8,6 +8,7 @@ use super::threads::pool;
 use crate::diagnostics::Diagnostic;
 use crate::report::Sweeps;
 use crate::report::svg::Width;
+use crate::structure::BandName;
 use crate::subbands::Accuracy;
 use crate::sweep::{self, NotSolved, Outcome, Part, SweepError};
 use std::path::Path;
@@ -120,6 +121,26 @@ fn doubt(input: &Input, outcome: &Outcome) {
                     state + 1
                 ));
                 break;
+            }
+        }
+    }
+    for (band, (name, count)) in outcome.bands.iter().enumerate() {
+        for state in 0..*count {
+            let other = found().filter(|found| {
+                let own = found.levels[band].get(state);
+                own.is_some_and(|level| level.inverted)
+            });
+            let other = other.count();
+            if other > 0 {
+                let kind = match *name {
+                    BandName::Conduction => "holes",
+                    _ => "electrons",
+                };
+                warn(format!(
+                    "{} {} is mostly of {kind} at {other} of {all} points: the gap is broken there. Levels are counted from it by their number, and a state that crosses it is not followed from one band to the other",
+                    name.word(),
+                    state + 1
+                ));
             }
         }
     }

@@ -74,6 +74,13 @@ pub fn worked_out(
             show(&problem, &input.name, &input.text);
             Exit::WrongInput
         }
+        ToleranceError::Coupled { .. } => {
+            let problem = Diagnostic::error(error.to_string()).hint(
+                "`valence: {model: decoupled}` solves heavy and light holes each on their own",
+            );
+            show(&problem, &input.name, &input.text);
+            Exit::WrongInput
+        }
         ToleranceError::NoLevel { .. } => {
             show(
                 &Diagnostic::error(error.to_string()),

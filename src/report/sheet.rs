@@ -204,7 +204,7 @@ pub const GROWER_ENTRIES: [&str; 6] = [
 
 /// What the peaks mean.
 const PEAK_NOTE: &str = "Peak: transition less exciton binding, at both temperatures (free excitons carry the light of wells up to 300 K: Dawson and \
-others 1983); where carriers are free, the transition itself. No field, holes solved apart; filled bands and disorder, which pull it down, left out.";
+others 1983); where carriers are free, the transition itself. No field, holes as the file solves them; filled bands and disorder, which pull it down, left out.";
 /// Decimals of a fraction in sentences about compositions.
 const FRACTION_DECIMALS: usize = 4;
 

@@ -2,7 +2,7 @@
 
 use super::Report;
 use super::table::{given, significant};
-use crate::models::model_name;
+use crate::models::{model_name, valence_model_name};
 use crate::structure::{Level, Stack, Steps, Structure};
 use crate::sweep::{Axis, Follows, LevelAt, Outcome, Point, Strength, TransitionAt};
 use serde::Serialize;
@@ -17,6 +17,8 @@ pub(super) const MIDDLE_DEFINITION: &str =
 pub struct Sweeps {
     pub(super) title: Option<String>,
     model: &'static str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    valence_model: Option<&'static str>,
     #[serde(rename = "temperature_K", skip_serializing_if = "Option::is_none")]
     temperature_k: Option<f64>,
     #[serde(rename = "field_kV_cm", skip_serializing_if = "Option::is_none")]
@@ -231,6 +233,9 @@ impl Sweeps {
         Sweeps {
             title: structure.title.clone(),
             model: model_name(structure.conduction.model),
+            valence_model: structure
+                .valence
+                .map(|valence| valence_model_name(valence.model)),
             temperature_k: not_swept("temperature_K").then_some(structure.temperature_k),
             field_kv_cm: not_swept("field_kV_cm").then_some(1e4 * stack.field_v_per_nm),
             swept: SweptRow {
@@ -256,6 +261,9 @@ impl Sweeps {
     pub(super) fn heading(&self) -> String {
         let axis = &self.outcome.axis;
         let mut text = format!("{} model", self.model);
+        if let Some(holes) = self.valence_model.filter(|holes| *holes != self.model) {
+            text += &format!(", {holes} holes");
+        }
         if let Some(temperature_k) = self.temperature_k {
             text += &format!(", {} K", given(temperature_k, 4));
         }

@@ -11,6 +11,8 @@ use crate::sweep::{Follows, LevelAt, Point, Strength};
 const MOST_ROWS: usize = 26;
 /// Columns of levels side by side.
 const MOST_COLUMNS: usize = 8;
+/// Weaker transitions are forbidden: what is left is rounding.
+const LEAST_STRENGTH: f64 = 1e-12;
 
 impl Sweeps {
     /// All tables.
@@ -148,7 +150,10 @@ impl Sweeps {
                             oscillator_strength,
                         } => {
                             row.push(format!("{dipole_nm:.4}"));
-                            row.push(significant(oscillator_strength, 4));
+                            row.push(match oscillator_strength < LEAST_STRENGTH {
+                                true => "0".to_owned(),
+                                false => significant(oscillator_strength, 4),
+                            });
                         }
                         Strength::Momentum { overlap, te, tm } => {
                             row.extend([overlap, te, tm].map(|v| format!("{v:.3}")));

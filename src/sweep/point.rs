@@ -45,6 +45,8 @@ pub struct LevelAt {
     pub error_ev: f64,
     /// Whether both outer barriers hold it.
     pub bound: bool,
+    /// Whether a level of coupled bands bears the name of the other band: the gap is broken, and names count from it.
+    pub inverted: bool,
 }
 
 /// A transition at a point.
@@ -137,6 +139,9 @@ fn found(
                     from_middle_ev: sign * own.energy_ev - middle_ev,
                     error_ev: own.error_ev,
                     bound: own.hold != Hold::Walls,
+                    inverted: own
+                        .shares
+                        .is_some_and(|shares| (shares.conduction > 0.5) != (sign > 0.0)),
                 }
             })
             .collect()

@@ -18,7 +18,7 @@ pub use statistics::{Histogram, Share, Statistics, share};
 
 use crate::charge::{self, ChargeError};
 use crate::models::{Band, Unsuitable};
-use crate::structure::{Charge, Design, Level, Stack, Structure};
+use crate::structure::{Charge, Design, Level, Stack, Structure, Window};
 use crate::subbands::{Accuracy, Bands};
 
 /// Everything about a structure's tolerances.
@@ -56,6 +56,10 @@ pub enum ToleranceError {
     NoLayer,
     #[error("a window names {wanted}, but the stack is too small a box for so many levels")]
     NoLevel { wanted: Level },
+    #[error(
+        "a window names {wanted}, which is a level of coupled bands, and tolerances are those of bands that are solved on their own"
+    )]
+    Coupled { wanted: Level },
     #[error(transparent)]
     Charge(ChargeError),
 }
@@ -91,6 +95,18 @@ fn solved(
         })
 }
 
+/// The first level of the windows that belongs to coupled bands.
+pub fn coupled_level(structure: &Structure, windows: &[Window]) -> Option<Level> {
+    let coupled: Vec<Band> = Band::of(structure)
+        .into_iter()
+        .map(|(band, _)| band)
+        .filter(|band| band.coupled().is_some())
+        .collect();
+    followed::named_by(windows)
+        .into_iter()
+        .find(|level| coupled.iter().any(|band| band.highest(&[*level]) > 0))
+}
+
 /// The mesh of sampled wafers is this exact, in eV: far less than any spread that can be grown.
 const SAMPLING_TOLERANCE_EV: f64 = 1e-6;
 
@@ -99,7 +115,7 @@ const SAMPLING_TOLERANCE_EV: f64 = 1e-6;
 ///
 /// # Errors
 /// When a material, or the mixed crystal of two at an interface, does not suit the model; when a layer vanishes or a
-/// window's level does not exist.
+/// window's level does not exist or belongs to coupled bands.
 pub fn tolerance(
     structure: &Structure,
     stack: &Stack,
@@ -109,6 +125,9 @@ pub fn tolerance(
 ) -> Result<Outcome, ToleranceError> {
     let stated = structure.tolerance.as_ref();
     let windows = stated.map_or(&[][..], |tolerance| &tolerance.windows);
+    if let Some(wanted) = coupled_level(structure, windows) {
+        return Err(ToleranceError::Coupled { wanted });
+    }
     let named = followed::named_by(windows);
     let mut asked = Band::holding(structure, &named);
     asked.retain(|(band, _)| band.coupled().is_none());

@@ -384,12 +384,10 @@ impl BandDiagram {
 
 /// Whether two edges are one line.
 fn alike(one: &DrawnEdge, other: &DrawnEdge) -> bool {
-    let pairs = one.points.iter().zip(&other.points);
+    let mut pairs = one.points.iter().zip(&other.points);
     one.sign == other.sign
         && one.points.len() == other.points.len()
-        && pairs.fold(true, |so_far, (a, b)| {
-            so_far && (a[1] - b[1]).abs() < ONE_EDGE_EV
-        })
+        && pairs.all(|(a, b)| (a[1] - b[1]).abs() < ONE_EDGE_EV)
 }
 
 /// Whether some layer has its conduction edge below the valence edge of another, the field left out.
