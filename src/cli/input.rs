@@ -5,7 +5,7 @@ use crate::charge::{self, ChargeError, Equilibrium, Solution};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::{Band, Unsuitable};
-use crate::structure::{self, ConductionModel, Ends, Stack, Structure};
+use crate::structure::{self, Charge, ConductionModel, Ends, Stack, Structure};
 use crate::subbands::{Accuracy, Audit, Bands, Hold, State};
 use std::collections::BTreeSet;
 use std::fs::File;
@@ -168,6 +168,14 @@ impl Input {
         }
     }
 
+    /// Says that a command takes flat bands where charge bends those of the file.
+    pub fn with_flat_bands(&self, what: &str) {
+        if self.structure.charge != Charge::Flat {
+            let words = format!("charge bends the bands of this file, but {what} flat ones");
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
+    }
+
     /// Doubts about the solutions of all bands, of each about the states that are listed.
     pub fn doubt_all(&self, bands: &Bands, shown: &[usize]) {
         for (band, shown) in shown.iter().enumerate() {
@@ -258,7 +266,11 @@ impl Input {
                     verb("it is", "they are"),
                 ),
                 Hold::Leaky => format!(
-                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result, `ends: open` gives it"
+                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result, {} gives it",
+                    match self.structure.ends {
+                        Ends::Open => "`levels`",
+                        Ends::Walls | Ends::Periodic => "`ends: open`",
+                    }
                 ),
                 Hold::Bound if shift_ev > WALL_SHIFT_EV => format!(
                     "the walls {raise} {which} ({place}) by {} {:.2} meV: make the outer layers wider",
