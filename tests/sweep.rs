@@ -447,7 +447,7 @@ fn doping_is_swept_with_a_warning() {
 
 /// Gauss's law: between two empty wells on either side of donors and of the electrons that they gave, the potential
 /// makes a step of e²N d/ε, d from the middle of the donors to the middle of the electrons. A well of 4 nm moves its
-/// electrons by less than 0.02 nm of these 10 nm.
+/// electrons towards the donors by less than 0.02 nm of these 10 nm, in proportion to the density.
 #[test]
 fn levels_follow_the_doping_where_charge_bends_the_bands() {
     let text = "\
@@ -467,7 +467,7 @@ layers:
   - {name: behind, material: W, width: 2 nm}
   - {material: B, width: 15 nm}
 sweep:
-  vary: {layer: supply, donors: [2e17 cm^-3, 8e17 cm^-3]}
+  vary: {layer: supply, donors: [1e17 cm^-3, 4e17 cm^-3]}
   points: 4
   show: [{from: conduction 2, to: conduction 3}]
 ";
