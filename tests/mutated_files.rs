@@ -1,6 +1,7 @@
 //! Files that are damaged at random: reading them never panics, and always ends with a structure or with a message.
 
 use proptest::prelude::*;
+use proptest::sample::Index;
 use proptest::test_runner::RngSeed;
 use wellwright::diagnostics::Severity;
 use wellwright::structure::{self, document};
@@ -40,6 +41,72 @@ growth:
   dopants: {donors: Si, acceptors: Be}
 ";
 
+/// A stack with every kind of charge and a sweep.
+const CHARGED: &str = "\
+substrate: GaAs
+temperature: 77 K
+bands: {conduction: {model: energy-dependent, states: 3}, valence: {model: decoupled, states: 2}}
+charge:
+  fermi_level: neutral
+  ionisation: {donors: 6 meV, acceptors: {energy: 27 meV, degeneracy: 4}}
+  exchange: local density
+layers:
+  - {name: lower, material: Al0.3Ga0.7As, width: 10 nm, acceptors: 1e16 cm^-3}
+  - {name: plane, sheet_donors: 5e11 cm^-2}
+  - {name: spacer, material: Al0.3Ga0.7As, width: 6 nm, sheet_acceptors: 1e10 cm^-2}
+  - {name: well, material: GaAs, width: 8 nm}
+  - {name: grade, material: GaAs, to: Al0.3Ga0.7As, width: 5 nm}
+  - {name: upper, material: Al0.3Ga0.7As, width: 10 nm}
+tolerance: {doping: 5 %, window: {from: conduction 1, to: conduction 2, energy: [80 meV, 120 meV]}}
+sweep:
+  vary: {layer: lower, acceptors: [1e16 cm^-3, 1e17 cm^-3]}
+  points: 3
+  steps: logarithmic
+  show: [{from: valence 1, to: conduction 1}]
+";
+
+/// A pair of barriers that electrons cross.
+const OPEN: &str = "\
+substrate: GaAs
+temperature: 77 K
+field: 20 kV/cm
+ends: open
+charge: flat
+bands: {conduction: {model: energy-dependent, states: 2}}
+layers:
+  - {name: lead, material: GaAs, width: 4 nm}
+  - {name: first, material: Al0.4Ga0.6As, width: 2 nm}
+  - {name: well, material: GaAs, width: 5 nm, donors: 1e16 cm^-3}
+  - {name: second, material: Al0.4Ga0.6As, width: 2 nm}
+  - {name: exit, material: GaAs, width: 4 nm}
+";
+
+/// One period with a grade.
+const PERIODIC: &str = "\
+substrate: GaAs
+temperature: 10 K
+ends: periodic
+bands: {conduction: {model: parabolic, states: 2}, valence: {model: decoupled, states: 2}}
+layers:
+  - {name: well, material: GaAs, width: 7 nm}
+  - {name: grade, material: GaAs, to: Al0.2Ga0.8As, profile: parabolic, width: 2 nm}
+  - {name: barrier, material: Al0.2Ga0.8As, width: 3 nm}
+";
+
+/// Modules in a field.
+const LADDER: &str = "\
+substrate: GaAs
+field: 12 kV/cm
+bands: {conduction: {model: parabolic, states: 3}}
+layers:
+  - repeat: 3
+    layers:
+      - {name: well, material: GaAs, width: 8 nm}
+      - {name: barrier, material: Al0.15Ga0.85As, width: 4 nm}
+";
+
+const ALL: [&str; 5] = [GOOD, CHARGED, OPEN, PERIODIC, LADDER];
+
 /// Reads whatever bytes there are, as the program does.
 fn read(bytes: &[u8]) -> Result<(), TestCaseError> {
     let text = match document::decode(bytes) {
@@ -75,41 +142,46 @@ fn read(bytes: &[u8]) -> Result<(), TestCaseError> {
 }
 
 #[test]
-fn the_undamaged_file_is_good() {
-    let (structure, problems) = structure::read(GOOD);
-    assert!(structure.is_some(), "{problems:#?}");
+fn the_undamaged_files_are_good() {
+    for text in ALL {
+        let (structure, problems) = structure::read(text);
+        assert!(structure.is_some(), "{problems:#?}");
+    }
 }
 
 proptest! {
     #![proptest_config(ProptestConfig { cases: 600, failure_persistence: None, rng_seed: RngSeed::Fixed(1), ..ProptestConfig::default() })]
 
     #[test]
-    fn bytes_replaced(changes in prop::collection::vec((0..GOOD.len(), any::<u8>()), 1..4)) {
-        let mut bytes = GOOD.as_bytes().to_vec();
+    fn bytes_replaced(text in 0..ALL.len(), changes in prop::collection::vec((any::<Index>(), any::<u8>()), 1..4)) {
+        let mut bytes = ALL[text].as_bytes().to_vec();
         for (at, byte) in changes {
+            let at = at.index(bytes.len());
             bytes[at] = byte;
         }
         read(&bytes)?;
     }
 
     #[test]
-    fn a_piece_taken_out(from in 0..GOOD.len(), length in 1..60_usize) {
-        let mut bytes = GOOD.as_bytes().to_vec();
-        bytes.drain(from..(from + length).min(GOOD.len()));
+    fn a_piece_taken_out(text in 0..ALL.len(), from: Index, length in 1..60_usize) {
+        let mut bytes = ALL[text].as_bytes().to_vec();
+        let from = from.index(bytes.len());
+        bytes.drain(from..(from + length).min(bytes.len()));
         read(&bytes)?;
     }
 
     #[test]
-    fn a_piece_doubled(from in 0..GOOD.len(), length in 1..200_usize, to in 0..GOOD.len()) {
-        let mut bytes = GOOD.as_bytes().to_vec();
-        let piece: Vec<u8> = bytes[from..(from + length).min(GOOD.len())].to_vec();
+    fn a_piece_doubled(text in 0..ALL.len(), from: Index, length in 1..200_usize, to: Index) {
+        let mut bytes = ALL[text].as_bytes().to_vec();
+        let (from, to) = (from.index(bytes.len()), to.index(bytes.len()));
+        let piece: Vec<u8> = bytes[from..(from + length).min(bytes.len())].to_vec();
         bytes.splice(to..to, piece);
         read(&bytes)?;
     }
 
     #[test]
-    fn words_exchanged(words in prop::collection::vec((0..200_usize, 0..200_usize), 1..4)) {
-        let mut pieces: Vec<&str> = GOOD.split_inclusive([' ', ',', '{', '}', '\n']).collect();
+    fn words_exchanged(text in 0..ALL.len(), words in prop::collection::vec((0..200_usize, 0..200_usize), 1..4)) {
+        let mut pieces: Vec<&str> = ALL[text].split_inclusive([' ', ',', '{', '}', '\n']).collect();
         for (one, other) in words {
             let count = pieces.len();
             pieces.swap(one % count, other % count);

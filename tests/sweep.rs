@@ -445,6 +445,65 @@ fn doping_is_swept_with_a_warning() {
     assert_eq!(list(&file, "anticrossings"), &[] as &[Value]);
 }
 
+/// Gauss's law: between two empty wells on either side of donors and of the electrons that they gave, the potential
+/// makes a step of e²N d/ε, d from the middle of the donors to the middle of the electrons. A well of 4 nm moves its
+/// electrons towards the donors by less than 0.02 nm of these 10 nm, in proportion to the density.
+#[test]
+fn levels_follow_the_doping_where_charge_bends_the_bands() {
+    let text = "\
+temperature: 4 K
+bands: {conduction: {model: parabolic, states: 3}}
+materials:
+  W: {conduction_edge: 0 eV, electron_mass: 0.067, permittivity_static: 12}
+  B: {conduction_edge: 0.3 eV, electron_mass: 0.067, permittivity_static: 12}
+layers:
+  - {material: B, width: 15 nm}
+  - {name: before, material: W, width: 2 nm}
+  - {material: B, width: 14 nm}
+  - {name: supply, material: B, width: 2 nm, donors: 1e18 cm^-3}
+  - {material: B, width: 7 nm}
+  - {name: filled, material: W, width: 4 nm}
+  - {material: B, width: 15 nm}
+  - {name: behind, material: W, width: 2 nm}
+  - {material: B, width: 15 nm}
+sweep:
+  vary: {layer: supply, donors: [1e17 cm^-3, 4e17 cm^-3]}
+  points: 4
+  show: [{from: conduction 2, to: conduction 3}]
+";
+    let bench = bench(text);
+    let ran = sweep(&bench, &["--format", "json"]);
+    assert!(!ran.stderr.contains("flat"), "{}", ran.stderr);
+    // e/ε0 in V nm (CODATA 2018).
+    let per_charge = 1.602_176_634e-19 / 8.854_187_812_8e-12 * 1e9;
+    for point in list(&ran.json(), "points") {
+        let sheet_per_nm2 = number(point, "at") * 1e-21 * 2.0;
+        let step_mev = 1e3 * per_charge * sheet_per_nm2 * 10.0 / 12.0;
+        let found_mev = number(&list(point, "transitions")[0], "energy_meV");
+        near(found_mev / step_mev, 1.0, 2e-3);
+    }
+}
+
+/// The hint used to lead into an error: nothing in the file is doped that `fermi_level: neutral` could balance.
+#[test]
+fn a_sweep_of_doping_in_an_undoped_file_says_what_makes_it_count() {
+    let text = format!(
+        "{PAIR}sweep: {{vary: {{layer: wide, donors: [1e16 cm^-3, 1e18 cm^-3]}}, points: 3}}\n"
+    );
+    let ran = sweep(&bench(&text), &["--format", "csv"]);
+    assert!(
+        ran.stderr.contains("state a density in the layer too"),
+        "{}",
+        ran.stderr
+    );
+    let doped = text.replace(
+        "GaAs, width: 10 nm",
+        "GaAs, width: 10 nm, donors: 1e16 cm^-3",
+    );
+    let ran = sweep(&bench(&doped), &["--format", "csv"]);
+    assert!(!ran.stderr.contains("flat"), "{}", ran.stderr);
+}
+
 #[test]
 fn mistakes_in_the_block_are_told_with_their_place() {
     for (block, place, message) in [

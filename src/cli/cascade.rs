@@ -48,6 +48,7 @@ pub fn cascade(file: &Path, output: &Output) -> Result<Exit, Exit> {
         ));
     }
     input.conduction_only("`cascade` solves")?;
+    input.with_flat_bands("`cascade` solves");
     let module = input.structure.one_copy(&input.stack, repeated);
     let band = Band::Conduction(input.structure.conduction.model);
     let operator = BandOperator::new(&module, band)

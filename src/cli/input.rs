@@ -213,7 +213,11 @@ impl Input {
                     verb("it is", "they are"),
                 ),
                 Hold::Leaky => format!(
-                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result, `ends: open` gives it"
+                    "{which} ({place}) can tunnel out at an end that the field has lowered; no lifetime is part of this result, {} gives it",
+                    match self.structure.ends {
+                        Ends::Open => "`levels`",
+                        Ends::Walls | Ends::Periodic => "`ends: open`",
+                    }
                 ),
                 Hold::Bound if shift_ev > WALL_SHIFT_EV => format!(
                     "the walls {raise} {which} ({place}) by {} {:.2} meV: make the outer layers wider",

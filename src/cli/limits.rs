@@ -4,7 +4,7 @@ use super::deliver::{Exit, show};
 use super::input::Input;
 use crate::diagnostics::Diagnostic;
 use crate::models::Band;
-use crate::structure::{ConductionModel, Ends};
+use crate::structure::{Charge, ConductionModel, Ends};
 
 impl Input {
     /// For a command that knows bound levels only.
@@ -63,6 +63,14 @@ impl Input {
             let words = format!(
                 "{what} between walls at both ends: escape widths and lifetimes are left out; `levels`, `transmission` and `absorption` let electrons out"
             );
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
+    }
+
+    /// Says that a command takes flat bands where charge bends those of the file.
+    pub fn with_flat_bands(&self, what: &str) {
+        if self.structure.charge != Charge::Flat {
+            let words = format!("charge bends the bands of this file, but {what} flat ones");
             show(&Diagnostic::warning(words), &self.name, &self.text);
         }
     }

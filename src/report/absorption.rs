@@ -227,7 +227,7 @@ impl Report for Absorption {
                 } else {
                     width_mev(1e-3 * line.escape_width_meV, 1e-9)
                 },
-                format!("{:.3}", line.oscillator_strength),
+                thousandths(line.oscillator_strength),
             ]
         });
         let lines = if self.lines.is_empty() {
@@ -286,4 +286,13 @@ impl Report for Absorption {
             csv_table(&self.spectrum)?
         ))
     }
+}
+
+/// Three decimals; what rounds to zero has no sign.
+fn thousandths(value: f64) -> String {
+    let text = format!("{value:.3}");
+    if text == "-0.000" {
+        return "0.000".to_owned();
+    }
+    text
 }

@@ -205,10 +205,11 @@ impl ChargeReport {
             )
         };
         text.push_str(&format!(
-            "Field {:.2} kV/cm at the bottom, {:.2} kV/cm at the top; {balance}.\n{} iterations{exchange}; the last changed the potential by {:.0e} eV{}.\n",
+            "Field {:.2} kV/cm at the bottom, {:.2} kV/cm at the top; {balance}.\n{} iteration{}{exchange}; the last changed the potential by {:.0e} eV{}.\n",
             self.field_bottom_kV_cm + 0.0,
             self.field_top_kV_cm + 0.0,
             self.iterations,
+            if self.iterations == 1 { "" } else { "s" },
             self.residual_eV,
             if self.settled { "" } else { ": NOT SETTLED" },
         ));

@@ -126,7 +126,7 @@ impl Sweeps {
         let across = (from.band == BandName::Conduction) != (to.band == BandName::Conduction);
         let strengths: &[&str] = match (across, from.band == to.band) {
             (true, _) => &["overlap", "TE", "TM"],
-            (false, true) => &["dipole nm", "osc. strength"],
+            (false, true) => &["dipole nm", "strength"],
             (false, false) => &[],
         };
         let value = self.value_header();

@@ -92,7 +92,11 @@ pub(super) fn unfitting(structure: &Structure, stack: &Stack, found: &mut Vec<Di
         Swept::Doping { .. } if structure.charge == Charge::Flat => found.push(
             Diagnostic::warning("the levels do not depend on doping, because the bands stay flat")
                 .at(sweep.span.clone())
-                .hint("`charge: {fermi_level: neutral}` bends them"),
+                .hint(if stack.sheet_doping_cm2() == [0.0; 2] {
+                    "state a density in the layer too: charge bends the bands of a stack that is doped"
+                } else {
+                    "`charge: {fermi_level: neutral}` bends them"
+                }),
         ),
         _ => {}
     }
