@@ -31,6 +31,7 @@ pub fn absorption(file: &Path, range: &Range, output: &Output) -> Result<Exit, E
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
     input.conduction_only("the spectrum is that of")?;
+    input.flat_only("the spectrum is that of");
     let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let [floor_ev, ceiling_ev] = edges_ev(&operator);

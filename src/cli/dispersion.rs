@@ -9,7 +9,7 @@ use crate::models::Band;
 use crate::models::multiband::{Direction, MultibandModel, MultibandOperator};
 use crate::report::Dispersion;
 use crate::report::svg::Width;
-use crate::structure::{Charge, Ends, Structure};
+use crate::structure::{Ends, Structure};
 use crate::subbands::multiband::{Wanted, follow_multiband, solve_multiband, zone_centre_masses};
 use crate::units::{self, Dimension};
 use std::path::Path;
@@ -74,11 +74,7 @@ pub fn dispersion(
     };
     let operator = MultibandOperator::new(&input.stack, model, direction)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason.into()))?;
-    if input.structure.charge != Charge::Flat {
-        let words =
-            "charge bends the bands of this file, but coupled bands are solved with flat ones";
-        show(&Diagnostic::warning(words), &input.name, &input.text);
-    }
+    input.flat_only("the dispersion is that of");
     let k_per_nm: Vec<f64> = (0..points)
         .map(|step| furthest * f64::from(step) / f64::from(points - 1))
         .collect();

@@ -5,7 +5,7 @@ use crate::charge::{self, ChargeError, Equilibrium, Solution};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::{Band, Unsuitable};
-use crate::structure::{self, ConductionModel, Ends, Stack, Structure};
+use crate::structure::{self, Charge, ConductionModel, Ends, Stack, Structure};
 use crate::subbands::{Accuracy, Audit, Bands, Hold, State};
 use std::collections::BTreeSet;
 use std::fs::File;
@@ -133,6 +133,14 @@ impl Input {
             show(&Diagnostic::warning(words), &self.name, &self.text);
         }
         self.without_coupled(what)
+    }
+
+    /// Tells of a file whose bands are bent by charge that a command takes flat ones.
+    pub fn flat_only(&self, what: &str) {
+        if self.structure.charge != Charge::Flat {
+            let words = format!("charge bends the bands of this file, but {what} flat ones");
+            show(&Diagnostic::warning(words), &self.name, &self.text);
+        }
     }
 
     /// Tells a file whose bands are coupled from what a command takes, bands that are solved on their own.

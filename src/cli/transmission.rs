@@ -24,6 +24,7 @@ pub fn transmission(
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
     input.conduction_only("electrons cross in")?;
+    input.flat_only("electrons cross");
     let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)
         .map_err(|(layer, reason)| input.unsuitable(layer, &reason))?;
     let [floor_ev, ceiling_ev] = edges_ev(&operator);
