@@ -951,3 +951,38 @@ fn reports_tell_of_charge() {
     let ran = bench.run(&["plot", "well.yaml"]).code(0);
     assert!(ran.stdout.contains("fermi-level") && ran.stdout.contains("Fermi level at"));
 }
+
+/// Nothing that takes flat bands takes them in silence.
+#[test]
+fn commands_that_leave_charge_out_say_so() {
+    let bench = common::Bench::new();
+    bench.write(
+        "well.yaml",
+        "substrate: GaAs
+temperature: 77 K
+layers:
+  - {material: Al0.3Ga0.7As, width: 12 nm, donors: 1e18 cm^-3}
+  - {material: GaAs, width: 9 nm}
+  - {material: Al0.3Ga0.7As, width: 15 nm}
+",
+    );
+    let commands: [&[&str]; 3] = [
+        &["absorption", "well.yaml"],
+        &["transmission", "well.yaml", "--points", "5"],
+        &[
+            "dispersion",
+            "well.yaml",
+            "--model",
+            "six-band",
+            "--points",
+            "2",
+        ],
+    ];
+    for command in commands {
+        let told = bench.run(command).code(0).stderr;
+        assert!(
+            told.contains("charge bends the bands of this file"),
+            "{told}"
+        );
+    }
+}

@@ -263,6 +263,16 @@ fn light_adds_up() {
     close(number(&light, "tm_Ep"), 2.0 / 3.0, 0.01);
 }
 
+/// Tolerances leave coupled holes out, and do not call them decoupled.
+#[test]
+fn tolerances_name_no_holes_that_they_leave_out() {
+    let bench = Bench::new();
+    let bands = "{conduction: {states: 2}, valence: {model: six-band, states: 2}}";
+    bench.write("stack.yaml", format!("bands: {bands}\n{LASER}"));
+    let ran = bench.run(&["tolerance", "stack.yaml"]).code(0);
+    assert!(!ran.stdout.contains("decoupled"), "{}", ran.stdout);
+}
+
 /// Closure over the holes: with all of them, an electron of one band has TE = 1/2 + 1/6 + 1/3 = 1 and TM = 2/3 + 1/3 = 1, the
 /// sums over heavy, light and split-off holes (Chuang 1995), whatever mixes the holes: here strain, a grade and no mirror.
 /// Fifty levels hold all but 1e-4 of TE and 5e-3 of TM of the lowest electron.

@@ -423,3 +423,32 @@ fn mistakes_with_open_ends_are_told() {
         .code(1);
     assert!(missing.stderr.contains("conduction 9 is not there"));
 }
+
+/// A level that leaves within picoseconds next to one that leaves at once has no spectrum of its own: the strengths are far
+/// from their sum rule, and that is said with either law of the mass.
+#[test]
+fn a_spectrum_beyond_the_sum_rule_is_told() {
+    for model in ["parabolic", "energy-dependent"] {
+        let bench = Bench::new();
+        bench.write(
+            "a.yaml",
+            format!(
+                "substrate: GaAs
+ends: open
+temperature: 77 K
+field: -25 kV/cm
+bands: {{conduction: {{model: {model}}}}}
+layers:
+  - {{material: Al0.15Ga0.85As, width: 5 nm}}
+  - {{material: Al0.3Ga0.7As, width: 3 nm}}
+  - {{material: In0.12Ga0.88As, width: 6 nm}}
+  - {{material: GaAs, width: 2 nm}}
+  - {{material: Al0.3Ga0.7As, width: 2 nm}}
+  - {{material: GaAs, width: 5 nm}}
+"
+            ),
+        );
+        let told = bench.run(&["absorption", "a.yaml"]).stderr;
+        assert!(told.contains("sum rule is missed"), "{model}: {told}");
+    }
+}

@@ -4,7 +4,7 @@ use super::table::{given, significant, table};
 use super::{Report, csv_table};
 use crate::constants::HC_EV_UM;
 use crate::models::model_name;
-use crate::structure::{BandName, Charge, Level, Stack, Structure, Target, Window};
+use crate::structure::{BandName, Charge, Level, Stack, Structure, Target, ValenceModel, Window};
 use crate::tolerance::{Distributed, Outcome, Ring, Share, Statistics};
 use serde::Serialize;
 
@@ -202,7 +202,11 @@ impl Tolerances {
         Tolerances {
             title: structure.title.clone(),
             model: model_name(structure.conduction.model),
-            valence_model: structure.valence.map(|_| "decoupled"),
+            // Coupled holes have no part in it.
+            valence_model: structure
+                .valence
+                .filter(|valence| valence.model == ValenceModel::Decoupled)
+                .map(|_| "decoupled"),
             temperature_k: structure.temperature_k,
             field_kv_cm: 1e4 * stack.field_v_per_nm,
             grading_nm: structure
