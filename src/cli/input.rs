@@ -5,7 +5,7 @@ use crate::charge::{self, ChargeError, Equilibrium, Solution};
 use crate::diagnostics::Diagnostic;
 use crate::epitaxy;
 use crate::models::{Band, Unsuitable};
-use crate::structure::{self, Stack, Structure};
+use crate::structure::{self, Ends, Stack, Structure};
 use crate::subbands::{Accuracy, Audit, Bands, Hold, State};
 use std::collections::BTreeSet;
 use std::fs::File;

@@ -1,7 +1,7 @@
 //! The `layers` of a structure file, and the materials they name.
 
 use super::document::{Node, line_of};
-use super::fields::{Checker, Fields, Limits, above, between};
+use super::fields::{Checker, Fields, Limits, between};
 use super::file::{Item, LayerEntry, PlaneEntry, Profile, Spanned};
 use crate::diagnostics::Diagnostic;
 use crate::materials::{Library, Substance};
@@ -9,7 +9,7 @@ use crate::units::Dimension;
 use std::collections::HashMap;
 
 /// Bounds that keep sizes within what can be grown and solved; common practice.
-pub(super) const WIDTH_LIMITS: Limits = above(0.0, 1e5, "a width above 0 nm, of at most 100 µm");
+pub(super) const WIDTH_LIMITS: Limits = between(0.01, 1e5, "a width from 0.01 nm to 100 µm");
 pub(super) const FIELD_LIMITS: Limits = between(-1.0, 1.0, "a field from -10 MV/cm to 10 MV/cm");
 pub(super) const DOPING_LIMITS: Limits = between(0.0, 1e22, "from 0 to 1e22 cm^-3");
 const SHEET_LIMITS: Limits = between(0.0, 1e15, "from 0 to 1e15 cm^-2");
