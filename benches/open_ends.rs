@@ -50,7 +50,7 @@ fn transfer_matrix(energy_ev: f64) -> f64 {
         wave = Matrix2::new(c, -s / (k * a), s * k * a, c) * wave;
     }
     // Both leads are alike.
-    let incoming = (wave[0] + wave[1] / (i * k * a)) * 0.5;
+    let incoming: Complex<f64> = (wave[0] + wave[1] / (i * k * a)) * 0.5;
     1.0 / incoming.norm_sqr()
 }
 

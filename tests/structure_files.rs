@@ -140,7 +140,7 @@ tune:
             (6, 39, &["`30` has no unit", "`5.2 nm`", "as in `30 nm`"]),
             (7, 34, &["unknown key `widht`", "did you mean `width`?"]),
             (8, 12, &["two layers are named `well`", "line 7"]),
-            (8, 41, &["`-5 nm` is out of range", "above 0 nm"]),
+            (8, 41, &["`-5 nm` is out of range", "from 0.01 nm"]),
             (10, 18, &["no layer is named `wel`", "did you mean `well`?"]),
             (11, 9, &["there is no aim", "a list"]),
         ],
@@ -335,7 +335,7 @@ fn layers_and_repeats() {
     mistakes(&layers("{width: 5 nm}"), &[(2, 5, &["no `material`"])]);
     mistakes(
         &layers("{material: GaAs, width: 0 nm}"),
-        &[(2, 29, &["out of range", "above 0 nm"])],
+        &[(2, 29, &["out of range", "from 0.01 nm"])],
     );
     mistakes(
         &layers("{material: GaAs, width: 1e300 nm}"),
