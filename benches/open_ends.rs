@@ -42,8 +42,8 @@ fn transfer_matrix(energy_ev: f64) -> f64 {
         (a, Complex::from((energy_ev - edge_ev) / a).sqrt())
     };
     let (a, k) = law(LAYERS[4]);
-    let i = Complex::i();
-    let mut wave = Vector2::new(Complex::from(1.0), i * k * a);
+    let i = Complex::<f64>::i();
+    let mut wave = Vector2::new(Complex::<f64>::from(1.0), i * k * a);
     for layer in LAYERS.iter().rev() {
         let (a, k) = law(*layer);
         let (s, c) = ((k * layer[0]).sin(), (k * layer[0]).cos());
