@@ -30,6 +30,7 @@ pub struct Range<'a> {
 pub fn absorption(file: &Path, range: &Range, output: &Output) -> Result<Exit, Exit> {
     let input = Input::read(file)?;
     check_output(output.output.as_deref(), file)?;
+    input.without_minibands("`absorption`")?;
     input.conduction_only("the spectrum is that of")?;
     input.with_flat_bands("the spectrum is that of");
     let operator = BandOperator::conduction(&input.stack, input.structure.conduction.model)

@@ -74,10 +74,13 @@ fn open(input: &Input, file: &Path, output: &Output) -> Result<Exit, Exit> {
                 "above the end that the field raises, where a wave runs up the slope outside and comes back"
             }
         };
-        warn(format!(
+        let words = format!(
             "{} of the {asked} levels asked for are there; others are wider than {widest_mev:.0} meV, or {why}",
             shown.len()
-        ));
+        );
+        let doubt = Diagnostic::warning(words)
+            .hint("`transmission` finds the resonances of the stack between flat contacts");
+        show(&doubt, &input.name, &input.text);
     }
     for fault in report.faults() {
         warn(format!("audit: {fault}"));
