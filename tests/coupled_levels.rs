@@ -2,10 +2,11 @@
 //! what light must add up to.
 
 mod common;
+#[path = "common/eight_band.rs"]
+mod eight_band;
 
 use common::{Bench, list, number};
 use nalgebra::{DMatrix, DVector};
-use serde::Deserialize;
 use serde_json::Value;
 use wellwright::constants::HC_EV_UM;
 use wellwright::models::Band;
@@ -88,30 +89,10 @@ fn heavy_holes_are_those_of_one_band() {
     }
 }
 
-#[derive(Deserialize)]
-struct Reference {
-    stacks: Vec<Stack>,
-}
-
-#[derive(Deserialize)]
-struct Stack {
-    name: String,
-    structure: String,
-    solved: Vec<Solved>,
-}
-
-#[derive(Deserialize)]
-struct Solved {
-    k_per_nm: [f64; 2],
-    conduction_ev: Vec<f64>,
-    valence_ev: Vec<f64>,
-}
-
 /// `levels` gives the energies that an independent program computed (`tests/reference/README.md`), each pair once.
 #[test]
 fn eight_band_levels_are_those_of_the_independent_reference() {
-    let reference: Reference =
-        serde_json::from_str(include_str!("reference/eight_band.json")).unwrap();
+    let reference = eight_band::reference();
     let mut compared = 0;
     for stack in &reference.stacks {
         let solved = stack

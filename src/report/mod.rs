@@ -64,7 +64,7 @@ pub trait Report: Serialize {
 fn verdict(faults: &[String]) -> String {
     match faults {
         [] => "passed".to_owned(),
-        faults => faults.join("; "),
+        faults => format!("objects ({})", faults.join("; ")),
     }
 }
 
